@@ -1,0 +1,1 @@
+//! Windows, covariances, compression and the two measures of "differs".

@@ -1,0 +1,1 @@
+//! Held-out ratios, permutation, bootstrap, ratio against C.

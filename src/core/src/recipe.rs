@@ -1,0 +1,207 @@
+//! `recipe.json`: all choices of the user; with a recording it reproduces the result.
+//!
+//! Unknown keys are errors, every key is optional but `teasel_recipe` and `contrast`.
+use serde::{Deserialize, Serialize};
+
+/// All choices.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Recipe {
+    /// Version of the schema: 1.
+    pub teasel_recipe: u32,
+    /// Which channels, against which reference.
+    #[serde(default)]
+    pub channels: Channels,
+    /// Filters and resampling.
+    #[serde(default)]
+    pub filter: Filter,
+    /// The compression dimension C.
+    #[serde(default)]
+    pub keep: Keep,
+    /// Which of the two measures orders and tests the components.
+    #[serde(default)]
+    pub measure: Measure,
+    /// The question.
+    pub contrast: Contrast,
+    /// γ for total, ρ for typical.
+    #[serde(default)]
+    pub shrink: Shrink,
+    /// How many components are reported at each end.
+    #[serde(default = "four")]
+    pub components: usize,
+    /// Folds, permutations, bootstrap, seed.
+    #[serde(default)]
+    pub evidence: Evidence,
+}
+
+fn four() -> usize {
+    4
+}
+
+/// Which channels, against which reference.
+#[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields, default)]
+pub struct Channels {
+    /// Channels not analysed.
+    pub leave_out: Vec<String>,
+    /// Channels replaced by their spherical-spline estimate from the others.
+    pub interpolate: Vec<String>,
+    /// Reference.
+    pub reference: Reference,
+}
+
+/// `"as recorded"`, `"average"`, or a list of channel names.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(untagged)]
+pub enum Reference {
+    /// A word.
+    Word(ReferenceWord),
+    /// The mean of these channels.
+    Named(Vec<String>),
+}
+
+impl Default for Reference {
+    fn default() -> Self {
+        Reference::Word(ReferenceWord::AsRecorded)
+    }
+}
+
+/// The words a reference may be.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+pub enum ReferenceWord {
+    /// Samples as they stand in the file.
+    #[serde(rename = "as recorded")]
+    AsRecorded,
+    /// The mean of all used channels.
+    #[serde(rename = "average")]
+    Average,
+}
+
+/// Filters and resampling, in this order.
+#[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields, default)]
+pub struct Filter {
+    /// Lower edge of the pass band.
+    pub high_pass_hz: Option<f64>,
+    /// Upper edge of the pass band.
+    pub low_pass_hz: Option<f64>,
+    /// Centres of stop bands 2 Hz wide (−6 dB).
+    pub notch_hz: Vec<f64>,
+    /// New sampling rate.
+    pub resample_hz: Option<f64>,
+}
+
+/// An integer above 1, `"auto"` or `"best"`.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(untagged)]
+pub enum Keep {
+    /// C.
+    Number(usize),
+    /// A word.
+    Word(KeepWord),
+}
+
+impl Default for Keep {
+    fn default() -> Self {
+        Keep::Word(KeepWord::Auto)
+    }
+}
+
+/// The words `keep` may be.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum KeepWord {
+    /// The smaller of the rank and 150; blind to the labels.
+    Auto,
+    /// The smallest C within one standard error of the best held-out ratio; repeated inside every permutation.
+    Best,
+}
+
+/// Which measure orders and tests the components.
+#[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum Measure {
+    /// Mean over trials of the log ratio.
+    #[default]
+    Typical,
+    /// Ratio of pooled variances.
+    Total,
+}
+
+/// `"auto"`, `"ledoit-wolf"`, `"oas"` or a number.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[serde(untagged)]
+pub enum Shrink {
+    /// γ or ρ itself.
+    Number(f64),
+    /// A word.
+    Word(ShrinkWord),
+}
+
+impl Default for Shrink {
+    fn default() -> Self {
+        Shrink::Word(ShrinkWord::Auto)
+    }
+}
+
+/// The words `shrink` may be.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum ShrinkWord {
+    /// Total: chosen on inner folds; typical: 0.1.
+    Auto,
+    /// Ledoit & Wolf 2004 (total only).
+    LedoitWolf,
+    /// Chen et al. 2010 as scikit-learn has it (total only).
+    Oas,
+}
+
+/// The question. Only `windows` is computed by this version; the other kinds are reserved.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(tag = "kind", rename_all = "kebab-case", deny_unknown_fields)]
+pub enum Contrast {
+    /// Event windows against event windows.
+    Windows {
+        /// Windows of interest (S).
+        signal: EventWindow,
+        /// Windows they are compared with (R).
+        reference: EventWindow,
+    },
+}
+
+/// `[onset + from, onset + to)` around every event of one label.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct EventWindow {
+    /// Label of the event.
+    pub event: String,
+    /// Start, relative to the onset.
+    pub from_s: f64,
+    /// End, relative to the onset.
+    pub to_s: f64,
+}
+
+/// Folds, permutations, bootstrap, seed.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields, default)]
+pub struct Evidence {
+    /// K contiguous folds of trials.
+    pub folds: usize,
+    /// Arrangements drawn.
+    pub permutations: usize,
+    /// Bootstrap samples.
+    pub bootstrap: usize,
+    /// Seed of everything drawn.
+    pub seed: u64,
+}
+
+impl Default for Evidence {
+    fn default() -> Self {
+        Evidence {
+            folds: 5,
+            permutations: 1000,
+            bootstrap: 500,
+            seed: 1,
+        }
+    }
+}

@@ -1,0 +1,119 @@
+//! What a recording is, and how one is opened.
+//!
+//! # Units
+//! Voltages are brought to µV, magnetic fields stay as written. Times are seconds from the start of the file's own clock.
+//!
+//! # Axis order
+//! `samples[channel][sample]`, one `Vec<f32>` a channel, all at [`Recording::rate_hz`].
+use serde::{Deserialize, Serialize};
+
+/// A multichannel recording in memory.
+#[derive(Debug, Clone, Default)]
+pub struct Recording {
+    /// File name without its folder.
+    pub name: String,
+    /// Format and variant, as its standard spells it: `EDF`, `EDF+C`, `EDF+D`, or `synthetic` for a demo.
+    pub format: String,
+    /// Sampling rate of every analysed channel.
+    pub rate_hz: f64,
+    /// The analysed channels, in file order.
+    pub channels: Vec<Channel>,
+    /// Channels that are listed and not analysed, with the reason.
+    pub others: Vec<OtherChannel>,
+    /// `channels × samples`.
+    pub samples: Vec<Vec<f32>>,
+    /// Unbroken runs of samples, in order; together they cover every sample.
+    pub stretches: Vec<Stretch>,
+    /// Events in order of onset.
+    pub events: Vec<Event>,
+    /// Names of the side files that were used.
+    pub side_files: Vec<String>,
+    /// What a careful reader of this file should know, each a sentence.
+    pub warnings: Vec<String>,
+}
+
+/// One analysed channel.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Channel {
+    /// Label as in the file, trimmed.
+    pub name: String,
+    /// Unit of its samples, after scaling: `µV` for voltages.
+    pub unit: String,
+    /// Position in metres or on the unit sphere, where the file or a side file gives one: x to the right, y to the front, z up.
+    pub position: Option<[f64; 3]>,
+}
+
+/// A channel that is listed and not analysed.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct OtherChannel {
+    /// Label as in the file.
+    pub name: String,
+    /// Unit as in the file.
+    pub unit: String,
+    /// Its sampling rate.
+    pub rate_hz: f64,
+    /// Why it is not analysed: "sampled at 1 Hz, most channels at 250 Hz".
+    pub reason: String,
+}
+
+/// An unbroken run of samples.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+pub struct Stretch {
+    /// Index of its first sample in [`Recording::samples`].
+    pub first: usize,
+    /// Number of samples.
+    pub count: usize,
+    /// Time of its first sample on the file's clock.
+    pub onset_s: f64,
+}
+
+/// Something that happened at a time.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Event {
+    /// On the file's clock.
+    pub onset_s: f64,
+    /// 0 for a moment.
+    pub duration_s: f64,
+    /// The annotation's text or the table's `trial_type`.
+    pub label: String,
+}
+
+/// A file dropped together with, or found beside, the recording.
+#[derive(Debug, Clone)]
+pub struct SideFile {
+    /// File name without its folder.
+    pub name: String,
+    /// Its whole content; side files are small.
+    pub bytes: Vec<u8>,
+}
+
+/// Bytes that can be read anywhere: a file, a browser's `File`, or memory.
+pub trait Source {
+    /// File name without its folder.
+    fn name(&self) -> &str;
+    /// Length in bytes.
+    fn len(&self) -> u64;
+    /// Whether there is nothing.
+    fn is_empty(&self) -> bool {
+        self.len() == 0
+    }
+    /// Fills `out` with the bytes from `offset` on; asking beyond the end is an error.
+    fn read_at(&mut self, offset: u64, out: &mut [u8]) -> crate::error::Result<()>;
+}
+
+impl Recording {
+    /// Samples a channel.
+    pub fn sample_count(&self) -> usize {
+        self.samples.first().map_or(0, Vec::len)
+    }
+    /// Seconds that hold samples (gaps left out).
+    pub fn duration_s(&self) -> f64 {
+        self.sample_count() as f64 / self.rate_hz
+    }
+    /// Seconds from the start of the clock to the end of the last stretch.
+    pub fn span_s(&self) -> f64 {
+        self.stretches
+            .last()
+            .map_or(0.0, |s| s.onset_s + s.count as f64 / self.rate_hz)
+    }
+}

@@ -1,0 +1,376 @@
+//! Everything known so far about one recording and one recipe, as plain data.
+//!
+//! Figures, readings, the page, the report and `results.json` are all made from a [`Sheet`], and from nothing else.
+//! Parts that are not computed yet are `None` or empty.
+use crate::recipe::{Measure, Recipe};
+use crate::recording::{OtherChannel, Stretch};
+use serde::{Deserialize, Serialize};
+use std::collections::BTreeMap;
+
+/// The state of the whole job.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Sheet {
+    /// The recording.
+    pub recording: RecordingCard,
+    /// The choices that this sheet answers.
+    pub recipe: Recipe,
+    /// Every analysed channel of the recording, in file order.
+    pub channels: Vec<ChannelCard>,
+    /// What the preparation did.
+    pub preparation: Option<PreparationCard>,
+    /// The windows of both sides.
+    pub windows: Option<WindowsCard>,
+    /// The compression to C dimensions.
+    pub compression: Option<CompressionCard>,
+    /// Fitted and held-out ratio against C.
+    pub curve: Option<KeepCurve>,
+    /// The shrinkage in force: ρ (typical) or γ (total).
+    pub shrinkage: Option<f64>,
+    /// Components stronger in signal, strongest first.
+    pub stronger: Vec<Component>,
+    /// Components weaker in signal, weakest first.
+    pub weaker: Vec<Component>,
+    /// The same held-out measure for what one would have used otherwise, best known comparators first.
+    pub compare: Vec<Comparator>,
+    /// The permutation test.
+    pub permutation: Option<Permutation>,
+    /// Mean held-out log ratio of stronger component 1 in each fold, as a factor, with the trials in it.
+    pub folds: Vec<FoldCard>,
+    /// Everything a careful reader should know, each a sentence; the first is the most important.
+    pub warnings: Vec<String>,
+}
+
+/// The recording as the page and the report show it.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct RecordingCard {
+    /// File name.
+    pub name: String,
+    /// Format and variant.
+    pub format: String,
+    /// Sampling rate.
+    pub rate_hz: f64,
+    /// Seconds that hold samples.
+    pub duration_s: f64,
+    /// Unbroken runs.
+    pub stretches: Vec<Stretch>,
+    /// Channels listed and not analysed.
+    pub others: Vec<OtherChannel>,
+    /// Count of each event label.
+    pub events: BTreeMap<String, usize>,
+    /// Onsets of each event label in seconds, in order.
+    pub event_onsets_s: BTreeMap<String, Vec<f64>>,
+    /// Names of side files used.
+    pub side_files: Vec<String>,
+    /// Warnings of the reader.
+    pub warnings: Vec<String>,
+    /// Root mean square over channels (each about its mean) per equal bin of the recording's samples, in the channels' unit; at most 444 bins.
+    pub envelope: Vec<f64>,
+}
+
+/// One channel.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct ChannelCard {
+    /// Label.
+    pub name: String,
+    /// Unit.
+    pub unit: String,
+    /// Standard deviation as recorded, about the mean of each stretch; `None` where it is not a number.
+    pub sd: Option<f64>,
+    /// Power at the mains frequency over the mean of its neighbours 3–8 Hz away, in dB (the larger of 50 and 60 Hz), where the rate allows.
+    pub mains_db: Option<f64>,
+    /// The frequency that `mains_db` is about.
+    pub mains_hz: Option<f64>,
+    /// What became of it.
+    pub state: ChannelState,
+    /// Position on the unit sphere: x right, y front, z up.
+    pub position: Option<[f64; 3]>,
+}
+
+/// What became of a channel.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(tag = "state", content = "reason", rename_all = "kebab-case")]
+pub enum ChannelState {
+    /// Analysed.
+    Used,
+    /// Analysed after replacing it by its neighbours.
+    Interpolated,
+    /// Left out by the user.
+    LeftOut,
+    /// Left out because it cannot be analysed: "constant", "holds values that are not numbers".
+    Unusable(String),
+    /// Analysed, with a doubt: "the same as Fz".
+    NeedsALook(String),
+}
+
+/// What the preparation did.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct PreparationCard {
+    /// Sampling rate after it.
+    pub rate_hz: f64,
+    /// Names of the channels after it, in the order of `filter` and `pattern`.
+    pub channels: Vec<String>,
+    /// Rank of the pooled covariance after it.
+    pub rank: usize,
+    /// Length of the longest FIR filter in seconds, 0 without one.
+    pub longest_filter_s: f64,
+    /// One sentence for each filter: "high-pass 1 Hz, 0.75 Hz transition, 1101 taps".
+    pub filters: Vec<String>,
+}
+
+/// The windows of both sides.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct WindowsCard {
+    /// Both sides tied to the same event.
+    pub paired: bool,
+    /// Signal side.
+    pub signal: SideCard,
+    /// Reference side.
+    pub reference: SideCard,
+    /// Every event of the signal label (and of the reference label when unpaired), in time order.
+    pub trials: Vec<Trial>,
+}
+
+/// One side's windows.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct SideCard {
+    /// Windows used.
+    pub used: usize,
+    /// Windows dropped, by reason: `outside`, `gap`, `partner`.
+    pub dropped: BTreeMap<String, usize>,
+    /// Samples a window.
+    pub samples: usize,
+    /// Seconds a window.
+    pub seconds: f64,
+}
+
+/// One event that was asked for a window.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Trial {
+    /// Onset of its event.
+    pub onset_s: f64,
+    /// Label of its event.
+    pub event: String,
+    /// Why it was dropped, if it was.
+    pub dropped: Option<String>,
+}
+
+/// The compression to C dimensions.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct CompressionCard {
+    /// C.
+    pub kept: usize,
+    /// Largest C: the numerical rank of the pooled covariance.
+    pub rank: usize,
+    /// Eigenvalues of the pooled covariance, descending, all of them.
+    pub eigenvalues: Vec<f64>,
+    /// Share of the variance in the kept dimensions, 0…1.
+    pub share: f64,
+    /// Numbers of dimensions other rules would keep: `share_95`, `one_standard_error`, `held_out_peak`.
+    pub guides: BTreeMap<String, usize>,
+}
+
+/// Fitted and held-out ratio of the first stronger component against C, in the chosen measure.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct KeepCurve {
+    /// Values of C, ascending.
+    pub keep: Vec<usize>,
+    /// Fitted ratio at each.
+    pub fitted: Vec<f64>,
+    /// Held-out ratio at each.
+    pub held_out: Vec<f64>,
+    /// Standard error of the log held-out ratio at each.
+    pub log_se: Vec<f64>,
+}
+
+/// One component: a spatial filter and everything known about it.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Component {
+    /// Ratio in a typical trial.
+    pub typical: TypicalRatio,
+    /// Ratio over all power.
+    pub total: TotalRatio,
+    /// Family-wise p over components; withheld under 10 pairs or 10 windows a side.
+    pub p: Option<f64>,
+    /// Weights for the prepared channels, wᵀRw = 1.
+    pub filter: Vec<f64>,
+    /// Weights for the channels of the recording, in file order (0 for channels not used).
+    pub filter_raw: Vec<f64>,
+    /// Pattern over the prepared channels, in channel units per unit of component.
+    pub pattern: Vec<f64>,
+    /// Name of the channel where the pattern is largest.
+    pub largest_at: String,
+    /// Frequency at which the spectra differ most in the direction of this end.
+    pub peak_hz: Option<f64>,
+    /// Median over folds of |cosine| between the fold's pattern and this one.
+    pub stability: Option<f64>,
+    /// Folds in which, judged by patterns, another rank of the fold is more like this component.
+    pub places_changed: Option<usize>,
+    /// Held-out log ratio (natural) of every used trial, in time order (paired contrasts).
+    pub trials: Vec<TrialScore>,
+    /// Power spectral densities.
+    pub spectra: Option<Spectra>,
+    /// Power around the event.
+    pub course: Option<Course>,
+    /// Single trials around the event.
+    pub image: Option<TrialImage>,
+}
+
+/// Ratio in a typical trial: exp of the mean log ratio.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct TypicalRatio {
+    /// On the windows it was fitted to.
+    pub fitted: f64,
+    /// On windows it never saw.
+    pub held_out: Option<f64>,
+    /// 95 % bootstrap interval of `held_out` over trials.
+    pub interval: Option<[f64; 2]>,
+}
+
+/// Ratio of pooled variances.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct TotalRatio {
+    /// On the windows it was fitted to.
+    pub fitted: f64,
+    /// Geometric mean over folds.
+    pub held_out: Option<f64>,
+    /// Each fold's ratio.
+    pub folds: Vec<f64>,
+}
+
+/// Held-out score of one trial.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+pub struct TrialScore {
+    /// Onset of its event.
+    pub onset_s: f64,
+    /// Fold it was tested in, from 0.
+    pub fold: usize,
+    /// Natural log of signal over reference variance.
+    pub log_ratio: f64,
+}
+
+/// Spectra of a component in signal and reference windows (Welch; component variance is 1 in reference windows, so densities are 1/Hz).
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Spectra {
+    /// Frequencies.
+    pub hz: Vec<f64>,
+    /// Mean density in signal windows.
+    pub signal: Vec<f64>,
+    /// 95 % bootstrap interval over windows.
+    pub signal_low: Vec<f64>,
+    /// See `signal_low`.
+    pub signal_high: Vec<f64>,
+    /// Mean density in reference windows.
+    pub reference: Vec<f64>,
+    /// See `signal_low`.
+    pub reference_low: Vec<f64>,
+    /// See `signal_low`.
+    pub reference_high: Vec<f64>,
+    /// Samples a segment.
+    pub segment: usize,
+}
+
+/// Mean power of a component around the event, in dB of its mean power in the reference windows.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Course {
+    /// Label of the event at time 0.
+    pub event: String,
+    /// Times relative to the event.
+    pub t_s: Vec<f64>,
+    /// Mean over trials.
+    pub mean_db: Vec<f64>,
+    /// 95 % bootstrap interval over trials.
+    pub low_db: Vec<f64>,
+    /// See `low_db`.
+    pub high_db: Vec<f64>,
+    /// Average of the component's signal itself (not its power), in its own unit.
+    pub average: Vec<f64>,
+    /// 95 % bootstrap interval of `average`.
+    pub average_low: Vec<f64>,
+    /// See `average_low`.
+    pub average_high: Vec<f64>,
+    /// Full width of the smoothing window of the power.
+    pub smoothing_s: f64,
+    /// Trials that went in.
+    pub trials: usize,
+}
+
+/// Power of single trials around the event, in dB of each trial's reference window, in order of time.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct TrialImage {
+    /// Times relative to the event (bin centres).
+    pub t_s: Vec<f64>,
+    /// `trials × times`.
+    pub db: Vec<Vec<f32>>,
+}
+
+/// What one would have used otherwise, on the same held-out windows.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Comparator {
+    /// Which.
+    pub kind: ComparatorKind,
+    /// Index of the principal component from 1, or name of the channel, as chosen most often in training ("3", "C2").
+    pub chosen: Option<String>,
+    /// In how many folds that choice was made.
+    pub chosen_in_folds: Option<usize>,
+    /// Share of variance (principal components).
+    pub share: Option<f64>,
+    /// In a typical trial.
+    pub typical: TypicalRatio,
+    /// Over all power.
+    pub total: TotalRatio,
+}
+
+/// Kinds of comparators.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "snake_case")]
+pub enum ComparatorKind {
+    /// The first principal component.
+    FirstPc,
+    /// The best of the kept principal components, chosen on training trials.
+    BestPc,
+    /// The best single channel, chosen on training trials.
+    BestChannel,
+}
+
+/// The permutation test.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Permutation {
+    /// Measure of the statistic.
+    pub measure: Measure,
+    /// Arrangements asked for.
+    pub asked: usize,
+    /// Arrangements done so far (or all there are, when `exact`).
+    pub done: usize,
+    /// Distinct arrangements, where that is at most 2^53.
+    pub distinct: Option<f64>,
+    /// Every arrangement was enumerated.
+    pub exact: bool,
+    /// The null hypothesis in a sentence.
+    pub null: String,
+    /// Largest fitted ratio of each arrangement, as a factor.
+    pub largest: Vec<f64>,
+    /// Smallest fitted ratio of each arrangement, as a factor.
+    pub smallest: Vec<f64>,
+    /// Observed statistic of each stronger component (comparable with `largest`).
+    pub observed_stronger: Vec<f64>,
+    /// Observed statistic of each weaker component (comparable with `smallest`).
+    pub observed_weaker: Vec<f64>,
+}
+
+/// One fold of the held-out test.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct FoldCard {
+    /// Trials (or windows) tested in it.
+    pub trials: usize,
+    /// Held-out typical ratio of stronger component 1 in it.
+    pub ratio: f64,
+}
+
+impl Sheet {
+    /// Pairs (paired) or the smaller side's windows (unpaired).
+    pub fn repetitions(&self) -> usize {
+        self.windows
+            .as_ref()
+            .map_or(0, |w| w.signal.used.min(w.reference.used))
+    }
+}

@@ -1,0 +1,1 @@
+//! What the user takes away: weights, results, readings, report, archive.

@@ -1,0 +1,1 @@
+//! The thin layer between the browser and Teasel's core.

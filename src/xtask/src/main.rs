@@ -1,0 +1,2 @@
+//! Part of Teasel.
+fn main() {}

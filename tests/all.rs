@@ -1,0 +1,1 @@
+//! All checks; each room of the house has its module.
