@@ -3,12 +3,18 @@ use super::work::Work;
 use crate::contrast::fit::{Direction, Ends};
 use crate::contrast::linalg::{abs_cosine, packed_len, quadratic};
 use crate::contrast::space::Space;
-use crate::evidence::heldout::{Design, Ground, Scores, best_of, diagonal, fill, log_total, log_typical, pair_log_ratios, score_into, total_ratio, typical_ratio, variances};
+use crate::evidence::heldout::{
+    Design, Ground, Scores, best_of, diagonal, fill, log_total, log_typical, pair_log_ratios,
+    score_into, total_ratio, typical_ratio, variances,
+};
 use crate::evidence::permute::{null_hypothesis, p_value};
 use crate::prepare::Prepared;
 use crate::recipe::{Contrast, Keep, KeepWord, Recipe};
 use crate::recording::Recording;
-use crate::sheet::{Comparator, ComparatorKind, Component, CompressionCard, FoldCard, Permutation, RecordingCard, Sheet, TotalRatio, TrialScore, TypicalRatio};
+use crate::sheet::{
+    Comparator, ComparatorKind, Component, CompressionCard, FoldCard, Permutation, RecordingCard,
+    Sheet, TotalRatio, TrialScore, TypicalRatio,
+};
 use std::collections::BTreeMap;
 
 /// Bins of the envelope of the whole recording.
@@ -29,7 +35,10 @@ pub(super) struct Stale {
 pub(super) fn begin(recording: &Recording, recipe: &Recipe) -> Sheet {
     let mut onsets: BTreeMap<String, Vec<f64>> = BTreeMap::new();
     for event in &recording.events {
-        onsets.entry(event.label.clone()).or_default().push(event.onset_s);
+        onsets
+            .entry(event.label.clone())
+            .or_default()
+            .push(event.onset_s);
     }
     Sheet {
         recording: RecordingCard {
@@ -39,7 +48,10 @@ pub(super) fn begin(recording: &Recording, recipe: &Recipe) -> Sheet {
             duration_s: recording.duration_s(),
             stretches: recording.stretches.clone(),
             others: recording.others.clone(),
-            events: onsets.iter().map(|(label, times)| (label.clone(), times.len())).collect(),
+            events: onsets
+                .iter()
+                .map(|(label, times)| (label.clone(), times.len()))
+                .collect(),
             event_onsets_s: onsets,
             side_files: recording.side_files.clone(),
             warnings: recording.warnings.clone(),
@@ -76,10 +88,15 @@ fn envelope(recording: &Recording) -> Vec<f64> {
         let mean = channel.iter().map(|x| f64::from(*x)).sum::<f64>() / n.max(1) as f64;
         for (b, bin) in out.iter_mut().enumerate() {
             let part = &channel[b * n / bins..(b + 1) * n / bins];
-            *bin += part.iter().map(|x| (f64::from(*x) - mean).powi(2)).sum::<f64>() / part.len().max(1) as f64;
+            *bin += part
+                .iter()
+                .map(|x| (f64::from(*x) - mean).powi(2))
+                .sum::<f64>()
+                / part.len().max(1) as f64;
         }
     }
-    out.iter_mut().for_each(|x| *x = (*x / counted.max(1) as f64).sqrt());
+    out.iter_mut()
+        .for_each(|x| *x = (*x / counted.max(1) as f64).sqrt());
     out
 }
 
@@ -121,7 +138,12 @@ pub(super) fn forget(sheet: &mut Sheet, recipe: &Recipe, stale: &Stale) {
 }
 
 /// The filter of a direction with wᵀRw = 1, its pattern by Haufe et al. 2014 with the largest entry positive, both in prepared channels.
-fn filter_and_pattern(ground: &Ground, direction: &Direction, weights: &[f64], signal: &[bool]) -> (Vec<f64>, Vec<f64>) {
+fn filter_and_pattern(
+    ground: &Ground,
+    direction: &Direction,
+    weights: &[f64],
+    signal: &[bool],
+) -> (Vec<f64>, Vec<f64>) {
     let space = &ground.space;
     let reference = {
         let (mut sum, mut total) = (0.0, 0.0);
@@ -135,7 +157,10 @@ fn filter_and_pattern(ground: &Ground, direction: &Direction, weights: &[f64], s
     let u: Vec<f64> = direction.u.iter().map(|x| x * scale).collect();
     let mut filter = space.filter(&u);
     let mut pattern = pattern(space, &filter);
-    let largest = pattern.iter().copied().fold(0.0f64, |m, x| if x.abs() > m.abs() { x } else { m });
+    let largest = pattern
+        .iter()
+        .copied()
+        .fold(0.0f64, |m, x| if x.abs() > m.abs() { x } else { m });
     if largest < 0.0 {
         filter.iter_mut().chain(&mut pattern).for_each(|x| *x = -*x);
     }
@@ -162,15 +187,37 @@ fn pattern(space: &Space, filter: &[f64]) -> Vec<f64> {
 
 /// Compression and fitted components, right after the fit.
 pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
-    let (Some(ground), Some(design), Some(ends), Some(prepared), Some(keep)) = (&work.ground, &work.design, &work.ends, &work.prepared, work.keep) else { return };
+    let (Some(ground), Some(design), Some(ends), Some(prepared), Some(keep)) = (
+        &work.ground,
+        &work.design,
+        &work.ends,
+        &work.prepared,
+        work.keep,
+    ) else {
+        return;
+    };
     let weights = &work.covariances.weights;
     let component = |d: &Direction| -> Component {
         let (filter, pattern) = filter_and_pattern(ground, d, weights, &design.signal);
         let v = variances(&ground.space, &d.u);
-        let largest = (0..pattern.len()).fold(0, |best, i| if pattern[i].abs() > pattern[best].abs() { i } else { best });
+        let largest = (0..pattern.len()).fold(0, |best, i| {
+            if pattern[i].abs() > pattern[best].abs() {
+                i
+            } else {
+                best
+            }
+        });
         Component {
-            typical: TypicalRatio { fitted: log_typical(&v, design).exp(), held_out: None, interval: None },
-            total: TotalRatio { fitted: log_total(&v, weights, design, |_| true).exp(), held_out: None, folds: Vec::new() },
+            typical: TypicalRatio {
+                fitted: log_typical(&v, design).exp(),
+                held_out: None,
+                interval: None,
+            },
+            total: TotalRatio {
+                fitted: log_total(&v, weights, design, |_| true).exp(),
+                held_out: None,
+                folds: Vec::new(),
+            },
             p: None,
             filter_raw: raw_filter(prepared, &filter),
             largest_at: prepared.channels[largest].clone(),
@@ -192,7 +239,13 @@ pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
     let eigenvalues = ground.space.eigenvalues.clone();
     let all: f64 = eigenvalues.iter().filter(|e| **e > 0.0).sum();
     let share = eigenvalues[..keep].iter().sum::<f64>() / all;
-    work.sheet.compression = Some(CompressionCard { kept: keep, rank: ground.space.rank, eigenvalues, share, guides: BTreeMap::new() });
+    work.sheet.compression = Some(CompressionCard {
+        kept: keep,
+        rank: ground.space.rank,
+        eigenvalues,
+        share,
+        guides: BTreeMap::new(),
+    });
     if let Some(card) = &mut work.sheet.preparation {
         card.rank = ground.space.rank;
     }
@@ -202,7 +255,11 @@ pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
 
 /// Those directions of a fit that lie on their own side of 1.
 pub(super) fn reported(ends: &Ends) -> (&[Direction], &[Direction]) {
-    let up = ends.stronger.iter().take_while(|d| d.statistic > 1.0).count();
+    let up = ends
+        .stronger
+        .iter()
+        .take_while(|d| d.statistic > 1.0)
+        .count();
     let down = ends.weaker.iter().take_while(|d| d.statistic < 1.0).count();
     (&ends.stronger[..up], &ends.weaker[..down])
 }
@@ -210,12 +267,16 @@ pub(super) fn reported(ends: &Ends) -> (&[Direction], &[Direction]) {
 /// w_raw = Tᵀw.
 fn raw_filter(prepared: &Prepared, filter: &[f64]) -> Vec<f64> {
     let t = &prepared.matrix;
-    (0..t.ncols()).map(|c| filter.iter().enumerate().map(|(r, w)| w * t[(r, c)]).sum()).collect()
+    (0..t.ncols())
+        .map(|c| filter.iter().enumerate().map(|(r, w)| w * t[(r, c)]).sum())
+        .collect()
 }
 
 /// Numbers of dimensions other rules would keep.
 pub(super) fn guides(sheet: &mut Sheet) {
-    let Some(card) = &mut sheet.compression else { return };
+    let Some(card) = &mut sheet.compression else {
+        return;
+    };
     let all: f64 = card.eigenvalues.iter().filter(|e| **e > 0.0).sum();
     let mut sum = 0.0;
     let share_95 = card.eigenvalues.iter().take_while(|e| {
@@ -226,43 +287,90 @@ pub(super) fn guides(sheet: &mut Sheet) {
     let share_95 = share_95.count().max(2).min(card.rank);
     card.guides.insert("share_95".into(), share_95);
     let Some(curve) = &sheet.curve else { return };
-    let Some(peak) = (0..curve.keep.len()).max_by(|a, b| curve.held_out[*a].total_cmp(&curve.held_out[*b]).then(b.cmp(a))) else { return };
+    let Some(peak) = (0..curve.keep.len()).max_by(|a, b| {
+        curve.held_out[*a]
+            .total_cmp(&curve.held_out[*b])
+            .then(b.cmp(a))
+    }) else {
+        return;
+    };
     let bar = curve.held_out[peak].ln() - curve.log_se[peak];
-    let simplest = (0..=peak).find(|i| curve.held_out[*i].ln() >= bar).unwrap_or(peak);
+    let simplest = (0..=peak)
+        .find(|i| curve.held_out[*i].ln() >= bar)
+        .unwrap_or(peak);
     card.guides.insert("held_out_peak".into(), curve.keep[peak]);
-    card.guides.insert("one_standard_error".into(), curve.keep[simplest]);
+    card.guides
+        .insert("one_standard_error".into(), curve.keep[simplest]);
 }
 
 /// Held-out ratios of the components and of the comparators, stability, folds.
 pub(super) fn held_out(work: &mut Work, recipe: &Recipe) {
-    let (Some(ground), Some(design), Some(prepared), Some(keep), Some(selection)) = (&work.ground, &work.design, &work.prepared, work.keep, &work.selection) else { return };
+    let (Some(ground), Some(design), Some(prepared), Some(keep), Some(selection)) = (
+        &work.ground,
+        &work.design,
+        &work.prepared,
+        work.keep,
+        &work.selection,
+    ) else {
+        return;
+    };
     let weights = &work.covariances.weights;
     let (count, seed) = (recipe.evidence.bootstrap, recipe.evidence.seed);
     let patterns: Vec<[Vec<Vec<f64>>; 2]> = work
         .folds
         .iter()
         .zip(&work.fits)
-        .map(|(g, f)| [&f.ends.stronger, &f.ends.weaker].map(|end| end.iter().map(|d| filter_and_pattern(g, d, weights, &design.signal).1).collect()))
+        .map(|(g, f)| {
+            [&f.ends.stronger, &f.ends.weaker].map(|end| {
+                end.iter()
+                    .map(|d| filter_and_pattern(g, d, weights, &design.signal).1)
+                    .collect()
+            })
+        })
         .collect();
     let blank = || vec![f64::NAN; weights.len()];
     let mut leading: Option<Scores> = None;
-    for (end, components) in [&mut work.sheet.stronger, &mut work.sheet.weaker].into_iter().enumerate() {
+    for (end, components) in [&mut work.sheet.stronger, &mut work.sheet.weaker]
+        .into_iter()
+        .enumerate()
+    {
         for (rank, component) in components.iter_mut().enumerate() {
             let mut scores = blank();
             for (f, (g, fit)) in work.folds.iter().zip(&work.fits).enumerate() {
-                let list = if end == 0 { &fit.ends.stronger } else { &fit.ends.weaker };
+                let list = if end == 0 {
+                    &fit.ends.stronger
+                } else {
+                    &fit.ends.weaker
+                };
                 if let Some(d) = list.get(rank).or(list.last()) {
                     score_into(&mut scores, g, weights, design, f, &d.u);
                 }
             }
-            component.typical = typical_ratio(component.typical.fitted, Some(&scores), design, count, seed);
+            component.typical =
+                typical_ratio(component.typical.fitted, Some(&scores), design, count, seed);
             component.total = total_ratio(component.total.fitted, Some(&scores), weights, design);
             component.trials = trial_scores(&scores, design, selection);
-            let cosines: Vec<Vec<f64>> = patterns.iter().map(|p| p[end].iter().map(|a| abs_cosine(a, &component.pattern)).collect()).collect();
-            let mut own: Vec<f64> = cosines.iter().filter_map(|c| c.get(rank).copied()).collect();
+            let cosines: Vec<Vec<f64>> = patterns
+                .iter()
+                .map(|p| {
+                    p[end]
+                        .iter()
+                        .map(|a| abs_cosine(a, &component.pattern))
+                        .collect()
+                })
+                .collect();
+            let mut own: Vec<f64> = cosines
+                .iter()
+                .filter_map(|c| c.get(rank).copied())
+                .collect();
             own.sort_by(f64::total_cmp);
             component.stability = Some(crate::evidence::bootstrap::quantile(&own, 0.5));
-            component.places_changed = Some(cosines.iter().filter(|c| c.iter().any(|x| c.get(rank).is_none_or(|own| x > own))).count());
+            component.places_changed = Some(
+                cosines
+                    .iter()
+                    .filter(|c| c.iter().any(|x| c.get(rank).is_none_or(|own| x > own)))
+                    .count(),
+            );
             if end == 0 && rank == 0 {
                 leading = Some(scores);
             }
@@ -273,7 +381,11 @@ pub(super) fn held_out(work: &mut Work, recipe: &Recipe) {
     work.sheet.warnings = warnings(work, recipe);
 }
 
-fn trial_scores(scores: &Scores, design: &Design, selection: &crate::contrast::windows::Selection) -> Vec<TrialScore> {
+fn trial_scores(
+    scores: &Scores,
+    design: &Design,
+    selection: &crate::contrast::windows::Selection,
+) -> Vec<TrialScore> {
     if !design.paired {
         return Vec::new();
     }
@@ -283,16 +395,29 @@ fn trial_scores(scores: &Scores, design: &Design, selection: &crate::contrast::w
         .iter()
         .enumerate()
         .filter(|(_, w)| w.signal)
-        .map(|(k, w)| TrialScore { onset_s: w.onset_s, fold: design.fold[k], log_ratio: logs[w.trial] })
+        .map(|(k, w)| TrialScore {
+            onset_s: w.onset_s,
+            fold: design.fold[k],
+            log_ratio: logs[w.trial],
+        })
         .collect()
 }
 
 fn fold_cards(scores: &Scores, design: &Design) -> Vec<FoldCard> {
     (0..design.folds)
         .map(|f| {
-            let inside: Scores = scores.iter().zip(&design.fold).map(|(v, x)| if *x == f { *v } else { f64::NAN }).collect();
-            let trials = (0..scores.len()).filter(|k| design.fold[*k] == f && (design.signal[*k] || !design.paired)).count();
-            FoldCard { trials, ratio: log_typical(&inside, design).exp() }
+            let inside: Scores = scores
+                .iter()
+                .zip(&design.fold)
+                .map(|(v, x)| if *x == f { *v } else { f64::NAN })
+                .collect();
+            let trials = (0..scores.len())
+                .filter(|k| design.fold[*k] == f && (design.signal[*k] || !design.paired))
+                .count();
+            FoldCard {
+                trials,
+                ratio: log_typical(&inside, design).exp(),
+            }
         })
         .collect()
 }
@@ -305,41 +430,86 @@ struct Parts<'a> {
     keep: usize,
 }
 
-fn work_parts<'a>(ground: &'a Ground, design: &'a Design, prepared: &'a Prepared, keep: usize) -> Parts<'a> {
-    Parts { ground, design, prepared, keep }
+fn work_parts<'a>(
+    ground: &'a Ground,
+    design: &'a Design,
+    prepared: &'a Prepared,
+    keep: usize,
+) -> Parts<'a> {
+    Parts {
+        ground,
+        design,
+        prepared,
+        keep,
+    }
 }
 
 /// First principal component, best principal component, best channel, on the same held-out windows.
 fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator> {
-    let Parts { ground, design, prepared, keep } = parts;
+    let Parts {
+        ground,
+        design,
+        prepared,
+        keep,
+    } = parts;
     let all = &work.covariances;
     let weights = &all.weights;
     let everything = vec![true; weights.len()];
     let shares: f64 = ground.space.eigenvalues.iter().filter(|e| **e > 0.0).sum();
     let pc_variance = |g: &Ground, i: usize, k: usize| diagonal(&g.space.covariances[k], i);
     let channel_variance = |i: usize, k: usize| diagonal(&all.packed[k], i);
-    let best_pc = best_of(keep, |i, k| pc_variance(ground, i, k), weights, design, &everything, recipe.measure);
-    let best_channel = best_of(all.channels, channel_variance, weights, design, &everything, recipe.measure);
-    let make = |kind: ComparatorKind, whole: &dyn Fn(usize) -> f64, chosen_in: &dyn Fn(usize) -> usize| {
-        let fitted: Vec<f64> = (0..weights.len()).map(whole).collect();
-        let mut scores = vec![f64::NAN; weights.len()];
-        for (f, g) in work.folds.iter().enumerate() {
-            let i = chosen_in(f);
-            match kind {
-                ComparatorKind::BestChannel => fill(&mut scores, weights, design, f, |k| channel_variance(i, k)),
-                ComparatorKind::FirstPc | ComparatorKind::BestPc => fill(&mut scores, weights, design, f, |k| pc_variance(g, i, k)),
+    let best_pc = best_of(
+        keep,
+        |i, k| pc_variance(ground, i, k),
+        weights,
+        design,
+        &everything,
+        recipe.measure,
+    );
+    let best_channel = best_of(
+        all.channels,
+        channel_variance,
+        weights,
+        design,
+        &everything,
+        recipe.measure,
+    );
+    let make =
+        |kind: ComparatorKind, whole: &dyn Fn(usize) -> f64, chosen_in: &dyn Fn(usize) -> usize| {
+            let fitted: Vec<f64> = (0..weights.len()).map(whole).collect();
+            let mut scores = vec![f64::NAN; weights.len()];
+            for (f, g) in work.folds.iter().enumerate() {
+                let i = chosen_in(f);
+                match kind {
+                    ComparatorKind::BestChannel => {
+                        fill(&mut scores, weights, design, f, |k| channel_variance(i, k))
+                    }
+                    ComparatorKind::FirstPc | ComparatorKind::BestPc => {
+                        fill(&mut scores, weights, design, f, |k| pc_variance(g, i, k))
+                    }
+                }
             }
-        }
-        let (count, seed) = (recipe.evidence.bootstrap, recipe.evidence.seed);
-        Comparator {
-            kind,
-            chosen: None,
-            chosen_in_folds: None,
-            share: None,
-            typical: typical_ratio(log_typical(&fitted, design).exp(), Some(&scores), design, count, seed),
-            total: total_ratio(log_total(&fitted, weights, design, |_| true).exp(), Some(&scores), weights, design),
-        }
-    };
+            let (count, seed) = (recipe.evidence.bootstrap, recipe.evidence.seed);
+            Comparator {
+                kind,
+                chosen: None,
+                chosen_in_folds: None,
+                share: None,
+                typical: typical_ratio(
+                    log_typical(&fitted, design).exp(),
+                    Some(&scores),
+                    design,
+                    count,
+                    seed,
+                ),
+                total: total_ratio(
+                    log_total(&fitted, weights, design, |_| true).exp(),
+                    Some(&scores),
+                    weights,
+                    design,
+                ),
+            }
+        };
     let share_of = |i: usize| Some(ground.space.eigenvalues[i] / shares);
     let (pc, pc_folds) = most_frequent(work.fits.iter().map(|f| f.best_pc));
     let (channel, channel_folds) = most_frequent(work.fits.iter().map(|f| f.best_channel));
@@ -348,14 +518,30 @@ fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator
             chosen: Some((pc + 1).to_string()),
             chosen_in_folds: Some(pc_folds),
             share: share_of(pc),
-            ..make(ComparatorKind::BestPc, &|k| pc_variance(ground, best_pc, k), &|f| work.fits[f].best_pc)
+            ..make(
+                ComparatorKind::BestPc,
+                &|k| pc_variance(ground, best_pc, k),
+                &|f| work.fits[f].best_pc,
+            )
         },
         Comparator {
             chosen: Some(prepared.channels[channel].clone()),
             chosen_in_folds: Some(channel_folds),
-            ..make(ComparatorKind::BestChannel, &|k| channel_variance(best_channel, k), &|f| work.fits[f].best_channel)
+            ..make(
+                ComparatorKind::BestChannel,
+                &|k| channel_variance(best_channel, k),
+                &|f| work.fits[f].best_channel,
+            )
         },
-        Comparator { chosen: Some("1".into()), share: share_of(0), ..make(ComparatorKind::FirstPc, &|k| pc_variance(ground, 0, k), &|_| 0) },
+        Comparator {
+            chosen: Some("1".into()),
+            share: share_of(0),
+            ..make(
+                ComparatorKind::FirstPc,
+                &|k| pc_variance(ground, 0, k),
+                &|_| 0,
+            )
+        },
     ]
 }
 
@@ -363,17 +549,24 @@ fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator
 fn most_frequent(values: impl Iterator<Item = usize>) -> (usize, usize) {
     let mut counts: BTreeMap<usize, usize> = BTreeMap::new();
     values.for_each(|v| *counts.entry(v).or_default() += 1);
-    counts.into_iter().fold((0, 0), |best, (v, n)| if n > best.1 { (v, n) } else { best })
+    counts.into_iter().fold(
+        (0, 0),
+        |best, (v, n)| if n > best.1 { (v, n) } else { best },
+    )
 }
 
 /// The permutation test and every component's p.
 pub(super) fn permuted(work: &mut Work, recipe: &Recipe) {
-    let (Some(plan), Some(design), Some(ends)) = (work.plan, &work.design, &work.ends) else { return };
+    let (Some(plan), Some(design), Some(ends)) = (work.plan, &work.design, &work.ends) else {
+        return;
+    };
     let (largest, smallest): (Vec<f64>, Vec<f64>) = work.null.iter().copied().unzip();
     let (stronger, weaker) = reported(ends);
     let observed_stronger: Vec<f64> = stronger.iter().map(|d| d.statistic).collect();
     let observed_weaker: Vec<f64> = weaker.iter().map(|d| d.statistic).collect();
-    let test = |observed: f64, null: &[f64], larger| (!null.is_empty()).then(|| p_value(observed, null, plan.exact, larger));
+    let test = |observed: f64, null: &[f64], larger| {
+        (!null.is_empty()).then(|| p_value(observed, null, plan.exact, larger))
+    };
     for (component, x) in work.sheet.stronger.iter_mut().zip(&observed_stronger) {
         component.p = test(*x, &largest, true);
     }
@@ -400,7 +593,11 @@ fn warnings(work: &Work, recipe: &Recipe) -> Vec<String> {
     let sheet = &work.sheet;
     let repetitions = sheet.repetitions();
     if repetitions < crate::evidence::FEWEST {
-        let unit = if sheet.windows.as_ref().is_some_and(|w| w.paired) { "pairs of windows" } else { "windows a side" };
+        let unit = if sheet.windows.as_ref().is_some_and(|w| w.paired) {
+            "pairs of windows"
+        } else {
+            "windows a side"
+        };
         out.push(format!(
             "{repetitions} {unit}: enough to look, too few to test. Held-out ratios and p are withheld until there are {}.",
             crate::evidence::FEWEST
@@ -410,7 +607,9 @@ fn warnings(work: &Work, recipe: &Recipe) -> Vec<String> {
         && asked > keep
     {
         let rank = ground.space.rank;
-        out.push(format!("C = {asked} was asked for; the channels span {rank} dimensions, so {keep} are kept."));
+        out.push(format!(
+            "C = {asked} was asked for; the channels span {rank} dimensions, so {keep} are kept."
+        ));
     }
     if recipe.keep == Keep::Word(KeepWord::Best)
         && let Some(keep) = work.keep
@@ -441,16 +640,28 @@ fn warnings(work: &Work, recipe: &Recipe) -> Vec<String> {
 /// Where a few large windows decide between the two measures, says how many.
 fn disagreement(work: &Work) -> Option<String> {
     let component = work.sheet.stronger.first()?;
-    let typical = component.typical.held_out.unwrap_or(component.typical.fitted);
+    let typical = component
+        .typical
+        .held_out
+        .unwrap_or(component.typical.fitted);
     let total = component.total.held_out.unwrap_or(component.total.fitted);
     let factor = total / typical;
     if factor < DISAGREEMENT && factor > 1.0 / DISAGREEMENT {
         return None;
     }
-    let (ground, design, ends) = (work.ground.as_ref()?, work.design.as_ref()?, work.ends.as_ref()?);
+    let (ground, design, ends) = (
+        work.ground.as_ref()?,
+        work.design.as_ref()?,
+        work.ends.as_ref()?,
+    );
     let v = variances(&ground.space, &ends.stronger.first()?.u);
     let side = factor > 1.0;
-    let mut powers: Vec<f64> = v.iter().zip(&design.signal).filter(|(_, s)| **s == side).map(|(v, _)| *v).collect();
+    let mut powers: Vec<f64> = v
+        .iter()
+        .zip(&design.signal)
+        .filter(|(_, s)| **s == side)
+        .map(|(v, _)| *v)
+        .collect();
     powers.sort_by(|a, b| b.total_cmp(a));
     let half = 0.5 * powers.iter().sum::<f64>();
     let mut sum = 0.0;

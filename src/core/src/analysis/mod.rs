@@ -82,7 +82,11 @@ impl Analysis {
     pub fn new(recording: Recording, recipe: Recipe) -> Result<Self> {
         check_recipe(&recipe, &recording)?;
         let work = Work::new(&recording, &recipe);
-        Ok(Analysis { recording, recipe, work })
+        Ok(Analysis {
+            recording,
+            recipe,
+            work,
+        })
     }
 
     /// Takes a changed recipe and drops only what it made stale. On an error nothing changes.
@@ -140,7 +144,9 @@ impl Analysis {
 /// Refuses what no recording could make sense of.
 fn check_recipe(recipe: &Recipe, recording: &Recording) -> Result<()> {
     let refuse = |what: &str, place: &str, expected: &str, found: String, advice: &str| {
-        Err(Problem::new(Kind::Recipe, what, advice).at(place).expected_found(expected, found))
+        Err(Problem::new(Kind::Recipe, what, advice)
+            .at(place)
+            .expected_found(expected, found))
     };
     if let Keep::Number(keep) = recipe.keep
         && keep < 2
@@ -156,12 +162,22 @@ fn check_recipe(recipe: &Recipe, recording: &Recording) -> Result<()> {
     if let Shrink::Number(x) = recipe.shrink
         && !(0.0..1.0).contains(&x)
     {
-        return refuse("the shrinkage is out of range", "shrink", "a number from 0 to below 1", x.to_string(), "choose \"auto\" or a number such as 0.1");
+        return refuse(
+            "the shrinkage is out of range",
+            "shrink",
+            "a number from 0 to below 1",
+            x.to_string(),
+            "choose \"auto\" or a number such as 0.1",
+        );
     }
     if recipe.measure == Measure::Typical
         && let Shrink::Word(word @ (ShrinkWord::LedoitWolf | ShrinkWord::Oas)) = recipe.shrink
     {
-        let found = if word == ShrinkWord::Oas { "oas" } else { "ledoit-wolf" };
+        let found = if word == ShrinkWord::Oas {
+            "oas"
+        } else {
+            "ledoit-wolf"
+        };
         return refuse(
             "this shrinkage belongs to the total measure",
             "shrink",
@@ -171,23 +187,41 @@ fn check_recipe(recipe: &Recipe, recording: &Recording) -> Result<()> {
         );
     }
     if !(1..=64).contains(&recipe.components) {
-        return refuse("the number of components is out of range", "components", "1 to 64", recipe.components.to_string(), "4 serves most questions");
+        return refuse(
+            "the number of components is out of range",
+            "components",
+            "1 to 64",
+            recipe.components.to_string(),
+            "4 serves most questions",
+        );
     }
     if !(2..=100).contains(&recipe.evidence.folds) {
-        return refuse("the number of folds is out of range", "evidence, folds", "2 to 100", recipe.evidence.folds.to_string(), "5 serves most questions");
+        return refuse(
+            "the number of folds is out of range",
+            "evidence, folds",
+            "2 to 100",
+            recipe.evidence.folds.to_string(),
+            "5 serves most questions",
+        );
     }
     if recipe.evidence.permutations > 1_000_000 || recipe.evidence.bootstrap > 100_000 {
         return refuse(
             "more repetitions than can be kept",
             "evidence",
             "at most 1000000 permutations and 100000 bootstrap samples",
-            format!("{} and {}", recipe.evidence.permutations, recipe.evidence.bootstrap),
+            format!(
+                "{} and {}",
+                recipe.evidence.permutations, recipe.evidence.bootstrap
+            ),
             "1000 and 500 serve most questions",
         );
     }
     let Contrast::Windows { signal, reference } = &recipe.contrast;
     for (side, w) in [("signal", signal), ("reference", reference)] {
-        let fine = w.from_s.is_finite() && w.to_s.is_finite() && w.from_s < w.to_s && w.from_s.abs().max(w.to_s.abs()) < 1e6;
+        let fine = w.from_s.is_finite()
+            && w.to_s.is_finite()
+            && w.from_s < w.to_s
+            && w.from_s.abs().max(w.to_s.abs()) < 1e6;
         if !fine {
             return refuse(
                 &format!("the {side} windows end before they begin"),

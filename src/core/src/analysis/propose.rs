@@ -1,5 +1,7 @@
 //! A first question for a recording that arrives without one.
-use crate::recipe::{Channels, Contrast, EventWindow, Evidence, Filter, Keep, Measure, Recipe, Shrink};
+use crate::recipe::{
+    Channels, Contrast, EventWindow, Evidence, Filter, Keep, Measure, Recipe, Shrink,
+};
 use crate::recording::Recording;
 use serde::{Deserialize, Serialize};
 use std::collections::BTreeMap;
@@ -26,33 +28,64 @@ pub fn propose(recording: &Recording) -> Option<Proposal> {
     for event in &recording.events {
         onsets.entry(&event.label).or_default().push(event.onset_s);
     }
-    let (label, times) = onsets.iter().filter(|(_, t)| t.len() >= FEWEST_EVENTS).max_by(|a, b| a.1.len().cmp(&b.1.len()).then(b.0.cmp(a.0)))?;
+    let (label, times) = onsets
+        .iter()
+        .filter(|(_, t)| t.len() >= FEWEST_EVENTS)
+        .max_by(|a, b| a.1.len().cmp(&b.1.len()).then(b.0.cmp(a.0)))?;
     let mut gaps: Vec<f64> = times.windows(2).map(|w| w[1] - w[0]).collect();
     gaps.sort_by(f64::total_cmp);
     let down = |gap: f64| ((gap / 2.0).min(1.0) * 100.0 + 1e-9).floor() / 100.0;
     let shortest = down(gaps[0]);
-    let (d, which) = if shortest >= 0.1 { (shortest, "half the shortest gap") } else { (down(gaps[gaps.len() / 10]), "half the gap that nine in ten exceed") };
+    let (d, which) = if shortest >= 0.1 {
+        (shortest, "half the shortest gap")
+    } else {
+        (
+            down(gaps[gaps.len() / 10]),
+            "half the gap that nine in ten exceed",
+        )
+    };
     let fits = d * recording.rate_hz >= 3.0;
     if !fits {
         return None;
     }
-    let window = |from_s: f64, to_s: f64| EventWindow { event: (*label).to_owned(), from_s, to_s };
+    let window = |from_s: f64, to_s: f64| EventWindow {
+        event: (*label).to_owned(),
+        from_s,
+        to_s,
+    };
     let high_pass = (recording.rate_hz >= HIGH_PASS_FROM_RATE_HZ).then_some(1.0);
-    let length = if d >= 1.0 { "1 s, as the gaps between them allow".to_owned() } else { format!("{d} s, {which} between them") };
-    let filter = if high_pass.is_some() { " A high-pass at 1 Hz takes slow drifts away, which differ between any two windows." } else { "" };
+    let length = if d >= 1.0 {
+        "1 s, as the gaps between them allow".to_owned()
+    } else {
+        format!("{d} s, {which} between them")
+    };
+    let filter = if high_pass.is_some() {
+        " A high-pass at 1 Hz takes slow drifts away, which differ between any two windows."
+    } else {
+        ""
+    };
     Some(Proposal {
         recipe: Recipe {
             teasel_recipe: 1,
             channels: Channels::default(),
-            filter: Filter { high_pass_hz: high_pass, ..Filter::default() },
+            filter: Filter {
+                high_pass_hz: high_pass,
+                ..Filter::default()
+            },
             keep: Keep::default(),
             measure: Measure::default(),
-            contrast: Contrast::Windows { signal: window(0.0, d), reference: window(-d, 0.0) },
+            contrast: Contrast::Windows {
+                signal: window(0.0, d),
+                reference: window(-d, 0.0),
+            },
             shrink: Shrink::default(),
             components: 4,
             evidence: Evidence::default(),
         },
-        why: format!("\u{201c}{label}\u{201d} is the most frequent event ({} times); the windows after and before it last {length}.{filter}", times.len()),
+        why: format!(
+            "\u{201c}{label}\u{201d} is the most frequent event ({} times); the windows after and before it last {length}.{filter}",
+            times.len()
+        ),
     })
 }
 
@@ -63,8 +96,19 @@ mod tests {
     use crate::recording::Event;
 
     fn recording(onsets: &[f64]) -> Recording {
-        let events = onsets.iter().map(|t| Event { onset_s: *t, duration_s: 0.0, label: "buoy".into() }).collect();
-        Recording { rate_hz: 250.0, events, ..Recording::default() }
+        let events = onsets
+            .iter()
+            .map(|t| Event {
+                onset_s: *t,
+                duration_s: 0.0,
+                label: "buoy".into(),
+            })
+            .collect();
+        Recording {
+            rate_hz: 250.0,
+            events,
+            ..Recording::default()
+        }
     }
 
     #[test]
@@ -72,7 +116,10 @@ mod tests {
         let onsets: Vec<f64> = (0..12).map(|i| f64::from(i) * 1.5).collect();
         let proposal = propose(&recording(&onsets)).unwrap();
         let Contrast::Windows { signal, reference } = proposal.recipe.contrast;
-        assert_eq!((signal.from_s, signal.to_s, reference.from_s, reference.to_s), (0.0, 0.75, -0.75, 0.0));
+        assert_eq!(
+            (signal.from_s, signal.to_s, reference.from_s, reference.to_s),
+            (0.0, 0.75, -0.75, 0.0)
+        );
         assert!(proposal.why.contains("12 times"));
         assert_eq!(propose(&recording(&onsets[..9])), None);
     }

@@ -6,7 +6,10 @@ use crate::contrast::windows::{Selection, check, sample_at, select};
 use crate::describe::{course, spectra};
 use crate::error::{Kind, Problem, Result};
 use crate::evidence::FEWEST;
-use crate::evidence::heldout::{Design, FoldFit, Ground, Scores, choose_keep, fit_ground, log_total, log_typical, mean_and_error, score_into, variances};
+use crate::evidence::heldout::{
+    Design, FoldFit, Ground, Scores, choose_keep, fit_ground, log_total, log_typical,
+    mean_and_error, score_into, variances,
+};
 use crate::evidence::permute::{Plan, STREAM_DESCRIBE, arrangement, plan};
 use crate::prepare::{Prepared, Preparing, inspect};
 use crate::recipe::{Contrast, Keep, KeepWord, Measure, Recipe, Shrink, ShrinkWord};
@@ -111,11 +114,16 @@ impl Work {
     }
 
     /// Drops what a changed recipe makes stale; refuses what cannot be begun.
-    pub(super) fn change(&mut self, recording: &Recording, old: &Recipe, new: &Recipe) -> Result<()> {
+    pub(super) fn change(
+        &mut self,
+        recording: &Recording,
+        old: &Recipe,
+        new: &Recipe,
+    ) -> Result<()> {
         let preparation = old.channels != new.channels || old.filter != new.filter;
         if preparation {
             // Refuse before anything is dropped.
-            let cards = inspect_again(self.cards.as_deref(), recording, new);
+            let cards = inspect(recording, new);
             Preparing::new(recording, &cards, new)?;
             self.cards = None;
             self.preparing = None;
@@ -130,12 +138,19 @@ impl Work {
             self.ground = None;
             self.folds.clear();
         }
-        let method = windows || old.measure != new.measure || old.shrink != new.shrink || old.keep != new.keep || old.components != new.components;
+        let method = windows
+            || old.measure != new.measure
+            || old.shrink != new.shrink
+            || old.keep != new.keep
+            || old.components != new.components;
         let folds = old.evidence.folds != new.evidence.folds;
         if method || folds {
             let logs_hold = !windows && old.shrink == new.shrink && old.measure == new.measure;
             if !logs_hold {
-                self.ground.iter_mut().chain(&mut self.folds).for_each(|g| g.logs.clear());
+                self.ground
+                    .iter_mut()
+                    .chain(&mut self.folds)
+                    .for_each(|g| g.logs.clear());
             }
             self.keep = None;
             self.ends = None;
@@ -154,23 +169,43 @@ impl Work {
             self.plan = None;
             self.null.clear();
         }
-        if evidence && old.evidence.bootstrap != new.evidence.bootstrap || old.evidence.seed != new.evidence.seed {
+        if evidence && old.evidence.bootstrap != new.evidence.bootstrap
+            || old.evidence.seed != new.evidence.seed
+        {
             self.described = 0;
         }
-        let curve_holds = !windows && !folds && old.measure == new.measure && old.shrink == new.shrink;
+        let curve_holds =
+            !windows && !folds && old.measure == new.measure && old.shrink == new.shrink;
         if !curve_holds {
             self.curve = CurveWork::default();
         }
-        cards::forget(&mut self.sheet, new, &cards::Stale { preparation, windows, method, evidence: method || evidence, curve: !curve_holds });
+        cards::forget(
+            &mut self.sheet,
+            new,
+            &cards::Stale {
+                preparation,
+                windows,
+                method,
+                evidence: method || evidence,
+                curve: !curve_holds,
+            },
+        );
         Ok(())
     }
 
     fn enough(&self) -> bool {
-        self.selection.as_ref().is_some_and(|s| s.repetitions() >= FEWEST)
+        self.selection
+            .as_ref()
+            .is_some_and(|s| s.repetitions() >= FEWEST)
     }
 
     fn method(&self, recipe: &Recipe) -> Method {
-        Method { measure: recipe.measure, shrink: recipe.shrink, components: recipe.components, folds: recipe.evidence.folds }
+        Method {
+            measure: recipe.measure,
+            shrink: recipe.shrink,
+            components: recipe.components,
+            folds: recipe.evidence.folds,
+        }
     }
 
     fn next(&self, recipe: &Recipe) -> Task {
@@ -180,13 +215,19 @@ impl Work {
         if self.prepared.is_none() {
             return Task::Prepare;
         }
-        let Some(selection) = &self.selection else { return Task::Select };
+        let Some(selection) = &self.selection else {
+            return Task::Select;
+        };
         let windows = selection.windows.len();
         if self.covariances.packed.len() < windows {
             return Task::Covariances;
         }
-        let Some(ground) = self.ground.as_ref().filter(|g| self.whole(g, recipe)) else { return Task::Ground };
-        let Some(keep) = self.keep else { return Task::Keep };
+        let Some(ground) = self.ground.as_ref().filter(|g| self.whole(g, recipe)) else {
+            return Task::Ground;
+        };
+        let Some(keep) = self.keep else {
+            return Task::Keep;
+        };
         if !logs_ready(ground, keep, recipe) {
             return Task::Logs;
         }
@@ -202,8 +243,18 @@ impl Work {
         let folds = self.design.as_ref().map_or(0, |d| d.folds);
         if self.fits.len() < folds {
             let f = self.fits.len();
-            let Some(fold) = self.folds.get(f).filter(|g| self.whole(g, recipe)) else { return Task::FoldGround(f) };
-            return if self.grid_for(fold, keep, recipe).iter().all(|c| logs_ready(fold, *c, recipe)) { Task::FoldFit(f) } else { Task::FoldLogs(f) };
+            let Some(fold) = self.folds.get(f).filter(|g| self.whole(g, recipe)) else {
+                return Task::FoldGround(f);
+            };
+            return if self
+                .grid_for(fold, keep, recipe)
+                .iter()
+                .all(|c| logs_ready(fold, *c, recipe))
+            {
+                Task::FoldFit(f)
+            } else {
+                Task::FoldLogs(f)
+            };
         }
         if !self.summarised {
             return Task::Summarise;
@@ -211,13 +262,18 @@ impl Work {
         if self.plan.is_none_or(|p| self.null.len() < p.count) {
             return Task::Permute;
         }
-        if !self.curve.done { Task::Curve } else { Task::Nothing }
+        if !self.curve.done {
+            Task::Curve
+        } else {
+            Task::Nothing
+        }
     }
 
     /// Whether a ground holds all its windows.
     fn whole(&self, ground: &Ground, recipe: &Recipe) -> bool {
         let windows = self.covariances.packed.len();
-        ground.space.covariances.len() == windows && (!wants_fourth(recipe) || ground.fourth.len() == windows)
+        ground.space.covariances.len() == windows
+            && (!wants_fourth(recipe) || ground.fourth.len() == windows)
     }
 
     pub(super) fn finished(&self, recipe: &Recipe) -> bool {
@@ -231,12 +287,24 @@ impl Work {
                 let found = inspect(recording, recipe);
                 self.sheet.channels = found.clone();
                 self.cards = Some(found);
-                Ok(progress(Stage::Preparing, 0, recording.channels.len() as u64, true))
+                Ok(progress(
+                    Stage::Preparing,
+                    0,
+                    recording.channels.len() as u64,
+                    true,
+                ))
             }
             Task::Prepare => self.prepare(recording, recipe),
             Task::Select => {
-                let Some(prepared) = &self.prepared else { return Err(lost()) };
-                let selection = select(&recipe.contrast, &recording.events, &prepared.stretches, prepared.rate_hz)?;
+                let Some(prepared) = &self.prepared else {
+                    return Err(lost());
+                };
+                let selection = select(
+                    &recipe.contrast,
+                    &recording.events,
+                    &prepared.stretches,
+                    prepared.rate_hz,
+                )?;
                 self.sheet.windows = Some(selection.card.clone());
                 let all = selection.windows.len() as u64;
                 self.selection = Some(selection);
@@ -247,9 +315,17 @@ impl Work {
             Task::Keep => self.choose_keep(recipe),
             Task::Logs => {
                 let keep = self.keep.unwrap_or(2);
-                let Some(ground) = &mut self.ground else { return Err(lost()) };
-                let done = push_logs(ground, keep, self.method(recipe).rho());
-                Ok(progress(Stage::Fitting, done, self.covariances.packed.len() as u64, false))
+                let rho = self.method(recipe).rho();
+                let Some(ground) = &mut self.ground else {
+                    return Err(lost());
+                };
+                let done = push_logs(ground, keep, rho);
+                Ok(progress(
+                    Stage::Fitting,
+                    done,
+                    self.covariances.packed.len() as u64,
+                    false,
+                ))
             }
             Task::Solve => self.solve(recipe),
             Task::Describe => self.describe(recording, recipe),
@@ -282,20 +358,26 @@ impl Work {
             let cards = self.cards.as_deref().unwrap_or_default();
             self.preparing = Some(Preparing::new(recording, cards, recipe)?);
         }
-        let Some(preparing) = &mut self.preparing else { return Err(lost()) };
+        let Some(preparing) = &mut self.preparing else {
+            return Err(lost());
+        };
         let more = preparing.step(recording);
         let (done, of) = preparing.progress();
         if more && done < of {
             return Ok(progress(Stage::Preparing, done as u64, of as u64, false));
         }
-        let Some(prepared) = self.preparing.take().and_then(Preparing::finish) else { return Err(lost()) };
+        let Some(prepared) = self.preparing.take().and_then(Preparing::finish) else {
+            return Err(lost());
+        };
         self.sheet.preparation = Some(prepared.card.clone());
         self.prepared = Some(prepared);
         Ok(progress(Stage::Preparing, of as u64, of as u64, true))
     }
 
     fn push_covariances(&mut self) -> Result<Progress> {
-        let (Some(prepared), Some(selection)) = (&self.prepared, &self.selection) else { return Err(lost()) };
+        let (Some(prepared), Some(selection)) = (&self.prepared, &self.selection) else {
+            return Err(lost());
+        };
         let m = prepared.samples.len() as f64;
         let first = self.covariances.packed.len();
         let all = selection.windows.len();
@@ -303,8 +385,18 @@ impl Work {
         for window in selection.windows.iter().skip(first).take(bite) {
             self.covariances.push(&prepared.samples, window);
         }
-        if self.covariances.packed.iter().flatten().any(|x| !x.is_finite()) {
-            return Err(Problem::new(Kind::Contrast, "the windows hold values that are not numbers", "leave the channel out that holds them"));
+        if self
+            .covariances
+            .packed
+            .iter()
+            .flatten()
+            .any(|x| !x.is_finite())
+        {
+            return Err(Problem::new(
+                Kind::Contrast,
+                "the windows hold values that are not numbers",
+                "leave the channel out that holds them",
+            ));
         }
         let done = self.covariances.packed.len();
         if done == all {
@@ -326,14 +418,26 @@ impl Work {
         if self.ground.is_none() {
             let ground = Ground::new(&self.covariances, limit, vec![true; all]);
             if ground.space.dimensions() < 2 {
-                return Err(Problem::new(Kind::Contrast, "the channels span fewer than two dimensions in these windows", "use more channels, or longer windows")
-                    .at("compression")
-                    .expected_found("a rank of at least 2", ground.space.dimensions()));
+                return Err(Problem::new(
+                    Kind::Contrast,
+                    "the channels span fewer than two dimensions in these windows",
+                    "use more channels, or longer windows",
+                )
+                .at("compression")
+                .expected_found("a rank of at least 2", ground.space.dimensions()));
             }
             self.ground = Some(ground);
         }
-        let (Some(ground), Some(prepared), Some(selection)) = (&mut self.ground, &self.prepared, &self.selection) else { return Err(lost()) };
-        let done = push_space(ground, &self.covariances, wants_fourth(recipe).then_some((&prepared.samples[..], &selection.windows[..])));
+        let (Some(ground), Some(prepared), Some(selection)) =
+            (&mut self.ground, &self.prepared, &self.selection)
+        else {
+            return Err(lost());
+        };
+        let done = push_space(
+            ground,
+            &self.covariances,
+            wants_fourth(recipe).then_some((&prepared.samples[..], &selection.windows[..])),
+        );
         Ok(progress(Stage::Fitting, done as u64 / 2, all as u64, false))
     }
 
@@ -342,12 +446,22 @@ impl Work {
         let all = self.covariances.packed.len() as u64;
         let method = self.method(recipe);
         if self.design.is_none() {
-            let Some(selection) = &self.selection else { return Err(lost()) };
+            let Some(selection) = &self.selection else {
+                return Err(lost());
+            };
             let fold = selection.folds(recipe.evidence.folds);
             let folds = fold.iter().max().map_or(0, |f| f + 1);
-            self.design = Some(Design { paired: selection.paired, signal: selection.sides(), trial: selection.windows.iter().map(|w| w.trial).collect(), fold, folds });
+            self.design = Some(Design {
+                paired: selection.paired,
+                signal: selection.sides(),
+                trial: selection.windows.iter().map(|w| w.trial).collect(),
+                fold,
+                folds,
+            });
         }
-        let (Some(ground), Some(design)) = (&mut self.ground, &self.design) else { return Err(lost()) };
+        let (Some(ground), Some(design)) = (&mut self.ground, &self.design) else {
+            return Err(lost());
+        };
         let dimensions = ground.space.dimensions();
         self.keep = match recipe.keep {
             Keep::Number(keep) => Some(keep.min(dimensions)),
@@ -358,7 +472,13 @@ impl Work {
                     push_logs(ground, *c, method.rho());
                     return Ok(progress(Stage::Fitting, all / 2, all, false));
                 }
-                Some(choose_keep(ground, &grid, &self.covariances.weights, &design.signal, &method))
+                Some(choose_keep(
+                    ground,
+                    &grid,
+                    &self.covariances.weights,
+                    &design.signal,
+                    &method,
+                ))
             }
         };
         Ok(progress(Stage::Fitting, all / 2, all, false))
@@ -366,12 +486,30 @@ impl Work {
 
     fn solve(&mut self, recipe: &Recipe) -> Result<Progress> {
         let method = self.method(recipe);
-        let (Some(ground), Some(design), Some(keep)) = (&self.ground, &self.design, self.keep) else { return Err(lost()) };
-        let labels = Labels { signal: &design.signal, train: &ground.train };
-        let ends = fit(ground.view(&self.covariances.weights, keep), labels, &method).ok_or_else(|| {
-            Problem::new(Kind::Contrast, "the reference covariance cannot be inverted", "choose shrink \"auto\" or a number above 0, or keep fewer dimensions")
-                .at("total measure")
-                .expected_found("a positive definite covariance", format!("a singular one at C = {keep}, shrink {:?}", recipe.shrink))
+        let (Some(ground), Some(design), Some(keep)) = (&self.ground, &self.design, self.keep)
+        else {
+            return Err(lost());
+        };
+        let labels = Labels {
+            signal: &design.signal,
+            train: &ground.train,
+        };
+        let ends = fit(
+            ground.view(&self.covariances.weights, keep),
+            labels,
+            &method,
+        )
+        .ok_or_else(|| {
+            Problem::new(
+                Kind::Contrast,
+                "the reference covariance cannot be inverted",
+                "choose shrink \"auto\" or a number above 0, or keep fewer dimensions",
+            )
+            .at("total measure")
+            .expected_found(
+                "a positive definite covariance",
+                format!("a singular one at C = {keep}, shrink {:?}", recipe.shrink),
+            )
         })?;
         self.ends = Some(ends);
         cards::solved(self, recipe);
@@ -381,35 +519,95 @@ impl Work {
 
     /// Spectra, course and single trials of the next component: the first of each end, then the others.
     fn describe(&mut self, recording: &Recording, recipe: &Recipe) -> Result<Progress> {
-        let (Some(prepared), Some(selection)) = (&self.prepared, &self.selection) else { return Err(lost()) };
+        let (Some(prepared), Some(selection)) = (&self.prepared, &self.selection) else {
+            return Err(lost());
+        };
         let (up, down) = (self.sheet.stronger.len(), self.sheet.weaker.len());
         let (stronger, index) = describing(self.described, up, down);
-        let component = if stronger { &mut self.sheet.stronger[index] } else { &mut self.sheet.weaker[index] };
+        let component = if stronger {
+            &mut self.sheet.stronger[index]
+        } else {
+            &mut self.sheet.weaker[index]
+        };
         let Contrast::Windows { signal, reference } = &recipe.contrast;
         let rate = prepared.rate_hz;
-        let span = course_span(signal.event == reference.event, [signal.from_s, signal.to_s], [reference.from_s, reference.to_s]);
+        let span = course_span(
+            signal.event == reference.event,
+            [signal.from_s, signal.to_s],
+            [reference.from_s, reference.to_s],
+        );
         let onsets: Vec<(usize, f64)> = recording
             .events
             .iter()
             .filter(|e| e.label == signal.event)
             .filter_map(|e| Some((sample_at(&prepared.stretches, rate, e.onset_s)?, e.onset_s)))
             .collect();
-        let side = |wanted: bool| -> Vec<(usize, usize)> { selection.windows.iter().filter(|w| w.signal == wanted).map(|w| (w.first, w.count)).collect() };
+        let side = |wanted: bool| -> Vec<(usize, usize)> {
+            selection
+                .windows
+                .iter()
+                .filter(|w| w.signal == wanted)
+                .map(|w| (w.first, w.count))
+                .collect()
+        };
         let (signals, references) = (side(true), side(false));
         let kept: Vec<(usize, f64)> = if selection.paired {
-            let used: Vec<f64> = selection.windows.iter().filter(|w| w.signal).map(|w| w.onset_s).collect();
-            onsets.iter().copied().filter(|o| used.contains(&o.1)).collect()
+            let used: Vec<f64> = selection
+                .windows
+                .iter()
+                .filter(|w| w.signal)
+                .map(|w| w.onset_s)
+                .collect();
+            onsets
+                .iter()
+                .copied()
+                .filter(|o| used.contains(&o.1))
+                .collect()
         } else {
             onsets
         };
-        let series = partial_series(prepared, &component.filter, &signals, &references, &kept, span);
-        let (count, seed) = (recipe.evidence.bootstrap, recipe.evidence.seed ^ STREAM_DESCRIBE << 32);
+        let series = partial_series(
+            prepared,
+            &component.filter,
+            &signals,
+            &references,
+            &kept,
+            span,
+        );
+        let (count, seed) = (
+            recipe.evidence.bootstrap,
+            recipe.evidence.seed ^ STREAM_DESCRIBE << 32,
+        );
         let found = spectra::of_component(&series, &signals, &references, rate, count, seed);
-        component.peak_hz = spectra::peak_hz(&found, if stronger { spectra::End::Stronger } else { spectra::End::Weaker });
+        component.peak_hz = spectra::peak_hz(
+            &found,
+            if stronger {
+                spectra::End::Stronger
+            } else {
+                spectra::End::Weaker
+            },
+        );
         component.spectra = Some(found);
-        let baseline = if selection.paired && kept.len() == references.len() { course::Baseline::Paired(&references) } else { course::Baseline::Pooled(&references) };
-        let looked = course::Span { from_s: span[0], to_s: span[1] };
-        if let Some((c, image)) = course::of_component(&series, &prepared.stretches, &signal.event, &kept, baseline, looked, rate, count, seed) {
+        let baseline = if selection.paired && kept.len() == references.len() {
+            course::Baseline::Paired(&references)
+        } else {
+            course::Baseline::Pooled(&references)
+        };
+        let looked = course::Span {
+            from_s: span[0],
+            to_s: span[1],
+        };
+        if let Some((c, image)) = course::of_component(
+            &series,
+            &prepared.stretches,
+            &signal.event,
+            &kept,
+            baseline,
+            looked,
+            rate,
+            count,
+            seed,
+        ) {
             component.course = Some(c);
             component.image = Some(image);
         }
@@ -417,7 +615,12 @@ impl Work {
         // The first of both ends is a first result; then again when all are there.
         let first = self.described == 2.min(up + down);
         let all = self.covariances.packed.len() as u64;
-        Ok(progress(Stage::Fitting, all, all, first || self.described == up + down))
+        Ok(progress(
+            Stage::Fitting,
+            all,
+            all,
+            first || self.described == up + down,
+        ))
     }
 
     fn fold_progress(&self, f: usize, part: u64) -> Progress {
@@ -427,11 +630,20 @@ impl Work {
 
     fn push_fold_ground(&mut self, f: usize, recipe: &Recipe) -> Result<Progress> {
         let limit = self.limit(recipe);
-        let (Some(design), Some(prepared), Some(selection)) = (&self.design, &self.prepared, &self.selection) else { return Err(lost()) };
+        let (Some(design), Some(prepared), Some(selection)) =
+            (&self.design, &self.prepared, &self.selection)
+        else {
+            return Err(lost());
+        };
         if self.folds.len() <= f {
-            self.folds.push(Ground::new(&self.covariances, limit, design.train(f)));
+            self.folds
+                .push(Ground::new(&self.covariances, limit, design.train(f)));
         }
-        push_space(&mut self.folds[f], &self.covariances, wants_fourth(recipe).then_some((&prepared.samples[..], &selection.windows[..])));
+        push_space(
+            &mut self.folds[f],
+            &self.covariances,
+            wants_fourth(recipe).then_some((&prepared.samples[..], &selection.windows[..])),
+        );
         Ok(self.fold_progress(f, 1))
     }
 
@@ -445,55 +657,110 @@ impl Work {
 
     fn fit_fold(&mut self, f: usize, recipe: &Recipe) -> Result<Progress> {
         let method = self.method(recipe);
-        let (Some(design), Some(keep)) = (&self.design, self.keep) else { return Err(lost()) };
+        let (Some(design), Some(keep)) = (&self.design, self.keep) else {
+            return Err(lost());
+        };
         let fold = &self.folds[f];
         let keep = match recipe.keep {
-            Keep::Word(KeepWord::Best) => choose_keep(fold, &self.grid_for(fold, keep, recipe), &self.covariances.weights, &design.signal, &method),
+            Keep::Word(KeepWord::Best) => choose_keep(
+                fold,
+                &self.grid_for(fold, keep, recipe),
+                &self.covariances.weights,
+                &design.signal,
+                &method,
+            ),
             _ => keep.min(fold.space.dimensions()),
         };
-        let fitted = fit_ground(fold, keep, &self.covariances, design, &method).ok_or_else(|| singular_fold(f))?;
+        let fitted = fit_ground(fold, keep, &self.covariances, design, &method)
+            .ok_or_else(|| singular_fold(f))?;
         self.fits.push(fitted);
         Ok(self.fold_progress(f, 3))
     }
 
     fn permute(&mut self, recipe: &Recipe) -> Result<Progress> {
         let method = self.method(recipe);
-        let (Some(ground), Some(design), Some(keep)) = (&self.ground, &self.design, self.keep) else { return Err(lost()) };
-        let plan = *self.plan.get_or_insert_with(|| plan(design, recipe.evidence.permutations));
+        let (Some(ground), Some(design), Some(keep)) = (&self.ground, &self.design, self.keep)
+        else {
+            return Err(lost());
+        };
+        let plan = *self
+            .plan
+            .get_or_insert_with(|| plan(design, recipe.evidence.permutations));
         let best = recipe.keep == Keep::Word(KeepWord::Best);
-        let grid = if best { best_grid(ground.space.dimensions()) } else { Vec::new() };
-        let bite = bites(permutation_cost(keep, self.covariances.packed.len(), &grid, &method));
+        let grid = if best {
+            best_grid(ground.space.dimensions())
+        } else {
+            Vec::new()
+        };
+        let bite = bites(permutation_cost(
+            keep,
+            self.covariances.packed.len(),
+            &grid,
+            &method,
+        ));
         let first = self.null.len();
         for i in first..plan.count.min(first + bite) {
             let signal = arrangement(design, plan, best, recipe.evidence.seed, i);
-            let c = if best { choose_keep(ground, &grid, &self.covariances.weights, &signal, &method) } else { keep };
-            let labels = Labels { signal: &signal, train: &ground.train };
-            self.null.push(extremes(ground.view(&self.covariances.weights, c), labels, &method).unwrap_or((f64::INFINITY, 0.0)));
+            let c = if best {
+                choose_keep(ground, &grid, &self.covariances.weights, &signal, &method)
+            } else {
+                keep
+            };
+            let labels = Labels {
+                signal: &signal,
+                train: &ground.train,
+            };
+            self.null.push(
+                extremes(ground.view(&self.covariances.weights, c), labels, &method)
+                    .unwrap_or((f64::INFINITY, 0.0)),
+            );
         }
         let finished = self.null.len() >= plan.count;
         if finished {
             cards::permuted(self, recipe);
         }
-        Ok(progress(Stage::Permuting, self.null.len() as u64, plan.count as u64, finished))
+        Ok(progress(
+            Stage::Permuting,
+            self.null.len() as u64,
+            plan.count as u64,
+            finished,
+        ))
     }
 
     /// One part (the whole, or one fold) at one value of C, in bites.
     fn curve(&mut self, recipe: &Recipe) -> Result<Progress> {
-        let method = Method { components: 1, ..self.method(recipe) };
-        let (Some(ground), Some(design), Some(keep)) = (&mut self.ground, &self.design, self.keep) else { return Err(lost()) };
-        let grid = self.curve.grid.get_or_insert_with(|| curve_grid(ground.space.dimensions(), keep));
+        let method = Method {
+            components: 1,
+            ..self.method(recipe)
+        };
+        let (Some(ground), Some(design), Some(keep)) = (&mut self.ground, &self.design, self.keep)
+        else {
+            return Err(lost());
+        };
+        let grid = self
+            .curve
+            .grid
+            .get_or_insert_with(|| curve_grid(ground.space.dimensions(), keep));
         let of = (grid.len() * (self.folds.len() + 1)) as u64;
         let at = self.curve.held_out.len();
         let c = grid[at];
         let part = self.curve.part;
         let step = (at * (self.folds.len() + 1) + part) as u64;
-        let target = if part == 0 { ground } else { &mut self.folds[part - 1] };
+        let target = if part == 0 {
+            ground
+        } else {
+            &mut self.folds[part - 1]
+        };
         if !logs_ready(target, c, recipe) {
             push_logs(target, c, method.rho());
             return Ok(progress(Stage::Curve, step, of, false));
         }
-        let labels = Labels { signal: &design.signal, train: &target.train };
-        let ends = fit(target.view(&self.covariances.weights, c), labels, &method).ok_or_else(|| singular_fold(part))?;
+        let labels = Labels {
+            signal: &design.signal,
+            train: &target.train,
+        };
+        let ends = fit(target.view(&self.covariances.weights, c), labels, &method)
+            .ok_or_else(|| singular_fold(part))?;
         let u = &ends.stronger[0].u;
         if part == 0 {
             let v = variances(&target.space, u);
@@ -504,15 +771,28 @@ impl Work {
             self.curve.fitted.push(log.exp());
             self.curve.scores = vec![f64::NAN; v.len()];
         } else {
-            score_into(&mut self.curve.scores, target, &self.covariances.weights, design, part - 1, u);
+            score_into(
+                &mut self.curve.scores,
+                target,
+                &self.covariances.weights,
+                design,
+                part - 1,
+                u,
+            );
         }
-        let wanted = Some(c.min(target.space.dimensions())) == Some(keep.min(target.space.dimensions()));
+        let wanted =
+            Some(c.min(target.space.dimensions())) == Some(keep.min(target.space.dimensions()));
         if !wanted && recipe.keep != Keep::Word(KeepWord::Best) {
             target.logs.remove(&c.min(target.space.dimensions()));
         }
         self.curve.part += 1;
         if self.curve.part > self.folds.len() {
-            let (mean, error) = mean_and_error(&self.curve.scores, &self.covariances.weights, design, recipe.measure);
+            let (mean, error) = mean_and_error(
+                &self.curve.scores,
+                &self.covariances.weights,
+                design,
+                recipe.measure,
+            );
             self.curve.held_out.push(mean.exp());
             self.curve.log_se.push(error);
             self.curve.part = 0;
@@ -544,37 +824,72 @@ impl Work {
         if samples.is_empty() {
             return None;
         }
-        let names = (1..=self.sheet.stronger.len()).map(|i| format!("stronger {i}")).chain((1..=self.sheet.weaker.len()).map(|i| format!("weaker {i}"))).collect();
-        Some(Series { names, samples, rate_hz: prepared.rate_hz, stretches: prepared.stretches.clone() })
+        let names = (1..=self.sheet.stronger.len())
+            .map(|i| format!("stronger {i}"))
+            .chain((1..=self.sheet.weaker.len()).map(|i| format!("weaker {i}")))
+            .collect();
+        Some(Series {
+            names,
+            samples,
+            rate_hz: prepared.rate_hz,
+            stretches: prepared.stretches.clone(),
+        })
     }
 }
 
 fn progress(stage: Stage, done: u64, of: u64, news: bool) -> Progress {
-    Progress { stage, done, of, news }
+    Progress {
+        stage,
+        done,
+        of,
+        news,
+    }
 }
 
 /// A state that the order of tasks rules out; said rather than panicked about.
 fn lost() -> Problem {
-    Problem::new(Kind::Contrast, "a step began before what it needs", "open the recording again; this is a fault of the program")
+    Problem::new(
+        Kind::Contrast,
+        "a step began before what it needs",
+        "open the recording again; this is a fault of the program",
+    )
 }
 
 fn singular_fold(f: usize) -> Problem {
-    Problem::new(Kind::Contrast, "the reference covariance of a fold cannot be inverted", "choose shrink \"auto\" or a number above 0, or keep fewer dimensions")
-        .at(format!("fold {}", f + 1))
-        .expected_found("a positive definite covariance", "a singular one")
+    Problem::new(
+        Kind::Contrast,
+        "the reference covariance of a fold cannot be inverted",
+        "choose shrink \"auto\" or a number above 0, or keep fewer dimensions",
+    )
+    .at(format!("fold {}", f + 1))
+    .expected_found("a positive definite covariance", "a singular one")
 }
 
 /// Component number `at` of the describing order: first stronger, first weaker, other stronger, other weaker.
 fn describing(at: usize, up: usize, down: usize) -> (bool, usize) {
-    let firsts: Vec<(bool, usize)> = [(true, up), (false, down)].into_iter().filter(|x| x.1 > 0).map(|x| (x.0, 0)).collect();
-    let others = (1..up).map(|i| (true, i)).chain((1..down).map(|i| (false, i)));
-    firsts.into_iter().chain(others).nth(at).unwrap_or((up > 0, 0))
+    let firsts: Vec<(bool, usize)> = [(true, up), (false, down)]
+        .into_iter()
+        .filter(|x| x.1 > 0)
+        .map(|x| (x.0, 0))
+        .collect();
+    let others = (1..up)
+        .map(|i| (true, i))
+        .chain((1..down).map(|i| (false, i)));
+    firsts
+        .into_iter()
+        .chain(others)
+        .nth(at)
+        .unwrap_or((up > 0, 0))
 }
 
 /// Seconds around the event that are drawn: both windows and a quarter of their reach beyond, at least 0.3 s (paired); the
 /// signal window and as much before it (unpaired).
 fn course_span(paired: bool, signal: [f64; 2], reference: [f64; 2]) -> [f64; 2] {
-    let (from, to) = if paired { (signal[0].min(reference[0]), signal[1].max(reference[1])) } else { (signal[0].min(-(signal[1] - signal[0])), signal[1]) };
+    let (from, to) = if paired {
+        (signal[0].min(reference[0]), signal[1].max(reference[1]))
+    } else {
+        (signal[0].min(-(signal[1] - signal[0])), signal[1])
+    };
     let more = (0.25 * (to - from)).clamp(0.1, 0.5);
     [from - more, to + more]
 }
@@ -585,7 +900,11 @@ fn wants_fourth(recipe: &Recipe) -> bool {
 
 /// Whether the logarithms for C are there (the total measure needs none).
 fn logs_ready(ground: &Ground, keep: usize, recipe: &Recipe) -> bool {
-    recipe.measure == Measure::Total || ground.logs.get(&keep.min(ground.space.dimensions())).is_some_and(|l| l.len() == ground.space.covariances.len())
+    recipe.measure == Measure::Total
+        || ground
+            .logs
+            .get(&keep.min(ground.space.dimensions()))
+            .is_some_and(|l| l.len() == ground.space.covariances.len())
 }
 
 fn push_logs(ground: &mut Ground, keep: usize, rho: f64) -> u64 {
@@ -599,7 +918,11 @@ fn push_logs(ground: &mut Ground, keep: usize, rho: f64) -> u64 {
 }
 
 /// Whitens the next windows; also their fourth powers, where asked for.
-fn push_space(ground: &mut Ground, all: &Covariances, fourth: Option<(&[Vec<f32>], &[crate::contrast::windows::Window])>) -> usize {
+fn push_space(
+    ground: &mut Ground,
+    all: &Covariances,
+    fourth: Option<(&[Vec<f32>], &[crate::contrast::windows::Window])>,
+) -> usize {
     let (m, r) = (all.channels as f64, ground.space.dimensions() as f64);
     for _ in 0..bites(2.0 * m * r * (m + r)) {
         let more = ground.space.push_next(all);
@@ -613,7 +936,11 @@ fn push_space(ground: &mut Ground, all: &Covariances, fourth: Option<(&[Vec<f32>
 
 fn permutation_cost(keep: usize, windows: usize, grid: &[usize], method: &Method) -> f64 {
     let one = |c: usize| windows as f64 * (c * c) as f64 + 6.0 * (c as f64).powi(3) + 1000.0;
-    let fits = if method.measure == Measure::Total { 4.0 + 24.0 * method.folds as f64 } else { 1.0 };
+    let fits = if method.measure == Measure::Total {
+        4.0 + 24.0 * method.folds as f64
+    } else {
+        1.0
+    };
     fits * (one(keep) + method.folds as f64 * grid.iter().map(|c| 2.0 * one(*c)).sum::<f64>())
 }
 
@@ -622,7 +949,9 @@ fn curve_grid(most: usize, keep: usize) -> Vec<usize> {
     let mut grid: Vec<usize> = if most <= 18 {
         (2..=most).collect()
     } else {
-        (0..18).map(|i| (2.0 * (most as f64 / 2.0).powf(f64::from(i) / 17.0)).round() as usize).collect()
+        (0..18)
+            .map(|i| (2.0 * (most as f64 / 2.0).powf(f64::from(i) / 17.0)).round() as usize)
+            .collect()
     };
     grid.push(keep.min(most));
     grid.sort_unstable();
@@ -633,13 +962,22 @@ fn curve_grid(most: usize, keep: usize) -> Vec<usize> {
 /// The values of C that `keep: "best"` chooses from.
 fn best_grid(most: usize) -> Vec<usize> {
     let most = most.min(BEST_LIMIT);
-    let mut grid: Vec<usize> = (0..8).map(|i| (2.0 * (most as f64 / 2.0).powf(f64::from(i) / 7.0)).round() as usize).collect();
+    let mut grid: Vec<usize> = (0..8)
+        .map(|i| (2.0 * (most as f64 / 2.0).powf(f64::from(i) / 7.0)).round() as usize)
+        .collect();
     grid.dedup();
     grid
 }
 
 /// The component where windows and courses need it, 0 elsewhere.
-fn partial_series(prepared: &Prepared, filter: &[f64], signals: &[(usize, usize)], references: &[(usize, usize)], onsets: &[(usize, f64)], span: [f64; 2]) -> Vec<f64> {
+fn partial_series(
+    prepared: &Prepared,
+    filter: &[f64],
+    signals: &[(usize, usize)],
+    references: &[(usize, usize)],
+    onsets: &[(usize, f64)],
+    span: [f64; 2],
+) -> Vec<f64> {
     let all = prepared.samples.first().map_or(0, Vec::len);
     let rate = prepared.rate_hz;
     // The course smooths power over 0.2 s: half of that is needed beyond its ends.
@@ -649,7 +987,12 @@ fn partial_series(prepared: &Prepared, filter: &[f64], signals: &[(usize, usize)
         let to = (*at as f64 + (span[1] + beyond) * rate).ceil().max(0.0) as usize + 2;
         (from.min(all), to.min(all))
     });
-    let mut ranges: Vec<(usize, usize)> = signals.iter().chain(references).map(|(first, count)| (*first, first + count)).chain(around).collect();
+    let mut ranges: Vec<(usize, usize)> = signals
+        .iter()
+        .chain(references)
+        .map(|(first, count)| (*first, first + count))
+        .chain(around)
+        .collect();
     ranges.sort_unstable();
     let mut out = vec![0.0; all];
     let mut done = 0;
@@ -676,9 +1019,4 @@ fn add_projection(out: &mut [f64], prepared: &Prepared, filter: &[f64], from: us
         }
         start = end;
     }
-}
-
-/// Channel cards for a changed recipe, to try a preparation before anything is dropped.
-fn inspect_again(known: Option<&[ChannelCard]>, recording: &Recording, recipe: &Recipe) -> Vec<ChannelCard> {
-    known.map_or_else(|| inspect(recording, recipe), |cards| crate::prepare::restate(cards, recipe))
 }

@@ -2,7 +2,9 @@
 //!
 //! A [`Direction`] u lives in the whitened space; its filter is w = V diag(e)^(−1/2) u ([`Space::filter`]) and its variance in
 //! window k is uᵀ C_k u. That holds for both measures: a generalised eigenvector w_V in V_C coordinates is u = diag(e)^(1/2) w_V.
-use super::linalg::{Packed, add_scaled, eigenvalues, eigh, generalised_eigh, packed_len, quadratic, unpack};
+use super::linalg::{
+    Packed, add_scaled, eigenvalues, eigh, generalised_eigh, packed_len, quadratic, unpack,
+};
 use super::space::{Space, pooled};
 use crate::recipe::{Measure, Shrink, ShrinkWord};
 use nalgebra::DMatrix;
@@ -82,10 +84,22 @@ pub struct View<'a> {
 /// D = mean_S L − mean_R L over the training windows, packed.
 pub fn mean_log_difference(logs: &[Packed], labels: Labels<'_>, keep: usize) -> Packed {
     let mut d = vec![0.0; packed_len(keep)];
-    let count = |side: bool| (0..logs.len()).filter(|k| labels.train[*k] && labels.signal[*k] == side).count();
+    let count = |side: bool| {
+        (0..logs.len())
+            .filter(|k| labels.train[*k] && labels.signal[*k] == side)
+            .count()
+    };
     let (ns, nr) = (count(true).max(1) as f64, count(false).max(1) as f64);
     for (k, log) in logs.iter().enumerate().filter(|(k, _)| labels.train[*k]) {
-        add_scaled(&mut d, log, if labels.signal[k] { 1.0 / ns } else { -1.0 / nr });
+        add_scaled(
+            &mut d,
+            log,
+            if labels.signal[k] {
+                1.0 / ns
+            } else {
+                -1.0 / nr
+            },
+        );
     }
     d
 }
@@ -94,7 +108,9 @@ pub fn mean_log_difference(logs: &[Packed], labels: Labels<'_>, keep: usize) -> 
 fn sides(view: View<'_>, labels: Labels<'_>) -> (DMatrix<f64>, DMatrix<f64>) {
     let len = packed_len(view.keep);
     let side = |signal: bool| {
-        let packed = pooled(&view.space.covariances, view.weights, len, |k| labels.train[k] && labels.signal[k] == signal);
+        let packed = pooled(&view.space.covariances, view.weights, len, |k| {
+            labels.train[k] && labels.signal[k] == signal
+        });
         let mut full = unpack(&packed, view.keep);
         for i in 0..view.keep {
             for j in 0..view.keep {
@@ -131,8 +147,15 @@ fn typical(view: View<'_>, labels: Labels<'_>, method: &Method) -> Ends {
     let d = mean_log_difference(view.logs, labels, view.keep);
     let (values, vectors) = eigh(&unpack(&d, view.keep));
     let wanted = method.components.min(view.keep);
-    let direction = |i: usize| Direction { u: vectors.column(i).iter().copied().collect(), statistic: values[i].exp() };
-    Ends { stronger: (0..wanted).map(direction).collect(), weaker: (0..wanted).map(|i| direction(view.keep - 1 - i)).collect(), shrinkage: method.rho() }
+    let direction = |i: usize| Direction {
+        u: vectors.column(i).iter().copied().collect(),
+        statistic: values[i].exp(),
+    };
+    Ends {
+        stronger: (0..wanted).map(direction).collect(),
+        weaker: (0..wanted).map(|i| direction(view.keep - 1 - i)).collect(),
+        shrinkage: method.rho(),
+    }
 }
 
 /// Largest and smallest statistic alone, for permutations.
@@ -145,7 +168,10 @@ pub fn extremes(view: View<'_>, labels: Labels<'_>, method: &Method) -> Option<(
         }
         Measure::Total => {
             let ends = total(view, labels, gamma(view, labels, method), 1)?;
-            Some((ends.stronger.first()?.statistic, ends.weaker.first()?.statistic))
+            Some((
+                ends.stronger.first()?.statistic,
+                ends.weaker.first()?.statistic,
+            ))
         }
     }
 }
@@ -156,12 +182,21 @@ fn total(view: View<'_>, labels: Labels<'_>, gamma: f64, components: usize) -> O
     let (down, down_vectors) = generalised_eigh(&r, &shrunk(&s, gamma))?;
     let wanted = components.min(view.keep);
     let direction = |vectors: &DMatrix<f64>, i: usize, statistic: f64| Direction {
-        u: vectors.column(i).iter().zip(&view.space.eigenvalues).map(|(w, e)| w * e.sqrt()).collect(),
+        u: vectors
+            .column(i)
+            .iter()
+            .zip(&view.space.eigenvalues)
+            .map(|(w, e)| w * e.sqrt())
+            .collect(),
         statistic,
     };
     Some(Ends {
-        stronger: (0..wanted).map(|i| direction(&up_vectors, i, up[i])).collect(),
-        weaker: (0..wanted).map(|i| direction(&down_vectors, i, 1.0 / down[i])).collect(),
+        stronger: (0..wanted)
+            .map(|i| direction(&up_vectors, i, up[i]))
+            .collect(),
+        weaker: (0..wanted)
+            .map(|i| direction(&down_vectors, i, 1.0 / down[i]))
+            .collect(),
         shrinkage: gamma,
     })
 }
@@ -183,7 +218,12 @@ fn inner_gamma(view: View<'_>, labels: Labels<'_>, method: &Method) -> f64 {
     let folds = inner.iter().filter_map(|f| *f).max().map_or(0, |f| f + 1);
     let mut best = (f64::NEG_INFINITY, GAMMAS[2]);
     let parts: Vec<(Vec<bool>, Vec<bool>)> = (0..folds)
-        .map(|f| (inner.iter().map(|x| x.is_some_and(|x| x != f)).collect(), inner.iter().map(|x| *x == Some(f)).collect()))
+        .map(|f| {
+            (
+                inner.iter().map(|x| x.is_some_and(|x| x != f)).collect(),
+                inner.iter().map(|x| *x == Some(f)).collect(),
+            )
+        })
         .collect();
     for gamma in GAMMAS {
         let mut score = 0.0;
@@ -192,7 +232,8 @@ fn inner_gamma(view: View<'_>, labels: Labels<'_>, method: &Method) -> f64 {
                 score = f64::NEG_INFINITY;
                 break;
             };
-            score += log_total(view, labels.signal, test, &ends.stronger[0].u) - log_total(view, labels.signal, test, &ends.weaker[0].u);
+            score += log_total(view, labels.signal, test, &ends.stronger[0].u)
+                - log_total(view, labels.signal, test, &ends.weaker[0].u);
         }
         if score > best.0 {
             best = (score, gamma);
@@ -205,8 +246,13 @@ fn inner_gamma(view: View<'_>, labels: Labels<'_>, method: &Method) -> f64 {
 pub fn inner_folds(labels: Labels<'_>, folds: usize) -> Vec<Option<usize>> {
     let mut out = vec![None; labels.signal.len()];
     for side in [true, false] {
-        let members: Vec<usize> = (0..out.len()).filter(|k| labels.train[*k] && labels.signal[*k] == side).collect();
-        for (k, f) in members.iter().zip(super::windows::contiguous_folds(members.len(), folds)) {
+        let members: Vec<usize> = (0..out.len())
+            .filter(|k| labels.train[*k] && labels.signal[*k] == side)
+            .collect();
+        for (k, f) in members
+            .iter()
+            .zip(super::windows::contiguous_folds(members.len(), folds))
+        {
             out[*k] = Some(f);
         }
     }
@@ -243,13 +289,20 @@ pub fn ledoit_wolf_of(covariance: &DMatrix<f64>, fourth: f64, n: f64) -> f64 {
     let mean = covariance.trace() / p;
     let beta = (fourth / n - square) / (p * n);
     let delta = (square - 2.0 * mean * covariance.trace() + p * mean * mean) / p;
-    if beta.min(delta) <= 0.0 || delta == 0.0 { 0.0 } else { beta.min(delta) / delta }
+    if beta.min(delta) <= 0.0 || delta == 0.0 {
+        0.0
+    } else {
+        beta.min(delta) / delta
+    }
 }
 
 /// Oracle approximating shrinkage as scikit-learn computes it (Chen, Wiesel, Eldar & Hero 2010, eq. 23 without its 2/p terms).
 fn oas(view: View<'_>, labels: Labels<'_>) -> f64 {
     let (_, r) = sides(view, labels);
-    let n: f64 = (0..view.weights.len()).filter(|k| labels.train[*k] && !labels.signal[*k]).map(|k| view.weights[k] + 1.0).sum();
+    let n: f64 = (0..view.weights.len())
+        .filter(|k| labels.train[*k] && !labels.signal[*k])
+        .map(|k| view.weights[k] + 1.0)
+        .sum();
     oas_of(&r, n)
 }
 
@@ -259,5 +312,9 @@ pub fn oas_of(covariance: &DMatrix<f64>, n: f64) -> f64 {
     let alpha = covariance.norm_squared() / (p * p);
     let mu = (covariance.trace() / p).powi(2);
     let denominator = (n + 1.0) * (alpha - mu / p);
-    if denominator == 0.0 { 1.0 } else { ((alpha + mu) / denominator).min(1.0) }
+    if denominator == 0.0 {
+        1.0
+    } else {
+        ((alpha + mu) / denominator).min(1.0)
+    }
 }

@@ -142,7 +142,16 @@ fn tridiagonalise(a: &mut DMatrix<f64>, diagonal: &mut [f64], off: &mut [f64], a
         let column = &mut data[k * n..(k + 1) * n];
         diagonal[k] = column[k];
         let scale = column[k + 1..].iter().fold(0.0f64, |m, x| m.max(x.abs()));
-        let norm = if scale == 0.0 { 0.0 } else { scale * column[k + 1..].iter().map(|x| (x / scale) * (x / scale)).sum::<f64>().sqrt() };
+        let norm = if scale == 0.0 {
+            0.0
+        } else {
+            scale
+                * column[k + 1..]
+                    .iter()
+                    .map(|x| (x / scale) * (x / scale))
+                    .sum::<f64>()
+                    .sqrt()
+        };
         let tail: f64 = column[k + 2..].iter().fold(0.0f64, |m, x| m.max(x.abs()));
         if norm == 0.0 || tail == 0.0 {
             off[k] = column[k + 1];
@@ -227,7 +236,12 @@ fn accumulate_reflectors(data: &mut [f64], n: usize, betas: &[f64]) {
 fn dot(a: &[f64], b: &[f64]) -> f64 {
     let mut partial = [0.0; 4];
     let (ca, cb) = (a.chunks_exact(4), b[..a.len()].chunks_exact(4));
-    let rest: f64 = ca.remainder().iter().zip(cb.remainder()).map(|(x, y)| x * y).sum();
+    let rest: f64 = ca
+        .remainder()
+        .iter()
+        .zip(cb.remainder())
+        .map(|(x, y)| x * y)
+        .sum();
     for (x, y) in ca.zip(cb) {
         for i in 0..4 {
             partial[i] += x[i] * y[i];
@@ -244,7 +258,9 @@ fn implicit_ql(d: &mut [f64], e: &mut [f64], mut vectors: Option<&mut DMatrix<f6
     let mut rotations: Vec<(f64, f64)> = Vec::with_capacity(n);
     for l in 0..n {
         for _ in 0..MOST_SWEEPS {
-            let m = (l..n - 1).find(|&m| e[m].abs() <= f64::EPSILON * (d[m].abs() + d[m + 1].abs())).unwrap_or(n - 1);
+            let m = (l..n - 1)
+                .find(|&m| e[m].abs() <= f64::EPSILON * (d[m].abs() + d[m + 1].abs()))
+                .unwrap_or(n - 1);
             if m == l {
                 break;
             }
@@ -323,7 +339,11 @@ pub fn log_shrunk(packed: &[f64], n: usize, rho: f64) -> Packed {
     for k in 0..n {
         let log = diagonal[k].max(1e-12).ln();
         let root = log.abs().sqrt();
-        let panel = if log >= 0.0 { &mut positive } else { &mut negative };
+        let panel = if log >= 0.0 {
+            &mut positive
+        } else {
+            &mut negative
+        };
         let start = panel.len();
         panel.resize(start + stride, 0.0);
         for (x, u) in panel[start..start + n].iter_mut().zip(a.column(k).iter()) {
@@ -359,7 +379,11 @@ fn symmetrise(a: &mut DMatrix<f64>) {
 /// |cosine| of the angle between two vectors, 0 where one is zero.
 pub fn abs_cosine(a: &[f64], b: &[f64]) -> f64 {
     let norms = dot(a, a).sqrt() * dot(b, b).sqrt();
-    if norms > 0.0 { (dot(a, b) / norms).abs() } else { 0.0 }
+    if norms > 0.0 {
+        (dot(a, b) / norms).abs()
+    } else {
+        0.0
+    }
 }
 
 /// The vector as nalgebra's.
@@ -374,7 +398,9 @@ mod tests {
     fn lcg(seed: u64) -> impl FnMut() -> f64 {
         let mut state = seed;
         move || {
-            state = state.wrapping_mul(6364136223846793005).wrapping_add(1442695040888963407);
+            state = state
+                .wrapping_mul(6364136223846793005)
+                .wrapping_add(1442695040888963407);
             (state >> 11) as f64 * 2f64.powi(-53) - 0.5
         }
     }
@@ -401,19 +427,32 @@ mod tests {
             let rebuilt = &v * DMatrix::from_diagonal(&column(&values)) * v.transpose();
             let tolerance = 20.0 * f64::EPSILON * (n as f64).sqrt() * a.norm().max(1.0);
             assert!((rebuilt - &a).amax() < tolerance, "n = {n}");
-            assert!((v.transpose() * &v - DMatrix::identity(n, n)).amax() < 40.0 * f64::EPSILON * (n as f64).sqrt(), "n = {n}");
+            assert!(
+                (v.transpose() * &v - DMatrix::identity(n, n)).amax()
+                    < 40.0 * f64::EPSILON * (n as f64).sqrt(),
+                "n = {n}"
+            );
             let mut other: Vec<f64> = a.clone().symmetric_eigenvalues().iter().copied().collect();
             other.sort_by(|x, y| y.total_cmp(x));
             let alone = eigenvalues(&a);
             for i in 0..n {
-                assert!((values[i] - other[i]).abs() < tolerance && (alone[i] - other[i]).abs() < tolerance, "n = {n}, i = {i}");
+                assert!(
+                    (values[i] - other[i]).abs() < tolerance
+                        && (alone[i] - other[i]).abs() < tolerance,
+                    "n = {n}, i = {i}"
+                );
             }
         }
     }
 
     #[test]
     fn eigh_of_special_matrices() {
-        for a in [DMatrix::zeros(5, 5), DMatrix::identity(5, 5), DMatrix::from_element(5, 5, 1.0), DMatrix::from_diagonal(&column(&[1e-300, 1.0, 1e300, 0.0, -1.0]))] {
+        for a in [
+            DMatrix::zeros(5, 5),
+            DMatrix::identity(5, 5),
+            DMatrix::from_element(5, 5, 1.0),
+            DMatrix::from_diagonal(&column(&[1e-300, 1.0, 1e300, 0.0, -1.0])),
+        ] {
             let (values, v) = eigh(&a);
             let rebuilt = &v * DMatrix::from_diagonal(&column(&values)) * v.transpose();
             assert!((rebuilt - &a).amax() <= 1e-14 * a.amax());

@@ -54,12 +54,22 @@ impl Covariances {
 
     /// Weighted mean over the windows that `include` names.
     pub fn pooled(&self, include: impl Fn(usize) -> bool) -> Packed {
-        pooled(&self.packed, &self.weights, packed_len(self.channels), include)
+        pooled(
+            &self.packed,
+            &self.weights,
+            packed_len(self.channels),
+            include,
+        )
     }
 }
 
 /// Σ weight·C / Σ weight over the windows that `include` names, first `len` entries.
-pub fn pooled(packed: &[Packed], weights: &[f64], len: usize, include: impl Fn(usize) -> bool) -> Packed {
+pub fn pooled(
+    packed: &[Packed],
+    weights: &[f64],
+    len: usize,
+    include: impl Fn(usize) -> bool,
+) -> Packed {
     let mut sum = vec![0.0; len];
     let mut weight = 0.0;
     for k in (0..packed.len()).filter(|k| include(*k)) {
@@ -98,8 +108,16 @@ impl Space {
         let floor = (10.0 * storage_noise).max(largest * m as f64 * f64::EPSILON);
         let rank = eigenvalues.iter().take_while(|e| **e > floor).count();
         let dimensions = rank.min(limit);
-        let whitening = DMatrix::from_fn(dimensions, m, |i, c| vectors[(c, i)] / eigenvalues[i].sqrt());
-        Space { pooled, eigenvalues, rank, whitening, covariances: Vec::new() }
+        let whitening = DMatrix::from_fn(dimensions, m, |i, c| {
+            vectors[(c, i)] / eigenvalues[i].sqrt()
+        });
+        Space {
+            pooled,
+            eigenvalues,
+            rank,
+            whitening,
+            covariances: Vec::new(),
+        }
     }
 
     /// Dimensions of the whitened covariances.
@@ -110,7 +128,9 @@ impl Space {
     /// Whitens the covariance of the next window; false when all are done.
     pub fn push_next(&mut self, all: &Covariances) -> bool {
         let k = self.covariances.len();
-        let Some(packed) = all.packed.get(k) else { return false };
+        let Some(packed) = all.packed.get(k) else {
+            return false;
+        };
         let half = &self.whitening * unpack(packed, all.channels);
         let full = &half * self.whitening.transpose();
         let n = self.dimensions();
@@ -126,7 +146,14 @@ impl Space {
 
     /// w = V diag(e)^(−1/2) u in channel space, for u of the leading dimensions.
     pub fn filter(&self, u: &[f64]) -> Vec<f64> {
-        (0..self.whitening.ncols()).map(|c| u.iter().enumerate().map(|(i, x)| x * self.whitening[(i, c)]).sum()).collect()
+        (0..self.whitening.ncols())
+            .map(|c| {
+                u.iter()
+                    .enumerate()
+                    .map(|(i, x)| x * self.whitening[(i, c)])
+                    .sum()
+            })
+            .collect()
     }
 }
 
@@ -138,14 +165,27 @@ mod tests {
     fn the_pooled_covariance_becomes_the_identity_and_a_copied_channel_costs_one_rank() {
         let mut state = 5u64;
         let mut next = || {
-            state = state.wrapping_mul(6364136223846793005).wrapping_add(1442695040888963407);
+            state = state
+                .wrapping_mul(6364136223846793005)
+                .wrapping_add(1442695040888963407);
             ((state >> 11) as f64 * 2f64.powi(-53) - 0.5) as f32
         };
-        let mut samples: Vec<Vec<f32>> = (0..5).map(|_| (0..400).map(|_| 100.0 + next()).collect()).collect();
+        let mut samples: Vec<Vec<f32>> = (0..5)
+            .map(|_| (0..400).map(|_| 100.0 + next()).collect())
+            .collect();
         samples.push(samples[0].clone());
         let mut all = Covariances::default();
         for k in 0..8 {
-            all.push(&samples, &Window { first: 50 * k, count: 50, signal: k % 2 == 0, trial: k / 2, onset_s: 0.0 });
+            all.push(
+                &samples,
+                &Window {
+                    first: 50 * k,
+                    count: 50,
+                    signal: k % 2 == 0,
+                    trial: k / 2,
+                    onset_s: 0.0,
+                },
+            );
         }
         let mut space = Space::new(&all, 150, |_| true);
         assert_eq!(space.rank, 5);

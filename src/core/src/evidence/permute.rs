@@ -33,17 +33,35 @@ pub struct Plan {
 /// Plans `asked` arrangements.
 pub fn plan(design: &Design, asked: usize) -> Plan {
     let n = design.count(true);
-    let distinct = if design.paired { 2f64.powi(n.min(2000) as i32) } else { binomial(design.signal.len(), n) };
+    let distinct = if design.paired {
+        2f64.powi(n.min(2000) as i32)
+    } else {
+        binomial(design.signal.len(), n)
+    };
     let exact = design.paired && asked > 0 && distinct <= asked as f64;
-    Plan { count: if exact { distinct as usize } else { asked }, exact, distinct: (distinct <= 2f64.powi(53)).then_some(distinct) }
+    Plan {
+        count: if exact { distinct as usize } else { asked },
+        exact,
+        distinct: (distinct <= 2f64.powi(53)).then_some(distinct),
+    }
 }
 
 fn binomial(n: usize, k: usize) -> f64 {
-    (0..k.min(n - k)).fold(1.0, |product: f64, i| product * (n - i) as f64 / (i + 1) as f64).round()
+    (0..k.min(n - k))
+        .fold(1.0, |product: f64, i| {
+            product * (n - i) as f64 / (i + 1) as f64
+        })
+        .round()
 }
 
 /// The labels of arrangement `i`.
-pub fn arrangement(design: &Design, plan: Plan, within_folds: bool, seed: u64, i: usize) -> Vec<bool> {
+pub fn arrangement(
+    design: &Design,
+    plan: Plan,
+    within_folds: bool,
+    seed: u64,
+    i: usize,
+) -> Vec<bool> {
     if design.paired {
         let swap: Vec<bool> = if plan.exact {
             (0..design.count(true)).map(|t| i >> t & 1 == 1).collect()
@@ -59,13 +77,20 @@ pub fn arrangement(design: &Design, plan: Plan, within_folds: bool, seed: u64, i
                 })
                 .collect()
         };
-        return design.signal.iter().zip(&design.trial).map(|(s, t)| *s != swap[*t]).collect();
+        return design
+            .signal
+            .iter()
+            .zip(&design.trial)
+            .map(|(s, t)| *s != swap[*t])
+            .collect();
     }
     let mut rng = generator(seed, STREAM_ARRANGEMENTS + i as u64);
     let mut labels = design.signal.clone();
     let groups = if within_folds { design.folds } else { 1 };
     for g in 0..groups {
-        let members: Vec<usize> = (0..labels.len()).filter(|k| !within_folds || design.fold[*k] == g).collect();
+        let members: Vec<usize> = (0..labels.len())
+            .filter(|k| !within_folds || design.fold[*k] == g)
+            .collect();
         for a in (1..members.len()).rev() {
             labels.swap(members[a], members[below(&mut rng, a + 1)]);
         }
@@ -76,8 +101,21 @@ pub fn arrangement(design: &Design, plan: Plan, within_folds: bool, seed: u64, i
 /// p of an observed statistic against those of the arrangements; `larger`: large values count against the null.
 pub fn p_value(observed: f64, null: &[f64], exact: bool, larger: bool) -> f64 {
     let slack = TIE * observed.abs();
-    let hits = null.iter().filter(|x| if larger { **x >= observed - slack } else { **x <= observed + slack }).count();
-    if exact { hits as f64 / null.len() as f64 } else { (hits + 1) as f64 / (null.len() + 1) as f64 }
+    let hits = null
+        .iter()
+        .filter(|x| {
+            if larger {
+                **x >= observed - slack
+            } else {
+                **x <= observed + slack
+            }
+        })
+        .count();
+    if exact {
+        hits as f64 / null.len() as f64
+    } else {
+        (hits + 1) as f64 / (null.len() + 1) as f64
+    }
 }
 
 /// The null hypothesis in a sentence.
@@ -94,15 +132,30 @@ mod tests {
     use super::*;
 
     fn paired(n: usize) -> Design {
-        Design { paired: true, signal: [true, false].repeat(n), trial: (0..2 * n).map(|k| k / 2).collect(), fold: vec![0; 2 * n], folds: 1 }
+        Design {
+            paired: true,
+            signal: [true, false].repeat(n),
+            trial: (0..2 * n).map(|k| k / 2).collect(),
+            fold: vec![0; 2 * n],
+            folds: 1,
+        }
     }
 
     #[test]
     fn exact_enumeration_takes_every_arrangement_once_and_the_observed_first() {
         let design = paired(4);
         let plan = plan(&design, 100);
-        assert_eq!(plan, Plan { count: 16, exact: true, distinct: Some(16.0) });
-        let mut all: Vec<Vec<bool>> = (0..16).map(|i| arrangement(&design, plan, false, 1, i)).collect();
+        assert_eq!(
+            plan,
+            Plan {
+                count: 16,
+                exact: true,
+                distinct: Some(16.0)
+            }
+        );
+        let mut all: Vec<Vec<bool>> = (0..16)
+            .map(|i| arrangement(&design, plan, false, 1, i))
+            .collect();
         assert_eq!(all[0], design.signal);
         all.sort();
         all.dedup();
