@@ -336,8 +336,8 @@ pub fn log_shrunk(packed: &[f64], n: usize, rho: f64) -> Packed {
     let stride = n.next_multiple_of(TILE);
     let mut positive = Vec::new();
     let mut negative = Vec::new();
-    for k in 0..n {
-        let log = diagonal[k].max(1e-12).ln();
+    for (k, value) in diagonal.iter().enumerate() {
+        let log = value.max(1e-12).ln();
         let root = log.abs().sqrt();
         let panel = if log >= 0.0 {
             &mut positive
