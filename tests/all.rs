@@ -1,1 +1,4 @@
 //! All checks; each room of the house has its module.
+
+mod describe;
+mod prepare;

@@ -4,14 +4,24 @@
 //! Analysis::new(recording, recipe)   step() step() step() … until finished   sheet()
 //! set_recipe(changed)                step() …                                sheet()
 //! ```
+//!
+//! The first result (ratio, map, spectra) is on the sheet after [`Stage::Fitting`]; held-out ratios, the permutation test and the
+//! ratio against C follow, in this order.
+mod cards;
+mod propose;
+mod work;
+
+use crate::contrast::windows::check;
 use crate::error::{Kind, Problem, Result};
-use crate::recipe::Recipe;
+use crate::recipe::{Contrast, Keep, Measure, Recipe, Shrink, ShrinkWord};
 use crate::recording::Recording;
 use crate::sheet::Sheet;
+pub use propose::{Proposal, propose};
 use serde::{Deserialize, Serialize};
+use work::Work;
 
 /// What a step is about.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Serialize, Deserialize)]
 #[serde(rename_all = "kebab-case")]
 pub enum Stage {
     /// Decoding the file.
@@ -24,10 +34,10 @@ pub enum Stage {
     Fitting,
     /// Held-out ratios, comparators, bootstrap.
     HeldOut,
-    /// Ratio against C.
-    Curve,
     /// Permutations.
     Permuting,
+    /// Ratio against C.
+    Curve,
     /// Nothing left to do.
     Done,
 }
@@ -50,45 +60,53 @@ pub struct Progress {
 pub struct Analysis {
     recording: Recording,
     recipe: Recipe,
+    work: Work,
 }
 
-/// A contrast proposed for a recording, with the reason in a sentence.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
-pub struct Proposal {
-    /// The whole recipe, defaults and all.
-    pub recipe: Recipe,
-    /// "buoy is the most frequent event (42 times) …"
-    pub why: String,
-}
-
-/// Proposes a contrast: the most frequent event with at least ten occurrences; signal [0, d), reference [−d, 0),
-/// d the smaller of 1 s and half the shortest gap between events. `None` where no event is frequent enough.
-pub fn propose(_recording: &Recording) -> Option<Proposal> {
-    None
+/// Time courses of the reported components over the whole prepared recording.
+#[derive(Debug, Clone)]
+pub struct Series {
+    /// `stronger 1`, `stronger 2`, …, `weaker 1`, ….
+    pub names: Vec<String>,
+    /// `components × samples`.
+    pub samples: Vec<Vec<f64>>,
+    /// Their sampling rate.
+    pub rate_hz: f64,
+    /// Time of every sample on the file's clock is given by its stretch.
+    pub stretches: Vec<crate::recording::Stretch>,
 }
 
 impl Analysis {
-    /// Begins; computes nothing yet, but refuses recipes that cannot fit the recording (unknown channels or events, rates, ranges).
+    /// Begins; computes nothing yet, but refuses recipes that cannot fit the recording (unknown events, ranges).
+    /// Unknown channels and impossible filters are refused by the first step.
     pub fn new(recording: Recording, recipe: Recipe) -> Result<Self> {
-        Ok(Analysis { recording, recipe })
+        check_recipe(&recipe, &recording)?;
+        let work = Work::new(&recording, &recipe);
+        Ok(Analysis {
+            recording,
+            recipe,
+            work,
+        })
     }
+
     /// Takes a changed recipe and drops only what it made stale. On an error nothing changes.
     pub fn set_recipe(&mut self, recipe: Recipe) -> Result<()> {
+        check_recipe(&recipe, &self.recording)?;
+        self.work.change(&self.recording, &self.recipe, &recipe)?;
         self.recipe = recipe;
         Ok(())
     }
-    /// Does the next bite of work, about 20 ms of it.
+
+    /// Does the next bite of work, about 20 ms of it. After an error the same step fails again until the recipe changes.
     pub fn step(&mut self) -> Result<Progress> {
-        Err(Problem::new(
-            Kind::Unsupported,
-            "nothing can be computed",
-            "wait",
-        ))
+        self.work.step(&self.recording, &self.recipe)
     }
+
     /// Whether all work is done.
     pub fn finished(&self) -> bool {
-        false
+        self.work.finished(&self.recipe)
     }
+
     /// Runs every step.
     pub fn run(&mut self, mut on_progress: impl FnMut(Progress)) -> Result<()> {
         while !self.finished() {
@@ -96,21 +114,123 @@ impl Analysis {
         }
         Ok(())
     }
+
     /// Everything known so far.
-    pub fn sheet(&self) -> Option<&Sheet> {
-        None
+    pub fn sheet(&self) -> &Sheet {
+        &self.work.sheet
     }
+
     /// The recording.
     pub fn recording(&self) -> &Recording {
         &self.recording
     }
+
+    /// Gives the recording back, to be analysed with something else.
+    pub fn into_recording(self) -> Recording {
+        self.recording
+    }
+
     /// The choices in force.
     pub fn recipe(&self) -> &Recipe {
         &self.recipe
     }
-    /// Names and time courses of the reported components over the whole prepared recording, `components × samples`,
-    /// and their sampling rate: `stronger 1`, `stronger 2`, …, `weaker 1`, ….
-    pub fn series(&self) -> Option<(Vec<String>, Vec<Vec<f64>>, f64)> {
-        None
+
+    /// Time courses of the reported components, once there are any.
+    pub fn series(&self) -> Option<Series> {
+        self.work.series()
     }
+}
+
+/// Refuses what no recording could make sense of.
+fn check_recipe(recipe: &Recipe, recording: &Recording) -> Result<()> {
+    let refuse = |what: &str, place: &str, expected: &str, found: String, advice: &str| {
+        Err(Problem::new(Kind::Recipe, what, advice)
+            .at(place)
+            .expected_found(expected, found))
+    };
+    if let Keep::Number(keep) = recipe.keep
+        && keep < 2
+    {
+        return refuse(
+            "keep at least 2 dimensions",
+            "keep",
+            "an integer above 1",
+            keep.to_string(),
+            "with C = 1 the direction is chosen by size alone and nothing is left to compare",
+        );
+    }
+    if let Shrink::Number(x) = recipe.shrink
+        && !(0.0..1.0).contains(&x)
+    {
+        return refuse(
+            "the shrinkage is out of range",
+            "shrink",
+            "a number from 0 to below 1",
+            x.to_string(),
+            "choose \"auto\" or a number such as 0.1",
+        );
+    }
+    if recipe.measure == Measure::Typical
+        && let Shrink::Word(word @ (ShrinkWord::LedoitWolf | ShrinkWord::Oas)) = recipe.shrink
+    {
+        let found = if word == ShrinkWord::Oas {
+            "oas"
+        } else {
+            "ledoit-wolf"
+        };
+        return refuse(
+            "this shrinkage belongs to the total measure",
+            "shrink",
+            "\"auto\" or a number for the typical measure",
+            format!("\"{found}\""),
+            "choose \"auto\", or the measure \"total\"",
+        );
+    }
+    if !(1..=64).contains(&recipe.components) {
+        return refuse(
+            "the number of components is out of range",
+            "components",
+            "1 to 64",
+            recipe.components.to_string(),
+            "4 serves most questions",
+        );
+    }
+    if !(2..=100).contains(&recipe.evidence.folds) {
+        return refuse(
+            "the number of folds is out of range",
+            "evidence, folds",
+            "2 to 100",
+            recipe.evidence.folds.to_string(),
+            "5 serves most questions",
+        );
+    }
+    if recipe.evidence.permutations > 1_000_000 || recipe.evidence.bootstrap > 100_000 {
+        return refuse(
+            "more repetitions than can be kept",
+            "evidence",
+            "at most 1000000 permutations and 100000 bootstrap samples",
+            format!(
+                "{} and {}",
+                recipe.evidence.permutations, recipe.evidence.bootstrap
+            ),
+            "1000 and 500 serve most questions",
+        );
+    }
+    let Contrast::Windows { signal, reference } = &recipe.contrast;
+    for (side, w) in [("signal", signal), ("reference", reference)] {
+        let fine = w.from_s.is_finite()
+            && w.to_s.is_finite()
+            && w.from_s < w.to_s
+            && w.from_s.abs().max(w.to_s.abs()) < 1e6;
+        if !fine {
+            return refuse(
+                &format!("the {side} windows end before they begin"),
+                &format!("contrast, {side}"),
+                "from_s below to_s",
+                format!("{} to {} s", w.from_s, w.to_s),
+                "exchange the two ends, or type new ones",
+            );
+        }
+    }
+    check(&recipe.contrast, &recording.events, recording.rate_hz)
 }

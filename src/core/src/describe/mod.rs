@@ -1,4 +1,16 @@
 //! Spectra, time courses and maps of components.
+//!
+//! * [`positions`]: electrode positions by name; sphere and plane.
+//! * [`spline`], [`map`]: spherical splines, and patterns spread over the head.
+//! * [`welch`], [`spectra`]: power spectral densities of both sides.
+//! * [`course`]: power and average around an event, single trials.
+//!
+//! Intervals are percentile bootstrap intervals over windows or trials (Efron & Tibshirani 1993, *An Introduction to the Bootstrap*,
+//! section 13.3), seeded: the same seed gives the same bytes.
+mod bootstrap;
+pub mod course;
+pub mod map;
 pub mod positions;
+pub mod spectra;
 pub mod spline;
 pub mod welch;

@@ -1,0 +1,689 @@
+//! From what was computed to what the sheet says.
+use super::work::Work;
+use crate::contrast::fit::{Direction, Ends};
+use crate::contrast::linalg::{abs_cosine, packed_len, quadratic};
+use crate::contrast::space::Space;
+use crate::evidence::heldout::{
+    Design, Ground, Scores, best_of, diagonal, fill, log_total, log_typical, pair_log_ratios,
+    score_into, total_ratio, typical_ratio, variances,
+};
+use crate::evidence::permute::{null_hypothesis, p_value};
+use crate::prepare::Prepared;
+use crate::recipe::{Contrast, Keep, KeepWord, Recipe};
+use crate::recording::Recording;
+use crate::sheet::{
+    Comparator, ComparatorKind, Component, CompressionCard, FoldCard, Permutation, RecordingCard,
+    Sheet, TotalRatio, TrialScore, TypicalRatio,
+};
+use std::collections::BTreeMap;
+
+/// Bins of the envelope of the whole recording.
+const ENVELOPE_BINS: usize = 444;
+/// Typical and total ratio are said to disagree beyond this factor.
+const DISAGREEMENT: f64 = 1.5;
+
+/// What a changed recipe made stale.
+pub(super) struct Stale {
+    pub preparation: bool,
+    pub windows: bool,
+    pub method: bool,
+    pub evidence: bool,
+    pub curve: bool,
+}
+
+/// A sheet that knows the recording alone.
+pub(super) fn begin(recording: &Recording, recipe: &Recipe) -> Sheet {
+    let mut onsets: BTreeMap<String, Vec<f64>> = BTreeMap::new();
+    for event in &recording.events {
+        onsets
+            .entry(event.label.clone())
+            .or_default()
+            .push(event.onset_s);
+    }
+    Sheet {
+        recording: RecordingCard {
+            name: recording.name.clone(),
+            format: recording.format.clone(),
+            rate_hz: recording.rate_hz,
+            duration_s: recording.duration_s(),
+            stretches: recording.stretches.clone(),
+            others: recording.others.clone(),
+            events: onsets
+                .iter()
+                .map(|(label, times)| (label.clone(), times.len()))
+                .collect(),
+            event_onsets_s: onsets,
+            side_files: recording.side_files.clone(),
+            warnings: recording.warnings.clone(),
+            envelope: envelope(recording),
+        },
+        recipe: recipe.clone(),
+        channels: Vec::new(),
+        preparation: None,
+        windows: None,
+        compression: None,
+        curve: None,
+        shrinkage: None,
+        stronger: Vec::new(),
+        weaker: Vec::new(),
+        compare: Vec::new(),
+        permutation: None,
+        folds: Vec::new(),
+        warnings: recording.warnings.clone(),
+    }
+}
+
+/// Root mean square over channels of each bin's standard deviation.
+fn envelope(recording: &Recording) -> Vec<f64> {
+    let n = recording.sample_count();
+    let bins = ENVELOPE_BINS.min(n);
+    let mut out = vec![0.0; bins];
+    let mut counted = 0usize;
+    for channel in &recording.samples {
+        let finite = channel.iter().all(|x| x.is_finite());
+        if !finite {
+            continue;
+        }
+        counted += 1;
+        let mean = channel.iter().map(|x| f64::from(*x)).sum::<f64>() / n.max(1) as f64;
+        for (b, bin) in out.iter_mut().enumerate() {
+            let part = &channel[b * n / bins..(b + 1) * n / bins];
+            *bin += part
+                .iter()
+                .map(|x| (f64::from(*x) - mean).powi(2))
+                .sum::<f64>()
+                / part.len().max(1) as f64;
+        }
+    }
+    out.iter_mut()
+        .for_each(|x| *x = (*x / counted.max(1) as f64).sqrt());
+    out
+}
+
+/// Takes back what no longer holds.
+pub(super) fn forget(sheet: &mut Sheet, recipe: &Recipe, stale: &Stale) {
+    sheet.recipe = recipe.clone();
+    if stale.preparation {
+        sheet.channels.clear();
+        sheet.preparation = None;
+    }
+    if stale.windows {
+        sheet.windows = None;
+    }
+    if stale.method {
+        sheet.compression = None;
+        sheet.shrinkage = None;
+        sheet.stronger.clear();
+        sheet.weaker.clear();
+    }
+    if stale.evidence {
+        sheet.compare.clear();
+        sheet.permutation = None;
+        sheet.folds.clear();
+        for c in sheet.stronger.iter_mut().chain(&mut sheet.weaker) {
+            c.p = None;
+            c.typical.held_out = None;
+            c.typical.interval = None;
+            c.total.held_out = None;
+            c.total.folds.clear();
+            c.trials.clear();
+        }
+    }
+    if stale.curve {
+        sheet.curve = None;
+    }
+    if let (Some(_), Some(_)) = (&sheet.curve, &sheet.compression) {
+        guides(sheet);
+    }
+}
+
+/// The filter of a direction with wᵀRw = 1, its pattern by Haufe et al. 2014 with the largest entry positive, both in prepared channels.
+fn filter_and_pattern(
+    ground: &Ground,
+    direction: &Direction,
+    weights: &[f64],
+    signal: &[bool],
+) -> (Vec<f64>, Vec<f64>) {
+    let space = &ground.space;
+    let reference = {
+        let (mut sum, mut total) = (0.0, 0.0);
+        for k in (0..weights.len()).filter(|k| !signal[*k] && ground.train[*k]) {
+            sum += weights[k] * quadratic(&space.covariances[k], &direction.u);
+            total += weights[k];
+        }
+        sum / total
+    };
+    let scale = 1.0 / reference.sqrt();
+    let u: Vec<f64> = direction.u.iter().map(|x| x * scale).collect();
+    let mut filter = space.filter(&u);
+    let mut pattern = pattern(space, &filter);
+    let largest = pattern
+        .iter()
+        .copied()
+        .fold(0.0f64, |m, x| if x.abs() > m.abs() { x } else { m });
+    if largest < 0.0 {
+        filter.iter_mut().chain(&mut pattern).for_each(|x| *x = -*x);
+    }
+    (filter, pattern)
+}
+
+/// a = P w / (wᵀPw).
+fn pattern(space: &Space, filter: &[f64]) -> Vec<f64> {
+    let m = filter.len();
+    let mut product = vec![0.0; m];
+    for i in 0..m {
+        for j in 0..=i {
+            let x = space.pooled[packed_len(i) + j];
+            product[i] += x * filter[j];
+            if i != j {
+                product[j] += x * filter[i];
+            }
+        }
+    }
+    let power: f64 = product.iter().zip(filter).map(|(a, b)| a * b).sum();
+    product.iter_mut().for_each(|x| *x /= power);
+    product
+}
+
+/// Compression and fitted components, right after the fit.
+pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
+    let (Some(ground), Some(design), Some(ends), Some(prepared), Some(keep)) = (
+        &work.ground,
+        &work.design,
+        &work.ends,
+        &work.prepared,
+        work.keep,
+    ) else {
+        return;
+    };
+    let weights = &work.covariances.weights;
+    let component = |d: &Direction| -> Component {
+        let (filter, pattern) = filter_and_pattern(ground, d, weights, &design.signal);
+        let v = variances(&ground.space, &d.u);
+        let largest = (0..pattern.len()).fold(0, |best, i| {
+            if pattern[i].abs() > pattern[best].abs() {
+                i
+            } else {
+                best
+            }
+        });
+        Component {
+            typical: TypicalRatio {
+                fitted: log_typical(&v, design).exp(),
+                held_out: None,
+                interval: None,
+            },
+            total: TotalRatio {
+                fitted: log_total(&v, weights, design, |_| true).exp(),
+                held_out: None,
+                folds: Vec::new(),
+            },
+            p: None,
+            filter_raw: raw_filter(prepared, &filter),
+            largest_at: prepared.channels[largest].clone(),
+            filter,
+            pattern,
+            peak_hz: None,
+            stability: None,
+            places_changed: None,
+            trials: Vec::new(),
+            spectra: None,
+            course: None,
+            image: None,
+        }
+    };
+    let (stronger, weaker) = reported(ends);
+    work.sheet.stronger = stronger.iter().map(component).collect();
+    work.sheet.weaker = weaker.iter().map(component).collect();
+    work.sheet.shrinkage = Some(ends.shrinkage);
+    let eigenvalues = ground.space.eigenvalues.clone();
+    let all: f64 = eigenvalues.iter().filter(|e| **e > 0.0).sum();
+    let share = eigenvalues[..keep].iter().sum::<f64>() / all;
+    work.sheet.compression = Some(CompressionCard {
+        kept: keep,
+        rank: ground.space.rank,
+        eigenvalues,
+        share,
+        guides: BTreeMap::new(),
+    });
+    if let Some(card) = &mut work.sheet.preparation {
+        card.rank = ground.space.rank;
+    }
+    guides(&mut work.sheet);
+    work.sheet.warnings = warnings(work, recipe);
+}
+
+/// Those directions of a fit that lie on their own side of 1.
+pub(super) fn reported(ends: &Ends) -> (&[Direction], &[Direction]) {
+    let up = ends
+        .stronger
+        .iter()
+        .take_while(|d| d.statistic > 1.0)
+        .count();
+    let down = ends.weaker.iter().take_while(|d| d.statistic < 1.0).count();
+    (&ends.stronger[..up], &ends.weaker[..down])
+}
+
+/// w_raw = Tᵀw.
+fn raw_filter(prepared: &Prepared, filter: &[f64]) -> Vec<f64> {
+    let t = &prepared.matrix;
+    (0..t.ncols())
+        .map(|c| filter.iter().enumerate().map(|(r, w)| w * t[(r, c)]).sum())
+        .collect()
+}
+
+/// Numbers of dimensions other rules would keep.
+pub(super) fn guides(sheet: &mut Sheet) {
+    let Some(card) = &mut sheet.compression else {
+        return;
+    };
+    let all: f64 = card.eigenvalues.iter().filter(|e| **e > 0.0).sum();
+    let mut sum = 0.0;
+    let share_95 = card.eigenvalues.iter().take_while(|e| {
+        let before = sum < 0.95 * all;
+        sum += **e;
+        before
+    });
+    let share_95 = share_95.count().max(2).min(card.rank);
+    card.guides.insert("share_95".into(), share_95);
+    let Some(curve) = &sheet.curve else { return };
+    let Some(peak) = (0..curve.keep.len()).max_by(|a, b| {
+        curve.held_out[*a]
+            .total_cmp(&curve.held_out[*b])
+            .then(b.cmp(a))
+    }) else {
+        return;
+    };
+    let bar = curve.held_out[peak].ln() - curve.log_se[peak];
+    let simplest = (0..=peak)
+        .find(|i| curve.held_out[*i].ln() >= bar)
+        .unwrap_or(peak);
+    card.guides.insert("held_out_peak".into(), curve.keep[peak]);
+    card.guides
+        .insert("one_standard_error".into(), curve.keep[simplest]);
+}
+
+/// Held-out ratios of the components and of the comparators, stability, folds.
+pub(super) fn held_out(work: &mut Work, recipe: &Recipe) {
+    let (Some(ground), Some(design), Some(prepared), Some(keep), Some(selection)) = (
+        &work.ground,
+        &work.design,
+        &work.prepared,
+        work.keep,
+        &work.selection,
+    ) else {
+        return;
+    };
+    let weights = &work.covariances.weights;
+    let (count, seed) = (recipe.evidence.bootstrap, recipe.evidence.seed);
+    let patterns: Vec<[Vec<Vec<f64>>; 2]> = work
+        .folds
+        .iter()
+        .zip(&work.fits)
+        .map(|(g, f)| {
+            [&f.ends.stronger, &f.ends.weaker].map(|end| {
+                end.iter()
+                    .map(|d| filter_and_pattern(g, d, weights, &design.signal).1)
+                    .collect()
+            })
+        })
+        .collect();
+    let blank = || vec![f64::NAN; weights.len()];
+    let mut leading: Option<Scores> = None;
+    for (end, components) in [&mut work.sheet.stronger, &mut work.sheet.weaker]
+        .into_iter()
+        .enumerate()
+    {
+        for (rank, component) in components.iter_mut().enumerate() {
+            let mut scores = blank();
+            for (f, (g, fit)) in work.folds.iter().zip(&work.fits).enumerate() {
+                let list = if end == 0 {
+                    &fit.ends.stronger
+                } else {
+                    &fit.ends.weaker
+                };
+                if let Some(d) = list.get(rank).or(list.last()) {
+                    score_into(&mut scores, g, weights, design, f, &d.u);
+                }
+            }
+            component.typical =
+                typical_ratio(component.typical.fitted, Some(&scores), design, count, seed);
+            component.total = total_ratio(component.total.fitted, Some(&scores), weights, design);
+            component.trials = trial_scores(&scores, design, selection);
+            let cosines: Vec<Vec<f64>> = patterns
+                .iter()
+                .map(|p| {
+                    p[end]
+                        .iter()
+                        .map(|a| abs_cosine(a, &component.pattern))
+                        .collect()
+                })
+                .collect();
+            let mut own: Vec<f64> = cosines
+                .iter()
+                .filter_map(|c| c.get(rank).copied())
+                .collect();
+            own.sort_by(f64::total_cmp);
+            component.stability = Some(crate::evidence::bootstrap::quantile(&own, 0.5));
+            component.places_changed = Some(
+                cosines
+                    .iter()
+                    .filter(|c| c.iter().any(|x| c.get(rank).is_none_or(|own| x > own)))
+                    .count(),
+            );
+            if end == 0 && rank == 0 {
+                leading = Some(scores);
+            }
+        }
+    }
+    work.sheet.folds = leading.map_or_else(Vec::new, |scores| fold_cards(&scores, design));
+    work.sheet.compare = comparators(work_parts(ground, design, prepared, keep), work, recipe);
+    work.sheet.warnings = warnings(work, recipe);
+}
+
+fn trial_scores(
+    scores: &Scores,
+    design: &Design,
+    selection: &crate::contrast::windows::Selection,
+) -> Vec<TrialScore> {
+    if !design.paired {
+        return Vec::new();
+    }
+    let logs = pair_log_ratios(scores, design);
+    selection
+        .windows
+        .iter()
+        .enumerate()
+        .filter(|(_, w)| w.signal)
+        .map(|(k, w)| TrialScore {
+            onset_s: w.onset_s,
+            fold: design.fold[k],
+            log_ratio: logs[w.trial],
+        })
+        .collect()
+}
+
+fn fold_cards(scores: &Scores, design: &Design) -> Vec<FoldCard> {
+    (0..design.folds)
+        .map(|f| {
+            let inside: Scores = scores
+                .iter()
+                .zip(&design.fold)
+                .map(|(v, x)| if *x == f { *v } else { f64::NAN })
+                .collect();
+            let trials = (0..scores.len())
+                .filter(|k| design.fold[*k] == f && (design.signal[*k] || !design.paired))
+                .count();
+            FoldCard {
+                trials,
+                ratio: log_typical(&inside, design).exp(),
+            }
+        })
+        .collect()
+}
+
+/// The parts of the work that comparators read.
+struct Parts<'a> {
+    ground: &'a Ground,
+    design: &'a Design,
+    prepared: &'a Prepared,
+    keep: usize,
+}
+
+fn work_parts<'a>(
+    ground: &'a Ground,
+    design: &'a Design,
+    prepared: &'a Prepared,
+    keep: usize,
+) -> Parts<'a> {
+    Parts {
+        ground,
+        design,
+        prepared,
+        keep,
+    }
+}
+
+/// First principal component, best principal component, best channel, on the same held-out windows.
+fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator> {
+    let Parts {
+        ground,
+        design,
+        prepared,
+        keep,
+    } = parts;
+    let all = &work.covariances;
+    let weights = &all.weights;
+    let everything = vec![true; weights.len()];
+    let shares: f64 = ground.space.eigenvalues.iter().filter(|e| **e > 0.0).sum();
+    let pc_variance = |g: &Ground, i: usize, k: usize| diagonal(&g.space.covariances[k], i);
+    let channel_variance = |i: usize, k: usize| diagonal(&all.packed[k], i);
+    let best_pc = best_of(
+        keep,
+        |i, k| pc_variance(ground, i, k),
+        weights,
+        design,
+        &everything,
+        recipe.measure,
+    );
+    let best_channel = best_of(
+        all.channels,
+        channel_variance,
+        weights,
+        design,
+        &everything,
+        recipe.measure,
+    );
+    let make =
+        |kind: ComparatorKind, whole: &dyn Fn(usize) -> f64, chosen_in: &dyn Fn(usize) -> usize| {
+            let fitted: Vec<f64> = (0..weights.len()).map(whole).collect();
+            let mut scores = vec![f64::NAN; weights.len()];
+            for (f, g) in work.folds.iter().enumerate() {
+                let i = chosen_in(f);
+                match kind {
+                    ComparatorKind::BestChannel => {
+                        fill(&mut scores, weights, design, f, |k| channel_variance(i, k))
+                    }
+                    ComparatorKind::FirstPc | ComparatorKind::BestPc => {
+                        fill(&mut scores, weights, design, f, |k| pc_variance(g, i, k))
+                    }
+                }
+            }
+            let (count, seed) = (recipe.evidence.bootstrap, recipe.evidence.seed);
+            Comparator {
+                kind,
+                chosen: None,
+                chosen_in_folds: None,
+                share: None,
+                typical: typical_ratio(
+                    log_typical(&fitted, design).exp(),
+                    Some(&scores),
+                    design,
+                    count,
+                    seed,
+                ),
+                total: total_ratio(
+                    log_total(&fitted, weights, design, |_| true).exp(),
+                    Some(&scores),
+                    weights,
+                    design,
+                ),
+            }
+        };
+    let share_of = |i: usize| Some(ground.space.eigenvalues[i] / shares);
+    let (pc, pc_folds) = most_frequent(work.fits.iter().map(|f| f.best_pc));
+    let (channel, channel_folds) = most_frequent(work.fits.iter().map(|f| f.best_channel));
+    vec![
+        Comparator {
+            chosen: Some((pc + 1).to_string()),
+            chosen_in_folds: Some(pc_folds),
+            share: share_of(pc),
+            ..make(
+                ComparatorKind::BestPc,
+                &|k| pc_variance(ground, best_pc, k),
+                &|f| work.fits[f].best_pc,
+            )
+        },
+        Comparator {
+            chosen: Some(prepared.channels[channel].clone()),
+            chosen_in_folds: Some(channel_folds),
+            ..make(
+                ComparatorKind::BestChannel,
+                &|k| channel_variance(best_channel, k),
+                &|f| work.fits[f].best_channel,
+            )
+        },
+        Comparator {
+            chosen: Some("1".into()),
+            share: share_of(0),
+            ..make(
+                ComparatorKind::FirstPc,
+                &|k| pc_variance(ground, 0, k),
+                &|_| 0,
+            )
+        },
+    ]
+}
+
+/// The value met most often (the smallest of equals), and how often.
+fn most_frequent(values: impl Iterator<Item = usize>) -> (usize, usize) {
+    let mut counts: BTreeMap<usize, usize> = BTreeMap::new();
+    values.for_each(|v| *counts.entry(v).or_default() += 1);
+    counts.into_iter().fold(
+        (0, 0),
+        |best, (v, n)| if n > best.1 { (v, n) } else { best },
+    )
+}
+
+/// The permutation test and every component's p.
+pub(super) fn permuted(work: &mut Work, recipe: &Recipe) {
+    let (Some(plan), Some(design), Some(ends)) = (work.plan, &work.design, &work.ends) else {
+        return;
+    };
+    let (largest, smallest): (Vec<f64>, Vec<f64>) = work.null.iter().copied().unzip();
+    let (stronger, weaker) = reported(ends);
+    let observed_stronger: Vec<f64> = stronger.iter().map(|d| d.statistic).collect();
+    let observed_weaker: Vec<f64> = weaker.iter().map(|d| d.statistic).collect();
+    let test = |observed: f64, null: &[f64], larger| {
+        (!null.is_empty()).then(|| p_value(observed, null, plan.exact, larger))
+    };
+    for (component, x) in work.sheet.stronger.iter_mut().zip(&observed_stronger) {
+        component.p = test(*x, &largest, true);
+    }
+    for (component, x) in work.sheet.weaker.iter_mut().zip(&observed_weaker) {
+        component.p = test(*x, &smallest, false);
+    }
+    work.sheet.permutation = Some(Permutation {
+        measure: recipe.measure,
+        asked: recipe.evidence.permutations,
+        done: work.null.len(),
+        distinct: plan.distinct,
+        exact: plan.exact,
+        null: null_hypothesis(design),
+        largest,
+        smallest,
+        observed_stronger,
+        observed_weaker,
+    });
+}
+
+/// Everything a careful reader should know, the most important first.
+fn warnings(work: &Work, recipe: &Recipe) -> Vec<String> {
+    let mut out = Vec::new();
+    let sheet = &work.sheet;
+    let repetitions = sheet.repetitions();
+    if repetitions < crate::evidence::FEWEST {
+        let unit = if sheet.windows.as_ref().is_some_and(|w| w.paired) {
+            "pairs of windows"
+        } else {
+            "windows a side"
+        };
+        out.push(format!(
+            "{repetitions} {unit}: enough to look, too few to test. Held-out ratios and p are withheld until there are {}.",
+            crate::evidence::FEWEST
+        ));
+    }
+    if let (Keep::Number(asked), Some(keep), Some(ground)) = (recipe.keep, work.keep, &work.ground)
+        && asked > keep
+    {
+        let rank = ground.space.rank;
+        out.push(format!(
+            "C = {asked} was asked for; the channels span {rank} dimensions, so {keep} are kept."
+        ));
+    }
+    if recipe.keep == Keep::Word(KeepWord::Best)
+        && let Some(keep) = work.keep
+    {
+        out.push(format!("C = {keep} was chosen by the labels; the choice is repeated in every fold and every permutation."));
+    }
+    if let (Some(prepared), Some(ground)) = (&work.prepared, &work.ground)
+        && ground.space.rank < prepared.channels.len()
+    {
+        out.push(format!(
+            "The rank is {} with {} channels: the rest are combinations of others (an average reference, an interpolated or a copied channel).",
+            ground.space.rank,
+            prepared.channels.len()
+        ));
+    }
+    out.extend(disagreement(work));
+    if let Some(selection) = &work.selection {
+        out.extend(selection.warnings.iter().cloned());
+    }
+    if let Some(prepared) = &work.prepared {
+        out.extend(prepared.warnings.iter().cloned());
+        out.extend(edge_warning(prepared, recipe));
+    }
+    out.extend(sheet.recording.warnings.iter().cloned());
+    out
+}
+
+/// Where a few large windows decide between the two measures, says how many.
+fn disagreement(work: &Work) -> Option<String> {
+    let component = work.sheet.stronger.first()?;
+    let typical = component
+        .typical
+        .held_out
+        .unwrap_or(component.typical.fitted);
+    let total = component.total.held_out.unwrap_or(component.total.fitted);
+    let factor = total / typical;
+    if factor < DISAGREEMENT && factor > 1.0 / DISAGREEMENT {
+        return None;
+    }
+    let (ground, design, ends) = (
+        work.ground.as_ref()?,
+        work.design.as_ref()?,
+        work.ends.as_ref()?,
+    );
+    let v = variances(&ground.space, &ends.stronger.first()?.u);
+    let side = factor > 1.0;
+    let mut powers: Vec<f64> = v
+        .iter()
+        .zip(&design.signal)
+        .filter(|(_, s)| **s == side)
+        .map(|(v, _)| *v)
+        .collect();
+    powers.sort_by(|a, b| b.total_cmp(a));
+    let half = 0.5 * powers.iter().sum::<f64>();
+    let mut sum = 0.0;
+    let few = powers.iter().take_while(|p| {
+        let before = sum < half;
+        sum += **p;
+        before
+    });
+    let few = few.count();
+    let which = if side { "signal" } else { "reference" };
+    Some(format!(
+        "The measures disagree on component 1: {typical:.2}× in a typical trial, {total:.2}× over all power. Half of its power on the {which} side lies in {few} of {} windows; look at them first.",
+        powers.len()
+    ))
+}
+
+/// Says when a window is short against the longest filter.
+fn edge_warning(prepared: &Prepared, recipe: &Recipe) -> Option<String> {
+    let Contrast::Windows { signal, reference } = &recipe.contrast;
+    let shortest = (signal.to_s - signal.from_s).min(reference.to_s - reference.from_s);
+    let filter = prepared.card.longest_filter_s;
+    (filter > 2.0 * shortest).then(|| {
+        format!("The longest filter spans {filter:.2} s, the shorter windows {shortest:.2} s: what happens beside a window reaches into it.")
+    })
+}

@@ -1,0 +1,1022 @@
+//! What is computed, in which order, and what a change of the recipe makes stale.
+use super::{Progress, Series, Stage, cards};
+use crate::contrast::fit::{Ends, Labels, Method, extremes, fit};
+use crate::contrast::space::Covariances;
+use crate::contrast::windows::{Selection, check, sample_at, select};
+use crate::describe::{course, spectra};
+use crate::error::{Kind, Problem, Result};
+use crate::evidence::FEWEST;
+use crate::evidence::heldout::{
+    Design, FoldFit, Ground, Scores, choose_keep, fit_ground, log_total, log_typical,
+    mean_and_error, score_into, variances,
+};
+use crate::evidence::permute::{Plan, STREAM_DESCRIBE, arrangement, plan};
+use crate::prepare::{Prepared, Preparing, inspect};
+use crate::recipe::{Contrast, Keep, KeepWord, Measure, Recipe, Shrink, ShrinkWord};
+use crate::recording::Recording;
+use crate::sheet::{ChannelCard, KeepCurve, Sheet};
+
+/// Largest C of `keep: "auto"`.
+const AUTO_LIMIT: usize = 150;
+/// Floating-point operations of one bite: about 20 ms in a browser.
+const BITE: f64 = 4e7;
+/// Values of C that `keep: "best"` chooses from go no further.
+const BEST_LIMIT: usize = 64;
+
+/// Everything computed so far.
+#[derive(Debug)]
+pub(super) struct Work {
+    pub(super) sheet: Sheet,
+    cards: Option<Vec<ChannelCard>>,
+    preparing: Option<Preparing>,
+    pub(super) prepared: Option<Prepared>,
+    pub(super) selection: Option<Selection>,
+    pub(super) covariances: Covariances,
+    pub(super) ground: Option<Ground>,
+    /// C in force, once known.
+    pub(super) keep: Option<usize>,
+    pub(super) design: Option<Design>,
+    pub(super) ends: Option<Ends>,
+    described: usize,
+    pub(super) folds: Vec<Ground>,
+    pub(super) fits: Vec<FoldFit>,
+    summarised: bool,
+    pub(super) plan: Option<Plan>,
+    pub(super) null: Vec<(f64, f64)>,
+    curve: CurveWork,
+}
+
+/// The ratio against C as far as it is.
+#[derive(Debug, Default)]
+struct CurveWork {
+    grid: Option<Vec<usize>>,
+    /// Held-out variances at the value of C in work, over the folds done.
+    scores: Scores,
+    /// 0: the whole; f + 1: fold f.
+    part: usize,
+    fitted: Vec<f64>,
+    held_out: Vec<f64>,
+    log_se: Vec<f64>,
+    done: bool,
+}
+
+/// The next thing to do.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+enum Task {
+    Inspect,
+    Prepare,
+    Select,
+    Covariances,
+    Ground,
+    Keep,
+    Logs,
+    Solve,
+    Describe,
+    FoldGround(usize),
+    FoldLogs(usize),
+    FoldFit(usize),
+    Summarise,
+    Permute,
+    Curve,
+    Nothing,
+}
+
+fn bites(per_unit: f64) -> usize {
+    (BITE / per_unit.max(1.0)).clamp(1.0, 4096.0) as usize
+}
+
+/// Operations of one matrix logarithm, roughly.
+fn log_cost(n: usize) -> f64 {
+    14.0 * (n as f64).powi(3) + 2000.0
+}
+
+impl Work {
+    pub(super) fn new(recording: &Recording, recipe: &Recipe) -> Self {
+        Work {
+            sheet: cards::begin(recording, recipe),
+            cards: None,
+            preparing: None,
+            prepared: None,
+            selection: None,
+            covariances: Covariances::default(),
+            ground: None,
+            keep: None,
+            design: None,
+            ends: None,
+            described: 0,
+            folds: Vec::new(),
+            fits: Vec::new(),
+            summarised: false,
+            plan: None,
+            null: Vec::new(),
+            curve: CurveWork::default(),
+        }
+    }
+
+    /// Drops what a changed recipe makes stale; refuses what cannot be begun.
+    pub(super) fn change(
+        &mut self,
+        recording: &Recording,
+        old: &Recipe,
+        new: &Recipe,
+    ) -> Result<()> {
+        let preparation = old.channels != new.channels || old.filter != new.filter;
+        if preparation {
+            // Refuse before anything is dropped.
+            let cards = inspect(recording, new);
+            Preparing::new(recording, &cards, new)?;
+            self.cards = None;
+            self.preparing = None;
+            self.prepared = None;
+        } else if let Some(prepared) = &self.prepared {
+            check(&new.contrast, &recording.events, prepared.rate_hz)?;
+        }
+        let windows = preparation || old.contrast != new.contrast;
+        if windows {
+            self.selection = None;
+            self.covariances = Covariances::default();
+            self.ground = None;
+            self.folds.clear();
+        }
+        let method = windows
+            || old.measure != new.measure
+            || old.shrink != new.shrink
+            || old.keep != new.keep
+            || old.components != new.components;
+        let folds = old.evidence.folds != new.evidence.folds;
+        if method || folds {
+            let logs_hold = !windows && old.shrink == new.shrink && old.measure == new.measure;
+            if !logs_hold {
+                self.ground
+                    .iter_mut()
+                    .chain(&mut self.folds)
+                    .for_each(|g| g.logs.clear());
+            }
+            self.keep = None;
+            self.ends = None;
+            self.described = 0;
+        }
+        if folds {
+            self.folds.clear();
+        }
+        if windows || folds {
+            self.design = None;
+        }
+        let evidence = old.evidence != new.evidence;
+        if method || evidence {
+            self.fits.clear();
+            self.summarised = false;
+            self.plan = None;
+            self.null.clear();
+        }
+        if evidence && old.evidence.bootstrap != new.evidence.bootstrap
+            || old.evidence.seed != new.evidence.seed
+        {
+            self.described = 0;
+        }
+        let curve_holds =
+            !windows && !folds && old.measure == new.measure && old.shrink == new.shrink;
+        if !curve_holds {
+            self.curve = CurveWork::default();
+        }
+        cards::forget(
+            &mut self.sheet,
+            new,
+            &cards::Stale {
+                preparation,
+                windows,
+                method,
+                evidence: method || evidence,
+                curve: !curve_holds,
+            },
+        );
+        Ok(())
+    }
+
+    fn enough(&self) -> bool {
+        self.selection
+            .as_ref()
+            .is_some_and(|s| s.repetitions() >= FEWEST)
+    }
+
+    fn method(&self, recipe: &Recipe) -> Method {
+        Method {
+            measure: recipe.measure,
+            shrink: recipe.shrink,
+            components: recipe.components,
+            folds: recipe.evidence.folds,
+        }
+    }
+
+    fn next(&self, recipe: &Recipe) -> Task {
+        if self.cards.is_none() {
+            return Task::Inspect;
+        }
+        if self.prepared.is_none() {
+            return Task::Prepare;
+        }
+        let Some(selection) = &self.selection else {
+            return Task::Select;
+        };
+        let windows = selection.windows.len();
+        if self.covariances.packed.len() < windows {
+            return Task::Covariances;
+        }
+        let Some(ground) = self.ground.as_ref().filter(|g| self.whole(g, recipe)) else {
+            return Task::Ground;
+        };
+        let Some(keep) = self.keep else {
+            return Task::Keep;
+        };
+        if !logs_ready(ground, keep, recipe) {
+            return Task::Logs;
+        }
+        if self.ends.is_none() {
+            return Task::Solve;
+        }
+        if self.described < self.sheet.stronger.len() + self.sheet.weaker.len() {
+            return Task::Describe;
+        }
+        if !self.enough() {
+            return Task::Nothing;
+        }
+        let folds = self.design.as_ref().map_or(0, |d| d.folds);
+        if self.fits.len() < folds {
+            let f = self.fits.len();
+            let Some(fold) = self.folds.get(f).filter(|g| self.whole(g, recipe)) else {
+                return Task::FoldGround(f);
+            };
+            return if self
+                .grid_for(fold, keep, recipe)
+                .iter()
+                .all(|c| logs_ready(fold, *c, recipe))
+            {
+                Task::FoldFit(f)
+            } else {
+                Task::FoldLogs(f)
+            };
+        }
+        if !self.summarised {
+            return Task::Summarise;
+        }
+        if self.plan.is_none_or(|p| self.null.len() < p.count) {
+            return Task::Permute;
+        }
+        if !self.curve.done {
+            Task::Curve
+        } else {
+            Task::Nothing
+        }
+    }
+
+    /// Whether a ground holds all its windows.
+    fn whole(&self, ground: &Ground, recipe: &Recipe) -> bool {
+        let windows = self.covariances.packed.len();
+        ground.space.covariances.len() == windows
+            && (!wants_fourth(recipe) || ground.fourth.len() == windows)
+    }
+
+    pub(super) fn finished(&self, recipe: &Recipe) -> bool {
+        self.next(recipe) == Task::Nothing
+    }
+
+    pub(super) fn step(&mut self, recording: &Recording, recipe: &Recipe) -> Result<Progress> {
+        let task = self.next(recipe);
+        match task {
+            Task::Inspect => {
+                let found = inspect(recording, recipe);
+                self.sheet.channels = found.clone();
+                self.cards = Some(found);
+                Ok(progress(
+                    Stage::Preparing,
+                    0,
+                    recording.channels.len() as u64,
+                    true,
+                ))
+            }
+            Task::Prepare => self.prepare(recording, recipe),
+            Task::Select => {
+                let Some(prepared) = &self.prepared else {
+                    return Err(lost());
+                };
+                let selection = select(
+                    &recipe.contrast,
+                    &recording.events,
+                    &prepared.stretches,
+                    prepared.rate_hz,
+                )?;
+                self.sheet.windows = Some(selection.card.clone());
+                let all = selection.windows.len() as u64;
+                self.selection = Some(selection);
+                Ok(progress(Stage::Windows, 0, all, true))
+            }
+            Task::Covariances => self.push_covariances(),
+            Task::Ground => self.push_ground(recipe),
+            Task::Keep => self.choose_keep(recipe),
+            Task::Logs => {
+                let keep = self.keep.unwrap_or(2);
+                let rho = self.method(recipe).rho();
+                let Some(ground) = &mut self.ground else {
+                    return Err(lost());
+                };
+                let done = push_logs(ground, keep, rho);
+                Ok(progress(
+                    Stage::Fitting,
+                    done,
+                    self.covariances.packed.len() as u64,
+                    false,
+                ))
+            }
+            Task::Solve => self.solve(recipe),
+            Task::Describe => self.describe(recording, recipe),
+            Task::FoldGround(f) => self.push_fold_ground(f, recipe),
+            Task::FoldLogs(f) => {
+                let rho = self.method(recipe).rho();
+                let keep = self.keep.unwrap_or(2);
+                let grid = self.grid_for(&self.folds[f], keep, recipe);
+                let fold = &mut self.folds[f];
+                if let Some(c) = grid.into_iter().find(|c| !logs_ready(fold, *c, recipe)) {
+                    push_logs(fold, c, rho);
+                }
+                Ok(self.fold_progress(f, 2))
+            }
+            Task::FoldFit(f) => self.fit_fold(f, recipe),
+            Task::Summarise => {
+                cards::held_out(self, recipe);
+                self.summarised = true;
+                let folds = self.folds.len() as u64;
+                Ok(progress(Stage::HeldOut, 3 * folds, 3 * folds, true))
+            }
+            Task::Permute => self.permute(recipe),
+            Task::Curve => self.curve(recipe),
+            Task::Nothing => Ok(progress(Stage::Done, 1, 1, false)),
+        }
+    }
+
+    fn prepare(&mut self, recording: &Recording, recipe: &Recipe) -> Result<Progress> {
+        if self.preparing.is_none() {
+            let cards = self.cards.as_deref().unwrap_or_default();
+            self.preparing = Some(Preparing::new(recording, cards, recipe)?);
+        }
+        let Some(preparing) = &mut self.preparing else {
+            return Err(lost());
+        };
+        let more = preparing.step(recording);
+        let (done, of) = preparing.progress();
+        if more && done < of {
+            return Ok(progress(Stage::Preparing, done as u64, of as u64, false));
+        }
+        let Some(prepared) = self.preparing.take().and_then(Preparing::finish) else {
+            return Err(lost());
+        };
+        self.sheet.preparation = Some(prepared.card.clone());
+        self.prepared = Some(prepared);
+        Ok(progress(Stage::Preparing, of as u64, of as u64, true))
+    }
+
+    fn push_covariances(&mut self) -> Result<Progress> {
+        let (Some(prepared), Some(selection)) = (&self.prepared, &self.selection) else {
+            return Err(lost());
+        };
+        let m = prepared.samples.len() as f64;
+        let first = self.covariances.packed.len();
+        let all = selection.windows.len();
+        let bite = bites(m * m * selection.windows[first].count as f64);
+        for window in selection.windows.iter().skip(first).take(bite) {
+            self.covariances.push(&prepared.samples, window);
+        }
+        if self
+            .covariances
+            .packed
+            .iter()
+            .flatten()
+            .any(|x| !x.is_finite())
+        {
+            return Err(Problem::new(
+                Kind::Contrast,
+                "the windows hold values that are not numbers",
+                "leave the channel out that holds them",
+            ));
+        }
+        let done = self.covariances.packed.len();
+        if done == all {
+            self.design = None;
+        }
+        Ok(progress(Stage::Windows, done as u64, all as u64, false))
+    }
+
+    fn limit(&self, recipe: &Recipe) -> usize {
+        match recipe.keep {
+            Keep::Number(keep) => keep.max(AUTO_LIMIT),
+            Keep::Word(_) => AUTO_LIMIT,
+        }
+    }
+
+    fn push_ground(&mut self, recipe: &Recipe) -> Result<Progress> {
+        let limit = self.limit(recipe);
+        let all = self.covariances.packed.len();
+        if self.ground.is_none() {
+            let ground = Ground::new(&self.covariances, limit, vec![true; all]);
+            if ground.space.dimensions() < 2 {
+                return Err(Problem::new(
+                    Kind::Contrast,
+                    "the channels span fewer than two dimensions in these windows",
+                    "use more channels, or longer windows",
+                )
+                .at("compression")
+                .expected_found("a rank of at least 2", ground.space.dimensions()));
+            }
+            self.ground = Some(ground);
+        }
+        let (Some(ground), Some(prepared), Some(selection)) =
+            (&mut self.ground, &self.prepared, &self.selection)
+        else {
+            return Err(lost());
+        };
+        let done = push_space(
+            ground,
+            &self.covariances,
+            wants_fourth(recipe).then_some((&prepared.samples[..], &selection.windows[..])),
+        );
+        Ok(progress(Stage::Fitting, done as u64 / 2, all as u64, false))
+    }
+
+    /// C by the recipe's rule.
+    fn choose_keep(&mut self, recipe: &Recipe) -> Result<Progress> {
+        let all = self.covariances.packed.len() as u64;
+        let method = self.method(recipe);
+        if self.design.is_none() {
+            let Some(selection) = &self.selection else {
+                return Err(lost());
+            };
+            let fold = selection.folds(recipe.evidence.folds);
+            let folds = fold.iter().max().map_or(0, |f| f + 1);
+            self.design = Some(Design {
+                paired: selection.paired,
+                signal: selection.sides(),
+                trial: selection.windows.iter().map(|w| w.trial).collect(),
+                fold,
+                folds,
+            });
+        }
+        let (Some(ground), Some(design)) = (&mut self.ground, &self.design) else {
+            return Err(lost());
+        };
+        let dimensions = ground.space.dimensions();
+        self.keep = match recipe.keep {
+            Keep::Number(keep) => Some(keep.min(dimensions)),
+            Keep::Word(KeepWord::Auto) => Some(dimensions.min(AUTO_LIMIT)),
+            Keep::Word(KeepWord::Best) => {
+                let grid = best_grid(dimensions);
+                if let Some(c) = grid.iter().find(|c| !logs_ready(ground, **c, recipe)) {
+                    push_logs(ground, *c, method.rho());
+                    return Ok(progress(Stage::Fitting, all / 2, all, false));
+                }
+                Some(choose_keep(
+                    ground,
+                    &grid,
+                    &self.covariances.weights,
+                    &design.signal,
+                    &method,
+                ))
+            }
+        };
+        Ok(progress(Stage::Fitting, all / 2, all, false))
+    }
+
+    fn solve(&mut self, recipe: &Recipe) -> Result<Progress> {
+        let method = self.method(recipe);
+        let (Some(ground), Some(design), Some(keep)) = (&self.ground, &self.design, self.keep)
+        else {
+            return Err(lost());
+        };
+        let labels = Labels {
+            signal: &design.signal,
+            train: &ground.train,
+        };
+        let ends = fit(
+            ground.view(&self.covariances.weights, keep),
+            labels,
+            &method,
+        )
+        .ok_or_else(|| {
+            Problem::new(
+                Kind::Contrast,
+                "the reference covariance cannot be inverted",
+                "choose shrink \"auto\" or a number above 0, or keep fewer dimensions",
+            )
+            .at("total measure")
+            .expected_found(
+                "a positive definite covariance",
+                format!("a singular one at C = {keep}, shrink {:?}", recipe.shrink),
+            )
+        })?;
+        self.ends = Some(ends);
+        cards::solved(self, recipe);
+        let all = self.covariances.packed.len() as u64;
+        Ok(progress(Stage::Fitting, all, all, false))
+    }
+
+    /// Spectra, course and single trials of the next component: the first of each end, then the others.
+    fn describe(&mut self, recording: &Recording, recipe: &Recipe) -> Result<Progress> {
+        let (Some(prepared), Some(selection)) = (&self.prepared, &self.selection) else {
+            return Err(lost());
+        };
+        let (up, down) = (self.sheet.stronger.len(), self.sheet.weaker.len());
+        let (stronger, index) = describing(self.described, up, down);
+        let component = if stronger {
+            &mut self.sheet.stronger[index]
+        } else {
+            &mut self.sheet.weaker[index]
+        };
+        let Contrast::Windows { signal, reference } = &recipe.contrast;
+        let rate = prepared.rate_hz;
+        let span = course_span(
+            signal.event == reference.event,
+            [signal.from_s, signal.to_s],
+            [reference.from_s, reference.to_s],
+        );
+        let onsets: Vec<(usize, f64)> = recording
+            .events
+            .iter()
+            .filter(|e| e.label == signal.event)
+            .filter_map(|e| Some((sample_at(&prepared.stretches, rate, e.onset_s)?, e.onset_s)))
+            .collect();
+        let side = |wanted: bool| -> Vec<(usize, usize)> {
+            selection
+                .windows
+                .iter()
+                .filter(|w| w.signal == wanted)
+                .map(|w| (w.first, w.count))
+                .collect()
+        };
+        let (signals, references) = (side(true), side(false));
+        let kept: Vec<(usize, f64)> = if selection.paired {
+            let used: Vec<f64> = selection
+                .windows
+                .iter()
+                .filter(|w| w.signal)
+                .map(|w| w.onset_s)
+                .collect();
+            onsets
+                .iter()
+                .copied()
+                .filter(|o| used.contains(&o.1))
+                .collect()
+        } else {
+            onsets
+        };
+        let series = partial_series(
+            prepared,
+            &component.filter,
+            &signals,
+            &references,
+            &kept,
+            span,
+        );
+        let (count, seed) = (
+            recipe.evidence.bootstrap,
+            recipe.evidence.seed ^ STREAM_DESCRIBE << 32,
+        );
+        let found = spectra::of_component(&series, &signals, &references, rate, count, seed);
+        component.peak_hz = spectra::peak_hz(
+            &found,
+            if stronger {
+                spectra::End::Stronger
+            } else {
+                spectra::End::Weaker
+            },
+        );
+        component.spectra = Some(found);
+        let baseline = if selection.paired && kept.len() == references.len() {
+            course::Baseline::Paired(&references)
+        } else {
+            course::Baseline::Pooled(&references)
+        };
+        let looked = course::Span {
+            from_s: span[0],
+            to_s: span[1],
+        };
+        if let Some((c, image)) = course::of_component(
+            &series,
+            &prepared.stretches,
+            &signal.event,
+            &kept,
+            baseline,
+            looked,
+            rate,
+            count,
+            seed,
+        ) {
+            component.course = Some(c);
+            component.image = Some(image);
+        }
+        self.described += 1;
+        // The first of both ends is a first result; then again when all are there.
+        let first = self.described == 2.min(up + down);
+        let all = self.covariances.packed.len() as u64;
+        Ok(progress(
+            Stage::Fitting,
+            all,
+            all,
+            first || self.described == up + down,
+        ))
+    }
+
+    fn fold_progress(&self, f: usize, part: u64) -> Progress {
+        let folds = self.design.as_ref().map_or(0, |d| d.folds) as u64;
+        progress(Stage::HeldOut, 3 * f as u64 + part, 3 * folds, false)
+    }
+
+    fn push_fold_ground(&mut self, f: usize, recipe: &Recipe) -> Result<Progress> {
+        let limit = self.limit(recipe);
+        let (Some(design), Some(prepared), Some(selection)) =
+            (&self.design, &self.prepared, &self.selection)
+        else {
+            return Err(lost());
+        };
+        if self.folds.len() <= f {
+            self.folds
+                .push(Ground::new(&self.covariances, limit, design.train(f)));
+        }
+        push_space(
+            &mut self.folds[f],
+            &self.covariances,
+            wants_fourth(recipe).then_some((&prepared.samples[..], &selection.windows[..])),
+        );
+        Ok(self.fold_progress(f, 1))
+    }
+
+    /// Values of C whose logarithms a fold needs before its fit.
+    fn grid_for(&self, fold: &Ground, keep: usize, recipe: &Recipe) -> Vec<usize> {
+        match recipe.keep {
+            Keep::Word(KeepWord::Best) => best_grid(fold.space.dimensions()),
+            _ => vec![keep.min(fold.space.dimensions())],
+        }
+    }
+
+    fn fit_fold(&mut self, f: usize, recipe: &Recipe) -> Result<Progress> {
+        let method = self.method(recipe);
+        let (Some(design), Some(keep)) = (&self.design, self.keep) else {
+            return Err(lost());
+        };
+        let fold = &self.folds[f];
+        let keep = match recipe.keep {
+            Keep::Word(KeepWord::Best) => choose_keep(
+                fold,
+                &self.grid_for(fold, keep, recipe),
+                &self.covariances.weights,
+                &design.signal,
+                &method,
+            ),
+            _ => keep.min(fold.space.dimensions()),
+        };
+        let fitted = fit_ground(fold, keep, &self.covariances, design, &method)
+            .ok_or_else(|| singular_fold(f))?;
+        self.fits.push(fitted);
+        Ok(self.fold_progress(f, 3))
+    }
+
+    fn permute(&mut self, recipe: &Recipe) -> Result<Progress> {
+        let method = self.method(recipe);
+        let (Some(ground), Some(design), Some(keep)) = (&self.ground, &self.design, self.keep)
+        else {
+            return Err(lost());
+        };
+        let plan = *self
+            .plan
+            .get_or_insert_with(|| plan(design, recipe.evidence.permutations));
+        let best = recipe.keep == Keep::Word(KeepWord::Best);
+        let grid = if best {
+            best_grid(ground.space.dimensions())
+        } else {
+            Vec::new()
+        };
+        let bite = bites(permutation_cost(
+            keep,
+            self.covariances.packed.len(),
+            &grid,
+            &method,
+        ));
+        let first = self.null.len();
+        for i in first..plan.count.min(first + bite) {
+            let signal = arrangement(design, plan, best, recipe.evidence.seed, i);
+            let c = if best {
+                choose_keep(ground, &grid, &self.covariances.weights, &signal, &method)
+            } else {
+                keep
+            };
+            let labels = Labels {
+                signal: &signal,
+                train: &ground.train,
+            };
+            self.null.push(
+                extremes(ground.view(&self.covariances.weights, c), labels, &method)
+                    .unwrap_or((f64::INFINITY, 0.0)),
+            );
+        }
+        let finished = self.null.len() >= plan.count;
+        if finished {
+            cards::permuted(self, recipe);
+        }
+        Ok(progress(
+            Stage::Permuting,
+            self.null.len() as u64,
+            plan.count as u64,
+            finished,
+        ))
+    }
+
+    /// One part (the whole, or one fold) at one value of C, in bites.
+    fn curve(&mut self, recipe: &Recipe) -> Result<Progress> {
+        let method = Method {
+            components: 1,
+            ..self.method(recipe)
+        };
+        let (Some(ground), Some(design), Some(keep)) = (&mut self.ground, &self.design, self.keep)
+        else {
+            return Err(lost());
+        };
+        let grid = self
+            .curve
+            .grid
+            .get_or_insert_with(|| curve_grid(ground.space.dimensions(), keep));
+        let of = (grid.len() * (self.folds.len() + 1)) as u64;
+        let at = self.curve.held_out.len();
+        let c = grid[at];
+        let part = self.curve.part;
+        let step = (at * (self.folds.len() + 1) + part) as u64;
+        let target = if part == 0 {
+            ground
+        } else {
+            &mut self.folds[part - 1]
+        };
+        if !logs_ready(target, c, recipe) {
+            push_logs(target, c, method.rho());
+            return Ok(progress(Stage::Curve, step, of, false));
+        }
+        let labels = Labels {
+            signal: &design.signal,
+            train: &target.train,
+        };
+        let ends = fit(target.view(&self.covariances.weights, c), labels, &method)
+            .ok_or_else(|| singular_fold(part))?;
+        let u = &ends.stronger[0].u;
+        if part == 0 {
+            let v = variances(&target.space, u);
+            let log = match recipe.measure {
+                Measure::Typical => log_typical(&v, design),
+                Measure::Total => log_total(&v, &self.covariances.weights, design, |_| true),
+            };
+            self.curve.fitted.push(log.exp());
+            self.curve.scores = vec![f64::NAN; v.len()];
+        } else {
+            score_into(
+                &mut self.curve.scores,
+                target,
+                &self.covariances.weights,
+                design,
+                part - 1,
+                u,
+            );
+        }
+        let wanted =
+            Some(c.min(target.space.dimensions())) == Some(keep.min(target.space.dimensions()));
+        if !wanted && recipe.keep != Keep::Word(KeepWord::Best) {
+            target.logs.remove(&c.min(target.space.dimensions()));
+        }
+        self.curve.part += 1;
+        if self.curve.part > self.folds.len() {
+            let (mean, error) = mean_and_error(
+                &self.curve.scores,
+                &self.covariances.weights,
+                design,
+                recipe.measure,
+            );
+            self.curve.held_out.push(mean.exp());
+            self.curve.log_se.push(error);
+            self.curve.part = 0;
+        }
+        self.curve.done = self.curve.held_out.len() == grid.len();
+        if self.curve.done {
+            self.sheet.curve = Some(KeepCurve {
+                keep: grid.clone(),
+                fitted: self.curve.fitted.clone(),
+                held_out: self.curve.held_out.clone(),
+                log_se: self.curve.log_se.clone(),
+            });
+            cards::guides(&mut self.sheet);
+        }
+        Ok(progress(Stage::Curve, step + 1, of, self.curve.done))
+    }
+
+    pub(super) fn series(&self) -> Option<Series> {
+        let prepared = self.prepared.as_ref()?;
+        let components = self.sheet.stronger.iter().chain(&self.sheet.weaker);
+        let all = prepared.samples.first().map_or(0, Vec::len);
+        let samples: Vec<Vec<f64>> = components
+            .map(|c| {
+                let mut out = vec![0.0; all];
+                add_projection(&mut out, prepared, &c.filter, 0, all);
+                out
+            })
+            .collect();
+        if samples.is_empty() {
+            return None;
+        }
+        let names = (1..=self.sheet.stronger.len())
+            .map(|i| format!("stronger {i}"))
+            .chain((1..=self.sheet.weaker.len()).map(|i| format!("weaker {i}")))
+            .collect();
+        Some(Series {
+            names,
+            samples,
+            rate_hz: prepared.rate_hz,
+            stretches: prepared.stretches.clone(),
+        })
+    }
+}
+
+fn progress(stage: Stage, done: u64, of: u64, news: bool) -> Progress {
+    Progress {
+        stage,
+        done,
+        of,
+        news,
+    }
+}
+
+/// A state that the order of tasks rules out; said rather than panicked about.
+fn lost() -> Problem {
+    Problem::new(
+        Kind::Contrast,
+        "a step began before what it needs",
+        "open the recording again; this is a fault of the program",
+    )
+}
+
+fn singular_fold(f: usize) -> Problem {
+    Problem::new(
+        Kind::Contrast,
+        "the reference covariance of a fold cannot be inverted",
+        "choose shrink \"auto\" or a number above 0, or keep fewer dimensions",
+    )
+    .at(format!("fold {}", f + 1))
+    .expected_found("a positive definite covariance", "a singular one")
+}
+
+/// Component number `at` of the describing order: first stronger, first weaker, other stronger, other weaker.
+fn describing(at: usize, up: usize, down: usize) -> (bool, usize) {
+    let firsts: Vec<(bool, usize)> = [(true, up), (false, down)]
+        .into_iter()
+        .filter(|x| x.1 > 0)
+        .map(|x| (x.0, 0))
+        .collect();
+    let others = (1..up)
+        .map(|i| (true, i))
+        .chain((1..down).map(|i| (false, i)));
+    firsts
+        .into_iter()
+        .chain(others)
+        .nth(at)
+        .unwrap_or((up > 0, 0))
+}
+
+/// Seconds around the event that are drawn: both windows and a quarter of their reach beyond, at least 0.3 s (paired); the
+/// signal window and as much before it (unpaired).
+fn course_span(paired: bool, signal: [f64; 2], reference: [f64; 2]) -> [f64; 2] {
+    let (from, to) = if paired {
+        (signal[0].min(reference[0]), signal[1].max(reference[1]))
+    } else {
+        (signal[0].min(-(signal[1] - signal[0])), signal[1])
+    };
+    let more = (0.25 * (to - from)).clamp(0.1, 0.5);
+    [from - more, to + more]
+}
+
+fn wants_fourth(recipe: &Recipe) -> bool {
+    recipe.measure == Measure::Total && recipe.shrink == Shrink::Word(ShrinkWord::LedoitWolf)
+}
+
+/// Whether the logarithms for C are there (the total measure needs none).
+fn logs_ready(ground: &Ground, keep: usize, recipe: &Recipe) -> bool {
+    recipe.measure == Measure::Total
+        || ground
+            .logs
+            .get(&keep.min(ground.space.dimensions()))
+            .is_some_and(|l| l.len() == ground.space.covariances.len())
+}
+
+fn push_logs(ground: &mut Ground, keep: usize, rho: f64) -> u64 {
+    let keep = keep.min(ground.space.dimensions());
+    for _ in 0..bites(log_cost(keep)) {
+        if !ground.push_log(keep, rho) {
+            break;
+        }
+    }
+    ground.logs.get(&keep).map_or(0, Vec::len) as u64
+}
+
+/// Whitens the next windows; also their fourth powers, where asked for.
+fn push_space(
+    ground: &mut Ground,
+    all: &Covariances,
+    fourth: Option<(&[Vec<f32>], &[crate::contrast::windows::Window])>,
+) -> usize {
+    let (m, r) = (all.channels as f64, ground.space.dimensions() as f64);
+    for _ in 0..bites(2.0 * m * r * (m + r)) {
+        let more = ground.space.push_next(all);
+        let also = fourth.is_some_and(|(samples, windows)| ground.push_fourth(samples, windows));
+        if !more && !also {
+            break;
+        }
+    }
+    ground.space.covariances.len()
+}
+
+fn permutation_cost(keep: usize, windows: usize, grid: &[usize], method: &Method) -> f64 {
+    let one = |c: usize| windows as f64 * (c * c) as f64 + 6.0 * (c as f64).powi(3) + 1000.0;
+    let fits = if method.measure == Measure::Total {
+        4.0 + 24.0 * method.folds as f64
+    } else {
+        1.0
+    };
+    fits * (one(keep) + method.folds as f64 * grid.iter().map(|c| 2.0 * one(*c)).sum::<f64>())
+}
+
+/// About 18 values of C from 2 to the most, denser below, with the one in force.
+fn curve_grid(most: usize, keep: usize) -> Vec<usize> {
+    let mut grid: Vec<usize> = if most <= 18 {
+        (2..=most).collect()
+    } else {
+        (0..18)
+            .map(|i| (2.0 * (most as f64 / 2.0).powf(f64::from(i) / 17.0)).round() as usize)
+            .collect()
+    };
+    grid.push(keep.min(most));
+    grid.sort_unstable();
+    grid.dedup();
+    grid
+}
+
+/// The values of C that `keep: "best"` chooses from.
+fn best_grid(most: usize) -> Vec<usize> {
+    let most = most.min(BEST_LIMIT);
+    let mut grid: Vec<usize> = (0..8)
+        .map(|i| (2.0 * (most as f64 / 2.0).powf(f64::from(i) / 7.0)).round() as usize)
+        .collect();
+    grid.dedup();
+    grid
+}
+
+/// The component where windows and courses need it, 0 elsewhere.
+fn partial_series(
+    prepared: &Prepared,
+    filter: &[f64],
+    signals: &[(usize, usize)],
+    references: &[(usize, usize)],
+    onsets: &[(usize, f64)],
+    span: [f64; 2],
+) -> Vec<f64> {
+    let all = prepared.samples.first().map_or(0, Vec::len);
+    let rate = prepared.rate_hz;
+    // The course smooths power over 0.2 s: half of that is needed beyond its ends.
+    let beyond = 0.5 * course::SMOOTHING_S;
+    let around = onsets.iter().map(|(at, _)| {
+        let from = (*at as f64 + (span[0] - beyond) * rate).floor().max(0.0) as usize;
+        let to = (*at as f64 + (span[1] + beyond) * rate).ceil().max(0.0) as usize + 2;
+        (from.min(all), to.min(all))
+    });
+    let mut ranges: Vec<(usize, usize)> = signals
+        .iter()
+        .chain(references)
+        .map(|(first, count)| (*first, first + count))
+        .chain(around)
+        .collect();
+    ranges.sort_unstable();
+    let mut out = vec![0.0; all];
+    let mut done = 0;
+    for (from, to) in ranges {
+        let from = from.max(done);
+        if from < to {
+            add_projection(&mut out, prepared, filter, from, to);
+            done = to;
+        }
+    }
+    out
+}
+
+/// out[from..to] += wᵀX[from..to], in blocks that stay in the cache.
+fn add_projection(out: &mut [f64], prepared: &Prepared, filter: &[f64], from: usize, to: usize) {
+    const BLOCK: usize = 4096;
+    let mut start = from;
+    while start < to {
+        let end = (start + BLOCK).min(to);
+        for (w, channel) in filter.iter().zip(&prepared.samples) {
+            for (y, x) in out[start..end].iter_mut().zip(&channel[start..end]) {
+                *y += w * f64::from(*x);
+            }
+        }
+        start = end;
+    }
+}

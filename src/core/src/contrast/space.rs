@@ -1,0 +1,197 @@
+//! Covariances of windows, and the space whitened by their pooled covariance.
+//!
+//! # Normalisation
+//! C_k = X_k X_kᵀ/(n_k−1) about each window's own mean; pools are weighted by n_k−1. In a [`Space`] the coordinates are
+//! z = diag(e)^(−1/2) Vᵀ x, so P becomes the identity; direction u there is the filter w = V diag(e)^(−1/2) u.
+//!
+//! # Rank
+//! Samples are stored as f32, so every channel carries rounding noise of variance about 2^(−48)/12 of its mean square. A dimension
+//! is counted when its eigenvalue exceeds ten times that noise and M·ε of the largest eigenvalue.
+use super::linalg::{Packed, add_scaled, eigh, gram, packed_len, unpack};
+use super::windows::Window;
+use nalgebra::DMatrix;
+
+/// Covariances of all windows of a selection.
+#[derive(Debug, Clone, Default)]
+pub struct Covariances {
+    /// M.
+    pub channels: usize,
+    /// One packed `M × M` matrix a window.
+    pub packed: Vec<Packed>,
+    /// n_k − 1.
+    pub weights: Vec<f64>,
+    /// Largest mean square of a channel in a window, its mean included.
+    pub largest_mean_square: f64,
+}
+
+impl Covariances {
+    /// Adds the covariance of the next window of `samples` (`channels × samples`).
+    pub fn push(&mut self, samples: &[Vec<f32>], window: &Window) {
+        let (m, n) = (samples.len(), window.count);
+        self.channels = m;
+        let stride = m.next_multiple_of(4);
+        let mut panel = vec![0.0; stride * n];
+        for (c, channel) in samples.iter().enumerate() {
+            let part = &channel[window.first..window.first + n];
+            let (mut sum, mut square) = (0.0, 0.0);
+            for x in part {
+                let x = f64::from(*x);
+                sum += x;
+                square += x * x;
+            }
+            self.largest_mean_square = self.largest_mean_square.max(square / n as f64);
+            let mean = sum / n as f64;
+            for (t, x) in part.iter().enumerate() {
+                panel[t * stride + c] = f64::from(*x) - mean;
+            }
+        }
+        let mut packed = gram(&panel, m, stride);
+        let weight = (n - 1) as f64;
+        packed.iter_mut().for_each(|x| *x /= weight);
+        self.packed.push(packed);
+        self.weights.push(weight);
+    }
+
+    /// Weighted mean over the windows that `include` names.
+    pub fn pooled(&self, include: impl Fn(usize) -> bool) -> Packed {
+        pooled(
+            &self.packed,
+            &self.weights,
+            packed_len(self.channels),
+            include,
+        )
+    }
+}
+
+/// Σ weight·C / Σ weight over the windows that `include` names, first `len` entries.
+pub fn pooled(
+    packed: &[Packed],
+    weights: &[f64],
+    len: usize,
+    include: impl Fn(usize) -> bool,
+) -> Packed {
+    let mut sum = vec![0.0; len];
+    let mut weight = 0.0;
+    for k in (0..packed.len()).filter(|k| include(*k)) {
+        add_scaled(&mut sum, &packed[k], weights[k]);
+        weight += weights[k];
+    }
+    if weight > 0.0 {
+        sum.iter_mut().for_each(|x| *x /= weight);
+    }
+    sum
+}
+
+/// The space whitened by a pooled covariance, and every window's covariance in it.
+#[derive(Debug, Clone)]
+pub struct Space {
+    /// P, packed, in channel space.
+    pub pooled: Packed,
+    /// All eigenvalues of P, descending.
+    pub eigenvalues: Vec<f64>,
+    /// Dimensions above rounding noise.
+    pub rank: usize,
+    /// `dimensions × M`: diag(e)^(−1/2) Vᵀ.
+    pub whitening: DMatrix<f64>,
+    /// Whitened covariances of the windows done so far, packed.
+    pub covariances: Vec<Packed>,
+}
+
+impl Space {
+    /// The space of the windows that `include` names, of at most `limit` dimensions; covariances come by [`Self::push_next`].
+    pub fn new(all: &Covariances, limit: usize, include: impl Fn(usize) -> bool) -> Self {
+        let m = all.channels;
+        let pooled = all.pooled(include);
+        let (eigenvalues, vectors) = eigh(&unpack(&pooled, m));
+        let largest = eigenvalues.first().copied().unwrap_or(0.0).max(0.0);
+        let storage_noise = all.largest_mean_square * 2f64.powi(-48) / 12.0;
+        let floor = (10.0 * storage_noise).max(largest * m as f64 * f64::EPSILON);
+        let rank = eigenvalues.iter().take_while(|e| **e > floor).count();
+        let dimensions = rank.min(limit);
+        let whitening = DMatrix::from_fn(dimensions, m, |i, c| {
+            vectors[(c, i)] / eigenvalues[i].sqrt()
+        });
+        Space {
+            pooled,
+            eigenvalues,
+            rank,
+            whitening,
+            covariances: Vec::new(),
+        }
+    }
+
+    /// Dimensions of the whitened covariances.
+    pub fn dimensions(&self) -> usize {
+        self.whitening.nrows()
+    }
+
+    /// Whitens the covariance of the next window; false when all are done.
+    pub fn push_next(&mut self, all: &Covariances) -> bool {
+        let k = self.covariances.len();
+        let Some(packed) = all.packed.get(k) else {
+            return false;
+        };
+        let half = &self.whitening * unpack(packed, all.channels);
+        let full = &half * self.whitening.transpose();
+        let n = self.dimensions();
+        let mut out = Vec::with_capacity(packed_len(n));
+        for i in 0..n {
+            for j in 0..=i {
+                out.push(0.5 * (full[(i, j)] + full[(j, i)]));
+            }
+        }
+        self.covariances.push(out);
+        true
+    }
+
+    /// w = V diag(e)^(−1/2) u in channel space, for u of the leading dimensions.
+    pub fn filter(&self, u: &[f64]) -> Vec<f64> {
+        (0..self.whitening.ncols())
+            .map(|c| {
+                u.iter()
+                    .enumerate()
+                    .map(|(i, x)| x * self.whitening[(i, c)])
+                    .sum()
+            })
+            .collect()
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn the_pooled_covariance_becomes_the_identity_and_a_copied_channel_costs_one_rank() {
+        let mut state = 5u64;
+        let mut next = || {
+            state = state
+                .wrapping_mul(6364136223846793005)
+                .wrapping_add(1442695040888963407);
+            ((state >> 11) as f64 * 2f64.powi(-53) - 0.5) as f32
+        };
+        let mut samples: Vec<Vec<f32>> = (0..5)
+            .map(|_| (0..400).map(|_| 100.0 + next()).collect())
+            .collect();
+        samples.push(samples[0].clone());
+        let mut all = Covariances::default();
+        for k in 0..8 {
+            all.push(
+                &samples,
+                &Window {
+                    first: 50 * k,
+                    count: 50,
+                    signal: k % 2 == 0,
+                    trial: k / 2,
+                    onset_s: 0.0,
+                },
+            );
+        }
+        let mut space = Space::new(&all, 150, |_| true);
+        assert_eq!(space.rank, 5);
+        while space.push_next(&all) {}
+        let p = pooled(&space.covariances, &all.weights, packed_len(5), |_| true);
+        let identity = unpack(&p, 5);
+        assert!((identity - DMatrix::<f64>::identity(5, 5)).amax() < 1e-10);
+    }
+}

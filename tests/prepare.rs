@@ -1,0 +1,1 @@
+//! Filters, resampling, channel matrix: against SciPy and by hand.
