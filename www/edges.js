@@ -14,6 +14,8 @@ import { make, seconds } from "./kit.js";
  */
 
 const ROOM_BELOW = 46;
+/** Grips and values nearer than this to each other move apart, the lines stay. */
+const [GRIP_ROOM, VALUE_ROOM] = [26, 66];
 
 /**
  * Lays edges over a figure's plot and keeps them there.
@@ -42,12 +44,10 @@ export function edgesOver(place, plans) {
       node.setAttribute("aria-valuemax", String(high));
       node.setAttribute("aria-valuetext", plan.text(value));
       worth.textContent = `${seconds(value)} s`;
-      if (!box) continue;
-      const x = box.left + ((value - box.x0) / (box.x1 - box.x0)) * (box.right - box.left);
-      node.style.left = `${Math.max(box.left, Math.min(box.right, x))}px`;
-      node.style.top = `${box.top}px`;
-      node.style.bottom = "0";
+      node.style.top = `${box?.top ?? 0}px`;
     }
+    const plot = box;
+    if (plot) apart(nodes.map(({ node, plan }) => ({ node, x: across(plot, plan.value()) })));
   };
   return {
     lay,
@@ -57,6 +57,32 @@ export function edgesOver(place, plans) {
       lay();
     },
   };
+}
+
+/** @param {PlotBox} box @param {number} value */
+function across(box, value) {
+  const x = box.left + ((value - box.x0) / (box.x1 - box.x0)) * (box.right - box.left);
+  return Math.max(box.left, Math.min(box.right, x));
+}
+
+/** Places the edges; where two stand close together, their grips and values make room for each other. @param {{ node: HTMLElement, x: number }[]} edges */
+function apart(edges) {
+  const order = edges.map((edge, i) => ({ ...edge, i })).sort((a, b) => a.x - b.x || a.i - b.i);
+  const spread = (/** @type {number} */ room) => {
+    const at = order.map(({ x }) => x);
+    for (let round = 0; round < 8; round += 1)
+      for (let k = 1; k < at.length; k += 1) {
+        const lack = room - (Number(at[k]) - Number(at[k - 1]));
+        if (lack > 0) (at[k - 1] = Number(at[k - 1]) - lack / 2), (at[k] = Number(at[k]) + lack / 2);
+      }
+    return at;
+  };
+  const [grips, values] = [spread(GRIP_ROOM), spread(VALUE_ROOM)];
+  order.forEach(({ node, x }, k) => {
+    node.style.left = `${grips[k]}px`;
+    node.style.setProperty("--line", `${x - Number(grips[k])}px`);
+    node.style.setProperty("--value", `${Number(values[k]) - Number(grips[k])}px`);
+  });
 }
 
 /** Arrows one step, Shift ten, Home and End the limits. @param {KeyboardEvent} event @param {number} value @param {number} step @param {[number, number]} limits */
@@ -88,7 +114,7 @@ function drag(node, plan, boxNow, place) {
     down.preventDefault();
     node.focus({ preventScroll: true });
     node.setPointerCapture(down.pointerId);
-    const grabbed = down.clientX - place.getBoundingClientRect().left - parseFloat(node.style.left);
+    const grabbed = down.clientX - place.getBoundingClientRect().left - across(box, plan.value());
     const move = (/** @type {PointerEvent} */ at) => {
       const x = at.clientX - place.getBoundingClientRect().left - grabbed;
       const value = box.x0 + ((x - box.left) / (box.right - box.left)) * (box.x1 - box.x0);

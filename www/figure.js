@@ -1,5 +1,5 @@
 /** A figure on the sheet: canvas, caption, saving, the numbers behind it, and redrawing whenever its place or the scheme changes. */
-import { download, make } from "./kit.js";
+import { afterRest, download, make } from "./kit.js";
 import { csv } from "./tables.js";
 import { now } from "./state.js";
 import { readingOf } from "./readings.js";
@@ -26,6 +26,7 @@ import { readingOf } from "./readings.js";
  * @property {Plan} plan
  * @property {() => Figure | null} figure
  * @property {() => void} draw
+ * @property {() => boolean} near whether it can be seen, or nearly
  * @property {() => void} refresh fetches the data again: at once where the figure can be seen, otherwise when it comes near
  * @property {() => Promise<void>} settle fetches and draws wherever the figure is
  * @property {() => void} drop forgets the figure's place on the page
@@ -62,14 +63,24 @@ export function figureSlot(app, name, plan) {
     canvas.setAttribute("aria-label", `${plan.label}. ${readingOf(plan.section)}`);
     plan.placed?.(app.bridge.plotBox(figure, width, height), { width, height });
   };
+  const newest = async () => {
+    if (plan.load) return plan.load();
+    const { figures, drawn } = now();
+    return figures.includes(name) ? (drawn[name] ?? app.bridge.figure(name)) : null;
+  };
   const load = async () => {
     if (loading) return void (again = true);
     loading = true;
+    /** @type {Figure | null} */
+    let loaded = null;
     try {
       do {
         again = false;
-        figure = await (plan.load ? plan.load() : now().figures.includes(name) ? app.bridge.figure(name) : Promise.resolve(null));
+        loaded = await newest();
       } while (again);
+      // While the work goes on, the figure of the choices before stays.
+      if (!loaded && figure && now().phase === "working") return;
+      figure = loaded;
       fresh = true;
       root.hidden = !figure;
       draw();
@@ -80,6 +91,7 @@ export function figureSlot(app, name, plan) {
   /** @type {Slot} */
   const slot = {
     name, root, place, plan, draw,
+    near: () => near,
     figure: () => figure,
     refresh() {
       fresh = false;
@@ -89,11 +101,13 @@ export function figureSlot(app, name, plan) {
     settle: async () => void (fresh || (await load())),
     drop() {
       slots.delete(slot);
+      near = false;
       nearby.unobserve(root);
       resized.unobserve(place);
     },
     comes(yes) {
       near = yes;
+      watch(app);
       if (yes && !fresh) void load();
     },
   };
@@ -109,6 +123,20 @@ export function figureSlot(app, name, plan) {
 const owners = new WeakMap();
 const nearby = new IntersectionObserver((entries) => entries.forEach(({ target, isIntersecting }) => owners.get(target)?.comes(isIntersecting)), { rootMargin: "300px" });
 const resized = new ResizeObserver((entries) => entries.forEach(({ target }) => owners.get(target)?.draw()));
+
+/** Asks for the figures near the window to come along with each sheet. @type {(app: App) => void} */
+const watch = (() => {
+  /** @type {App | null} */
+  let asker = null;
+  const ask = afterRest(() => {
+    const names = [...slots].filter((slot) => slot.near() && !slot.plan.load).map(({ name }) => name);
+    void asker?.bridge.watch([...new Set(names)]).catch(() => undefined);
+  }, 60);
+  return (app) => {
+    asker = app;
+    ask();
+  };
+})();
 
 /** All figures of a section, or of the whole sheet. @param {string} [section] */
 export function figuresOf(section) {

@@ -7,6 +7,12 @@ import { follow, now } from "./state.js";
 const PATIENCE_MS = 450;
 const REST_MS = 300;
 
+/** @type {Record<string, string>} */
+const WORDS = {
+  reading: "Reading the recording", making: "Making the recording", preparing: "Preparing the channels", windows: "Covariances of the windows",
+  fitting: "Looking for what differs", "held-out": "Testing on trials that were held out", permuting: "Permuting", curve: "Ratio against the dimensions kept",
+};
+
 let began = 0;
 let stage = "";
 let stageBegan = 0;
@@ -43,14 +49,14 @@ function show(box) {
   box.style.setProperty("--part", part.toFixed(1));
   find("h3", box).textContent = heading();
   find(".shown .quiet", box).textContent = rest(part);
-  if (long) speak(`${progress.stage}, please wait`);
+  if (long) speak(WORDS[progress.stage] ?? "");
 }
 
 function heading() {
   const { progress } = now();
   if (!progress) return "";
-  const numbers = progress.of > 1 && progress.of < 1e6 ? `: ${count(progress.done)} of ${count(progress.of)}` : progress.of > 1 ? `: ${Math.floor((100 * progress.done) / progress.of)} %` : "";
-  return progress.stage.charAt(0).toUpperCase() + progress.stage.slice(1) + numbers;
+  const numbers = progress.stage === "permuting" ? `: ${count(progress.done)} of ${count(progress.of)}` : progress.of > 1 ? `: ${Math.floor((100 * progress.done) / progress.of)} %` : "";
+  return (WORDS[progress.stage] ?? "Working") + numbers;
 }
 
 /** @param {number} part */
