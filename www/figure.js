@@ -37,6 +37,8 @@ import { readingOf } from "./readings.js";
 const slots = new Set();
 const dark = matchMedia("(prefers-color-scheme: dark)");
 let printing = false;
+/** A4 less its margins (see @page in the style sheet), in CSS px. */
+const PAPER_WIDTH = 688;
 
 /**
  * @param {App} app
@@ -54,7 +56,7 @@ export function figureSlot(app, name, plan) {
   let [fresh, near, loading, again] = [false, false, false, false];
 
   const draw = () => {
-    const width = plan.width ?? place.clientWidth;
+    const width = plan.width ?? Math.round(place.clientWidth * onPaper(place));
     if (!figure || width < 20) return;
     const height = plan.height ?? app.bridge.figureHeight(figure, width);
     const scale = printing ? 3 : Math.max(1, devicePixelRatio);
@@ -98,7 +100,7 @@ export function figureSlot(app, name, plan) {
       if (root.hidden && (plan.load || now().figures.includes(name))) root.hidden = false;
       if (near) void load();
     },
-    settle: async () => void (fresh || (await load())),
+    settle: async () => void (fresh || (await load().catch(() => undefined))),
     drop() {
       slots.delete(slot);
       near = false;
@@ -143,6 +145,21 @@ export function figuresOf(section) {
   return [...slots].filter(({ plan }) => !section || plan.section === section);
 }
 
+/** Fetches every figure that is not there yet, a few at a time, so that paper and screen hold the same. */
+export async function settleFigures() {
+  for (const slot of [...slots]) {
+    await new Promise((/** @type {(value?: unknown) => void} */ done) => setTimeout(done, 30));
+    if (now().phase !== "ready") return;
+    await slot.settle();
+  }
+}
+
+/** How much narrower a place is on paper than on the screen. @param {HTMLElement} place */
+function onPaper(place) {
+  const column = place.closest(".body")?.clientWidth;
+  return printing && column ? PAPER_WIDTH / column : 1;
+}
+
 /** Tells every figure that the sheet has changed. */
 export function refreshFigures() {
   for (const slot of slots) slot.refresh();
@@ -156,7 +173,6 @@ export function mountFigures() {
   density();
   const turn = (/** @type {boolean} */ on) => {
     printing = on;
-    document.documentElement.toggleAttribute("data-printing", on);
     all();
   };
   addEventListener("beforeprint", () => turn(true));

@@ -6,7 +6,7 @@ import { mountChoosing } from "./choosing.js";
 import { mountComponents } from "./components.js";
 import { mountCompression } from "./compression.js";
 import { mountEvidence } from "./evidence.js";
-import { figuresOf, mountFigures, refreshFigures } from "./figure.js";
+import { figuresOf, mountFigures, refreshFigures, settleFigures } from "./figure.js";
 import { mountFinding } from "./finding.js";
 import { mountFirst } from "./first.js";
 import { mountLedger } from "./ledger.js";
@@ -137,6 +137,7 @@ function listen(bridge, doors) {
     if (generation < expected) return;
     put({ phase: "ready", progress: null, stale: false });
     refreshFigures();
+    void settleFigures();
   });
   bridge.on("problem", (problem) => doors.failed(problem));
   bridge.on("died", () => doors.died());

@@ -4,7 +4,7 @@ import { speak } from "./readings.js";
 import { follow, now } from "./state.js";
 
 /** Work that ends sooner than this goes unmentioned. */
-const PATIENCE_MS = 450;
+const [PATIENCE_MS, READING_PATIENCE_MS] = [450, 180];
 const REST_MS = 300;
 
 /** @type {Record<string, string>} */
@@ -42,8 +42,8 @@ export function mountProgress(stop) {
 /** @param {HTMLElement} box */
 function show(box) {
   const { progress, phase } = now();
-  const long = performance.now() - began > PATIENCE_MS;
-  box.classList.toggle("at-rest", !progress || (!long && phase !== "reading"));
+  const long = performance.now() - began > (phase === "reading" ? READING_PATIENCE_MS : PATIENCE_MS);
+  box.classList.toggle("at-rest", !progress || !long);
   if (!progress) return;
   const part = progress.of > 0 ? (100 * progress.done) / progress.of : 0;
   box.style.setProperty("--part", part.toFixed(1));

@@ -30,6 +30,7 @@ function show(step, said) {
     knot.style.setProperty("--part", String(said.percent ?? 0));
     if (place.localName !== "li") continue;
     find(".answer", place).textContent = said.answer;
+    find("a", place).setAttribute("aria-current", said.knot === "now" || said.knot === "work" ? "step" : "false");
     find(".aside", place).textContent = said.percent === undefined ? WORDS[said.knot] : `working, ${Math.round(said.percent)} %`;
   }
 }
