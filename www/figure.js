@@ -1,7 +1,7 @@
 /** A figure on the sheet: canvas, caption, saving, the numbers behind it, and redrawing whenever its place or the scheme changes. */
 import { afterRest, download, make } from "./kit.js";
 import { csv } from "./tables.js";
-import { now } from "./state.js";
+import { follow, now } from "./state.js";
 import { readingOf } from "./readings.js";
 
 /** @typedef {import("./types").App} App */
@@ -16,6 +16,7 @@ import { readingOf } from "./readings.js";
  * @property {number} [width] fixed width in CSS px; otherwise the place's own
  * @property {number} [height] fixed height in CSS px; otherwise the figure's natural one
  * @property {() => Promise<Figure | null>} [load] where the data come from; otherwise the newest sheet
+ * @property {(figure: any) => Figure} [adjust] brings the figure's dials up to the choices, ahead of the numbers
  * @property {(box: PlotBox | null, size: { width: number, height: number }) => void} [placed] called after each drawing
  */
 /**
@@ -58,12 +59,13 @@ export function figureSlot(app, name, plan) {
   const draw = () => {
     const width = plan.width ?? Math.round(place.clientWidth * onPaper(place));
     if (!figure || width < 20) return;
-    const height = plan.height ?? app.bridge.figureHeight(figure, width);
+    const adjusted = plan.adjust ? plan.adjust(figure) : figure;
+    const height = plan.height ?? app.bridge.figureHeight(adjusted, width);
     const scale = printing ? 3 : Math.max(1, devicePixelRatio);
-    app.bridge.draw(canvas, figure, { width, height, scale, dark: dark.matches && !printing });
+    app.bridge.draw(canvas, adjusted, { width, height, scale, dark: dark.matches && !printing });
     canvas.style.width = plan.width ? `${width}px` : "";
     canvas.setAttribute("aria-label", `${plan.label}. ${readingOf(plan.section)}`);
-    plan.placed?.(app.bridge.plotBox(figure, width, height), { width, height });
+    plan.placed?.(app.bridge.plotBox(adjusted, width, height), { width, height });
   };
   const newest = async () => {
     if (plan.load) return plan.load();
@@ -175,6 +177,9 @@ export function mountFigures() {
     printing = on;
     all();
   };
+  follow((state, before) => {
+    if (state.recipe !== before.recipe) for (const slot of slots) if (slot.plan.adjust) slot.draw();
+  });
   addEventListener("beforeprint", () => turn(true));
   addEventListener("afterprint", () => turn(false));
 }
