@@ -1,1 +1,54 @@
-//! The invented demo recordings.
+//! The invented demo recordings: made from a seed, with the truth kept beside them.
+//!
+//! The same seed gives the same recording on every machine: numbers come from a portable generator, every process has its own
+//! stream, and the samples are rounded to steps of 0.1 µV, far above what two mathematics libraries differ by.
+mod head;
+mod process;
+mod watch;
+
+pub use watch::night_watch;
+
+use crate::recipe::Recipe;
+use crate::recording::Recording;
+use serde::{Deserialize, Serialize};
+
+/// A demo recording, what is true about it, and the recipe that asks for it.
+#[derive(Debug, Clone)]
+pub struct Demo {
+    /// As if it had been read from a file.
+    pub recording: Recording,
+    /// What was planted.
+    pub truth: Truth,
+    /// A recipe that finds it.
+    pub recipe: Recipe,
+}
+
+/// What was planted in a demo recording.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Truth {
+    /// Names of the channels, in the order of every pattern and filter.
+    pub channels: Vec<String>,
+    /// The source that grows after the event.
+    pub stronger: Pattern,
+    /// The source that falls after the event.
+    pub weaker: Pattern,
+    /// Sources that are large and do not depend on the event.
+    pub nuisance: Vec<Pattern>,
+}
+
+/// One source: how it appears on the channels, and how it is best read from them.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Pattern {
+    /// What it is.
+    pub name: String,
+    /// Its frequency, for a rhythm.
+    pub hz: Option<f64>,
+    /// Its weight on every channel, the largest 1.
+    pub pattern: Vec<f64>,
+    /// The linear unit-gain filter with the least variance on the whole recording as it stands, without other filters:
+    /// w = P⁻¹a / (aᵀP⁻¹a), P the covariance over all samples, a the pattern. Empty for nuisances.
+    pub filter: Vec<f64>,
+    /// The source itself, one value a sample, in µV at the channel where its pattern is largest. Not written to JSON.
+    #[serde(skip)]
+    pub course: Vec<f32>,
+}

@@ -5,6 +5,22 @@
 //!
 //! # Axis order
 //! `samples[channel][sample]`, one `Vec<f32>` a channel, all at [`Recording::rate_hz`].
+//!
+//! # Time
+//! The file's clock starts at the start time in its header. A file may say that its first sample comes a fraction of a second
+//! later, or that there are gaps: a sample's time is its [`Stretch`]'s onset plus its place in the stretch over the rate.
+//!
+//! # Adding a format
+//! One file with a `FORMAT` row (name, score of the first bytes, begin) and a type that implements the crate's `Reader`;
+//! one line in the table of `opening.rs`. The content decides who reads a file, its name never does.
+mod budget;
+pub mod edf;
+mod events_table;
+mod opening;
+
+pub use budget::MEMORY_BYTES;
+pub use opening::{MemorySource, OpenOptions, Opening, open};
+
 use serde::{Deserialize, Serialize};
 
 /// A multichannel recording in memory.

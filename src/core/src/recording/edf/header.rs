@@ -1,0 +1,373 @@
+//! The header of an EDF file: fixed ASCII fields, each checked before anything is believed.
+use crate::error::{Kind, Problem, Result};
+use crate::recording::Source;
+use crate::recording::budget::Budget;
+
+/// Bytes of the fixed part, and of each signal's part.
+pub(super) const PART: u64 = 256;
+/// Label of a signal that holds text, in EDF+.
+const TEXT_LABEL: &str = "EDF Annotations";
+/// Widths of a signal's ten fields, in file order.
+const WIDTHS: [usize; 10] = [16, 80, 8, 8, 8, 8, 8, 80, 8, 32];
+
+/// What the reserved field says.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum Variant {
+    Plain,
+    Continuous,
+    Discontinuous,
+}
+
+impl Variant {
+    pub(super) fn name(self) -> &'static str {
+        match self {
+            Variant::Plain => "EDF",
+            Variant::Continuous => "EDF+C",
+            Variant::Discontinuous => "EDF+D",
+        }
+    }
+}
+
+/// One signal of the header.
+#[derive(Debug, Clone)]
+pub(super) struct Signal {
+    pub(super) label: String,
+    /// As in the file.
+    pub(super) unit: String,
+    /// Holds annotations.
+    pub(super) is_text: bool,
+    /// Samples a record.
+    pub(super) samples: u64,
+    /// First byte in a record.
+    pub(super) offset: u64,
+    /// From digital to physical, or why that cannot be had.
+    pub(super) scale: std::result::Result<Scale, String>,
+}
+
+/// `physical = digital · gain + offset`.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub(super) struct Scale {
+    pub(super) gain: f64,
+    pub(super) offset: f64,
+}
+
+impl Scale {
+    /// From the four limits; `factor` brings the unit to the one wanted.
+    pub(super) fn from_limits(physical: [f64; 2], digital: [f64; 2], factor: f64) -> Self {
+        let gain = (physical[1] - physical[0]) / (digital[1] - digital[0]);
+        let offset = physical[1] - gain * digital[1];
+        // Digital 0 of symmetric limits is 0, not the rounding error of their difference.
+        let is_rounding = offset.abs() < 1e-9 * gain.abs();
+        Scale {
+            gain: gain * factor,
+            offset: if is_rounding { 0.0 } else { offset * factor },
+        }
+    }
+    pub(super) fn value(self, digital: i16) -> f32 {
+        (f64::from(digital) * self.gain + self.offset) as f32
+    }
+}
+
+/// Everything the header says.
+#[derive(Debug, Clone)]
+pub(super) struct Header {
+    pub(super) variant: Variant,
+    pub(super) bytes: u64,
+    /// `None` where the header says −1: not known when it was written.
+    pub(super) records: Option<u64>,
+    pub(super) record_s: f64,
+    pub(super) record_bytes: u64,
+    pub(super) signals: Vec<Signal>,
+    pub(super) warnings: Vec<String>,
+}
+
+impl Header {
+    /// Where a byte of a record belongs: `record 12, channel "Fz", byte 40960`.
+    pub(super) fn place(&self, record: u64, byte_in_record: u64) -> String {
+        let byte = self.bytes + record * self.record_bytes + byte_in_record;
+        match self.signal_at(byte_in_record) {
+            Some(signal) => format!(
+                "record {}, channel \"{}\", byte {byte}",
+                record + 1,
+                signal.label
+            ),
+            None => format!("record {}, byte {byte}", record + 1),
+        }
+    }
+    /// The signal that holds a byte of a record.
+    pub(super) fn signal_at(&self, byte_in_record: u64) -> Option<&Signal> {
+        self.signals
+            .iter()
+            .find(|s| (s.offset..s.offset + 2 * s.samples).contains(&byte_in_record))
+    }
+}
+
+/// Reads and checks the header.
+pub(super) fn read(source: &mut dyn Source, budget: &mut Budget) -> Result<Header> {
+    let mut fixed = [0; PART as usize];
+    if source.len() < PART {
+        return Err(damaged("the file ends within its header")
+            .at(format!("file header, byte {}", source.len()))
+            .expected_found("at least 256 bytes", format!("{} bytes", source.len())));
+    }
+    source.read_at(0, &mut fixed)?;
+    let mut warnings = Vec::new();
+    let place = |what: &str, byte: usize| format!("file header, {what}, byte {byte}");
+
+    let count_place = place("number of signals", 252);
+    let signals = whole(&fixed[252..256], &count_place)?;
+    if signals < 1 {
+        return Err(damaged("the header lists no signal")
+            .at(count_place)
+            .expected_found("at least 1 signal", signals));
+    }
+    let signals = signals as u64;
+    let bytes = PART * (1 + signals);
+    let length_place = place("length of the header", 184);
+    let stated = whole(&fixed[184..192], &length_place)?;
+    if stated != bytes as i64 {
+        return Err(
+            damaged("the header's length does not fit its number of signals")
+                .at(length_place)
+                .expected_found(
+                    format!("{bytes} bytes for {}", counted(signals, "signal")),
+                    format!("{stated} bytes"),
+                ),
+        );
+    }
+    if source.len() < bytes {
+        return Err(damaged("the file ends within its header")
+            .at(format!("file header, byte {}", source.len()))
+            .expected_found(
+                format!("{bytes} bytes for {}", counted(signals, "signal")),
+                format!("{} bytes", source.len()),
+            ));
+    }
+    let variant = variant(&fixed[192..236])?;
+    let records_place = place("number of records", 236);
+    let records = match whole(&fixed[236..244], &records_place)? {
+        -1 => None,
+        n if n >= 0 => Some(n as u64),
+        n => {
+            return Err(damaged("the number of records is negative")
+                .at(records_place)
+                .expected_found("0 or more, or -1 for not known", n));
+        }
+    };
+    let record_s = real(
+        &fixed[244..252],
+        &place("duration of a record", 244),
+        &mut warnings,
+    )?;
+
+    budget.draw(3 * bytes, "its header")?;
+    let mut rest = vec![0; (bytes - PART) as usize];
+    source.read_at(PART, &mut rest)?;
+    let mut header = Header {
+        variant,
+        bytes,
+        records,
+        record_s,
+        record_bytes: 0,
+        signals: Vec::with_capacity(signals as usize),
+        warnings,
+    };
+    for index in 0..signals as usize {
+        let fields = fields(&rest, signals as usize, index);
+        let signal = signal(&mut header, index, &fields)?;
+        header.record_bytes = header.record_bytes.saturating_add(2 * signal.samples);
+        header.signals.push(signal);
+    }
+    check_duration(&header)?;
+    Ok(header)
+}
+
+/// A field of a signal and its first byte in the file.
+type Field<'a> = (&'a [u8], u64);
+
+fn fields(rest: &[u8], signals: usize, index: usize) -> [Field<'_>; 10] {
+    let mut start = 0;
+    WIDTHS.map(|width| {
+        let from = start + index * width;
+        start += signals * width;
+        (&rest[from..from + width], PART + from as u64)
+    })
+}
+
+fn signal(header: &mut Header, index: usize, fields: &[Field<'_>; 10]) -> Result<Signal> {
+    let label = text(fields[0].0);
+    let place = |what: &str, field: Field<'_>| {
+        format!(
+            "file header, channel {} \"{label}\", {what}, byte {}",
+            index + 1,
+            field.1
+        )
+    };
+    let samples_place = place("samples a record", fields[8]);
+    let samples = whole(fields[8].0, &samples_place)?;
+    if samples < 0 {
+        return Err(damaged("a channel's number of samples is negative")
+            .at(samples_place)
+            .expected_found("1 sample a record or more", samples));
+    }
+    let is_text = header.variant != Variant::Plain && label == TEXT_LABEL;
+    let unit = text(fields[2].0);
+    let scale = if is_text {
+        Err("it holds annotations".to_owned())
+    } else {
+        let mut limit = |what, field: usize| {
+            real(
+                fields[field].0,
+                &place(what, fields[field]),
+                &mut header.warnings,
+            )
+        };
+        let physical = [limit("physical minimum", 3)?, limit("physical maximum", 4)?];
+        let digital = [
+            whole(fields[5].0, &place("digital minimum", fields[5]))?,
+            whole(fields[6].0, &place("digital maximum", fields[6]))?,
+        ];
+        scale(physical, digital, to_microvolts(&unit).unwrap_or(1.0))
+    };
+    Ok(Signal {
+        is_text,
+        unit,
+        samples: samples as u64,
+        offset: header.record_bytes,
+        scale,
+        label,
+    })
+}
+
+fn scale(physical: [f64; 2], digital: [i64; 2], factor: f64) -> std::result::Result<Scale, String> {
+    if digital[0] >= digital[1] {
+        return Err(format!(
+            "its digital maximum should be above its digital minimum {} and is {}",
+            digital[0], digital[1]
+        ));
+    }
+    if physical[0] == physical[1] {
+        return Err(format!(
+            "its physical limits should differ and are both {}",
+            physical[0]
+        ));
+    }
+    Ok(Scale::from_limits(
+        physical,
+        digital.map(|d| d as f64),
+        factor,
+    ))
+}
+
+/// Factor to µV for a voltage, `None` for anything else. The sign for micro comes as `u`, as U+00B5 and as U+03BC.
+pub(super) fn to_microvolts(unit: &str) -> Option<f64> {
+    match unit {
+        "uV" | "µV" | "μV" | "uv" | "UV" | "microV" => Some(1.0),
+        "V" | "v" => Some(1e6),
+        "mV" | "mv" => Some(1e3),
+        "nV" | "nv" => Some(1e-3),
+        _ => None,
+    }
+}
+
+fn check_duration(header: &Header) -> Result<()> {
+    let ordinary = header.signals.iter().any(|s| !s.is_text);
+    if !ordinary {
+        return Err(Problem::new(
+            Kind::Unsupported,
+            "the file holds annotations and no signal",
+            "open the recording that the annotations belong to",
+        )
+        .at("file header, labels, byte 256")
+        .expected_found("at least 1 signal", "annotations only"));
+    }
+    if header.record_s <= 0.0 {
+        return Err(damaged("a record's duration is not above zero")
+            .at("file header, duration of a record, byte 244")
+            .expected_found("more than 0 s", format!("{} s", header.record_s)));
+    }
+    if header.record_bytes == 0 {
+        return Err(damaged("no channel has a sample")
+            .at("file header, samples a record")
+            .expected_found("1 sample a record or more", 0));
+    }
+    Ok(())
+}
+
+fn variant(reserved: &[u8]) -> Result<Variant> {
+    match reserved {
+        [b'E', b'D', b'F', b'+', b'C', ..] => Ok(Variant::Continuous),
+        [b'E', b'D', b'F', b'+', b'D', ..] => Ok(Variant::Discontinuous),
+        [b'E', b'D', b'F', b'+', ..] => Err(damaged("the kind of EDF+ is not known")
+            .at("file header, reserved field, byte 192")
+            .expected_found("EDF+C or EDF+D", quoted(&reserved[..5]))),
+        _ => Ok(Variant::Plain),
+    }
+}
+
+/// A field as text: UTF-8 where it is, otherwise Latin-1; control characters become spaces; trimmed.
+fn text(field: &[u8]) -> String {
+    let text = match std::str::from_utf8(field) {
+        Ok(text) => text.to_owned(),
+        Err(_) => field.iter().map(|&b| b as char).collect(),
+    };
+    let clean: String = text
+        .chars()
+        .map(|c| if c.is_control() { ' ' } else { c })
+        .collect();
+    clean.trim().to_owned()
+}
+
+/// Spaces stand around numbers; some writers end them with NUL.
+fn number(field: &[u8]) -> &str {
+    std::str::from_utf8(field)
+        .unwrap_or("")
+        .trim_matches([' ', '\0'])
+}
+
+fn whole(field: &[u8], place: &str) -> Result<i64> {
+    number(field).parse().map_err(|_| {
+        damaged("a number in the header cannot be read")
+            .at(place)
+            .expected_found("a whole number", quoted(field))
+    })
+}
+
+fn real(field: &[u8], place: &str, warnings: &mut Vec<String>) -> Result<f64> {
+    let written = number(field);
+    let (value, comma) = match written.parse::<f64>() {
+        Ok(value) => (value, false),
+        Err(_) => (
+            written.replacen(',', ".", 1).parse().unwrap_or(f64::NAN),
+            true,
+        ),
+    };
+    if !value.is_finite() {
+        return Err(damaged("a number in the header cannot be read")
+            .at(place)
+            .expected_found("a number", quoted(field)));
+    }
+    if comma {
+        warnings.push(format!(
+            "A number in the header has a comma for its decimal point and was read as {value} ({place})."
+        ));
+    }
+    Ok(value)
+}
+
+fn quoted(field: &[u8]) -> String {
+    format!("\"{}\"", field.trim_ascii().escape_ascii())
+}
+
+/// `1 signal`, `2 signals`.
+pub(super) fn counted(n: u64, noun: &str) -> String {
+    format!("{n} {noun}{}", if n == 1 { "" } else { "s" })
+}
+
+pub(super) fn damaged(what: &str) -> Problem {
+    Problem::new(
+        Kind::Damaged,
+        what,
+        "copy the file again from where it was recorded, or write it anew with the program that made it",
+    )
+}

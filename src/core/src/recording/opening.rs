@@ -1,0 +1,245 @@
+//! Opening a recording in steps: probe the content, read the header, decode slice after slice, add the side files.
+use super::budget::Budget;
+use super::{MEMORY_BYTES, Recording, SideFile, Source, edf, events_table};
+use crate::error::{Kind, Problem, Result};
+use std::fmt;
+
+/// How to open a recording.
+#[derive(Debug, Clone, Copy, Default, PartialEq, Eq)]
+pub struct OpenOptions {
+    /// Open the whole records before a cut or other damage, with a warning, instead of refusing the file.
+    pub salvage: bool,
+}
+
+/// What one format's reader does after its header is read.
+pub(crate) trait Reader {
+    /// Decodes the next slice; returns bytes done and bytes in all, equal when nothing is left.
+    fn step(&mut self, source: &mut dyn Source, budget: &mut Budget) -> Result<(u64, u64)>;
+    /// The recording, once nothing is left.
+    fn finish(self: Box<Self>) -> Result<Recording>;
+}
+
+type Begin = fn(&mut dyn Source, OpenOptions, &mut Budget) -> Result<Box<dyn Reader>>;
+
+/// One row of the probe table.
+pub(crate) struct Format {
+    /// Name in the trade.
+    pub(crate) name: &'static str,
+    /// How sure the reader is, from the file's first [`PROBE_BYTES`] bytes: 0 not mine, 100 certain.
+    pub(crate) score: fn(&[u8]) -> u8,
+    /// Reads the header.
+    pub(crate) begin: Begin,
+}
+
+/// Every format, one row each. The highest score reads the file; a tie goes to the earlier row.
+const FORMATS: &[Format] = &[edf::FORMAT, edf::FORMAT_24_BIT];
+
+/// First bytes that a probe sees.
+const PROBE_BYTES: u64 = 4096;
+
+/// Content that is often dropped by mistake: its first bytes and what to call it.
+const OTHER_CONTENT: &[(&[u8], &str)] = &[
+    (b"PK\x03\x04", "a ZIP archive"),
+    (b"\x1f\x8b", "gzip-compressed data"),
+    (b"%PDF", "a PDF document"),
+    (b"\x89PNG", "a PNG picture"),
+    (b"\x89HDF", "an HDF5 file"),
+    (b"\x93NUMPY", "a NumPy array"),
+    (b"<", "markup text"),
+    (b"{", "JSON text"),
+];
+
+/// A recording that is being opened, one slice a step.
+///
+/// ```
+/// use teasel_core::recording::{MemorySource, OpenOptions, Opening, edf};
+/// let demo = teasel_core::demo::night_watch(1).recording;
+/// let source = MemorySource::new("watch.edf", edf::write(&demo, &edf::Identity::default())?);
+/// let mut opening = Opening::begin(Box::new(source), Vec::new(), OpenOptions::default())?;
+/// while !opening.finished() {
+///     let (_done, _of) = opening.step()?;
+/// }
+/// assert_eq!(opening.finish()?.samples, demo.samples);
+/// # Ok::<(), teasel_core::error::Problem>(())
+/// ```
+pub struct Opening {
+    source: Box<dyn Source>,
+    sides: Vec<SideFile>,
+    budget: Budget,
+    reader: Box<dyn Reader>,
+    finished: bool,
+}
+
+impl fmt::Debug for Opening {
+    fn fmt(&self, f: &mut fmt::Formatter<'_>) -> fmt::Result {
+        f.debug_struct("Opening")
+            .field("source", &self.source.name())
+            .field("finished", &self.finished)
+            .finish_non_exhaustive()
+    }
+}
+
+impl Opening {
+    /// Probes the content and reads the header.
+    ///
+    /// # Errors
+    /// `Empty`, `Unknown` (no format's mark in the first bytes), `Damaged` (with what can be salvaged), `Unsupported`,
+    /// `TooLarge`, and whatever the source says. Each names the file.
+    pub fn begin(
+        source: Box<dyn Source>,
+        sides: Vec<SideFile>,
+        options: OpenOptions,
+    ) -> Result<Opening> {
+        Opening::begin_within(source, sides, options, MEMORY_BYTES)
+    }
+
+    /// [`Opening::begin`] where the caller knows how many bytes the open recording may take.
+    pub fn begin_within(
+        mut source: Box<dyn Source>,
+        sides: Vec<SideFile>,
+        options: OpenOptions,
+        memory_bytes: u64,
+    ) -> Result<Opening> {
+        let name = source.name().to_owned();
+        let mut budget = Budget::new(source.len(), memory_bytes);
+        let reader = probe(source.as_mut())
+            .and_then(|format| (format.begin)(source.as_mut(), options, &mut budget))
+            .map_err(|problem| problem.in_file(name))?;
+        Ok(Opening {
+            source,
+            sides,
+            budget,
+            reader,
+            finished: false,
+        })
+    }
+
+    /// Reads and decodes the next slice of 8 MiB or one record; returns bytes done and bytes in all, equal when nothing is left.
+    pub fn step(&mut self) -> Result<(u64, u64)> {
+        let (done, of) = self
+            .reader
+            .step(self.source.as_mut(), &mut self.budget)
+            .map_err(|problem| problem.in_file(self.source.name()))?;
+        self.finished = done >= of;
+        Ok((done, of))
+    }
+
+    /// Whether nothing is left to read.
+    pub fn finished(&self) -> bool {
+        self.finished
+    }
+
+    /// The recording, with its side files; reads what is left, if anything is.
+    pub fn finish(mut self) -> Result<Recording> {
+        while !self.finished {
+            self.step()?;
+        }
+        let name = self.source.name().to_owned();
+        let mut recording = self
+            .reader
+            .finish()
+            .map_err(|problem| problem.in_file(name.as_str()))?;
+        recording.name = name;
+        events_table::apply(&mut recording, &self.sides)?;
+        recording
+            .events
+            .sort_by(|a, b| a.onset_s.total_cmp(&b.onset_s));
+        Ok(recording)
+    }
+}
+
+/// Opens a recording in one go.
+pub fn open(
+    source: Box<dyn Source>,
+    sides: Vec<SideFile>,
+    options: OpenOptions,
+) -> Result<Recording> {
+    Opening::begin(source, sides, options)?.finish()
+}
+
+fn probe(source: &mut dyn Source) -> Result<&'static Format> {
+    if source.is_empty() {
+        return Err(Problem::new(
+            Kind::Empty,
+            "the file is empty",
+            "copy it again from where it was recorded",
+        )
+        .expected_found("a recording", "0 bytes"));
+    }
+    let mut head = vec![0; source.len().min(PROBE_BYTES) as usize];
+    source.read_at(0, &mut head)?;
+    let mut best: Option<(u8, &'static Format)> = None;
+    for format in FORMATS {
+        let score = (format.score)(&head);
+        if score > best.map_or(0, |(score, _)| score) {
+            best = Some((score, format));
+        }
+    }
+    best.map(|(_, format)| format).ok_or_else(|| unknown(&head))
+}
+
+fn unknown(head: &[u8]) -> Problem {
+    let found = OTHER_CONTENT
+        .iter()
+        .find(|(magic, _)| head.starts_with(magic))
+        .map_or_else(
+            || format!("\"{}\"", head[..head.len().min(8)].escape_ascii()),
+            |(_, what)| (*what).to_owned(),
+        );
+    let names: Vec<&str> = FORMATS.iter().map(|format| format.name).collect();
+    Problem::new(
+        Kind::Unknown,
+        "the content is not a recording that Teasel knows, whatever the file's name says",
+        "open an EDF or EDF+ file",
+    )
+    .at("byte 0")
+    .expected_found(format!("the mark of {}", names.join(" or ")), found)
+}
+
+/// A recording's bytes in memory.
+#[derive(Debug, Clone)]
+pub struct MemorySource {
+    name: String,
+    bytes: Vec<u8>,
+}
+
+impl MemorySource {
+    /// The file name without its folder, and the whole content.
+    pub fn new(name: impl Into<String>, bytes: Vec<u8>) -> Self {
+        MemorySource {
+            name: name.into(),
+            bytes,
+        }
+    }
+}
+
+impl Source for MemorySource {
+    fn name(&self) -> &str {
+        &self.name
+    }
+    fn len(&self) -> u64 {
+        self.bytes.len() as u64
+    }
+    fn read_at(&mut self, offset: u64, out: &mut [u8]) -> Result<()> {
+        let part = usize::try_from(offset)
+            .ok()
+            .and_then(|from| self.bytes.get(from..from.checked_add(out.len())?));
+        match part {
+            Some(part) => {
+                out.copy_from_slice(part);
+                Ok(())
+            }
+            None => Err(Problem::new(
+                Kind::Storage,
+                "the file ended while it was being read",
+                "open it again once nothing writes to it any more",
+            )
+            .in_file(self.name.as_str())
+            .at(format!("byte {offset}"))
+            .expected_found(
+                format!("{} bytes", out.len()),
+                format!("{} bytes", (self.bytes.len() as u64).saturating_sub(offset)),
+            )),
+        }
+    }
+}
