@@ -2,3 +2,4 @@
 
 mod describe;
 mod prepare;
+mod takeaway;

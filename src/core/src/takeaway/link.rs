@@ -1,0 +1,204 @@
+//! A recipe inside an address: `#recipe=<base64url of recipe.json>`.
+//!
+//! A link holds settings only. Channel and event names can tell about a person or a study, so they go in only when the
+//! user ticks them in; otherwise an event is written as its rank (1, 2) and is filled in from the recording that the link is
+//! opened with: rank k is its k-th most frequent event. What else was left out is listed under `without`.
+use crate::error::{Kind, Problem, Result};
+use crate::recipe::{Contrast, Recipe, Reference};
+use base64::Engine;
+use base64::alphabet::URL_SAFE;
+use base64::engine::{DecodePaddingMode, GeneralPurpose, GeneralPurposeConfig};
+use serde::{Deserialize, Serialize};
+use serde_json::{Value, json};
+use std::collections::BTreeMap;
+
+/// No padding is written; with and without is read.
+const ENGINE: GeneralPurpose = GeneralPurpose::new(
+    &URL_SAFE,
+    GeneralPurposeConfig::new()
+        .with_encode_padding(false)
+        .with_decode_padding_mode(DecodePaddingMode::Indifferent),
+);
+
+/// Names that a link without names can leave out.
+const LEFT_OUT: [(&str, &str); 3] = [
+    (
+        "channels.leave_out",
+        "The link names no channels: what its sender left out is not left out here.",
+    ),
+    (
+        "channels.interpolate",
+        "The link names no channels: what its sender interpolated is used as recorded here.",
+    ),
+    (
+        "channels.reference",
+        "The link names no channels: its sender's reference channels are replaced by the reference as recorded.",
+    ),
+];
+
+/// What a link holds: a recipe, whole or with its events left to the recording.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct RecipeLink {
+    /// The recipe; where `events` is set, its event labels are empty until [`RecipeLink::complete`].
+    pub recipe: Recipe,
+    /// Ranks of the signal and the reference event among the recording's events by number of occurrences, from 1.
+    pub events: Option<[usize; 2]>,
+    /// Paths of the settings that were left out because they hold names.
+    pub without: Vec<String>,
+}
+
+/// The fragment's text for a recipe.
+pub fn link_encode(recipe: &Recipe, with_names: bool) -> String {
+    let value = serde_json::to_value(recipe).unwrap_or(Value::Null);
+    let value = if with_names {
+        value
+    } else {
+        strip(recipe, value)
+    };
+    ENGINE.encode(value.to_string())
+}
+
+fn strip(recipe: &Recipe, mut value: Value) -> Value {
+    let mut without = Vec::new();
+    let Contrast::Windows { signal, reference } = &recipe.contrast;
+    let second = if signal.event == reference.event {
+        1
+    } else {
+        2
+    };
+    for (side, rank) in [("signal", 1), ("reference", second)] {
+        if let Some(event) = value.pointer_mut(&format!("/contrast/{side}/event")) {
+            *event = json!(rank);
+        }
+    }
+    let channels = &recipe.channels;
+    let named = [
+        !channels.leave_out.is_empty(),
+        !channels.interpolate.is_empty(),
+        matches!(channels.reference, Reference::Named(_)),
+    ];
+    for ((path, _), _) in LEFT_OUT.iter().zip(named).filter(|(_, named)| *named) {
+        without.push(*path);
+        if let (Some(Value::Object(map)), Some(key)) =
+            (value.get_mut("channels"), path.split('.').nth(1))
+        {
+            map.remove(key);
+        }
+    }
+    if let Value::Object(map) = &mut value {
+        map.insert("without".into(), json!(without));
+    }
+    value
+}
+
+/// Reads the fragment's text (what stands after `#recipe=`). As strict as [`super::recipe_from_json`].
+pub fn link_decode(text: &str) -> Result<RecipeLink> {
+    let damaged = |found: String| {
+        Problem::new(
+            Kind::Recipe,
+            "the link does not hold a recipe",
+            "Copy the whole link again.",
+        )
+        .expected_found("base64url of a recipe", found)
+    };
+    let text = text.trim();
+    let text = text.strip_prefix('#').unwrap_or(text);
+    let text = text.strip_prefix("recipe=").unwrap_or(text);
+    if text.len() > super::strict::SIZE_CAP * 2 {
+        return Err(damaged(format!("{} characters", text.len())));
+    }
+    let bytes = ENGINE.decode(text).map_err(|e| damaged(e.to_string()))?;
+    let json = String::from_utf8(bytes).map_err(|e| {
+        damaged(format!(
+            "a byte that is no text at {}",
+            e.utf8_error().valid_up_to()
+        ))
+    })?;
+    let mut value: Value = match serde_json::from_str(&json) {
+        Ok(value) => value,
+        Err(_) => return super::recipe_from_json(&json).map(RecipeLink::whole),
+    };
+    let Some(without) = value.as_object_mut().and_then(|map| map.remove("without")) else {
+        return super::recipe_from_json(&json).map(RecipeLink::whole);
+    };
+    RecipeLink::open(value, without).map_err(|found| damaged(found.to_string()))?
+}
+
+impl RecipeLink {
+    fn whole(recipe: Recipe) -> Self {
+        RecipeLink {
+            recipe,
+            events: None,
+            without: Vec::new(),
+        }
+    }
+
+    /// The outer error names a part of the link's own; the inner one is the recipe's.
+    fn open(mut value: Value, without: Value) -> std::result::Result<Result<Self>, &'static str> {
+        let mut ranks = [0; 2];
+        for (side, rank) in ["signal", "reference"].iter().zip(&mut ranks) {
+            let event = value
+                .pointer_mut(&format!("/contrast/{side}/event"))
+                .ok_or("no event")?;
+            *rank = event
+                .as_u64()
+                .filter(|k| (1..=2).contains(k))
+                .ok_or("an event that is neither 1 nor 2")? as usize;
+            *event = json!("event");
+        }
+        let without: Vec<String> =
+            serde_json::from_value(without).map_err(|_| "a list of paths that is none")?;
+        if without
+            .iter()
+            .any(|w| !LEFT_OUT.iter().any(|(path, _)| path == w))
+        {
+            return Err("an unknown path in without");
+        }
+        Ok(
+            super::recipe_from_json(&value.to_string()).map(|mut recipe| {
+                let Contrast::Windows { signal, reference } = &mut recipe.contrast;
+                signal.event.clear();
+                reference.event.clear();
+                RecipeLink {
+                    recipe,
+                    events: Some(ranks),
+                    without,
+                }
+            }),
+        )
+    }
+
+    /// The recipe for a recording with these events (label → occurrences), and what the reader should know, each a sentence.
+    /// Fails where the recording has too few kinds of events.
+    pub fn complete(&self, events: &BTreeMap<String, usize>) -> Result<(Recipe, Vec<String>)> {
+        let mut recipe = self.recipe.clone();
+        let mut notes: Vec<String> = LEFT_OUT
+            .iter()
+            .filter(|(path, _)| self.without.iter().any(|w| w == path))
+            .map(|(_, note)| (*note).to_string())
+            .collect();
+        let Some(ranks) = self.events else {
+            return Ok((recipe, notes));
+        };
+        let mut labels: Vec<(&String, &usize)> = events.iter().collect();
+        labels.sort_by(|a, b| b.1.cmp(a.1).then(a.0.cmp(b.0)));
+        let pick = |rank: usize| {
+            labels.get(rank - 1).map(|(label, _)| (*label).clone()).ok_or_else(|| {
+                Problem::new(
+                    Kind::Contrast,
+                    "the link leaves the events to the recording, and the recording has too few kinds of them",
+                    "Choose the events by hand.",
+                )
+                .expected_found(format!("at least {rank}"), labels.len())
+            })
+        };
+        let Contrast::Windows { signal, reference } = &mut recipe.contrast;
+        signal.event = pick(ranks[0])?;
+        reference.event = pick(ranks[1])?;
+        notes.push(format!(
+            "The link names no events: {} was taken, the most frequent here.",
+            super::strict::quote(&signal.event)
+        ));
+        Ok((recipe, notes))
+    }
+}

@@ -1,0 +1,498 @@
+//! Readings of what was given and chosen: recording, channels, windows, compression.
+use super::judge;
+use super::{Line, Said, words};
+use crate::recipe::{Keep, KeepWord, Measure};
+use crate::sheet::{ChannelCard, ChannelState, Sheet, SideCard};
+
+fn said(text: impl Into<String>) -> Option<Line> {
+    Some(Line::new(text.into()))
+}
+
+pub(super) fn recording(sheet: &Sheet) -> Said {
+    let card = &sheet.recording;
+    let count = sheet.channels.len();
+    let text = Line::default()
+        .strong(format!(
+            "{count} {}",
+            words::one(count, "channel", "channels")
+        ))
+        .then(" at ")
+        .strong(words::hertz(card.rate_hz))
+        .then(" for ")
+        .strong(words::duration(card.duration_s))
+        .then(unit(sheet))
+        .then(match card.stretches.len() {
+            0 | 1 => ", without gaps".to_string(),
+            n => format!(", in {n} stretches with gaps between them"),
+        })
+        .join(events(sheet))
+        .then(".");
+    (text, recording_doubt(sheet))
+}
+
+/// ", in µV" where all share one.
+fn unit(sheet: &Sheet) -> String {
+    let first = sheet.channels.first().map_or("", |c| c.unit.as_str());
+    if first.is_empty() {
+        String::new()
+    } else if sheet.channels.iter().all(|c| c.unit == first) {
+        format!(", in {}", words::plain(first, 8))
+    } else {
+        ", in several units".into()
+    }
+}
+
+fn events(sheet: &Sheet) -> Line {
+    let mut events: Vec<(&String, &usize)> = sheet.recording.events.iter().collect();
+    events.sort_by(|a, b| b.1.cmp(a.1).then(a.0.cmp(b.0)));
+    let mut line = Line::default();
+    for (at, (label, count)) in events.iter().take(2).enumerate() {
+        line = line.then(match (at, events.len()) {
+            (0, _) => "; ",
+            (_, 2) => " and ",
+            _ => ", ",
+        });
+        line = if at == 0 {
+            line.strong(words::grouped(**count))
+        } else {
+            line.then(words::grouped(**count))
+        };
+        line = line.then(format!(" {}", words::name(label)));
+    }
+    match events.len() {
+        0 => line.then("; no events"),
+        1 | 2 => line,
+        n => line.then(format!(
+            " and {} more {} of events",
+            words::count(n - 2),
+            words::one(n - 2, "kind", "kinds")
+        )),
+    }
+}
+
+fn recording_doubt(sheet: &Sheet) -> Option<Line> {
+    let card = &sheet.recording;
+    if let Some(warning) = card.warnings.first() {
+        let sentence = lower(&words::plain(warning, 220));
+        let end = if sentence.ends_with(['.', '…']) {
+            ""
+        } else {
+            "."
+        };
+        return said(format!("{sentence}{end}"));
+    }
+    if card.events.is_empty() {
+        return said(
+            "without events there are no windows to mark; a table of events beside the recording would give them.",
+        );
+    }
+    if let Some(first) = card.others.first() {
+        let count = card.others.len();
+        return said(format!(
+            "{} {} listed and not analysed: {}, {}.",
+            words::count(count),
+            words::one(count, "channel is", "channels are"),
+            words::name(&first.name),
+            words::plain(&first.reason, 100)
+        ));
+    }
+    let mut sizes = card.envelope.clone();
+    sizes.retain(|s| s.is_finite());
+    sizes.sort_by(f64::total_cmp);
+    let median = sizes.get(sizes.len() / 2).copied().unwrap_or(0.0);
+    let (at, peak) = card
+        .envelope
+        .iter()
+        .enumerate()
+        .max_by(|a, b| a.1.total_cmp(b.1))?;
+    if median > 0.0 && peak / median >= 2.0 {
+        let time = (at as f64 + 0.5) / card.envelope.len() as f64 * card.duration_s;
+        return said(format!(
+            "near {} it grows to {} its usual size: look there for a blink, a movement or a loose contact.",
+            words::clock(time),
+            words::times(peak / median)
+        ));
+    }
+    said(
+        "what is largest in it need not be what differs: blinks, muscle and mains are often the largest.",
+    )
+}
+
+/// A sentence to go on after "But": its first letter small, unless a name or a unit begins it.
+fn lower(sentence: &str) -> String {
+    let first = sentence.split_whitespace().next().unwrap_or("");
+    let common = [
+        "The", "A", "An", "Some", "One", "No", "It", "There", "This", "Its", "All",
+    ];
+    if common.contains(&first) {
+        let mut letters = sentence.chars();
+        letters
+            .next()
+            .map_or_else(String::new, |c| c.to_lowercase().chain(letters).collect())
+    } else {
+        sentence.into()
+    }
+}
+
+fn named<'a>(cards: impl Iterator<Item = &'a ChannelCard>) -> Vec<String> {
+    cards.map(|c| words::name(&c.name)).collect()
+}
+
+/// Up to three names and how many more.
+fn some(names: &[String]) -> String {
+    if names.len() <= 3 {
+        words::list(names)
+    } else {
+        format!("{}, {} and {} more", names[0], names[1], names.len() - 2)
+    }
+}
+
+pub(super) fn channels(sheet: &Sheet) -> Option<Said> {
+    if sheet.channels.is_empty() {
+        return None;
+    }
+    let all = sheet.channels.len();
+    let out = named(
+        sheet
+            .channels
+            .iter()
+            .filter(|c| c.state == ChannelState::LeftOut),
+    );
+    let unusable = sheet
+        .channels
+        .iter()
+        .filter(|c| matches!(c.state, ChannelState::Unusable(_)))
+        .count();
+    let replaced = named(
+        sheet
+            .channels
+            .iter()
+            .filter(|c| c.state == ChannelState::Interpolated),
+    );
+    let used = all - out.len() - unusable;
+    let mut text = Line::default()
+        .strong(if used == all {
+            format!("All {all}")
+        } else {
+            format!("{used} of {all}")
+        })
+        .then(" channels are used");
+    if !out.is_empty() {
+        text = text.then(format!("; left out: {}", some(&out)));
+    }
+    if !replaced.is_empty() {
+        text = text.then(format!("; from their neighbours: {}", some(&replaced)));
+    }
+    text = text.then(".").join(spread(sheet)).join(mains(sheet));
+    Some((text, channels_doubt(sheet)))
+}
+
+/// The channel that varies most, where it stands out.
+fn spread(sheet: &Sheet) -> Line {
+    let mut sizes: Vec<f64> = sheet
+        .channels
+        .iter()
+        .filter_map(|c| c.sd)
+        .filter(|s| s.is_finite())
+        .collect();
+    sizes.sort_by(f64::total_cmp);
+    let median = sizes.get(sizes.len() / 2).copied().unwrap_or(0.0);
+    let widest = sheet
+        .channels
+        .iter()
+        .filter_map(|c| c.sd.map(|s| (c, s)))
+        .max_by(|a, b| a.1.total_cmp(&b.1));
+    match widest {
+        Some((channel, sd)) if median > 0.0 && sd / median >= 2.0 => Line::new(" ")
+            .then(words::name(&channel.name))
+            .then(" varies most, ")
+            .strong(words::times(sd / median))
+            .then(" the median spread."),
+        _ => Line::default(),
+    }
+}
+
+/// Mains, where it stands out of its neighbours by 6 dB.
+fn mains(sheet: &Sheet) -> Line {
+    let worst = sheet
+        .channels
+        .iter()
+        .filter_map(|c| c.mains_db.zip(c.mains_hz).map(|m| (c, m)))
+        .max_by(|a, b| a.1.0.total_cmp(&b.1.0));
+    match worst {
+        Some((channel, (db, hz))) if db >= 6.0 => Line::new(format!(
+            " Mains at {} is strongest in {}, ",
+            words::hertz(hz),
+            words::name(&channel.name)
+        ))
+        .strong(format!("{}{}dB", words::fixed(db, 0), words::NB))
+        .then(" above its surroundings."),
+        _ => Line::default(),
+    }
+}
+
+fn channels_doubt(sheet: &Sheet) -> Option<Line> {
+    let reason = |c: &ChannelCard| match &c.state {
+        ChannelState::Unusable(reason) => Some((
+            format!("{} is left out", words::name(&c.name)),
+            reason.clone(),
+        )),
+        ChannelState::NeedsALook(reason) => Some((
+            format!("{} needs a look", words::name(&c.name)),
+            reason.clone(),
+        )),
+        _ => None,
+    };
+    let doubts: Vec<(String, String)> = sheet.channels.iter().filter_map(reason).collect();
+    if let Some((what, why)) = doubts.first() {
+        let more = match doubts.len() - 1 {
+            0 => String::new(),
+            n => format!(
+                "; {} more {} like doubts",
+                words::count(n),
+                words::one(n, "has", "have")
+            ),
+        };
+        return said(format!("{what}: {}{more}.", words::plain(why, 90)));
+    }
+    let strong_mains = sheet
+        .channels
+        .iter()
+        .find(|c| c.state == ChannelState::Used && c.mains_db.is_some_and(|db| db >= 10.0));
+    if let Some((channel, hz)) = strong_mains.and_then(|c| c.mains_hz.map(|hz| (c, hz))) {
+        let filter = &sheet.recipe.filter;
+        let stopped = filter.notch_hz.iter().any(|n| (n - hz).abs() <= 1.0)
+            || filter.low_pass_hz.is_some_and(|low| low < hz);
+        return said(if stopped {
+            format!(
+                "{} stays in although its mains is strong: a poor contact also spoils its neighbours once a common reference is formed.",
+                words::name(&channel.name)
+            )
+        } else {
+            format!(
+                "no filter stops {}, and {} carries much of it: a notch there, or a low-pass below it, would.",
+                words::hertz(hz),
+                words::name(&channel.name)
+            )
+        });
+    }
+    let placed = sheet
+        .channels
+        .iter()
+        .filter(|c| c.position.is_some())
+        .count();
+    if placed < sheet.channels.len() {
+        return said(format!(
+            "{} of {} channels {} no known place, so maps leave {} out.",
+            sheet.channels.len() - placed,
+            sheet.channels.len(),
+            words::one(sheet.channels.len() - placed, "has", "have"),
+            words::one(sheet.channels.len() - placed, "it", "them")
+        ));
+    }
+    said("places come from the channels' names, not from this head; maps are a guide to the eye.")
+}
+
+/// Reasons for dropped windows, as the cards name them, in words.
+fn dropped(side: &SideCard) -> Vec<String> {
+    side.dropped
+        .iter()
+        .filter(|(_, n)| **n > 0)
+        .map(|(reason, n)| {
+            let verb = match reason.as_str() {
+                "outside" => {
+                    words::one(*n, "leaves the recording", "leave the recording").to_string()
+                }
+                "gap" => words::one(*n, "crosses a gap", "cross a gap").to_string(),
+                "partner" => words::one(*n, "lost its partner", "lost their partner").to_string(),
+                "marked" => words::one(
+                    *n,
+                    "touches a span marked not to be used",
+                    "touch a span marked not to be used",
+                )
+                .to_string(),
+                other => format!(
+                    "{} out as {}",
+                    words::one(*n, "is", "are"),
+                    words::plain(other, 40)
+                ),
+            };
+            format!("{} {verb}", words::count(*n))
+        })
+        .collect()
+}
+
+pub(super) fn windows(sheet: &Sheet) -> Option<Said> {
+    let card = sheet.windows.as_ref()?;
+    let (signal, reference) = words::windows(&sheet.recipe.contrast);
+    let text = if card.paired {
+        let asked = card.trials.len().max(card.signal.used);
+        let line = Line::default()
+            .strong(format!("{} of {asked}", card.signal.used))
+            .then(format!(
+                " {} events give a pair of windows",
+                words::name(&signal.event)
+            ));
+        if card.signal.samples == card.reference.samples {
+            line.then(" of ")
+                .strong(words::seconds(card.signal.seconds))
+                .then(".")
+        } else {
+            line.then(", ")
+                .strong(words::seconds(card.signal.seconds))
+                .then(" of signal and ")
+                .strong(words::seconds(card.reference.seconds))
+                .then(" of reference.")
+        }
+    } else {
+        Line::default()
+            .strong(card.signal.used.to_string())
+            .then(format!(
+                " signal windows at {} of ",
+                words::name(&signal.event)
+            ))
+            .strong(words::seconds(card.signal.seconds))
+            .then(" stand against ")
+            .strong(card.reference.used.to_string())
+            .then(format!(
+                " reference windows at {} of ",
+                words::name(&reference.event)
+            ))
+            .strong(words::seconds(card.reference.seconds))
+            .then(".")
+    };
+    Some((text.join(rises(sheet)), windows_doubt(sheet)))
+}
+
+/// " Component 1 rises in **37 of 40** trials." on held-out scores.
+fn rises(sheet: &Sheet) -> Line {
+    let Some(first) = sheet.stronger.first().filter(|c| !c.trials.is_empty()) else {
+        return Line::default();
+    };
+    let up = first.trials.iter().filter(|t| t.log_ratio > 0.0).count();
+    Line::new(" Component 1, held-out, rises in ")
+        .strong(format!("{up} of {}", first.trials.len()))
+        .then(" trials.")
+}
+
+fn windows_doubt(sheet: &Sheet) -> Option<Line> {
+    let card = sheet.windows.as_ref()?;
+    if sheet.repetitions() < judge::LEAST {
+        return said(format!(
+            "{} are too few for a held-out ratio or a p; at least {} are needed.",
+            judge::repetitions(sheet),
+            words::count(judge::LEAST)
+        ));
+    }
+    let (left, right) = (dropped(&card.signal), dropped(&card.reference));
+    match (left.is_empty(), right.is_empty()) {
+        (true, true) => {}
+        (false, true) => {
+            return said(format!("of the signal windows {}.", words::list(&left)));
+        }
+        (true, false) => {
+            return said(format!("of the reference windows {}.", words::list(&right)));
+        }
+        (false, false) => {
+            return said(format!(
+                "of the signal windows {}; of the reference windows {}.",
+                words::list(&left),
+                words::list(&right)
+            ));
+        }
+    }
+    let shortest = card.signal.seconds.min(card.reference.seconds);
+    said(format!(
+        "in {} rhythms closer together than {} run into one another.",
+        words::seconds(shortest),
+        words::hertz(1.0 / shortest)
+    ))
+}
+
+pub(super) fn compression(sheet: &Sheet) -> Option<Said> {
+    let card = sheet.compression.as_ref()?;
+    let text = Line::default()
+        .strong(card.kept.to_string())
+        .then(format!(" of {} dimensions hold ", card.rank))
+        .strong(words::percent(card.share))
+        .then(" of the variance")
+        .join(curve(sheet));
+    Some((text, compression_doubt(sheet)))
+}
+
+/// Where the held-out ratio stands at C, and where it is highest; ends the sentence.
+fn curve(sheet: &Sheet) -> Line {
+    let Some(card) = &sheet.compression else {
+        return Line::new(".");
+    };
+    let Some((curve, here)) = sheet.curve.as_ref().and_then(|c| {
+        let at = c.keep.iter().position(|k| *k == card.kept)?;
+        Some((c, c.held_out.get(at).copied()?))
+    }) else {
+        return Line::new(".");
+    };
+    let best = curve
+        .keep
+        .iter()
+        .zip(&curve.held_out)
+        .filter(|(_, r)| r.is_finite())
+        .max_by(|a, b| a.1.total_cmp(b.1));
+    match best {
+        Some((keep, _)) if *keep == card.kept => {
+            Line::new(", and the held-out ratio is highest there: ")
+                .strong(words::factor(here))
+                .then(".")
+                .join(plateau(sheet))
+        }
+        Some((keep, ratio)) => Line::new(", and the held-out ratio there is ")
+            .strong(words::factor(here))
+            .then(format!(
+                "; it is highest at {keep}, {}.",
+                words::factor(*ratio)
+            ))
+            .join(plateau(sheet)),
+        None => Line::new("."),
+    }
+}
+
+fn plateau(sheet: &Sheet) -> Line {
+    match (
+        sheet.compression.as_ref(),
+        sheet
+            .compression
+            .as_ref()
+            .and_then(|c| c.guides.get("one_standard_error")),
+    ) {
+        (Some(card), Some(from)) if *from < card.kept => Line::new(format!(
+            " From {from} up it changes by less than one standard error."
+        )),
+        _ => Line::default(),
+    }
+}
+
+fn compression_doubt(sheet: &Sheet) -> Option<Line> {
+    let card = sheet.compression.as_ref()?;
+    let prepared = sheet.preparation.as_ref().map_or(0, |p| p.channels.len());
+    if card.rank < prepared && sheet.curve.is_none() {
+        return said(format!(
+            "the rank is {} for {prepared} channels: a common reference, an interpolated or a repeated channel takes a dimension away.",
+            card.rank
+        ));
+    }
+    let best = sheet.recipe.keep == Keep::Word(KeepWord::Best);
+    if sheet.curve.is_some() {
+        return said(if best {
+            "C was chosen by held-out ratio; every permutation chooses it again, so p pays for that choice and this curve's peak does not."
+        } else {
+            "this curve was drawn on the same trials, so a C read off its peak flatters a little; a C fixed beforehand does not."
+        });
+    }
+    said(match sheet.recipe.measure {
+        Measure::Typical => {
+            "a small share of variance can hold what differs: leave room above the knee of the curve."
+        }
+        Measure::Total => {
+            "the total measure pays for every dimension kept: few windows want a small C."
+        }
+    })
+}

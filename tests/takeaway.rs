@@ -1,0 +1,14 @@
+//! Recipes, links, weights, results, readings, reports and archives.
+#![allow(
+    clippy::unwrap_used,
+    clippy::expect_used,
+    reason = "a check that cannot go on fails"
+)]
+#[path = "takeaway/files.rs"]
+mod files;
+#[path = "takeaway/recipes.rs"]
+mod recipes;
+#[path = "takeaway/sample.rs"]
+mod sample;
+#[path = "takeaway/sentences.rs"]
+mod sentences;
