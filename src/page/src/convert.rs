@@ -1,0 +1,36 @@
+//! Plain data to and from JavaScript objects.
+use serde::Serialize;
+use serde::de::DeserializeOwned;
+use serde_wasm_bindgen::Serializer;
+use teasel_core::error::{Kind, Problem};
+use wasm_bindgen::JsValue;
+
+/// What a method of the page layer gives: a problem is thrown as an object with the fields of [`Problem`].
+pub type Outcome<T> = Result<T, JsValue>;
+
+/// Objects for maps and structures, `null` for nothing, numbers for every number.
+pub fn to_js<T: Serialize + ?Sized>(value: &T) -> Outcome<JsValue> {
+    value
+        .serialize(&Serializer::json_compatible())
+        .map_err(|error| thrown(translation(&error)))
+}
+
+/// A structure from a JavaScript object; unknown or missing fields are problems.
+pub fn from_js<T: DeserializeOwned>(value: JsValue) -> Outcome<T> {
+    serde_wasm_bindgen::from_value(value).map_err(|error| thrown(translation(&error)))
+}
+
+/// The object to throw.
+pub fn thrown(problem: Problem) -> JsValue {
+    problem
+        .serialize(&Serializer::json_compatible())
+        .unwrap_or_else(|_| JsValue::from_str(&problem.to_string()))
+}
+
+fn translation(error: &serde_wasm_bindgen::Error) -> Problem {
+    Problem::new(
+        Kind::Recipe,
+        error.to_string(),
+        "Correct the value that it names.",
+    )
+}

@@ -1,0 +1,2 @@
+use anyhow::Result;
+pub fn test(_page: bool) -> Result<()> { Ok(()) }

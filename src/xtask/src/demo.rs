@@ -1,0 +1,2 @@
+use anyhow::Result;
+pub fn write() -> Result<()> { Ok(()) }

@@ -1,0 +1,2 @@
+use anyhow::Result;
+pub fn reference() -> Result<()> { Ok(()) }

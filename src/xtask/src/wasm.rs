@@ -1,0 +1,86 @@
+//! The page's crate as a WebAssembly module with its bindings, in `target/page/`.
+use crate::{house, node, shell, toolchain};
+use anyhow::{Context, Result};
+use std::fs;
+use std::path::{Path, PathBuf};
+use std::time::Instant;
+use wasm_bindgen_cli_support::Bindgen;
+
+/// What the compiler may have used: the optimiser must allow the same.
+const FEATURES: &[&str] = &[
+    "--enable-simd",
+    "--enable-bulk-memory",
+    "--enable-nontrapping-float-to-int",
+    "--enable-sign-ext",
+    "--enable-mutable-globals",
+    "--enable-multivalue",
+    "--enable-reference-types",
+    "--enable-extended-const",
+];
+
+/// The folder of `teasel_page.js`, its types, and the module as compiled.
+pub fn folder() -> Result<PathBuf> {
+    house::target("page")
+}
+
+/// Compiles, binds and shrinks; gives the module that goes into the page.
+pub fn build() -> Result<Vec<u8>> {
+    let chosen = toolchain::choose()?;
+    let started = Instant::now();
+    println!("Compiling the page's module.");
+    shell::run("compiling the module", &mut chosen.cargo_build()?)?;
+    let compiled = house::target("wasm")?
+        .join(toolchain::TARGET)
+        .join("release/teasel_page.wasm");
+    let bound = bind(&compiled)?;
+    let module = shrink(&bound)?;
+    println!(
+        "Module: {} KB as compiled, {} KB as shipped; {:.0} s.",
+        bound.metadata()?.len() / 1000,
+        module.len() / 1000,
+        started.elapsed().as_secs_f64()
+    );
+    Ok(module)
+}
+
+/// Writes the bindings as an ES module, which the bundler turns into classic scripts for the page and for the worker.
+fn bind(compiled: &Path) -> Result<PathBuf> {
+    let folder = folder()?;
+    Bindgen::new()
+        .input_path(compiled)
+        .out_name("teasel_page")
+        .web(true)?
+        .typescript(true)
+        .remove_name_section(true)
+        .remove_producers_section(true)
+        .generate(&folder)
+        .context("making the bindings failed")?;
+    Ok(folder.join("teasel_page_bg.wasm"))
+}
+
+/// Runs the size and speed pass of npm's binaryen, once for each input.
+fn shrink(bound: &Path) -> Result<Vec<u8>> {
+    let before = house::read(bound)?;
+    let kept = house::target("page/shrunk")?.join(format!("{}.wasm", house::sha256_hex(&before)));
+    if !kept.exists() {
+        for old in fs::read_dir(house::target("page/shrunk")?)?.flatten() {
+            fs::remove_file(old.path())?;
+        }
+        let beside = kept.with_extension("tmp");
+        let mut command = node::tool("wasm-opt")?;
+        command
+            .args(FEATURES)
+            .args(["-O3", "--strip-debug", "--strip-producers"])
+            .arg(bound)
+            .arg("-o")
+            .arg(&beside);
+        shell::output("wasm-opt", &mut command)?;
+        fs::rename(&beside, &kept)?;
+    }
+    let after = house::read(&kept)?;
+    Ok(if after.len() < before.len() {
+        after
+    } else {
+        before
+    })
+}

@@ -1,0 +1,110 @@
+// One browser, one fresh page a test, and a witness of everything that must not happen: requests, blocked attempts, errors.
+import { existsSync } from "node:fs";
+import { mkdir, mkdtemp, rm } from "node:fs/promises";
+import { tmpdir } from "node:os";
+import { join, resolve } from "node:path";
+import { fileURLToPath, pathToFileURL } from "node:url";
+import { chromium } from "playwright-core";
+
+export const root = resolve(fileURLToPath(new URL("../..", import.meta.url)));
+export const pageFile = join(root, "dist/teasel.html");
+export const pageUrl = pathToFileURL(pageFile).href;
+const shots = join(root, "target/screenshots");
+
+const candidates = [process.env.TEASEL_CHROMIUM, "/usr/bin/chromium", "/usr/bin/chromium-browser", "/usr/bin/google-chrome"];
+const executablePath = candidates.find((path) => path && existsSync(path));
+
+const args = [
+  "--no-sandbox",
+  "--disable-gpu",
+  "--disable-quic",
+  "--no-first-run",
+  "--disable-background-networking",
+  "--disable-component-update",
+  "--disable-sync",
+];
+
+/** Starts Chromium with a fresh profile. */
+export async function launch() {
+  if (!executablePath) throw new Error("Chromium is not installed: apt-get install chromium");
+  const profile = await mkdtemp(join(tmpdir(), "teasel-browser-"));
+  const context = await chromium.launchPersistentContext(profile, {
+    executablePath,
+    args,
+    headless: true,
+    viewport: { width: 1280, height: 720 },
+    acceptDownloads: true,
+  });
+  return {
+    context,
+    async close() {
+      await context.close();
+      await rm(profile, { recursive: true, force: true });
+    },
+  };
+}
+
+/**
+ * Opens the built page and watches it.
+ * @param {import("playwright-core").BrowserContext} context
+ * @param {{fragment?: string, url?: string}} [options]
+ */
+export async function openPage(context, { fragment = "", url = pageUrl } = {}) {
+  const page = await context.newPage();
+  const seen = { requests: /** @type {string[]} */ ([]), violations: /** @type {any[]} */ ([]), errors: /** @type {string[]} */ ([]) };
+  page.on("request", (request) => {
+    const address = request.url();
+    const own = address.split("#")[0] === url;
+    if (!own && !address.startsWith("data:") && !address.startsWith("blob:")) seen.requests.push(address);
+  });
+  page.on("websocket", (socket) => seen.requests.push(socket.url()));
+  page.on("pageerror", (error) => seen.errors.push(String(error)));
+  await page.exposeFunction("teaselTestViolation", (/** @type {any} */ violation) => seen.violations.push(violation));
+  await page.addInitScript(() => {
+    document.addEventListener("securitypolicyviolation", (event) =>
+      // @ts-ignore: exposed above
+      window.teaselTestViolation({ blocked: event.blockedURI, directive: event.effectiveDirective }),
+    );
+  });
+  await page.goto(url + fragment);
+  return { page, seen };
+}
+
+/**
+ * Waits until the page says that it is in one of these states.
+ * @param {import("playwright-core").Page} page
+ * @param {string[]} states
+ */
+export async function reaches(page, states, timeout = 60_000) {
+  await page.waitForFunction(
+    (wanted) => wanted.includes(document.documentElement.dataset.state ?? ""),
+    states,
+    { timeout, polling: 20 },
+  );
+  return page.evaluate(() => document.documentElement.dataset.state);
+}
+
+/**
+ * Keeps a picture in target/screenshots.
+ * @param {import("playwright-core").Page} page
+ * @param {string} name
+ */
+export async function picture(page, name, fullPage = false) {
+  await mkdir(shots, { recursive: true });
+  await page.screenshot({ path: join(shots, `${name}.png`), fullPage });
+}
+
+/**
+ * Presses a button and gives what the page hands out as a download.
+ * @param {import("playwright-core").Page} page
+ * @param {string} selector
+ */
+export async function download(page, selector) {
+  const coming = page.waitForEvent("download", { timeout: 60_000 });
+  await page.locator(selector).click();
+  const handed = await coming;
+  const stream = await handed.createReadStream();
+  const chunks = [];
+  for await (const chunk of stream) chunks.push(chunk);
+  return { name: handed.suggestedFilename(), bytes: Buffer.concat(chunks) };
+}
