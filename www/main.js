@@ -1,12 +1,122 @@
+/** The page: starts the bridge, joins the parts, and opens recordings through one door. */
 import { start } from "./bridge.js";
+import { eachFrame, find, make, size } from "./kit.js";
+import { mountChannels } from "./channels.js";
+import { mountChoosing } from "./choosing.js";
+import { mountComponents } from "./components.js";
+import { mountCompression } from "./compression.js";
+import { mountEvidence } from "./evidence.js";
+import { figuresOf, mountFigures, refreshFigures } from "./figure.js";
+import { mountFinding } from "./finding.js";
+import { mountFirst } from "./first.js";
+import { mountLedger } from "./ledger.js";
+import { door } from "./open.js";
+import { mountProgress } from "./progress.js";
+import { mountReadings } from "./readings.js";
+import { mountRecipeLink } from "./recipe-link.js";
+import { mountRecording } from "./recording.js";
+import { follow, now, put } from "./state.js";
+import { numbersOf } from "./tables.js";
+import { mountTakeaway } from "./takeaway.js";
+import { mountThread } from "./thread.js";
+import { mountWindows } from "./windows.js";
 
-const message = /** @type {HTMLElement} */ (document.getElementById("message"));
-start().then(
-  (bridge) => {
-    message.textContent = `Teasel ${bridge.version} is ready.`;
-  },
-  (error) => {
-    document.documentElement.dataset.state = "error";
-    message.textContent = String(error);
-  },
-);
+/** @typedef {import("./types").Bridge} Bridge */
+/** @typedef {import("./types").SheetNews} SheetNews */
+
+mountLedger();
+mountThread();
+mountReadings();
+mountFigures();
+
+/** The first screen answers at once; what it asks for waits for the bridge. */
+const ready = /** @type {Promise<Bridge>} */ (start());
+const opened = ready.then(join);
+mountFirst({
+  files: (files) => void opened.then(({ files: open }) => open(files)),
+  demo: (which) => void opened.then(({ demo }) => demo(which)),
+  recipe: (file) => void opened.then(({ recipe }) => recipe(file)),
+});
+opened.then(({ begin }) => begin(), (thrown) => {
+  document.documentElement.dataset.state = "error";
+  const box = find("#problem");
+  box.hidden = false;
+  box.replaceChildren(make("h3", {}, "This browser cannot run Teasel"), make("p", {}, `It needs WebAssembly with 128-bit vectors and workers (any browser since 2023). ${thrown instanceof Error ? thrown.message : ""}`));
+});
+
+/** @param {Bridge} bridge */
+function join(bridge) {
+  const send = eachFrame(() => {
+    const { recipe, phase } = now();
+    if (!recipe || phase === "choosing") return;
+    put({ phase: "working", stale: now().sheet !== null && now().sheet?.stronger.length !== 0 });
+    void Promise.resolve(bridge.setRecipe(recipe)).catch((thrown) => doors.failed(thrown));
+  });
+  /** @type {import("./types").App} */
+  const app = {
+    bridge,
+    change(edit) {
+      const { recipe, sheet } = now();
+      if (!recipe) return;
+      const next = structuredClone(recipe);
+      edit(next);
+      put({ recipe: next, stale: Boolean(sheet?.stronger.length) });
+      send();
+    },
+  };
+  const doors = door(app, send);
+  mountRecording(app);
+  mountChannels(app);
+  mountWindows(app);
+  mountCompression(app);
+  mountComponents(app);
+  mountEvidence(app);
+  mountFinding(app);
+  mountTakeaway(app, doors.failed);
+  mountChoosing(app, () => {
+    put({ phase: "working" });
+    send();
+  });
+  mountProgress(() => void doors.stop());
+  mountRecipeLink(bridge);
+  head();
+  sections(app);
+  listen(bridge, doors);
+  return doors;
+}
+
+/** What is open, in the head and in the window's title. */
+function head() {
+  follow((state, before) => {
+    if (state.summary === before.summary) return;
+    const card = state.summary?.recording;
+    find("#steps").hidden = !card;
+    if (!card || !state.summary) return;
+    const minutes = card.duration_s >= 90 ? `${Number((card.duration_s / 60).toFixed(1))} min` : `${Number(card.duration_s.toFixed(1))} s`;
+    const facts = [`${state.summary.channels.length} channels`, `${Number(card.rate_hz.toFixed(3))} Hz`, minutes, ...(state.source?.size ? [size(state.source.size)] : [])];
+    find("#opened").replaceChildren(make("b", {}, card.name), ` · ${facts.join(" · ")}`);
+    document.title = `${card.name} · Teasel`;
+  });
+}
+
+/** The tables of numbers in each section's margin. @param {import("./types").App} app */
+function sections(app) {
+  for (const section of document.querySelectorAll(".step")) {
+    if (!section.querySelector(".numbers")) continue;
+    const update = numbersOf(app, /** @type {HTMLElement} */ (section), () => figuresOf(section.id).filter(({ plan, place }) => plan.width === undefined && place.isConnected));
+    follow((state, before) => state.sheet !== before.sheet && update());
+  }
+}
+
+/** @param {Bridge} bridge @param {ReturnType<typeof door>} doors */
+function listen(bridge, doors) {
+  bridge.on("progress", (progress) => put({ progress }));
+  bridge.on("sheet", (/** @type {SheetNews} */ { sheet, readings, figures, generation, finished }) => {
+    document.documentElement.toggleAttribute("data-sheet", sheet.stronger.length > 0);
+    const current = JSON.stringify(sheet.recipe) === JSON.stringify(now().recipe);
+    put({ sheet, readings, figures, generation, stale: now().stale && !current, ...(finished ? { phase: "ready", progress: null } : {}) });
+    refreshFigures();
+  });
+  bridge.on("problem", (problem) => doors.failed(problem));
+  bridge.on("died", () => doors.died());
+}

@@ -1,0 +1,101 @@
+/** Channels: filters, reference, and which channels are left out. */
+import { find, make, typed, written } from "./kit.js";
+import { numberField, select } from "./fields.js";
+import { figureSlot } from "./figure.js";
+import { follow, now } from "./state.js";
+
+/** @typedef {import("./types").App} App */
+/** @typedef {import("./types").Recipe} Recipe */
+
+/** @param {App} app */
+export function mountChannels(app) {
+  const body = find("#channels .body");
+  const filter = () => now().recipe?.filter;
+  const hertz = (/** @type {string} */ label, /** @type {"high_pass_hz" | "low_pass_hz" | "resample_hz"} */ key) =>
+    numberField(label, { get: () => filter()?.[key], optional: true, range: [1e-3, 1e6], step: () => 1, empty: "all", set: (value) => app.change((recipe) => void (recipe.filter[key] = value)) });
+  const [high, low, rate] = [hertz("high-pass in hertz", "high_pass_hz"), hertz("low-pass in hertz", "low_pass_hz"), hertz("resample to, in hertz", "resample_hz")];
+  rate.field.placeholder = "as it is";
+  const notch = notchField(app);
+  const reference = select("reference", (value) => app.change((recipe) => void (recipe.channels.reference = asReference(value))));
+  const chips = make("div", { class: "chips", role: "group", "aria-label": "Channels; a pressed one is left out" });
+
+  body.append(
+    make("div", { class: "choice" },
+      make("span", { class: "together" }, "Keep ", high.field, " to ", low.field, " Hz,"),
+      make("span", { class: "together" }, "stop ", notch.field, " Hz,"),
+      make("span", { class: "together" }, "refer to ", reference.root, ","),
+      make("span", { class: "together" }, "resample to ", rate.field, " Hz")),
+    pairOf(app),
+    make("div", { class: "more leave-out" }, make("p", { class: "quiet small" }, "Leave out a channel by pressing its name:"), chips),
+  );
+  follow((state, before) => {
+    if (state.recipe === before.recipe && state.sheet === before.sheet && state.summary === before.summary) return;
+    for (const field of [high, low, rate, notch]) field.show();
+    showReference(reference);
+    showChips(app, chips);
+  });
+}
+
+/** The head and the stems: two figures with one caption. @param {App} app */
+function pairOf(app) {
+  const stems = figureSlot(app, "channels", { section: "channels", title: "Each channel as recorded", hint: "filled: used · ring: needs a look · cross: left out", label: "Standard deviation and mains excess of each channel, in recording order" });
+  const map = figureSlot(app, "channels-map", { section: "channels", label: "The channels on the head, seen from above" });
+  const row = make("div", { class: "head-and-stems" }, map.root, stems.place);
+  stems.root.append(row);
+  return stems.root;
+}
+
+/** Stop bands, several with spaces between. @param {App} app */
+function notchField(app) {
+  const get = () => now().recipe?.filter.notch_hz ?? [];
+  const field = make("input", { class: "field", type: "text", autocomplete: "off", "aria-label": "mains and other lines to stop, in hertz", placeholder: "none" });
+  field.addEventListener("change", () => {
+    const values = field.value.split(/[\s;]+|, /).filter(Boolean).map(typed);
+    const good = values.every((value) => value !== null && value > 0);
+    field.setAttribute("aria-invalid", String(!good));
+    if (good) app.change((recipe) => void (recipe.filter.notch_hz = values.map(Number)));
+  });
+  return { field, show: () => void (document.activeElement === field || (field.value = get().map(written).join(" "))) };
+}
+
+/** @param {string} value @returns {Recipe["channels"]["reference"]} */
+function asReference(value) {
+  return value === "as recorded" || value === "average" ? value : [value.replace(/^channel:/, "")];
+}
+
+/** @param {ReturnType<typeof select>} reference */
+function showReference(reference) {
+  const { recipe, summary } = now();
+  const current = recipe?.channels.reference ?? "as recorded";
+  const names = (summary?.channels ?? []).map(({ name }) => name);
+  const several = Array.isArray(current) && current.length > 1 ? [{ value: "several", label: `the mean of ${current.join(" and ")}` }] : [];
+  reference.show(
+    [{ value: "as recorded", label: "as recorded" }, { value: "average", label: "the average of used" }, ...several, ...names.map((name) => ({ value: `channel:${name}`, label: name }))],
+    Array.isArray(current) ? (several.length ? "several" : `channel:${current[0]}`) : current,
+  );
+}
+
+/** @param {App} app @param {HTMLElement} chips */
+function showChips(app, chips) {
+  const { recipe, summary, sheet } = now();
+  const channels = (sheet ?? summary)?.channels ?? [];
+  const out = new Set(recipe?.channels.leave_out ?? []);
+  if (chips.children.length !== channels.length || channels.some(({ name }, i) => chips.children[i]?.textContent !== name))
+    chips.replaceChildren(...channels.map(({ name }) => make("button", { type: "button", click: () => turn(app, name) }, name)));
+  channels.forEach(({ name, state }, i) => {
+    const chip = /** @type {HTMLButtonElement | undefined} */ (chips.children[i]);
+    if (!chip) return;
+    chip.setAttribute("aria-pressed", String(out.has(name) || state.state === "unusable"));
+    chip.disabled = state.state === "unusable";
+    chip.title = "reason" in state ? state.reason : "";
+  });
+}
+
+/** @param {App} app @param {string} name */
+function turn(app, name) {
+  app.change((recipe) => {
+    const out = recipe.channels.leave_out;
+    recipe.channels.leave_out = out.includes(name) ? out.filter((one) => one !== name) : [...out, name];
+    recipe.channels.interpolate = recipe.channels.interpolate.filter((one) => one !== name);
+  });
+}

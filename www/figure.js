@@ -1,0 +1,175 @@
+/** A figure on the sheet: canvas, caption, saving, the numbers behind it, and redrawing whenever its place or the scheme changes. */
+import { download, make } from "./kit.js";
+import { csv } from "./tables.js";
+import { now } from "./state.js";
+import { readingOf } from "./readings.js";
+
+/** @typedef {import("./types").App} App */
+/** @typedef {import("./types").Figure} Figure */
+/** @typedef {import("./types").PlotBox} PlotBox */
+/**
+ * @typedef {object} Plan
+ * @property {string} section whose reading says in words what the figure shows
+ * @property {string} [title] caption in bold; small figures go without
+ * @property {string} [hint] what can be done with it
+ * @property {string} label what the figure is, for those who cannot see it
+ * @property {number} [width] fixed width in CSS px; otherwise the place's own
+ * @property {number} [height] fixed height in CSS px; otherwise the figure's natural one
+ * @property {() => Promise<Figure | null>} [load] where the data come from; otherwise the newest sheet
+ * @property {(box: PlotBox | null, size: { width: number, height: number }) => void} [placed] called after each drawing
+ */
+/**
+ * @typedef {object} Slot
+ * @property {string} name
+ * @property {HTMLElement} root
+ * @property {HTMLElement} place the positioned box around the canvas
+ * @property {Plan} plan
+ * @property {() => Figure | null} figure
+ * @property {() => void} draw
+ * @property {() => void} refresh fetches the data again: at once where the figure can be seen, otherwise when it comes near
+ * @property {() => Promise<void>} settle fetches and draws wherever the figure is
+ * @property {() => void} drop forgets the figure's place on the page
+ * @property {(yes: boolean) => void} comes the figure has come near the window, or left it
+ */
+
+/** @type {Set<Slot>} */
+const slots = new Set();
+const dark = matchMedia("(prefers-color-scheme: dark)");
+let printing = false;
+
+/**
+ * @param {App} app
+ * @param {string} name the figure's name in the core
+ * @param {Plan} plan
+ * @returns {Slot}
+ */
+export function figureSlot(app, name, plan) {
+  const canvas = make("canvas", { role: "img", "aria-label": plan.label });
+  const place = make("div", { class: "drawn" }, canvas);
+  const caption = plan.title ? make("div", { class: "caption" }, make("b", {}, plan.title), make("span", { class: "quiet hint" }, plan.hint ?? "")) : null;
+  const root = make("figure", { class: plan.title ? "figure" : "figure small-figure", "data-figure": name }, caption, place);
+  /** @type {Figure | null} */
+  let figure = null;
+  let [fresh, near, loading, again] = [false, false, false, false];
+
+  const draw = () => {
+    const width = plan.width ?? place.clientWidth;
+    if (!figure || width < 20) return;
+    const height = plan.height ?? app.bridge.figureHeight(figure, width);
+    const scale = printing ? 3 : Math.max(1, devicePixelRatio);
+    app.bridge.draw(canvas, figure, { width, height, scale, dark: dark.matches && !printing });
+    canvas.style.width = plan.width ? `${width}px` : "";
+    canvas.setAttribute("aria-label", `${plan.label}. ${readingOf(plan.section)}`);
+    plan.placed?.(app.bridge.plotBox(figure, width, height), { width, height });
+  };
+  const load = async () => {
+    if (loading) return void (again = true);
+    loading = true;
+    try {
+      do {
+        again = false;
+        figure = await (plan.load ? plan.load() : now().figures.includes(name) ? app.bridge.figure(name) : Promise.resolve(null));
+      } while (again);
+      fresh = true;
+      root.hidden = !figure;
+      draw();
+    } finally {
+      loading = false;
+    }
+  };
+  /** @type {Slot} */
+  const slot = {
+    name, root, place, plan, draw,
+    figure: () => figure,
+    refresh() {
+      fresh = false;
+      if (root.hidden && (plan.load || now().figures.includes(name))) root.hidden = false;
+      if (near) void load();
+    },
+    settle: async () => void (fresh || (await load())),
+    drop() {
+      slots.delete(slot);
+      nearby.unobserve(root);
+      resized.unobserve(place);
+    },
+    comes(yes) {
+      near = yes;
+      if (yes && !fresh) void load();
+    },
+  };
+  if (caption) caption.append(saving(app, slot));
+  nearby.observe(root);
+  resized.observe(place);
+  slots.add(slot);
+  owners.set(root, slot).set(place, slot);
+  return slot;
+}
+
+/** @type {WeakMap<Element, Slot>} */
+const owners = new WeakMap();
+const nearby = new IntersectionObserver((entries) => entries.forEach(({ target, isIntersecting }) => owners.get(target)?.comes(isIntersecting)), { rootMargin: "300px" });
+const resized = new ResizeObserver((entries) => entries.forEach(({ target }) => owners.get(target)?.draw()));
+
+/** All figures of a section, or of the whole sheet. @param {string} [section] */
+export function figuresOf(section) {
+  return [...slots].filter(({ plan }) => !section || plan.section === section);
+}
+
+/** Tells every figure that the sheet has changed. */
+export function refreshFigures() {
+  for (const slot of slots) slot.refresh();
+}
+
+/** Redraws on a change of scheme or of pixel density, and in the light scheme for paper. */
+export function mountFigures() {
+  const all = () => [...slots].forEach((slot) => slot.draw());
+  dark.addEventListener("change", all);
+  const density = () => matchMedia(`(resolution: ${devicePixelRatio}dppx)`).addEventListener("change", () => (all(), density()), { once: true });
+  density();
+  const turn = (/** @type {boolean} */ on) => {
+    printing = on;
+    document.documentElement.toggleAttribute("data-printing", on);
+    all();
+  };
+  addEventListener("beforeprint", () => turn(true));
+  addEventListener("afterprint", () => turn(false));
+}
+
+/**
+ * @param {App} app
+ * @param {Slot} slot
+ */
+function saving(app, slot) {
+  const width = 888;
+  const size = (/** @type {Figure} */ figure) => ({ width, height: app.bridge.figureHeight(figure, width) });
+  const asSvg = (/** @type {Figure} */ figure) => download(`${slot.name}.svg`, app.bridge.svg(figure, width, size(figure).height), "image/svg+xml");
+  const asPng = async (/** @type {Figure} */ figure) => download(`${slot.name}.png`, new Uint8Array(await pngBytes(app, figure)), "image/png");
+  const asCsv = (/** @type {Figure} */ figure) => download(`${slot.name}.csv`, csv(app.bridge.table(figure)), "text/csv");
+  const button = (/** @type {string} */ label, /** @type {(figure: Figure) => void} */ act) =>
+    make("button", { type: "button", class: "button slim", click: () => {
+      const figure = slot.figure();
+      if (figure) act(figure);
+      menu.open = false;
+    } }, label);
+  const menu = make("details", { class: "save" },
+    make("summary", {}, "Save figure", make("span", { class: "aside" }, `: ${slot.plan.title}`)),
+    make("p", {}, button("SVG", asSvg), button("PNG", asPng), button("Numbers", asCsv)));
+  menu.addEventListener("keydown", (event) => event.key === "Escape" && (menu.open = false));
+  menu.addEventListener("focusout", (event) => {
+    if (!menu.contains(/** @type {Node | null} */ (event.relatedTarget)) && event.relatedTarget) menu.open = false;
+  });
+  return menu;
+}
+
+/**
+ * A PNG of a figure for files: light, two pixels to a CSS pixel.
+ * @param {App} app
+ * @param {Figure} figure
+ */
+export async function pngBytes(app, figure) {
+  const canvas = make("canvas");
+  const width = 888;
+  app.bridge.draw(canvas, figure, { width, height: app.bridge.figureHeight(figure, width), scale: 2, dark: false });
+  const blob = await new Promise((/** @type {(blob: Blob | null) => void} */ done) => canvas.toBlob(done, "image/png"));
+  return blob ? blob.arrayBuffer() : new ArrayBuffer(0);
+}

@@ -1,0 +1,59 @@
+/** Readings beside the figures. A changed reading appears only after the dials have rested, and then it is spoken once. */
+import { afterRest, find } from "./kit.js";
+import { plainText, writeSpans } from "./spans.js";
+import { follow, now } from "./state.js";
+
+const REST_MS = 300;
+/** What stands in each section now. @type {Map<string, string>} */
+const written = new Map();
+
+export function mountReadings() {
+  const later = afterRest(writeAll, REST_MS);
+  follow((state, before) => {
+    if (state.readings === before.readings) return;
+    if (before.readings.length === 0) writeAll();
+    else later();
+  });
+}
+
+/** The text of one section's reading, for those who cannot see the figure. @param {string} section */
+export function readingOf(section) {
+  const reading = now().readings.find((one) => one.section === section);
+  return reading ? plainText(reading.text) + (reading.but ? ` But ${plainText(reading.but)}` : "") : "";
+}
+
+function writeAll() {
+  const { readings } = now();
+  for (const { section, text, but } of readings) {
+    const place = document.querySelector(`#reading-${section}`);
+    if (!place) continue;
+    writeBut(place, but);
+    if (written.get(section) === plainText(text)) continue;
+    written.set(section, plainText(text));
+    writeSpans(place, text);
+    place.classList.remove("is-new");
+    requestAnimationFrame(() => place.classList.add("is-new"));
+  }
+}
+
+/**
+ * @param {Element} place
+ * @param {import("./types").Span[] | null} but
+ */
+function writeBut(place, but) {
+  const doubt = place.parentElement?.querySelector(section(place) === "so-far" ? ".sure" : ".but");
+  if (!(doubt instanceof HTMLElement)) return;
+  doubt.hidden = !but;
+  if (but) writeSpans(doubt, but);
+}
+
+/** @param {Element} place */
+function section(place) {
+  return place.id.replace("reading-", "");
+}
+
+/** Says one sentence to screen readers. @param {string} sentence */
+export function speak(sentence) {
+  const place = find("#message .spoken");
+  if (place.textContent !== sentence) place.textContent = sentence;
+}

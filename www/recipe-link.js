@@ -1,0 +1,60 @@
+/** The recipe in the address and in the tab's memory, so that it outlives a reload. */
+import { afterRest } from "./kit.js";
+import { follow, now } from "./state.js";
+
+/** @typedef {import("./types").Bridge} Bridge */
+/** @typedef {import("./types").Recipe} Recipe */
+
+const KEY = "teasel-recipe";
+
+/**
+ * The recipe that the page was opened with: from the link, or, where the link is this tab's own, from the tab's memory, which knows the names too.
+ * @param {Bridge} bridge
+ * @returns {{ recipe: Recipe, from: "link" | "tab", link: any } | null}
+ */
+export function recipeAtStart(bridge) {
+  const text = /^#recipe=(.+)$/.exec(location.hash)?.[1];
+  if (!text) return null;
+  const kept = remembered(bridge);
+  if (kept && (bridge.linkEncode(kept, false) === text || bridge.linkEncode(kept, true) === text)) return { recipe: kept, from: "tab", link: null };
+  const link = bridge.linkDecode(text);
+  return { recipe: link.recipe, from: "link", link };
+}
+
+/** @param {Bridge} bridge @returns {Recipe | null} */
+function remembered(bridge) {
+  try {
+    const text = sessionStorage.getItem(KEY);
+    return text ? bridge.parseRecipe(text) : null;
+  } catch {
+    return null;
+  }
+}
+
+/** Writes settings to the address and the whole recipe to the tab's memory, after the dials have rested. @param {Bridge} bridge */
+export function mountRecipeLink(bridge) {
+  const write = () => {
+    const { recipe } = now();
+    if (!recipe) return;
+    const names = /** @type {HTMLInputElement | null} */ (document.querySelector("#with-names"))?.checked ?? false;
+    history.replaceState(null, "", `#recipe=${bridge.linkEncode(recipe, names)}`);
+    try {
+      sessionStorage.setItem(KEY, JSON.stringify(recipe));
+    } catch {
+      // A tab without storage keeps the settings in its address only.
+    }
+  };
+  const later = afterRest(write, 250);
+  follow((state, before) => state.recipe !== before.recipe && state.recipe && later());
+  document.querySelector("#with-names")?.addEventListener("change", write);
+}
+
+/** Leaves no recipe behind in the address. */
+export function clearLink() {
+  history.replaceState(null, "", location.pathname + location.search);
+  try {
+    sessionStorage.removeItem(KEY);
+  } catch {
+    // Nothing was kept.
+  }
+}

@@ -1,0 +1,198 @@
+/** Shapes that cross between the core, the worker and the page. They follow src/core/src/{recipe,sheet,error}.rs field by field. */
+export interface EventWindow {
+  event: string;
+  from_s: number;
+  to_s: number;
+}
+export interface Recipe {
+  teasel_recipe: number;
+  channels: { leave_out: string[]; interpolate: string[]; reference: "as recorded" | "average" | string[] };
+  filter: { high_pass_hz: number | null; low_pass_hz: number | null; notch_hz: number[]; resample_hz: number | null };
+  keep: number | "auto" | "best";
+  measure: "typical" | "total";
+  contrast: { kind: "windows"; signal: EventWindow; reference: EventWindow };
+  shrink: number | "auto" | "ledoit-wolf" | "oas";
+  components: number;
+  evidence: { folds: number; permutations: number; bootstrap: number; seed: number };
+}
+export interface RecordingCard {
+  name: string;
+  format: string;
+  rate_hz: number;
+  duration_s: number;
+  stretches: { first: number; count: number; onset_s: number }[];
+  others: { name: string; unit: string; rate_hz: number; reason: string }[];
+  events: Record<string, number>;
+  event_onsets_s: Record<string, number[]>;
+  side_files: string[];
+  warnings: string[];
+  envelope: number[];
+}
+export type ChannelState =
+  | { state: "used" | "interpolated" | "left-out" }
+  | { state: "unusable" | "needs-a-look"; reason: string };
+export interface ChannelCard {
+  name: string;
+  unit: string;
+  sd: number | null;
+  mains_db: number | null;
+  mains_hz: number | null;
+  state: ChannelState;
+  position: [number, number, number] | null;
+}
+export interface SideCard {
+  used: number;
+  dropped: Record<string, number>;
+  samples: number;
+  seconds: number;
+}
+export interface TypicalRatio {
+  fitted: number;
+  held_out: number | null;
+  interval: [number, number] | null;
+}
+export interface TotalRatio {
+  fitted: number;
+  held_out: number | null;
+  folds: number[];
+}
+export interface Component {
+  typical: TypicalRatio;
+  total: TotalRatio;
+  p: number | null;
+  filter: number[];
+  largest_at: string;
+  peak_hz: number | null;
+  stability: number | null;
+  places_changed: number | null;
+  trials: { onset_s: number; fold: number; log_ratio: number }[];
+}
+export interface Sheet {
+  recording: RecordingCard;
+  recipe: Recipe;
+  channels: ChannelCard[];
+  preparation: { rate_hz: number; channels: string[]; rank: number; longest_filter_s: number; filters: string[] } | null;
+  windows: {
+    paired: boolean;
+    signal: SideCard;
+    reference: SideCard;
+    trials: { onset_s: number; event: string; dropped: string | null }[];
+  } | null;
+  compression: { kept: number; rank: number; share: number; guides: Record<string, number> } | null;
+  curve: { keep: number[]; fitted: number[]; held_out: number[]; log_se: number[] } | null;
+  shrinkage: number | null;
+  stronger: Component[];
+  weaker: Component[];
+  compare: unknown[];
+  permutation: { asked: number; done: number; exact: boolean; null: string } | null;
+  folds: { trials: number; ratio: number }[];
+  warnings: string[];
+}
+export interface Summary {
+  recording: RecordingCard;
+  channels: ChannelCard[];
+}
+export interface Span {
+  text: string;
+  tone: "plain" | "strong" | "signal" | "reference";
+}
+export interface Reading {
+  section: string;
+  text: Span[];
+  but: Span[] | null;
+}
+export interface Problem {
+  kind: string;
+  file: string | null;
+  what: string;
+  place: string | null;
+  expected: string | null;
+  found: string | null;
+  advice: string;
+  salvage: { records: number; seconds: number } | null;
+}
+export interface PlotBox {
+  left: number;
+  right: number;
+  top: number;
+  bottom: number;
+  x0: number;
+  x1: number;
+  y0: number;
+  y1: number;
+}
+/** One drawing as plain data; only the drawing code looks inside. */
+export type Figure = object;
+export interface Table {
+  columns: string[];
+  rows: string[][];
+}
+export interface Progress {
+  stage: string;
+  done: number;
+  of: number;
+}
+export interface SheetNews {
+  sheet: Sheet;
+  readings: Reading[];
+  figures: string[];
+  generation: number;
+  finished?: boolean;
+}
+
+export type Phase = "empty" | "reading" | "choosing" | "working" | "ready" | "error";
+export type StepName = "recording" | "channels" | "windows" | "compression" | "components" | "evidence" | "take-away";
+export interface State {
+  phase: Phase;
+  /** What was opened: shown in the head; `size` is null for a synthesised recording. */
+  source: { name: string; size: number | null; demo: string | null } | null;
+  summary: Summary | null;
+  /** The choices in force. */
+  recipe: Recipe | null;
+  /** Why this contrast was proposed; empty when the user brought a recipe. */
+  why: string;
+  sheet: Sheet | null;
+  readings: Reading[];
+  figures: string[];
+  generation: number;
+  /** The sheet answers an older recipe than `recipe`. */
+  stale: boolean;
+  /** The stage at work, null at rest. */
+  progress: Progress | null;
+  /** Counts everything that was taken away from this sheet. */
+  taken: number;
+}
+
+export interface DrawOptions {
+  width: number;
+  height: number;
+  /** Device pixels per CSS pixel. */
+  scale: number;
+  dark: boolean;
+}
+/** What www/bridge.js gives: one queue to the worker, and the drawing of the page's own instance. */
+export interface Bridge {
+  open(files: File[], options: { salvage: boolean }): Promise<Summary>;
+  openDemo(which: string): Promise<Summary>;
+  propose(): Promise<{ recipe: Recipe; why: string } | null>;
+  setRecipe(recipe: Recipe): void | Promise<void>;
+  stop(): void | Promise<void>;
+  on(name: string, listener: (news: any) => void): void;
+  figure(name: string): Promise<Figure | null>;
+  traces(from_s: number, seconds: number, channels: number[]): Promise<Figure>;
+  takeaway(kind: string, extras?: { name: string; bytes: Uint8Array }[]): Promise<Uint8Array>;
+  draw(canvas: HTMLCanvasElement, figure: Figure, options: DrawOptions): void;
+  figureHeight(figure: Figure, width: number): number;
+  plotBox(figure: Figure, width: number, height: number): PlotBox | null;
+  svg(figure: Figure, width: number, height: number): string;
+  table(figure: Figure): Table;
+  parseRecipe(text: string): Recipe;
+  linkEncode(recipe: Recipe, withNames: boolean): string;
+  linkDecode(text: string): { recipe: Recipe };
+}
+/** What every part of the sheet works with. */
+export interface App {
+  bridge: Bridge;
+  /** Changes the choices and recomputes. */
+  change(edit: (recipe: Recipe) => void): void;
+}

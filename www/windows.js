@@ -1,0 +1,112 @@
+/** Windows: which event, from when to when, by typing, dragging or arrows. */
+import { find, make, seconds } from "./kit.js";
+import { edgesOver } from "./edges.js";
+import { numberField, picks, select } from "./fields.js";
+import { figureSlot } from "./figure.js";
+import { follow, now } from "./state.js";
+
+/** @typedef {import("./types").App} App */
+/** @typedef {import("./types").PlotBox} PlotBox */
+/** @typedef {"signal" | "reference"} Side */
+/** @typedef {"from_s" | "to_s"} End */
+
+const PICKS = 4;
+/** Two samples are the least that has a variance. */
+const LEAST = 2;
+/** @type {PlotBox | null} */
+let plot = null;
+
+/** @param {App} app */
+export function mountWindows(app) {
+  const body = find("#windows .body");
+  const event = picks("Event of the signal windows", "signal-event", (value) => takeEvent(app, value));
+  const events = select("event of the signal windows", (value) => takeEvent(app, value));
+  const against = select("event of the reference windows", (value) => app.change(({ contrast }) => void (contrast.reference.event = value)));
+  const fields = /** @type {[Side, End][]} */ ([["signal", "from_s"], ["signal", "to_s"], ["reference", "from_s"], ["reference", "to_s"]]).map(([side, end]) =>
+    numberField(`${side} ${end === "from_s" ? "from" : "to"}, in seconds from the event`, { get: () => window(side)?.[end], step: sample, write: seconds, set: (value) => value !== null && move(app, side, end, value) }));
+  const why = make("span", { class: "quiet small" });
+  body.append(
+    make("div", { class: "choice" }, event.root, events.root,
+      make("span", { class: "together" }, make("span", { class: "of-signal" }, "signal"), fields[0]?.field, " to ", fields[1]?.field, " s"),
+      make("span", { class: "together" }, make("span", { class: "of-reference" }, "reference"), fields[2]?.field, " to ", fields[3]?.field, " s")),
+    make("div", { class: "choice" }, make("span", { class: "together" }, "reference windows around ", against.root), why),
+  );
+  const figure = figureSlot(app, "windows", {
+    section: "windows", title: "Average time course", hint: "drag an edge, or move it with the arrow keys", label: "Power of the leading component around the event, with the two windows",
+    placed: (box) => ((plot = box), edges.over(box)),
+  });
+  const edges = edgesOver(figure.place, /** @type {[Side, End][]} */ ([["reference", "from_s"], ["reference", "to_s"], ["signal", "from_s"], ["signal", "to_s"]]).map(([side, end]) => ({
+    kind: side,
+    label: `${side} ${end === "from_s" ? "from" : "to"}`,
+    value: () => window(side)?.[end] ?? 0,
+    limits: () => limits(side, end),
+    step: sample,
+    text: (value) => `${seconds(value)} seconds from ${window(side)?.event ?? "the event"}`,
+    set: (value) => move(app, side, end, value),
+  })));
+  body.append(figure.root);
+  follow((state, before) => {
+    if (state.recipe === before.recipe && state.summary === before.summary && state.sheet === before.sheet) return;
+    why.textContent = state.why;
+    why.hidden = !state.why;
+    showEvents(event, events, against);
+    for (const field of fields) field.show();
+    edges.lay();
+  });
+}
+
+/** @param {Side} side */
+function window(side) {
+  return now().recipe?.contrast[side];
+}
+
+/** Seconds a sample after the preparation. */
+function sample() {
+  return 1 / (now().sheet?.preparation?.rate_hz ?? now().summary?.recording.rate_hz ?? 1);
+}
+
+/** What the plot shows, less what keeps the two edges of a window apart. @param {Side} side @param {End} end @returns {[number, number]} */
+function limits(side, end) {
+  const least = LEAST * sample();
+  const [low, high] = plot ? [plot.x0, plot.x1] : [-1, 1];
+  const [grid, value] = [(/** @type {number} */ t) => onGrid(t), window(side)?.[end] ?? 0];
+  const range = /** @type {[number, number]} */ (end === "from_s" ? [grid(low), grid(high - least)] : [grid(low + least), grid(high)]);
+  return [Math.min(range[0], value), Math.max(range[1], value)];
+}
+
+/** @param {number} t */
+function onGrid(t) {
+  return Number((Math.round(t / sample()) * sample()).toFixed(6));
+}
+
+/** An edge that meets the other pushes it along. @param {App} app @param {Side} side @param {End} end @param {number} to */
+function move(app, side, end, to) {
+  const value = onGrid(to);
+  if (value === window(side)?.[end]) return;
+  app.change(({ contrast }) => {
+    const least = LEAST * sample();
+    contrast[side][end] = value;
+    if (end === "from_s") contrast[side].to_s = Math.max(contrast[side].to_s, onGrid(value + least));
+    else contrast[side].from_s = Math.min(contrast[side].from_s, onGrid(value - least));
+  });
+}
+
+/** The reference stays with the event that the signal had, unless both had the same. @param {App} app @param {string} event */
+function takeEvent(app, event) {
+  app.change(({ contrast }) => {
+    if (contrast.reference.event === contrast.signal.event) contrast.reference.event = event;
+    contrast.signal.event = event;
+  });
+}
+
+/** @param {ReturnType<typeof picks>} few @param {ReturnType<typeof select>} many @param {ReturnType<typeof select>} against */
+function showEvents(few, many, against) {
+  const events = Object.entries(now().summary?.recording.events ?? {}).sort((a, b) => b[1] - a[1]);
+  const current = window("signal")?.event;
+  const crowded = events.length > PICKS || events.some(([name]) => name.length > 18);
+  few.root.hidden = crowded;
+  many.root.hidden = !crowded;
+  if (crowded) many.show(events.map(([name, n]) => ({ value: name, label: `${name} (${n})` })), current);
+  else few.show(events.map(([name, n]) => ({ value: name, label: name, many: String(n) })), current);
+  against.show(events.map(([name]) => ({ value: name, label: name === current ? `the same ${name}` : name })), window("reference")?.event);
+}
