@@ -1,0 +1,1 @@
+//! Checks that hold for every figure.
