@@ -3,9 +3,9 @@
 //! Everything in the preparation is linear: a filter for the raw channels followed by the same FIR filters gives what the
 //! filter for the prepared channels gives after them. So the raw channels are combined first, in f64, and only the
 //! components are filtered and resampled.
-use super::series::Series;
 use super::strict::quote;
 use super::weights::Weights;
+use crate::analysis::Series;
 use crate::error::{Kind, Problem, Result};
 use crate::prepare::Preparing;
 use crate::recipe::{Contrast, EventWindow, Evidence, Keep, Measure, Recipe, Shrink};
@@ -13,7 +13,7 @@ use crate::recording::{Channel, Recording};
 use crate::sheet::{ChannelCard, ChannelState};
 
 /// What applying gives.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone)]
 pub struct Applied {
     /// Time courses of the components.
     pub series: Series,
@@ -51,17 +51,8 @@ impl Weights {
             halves.push(high);
             halves.push(low);
         }
-        let (values, rate_hz) = self.filtered(recording, halves, filter)?;
-        Ok(Applied {
-            series: Series {
-                names: self.component_names(),
-                values,
-                rate_hz,
-                stretches: recording.stretches.clone(),
-                recorded_hz: recording.rate_hz,
-            },
-            notes,
-        })
+        let series = self.filtered(recording, halves, filter)?;
+        Ok(Applied { series, notes })
     }
 
     /// Index in the recording and factor of unit of every channel.
@@ -157,7 +148,7 @@ impl Weights {
         recording: &Recording,
         halves: Vec<Vec<f32>>,
         filter: crate::recipe::Filter,
-    ) -> Result<(Vec<Vec<f64>>, f64)> {
+    ) -> Result<Series> {
         let channels: Vec<Channel> = (0..halves.len())
             .map(|k| Channel {
                 name: format!("half {k}"),
@@ -194,7 +185,7 @@ impl Weights {
                 "the preparation of the weights cannot be repeated on it",
             )
         })?;
-        let values = prepared
+        let samples = prepared
             .samples
             .chunks(2)
             .map(|pair| {
@@ -206,7 +197,12 @@ impl Weights {
                     .collect()
             })
             .collect();
-        Ok((values, prepared.rate_hz))
+        Ok(Series {
+            names: self.component_names(),
+            samples,
+            rate_hz: prepared.rate_hz,
+            stretches: prepared.stretches,
+        })
     }
 }
 
