@@ -4,7 +4,7 @@
 //! filter for the prepared channels gives after them. So the raw channels are combined first, in f64, and only the
 //! components are filtered and resampled.
 use super::strict::quote;
-use super::weights::Weights;
+use super::weights::{Weights, same};
 use crate::analysis::Series;
 use crate::error::{Kind, Problem, Result};
 use crate::prepare::Preparing;
@@ -22,7 +22,7 @@ pub struct Applied {
 }
 
 impl Weights {
-    /// The components' time courses in `recording`. Channels are matched by name, in any order; more channels are fine, a
+    /// The components' time courses in `recording`. Channels are matched by name, in any order (the second of a name with the second); more channels are fine, a
     /// missing one is an error, so is a unit of another kind. Another unit of the same kind is converted. A recording sampled
     /// faster is resampled after the filters, one sampled slower is refused, because it lacks what the weights were fitted to.
     pub fn apply(&self, recording: &Recording) -> Result<Applied> {
@@ -61,11 +61,11 @@ impl Weights {
         let mut missing = Vec::new();
         for (k, wanted) in self.channels.iter().enumerate() {
             let needed = self.filters.iter().any(|row| row[k] != 0.0);
-            let Some(at) = recording
-                .channels
-                .iter()
-                .position(|c| c.name == wanted.name)
-            else {
+            let Some(at) = same(
+                recording.channels.iter().map(|c| c.name.as_str()),
+                self.channels[..k].iter().map(|c| c.name.as_str()),
+                &wanted.name,
+            ) else {
                 if needed {
                     missing.push(quote(&wanted.name));
                 }
@@ -210,7 +210,7 @@ fn refuse(recording: &Recording, what: &str) -> Problem {
     Problem::new(
         Kind::Contrast,
         what,
-        "Choose a recording of the same montage, or fit new weights to this one.",
+        "choose a recording of the same montage, or fit new weights to this one",
     )
     .in_file(&recording.name)
 }

@@ -48,6 +48,6 @@ fn written(cause: impl std::fmt::Display) -> Problem {
     Problem::new(
         Kind::Storage,
         format!("the file could not be put together: {cause}"),
-        "Try again with fewer components.",
+        "try again with fewer components",
     )
 }
