@@ -23,7 +23,7 @@ export function mountChannels(app) {
     make("div", { class: "choice" },
       make("span", { class: "together" }, "Keep ", high.field, " to ", low.field, " Hz,"),
       make("span", { class: "together" }, "stop ", notch.field, " Hz,"),
-      make("span", { class: "together" }, "refer to ", reference.root, ","),
+      make("span", { class: "together" }, "refer to ", reference.root),
       make("span", { class: "together" }, "resample to ", rate.field, " Hz")),
     pairOf(app),
     make("div", { class: "more leave-out" }, make("p", { class: "quiet small" }, "Leave out a channel by pressing its name:"), chips),

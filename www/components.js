@@ -21,7 +21,7 @@ const rows = new Map();
 /** @param {App} app */
 export function mountComponents(app) {
   const body = find("#components .body");
-  const measure = picks("Measure", "measure", (value) => app.change((recipe) => void (recipe.measure = value === "total" ? "total" : "typical")));
+  const measure = picks("Measure", "measure", (value) => app.change((recipe) => order(recipe, value === "total" ? "total" : "typical")));
   const table = make("tbody");
   const axis = figureSlot(app, "ratio-axis", { section: "components", label: "Axis of ratios, from one quarter to four times", width: 210, height: 26 });
   body.append(
@@ -34,6 +34,12 @@ export function mountComponents(app) {
     if (state.recipe !== before.recipe || state.sheet !== before.sheet) measure.show([{ value: "typical", label: "typical trial" }, { value: "total", label: "total power" }], (state.recipe ?? state.sheet?.recipe)?.measure);
     if (state.sheet !== before.sheet) show(app, table);
   });
+}
+
+/** Two rules of shrinkage belong to the total measure alone. @param {import("./types").Recipe} recipe @param {"typical" | "total"} measure */
+function order(recipe, measure) {
+  recipe.measure = measure;
+  if (measure === "typical" && (recipe.shrink === "oas" || recipe.shrink === "ledoit-wolf")) recipe.shrink = "auto";
 }
 
 /** @param {HTMLElement} axis */
@@ -106,6 +112,9 @@ function turn(app, row, to) {
 function fill(row, component) {
   if (!row) return;
   const { typical, total, p, stability, places_changed } = component;
+  row.row.classList.toggle("half", typical.held_out === null && now().phase === "working");
+  // A held-out ratio on its way leaves the one before in place, in grey.
+  if (row.row.classList.contains("half") && row.cells.typical?.textContent) return;
   const held = make("b", {}, factor(typical.held_out ?? typical.fitted));
   const span = typical.held_out === null ? "fitted only" : interval(typical.interval);
   row.cells.typical?.replaceChildren(held, make("br"), make("span", { class: "span" }, span));

@@ -16,9 +16,10 @@ export function mountCompression(app) {
   const keep = make("input", { type: "range", id: "keep", min: 2, max: 2, step: 1, "aria-label": "Dimensions to keep" });
   const dial = make("div", { class: "dial" }, keep);
   const guides = make("div", { class: "choice guides" });
-  const eigenvalues = figureSlot(app, "eigenvalues", { section: "compression", title: "How many dimensions to keep", hint: "", label: "Variance of each dimension, in dB below the largest" });
+  const eigenvalues = figureSlot(app, "eigenvalues", { section: "compression", title: "How many dimensions to keep", hint: "", label: "Variance of each dimension, in dB below the largest", adjust });
   const curve = figureSlot(app, "keep", {
     section: "compression", label: "Fitted and held-out ratio of component 1 against the number of dimensions kept",
+    adjust,
     placed: (box) => box && under(keep, box),
   });
   eigenvalues.root.append(curve.root, dial);
@@ -42,6 +43,20 @@ export function mountCompression(app) {
 function kept() {
   const { recipe, sheet } = now();
   return typeof recipe?.keep === "number" ? Math.min(recipe.keep, sheet?.compression?.rank ?? recipe.keep) : (sheet?.compression?.kept ?? 2);
+}
+
+/**
+ * The line at C where the dial is.
+ * @param {any} figure the core's figures `Eigenvalues` and `Keep`
+ */
+function adjust(figure) {
+  const share = Array.isArray(figure.variance) ? { share: sum(figure.variance.slice(0, kept())) / sum(figure.variance) } : {};
+  return { ...figure, kept: kept(), ...share };
+}
+
+/** @param {number[]} list */
+function sum(list) {
+  return list.reduce((all, one) => all + one, 0);
 }
 
 /** Lays the range so that its thumb stands under the plot's line. @param {HTMLInputElement} keep @param {PlotBox} box */

@@ -1,5 +1,5 @@
 /** Edges that are dragged over a plot, or moved by the arrow keys: typing, dragging and arrows do the same thing. */
-import { make, seconds } from "./kit.js";
+import { make } from "./kit.js";
 
 /** @typedef {import("./types").PlotBox} PlotBox */
 /**
@@ -11,9 +11,13 @@ import { make, seconds } from "./kit.js";
  * @property {() => number} step one sample
  * @property {(value: number) => string} text what a screen reader says
  * @property {(value: number) => void} set
+ * @property {(yes: boolean) => void} held called when a drag begins and ends
  */
 
-const ROOM_BELOW = 46;
+/** Below the axis, above the values, which the figure writes itself. */
+const ROOM_BELOW = 32;
+/** Grips nearer than this to each other move apart; the lines that the figure draws stay. */
+const GRIP_ROOM = 26;
 
 /**
  * Lays edges over a figure's plot and keeps them there.
@@ -23,31 +27,28 @@ const ROOM_BELOW = 46;
 export function edgesOver(place, plans) {
   /** @type {PlotBox | null} */
   let box = null;
-  place.style.paddingBottom = `${ROOM_BELOW}px`;
   const nodes = plans.map((plan) => {
-    const worth = make("span", { class: "worth", "aria-hidden": "true" });
-    const node = make("div", { class: `edge ${plan.kind}`, role: "slider", tabindex: 0, "aria-label": plan.label, "aria-orientation": "horizontal" }, make("span", { class: "grip" }), worth);
+    const node = make("div", { class: `edge ${plan.kind}`, role: "slider", tabindex: 0, "aria-label": plan.label, "aria-orientation": "horizontal" }, make("span", { class: "grip" }));
     keys(node, plan);
     drag(node, plan, () => box, place);
     place.append(node);
-    return { node, worth, plan };
+    return { node, plan };
   });
 
   const lay = () => {
-    for (const { node, worth, plan } of nodes) {
+    for (const { node, plan } of nodes) {
       const [value, [low, high]] = [plan.value(), plan.limits()];
       node.hidden = !box;
       node.setAttribute("aria-valuenow", String(value));
       node.setAttribute("aria-valuemin", String(low));
       node.setAttribute("aria-valuemax", String(high));
       node.setAttribute("aria-valuetext", plan.text(value));
-      worth.textContent = `${seconds(value)} s`;
       if (!box) continue;
-      const x = box.left + ((value - box.x0) / (box.x1 - box.x0)) * (box.right - box.left);
-      node.style.left = `${Math.max(box.left, Math.min(box.right, x))}px`;
       node.style.top = `${box.top}px`;
-      node.style.bottom = "0";
+      node.style.height = `${box.bottom - box.top + ROOM_BELOW}px`;
     }
+    const plot = box;
+    if (plot) apart(nodes.map(({ node, plan }) => ({ node, x: across(plot, plan.value()) })));
   };
   return {
     lay,
@@ -57,6 +58,24 @@ export function edgesOver(place, plans) {
       lay();
     },
   };
+}
+
+/** @param {PlotBox} box @param {number} value */
+function across(box, value) {
+  const x = box.left + ((value - box.x0) / (box.x1 - box.x0)) * (box.right - box.left);
+  return Math.max(box.left, Math.min(box.right, x));
+}
+
+/** Places the edges; where two stand close together, their grips make room for each other. @param {{ node: HTMLElement, x: number }[]} edges */
+function apart(edges) {
+  const order = edges.map((edge, i) => ({ ...edge, i })).sort((a, b) => a.x - b.x || a.i - b.i);
+  const at = order.map(({ x }) => x);
+  for (let round = 0; round < 8; round += 1)
+    for (let k = 1; k < at.length; k += 1) {
+      const lack = GRIP_ROOM - (Number(at[k]) - Number(at[k - 1]));
+      if (lack > 0) (at[k - 1] = Number(at[k - 1]) - lack / 2), (at[k] = Number(at[k]) + lack / 2);
+    }
+  order.forEach(({ node }, k) => (node.style.left = `${at[k]}px`));
 }
 
 /** Arrows one step, Shift ten, Home and End the limits. @param {KeyboardEvent} event @param {number} value @param {number} step @param {[number, number]} limits */
@@ -88,13 +107,15 @@ function drag(node, plan, boxNow, place) {
     down.preventDefault();
     node.focus({ preventScroll: true });
     node.setPointerCapture(down.pointerId);
-    const grabbed = down.clientX - place.getBoundingClientRect().left - parseFloat(node.style.left);
+    plan.held(true);
+    const grabbed = down.clientX - place.getBoundingClientRect().left - across(box, plan.value());
     const move = (/** @type {PointerEvent} */ at) => {
       const x = at.clientX - place.getBoundingClientRect().left - grabbed;
       const value = box.x0 + ((x - box.left) / (box.right - box.left)) * (box.x1 - box.x0);
       plan.set(Math.max(low, Math.min(high, value)));
     };
     const done = () => {
+      plan.held(false);
       node.removeEventListener("pointermove", move);
       node.removeEventListener("lostpointercapture", done);
     };

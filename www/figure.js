@@ -1,7 +1,7 @@
 /** A figure on the sheet: canvas, caption, saving, the numbers behind it, and redrawing whenever its place or the scheme changes. */
-import { download, make } from "./kit.js";
+import { afterRest, download, make } from "./kit.js";
 import { csv } from "./tables.js";
-import { now } from "./state.js";
+import { follow, now } from "./state.js";
 import { readingOf } from "./readings.js";
 
 /** @typedef {import("./types").App} App */
@@ -16,6 +16,7 @@ import { readingOf } from "./readings.js";
  * @property {number} [width] fixed width in CSS px; otherwise the place's own
  * @property {number} [height] fixed height in CSS px; otherwise the figure's natural one
  * @property {() => Promise<Figure | null>} [load] where the data come from; otherwise the newest sheet
+ * @property {(figure: any) => Figure} [adjust] brings the figure's dials up to the choices, ahead of the numbers
  * @property {(box: PlotBox | null, size: { width: number, height: number }) => void} [placed] called after each drawing
  */
 /**
@@ -26,6 +27,7 @@ import { readingOf } from "./readings.js";
  * @property {Plan} plan
  * @property {() => Figure | null} figure
  * @property {() => void} draw
+ * @property {() => boolean} near whether it can be seen, or nearly
  * @property {() => void} refresh fetches the data again: at once where the figure can be seen, otherwise when it comes near
  * @property {() => Promise<void>} settle fetches and draws wherever the figure is
  * @property {() => void} drop forgets the figure's place on the page
@@ -36,6 +38,8 @@ import { readingOf } from "./readings.js";
 const slots = new Set();
 const dark = matchMedia("(prefers-color-scheme: dark)");
 let printing = false;
+/** A4 less its margins (see @page in the style sheet), in CSS px. */
+const PAPER_WIDTH = 688;
 
 /**
  * @param {App} app
@@ -53,23 +57,34 @@ export function figureSlot(app, name, plan) {
   let [fresh, near, loading, again] = [false, false, false, false];
 
   const draw = () => {
-    const width = plan.width ?? place.clientWidth;
+    const width = plan.width ?? Math.round(place.clientWidth * onPaper(place));
     if (!figure || width < 20) return;
-    const height = plan.height ?? app.bridge.figureHeight(figure, width);
+    const adjusted = plan.adjust ? plan.adjust(figure) : figure;
+    const height = plan.height ?? app.bridge.figureHeight(adjusted, width);
     const scale = printing ? 3 : Math.max(1, devicePixelRatio);
-    app.bridge.draw(canvas, figure, { width, height, scale, dark: dark.matches && !printing });
+    app.bridge.draw(canvas, adjusted, { width, height, scale, dark: dark.matches && !printing });
     canvas.style.width = plan.width ? `${width}px` : "";
     canvas.setAttribute("aria-label", `${plan.label}. ${readingOf(plan.section)}`);
-    plan.placed?.(app.bridge.plotBox(figure, width, height), { width, height });
+    plan.placed?.(app.bridge.plotBox(adjusted, width, height), { width, height });
+  };
+  const newest = async () => {
+    if (plan.load) return plan.load();
+    const { figures, drawn } = now();
+    return figures.includes(name) ? (drawn[name] ?? app.bridge.figure(name)) : null;
   };
   const load = async () => {
     if (loading) return void (again = true);
     loading = true;
+    /** @type {Figure | null} */
+    let loaded = null;
     try {
       do {
         again = false;
-        figure = await (plan.load ? plan.load() : now().figures.includes(name) ? app.bridge.figure(name) : Promise.resolve(null));
+        loaded = await newest();
       } while (again);
+      // While the work goes on, the figure of the choices before stays.
+      if (!loaded && figure && now().phase === "working") return;
+      figure = loaded;
       fresh = true;
       root.hidden = !figure;
       draw();
@@ -80,20 +95,23 @@ export function figureSlot(app, name, plan) {
   /** @type {Slot} */
   const slot = {
     name, root, place, plan, draw,
+    near: () => near,
     figure: () => figure,
     refresh() {
       fresh = false;
       if (root.hidden && (plan.load || now().figures.includes(name))) root.hidden = false;
       if (near) void load();
     },
-    settle: async () => void (fresh || (await load())),
+    settle: async () => void (fresh || (await load().catch(() => undefined))),
     drop() {
       slots.delete(slot);
+      near = false;
       nearby.unobserve(root);
       resized.unobserve(place);
     },
     comes(yes) {
       near = yes;
+      watch(app);
       if (yes && !fresh) void load();
     },
   };
@@ -110,9 +128,38 @@ const owners = new WeakMap();
 const nearby = new IntersectionObserver((entries) => entries.forEach(({ target, isIntersecting }) => owners.get(target)?.comes(isIntersecting)), { rootMargin: "300px" });
 const resized = new ResizeObserver((entries) => entries.forEach(({ target }) => owners.get(target)?.draw()));
 
+/** Asks for the figures near the window to come along with each sheet. @type {(app: App) => void} */
+const watch = (() => {
+  /** @type {App | null} */
+  let asker = null;
+  const ask = afterRest(() => {
+    const names = [...slots].filter((slot) => slot.near() && !slot.plan.load).map(({ name }) => name);
+    void asker?.bridge.watch([...new Set(names)]).catch(() => undefined);
+  }, 60);
+  return (app) => {
+    asker = app;
+    ask();
+  };
+})();
+
 /** All figures of a section, or of the whole sheet. @param {string} [section] */
 export function figuresOf(section) {
   return [...slots].filter(({ plan }) => !section || plan.section === section);
+}
+
+/** Fetches every figure that is not there yet, a few at a time, so that paper and screen hold the same. */
+export async function settleFigures() {
+  for (const slot of [...slots]) {
+    await new Promise((/** @type {(value?: unknown) => void} */ done) => setTimeout(done, 30));
+    if (now().phase !== "ready") return;
+    await slot.settle();
+  }
+}
+
+/** How much narrower a place is on paper than on the screen. @param {HTMLElement} place */
+function onPaper(place) {
+  const column = place.closest(".body")?.clientWidth;
+  return printing && column ? PAPER_WIDTH / column : 1;
 }
 
 /** Tells every figure that the sheet has changed. */
@@ -128,9 +175,11 @@ export function mountFigures() {
   density();
   const turn = (/** @type {boolean} */ on) => {
     printing = on;
-    document.documentElement.toggleAttribute("data-printing", on);
     all();
   };
+  follow((state, before) => {
+    if (state.recipe !== before.recipe) for (const slot of slots) if (slot.plan.adjust) slot.draw();
+  });
   addEventListener("beforeprint", () => turn(true));
   addEventListener("afterprint", () => turn(false));
 }

@@ -18,7 +18,7 @@ export function mountFinding(app) {
   follow((state, before) => {
     if (state.sheet === before.sheet && state.stale === before.stale && state.summary === before.summary) return;
     const { sheet } = state;
-    find("#so-far").hidden = !sheet?.stronger.length;
+    find("#so-far").hidden = !sheet;
     for (const { end, words } of ends) {
       const leading = sheet?.[end][0];
       const name = end === "stronger" ? make("span", { class: "of-signal" }, "component 1") : make("span", { class: "of-reference" }, "weaker 1");

@@ -6,10 +6,11 @@ import { mountChoosing } from "./choosing.js";
 import { mountComponents } from "./components.js";
 import { mountCompression } from "./compression.js";
 import { mountEvidence } from "./evidence.js";
-import { figuresOf, mountFigures, refreshFigures } from "./figure.js";
+import { figuresOf, mountFigures, refreshFigures, settleFigures } from "./figure.js";
 import { mountFinding } from "./finding.js";
 import { mountFirst } from "./first.js";
 import { mountLedger } from "./ledger.js";
+import { unsay } from "./notices.js";
 import { door } from "./open.js";
 import { mountProgress } from "./progress.js";
 import { mountReadings } from "./readings.js";
@@ -22,7 +23,11 @@ import { mountThread } from "./thread.js";
 import { mountWindows } from "./windows.js";
 
 /** @typedef {import("./types").Bridge} Bridge */
+/** @typedef {import("./types").Sheet} Sheet */
 /** @typedef {import("./types").SheetNews} SheetNews */
+
+/** The generation of the choices in force; unknown while they are on their way. */
+let expected = Infinity;
 
 mountLedger();
 mountThread();
@@ -46,11 +51,19 @@ opened.then(({ begin }) => begin(), (thrown) => {
 
 /** @param {Bridge} bridge */
 function join(bridge) {
+  let sent = 0;
   const send = eachFrame(() => {
     const { recipe, phase } = now();
     if (!recipe || phase === "choosing") return;
-    put({ phase: "working", stale: now().sheet !== null && now().sheet?.stronger.length !== 0 });
-    void Promise.resolve(bridge.setRecipe(recipe)).catch((thrown) => doors.failed(thrown));
+    put({ phase: "working" });
+    sent += 1;
+    const mine = sent;
+    bridge.setRecipe(recipe).then(
+      (generation) => {
+        if (generation !== null && mine === sent) expected = generation;
+      },
+      (thrown) => mine === sent && doors.failed(thrown),
+    );
   });
   /** @type {import("./types").App} */
   const app = {
@@ -60,7 +73,9 @@ function join(bridge) {
       if (!recipe) return;
       const next = structuredClone(recipe);
       edit(next);
+      expected = Infinity;
       put({ recipe: next, stale: Boolean(sheet?.stronger.length) });
+      unsay("#problem");
       send();
     },
   };
@@ -110,13 +125,32 @@ function sections(app) {
 
 /** @param {Bridge} bridge @param {ReturnType<typeof door>} doors */
 function listen(bridge, doors) {
-  bridge.on("progress", (progress) => put({ progress }));
-  bridge.on("sheet", (/** @type {SheetNews} */ { sheet, readings, figures, generation, finished }) => {
-    document.documentElement.toggleAttribute("data-sheet", sheet.stronger.length > 0);
-    const current = JSON.stringify(sheet.recipe) === JSON.stringify(now().recipe);
-    put({ sheet, readings, figures, generation, stale: now().stale && !current, ...(finished ? { phase: "ready", progress: null } : {}) });
+  bridge.on("progress", (progress) => now().phase === "working" && put({ progress }));
+  bridge.on("sheet", (/** @type {SheetNews} */ { sheet, readings, figures, drawn, generation }) => {
+    const whole = sheet.stronger.length > 0;
+    const told = whole || !now().stale ? { readings } : {};
+    put({ sheet: carriedOver(sheet, now().sheet), ...told, figures, drawn: drawn ?? {}, generation, stale: now().stale && !(whole && generation >= expected) });
+    document.documentElement.toggleAttribute("data-sheet", Boolean(now().sheet?.stronger.length));
     refreshFigures();
+  });
+  bridge.on("finished", ({ generation }) => {
+    if (generation < expected) return;
+    put({ phase: "ready", progress: null, stale: false });
+    refreshFigures();
+    void settleFigures();
   });
   bridge.on("problem", (problem) => doors.failed(problem));
   bridge.on("died", () => doors.died());
+}
+
+/**
+ * Results are never blanked: until the new ones are there, the sheet shows those of the choices before (greyed, see `stale`).
+ * @param {Sheet} sheet
+ * @param {Sheet | null} before
+ * @returns {Sheet}
+ */
+function carriedOver(sheet, before) {
+  if (!before || sheet.stronger.length || !before.stronger.length) return sheet;
+  const { stronger, weaker, compare, permutation, folds, curve } = before;
+  return { ...before, ...sheet, stronger, weaker, compare, permutation, folds, curve, preparation: sheet.preparation ?? before.preparation, windows: sheet.windows ?? before.windows, compression: sheet.compression ?? before.compression };
 }

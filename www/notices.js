@@ -44,7 +44,7 @@ export function whereabouts({ place, expected, found }) {
   return [place, numbers].filter(Boolean).join(": ");
 }
 
-/** A sentence's first letter, large. @param {string} text */
-export function sentence(text) {
-  return text.charAt(0).toUpperCase() + text.slice(1);
+/** A sentence's first letter, large, unless it is a file's. @param {string} text @param {string | null} file */
+export function sentence(text, file) {
+  return file && text.startsWith(file) ? text : text.charAt(0).toUpperCase() + text.slice(1);
 }

@@ -9,19 +9,24 @@ import { now, put } from "./state.js";
 /** @typedef {import("./types").Recipe} Recipe */
 /** @typedef {import("./types").Summary} Summary */
 /** @typedef {{ files: File[], salvage: boolean } | { demo: string }} Source */
+/** @typedef {{ recipe: Recipe, link: string | null }} Waiting */
 
 /**
  * @param {App} app
  * @param {() => void} compute
  */
-export function door({ bridge }, compute) {
-  /** A recipe that waits for its recording. @type {Recipe | null} */
+export function door({ bridge, change: edit }, compute) {
+  const change = (/** @type {Recipe} */ recipe) => {
+    if (!now().recipe) put({ recipe });
+    edit((old) => void Object.assign(old, structuredClone(recipe)));
+  };
+  /** A recipe, or a link that leaves names to the recording. @type {Waiting | null} */
   let waiting = null;
   /** @type {Source | null} */
   let last = null;
 
   const pick = () => find("#recording").click();
-  const takeRecipe = () => download("recipe.json", `${JSON.stringify(now().recipe, null, 2)}\n`, "application/json");
+  const takeRecipe = () => download("recipe.json", bridge.recipeText(/** @type {Recipe} */ (now().recipe)), "application/json");
 
   /** @param {Source} source */
   async function open(source) {
@@ -29,7 +34,7 @@ export function door({ bridge }, compute) {
     unsay("#problem");
     unsay("#hint");
     const demo = "demo" in source ? source.demo : null;
-    put({ phase: "reading", progress: { stage: demo ? "making the recording" : "reading", done: 0, of: 1 } });
+    put({ phase: "reading", progress: { stage: demo ? "making" : "reading", done: 0, of: 1 } });
     try {
       const summary = "demo" in source ? await bridge.openDemo(source.demo) : await bridge.open(source.files, { salvage: source.salvage });
       const size = "files" in source ? (source.files.find(({ name }) => name === summary.recording.name)?.size ?? null) : null;
@@ -44,7 +49,9 @@ export function door({ bridge }, compute) {
   /** A recipe that came along, or a proposal; then the work begins, at once where it is small. @param {Summary} summary */
   async function ask(summary) {
     const proposal = await bridge.propose();
-    const recipe = waiting ? completed(waiting, summary) : proposal?.recipe;
+    const brought = waiting?.link ? bridge.linkComplete(waiting.link, summary.recording.events) : waiting;
+    const recipe = brought?.recipe ?? proposal?.recipe;
+    if (brought && "notes" in brought && brought.notes.length) say("#hint", { title: "The link left some things open", text: [brought.notes.join(" ")], ways: [{ label: "Close", act: () => unsay("#hint") }] });
     if (!recipe) {
       put({ phase: "choosing", progress: null });
       return noEvents();
@@ -78,7 +85,7 @@ export function door({ bridge }, compute) {
     if (problem.kind === "contrast" && now().summary) ways.push({ label: "Propose afresh", act: () => void afresh() });
     else if (problem.kind !== "recipe") ways.push({ label: "Choose another recording…", act: pick });
     const rest = salvage ? [" The ", make("b", {}, `${count(salvage.records)} whole records before it (${clock(salvage.seconds)})`), " can be opened."] : [];
-    say("#problem", { title: sentence(about + problem.what), text: [problem.advice, ...rest], where: whereabouts(problem), ways });
+    say("#problem", { title: sentence(about + problem.what, file), text: [problem.advice, ...rest], where: whereabouts(problem), ways });
   }
 
   async function afresh() {
@@ -86,6 +93,26 @@ export function door({ bridge }, compute) {
     waiting = null;
     const { summary } = now();
     if (summary) await ask(summary).catch(failed);
+  }
+
+  async function goOn() {
+    unsay("#hint");
+    put({ phase: "working" });
+    await bridge.resume().catch(failed);
+  }
+
+  /** Another worker, the same recording, the same choices. */
+  async function again() {
+    unsay("#problem");
+    put({ phase: "reading", progress: { stage: "reading", done: 0, of: 1 } });
+    const { recipe } = now();
+    try {
+      const summary = await bridge.revive();
+      put({ phase: summary ? "working" : "empty", progress: null });
+      if (summary && recipe) change(recipe);
+    } catch (thrown) {
+      failed(thrown);
+    }
   }
 
   return {
@@ -104,9 +131,9 @@ export function door({ bridge }, compute) {
         const text = await file.text();
         if (/"teasel_weights"\s*:/.test(text)) return say("#hint", { title: `${file.name} holds weights`, text: ["This version applies weights in the terminal: ", make("code", {}, `teasel apply ${file.name} RECORDING --out DIR`), "."], ways: [{ label: "Close", act: () => unsay("#hint") }] });
         const recipe = bridge.parseRecipe(text);
-        if (!now().summary) return wait(recipe, `${file.name} is open`);
-        put({ recipe, phase: "working", stale: Boolean(now().sheet?.stronger.length) });
-        compute();
+        if (!now().summary) return wait({ recipe, link: null }, `${file.name} is open`);
+        unsay("#hint");
+        change(recipe);
       } catch (thrown) {
         const problem = asProblem(thrown);
         failed({ ...problem, file: problem.file ?? file.name });
@@ -116,27 +143,29 @@ export function door({ bridge }, compute) {
     begin() {
       try {
         const found = recipeAtStart(bridge);
-        if (found) wait(found.recipe, found.from === "tab" ? "Your choices are kept" : "The link brought choices along");
+        if (found) wait(found, found.link ? "The link brought choices along" : "Your choices are kept");
       } catch (thrown) {
         failed(thrown);
       }
     },
     async stop() {
+      const { summary, recipe } = now();
       await bridge.stop();
-      put({ phase: now().summary ? (now().recipe ? "ready" : "choosing") : "empty", progress: null });
+      put({ phase: !summary ? "empty" : recipe ? "ready" : "choosing", progress: null });
+      if (summary && recipe) say("#hint", { title: "Stopped", text: ["What was computed before stays on the sheet."], ways: [{ label: "Go on", main: true, act: () => void goOn() }, { label: "Leave it", act: () => unsay("#hint") }] });
     },
     died() {
       put({ phase: "error", progress: null });
-      const again = last;
+      const { recipe, summary } = now();
       say("#problem", {
         title: "The computation stopped; your choices are kept",
         text: ["The browser ended the worker, most likely for memory. Fewer channels or a lower sampling rate need less."],
-        ways: [...(again ? [{ label: "Try again as it was", main: true, act: () => ((waiting = now().recipe), void open(again)) }] : []), ...(now().recipe ? [{ label: "Take recipe.json", bare: true, act: takeRecipe }] : [])],
+        ways: [{ label: "Try again as it was", main: true, act: () => void again() }, ...(summary && recipe ? [{ label: "Take recipe.json", bare: true, act: takeRecipe }] : [])],
       });
     },
   };
 
-  /** @param {Recipe} recipe @param {string} title */
+  /** @param {Waiting} recipe @param {string} title */
   function wait(recipe, title) {
     waiting = recipe;
     say("#hint", {
@@ -147,10 +176,3 @@ export function door({ bridge }, compute) {
   }
 }
 
-/** Events that a link left out are the recording's most frequent ones. @param {Recipe} recipe @param {Summary} summary @returns {Recipe} */
-function completed(recipe, summary) {
-  const next = structuredClone(recipe);
-  const byCount = Object.entries(summary.recording.events).sort((a, b) => b[1] - a[1] || (a[0] < b[0] ? -1 : 1)).map(([name]) => name);
-  for (const side of /** @type {const} */ (["signal", "reference"])) if (next.contrast[side].event === "") next.contrast[side].event = byCount[0] ?? "";
-  return next;
-}

@@ -4,8 +4,14 @@ import { speak } from "./readings.js";
 import { follow, now } from "./state.js";
 
 /** Work that ends sooner than this goes unmentioned. */
-const PATIENCE_MS = 450;
+const [PATIENCE_MS, READING_PATIENCE_MS] = [450, 180];
 const REST_MS = 300;
+
+/** @type {Record<string, string>} */
+const WORDS = {
+  reading: "Reading the recording", making: "Making the recording", preparing: "Preparing the channels", windows: "Covariances of the windows",
+  fitting: "Looking for what differs", "held-out": "Testing on trials that were held out", permuting: "Permuting", curve: "Ratio against the dimensions kept",
+};
 
 let began = 0;
 let stage = "";
@@ -36,21 +42,21 @@ export function mountProgress(stop) {
 /** @param {HTMLElement} box */
 function show(box) {
   const { progress, phase } = now();
-  const long = performance.now() - began > PATIENCE_MS;
-  box.classList.toggle("at-rest", !progress || (!long && phase !== "reading"));
+  const long = performance.now() - began > (phase === "reading" ? READING_PATIENCE_MS : PATIENCE_MS);
+  box.classList.toggle("at-rest", !progress || !long);
   if (!progress) return;
   const part = progress.of > 0 ? (100 * progress.done) / progress.of : 0;
   box.style.setProperty("--part", part.toFixed(1));
   find("h3", box).textContent = heading();
   find(".shown .quiet", box).textContent = rest(part);
-  if (long) speak(`${progress.stage}, please wait`);
+  if (long) speak(WORDS[progress.stage] ?? "");
 }
 
 function heading() {
   const { progress } = now();
   if (!progress) return "";
-  const numbers = progress.of > 1 && progress.of < 1e6 ? `: ${count(progress.done)} of ${count(progress.of)}` : progress.of > 1 ? `: ${Math.floor((100 * progress.done) / progress.of)} %` : "";
-  return progress.stage.charAt(0).toUpperCase() + progress.stage.slice(1) + numbers;
+  const numbers = progress.stage === "permuting" ? `: ${count(progress.done)} of ${count(progress.of)}` : progress.of > 1 ? `: ${Math.floor((100 * progress.done) / progress.of)} %` : "";
+  return (WORDS[progress.stage] ?? "Working") + numbers;
 }
 
 /** @param {number} part */

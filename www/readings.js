@@ -41,15 +41,10 @@ function writeAll() {
  * @param {import("./types").Span[] | null} but
  */
 function writeBut(place, but) {
-  const doubt = place.parentElement?.querySelector(section(place) === "so-far" ? ".sure" : ".but");
+  const doubt = place.parentElement?.querySelector(".but");
   if (!(doubt instanceof HTMLElement)) return;
   doubt.hidden = !but;
   if (but) writeSpans(doubt, but);
-}
-
-/** @param {Element} place */
-function section(place) {
-  return place.id.replace("reading-", "");
 }
 
 /** Says one sentence to screen readers. @param {string} sentence */

@@ -10,15 +10,14 @@ const KEY = "teasel-recipe";
 /**
  * The recipe that the page was opened with: from the link, or, where the link is this tab's own, from the tab's memory, which knows the names too.
  * @param {Bridge} bridge
- * @returns {{ recipe: Recipe, from: "link" | "tab", link: any } | null}
+ * @returns {{ recipe: Recipe, link: string | null } | null} `link` is the text of a link that may have left names to the recording
  */
 export function recipeAtStart(bridge) {
   const text = /^#recipe=(.+)$/.exec(location.hash)?.[1];
   if (!text) return null;
   const kept = remembered(bridge);
-  if (kept && (bridge.linkEncode(kept, false) === text || bridge.linkEncode(kept, true) === text)) return { recipe: kept, from: "tab", link: null };
-  const link = bridge.linkDecode(text);
-  return { recipe: link.recipe, from: "link", link };
+  if (kept && (bridge.linkEncode(kept, false) === text || bridge.linkEncode(kept, true) === text)) return { recipe: kept, link: null };
+  return { recipe: bridge.linkDecode(text).recipe, link: text };
 }
 
 /** @param {Bridge} bridge @returns {Recipe | null} */

@@ -5,7 +5,7 @@
 
 /** @type {State} */
 const EMPTY = {
-  phase: "empty", source: null, summary: null, recipe: null, why: "", sheet: null, readings: [], figures: [],
+  phase: "empty", source: null, summary: null, recipe: null, why: "", sheet: null, readings: [], figures: [], drawn: {},
   generation: 0, stale: false, progress: null, taken: 0,
 };
 

@@ -21,6 +21,7 @@ export function mountTakeaway(app, failed) {
   follow((state, before) => {
     if (state.recipe !== before.recipe) showLink(app);
     if (state.sheet !== before.sheet) for (const place of document.querySelectorAll("[data-size]")) place.textContent = "";
+    if (state.phase !== before.phase && state.phase === "ready") void showMethods(app);
     const whole = Boolean(state.sheet?.stronger.length) && !state.stale;
     for (const button of document.querySelectorAll("button[data-takeaway]")) {
       const needs = button.getAttribute("data-takeaway") === "recipe" ? Boolean(state.recipe) : whole;
@@ -39,6 +40,13 @@ async function take(app, button) {
   const place = document.querySelector(`[data-size="${kind}"]`);
   if (place) place.textContent = size(bytes.length);
   put({ taken: now().taken + 1 });
+}
+
+/** @param {App} app */
+async function showMethods(app) {
+  const text = await app.bridge.takeaway("methods").then((bytes) => new TextDecoder().decode(bytes), () => "");
+  find(".methods-out").hidden = text === "";
+  find("#methods").textContent = text;
 }
 
 /** Every figure of the sheet as PNG; the core adds the SVG files itself. @param {App} app */

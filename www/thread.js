@@ -30,26 +30,19 @@ function show(step, said) {
     knot.style.setProperty("--part", String(said.percent ?? 0));
     if (place.localName !== "li") continue;
     find(".answer", place).textContent = said.answer;
+    find("a", place).setAttribute("aria-current", said.knot === "now" || said.knot === "work" ? "step" : "false");
     find(".aside", place).textContent = said.percent === undefined ? WORDS[said.knot] : `working, ${Math.round(said.percent)} %`;
   }
 }
 
-/** Which step a stage of the work belongs to. @param {string} stage @returns {StepName} */
-export function stepOf(stage) {
-  const word = stage.toLowerCase();
-  if (/read|open|decod/.test(word)) return "recording";
-  if (/prepar|filter|channel|resampl/.test(word)) return "channels";
-  if (/window|covar/.test(word)) return "windows";
-  if (/compress|curve|keep/.test(word)) return "compression";
-  if (/permut|held|fold|evidence|bootstrap|compar/.test(word)) return "evidence";
-  return "components";
-}
+/** Which step a stage of the work belongs to. @type {Record<string, StepName>} */
+const STEP_OF = { reading: "recording", preparing: "channels", windows: "windows", fitting: "components", "held-out": "evidence", permuting: "evidence", curve: "compression" };
 
 /** @param {StepName} step @param {State} state @returns {Answer} */
 function answer(step, state) {
   const { progress } = state;
   const said = settled(step, state);
-  if (progress && state.phase !== "choosing" && stepOf(progress.stage) === step && said.knot !== "now") {
+  if (progress && state.phase !== "choosing" && STEP_OF[progress.stage] === step && said.knot !== "now") {
     const percent = progress.of > 0 ? (100 * progress.done) / progress.of : 0;
     return { knot: "work", answer: said.answer || `${Math.round(percent)} %`, percent };
   }

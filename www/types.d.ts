@@ -136,6 +136,7 @@ export interface SheetNews {
   sheet: Sheet;
   readings: Reading[];
   figures: string[];
+  drawn?: Record<string, Figure>;
   generation: number;
   finished?: boolean;
 }
@@ -154,6 +155,9 @@ export interface State {
   sheet: Sheet | null;
   readings: Reading[];
   figures: string[];
+  /** Figures that came along with the newest sheet. */
+  drawn: Record<string, Figure>;
+  /** Counts the choices that came into force; a sheet carries the count of its own. */
   generation: number;
   /** The sheet answers an older recipe than `recipe`. */
   stale: boolean;
@@ -175,12 +179,15 @@ export interface Bridge {
   open(files: File[], options: { salvage: boolean }): Promise<Summary>;
   openDemo(which: string): Promise<Summary>;
   propose(): Promise<{ recipe: Recipe; why: string } | null>;
-  setRecipe(recipe: Recipe): void | Promise<void>;
-  stop(): void | Promise<void>;
+  setRecipe(recipe: Recipe): Promise<number | null>;
+  stop(): Promise<unknown>;
+  resume(): Promise<unknown>;
+  revive(): Promise<Summary | null>;
+  watch(names: string[]): Promise<unknown>;
   on(name: string, listener: (news: any) => void): void;
   figure(name: string): Promise<Figure | null>;
   traces(from_s: number, seconds: number, channels: number[]): Promise<Figure>;
-  takeaway(kind: string, extras?: { name: string; bytes: Uint8Array }[]): Promise<Uint8Array>;
+  takeaway(kind: string, extras?: { name: string; bytes: Uint8Array<ArrayBuffer> }[]): Promise<Uint8Array<ArrayBuffer>>;
   draw(canvas: HTMLCanvasElement, figure: Figure, options: DrawOptions): void;
   figureHeight(figure: Figure, width: number): number;
   plotBox(figure: Figure, width: number, height: number): PlotBox | null;
@@ -188,7 +195,9 @@ export interface Bridge {
   table(figure: Figure): Table;
   parseRecipe(text: string): Recipe;
   linkEncode(recipe: Recipe, withNames: boolean): string;
-  linkDecode(text: string): { recipe: Recipe };
+  recipeText(recipe: Recipe): string;
+  linkDecode(text: string): { recipe: Recipe; events: [number, number] | null; without: string[] };
+  linkComplete(text: string, events: Record<string, number>): { recipe: Recipe; notes: string[] };
 }
 /** What every part of the sheet works with. */
 export interface App {

@@ -15,6 +15,8 @@ const PICKS = 4;
 const LEAST = 2;
 /** @type {PlotBox | null} */
 let plot = null;
+/** Ends of the time axis while an edge is dragged. @type {[number, number] | null} */
+let held = null;
 
 /** @param {App} app */
 export function mountWindows(app) {
@@ -33,6 +35,7 @@ export function mountWindows(app) {
   );
   const figure = figureSlot(app, "windows", {
     section: "windows", title: "Average time course", hint: "drag an edge, or move it with the arrow keys", label: "Power of the leading component around the event, with the two windows",
+    adjust,
     placed: (box) => ((plot = box), edges.over(box)),
   });
   const edges = edgesOver(figure.place, /** @type {[Side, End][]} */ ([["reference", "from_s"], ["reference", "to_s"], ["signal", "from_s"], ["signal", "to_s"]]).map(([side, end]) => ({
@@ -43,6 +46,10 @@ export function mountWindows(app) {
     step: sample,
     text: (value) => `${seconds(value)} seconds from ${window(side)?.event ?? "the event"}`,
     set: (value) => move(app, side, end, value),
+    held: (yes) => {
+      held = yes && plot ? [plot.x0, plot.x1] : null;
+      if (!yes) figure.draw();
+    },
   })));
   body.append(figure.root);
   follow((state, before) => {
@@ -53,6 +60,22 @@ export function mountWindows(app) {
     for (const field of fields) field.show();
     edges.lay();
   });
+}
+
+/**
+ * The edges as they are chosen, on a time axis that holds still while one of them is dragged.
+ * @param {any} course the core's figure `Course`
+ */
+function adjust(course) {
+  const [signal, reference] = [window("signal"), window("reference")];
+  if (!signal || !reference || course.events?.[0] !== signal.event || course.events?.[1] !== reference.event) return course;
+  const edges = { signal: [signal.from_s, signal.to_s], reference: [reference.from_s, reference.to_s] };
+  if (!held || !course.t_s.length) return { ...course, ...edges };
+  const [low, high] = held;
+  /** @type {number[]} */
+  const inside = [...course.t_s.keys()].filter((i) => course.t_s[i] > low && course.t_s[i] < high);
+  const within = (/** @type {(number | null)[]} */ list) => [null, ...inside.map((/** @type {number} */ i) => list[i]), null];
+  return { ...course, ...edges, t_s: [low, ...within(course.t_s).slice(1, -1), high], mean: within(course.mean), low: within(course.low), high: within(course.high) };
 }
 
 /** @param {Side} side */

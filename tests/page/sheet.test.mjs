@@ -1,0 +1,187 @@
+// The sheet as a user meets it: handles, keyboard, the dial, problems in words, the link, names and contrast, no overflow.
+import assert from "node:assert/strict";
+import { after, before, test } from "node:test";
+import { launch, openPage, reaches } from "./harness.mjs";
+
+/** @type {Awaited<ReturnType<typeof launch>>} */
+let browser;
+before(async () => void (browser = await launch()));
+after(() => browser.close());
+
+/** Opens the demo and waits until everything is computed. */
+async function demo(options = {}) {
+  const opened = await openPage(browser.context, options);
+  await opened.page.click('button[data-demo="watch"]');
+  assert.equal(await reaches(opened.page, ["ready", "error"], 120_000), "ready");
+  return opened;
+}
+
+/** The recipe that the address holds. @param {import("playwright-core").Page} page */
+async function recipeInLink(page) {
+  await page.waitForTimeout(400);
+  const text = await page.evaluate(() => location.hash.replace("#recipe=", ""));
+  return JSON.parse(Buffer.from(text, "base64url").toString("utf8"));
+}
+
+test("every handle that scripts depend on is there", async () => {
+  const { page, seen } = await openPage(browser.context);
+  const handles = ["input#recording[type=file][multiple]", "input#recipe-file[type=file]", "#message[role=status]", "#problem[role=alert]", "input#keep[type=range]", "button#stop", 'button[data-demo="watch"]'];
+  for (const kind of ["weights-json", "weights-csv", "results-json", "recipe", "report", "everything"]) handles.push(`button[data-takeaway="${kind}"]`);
+  for (const handle of handles) assert.equal(await page.locator(handle).count(), 1, handle);
+  assert.equal(await page.evaluate(() => document.documentElement.dataset.state), "empty");
+  assert.deepEqual(seen.errors, []);
+  await page.close();
+});
+
+test("the ledger counts nothing, because nothing is requested", async () => {
+  const { page, seen } = await demo();
+  assert.deepEqual(await page.locator("[data-ledger]").allTextContents(), ["0", "0", "0"]);
+  assert.deepEqual(seen.requests, []);
+  await page.close();
+});
+
+test("the ledger counts an attempt that the policy refuses", async () => {
+  const { page } = await openPage(browser.context);
+  await page.evaluate(() => fetch("https://teasel.invalid/").catch(() => undefined));
+  await page.waitForFunction(() => Number(document.querySelector("[data-ledger]")?.textContent) > 0);
+  await page.close();
+});
+
+test("arrow keys move a window's edge, field and recipe follow", async () => {
+  const { page } = await demo();
+  const edge = page.getByRole("slider", { name: "signal from" });
+  const field = page.getByRole("textbox", { name: /^signal from/ });
+  const start = Number(await edge.getAttribute("aria-valuenow"));
+  await edge.focus();
+  await page.keyboard.press("Shift+ArrowRight");
+  await page.keyboard.press("ArrowLeft");
+  const moved = start + 9 / 250;
+  assert.ok(Math.abs(Number(await edge.getAttribute("aria-valuenow")) - moved) < 1e-9);
+  assert.match((await edge.getAttribute("aria-valuetext")) ?? "", / seconds from buoy$/);
+  assert.equal(Number((await field.inputValue()).replace("−", "-")), Number(moved.toFixed(4)));
+  assert.ok(Math.abs((await recipeInLink(page)).contrast.signal.from_s - moved) < 1e-9);
+  assert.equal(await reaches(page, ["ready", "error"]), "ready");
+  await page.close();
+});
+
+test("an edge that meets its partner pushes it along", async () => {
+  const { page } = await demo();
+  const from = page.getByRole("slider", { name: "signal from" });
+  const to = page.getByRole("slider", { name: "signal to" });
+  await from.focus();
+  await page.keyboard.press("End");
+  assert.ok(Number(await from.getAttribute("aria-valuenow")) < Number(await to.getAttribute("aria-valuenow")));
+  await page.close();
+});
+
+test("the dial sets C, and C = 1 is out of reach", async () => {
+  const { page } = await demo();
+  const keep = page.locator("#keep");
+  await keep.focus();
+  await page.keyboard.press("Home");
+  assert.equal(await keep.inputValue(), "2");
+  assert.equal(await keep.getAttribute("min"), "2");
+  assert.equal(await reaches(page, ["ready", "error"]), "ready");
+  await page.waitForFunction(() => /^keep 2 of/.test(document.querySelector('li[data-step="compression"] .answer')?.textContent ?? ""));
+  assert.equal((await recipeInLink(page)).keep, 2);
+  await page.close();
+});
+
+test("the thumb of the dial stands under its value on the plot's axis", async () => {
+  const { page } = await demo();
+  const off = await page.evaluate(() => {
+    const keep = /** @type {HTMLInputElement} */ (document.querySelector("#keep"));
+    const canvas = /** @type {HTMLElement} */ (document.querySelector('[data-figure="keep"] canvas'));
+    return keep.getBoundingClientRect().right - canvas.getBoundingClientRect().right;
+  });
+  assert.ok(Math.abs(off) < 24, `the track ends ${off} px beside the plot`);
+  await page.close();
+});
+
+test("a broken file is a problem in words, and the page goes on", async () => {
+  const { page } = await openPage(browser.context);
+  await page.setInputFiles("#recording", { name: "<b>noise</b>.edf", mimeType: "", buffer: Buffer.from("0       not a recording at all") });
+  assert.equal(await reaches(page, ["error"]), "error");
+  const problem = page.locator("#problem");
+  assert.ok(await problem.isVisible());
+  assert.ok(((await problem.textContent()) ?? "").includes("<b>noise</b>.edf"), "the name is text, never markup");
+  assert.equal(await problem.locator("b").count(), 0);
+  await page.click('button[data-demo="watch"]');
+  assert.equal(await reaches(page, ["ready"], 120_000), "ready");
+  assert.ok(await problem.isHidden());
+  await page.close();
+});
+
+test("choices outlive a reload", async () => {
+  const { page } = await demo();
+  await page.locator("#keep").focus();
+  await page.keyboard.press("Home");
+  await recipeInLink(page);
+  await page.reload();
+  await page.waitForFunction(() => !document.querySelector("#hint")?.hasAttribute("hidden"));
+  await page.click('button[data-demo="watch"]');
+  assert.equal(await reaches(page, ["ready", "error"], 120_000), "ready");
+  assert.equal(await page.locator("#keep").inputValue(), "2");
+  await page.close();
+});
+
+test("a link names no events unless asked to", async () => {
+  const { page } = await demo();
+  assert.doesNotMatch(JSON.stringify(await recipeInLink(page)), /buoy/);
+  await page.check("#with-names");
+  assert.match(JSON.stringify(await recipeInLink(page)), /buoy/);
+  await page.close();
+});
+
+test("every control has a name, every heading its level, every slider its words", async () => {
+  const { page } = await demo();
+  const nameless = await page.evaluate(() => {
+    const shown = (/** @type {Element} */ node) => node.getClientRects().length > 0;
+    const name = (/** @type {Element} */ node) =>
+      node.getAttribute("aria-label") || node.textContent?.trim() || node.closest("label")?.textContent?.trim() || document.getElementById(node.getAttribute("aria-labelledby") ?? "")?.textContent || "";
+    return [...document.querySelectorAll("button, input, select, a, summary, [role=slider], [role=img], canvas, section")].filter((node) => shown(node) && !name(node)).map((node) => node.outerHTML.slice(0, 120));
+  });
+  assert.deepEqual(nameless, []);
+  const sliders = await page.locator("[role=slider]:visible").all();
+  assert.equal(sliders.length, 5);
+  for (const slider of sliders) for (const word of ["aria-valuenow", "aria-valuemin", "aria-valuemax", "aria-valuetext"]) assert.ok(await slider.getAttribute(word), word);
+  const unlabelled = await page.evaluate(() => [...document.querySelectorAll("[aria-labelledby]")].filter((node) => !document.getElementById(node.getAttribute("aria-labelledby") ?? "")).length);
+  assert.equal(unlabelled, 0);
+  await page.close();
+});
+
+for (const scheme of /** @type {const} */ (["light", "dark"]))
+  test(`text stands out from its ground in the ${scheme} scheme`, async () => {
+    const { page } = await openPage(browser.context);
+    await page.emulateMedia({ colorScheme: scheme });
+    const token = await page.evaluate(() => {
+      const style = getComputedStyle(document.documentElement);
+      return Object.fromEntries(["paper", "plate", "wash", "ink", "slate", "line", "signal", "reference"].map((name) => [name, style.getPropertyValue(`--${name}`).trim()]));
+    });
+    const least = [["ink", "paper"], ["ink", "wash"], ["slate", "paper"], ["slate", "plate"], ["slate", "wash"], ["signal", "paper"], ["signal", "wash"], ["reference", "paper"], ["reference", "plate"], ["paper", "ink"]];
+    for (const [text, ground] of least) assert.ok(contrast(token[text ?? ""], token[ground ?? ""]) >= 4.5, `${text} on ${ground}: ${contrast(token[text ?? ""], token[ground ?? ""]).toFixed(2)}`);
+    assert.ok(contrast(token.line, token.plate) >= 3, "borders of controls");
+    await page.close();
+  });
+
+for (const [width, height] of /** @type {const} */ ([[1280, 720], [820, 1180]]))
+  test(`nothing stands beyond the window at ${width} × ${height}`, async () => {
+    const { page } = await openPage(browser.context);
+    await page.setViewportSize({ width, height });
+    const beyond = () => page.evaluate(() => document.documentElement.scrollWidth - innerWidth);
+    assert.ok((await beyond()) <= 0, "first screen");
+    await page.click('button[data-demo="watch"]');
+    assert.equal(await reaches(page, ["ready", "error"], 120_000), "ready");
+    assert.ok((await beyond()) <= 0, "sheet");
+    await page.close();
+  });
+
+/** Contrast of two colours by WCAG 2.2. @param {string | undefined} a @param {string | undefined} b */
+function contrast(a, b) {
+  const light = (/** @type {string} */ hex) => {
+    const parts = [1, 3, 5].map((at) => parseInt(hex.slice(at, at + 2), 16) / 255).map((v) => (v <= 0.04045 ? v / 12.92 : ((v + 0.055) / 1.055) ** 2.4));
+    return 0.2126 * Number(parts[0]) + 0.7152 * Number(parts[1]) + 0.0722 * Number(parts[2]);
+  };
+  const [high, low] = [light(a ?? "#000000"), light(b ?? "#000000")].sort((x, y) => y - x);
+  return (Number(high) + 0.05) / (Number(low) + 0.05);
+}
