@@ -17,7 +17,7 @@ use teasel_core::evidence::permute::p_value;
 use teasel_core::recipe::{Contrast, EventWindow, Evidence, Keep, Measure, Recipe, Shrink};
 use teasel_core::recording::{MemorySource, OpenOptions, Recording, open};
 use teasel_core::sheet::{ComparatorKind, Component, Sheet};
-use teasel_tests::{close, close_all, largest, number, numbers, reference, rows};
+use teasel_tests::{Lcg, close, close_all, largest, number, numbers, reference, rows};
 
 fn matrix(value: &Value) -> DMatrix<f64> {
     let rows = rows(value);
@@ -74,10 +74,24 @@ fn fishers_iris() {
     }
 }
 
+/// The samples of a case, made anew from its seed (large cases do not store them).
+fn shrinkage_samples(case: &Value) -> Vec<Vec<f64>> {
+    let (n, p) = (number(&case["n"]) as usize, number(&case["p"]) as usize);
+    let mut lcg = Lcg(number(&case["seed"]) as u64);
+    let mut samples: Vec<Vec<f64>> = (0..n)
+        .map(|_| (0..p).map(|j| lcg.normal12() * (1.0 + j as f64)).collect())
+        .collect();
+    for row in &mut samples {
+        let common = lcg.normal12();
+        row.iter_mut().for_each(|x| *x += 0.5 * common + 3.0);
+    }
+    samples
+}
+
 #[test]
 fn shrinkage_equals_scikit_learns() {
     for case in reference("shrinkage")["cases"].as_array().unwrap() {
-        let samples = rows(&case["X"]);
+        let samples = shrinkage_samples(case);
         let (n, p) = (samples.len() as f64, samples[0].len());
         for (key, centred) in [("mean_removed", true), ("assume_centered", false)] {
             let means: Vec<f64> = (0..p)
@@ -89,17 +103,9 @@ fn shrinkage_equals_scikit_learns() {
                     }
                 })
                 .collect();
-            let fourth: f64 = samples
-                .iter()
-                .map(|r| {
-                    r.iter()
-                        .zip(&means)
-                        .map(|(x, m)| (x - m).powi(2))
-                        .sum::<f64>()
-                        .powi(2)
-                })
-                .sum();
-            let covariance = matrix(&case[key]["empirical_cov_ddof0"]);
+            let centred = DMatrix::from_fn(samples.len(), p, |i, j| samples[i][j] - means[j]);
+            let fourth: f64 = centred.row_iter().map(|r| r.norm_squared().powi(2)).sum();
+            let covariance = centred.transpose() * &centred / n;
             close(
                 key,
                 ledoit_wolf_of(&covariance, fourth, n),
