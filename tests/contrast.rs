@@ -17,6 +17,7 @@ use teasel_core::evidence::permute::p_value;
 use teasel_core::recipe::{Contrast, EventWindow, Evidence, Keep, Measure, Recipe, Shrink};
 use teasel_core::recording::{MemorySource, OpenOptions, Recording, open};
 use teasel_core::sheet::{ComparatorKind, Component, Sheet};
+use teasel_tests::calibration::{Noise, binomial_99, rejections};
 use teasel_tests::{Lcg, close, close_all, largest, number, numbers, reference, rows};
 
 fn matrix(value: &Value) -> DMatrix<f64> {
@@ -438,5 +439,21 @@ fn the_same_recipe_gives_the_same_sheet_and_a_detour_leaves_no_trace() {
             serde_json::to_string(analysis.sheet()).unwrap(),
             serde_json::to_string(&direct).unwrap()
         );
+    }
+}
+
+#[test]
+fn on_noise_alone_p_is_uniform() {
+    // The small form of `cargo xtask bench --null`; scipy.stats.binom.interval(0.99, 400, 0.05) = (10, 32).
+    assert_eq!(binomial_99(400), [10, 32]);
+    let count = 100;
+    let [low, high] = binomial_99(count);
+    for noise in [Noise::White, Noise::Pink] {
+        for hits in rejections(1, count, noise, Measure::Typical, 99) {
+            assert!(
+                (low..=high).contains(&hits),
+                "{hits} of {count} null recordings of {noise:?} noise reach p ≤ 0.05"
+            );
+        }
     }
 }
