@@ -42,13 +42,17 @@ fn main() -> std::io::Result<()> {
         .nth(1)
         .unwrap_or_else(|| "gallery".to_owned());
     let folder = Path::new(&folder);
-    for (part, channels, trials) in [("", 32, 40), ("many/", 128, 400)] {
+    for (part, channels, trials) in [("", 32, 40), ("many/", 128, 400), ("narrow/", 32, 40)] {
         let sheet = sample::sheet(channels, trials);
         let folder = folder.join(part);
         std::fs::create_dir_all(&folder)?;
         for (name, _) in teasel_figures::names(&sheet) {
             if let Some(figure) = teasel_figures::from_sheet(&sheet, &name) {
-                write(&folder, &name, &figure, width(&name))?;
+                let width = match part {
+                    "narrow/" => width(&name).min(320),
+                    _ => width(&name),
+                };
+                write(&folder, &name, &figure, width)?;
             }
         }
         let recording = sample::recording(channels);

@@ -32,6 +32,16 @@ pub struct Alike {
     pub asked: usize,
 }
 
+/// A component's line and its label.
+struct Labelled {
+    first: bool,
+    x: f64,
+    reach: usize,
+    said: String,
+    wide: f64,
+    left: bool,
+}
+
 impl Alike {
     pub(crate) fn of(sheet: &Sheet, end: End) -> Option<Self> {
         let test = sheet.permutation.as_ref()?;
@@ -68,6 +78,35 @@ impl Alike {
             .enumerate()
             .filter(|(_, v)| v.is_finite() && *v > 0.0);
         good.take(LINES).collect()
+    }
+
+    /// Rows for the lines, so that no label runs across another line: first those whose label stands right of them, from the
+    /// left, then the others from the right.
+    fn rows(&self, frame: &Frame) -> Vec<Labelled> {
+        let line = |(j, observed): (usize, f64)| {
+            let reach = self.reach(observed);
+            let said = format!("component {}: {}", j + 1, text::thousands(reach));
+            let wide = text::bold_width(&said, LABEL);
+            let x = frame.px(observed);
+            let left = x - 7.0 - wide > 0.0;
+            Labelled {
+                first: j == 0,
+                x,
+                reach,
+                said,
+                wide,
+                left,
+            }
+        };
+        let mut rows: Vec<Labelled> = self.lines().into_iter().map(line).collect();
+        let order = |l: &Labelled| if l.left { (1, -l.x) } else { (0, l.x) };
+        rows.sort_by(|a, b| {
+            order(a)
+                .0
+                .cmp(&order(b).0)
+                .then(order(a).1.total_cmp(&order(b).1))
+        });
+        rows
     }
 
     fn bins(&self, frame: &Frame) -> Vec<(f64, f64, usize)> {
@@ -135,26 +174,34 @@ impl Plot for Alike {
                 pen.rect((x0, top), (x1 - gap, frame.bottom), inks.area())?;
             }
         }
-        for (row, (j, observed)) in self.lines().into_iter().enumerate() {
-            let x = frame.px(observed);
-            let y = TOP + STEP * row as f64 + 4.0;
-            let reach = self.reach(observed);
-            let passes = (reach + 1) as f64 / (self.null.len() + 1) as f64 <= 0.05;
+        let rows = self.rows(&frame);
+        let top = |row: usize| TOP + STEP * row as f64 + 4.0;
+        for (row, line) in rows.iter().enumerate() {
+            let passes = (line.reach + 1) as f64 / (self.null.len() + 1) as f64 <= 0.05;
             let ink = if passes {
                 self.end.ink(&inks)
             } else {
                 inks.line
             };
-            pen.down(x, y - 7.0, frame.bottom, ink, 2.0)?;
-            let said = format!("component {}: {}", j + 1, text::thousands(reach));
-            let wide = text::width(&said, LABEL) * 1.06;
-            let (at, side) = if x - 7.0 - wide > 0.0 {
-                (x - 7.0, At::Right)
+            pen.down(line.x, top(row) - 7.0, frame.bottom, ink, 2.0)?;
+        }
+        for (row, line) in rows.iter().enumerate() {
+            let y = top(row);
+            let (at, side, from) = if line.left {
+                (line.x - 7.0, At::Right, line.x - 9.0 - line.wide)
             } else {
-                (x + 7.0, At::Left)
+                (line.x + 7.0, At::Left, line.x + 5.0)
             };
+            let to = from + line.wide + 4.0;
+            if rows[..row].iter().any(|o| o.x > from && o.x < to) {
+                pen.rect((from, y - 7.0), (to, y + 7.0), inks.plate)?;
+            }
             let word = Word::new(LABEL, inks.ink).at(side);
-            pen.word(&said, (at, y), if row == 0 { word.bold() } else { word })?;
+            pen.word(
+                &line.said,
+                (at, y),
+                if line.first { word.bold() } else { word },
+            )?;
         }
         let ticks = frame
             .x

@@ -32,6 +32,15 @@ pub struct PlotBox {
     pub y_log: bool,
 }
 
+/// Ticks where a ratio axis has room for them.
+const FINE_RATIOS: [f64; 27] = [
+    0.05, 0.1, 0.15, 0.2, 0.25, 0.3, 0.4, 0.5, 0.6, 0.7, 0.8, 0.9, 1.0, 1.2, 1.5, 2.0, 2.5, 3.0,
+    4.0, 5.0, 6.0, 8.0, 10.0, 15.0, 20.0, 30.0, 50.0,
+];
+const COARSE_RATIOS: [f64; 16] = [
+    0.0625, 0.125, 0.25, 0.5, 0.75, 1.0, 1.5, 2.0, 3.0, 4.0, 6.0, 8.0, 12.0, 16.0, 24.0, 32.0,
+];
+
 /// A range of numbers, by equal steps or by equal factors.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub(crate) struct Axis {
@@ -97,16 +106,18 @@ impl Axis {
         (first..=last).map(|i| i as f64 * step).collect()
     }
 
-    /// Ticks of ratios: powers of 4, of 2, with halves between, as dense as `most` allows.
+    /// Ticks of ratios: powers of 4, of 2, with round numbers between, as dense as `most` allows.
     pub fn ratio_ticks(&self, most: usize) -> Vec<f64> {
         let powers = |base: f64, between: &[f64]| -> Vec<f64> {
             let exponents = -12..=12;
             let all = exponents.flat_map(|e| between.iter().map(move |b| b * base.powi(e)));
             all.filter(|v| self.holds(*v)).collect()
         };
+        let listed =
+            |all: &[f64]| -> Vec<f64> { all.iter().copied().filter(|v| self.holds(*v)).collect() };
         let sets = [
-            powers(2.0, &[1.0, 1.25, 1.5, 1.75]),
-            powers(2.0, &[1.0, 1.5]),
+            listed(&FINE_RATIOS),
+            listed(&COARSE_RATIOS),
             powers(2.0, &[1.0]),
             powers(4.0, &[1.0]),
         ];
@@ -167,7 +178,10 @@ pub(crate) fn labels(ticks: &[f64]) -> Vec<String> {
     let halves = (step * 10f64.powi(decimals as i32)).fract().abs() > 1e-6;
     ticks
         .iter()
-        .map(|t| text::number(*t, decimals + usize::from(halves)))
+        .map(|t| match t.abs() < 1e-9 * step.abs() {
+            true => "0".to_owned(),
+            false => text::number(*t, decimals + usize::from(halves)),
+        })
         .collect()
 }
 
@@ -191,10 +205,17 @@ impl Frame {
     }
     /// Height of a value, kept inside the plot.
     pub fn py_inside(&self, y: f64) -> f64 {
-        if y.is_nan() {
-            return y;
+        if !y.is_finite() {
+            return f64::NAN;
         }
-        self.py(y).clamp(self.top, self.bottom)
+        self.py(y).max(self.top).min(self.bottom)
+    }
+    /// Place of a value, kept inside the plot.
+    pub fn px_inside(&self, x: f64) -> f64 {
+        if !x.is_finite() {
+            return f64::NAN;
+        }
+        self.px(x).min(self.right).max(self.left)
     }
     pub fn points(&self, x: &[f64], y: &[f64]) -> Vec<(f64, f64)> {
         let pairs = x.iter().zip(y);

@@ -13,7 +13,9 @@ const FULL_DB: f64 = 30.0;
 /// A bar is dark from this many decibels above the middle channel on.
 const DARK_DB: f64 = 10.0;
 const TOP: f64 = 28.0;
-const BARS: f64 = 34.0;
+const BARS: f64 = 32.0;
+/// Between the stems and the tallest bar; a value may stand there.
+const GAP: f64 = 20.0;
 
 /// See [`crate::Figure::Channels`].
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
@@ -78,7 +80,13 @@ impl Channels {
     }
 
     fn frame(&self, width: f64, height: f64) -> Frame {
-        let below = self.names_room() + 12.0 + if self.has_mains() { BARS + 14.0 } else { 0.0 };
+        let below = self.names_room()
+            + 12.0
+            + if self.has_mains() {
+                BARS + GAP + 4.0
+            } else {
+                0.0
+            };
         let sizes: Vec<f64> = self
             .stems
             .iter()
@@ -123,12 +131,13 @@ impl Channels {
     }
 
     fn mains<DB: DrawingBackend>(&self, pen: &Pen<DB>, frame: &Frame, pitch: f64) -> Drawn<DB> {
-        let base = frame.bottom + 10.0 + BARS;
+        let base = frame.bottom + GAP + BARS;
         let mut known: Vec<f64> = self.stems.iter().filter_map(|s| s.mains_db).collect();
         known.sort_by(f64::total_cmp);
         let middle = known.get(known.len() / 2).copied().unwrap_or(0.0);
         let full = known.last().copied().unwrap_or(0.0).max(FULL_DB);
         let half = (pitch * 0.3).clamp(0.5, 3.5);
+        let mut used = f64::NEG_INFINITY;
         for (i, stem) in self.stems.iter().enumerate() {
             let Some(db) = stem.mains_db.filter(|db| *db > 0.0) else {
                 continue;
@@ -140,7 +149,16 @@ impl Channels {
             } else {
                 pen.inks.area()
             };
-            pen.rect((x - half, base - db / full * BARS), (x + half, base), ink)?;
+            let top = base - db / full * BARS;
+            pen.rect((x - half, top), (x + half, base), ink)?;
+            if strong && x > used + 2.0 {
+                let said = text::decibels(db);
+                let wide = text::width(&said, SMALL);
+                let middle = x.min(pen.w - wide / 2.0);
+                let word = Word::new(SMALL, pen.inks.ink).at(At::Middle);
+                pen.word(&said, (middle, top - 8.0), word)?;
+                used = middle + wide;
+            }
         }
         pen.across(frame.left, frame.right, base, pen.inks.line, 1.0)?;
         let word = Word::new(TICK, pen.inks.slate).at(At::Right);
@@ -149,12 +167,7 @@ impl Channels {
             .map_or("mains".to_owned(), |hz| format!("{} Hz", text::short(hz)));
         pen.word(&hz, (LEFT - 9.0, base - 30.0), word)?;
         pen.word("excess", (LEFT - 9.0, base - 16.0), word)?;
-        let top = known.last().copied().unwrap_or(0.0);
-        pen.word(
-            &text::decibels(top),
-            (pen.w - RIGHT, base - BARS - 3.0),
-            Word::new(SMALL, pen.inks.slate).at(At::Right),
-        )
+        Ok(())
     }
 
     fn names<DB: DrawingBackend>(
@@ -201,7 +214,7 @@ impl Plot for Channels {
         let mut below = frame.bottom;
         if self.has_mains() {
             self.mains(pen, &frame, pitch)?;
-            below += 10.0 + BARS;
+            below += GAP + BARS;
         } else {
             pen.across(frame.left, frame.right, below, pen.inks.line, 1.0)?;
         }
@@ -209,7 +222,13 @@ impl Plot for Channels {
     }
 
     fn height(&self, _width: u32) -> u32 {
-        let below = self.names_room() + 12.0 + if self.has_mains() { BARS + 14.0 } else { 0.0 };
+        let below = self.names_room()
+            + 12.0
+            + if self.has_mains() {
+                BARS + GAP + 4.0
+            } else {
+                0.0
+            };
         (TOP + 150.0 + below) as u32
     }
 

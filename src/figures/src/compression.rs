@@ -8,9 +8,9 @@ use plotters_backend::DrawingBackend;
 use serde::{Deserialize, Serialize};
 use teasel_core::sheet::Sheet;
 
-const TOP: f64 = 24.0;
+const TOP: f64 = 40.0;
 /// Room left of C = 1, so that the hatching over it does not touch the labels.
-const FIRST: f64 = 9.0;
+const FIRST: f64 = 7.0;
 
 /// See [`crate::Figure::Eigenvalues`].
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
@@ -65,11 +65,7 @@ fn frame(width: f64, top: f64, bottom: f64, rank: usize, y: Axis) -> Frame {
 fn kept_ground<DB: DrawingBackend>(pen: &Pen<DB>, frame: &Frame, kept: usize) -> Drawn<DB> {
     let pitch = (frame.right - frame.left) / (frame.x.high - frame.x.low);
     let edge = (frame.px(kept as f64) + pitch / 2.0).min(frame.right);
-    pen.rect(
-        (frame.left, frame.top - 6.0),
-        (edge, frame.bottom),
-        pen.inks.wash,
-    )
+    pen.rect((frame.left, frame.top), (edge, frame.bottom), pen.inks.wash)
 }
 
 /// A word beside the line at C, on the side where there is room.
@@ -77,28 +73,24 @@ fn beside_line<DB: DrawingBackend>(
     pen: &Pen<DB>,
     frame: &Frame,
     kept: usize,
-    rows: &[(&str, bool)],
-    top: f64,
+    strong: &str,
+    plain: &str,
 ) -> Drawn<DB> {
     let x = frame.px(kept as f64);
-    let wide = rows
-        .iter()
-        .map(|r| text::width(r.0, LABEL))
-        .fold(0.0, f64::max);
-    let right = x + 10.0 + wide < frame.right;
-    let (at, side) = if right {
-        (x + 10.0, At::Left)
+    let y = frame.top - 14.0;
+    let (bold, rest) = (
+        text::bold_width(strong, LABEL) + 7.0,
+        text::width(plain, LABEL),
+    );
+    let right = x + 8.0 + bold + rest < pen.w;
+    let word = Word::new(LABEL, pen.inks.ink);
+    if right {
+        pen.word(strong, (x + 8.0, y), word.bold())?;
+        pen.word(plain, (x + 8.0 + bold, y), word)
     } else {
-        (x - 10.0, At::Right)
-    };
-    for (i, (said, bold)) in rows.iter().enumerate() {
-        let y = top + 16.0 * i as f64;
-        let left = if right { at - 3.0 } else { at - wide - 3.0 };
-        let _ = left;
-        let word = Word::new(LABEL, pen.inks.ink).at(side);
-        pen.word(said, (at, y), if *bold { word.bold() } else { word })?;
+        pen.word(strong, (x - 15.0 - rest, y), word.bold().at(At::Right))?;
+        pen.word(plain, (x - 8.0, y), word.at(At::Right))
     }
-    Ok(())
 }
 
 impl Eigenvalues {
@@ -132,7 +124,7 @@ impl Eigenvalues {
         let low = (low / 10.0).floor() * 10.0;
         frame(
             width,
-            TOP + 4.0,
+            TOP,
             height - 4.0,
             self.rank,
             Axis::linear(low.min(-10.0) - 2.0, 1.0),
@@ -177,20 +169,15 @@ impl Plot for Eigenvalues {
             }
         }
         let x = frame.px(self.kept as f64);
-        pen.down(x, frame.top - 6.0, pen.h, inks.ink, 1.5)?;
+        pen.down(x, frame.top - 20.0, pen.h, inks.ink, 1.5)?;
         let keep = format!("keep {}", self.kept);
-        let share = format!("{} % of the variance", text::number(100.0 * self.share, 1));
-        beside_line(
-            pen,
-            &frame,
-            self.kept,
-            &[(&keep, true), (&share, false)],
-            frame.top + 14.0,
-        )
+        let share = text::number(100.0 * self.share, 1);
+        let share = format!("{share} % of the variance");
+        beside_line(pen, &frame, self.kept, &keep, &share)
     }
 
     fn height(&self, _width: u32) -> u32 {
-        144
+        156
     }
 
     fn plot_box(&self, width: f64, height: f64) -> Option<PlotBox> {
@@ -248,8 +235,8 @@ impl Keep {
             .chain(&self.held_out)
             .chain(&self.fitted);
         let (low, high) = range(all.filter(|v| **v > 0.0)).unwrap_or((0.5, 2.0));
-        let y = Axis::log(low.min(0.9) / 1.06, high.max(1.1) * 1.08);
-        frame(width, TOP + 8.0, height - 24.0, self.rank, y)
+        let y = Axis::log(low.min(0.8) / 1.06, high.max(1.1) * 1.08);
+        frame(width, TOP, height - 24.0, self.rank, y)
     }
 
     fn at_kept(&self) -> Option<f64> {
@@ -278,7 +265,14 @@ impl Plot for Keep {
         pen.dashed_rule((frame.left, one), (frame.right, one), inks.line, (2.0, 3.0))?;
         pen.word(
             "1× = no difference",
-            (frame.right, one + 9.0),
+            (
+                frame.right,
+                if frame.bottom - one > 19.0 {
+                    one + 9.0
+                } else {
+                    one - 9.0
+                },
+            ),
             slate.at(At::Right),
         )?;
         let c: Vec<f64> = self.keep.iter().map(|c| *c as f64).collect();
@@ -305,11 +299,11 @@ impl Plot for Keep {
             }
         }
         let x = frame.px(self.kept as f64);
-        pen.down(x, 0.0, frame.bottom + 24.0, inks.ink, 1.5)?;
+        pen.down(x, frame.top - 20.0, frame.bottom + 24.0, inks.ink, 1.5)?;
         if let Some(ratio) = self.at_kept() {
             pen.dot((x, frame.py_inside(ratio)), 4.5, inks.ink)?;
             let said = format!("{} at C = {}", text::factor(ratio), self.kept);
-            beside_line(pen, &frame, self.kept, &[(&said, true)], frame.top + 4.0)?;
+            beside_line(pen, &frame, self.kept, &said, "")?;
         }
         let most = ((frame.right - frame.left) / 60.0).max(2.0) as usize;
         let mut ticks: Vec<f64> = frame
@@ -327,7 +321,7 @@ impl Plot for Keep {
     }
 
     fn height(&self, _width: u32) -> u32 {
-        200
+        206
     }
 
     fn plot_box(&self, width: f64, height: f64) -> Option<PlotBox> {

@@ -156,25 +156,24 @@ impl Course {
         ];
         let mut used: Vec<(f64, f64)> = vec![self.event_span(frame)];
         for (said, [from, to], wash, ink, top, bottom, event) in sides {
-            let x0 = frame.px(from).clamp(frame.left, frame.right);
-            let x1 = frame.px(to).clamp(frame.left, frame.right);
+            let x0 = frame.px_inside(from);
+            let x1 = frame.px_inside(to);
             pen.rect((x0, top), (x1, bottom), wash)?;
             let said = if self.one_event() {
                 said.to_owned()
             } else {
                 format!("{said}, from {}", text::fit(event, LABEL, 80.0))
             };
-            let half = text::width(&said, LABEL) / 2.0 + 2.0;
+            let half = text::bold_width(&said, LABEL) / 2.0 + 2.0;
             let free = |x: f64, used: &[(f64, f64)]| {
                 used.iter().all(|(a, b)| x + half <= *a || x - half >= *b)
             };
             let centre = (x0 + x1) / 2.0;
             let shifts = [0.0, 1.0, -1.0, 2.0, -2.0, 3.0, -3.0, 4.0, -4.0];
             let tries = shifts.map(|s| {
-                (centre + s * half * 0.6).clamp(
-                    frame.left + half,
-                    (frame.right - half).max(frame.left + half),
-                )
+                (centre + s * half * 0.6)
+                    .min(frame.right - half)
+                    .max(frame.left + half)
             });
             let x = tries
                 .into_iter()
@@ -212,7 +211,7 @@ impl Course {
             }
             pen.down(at, frame.top, frame.bottom + 4.0, ink, 1.5)?;
             let said = format!("{} s", text::number(t, 2));
-            let half = text::width(&said, TICK) / 2.0 + 1.0;
+            let half = text::bold_width(&said, TICK) / 2.0 + 1.0;
             let x = at.max(used + half + 4.0);
             pen.word(
                 &said,
@@ -263,7 +262,7 @@ impl Plot for Course {
         if !self.mean.is_empty() {
             let ticks = frame
                 .y
-                .ticks(((frame.bottom - frame.top) / 30.0).max(2.0) as usize);
+                .ticks(((frame.bottom - frame.top) / 24.0).max(2.0) as usize);
             frame.y_grid(pen, &ticks, &axis::labels(&ticks))?;
             let zero = frame.py(0.0);
             pen.across(

@@ -1,4 +1,5 @@
 //! The head seen from above, and the channels on it.
+use crate::look::see_through;
 use crate::pen::{At, Drawn, Pen, Point, SMALL, Word};
 use crate::table::{Table, cell};
 use crate::topography::flat;
@@ -139,15 +140,67 @@ impl ChannelsMap {
         })
     }
 
+    /// Names that find room inside the head; those of channels with a mark of their own always.
+    fn names<DB: DrawingBackend>(
+        &self,
+        pen: &Pen<DB>,
+        centre: Point,
+        radius: f64,
+        dots: &[Point],
+        r: f64,
+    ) -> Drawn<DB> {
+        let mut places = Places::around(dots, r + 1.0);
+        let mut only_words = Places::around(&[], 0.0);
+        let odd = |i: &usize| self.spots[*i].mark != Mark::Dot;
+        let crowded = self.spots.len() as f64 > 40.0 * (radius / 105.0).powi(2);
+        let mut order: Vec<usize> = (0..self.spots.len())
+            .filter(|i| odd(i) || !crowded)
+            .collect();
+        order.sort_by_key(|i| !odd(i));
+        for i in order {
+            let ink = if odd(&i) {
+                pen.inks.ink
+            } else {
+                pen.inks.slate
+            };
+            let said = text::fit(
+                &self.spots[i].name,
+                SMALL,
+                if odd(&i) { 90.0 } else { 34.0 },
+            );
+            let size = (text::width(&said, SMALL), 11.0);
+            let gap = if odd(&i) { r + 2.0 } else { r };
+            let inside = |area: &Area| within(area, centre, radius - 1.0);
+            let on_sheet = |area: &Area| {
+                area[0] >= 0.0 && area[2] <= pen.w && area[1] >= 0.0 && area[3] <= pen.h
+            };
+            let mut place = places.near(dots[i], size, gap, inside);
+            if odd(&i) && place.is_none() {
+                place = only_words.near(dots[i], size, gap, on_sheet);
+                if let Some((_, _, area)) = place {
+                    let ground = see_through(pen.inks.plate, 0.85);
+                    pen.rect((area[0], area[1]), (area[2], area[3]), ground)?;
+                }
+            }
+            if let Some((at, side, _)) = place {
+                pen.word(&said, at, Word::new(SMALL, ink).at(side))?;
+            }
+        }
+        Ok(())
+    }
+
     fn note(&self) -> Option<String> {
         let n = self.nowhere.len();
         (n > 0).then(|| format!("{} without a position", text::count(n, "channel")))
     }
 }
 
+/// Left, top, right, bottom.
+pub(crate) type Area = [f64; 4];
+
 /// Names beside dots, placed one after another where nothing stands yet.
 pub(crate) struct Places {
-    taken: Vec<[f64; 4]>,
+    taken: Vec<Area>,
 }
 
 impl Places {
@@ -158,15 +211,14 @@ impl Places {
         }
     }
 
-    /// A place for a word of this size near a dot: below, above, right or left of it.
+    /// A place for a word of this width and height near a dot: below, above, right or left of it, where `fits` holds.
     pub(crate) fn near(
         &mut self,
         (x, y): Point,
-        wide: f64,
-        high: f64,
+        (wide, high): (f64, f64),
         r: f64,
-        within: [f64; 4],
-    ) -> Option<(Point, At)> {
+        fits: impl Fn(&Area) -> bool,
+    ) -> Option<(Point, At, Area)> {
         let half = wide / 2.0;
         let tries = [
             ((x, y + r + high / 2.0 + 1.0), At::Middle, x - half),
@@ -176,20 +228,28 @@ impl Places {
         ];
         for (at, side, left) in tries {
             let mine = [left, at.1 - high / 2.0, left + wide, at.1 + high / 2.0];
-            let inside = mine[0] >= within[0]
-                && mine[1] >= within[1]
-                && mine[2] <= within[2]
-                && mine[3] <= within[3];
-            let apart = |o: &[f64; 4]| {
-                mine[0] >= o[2] || o[0] >= mine[2] || mine[1] >= o[3] || o[1] >= mine[3]
-            };
-            if inside && self.taken.iter().all(apart) {
+            let apart =
+                |o: &Area| mine[0] >= o[2] || o[0] >= mine[2] || mine[1] >= o[3] || o[1] >= mine[3];
+            if fits(&mine) && self.taken.iter().all(apart) {
                 self.taken.push(mine);
-                return Some((at, side));
+                return Some((at, side, mine));
             }
         }
         None
     }
+}
+
+/// Whether an area lies wholly inside a circle.
+pub(crate) fn within(area: &Area, centre: Point, radius: f64) -> bool {
+    let corners = [
+        (area[0], area[1]),
+        (area[2], area[1]),
+        (area[0], area[3]),
+        (area[2], area[3]),
+    ];
+    corners
+        .iter()
+        .all(|(x, y)| (x - centre.0).hypot(y - centre.1) <= radius)
 }
 
 impl Plot for ChannelsMap {
@@ -218,28 +278,7 @@ impl Plot for ChannelsMap {
         for (spot, at) in self.spots.iter().zip(&dots) {
             spot.mark.draw(pen, *at, r)?;
         }
-        let mut places = Places::around(&dots, r + 1.0);
-        let mut order: Vec<usize> = (0..self.spots.len()).collect();
-        order.sort_by_key(|i| self.spots[*i].mark == Mark::Dot);
-        for i in order {
-            let special = self.spots[i].mark != Mark::Dot;
-            let said = text::fit(
-                &self.spots[i].name,
-                SMALL,
-                if special { 90.0 } else { 34.0 },
-            );
-            let wide = text::width(&said, SMALL);
-            let within = [0.0, 0.0, pen.w, pen.h];
-            let gap = if special { r + 2.0 } else { r };
-            if let Some((at, side)) = places.near(dots[i], wide, 11.0, gap, within) {
-                let ink = if special {
-                    pen.inks.ink
-                } else {
-                    pen.inks.slate
-                };
-                pen.word(&said, at, Word::new(SMALL, ink).at(side))?;
-            }
-        }
+        self.names(pen, centre, radius, &dots, r)?;
         if let Some(note) = note {
             let word = Word::new(SMALL, pen.inks.slate).at(At::Middle);
             pen.word(&note, (pen.w / 2.0, pen.h - 8.0), word)?;

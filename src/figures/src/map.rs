@@ -1,11 +1,12 @@
 //! A component's pattern on the head, or in order of size where positions are missing.
-use crate::head::{NOSE, Places, outline};
-use crate::look::{Ramp, mix, step};
+use crate::head::{Area, NOSE, Places, outline, within};
+use crate::look::{Ramp, mix, see_through, step};
 use crate::pen::{At, Drawn, LABEL, Pen, Point, SMALL, TICK, Word};
 use crate::table::{Table, cell};
 use crate::topography::patches;
 use crate::weights::End;
 use crate::{Plot, nan, text};
+use plotters::style::RGBAColor;
 use plotters_backend::DrawingBackend;
 use serde::{Deserialize, Serialize};
 use teasel_core::describe::map::{EXTENT, MapGrid};
@@ -170,42 +171,70 @@ impl Map {
             let ink = pen.inks.on(ground);
             pen.ring(*at, 4.0, ink, 1.6, ground)?;
             let said = text::fit(&self.names[*i], LABEL, r * 0.9);
-            let wide = text::width(&said, LABEL) * 1.05;
+            let size = (text::bold_width(&said, LABEL), 14.0);
             let mut places = Places::around(&[*at], 5.0);
-            let within = [
-                centre.0 - r * 0.92,
-                centre.1 - r,
-                centre.0 + r * 0.92,
-                centre.1 + r,
-            ];
-            if let Some((spot, side)) = places.near(*at, wide, 14.0, 5.0, within) {
-                self.tag(pen, &said, spot, side, wide)?;
+            if let Some((spot, side, area)) =
+                places.near(*at, size, 5.0, |a| within(a, centre, r - 2.0))
+            {
+                let from = |x: f64, y: f64| {
+                    self.at(
+                        (x - centre.0) / r * self.radius,
+                        (centre.1 - y) / r * self.radius,
+                    )
+                };
+                self.tag(pen, &said, spot, side, area, |x, y| {
+                    ramp[step(from(x, y), limit)]
+                })?;
             }
         }
         Ok(())
     }
 
-    /// The name at the largest channel, on a ground of its own so that it reads over any band.
+    /// The grid's value nearest to a point of the plane.
+    fn at(&self, x: f64, y: f64) -> f64 {
+        let index = |v: f64| {
+            ((v + EXTENT) / (2.0 * EXTENT) * (SIDE - 1) as f64)
+                .round()
+                .clamp(0.0, (SIDE - 1) as f64) as usize
+        };
+        self.grid
+            .get(index(-y) * SIDE + index(x))
+            .copied()
+            .unwrap_or(f64::NAN)
+    }
+
+    /// The name at the largest channel: plain where one ink reads all along it, on a ground of its own elsewhere.
     fn tag<DB: DrawingBackend>(
         &self,
         pen: &Pen<DB>,
         said: &str,
         at: Point,
         side: At,
-        wide: f64,
+        area: Area,
+        under: impl Fn(f64, f64) -> RGBAColor,
     ) -> Drawn<DB> {
-        let left = match side {
-            At::Left => at.0,
-            At::Middle => at.0 - wide / 2.0,
-            At::Right => at.0 - wide,
-        };
-        let ground = crate::look::see_through(pen.inks.plate, 0.78);
+        let across = (0..=6).map(|i| area[0] + (area[2] - area[0]) * f64::from(i) / 6.0);
+        let inks: Vec<RGBAColor> = across
+            .flat_map(|x| [area[1], area[3]].map(|y| pen.inks.on(under(x, y))))
+            .collect();
+        let word = Word::new(LABEL, inks[0]).bold().at(side);
+        if inks.iter().all(|ink| *ink == inks[0]) {
+            return pen.word(said, at, word);
+        }
+        let ground = see_through(pen.inks.plate, 0.8);
         pen.rect(
-            (left - 2.0, at.1 - 8.0),
-            (left + wide + 2.0, at.1 + 8.0),
+            (area[0] - 2.0, area[1] - 1.0),
+            (area[2] + 2.0, area[3] + 1.0),
             ground,
         )?;
-        pen.word(said, at, Word::new(LABEL, pen.inks.ink).bold().at(side))
+        pen.word(
+            said,
+            at,
+            Word {
+                color: pen.inks.ink,
+                ..word
+            },
+        )
     }
 
     fn key<DB: DrawingBackend>(&self, pen: &Pen<DB>, ramp: &Ramp) -> Drawn<DB> {

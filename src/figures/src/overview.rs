@@ -189,17 +189,15 @@ impl Plot for Overview {
     fn draw<DB: DrawingBackend>(&self, pen: &Pen<DB>) -> Drawn<DB> {
         let frame = self.frame(pen.w);
         let word = Word::new(TICK, pen.inks.slate).at(At::Right);
-        let unit = text::fit(&self.unit, TICK, LEFT - 12.0);
-        pen.word("mean", (LEFT - 9.0, frame.bottom - 36.0), word)?;
-        pen.word("size,", (LEFT - 9.0, frame.bottom - 21.0), word)?;
-        pen.word(&unit, (LEFT - 9.0, frame.bottom - 6.0), word)?;
-        let high = frame.y.ticks(3).into_iter().rfind(|t| *t > 0.0);
-        if let Some(high) = high {
-            let y = frame.py(high);
+        pen.word("mean", (LEFT - 9.0, frame.bottom - 21.0), word)?;
+        pen.word("size", (LEFT - 9.0, frame.bottom - 6.0), word)?;
+        let ticks = frame.y.ticks(6);
+        let clear = |t: &f64| *t > 0.0 && frame.py(*t) < frame.bottom - 34.0;
+        if let Some(size) = ticks.into_iter().find(clear) {
+            let y = frame.py(size);
             pen.across(frame.left, frame.right, y, pen.inks.rule, 1.0)?;
-            if y < frame.bottom - 46.0 {
-                pen.word(&text::short(high), (LEFT - 9.0, y), word)?;
-            }
+            let said = format!("{} {}", text::short(size), self.unit);
+            pen.name(&said, (LEFT - 9.0, y), LEFT - 12.0, word)?;
         }
         self.hill(pen, &frame)?;
         let lanes_end = frame.bottom + 4.0 + LANE * self.lanes.len() as f64;

@@ -146,6 +146,9 @@ impl<'a, DB: DrawingBackend> Pen<'a, DB> {
 
     /// A filled rectangle on whole device pixels, at least one wide and high.
     pub fn rect(&self, from: Point, to: Point, color: RGBAColor) -> Drawn<DB> {
+        if ![from.0, from.1, to.0, to.1].iter().all(|v| v.is_finite()) {
+            return Ok(());
+        }
         let (x0, x1) = (self.edge(from.0.min(to.0)), self.edge(from.0.max(to.0)));
         let (y0, y1) = (self.edge(from.1.min(to.1)), self.edge(from.1.max(to.1)));
         let one = self.look.fine.max(1) as i32;

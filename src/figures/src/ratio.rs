@@ -72,7 +72,7 @@ impl Estimate {
         let Some(ratio) = self.ratio else {
             return Ok(());
         };
-        let x = |v: f64| frame.px(v).clamp(frame.left, frame.right);
+        let x = |v: f64| frame.px_inside(v);
         if let Some([low, high]) = self.interval {
             let line = if hollow { inks.line } else { ink };
             pen.across(x(low), x(high), y, line, 2.0)?;
@@ -86,7 +86,7 @@ impl Estimate {
 
     fn ticks<DB: DrawingBackend>(&self, pen: &Pen<DB>, frame: &Frame, y: f64) -> Drawn<DB> {
         for fold in self.folds.iter().filter(|f| f.is_finite() && **f > 0.0) {
-            let x = frame.px(*fold).clamp(frame.left, frame.right);
+            let x = frame.px_inside(*fold);
             pen.down(x, y, y + 6.0, pen.inks.slate, 1.0)?;
         }
         Ok(())

@@ -148,7 +148,7 @@ impl Spectrum {
         taken: &mut Vec<[f64; 4]>,
         word: Word,
     ) -> Drawn<DB> {
-        let wide = text::width(said, LABEL) + 8.0;
+        let wide = text::bold_width(said, LABEL) + 6.0;
         let upper = max_of(
             &self.signal_high,
             &self.reference_high,
@@ -239,7 +239,7 @@ impl Spectrum {
             let y = (frame.py_inside(top) - 2.0).max(12.0);
             pen.down(x, 2.0, y, inks.line, 1.0)?;
             let said = format!("{} Hz: {}", text::short(hz), text::decibels(difference));
-            let wide = text::width(&said, LABEL) * 1.06;
+            let wide = text::bold_width(&said, LABEL);
             let right = x + 6.0 + wide < pen.w;
             let (at, side) = if right {
                 (x + 6.0, At::Left)

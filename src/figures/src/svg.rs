@@ -44,6 +44,8 @@ fn finish(body: &str, width: u32, height: u32, figure: &Figure, look: &Look) -> 
     );
     let lean = drawn
         .replace(" opacity=\"1\"", "")
+        .replace("00000000000001\"", "\"")
+        .replace(".\" fill", "\" fill")
         .replace(&format!(" font-family=\"{face}\""), "")
         .replace(" font-weight=\"bold\"", " font-weight=\"600\"")
         .replace(" stroke=\"none\"", "")

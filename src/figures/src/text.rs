@@ -40,6 +40,11 @@ pub(crate) fn width(text: &str, size: f64) -> f64 {
     text.chars().map(em).sum::<f64>() * size
 }
 
+/// The same for the heavier weight, which runs wider.
+pub(crate) fn bold_width(text: &str, size: f64) -> f64 {
+    1.12 * width(text, size)
+}
+
 /// The text, cleaned, and cut with an ellipsis where it would be wider than `room` pixels.
 pub(crate) fn fit(text: &str, size: f64, room: f64) -> String {
     let text = clean(text);
@@ -92,13 +97,23 @@ pub(crate) fn short(value: f64) -> String {
     } else {
         (1.0 - size.log10().floor()).clamp(0.0, 6.0) as usize
     };
-    number(value, decimals)
+    trimmed(&number(value, decimals))
 }
 
-/// A signed number of decibels: "+6.1 dB".
+/// Without zeros that end a fraction.
+fn trimmed(long: &str) -> String {
+    if long.contains('.') {
+        long.trim_end_matches('0').trim_end_matches('.').to_owned()
+    } else {
+        long.to_owned()
+    }
+}
+
+/// A signed number of decibels, "+6.1 dB"; whole from 10 on.
 pub(crate) fn decibels(value: f64) -> String {
     let sign = if value > 0.0 { "+" } else { "" };
-    format!("{sign}{} dB", number(value, 1))
+    let decimals = usize::from(value.abs() < 9.95);
+    format!("{sign}{} dB", number(value, decimals))
 }
 
 /// A contrast ratio as a factor: "2.83×", "12.4×", "310×".
@@ -125,13 +140,8 @@ pub(crate) fn ratio_tick(ratio: f64) -> String {
     } else if ratio < 0.125 && near(1.0 / (1.0 / ratio).round()) {
         format!("1/{}×", (1.0 / ratio).round())
     } else {
-        format!("{}×", trimmed(ratio))
+        format!("{}×", trimmed(&number(ratio, 3)))
     }
-}
-
-fn trimmed(value: f64) -> String {
-    let long = number(value, 3);
-    long.trim_end_matches('0').trim_end_matches('.').to_owned()
 }
 
 /// Seconds of a recording as minutes and seconds, "1:30", or hours and minutes with "h" from an hour on.

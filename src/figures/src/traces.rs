@@ -152,6 +152,39 @@ fn spread(values: &[f64]) -> f64 {
     sizes.get(sizes.len() * 9 / 10).copied().unwrap_or(0.0)
 }
 
+/// The parts of a line between two heights; what lies beyond is left out rather than flattened.
+fn cut(points: &[(f64, f64)], high: f64, low: f64) -> Vec<(f64, f64)> {
+    let inside = |p: &(f64, f64)| p.1 >= high && p.1 <= low;
+    let mut out = Vec::with_capacity(points.len());
+    let mut last: Option<(f64, f64)> = None;
+    for p in points {
+        let crossing = |from: (f64, f64), to: (f64, f64)| {
+            let edge = if to.1 < high { high } else { low };
+            let share = (edge - from.1) / (to.1 - from.1);
+            (from.0 + share * (to.0 - from.0), edge)
+        };
+        let whole = p.0.is_finite() && p.1.is_finite();
+        match (last, whole) {
+            (Some(l), true) if inside(&l) != inside(p) => {
+                if inside(p) {
+                    out.push((f64::NAN, f64::NAN));
+                    out.push(crossing(*p, l));
+                } else {
+                    out.push(crossing(l, *p));
+                }
+            }
+            _ => {}
+        }
+        out.push(if whole && inside(p) {
+            *p
+        } else {
+            (f64::NAN, f64::NAN)
+        });
+        last = whole.then_some(*p);
+    }
+    out
+}
+
 impl Traces {
     fn frame(&self, width: f64, height: f64) -> Frame {
         Frame {
@@ -164,7 +197,7 @@ impl Traces {
         }
     }
 
-    /// Units with how many of them lie between two neighbouring lines: 2.5 times the spread of the middle channel.
+    /// Units with how many of them lie between two neighbouring lines: 3.4 times the spread of the middle channel.
     fn gains(&self) -> Vec<(String, f64)> {
         let mut gains: Vec<(String, f64)> = Vec::new();
         for line in &self.lines {
@@ -177,7 +210,7 @@ impl Traces {
                 .filter(|s| *s > 0.0)
                 .collect();
             let typical = median(&spreads);
-            let room = if typical > 0.0 { typical * 2.5 } else { 1.0 };
+            let room = if typical > 0.0 { typical * 3.4 } else { 1.0 };
             gains.push((line.unit.clone(), room));
         }
         gains
@@ -195,16 +228,9 @@ impl Traces {
             }
             let unit = gains.iter().find(|(unit, _)| *unit == line.unit);
             let scale = row / unit.map_or(1.0, |(_, room)| *room);
-            let place = |(t, v): (&f64, &f64)| {
-                let at = y - v * scale;
-                let at = if at.is_finite() {
-                    at.clamp(high, low)
-                } else {
-                    at
-                };
-                (frame.px(*t), at)
-            };
+            let place = |(t, v): (&f64, &f64)| (frame.px(*t), y - v * scale);
             let points: Vec<_> = self.t_s.iter().zip(&line.values).map(place).collect();
+            let points = cut(&points, high, low);
             let color = if line.faint {
                 pen.inks.area()
             } else {
@@ -220,7 +246,7 @@ impl Traces {
         let x = frame.right + 10.0;
         for (unit, room) in self.gains().iter().take(3) {
             let want = if row < 22.0 { room * 24.0 / row } else { *room };
-            let size = nice_step(want * 0.45);
+            let size = nice_step(want * 0.4);
             let tall = size / room * row;
             let said = format!("{} {unit}", text::short(size));
             let said = text::fit(&said, SMALL, pen.w - x + 6.0);

@@ -173,7 +173,7 @@ impl Plot for Trials {
                 &text::thousands(r),
                 (
                     frame.left - 7.0,
-                    y.clamp(frame.top + 6.0, frame.bottom - 6.0),
+                    y.min(frame.bottom - 6.0).max(frame.top + 6.0),
                 ),
                 word,
             )?;
@@ -185,7 +185,7 @@ impl Plot for Trials {
             .flatten()
             .zip([inks.reference, inks.signal])
         {
-            let x = window.map(|t| frame.px(t).clamp(frame.left, frame.right));
+            let x = window.map(|t| frame.px_inside(t));
             pen.rect((x[0], frame.bottom + 1.0), (x[1], frame.bottom + 5.0), ink)?;
         }
         let below = Frame {

@@ -67,7 +67,7 @@ impl Weights {
             end,
             names: names.clone(),
             values: component.filter.clone(),
-            unit: format!("1/{unit}"),
+            unit: format!("per {unit}"),
         })
     }
 
@@ -129,7 +129,7 @@ impl Plot for Weights {
     }
 
     fn table(&self) -> Table {
-        let weight = format!("weight_{}", self.unit);
+        let weight = format!("weight {}", self.unit);
         let mut table = Table::new(&["channel", &weight]);
         for (name, value) in self.names.iter().zip(&self.values) {
             table.row([text::clean(name), cell(*value)]);
