@@ -19,7 +19,7 @@ use crate::sheet::{ChannelCard, KeepCurve, Sheet};
 /// Largest C of `keep: "auto"`.
 const AUTO_LIMIT: usize = 150;
 /// Floating-point operations of one bite: about 20 ms in a browser.
-const BITE: f64 = 4e7;
+const BITE: f64 = 2e7;
 /// Values of C that `keep: "best"` chooses from go no further.
 const BEST_LIMIT: usize = 64;
 
