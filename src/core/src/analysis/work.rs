@@ -124,9 +124,9 @@ impl Work {
         if preparation {
             // Refuse before anything is dropped.
             let cards = inspect(recording, new);
-            Preparing::new(recording, &cards, new)?;
-            self.cards = None;
-            self.preparing = None;
+            let preparing = Preparing::new(recording, &cards, new)?;
+            self.cards = Some(cards);
+            self.preparing = Some(preparing);
             self.prepared = None;
         } else if let Some(prepared) = &self.prepared {
             check(&new.contrast, &recording.events, prepared.rate_hz)?;
@@ -190,6 +190,9 @@ impl Work {
                 curve: !curve_holds,
             },
         );
+        if preparation {
+            self.sheet.channels = self.cards.clone().unwrap_or_default();
+        }
         Ok(())
     }
 
