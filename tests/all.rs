@@ -1,5 +1,6 @@
 //! All checks; each room of the house has its module.
 
+mod contrast;
 mod describe;
 mod prepare;
 mod takeaway;

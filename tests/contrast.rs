@@ -17,7 +17,8 @@ use teasel_core::evidence::permute::p_value;
 use teasel_core::recipe::{Contrast, EventWindow, Evidence, Keep, Measure, Recipe, Shrink};
 use teasel_core::recording::{MemorySource, OpenOptions, Recording, open};
 use teasel_core::sheet::{ComparatorKind, Component, Sheet};
-use teasel_tests::{close, close_all, largest, number, numbers, reference, rows};
+use teasel_tests::calibration::{Noise, binomial_99, rejections};
+use teasel_tests::{Lcg, close, close_all, largest, number, numbers, reference, rows};
 
 fn matrix(value: &Value) -> DMatrix<f64> {
     let rows = rows(value);
@@ -57,25 +58,67 @@ fn the_generalised_eigenproblem_equals_that_of_60_digits() {
 fn fishers_iris() {
     let iris = reference("iris");
     let table = &iris["fisher_1936_table"];
-    let (values, _) = generalised_eigh(&matrix(&table["between_sscp_B"]), &matrix(&table["within_sscp_W"])).unwrap();
+    let (values, _) = generalised_eigh(
+        &matrix(&table["between_sscp_B"]),
+        &matrix(&table["within_sscp_W"]),
+    )
+    .unwrap();
     let expected = numbers(&table["eigenvalues_WinvB"]);
     for i in 0..2 {
         close("eigenvalue of W⁻¹B", values[i] / expected[i], 1.0, 1e-10);
-        close("the published four decimals", values[i], numbers(&iris["published"]["eigenvalues"])[i], 5e-5);
+        close(
+            "the published four decimals",
+            values[i],
+            numbers(&iris["published"]["eigenvalues"])[i],
+            5e-5,
+        );
     }
+}
+
+/// The samples of a case, made anew from its seed (large cases do not store them).
+fn shrinkage_samples(case: &Value) -> Vec<Vec<f64>> {
+    let (n, p) = (number(&case["n"]) as usize, number(&case["p"]) as usize);
+    let mut lcg = Lcg(number(&case["seed"]) as u64);
+    let mut samples: Vec<Vec<f64>> = (0..n)
+        .map(|_| (0..p).map(|j| lcg.normal12() * (1.0 + j as f64)).collect())
+        .collect();
+    for row in &mut samples {
+        let common = lcg.normal12();
+        row.iter_mut().for_each(|x| *x += 0.5 * common + 3.0);
+    }
+    samples
 }
 
 #[test]
 fn shrinkage_equals_scikit_learns() {
     for case in reference("shrinkage")["cases"].as_array().unwrap() {
-        let samples = rows(&case["X"]);
+        let samples = shrinkage_samples(case);
         let (n, p) = (samples.len() as f64, samples[0].len());
         for (key, centred) in [("mean_removed", true), ("assume_centered", false)] {
-            let means: Vec<f64> = (0..p).map(|j| if centred { samples.iter().map(|r| r[j]).sum::<f64>() / n } else { 0.0 }).collect();
-            let fourth: f64 = samples.iter().map(|r| r.iter().zip(&means).map(|(x, m)| (x - m).powi(2)).sum::<f64>().powi(2)).sum();
-            let covariance = matrix(&case[key]["empirical_cov_ddof0"]);
-            close(key, ledoit_wolf_of(&covariance, fourth, n), number(&case[key]["ledoit_wolf_shrinkage"]), 1e-10);
-            close(key, oas_of(&covariance, n), number(&case[key]["oas_shrinkage_sklearn"]), 1e-10);
+            let means: Vec<f64> = (0..p)
+                .map(|j| {
+                    if centred {
+                        samples.iter().map(|r| r[j]).sum::<f64>() / n
+                    } else {
+                        0.0
+                    }
+                })
+                .collect();
+            let centred = DMatrix::from_fn(samples.len(), p, |i, j| samples[i][j] - means[j]);
+            let fourth: f64 = centred.row_iter().map(|r| r.norm_squared().powi(2)).sum();
+            let covariance = centred.transpose() * &centred / n;
+            close(
+                key,
+                ledoit_wolf_of(&covariance, fourth, n),
+                number(&case[key]["ledoit_wolf_shrinkage"]),
+                1e-10,
+            );
+            close(
+                key,
+                oas_of(&covariance, n),
+                number(&case[key]["oas_shrinkage_sklearn"]),
+                1e-10,
+            );
         }
     }
 }
@@ -86,7 +129,12 @@ fn p_values_by_phipson_and_smyth() {
     for case in permutation["plus_one"].as_array().unwrap() {
         let (b, m) = (number(&case["b"]) as usize, number(&case["m"]) as usize);
         let null: Vec<f64> = (0..m).map(|i| if i < b { 2.0 } else { 1.0 }).collect();
-        close("(b+1)/(m+1)", p_value(2.0, &null, false, true), number(&case["p"]), 1e-12);
+        close(
+            "(b+1)/(m+1)",
+            p_value(2.0, &null, false, true),
+            number(&case["p"]),
+            1e-12,
+        );
     }
 }
 
@@ -97,24 +145,44 @@ fn the_chain_of_mean_covariances_and_compression() {
     let pooled = (&s + &r) * 0.5;
     let (eigenvalues, v) = eigh(&pooled);
     let expected = numbers(&chain["pooled_pca_eigenvalues"]);
-    close_all("eigenvalues of the pooled covariance", &eigenvalues[..expected.len()], &expected, 1e-9 * expected[0]);
+    close_all(
+        "eigenvalues of the pooled covariance",
+        &eigenvalues[..expected.len()],
+        &expected,
+        1e-9 * expected[0],
+    );
     for result in chain["results"].as_array().unwrap() {
-        let (c, gamma) = (number(&result["pca_components"]) as usize, number(&result["shrinkage"]));
+        let (c, gamma) = (
+            number(&result["pca_components"]) as usize,
+            number(&result["shrinkage"]),
+        );
         let basis = v.columns(0, c);
         let small = |a: &DMatrix<f64>| basis.transpose() * a * basis;
         let reduced = small(&r);
-        let shrunk = &reduced * (1.0 - gamma) + DMatrix::<f64>::identity(c, c) * (gamma * reduced.trace() / c as f64);
+        let shrunk = &reduced * (1.0 - gamma)
+            + DMatrix::<f64>::identity(c, c) * (gamma * reduced.trace() / c as f64);
         let (values, w) = generalised_eigh(&small(&s), &shrunk).unwrap();
         let expected = numbers(&result["eigenvalues_desc"]);
-        close_all("eigenvalues of the chain", &values, &expected, 1e-9 * expected[0]);
+        close_all(
+            "eigenvalues of the chain",
+            &values,
+            &expected,
+            1e-9 * expected[0],
+        );
         let filters = matrix(&result["filters_W_columns"]);
         let patterns = matrix(&result["patterns_pooled_C_w"]);
         let own = basis * w;
         for j in 0..c {
             let sign = own.column(j).dot(&filters.column(j)).signum();
-            assert!((own.column(j) * sign - filters.column(j)).amax() < 1e-8 * filters.column(j).amax(), "filter {j}");
+            assert!(
+                (own.column(j) * sign - filters.column(j)).amax() < 1e-8 * filters.column(j).amax(),
+                "filter {j}"
+            );
             let pattern = &pooled * own.column(j) * sign;
-            assert!((pattern - patterns.column(j)).amax() < 1e-8 * patterns.column(j).amax(), "pattern {j}");
+            assert!(
+                (pattern - patterns.column(j)).amax() < 1e-8 * patterns.column(j).amax(),
+                "pattern {j}"
+            );
         }
     }
 }
@@ -126,17 +194,33 @@ fn pipeline_recording() -> Recording {
 }
 
 fn pipeline_recipe(measure: Measure, permutations: usize) -> Recipe {
-    let window = |from_s, to_s| EventWindow { event: "bell".into(), from_s, to_s };
+    let window = |from_s, to_s| EventWindow {
+        event: "bell".into(),
+        from_s,
+        to_s,
+    };
     Recipe {
         teasel_recipe: 1,
         channels: Default::default(),
         filter: Default::default(),
         keep: Keep::Number(7),
         measure,
-        contrast: Contrast::Windows { signal: window(0.1, 0.8), reference: window(-0.9, -0.2) },
-        shrink: Shrink::Number(if measure == Measure::Typical { 0.1 } else { 0.0 }),
+        contrast: Contrast::Windows {
+            signal: window(0.1, 0.8),
+            reference: window(-0.9, -0.2),
+        },
+        shrink: Shrink::Number(if measure == Measure::Typical {
+            0.1
+        } else {
+            0.0
+        }),
         components: 3,
-        evidence: Evidence { folds: 5, permutations, bootstrap: 200, seed: 1 },
+        evidence: Evidence {
+            folds: 5,
+            permutations,
+            bootstrap: 200,
+            seed: 1,
+        },
     }
 }
 
@@ -154,17 +238,42 @@ fn compare_component(what: &str, ours: &Component, expected: &Value) {
         ("typical_held_out", ours.typical.held_out.unwrap()),
         ("total_held_out", ours.total.held_out.unwrap()),
     ] {
-        close(&format!("{what}, {key}"), own / number(&expected[key]), 1.0, 1e-6);
+        close(
+            &format!("{what}, {key}"),
+            own / number(&expected[key]),
+            1.0,
+            1e-6,
+        );
     }
     for (key, own) in [("filter", &ours.filter), ("pattern", &ours.pattern)] {
         let expected = numbers(&expected[key]);
-        close_all(&format!("{what}, {key}"), own, &expected, 1e-5 * largest(&expected));
+        close_all(
+            &format!("{what}, {key}"),
+            own,
+            &expected,
+            1e-5 * largest(&expected),
+        );
     }
-    close_all(&format!("{what}, filter_raw"), &ours.filter_raw, &ours.filter, 0.0);
+    close_all(
+        &format!("{what}, filter_raw"),
+        &ours.filter_raw,
+        &ours.filter,
+        0.0,
+    );
     let folds = numbers(&expected["total_folds"]);
-    close_all(&format!("{what}, folds"), &ours.total.folds, &folds, 1e-6 * largest(&folds));
+    close_all(
+        &format!("{what}, folds"),
+        &ours.total.folds,
+        &folds,
+        1e-6 * largest(&folds),
+    );
     let trials: Vec<f64> = ours.trials.iter().map(|t| t.log_ratio).collect();
-    close_all(&format!("{what}, trials"), &trials, &numbers(&expected["trial_log_ratios"]), 1e-5);
+    close_all(
+        &format!("{what}, trials"),
+        &trials,
+        &numbers(&expected["trial_log_ratios"]),
+        1e-5,
+    );
 }
 
 #[test]
@@ -175,18 +284,34 @@ fn the_whole_contrast_equals_scipys_on_a_file_written_by_pyedflib() {
         let expected = &expected[key];
         let compression = sheet.compression.as_ref().unwrap();
         let eigenvalues = numbers(&expected["eigenvalues"]);
-        close_all("eigenvalues of P", &compression.eigenvalues, &eigenvalues, 1e-6 * eigenvalues[0]);
+        close_all(
+            "eigenvalues of P",
+            &compression.eigenvalues,
+            &eigenvalues,
+            1e-6 * eigenvalues[0],
+        );
         // Only directions on their own side of 1 are reported; the reference lists three at each end.
-        assert!(sheet.stronger.len() >= 2 && sheet.weaker.len() >= 2, "{key}");
+        assert!(
+            sheet.stronger.len() >= 2 && sheet.weaker.len() >= 2,
+            "{key}"
+        );
         for (end, ours) in [("stronger", &sheet.stronger), ("weaker", &sheet.weaker)] {
             for (j, component) in ours.iter().enumerate() {
-                compare_component(&format!("{key}, {end} {}", j + 1), component, &expected[end][j]);
+                compare_component(
+                    &format!("{key}, {end} {}", j + 1),
+                    component,
+                    &expected[end][j],
+                );
             }
         }
         let statistic = numbers(&expected["statistic"]);
         let own = &sheet.permutation.as_ref().unwrap().observed_stronger;
         for (j, x) in own.iter().enumerate() {
-            let known = if measure == Measure::Typical { statistic[j].exp() } else { statistic[j] };
+            let known = if measure == Measure::Typical {
+                statistic[j].exp()
+            } else {
+                statistic[j]
+            };
             close(&format!("{key}, statistic {j}"), x / known, 1.0, 1e-6);
         }
     }
@@ -220,7 +345,12 @@ fn the_comparators_on_the_same_held_out_windows() {
             ComparatorKind::BestPc => "best_pc",
             ComparatorKind::BestChannel => "best_channel",
         };
-        close(key, c.typical.held_out.unwrap() / number(&expected[key]), 1.0, 1e-6);
+        close(
+            key,
+            c.typical.held_out.unwrap() / number(&expected[key]),
+            1.0,
+            1e-6,
+        );
     }
     assert_eq!(sheet.compare.len(), 3);
 }
@@ -233,15 +363,29 @@ fn every_arrangement_of_ten_pairs_is_counted_as_numpy_counts_them() {
     let permutation = sheet.permutation.as_ref().unwrap();
     assert!(permutation.exact && permutation.done == 1024);
     let expected = &reference("pipeline")["exact_permutation_of_ten"];
-    close("p, stronger", sheet.stronger[0].p.unwrap() * 1024.0, number(&expected["count_largest"]), 1e-9);
-    close("p, weaker", sheet.weaker[0].p.unwrap() * 1024.0, number(&expected["count_smallest"]), 1e-9);
+    close(
+        "p, stronger",
+        sheet.stronger[0].p.unwrap() * 1024.0,
+        number(&expected["count_largest"]),
+        1e-9,
+    );
+    close(
+        "p, weaker",
+        sheet.weaker[0].p.unwrap() * 1024.0,
+        number(&expected["count_smallest"]),
+        1e-9,
+    );
 }
 
 #[test]
 fn a_component_in_the_reference_windows_has_variance_one_and_its_pattern_is_haufes() {
     let sheet = sheet(pipeline_recording(), pipeline_recipe(Measure::Typical, 0));
     for c in sheet.stronger.iter().chain(&sheet.weaker) {
-        let largest = c.pattern.iter().copied().fold(0.0f64, |m, x| if x.abs() > m.abs() { x } else { m });
+        let largest = c
+            .pattern
+            .iter()
+            .copied()
+            .fold(0.0f64, |m, x| if x.abs() > m.abs() { x } else { m });
         assert!(largest > 0.0, "the entry of largest magnitude is positive");
         // wᵀa = 1 by a = Pw/(wᵀPw).
         let product: f64 = c.filter.iter().zip(&c.pattern).map(|(w, a)| w * a).sum();
@@ -260,7 +404,20 @@ fn the_same_recipe_gives_the_same_sheet_and_a_detour_leaves_no_trace() {
         match i {
             0 => other.keep = Keep::Number(4),
             1 => other.measure = Measure::Total,
-            2 => other.contrast = Contrast::Windows { signal: EventWindow { event: "bell".into(), from_s: 0.0, to_s: 0.5 }, reference: EventWindow { event: "bell".into(), from_s: -0.5, to_s: 0.0 } },
+            2 => {
+                other.contrast = Contrast::Windows {
+                    signal: EventWindow {
+                        event: "bell".into(),
+                        from_s: 0.0,
+                        to_s: 0.5,
+                    },
+                    reference: EventWindow {
+                        event: "bell".into(),
+                        from_s: -0.5,
+                        to_s: 0.0,
+                    },
+                }
+            }
             3 => other.evidence.folds = 3,
             4 => other.filter.high_pass_hz = Some(2.0),
             _ => other.evidence.bootstrap = 50,
@@ -278,6 +435,25 @@ fn the_same_recipe_gives_the_same_sheet_and_a_detour_leaves_no_trace() {
         }
         analysis.set_recipe(recipe.clone()).unwrap();
         analysis.run(|_| ()).unwrap();
-        assert_eq!(serde_json::to_string(analysis.sheet()).unwrap(), serde_json::to_string(&direct).unwrap());
+        assert_eq!(
+            serde_json::to_string(analysis.sheet()).unwrap(),
+            serde_json::to_string(&direct).unwrap()
+        );
+    }
+}
+
+#[test]
+fn on_noise_alone_p_is_uniform() {
+    // The small form of `cargo xtask bench --null`; scipy.stats.binom.interval(0.99, 400, 0.05) = (10, 32).
+    assert_eq!(binomial_99(400), [10, 32]);
+    let count = 100;
+    let [low, high] = binomial_99(count);
+    for noise in [Noise::White, Noise::Pink] {
+        for hits in rejections(1, count, noise, Measure::Typical, 99) {
+            assert!(
+                (low..=high).contains(&hits),
+                "{hits} of {count} null recordings of {noise:?} noise reach p ≤ 0.05"
+            );
+        }
     }
 }

@@ -1,4 +1,6 @@
 //! Helpers shared by the checks: see `all.rs`.
+pub mod calibration;
+
 use serde_json::Value;
 
 /// A file of reference values in `reference/`, without its `.json`.

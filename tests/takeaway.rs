@@ -4,6 +4,8 @@
     clippy::expect_used,
     reason = "a check that cannot go on fails"
 )]
+#[path = "takeaway/carried.rs"]
+mod carried;
 #[path = "takeaway/files.rs"]
 mod files;
 #[path = "takeaway/recipes.rs"]

@@ -2,6 +2,7 @@
 use super::sample::{self, HOSTILE};
 use serde_json::Value;
 use std::io::Read;
+use teasel_core::analysis::Series;
 use teasel_core::recording::Stretch;
 use teasel_core::takeaway::*;
 
@@ -144,11 +145,6 @@ fn broken_weights_are_refused_with_their_place() {
         ),
         (change("/ratios", json("[1]")), "breaks its rules", "ratios"),
         (
-            change("/channels/1/name", "Fp1".into()),
-            "breaks its rules",
-            "channels",
-        ),
-        (
             change("/filters", json("[]")),
             "breaks its rules",
             "filters",
@@ -226,7 +222,7 @@ fn hostile_names_stay_text_in_tables_and_exact_in_json() {
 fn series_keep_every_bit_as_csv_and_npy() {
     let series = Series {
         names: vec!["stronger 1".into(), "weaker 1".into()],
-        values: vec![
+        samples: vec![
             vec![0.1 + 0.2, -1.5e-9, 3.0],
             vec![f64::MIN_POSITIVE, 0.0, -7.25],
         ],
@@ -243,7 +239,6 @@ fn series_keep_every_bit_as_csv_and_npy() {
                 onset_s: 10.5,
             },
         ],
-        recorded_hz: 250.0,
     };
     let table = rows(&series_csv(&series).unwrap());
     assert_eq!(table[0], ["time_s", "stronger_1", "weaker_1"]);
@@ -251,7 +246,7 @@ fn series_keep_every_bit_as_csv_and_npy() {
         for c in 0..2 {
             assert_eq!(
                 table[k + 1][c + 1].parse::<f64>().unwrap(),
-                series.values[c][k]
+                series.samples[c][k]
             );
         }
     }
@@ -261,35 +256,7 @@ fn series_keep_every_bit_as_csv_and_npy() {
     let npy = npyz::NpyFile::new(&bytes[..]).unwrap();
     assert_eq!(npy.shape(), [2, 3]);
     assert_eq!(npy.order(), npyz::Order::C);
-    assert_eq!(npy.into_vec::<f64>().unwrap(), series.values.concat());
-}
-
-#[test]
-fn times_after_resampling_start_anew_in_every_stretch() {
-    let series = Series {
-        names: vec!["stronger 1".into()],
-        values: vec![vec![0.0; 51 + 26]],
-        rate_hz: 125.0,
-        stretches: vec![
-            Stretch {
-                first: 0,
-                count: 101,
-                onset_s: 1.0,
-            },
-            Stretch {
-                first: 101,
-                count: 51,
-                onset_s: 60.0,
-            },
-        ],
-        recorded_hz: 250.0,
-    };
-    let times = series.times_s();
-    assert_eq!(times.len(), 77);
-    assert_eq!(
-        (times[0], times[50], times[51], times[76]),
-        (1.0, 1.4, 60.0, 60.2)
-    );
+    assert_eq!(npy.into_vec::<f64>().unwrap(), series.samples.concat());
 }
 
 #[test]
@@ -372,4 +339,17 @@ fn file_names_are_safe_everywhere() {
     for (name, safe) in cases {
         assert_eq!(safe_name(name), safe);
     }
+}
+
+#[test]
+fn channels_of_one_name_keep_their_own_numbers() {
+    let mut sheet = sample::sheet();
+    for at in [1, 4] {
+        sheet.channels[at].name = "EEG".into();
+        sheet.preparation.as_mut().unwrap().channels[at] = "EEG".into();
+    }
+    let weights = Weights::from_json(&weights_json(&sheet).unwrap()).unwrap();
+    let pattern: Vec<f64> = weights.patterns[0].iter().map(|a| a.unwrap()).collect();
+    assert_eq!(pattern, sheet.stronger[0].pattern);
+    assert_eq!(weights.filters[0], sheet.stronger[0].filter_raw[..7]);
 }

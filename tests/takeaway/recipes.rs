@@ -337,7 +337,7 @@ fn each_refusal_says_where_what_was_expected_and_what_was_found() {
         assert!(said.contains(place), "{start}\n{problem}");
         let wanted = problem.expected.clone().unwrap_or_default();
         assert!(wanted.contains(expected), "{start}\n{problem}");
-        assert!(problem.advice.ends_with('.'), "{problem}");
+        assert!(problem.advice.len() > 10, "{problem}");
         assert!(!problem.to_string().contains('\n'), "{problem}");
     }
 }

@@ -1,3 +1,7 @@
 use anyhow::Result;
-pub fn table() -> Result<()> { Ok(()) }
-pub fn null(_recordings: usize) -> Result<()> { Ok(()) }
+pub fn table() -> Result<()> {
+    Ok(())
+}
+pub fn null(_recordings: usize) -> Result<()> {
+    Ok(())
+}

@@ -52,7 +52,10 @@ pub fn build() -> Result<Page> {
     let path = page_path();
     house::write(&path, &html)?;
     let sum = format!("{}  teasel.html\n", house::sha256_hex(&html));
-    house::write(house::root().join("dist/teasel.html.sha256"), sum.as_bytes())?;
+    house::write(
+        house::root().join("dist/teasel.html.sha256"),
+        sum.as_bytes(),
+    )?;
     Ok(Page { path, html })
 }
 
@@ -114,13 +117,7 @@ fn bundled(entry: &Path) -> Result<String> {
     shell::output("esbuild", &mut command)
 }
 
-fn assemble(
-    index: &str,
-    style: &str,
-    script: &str,
-    worker: &str,
-    module: &[u8],
-) -> Result<String> {
+fn assemble(index: &str, style: &str, script: &str, worker: &str, module: &[u8]) -> Result<String> {
     let (script, worker) = (script.trim(), worker.trim());
     for (name, text) in [("www/main.js", script), ("www/worker.js", worker)] {
         let lower = text.to_ascii_lowercase();
@@ -136,9 +133,8 @@ fn assemble(
          img-src data: blob:; style-src 'unsafe-inline'; form-action 'none'; base-uri 'none'",
         BASE64_STANDARD.encode(Sha256::digest(script))
     );
-    let head = format!(
-        "{CHARSET}\n<meta http-equiv=\"Content-Security-Policy\" content=\"{policy}\">"
-    );
+    let head =
+        format!("{CHARSET}\n<meta http-equiv=\"Content-Security-Policy\" content=\"{policy}\">");
     let scripts = format!(
         "<script type=\"application/gzip\" id=\"teasel-module\">{}</script>\n\
          <script type=\"text/plain\" id=\"teasel-worker\">{worker}</script>\n<script>{script}</script>",

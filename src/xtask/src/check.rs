@@ -1,2 +1,4 @@
 use anyhow::Result;
-pub fn test(_page: bool) -> Result<()> { Ok(()) }
+pub fn test(_page: bool) -> Result<()> {
+    Ok(())
+}

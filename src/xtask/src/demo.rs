@@ -1,2 +1,4 @@
 use anyhow::Result;
-pub fn write() -> Result<()> { Ok(()) }
+pub fn write() -> Result<()> {
+    Ok(())
+}

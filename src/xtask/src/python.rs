@@ -1,2 +1,4 @@
 use anyhow::Result;
-pub fn reference() -> Result<()> { Ok(()) }
+pub fn reference() -> Result<()> {
+    Ok(())
+}

@@ -174,12 +174,9 @@ fn tridiagonalise(a: &mut DMatrix<f64>, diagonal: &mut [f64], off: &mut [f64], a
         for j in m..n {
             let vj = v[j];
             let lower = &data[j * n + j..(j + 1) * n];
-            p[j] += lower[0] * vj;
             let below = &lower[1..];
-            for (pi, x) in p[j + 1..].iter_mut().zip(below) {
-                *pi += x * vj;
-            }
-            p[j] += dot(below, &v[j + 1..]);
+            let across = add_and_dot(&mut p[j + 1..], below, vj, &v[j + 1..]);
+            p[j] += lower[0] * vj + across;
         }
         for x in &mut p[m..] {
             *x *= beta;
@@ -230,6 +227,26 @@ fn accumulate_reflectors(data: &mut [f64], n: usize, betas: &[f64]) {
             data[j * n + k] = 0.0;
         }
     }
+}
+
+/// `into += x · scale` and x·y in one pass over x.
+fn add_and_dot(into: &mut [f64], x: &[f64], scale: f64, y: &[f64]) -> f64 {
+    let n = x.len();
+    let (into, y) = (&mut into[..n], &y[..n]);
+    let mut partial = [0.0; 4];
+    let whole = n - n % 4;
+    for at in (0..whole).step_by(4) {
+        for i in 0..4 {
+            into[at + i] += x[at + i] * scale;
+            partial[i] += x[at + i] * y[at + i];
+        }
+    }
+    let mut rest = 0.0;
+    for i in whole..n {
+        into[i] += x[i] * scale;
+        rest += x[i] * y[i];
+    }
+    (partial[0] + partial[2]) + (partial[1] + partial[3]) + rest
 }
 
 /// A dot product with four partial sums, so that it can use vector registers; always in the same order.
@@ -306,17 +323,52 @@ fn implicit_ql(d: &mut [f64], e: &mut [f64], mut vectors: Option<&mut DMatrix<f6
 }
 
 /// Applies the k-th rotation to columns `m − 1 − k` and `m − k`.
+///
+/// Four rotations go over their five columns at once: the column between two rotations stays in a register, which halves the
+/// memory traffic that bounds this loop.
 fn rotate_columns(v: &mut DMatrix<f64>, m: usize, rotations: &[(f64, f64)]) {
     let n = v.nrows();
     let data = v.as_mut_slice();
-    for (k, &(s, c)) in rotations.iter().enumerate() {
-        let i = m - 1 - k;
-        let (left, right) = data[i * n..(i + 2) * n].split_at_mut(n);
-        for (x, y) in left.iter_mut().zip(right.iter_mut()) {
+    let mut right = m;
+    let mut groups = rotations.chunks_exact(4);
+    for group in &mut groups {
+        let (e, rest) = data[(right - 4) * n..(right + 1) * n].split_at_mut(n);
+        let (d, rest) = rest.split_at_mut(n);
+        let (c, rest) = rest.split_at_mut(n);
+        let (b, a) = rest.split_at_mut(n);
+        rotate_five([a, b, c, d, e], [group[0], group[1], group[2], group[3]]);
+        right -= 4;
+    }
+    for &(s, c) in groups.remainder() {
+        let (left, last) = data[(right - 1) * n..(right + 1) * n].split_at_mut(n);
+        for (x, y) in left.iter_mut().zip(last.iter_mut()) {
             let f = *y;
             *y = s * *x + c * f;
             *x = c * *x - s * f;
         }
+        right -= 1;
+    }
+}
+
+/// Rotates columns a–b, b–c, c–d, d–e in this order.
+#[inline(never)]
+fn rotate_five([a, b, c, d, e]: [&mut [f64]; 5], rotations: [(f64, f64); 4]) {
+    let [(s0, c0), (s1, c1), (s2, c2), (s3, c3)] = rotations;
+    let n = a.len();
+    let (b, c, d, e) = (&mut b[..n], &mut c[..n], &mut d[..n], &mut e[..n]);
+    for i in 0..n {
+        let (x, y) = (a[i], b[i]);
+        a[i] = s0 * y + c0 * x;
+        let x = c0 * y - s0 * x;
+        let y = c[i];
+        b[i] = s1 * y + c1 * x;
+        let x = c1 * y - s1 * x;
+        let y = d[i];
+        c[i] = s2 * y + c2 * x;
+        let x = c2 * y - s2 * x;
+        let y = e[i];
+        d[i] = s3 * y + c3 * x;
+        e[i] = c3 * y - s3 * x;
     }
 }
 

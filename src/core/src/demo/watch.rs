@@ -3,7 +3,7 @@
 //! Lights come up on the dark sea. A `buoy` has to be reported; a `swell` is nothing to do. From 0.2 to 1.0 s after a buoy a 21 Hz
 //! rhythm under CP1 grows and a 10.5 Hz rhythm under Oz falls, more in one trial than in another. Nothing else knows of the buoys:
 //! ongoing rhythms that overlap the planted two and share part of their waves, 1/f activity of many sources, blinks, jaw muscle,
-//! mains that is worst at PO4, and a T7 that drifts. These are by far the larger part of the variance.
+//! mains that is worst at P8, and a T7 that drifts. These are by far the larger part of the variance.
 use super::head::{CHANNELS, Dipole, pattern, point};
 use super::process::{bump, normal, one_over_f, rhythm, smooth_step, stream};
 use super::{Demo, Pattern, Truth};
@@ -207,7 +207,7 @@ const NEAR_STRONGER: [Ongoing; 2] = [
     Ongoing {
         down_deg: 42.0,
         round_deg: 85.0,
-        microvolts: 2.2,
+        microvolts: 3.0,
         hz: 20.0,
         width_hz: 3.0,
         shared: 0.4,
@@ -215,7 +215,7 @@ const NEAR_STRONGER: [Ongoing; 2] = [
     Ongoing {
         down_deg: 40.0,
         round_deg: -60.0,
-        microvolts: 2.0,
+        microvolts: 2.5,
         hz: 18.5,
         width_hz: 4.0,
         shared: 0.3,
@@ -283,11 +283,11 @@ fn plant(seed: u64, buoys: &[f64], scalp: &mut Scalp) -> (Pattern, Pattern) {
 }
 
 /// Amplitude of the 21 Hz rhythm before a buoy, and the factor by which it grows in a middling trial.
-const STRONGER_MICROVOLTS: f64 = 2.0;
-const STRONGER_RISE: f64 = 2.4;
+const STRONGER_MICROVOLTS: f64 = 4.2;
+const STRONGER_RISE: f64 = 1.75;
 /// Amplitude of the 10.5 Hz rhythm before a buoy, and the factor to which it falls in a middling trial.
-const WEAKER_MICROVOLTS: f64 = 9.0;
-const WEAKER_FALL: f64 = 0.45;
+const WEAKER_MICROVOLTS: f64 = 10.0;
+const WEAKER_FALL: f64 = 0.54;
 
 /// An amplitude over time that is 1 and, after each buoy, about `factor`; its logarithm varies over trials by `spread`.
 fn level(random: &mut ChaCha8Rng, buoys: &[f64], factor: f64, spread: f64) -> Vec<f64> {
@@ -331,10 +331,10 @@ fn ongoing(seed: u64, first_stream: u64, sources: &[Ongoing], wave: &[f64], scal
 /// Many sources of 1/f activity anywhere in the head, pointing anywhere.
 fn background(seed: u64, scalp: &mut Scalp) {
     const SOURCES: u64 = 60;
-    const MICROVOLTS: f64 = 2.6;
+    const MICROVOLTS: f64 = 1.5;
     for number in 0..SOURCES {
         let random = &mut stream(seed, streams::BACKGROUND + number);
-        let radius = 0.3 + 0.5 * random.random::<f64>();
+        let radius = 0.15 + 0.4 * random.random::<f64>();
         let down_deg = 115.0 * random.random::<f64>().sqrt();
         let at = point(radius, down_deg, 360.0 * random.random::<f64>());
         let moment = [0; 3].map(|_| normal(random));
@@ -358,7 +358,7 @@ fn nuisances(seed: u64, scalp: &mut Scalp) -> Vec<Pattern> {
         4.2,
         [0.28, 0.4],
         |_, u| bump(u),
-        115.0,
+        130.0,
     );
     scalp.add(&blink, &blinks);
     let mut all = vec![source("blinks", None, blink, &blinks)];
@@ -418,7 +418,7 @@ fn mains(seed: u64, scalp: &mut Scalp) -> Pattern {
         .iter()
         .map(|_| 0.05 + 0.12 * random.random::<f64>())
         .collect();
-    weights[index("PO4")] = 1.0;
+    weights[index("P8")] = 1.0;
     let slow = one_over_f(random, RATE_HZ, COUNT / 250);
     let course: Vec<f64> = (0..COUNT)
         .map(|i| {
@@ -433,7 +433,7 @@ fn mains(seed: u64, scalp: &mut Scalp) -> Pattern {
 
 /// Noise of every sensor, and the drift of one.
 fn sensors(seed: u64, scalp: &mut Scalp) {
-    const MICROVOLTS: f64 = 0.8;
+    const MICROVOLTS: f64 = 0.6;
     const DRIFT_MICROVOLTS: f64 = 140.0;
     let random = &mut stream(seed, streams::SENSORS);
     for channel in &mut scalp.0 {

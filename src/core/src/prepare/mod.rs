@@ -1,9 +1,34 @@
 //! From recorded channels to the channels that are contrasted: one channel matrix T, linear-phase FIR filters, resampling.
-use crate::error::Result;
-use crate::recipe::Recipe;
+//!
+//! Prepared channel i = resample(filter(Σⱼ Tᵢⱼ xⱼ)), within each stretch on its own. All of it is linear, so a spatial filter w for the
+//! prepared channels is w_raw = Tᵀw for the recorded ones.
+//!
+//! * `matrix`: T from what is left out, interpolated, re-referenced.
+//! * [`fir`]: design and zero-phase application; several filters are convolved into one kernel first, so that edges are mirrored once.
+//! * [`resample`]: rational change of rate, with its own anti-alias filter.
+//! * [`inspect()`]: what is known of every channel before.
+//!
+//! # Precision
+//! Sums and filters run in f64; samples are stored as f32.
+//!
+//! # Edges and gaps
+//! Each stretch is continued by its mirror image. A stretch shorter than half the kernel is mirrored again and again, and a warning says so; a
+//! kernel longer than every stretch is refused.
+pub mod fir;
+mod inspect;
+mod matrix;
+pub mod resample;
+
+pub use inspect::{inspect, to_unit_sphere};
+
+use crate::error::{Kind, Problem, Result};
+use crate::recipe::{Filter, Recipe};
 use crate::recording::{Recording, Stretch};
 use crate::sheet::{ChannelCard, PreparationCard};
+use fir::{Design, Request, ZeroPhase};
+use matrix::{ChannelMatrix, Sum};
 use nalgebra::DMatrix;
+use resample::Resampler;
 
 /// What the preparation gives.
 #[derive(Debug, Clone)]
@@ -30,33 +55,347 @@ pub struct Prepared {
 
 /// Preparation in bites: one channel a step.
 #[derive(Debug)]
-pub struct Preparing {}
+pub struct Preparing {
+    matrix: ChannelMatrix,
+    /// The reference series r·x, summed one recorded channel a step; empty without a reference.
+    common: Vec<f64>,
+    /// Recorded channels already in `common`.
+    summed: usize,
+    filter: Option<ZeroPhase>,
+    resampler: Option<Resampler>,
+    recorded: Vec<Stretch>,
+    mixed: Vec<f64>,
+    filtered: Vec<f64>,
+    result: Prepared,
+}
 
 impl Preparing {
     /// Checks the recipe's channels and filter against the recording and builds T and the filters.
-    pub fn new(
-        _recording: &Recording,
-        _channels: &[ChannelCard],
-        _recipe: &Recipe,
-    ) -> Result<Self> {
-        Ok(Preparing {})
+    /// `channels` are the cards of [`inspect()`] for the same recording and recipe.
+    ///
+    /// # Channels
+    /// A reference of one channel leaves that channel out: it would be zero. A reference of several keeps them (the rank falls by one). Channels
+    /// left out by the recipe may still serve as reference; unusable ones may not.
+    ///
+    /// # Errors
+    /// Unknown channel names, fewer than 2 channels left, interpolation without positions, edges or rates out of range, a filter longer
+    /// than every stretch.
+    pub fn new(recording: &Recording, channels: &[ChannelCard], recipe: &Recipe) -> Result<Self> {
+        let rate_hz = recording.rate_hz;
+        let matrix = ChannelMatrix::new(channels, &recipe.channels)?;
+        let designs = designs(&recipe.filter, rate_hz)?;
+        let resampler = resampler(&recipe.filter, rate_hz)?;
+        let longest = recording
+            .stretches
+            .iter()
+            .map(|s| s.count)
+            .max()
+            .unwrap_or(0);
+        let taps = kernel(&designs, longest, rate_hz)?;
+
+        let mut warnings = matrix.warnings.clone();
+        warnings.extend(mixed_units(&matrix, channels));
+        warnings.extend(
+            taps.as_ref()
+                .and_then(|t| short_stretches(&recording.stretches, t.len(), rate_hz)),
+        );
+        let mut filters: Vec<String> = designs.iter().map(Design::sentence).collect();
+        let mut new_rate_hz = rate_hz;
+        if let Some(r) = &resampler {
+            new_rate_hz = new_rate(rate_hz, r, recipe.filter.resample_hz);
+            filters.push(format!(
+                "resampled from {rate_hz} to {new_rate_hz} Hz ({}/{})",
+                r.up, r.down
+            ));
+        }
+        let names: Vec<String> = matrix
+            .channels
+            .iter()
+            .map(|&c| channels[c].name.clone())
+            .collect();
+        let longest_filter = designs.iter().map(|d| d.length).max().unwrap_or(0);
+        let result = Prepared {
+            unit: shared_unit(&matrix, channels)
+                .unwrap_or_default()
+                .to_owned(),
+            positions: matrix
+                .channels
+                .iter()
+                .map(|&c| channels[c].position)
+                .collect(),
+            matrix: matrix.dense(channels.len()),
+            rate_hz: new_rate_hz,
+            samples: Vec::with_capacity(names.len()),
+            stretches: after(&recording.stretches, resampler.as_ref()),
+            card: PreparationCard {
+                rate_hz: new_rate_hz,
+                channels: names.clone(),
+                rank: 0,
+                longest_filter_s: longest_filter as f64 / rate_hz,
+                filters,
+            },
+            channels: names,
+            warnings,
+        };
+        Ok(Preparing {
+            common: vec![
+                0.0;
+                if matrix.reference.is_empty() {
+                    0
+                } else {
+                    recording.sample_count()
+                }
+            ],
+            matrix,
+            summed: 0,
+            filter: taps.map(|t| ZeroPhase::new(&t, longest)),
+            resampler,
+            recorded: recording.stretches.clone(),
+            mixed: Vec::new(),
+            filtered: Vec::new(),
+            result,
+        })
     }
-    /// Prepared channels done, and in all.
+    /// Steps done, and in all: one for each recorded channel in the reference's sum, then one for each prepared channel.
     pub fn progress(&self) -> (usize, usize) {
-        (0, 0)
+        (
+            self.summed + self.result.samples.len(),
+            self.matrix.reference.len() + self.matrix.rows.len(),
+        )
     }
-    /// Prepares the next channel; returns false when there is none left.
-    pub fn step(&mut self, _recording: &Recording) -> bool {
-        false
+    /// Does the next step and says whether there is another; does nothing when all are done.
+    pub fn step(&mut self, recording: &Recording) -> bool {
+        if let Some(&(channel, weight)) = self.matrix.reference.get(self.summed) {
+            add(&mut self.common, &recording.samples[channel], weight);
+            self.summed += 1;
+            return true;
+        }
+        let next = self.result.samples.len();
+        let Some(row) = self.matrix.rows.get(next) else {
+            return false;
+        };
+        let samples = match row[..] {
+            [(channel, 1.0)]
+                if self.filter.is_none() && self.resampler.is_none() && self.common.is_empty() =>
+            {
+                recording.samples[channel].clone()
+            }
+            _ => self.prepare(next, recording),
+        };
+        self.result.samples.push(samples);
+        next + 1 < self.matrix.rows.len()
     }
     /// The result, once every channel is done.
     pub fn finish(self) -> Option<Prepared> {
-        None
+        (self.result.samples.len() == self.matrix.rows.len()).then_some(self.result)
+    }
+
+    fn prepare(&mut self, row: usize, recording: &Recording) -> Vec<f32> {
+        let total = self.result.stretches.iter().map(|s| s.count).sum();
+        let mut out = Vec::with_capacity(total);
+        for stretch in &self.recorded {
+            let range = stretch.first..stretch.first + stretch.count;
+            mix(
+                &self.matrix.rows[row],
+                &self.common,
+                recording,
+                range,
+                &mut self.mixed,
+            );
+            if let Some(filter) = &mut self.filter {
+                filter.filter(&self.mixed, &mut self.filtered);
+                std::mem::swap(&mut self.mixed, &mut self.filtered);
+            }
+            if let Some(resampler) = &self.resampler {
+                resampler.resample(&self.mixed, &mut self.filtered);
+                std::mem::swap(&mut self.mixed, &mut self.filtered);
+            }
+            out.extend(self.mixed.iter().map(|&v| v as f32));
+        }
+        out
     }
 }
 
-/// Looks at every recorded channel: standard deviation, mains, constant, not-a-number, duplicated; sets positions by name where
-/// the recording gives none. One channel a call would be too slow to matter; the whole is about one pass over the samples.
-pub fn inspect(_recording: &Recording, _recipe: &Recipe) -> Vec<ChannelCard> {
-    Vec::new()
+/// The exact new rate: the wanted one where the two differ only by rounding.
+fn new_rate(rate_hz: f64, r: &Resampler, wanted: Option<f64>) -> f64 {
+    let exact = rate_hz * r.up as f64 / r.down as f64;
+    wanted
+        .filter(|w| (w / exact - 1.0).abs() < 4.0 * f64::EPSILON)
+        .unwrap_or(exact)
+}
+
+/// A row of A over one stretch, less the reference.
+fn mix(
+    row: &Sum,
+    common: &[f64],
+    recording: &Recording,
+    range: std::ops::Range<usize>,
+    out: &mut Vec<f64>,
+) {
+    out.clear();
+    match common.get(range.clone()) {
+        Some(part) => out.extend(part.iter().map(|v| -v)),
+        None => out.resize(range.len(), 0.0),
+    }
+    for &(channel, weight) in row {
+        add(out, &recording.samples[channel][range.clone()], weight);
+    }
+}
+
+fn add(sum: &mut [f64], samples: &[f32], weight: f64) {
+    for (total, value) in sum.iter_mut().zip(samples) {
+        *total += weight * f64::from(*value);
+    }
+}
+
+fn after(stretches: &[Stretch], resampler: Option<&Resampler>) -> Vec<Stretch> {
+    let mut first = 0;
+    let mut next = |stretch: &Stretch| {
+        let count = resampler.map_or(stretch.count, |r| r.count(stretch.count));
+        let now = Stretch {
+            first,
+            count,
+            onset_s: stretch.onset_s,
+        };
+        first += count;
+        now
+    };
+    stretches.iter().map(&mut next).collect()
+}
+
+fn shared_unit<'a>(matrix: &ChannelMatrix, channels: &'a [ChannelCard]) -> Option<&'a str> {
+    let mut units = matrix.channels.iter().map(|&c| channels[c].unit.as_str());
+    let first = units.next()?;
+    units.all(|unit| unit == first).then_some(first)
+}
+
+fn mixed_units(matrix: &ChannelMatrix, channels: &[ChannelCard]) -> Option<String> {
+    let mut units: Vec<&str> = matrix
+        .channels
+        .iter()
+        .map(|&c| channels[c].unit.as_str())
+        .collect();
+    units.sort_unstable();
+    units.dedup();
+    let names = |unit: &&str| {
+        if unit.is_empty() {
+            "no unit".to_owned()
+        } else {
+            (*unit).to_owned()
+        }
+    };
+    (units.len() > 1).then(|| {
+        format!(
+            "The channels have different units ({}); their variances are compared as numbers all the same.",
+            units.iter().map(names).collect::<Vec<_>>().join(", ")
+        )
+    })
+}
+
+/// The filters a recipe asks for, checked against the rate.
+fn designs(filter: &Filter, rate_hz: f64) -> Result<Vec<Design>> {
+    let nyquist = rate_hz / 2.0;
+    for (key, value) in [
+        ("high_pass_hz", filter.high_pass_hz),
+        ("low_pass_hz", filter.low_pass_hz),
+    ] {
+        if let Some(edge) = value {
+            in_range(key, edge, 0.0, nyquist)?;
+        }
+    }
+    for &centre in &filter.notch_hz {
+        in_range("notch_hz", centre, 1.0, nyquist - 1.0)?;
+    }
+    if let (Some(high), Some(low)) = (filter.high_pass_hz, filter.low_pass_hz)
+        && high >= low
+    {
+        return Err(Problem::new(
+            Kind::Recipe,
+            "the high-pass edge is not below the low-pass edge: nothing would pass",
+            "lower high_pass_hz or raise low_pass_hz",
+        )
+        .at("recipe, filter")
+        .expected_found(format!("high_pass_hz below {low} Hz"), format!("{high} Hz")));
+    }
+    let requests = (filter.high_pass_hz.map(Request::HighPass).into_iter())
+        .chain(filter.low_pass_hz.map(Request::LowPass))
+        .chain(filter.notch_hz.iter().copied().map(Request::Notch));
+    Ok(requests
+        .map(|request| Design::new(request, rate_hz))
+        .collect())
+}
+
+/// Refuses a frequency outside the open interval; also one that is not a number.
+fn in_range(key: &str, value: f64, above: f64, below: f64) -> Result<()> {
+    if value > above && value < below {
+        return Ok(());
+    }
+    Err(Problem::new(
+        Kind::Recipe,
+        format!("{key} does not fit this recording"),
+        "choose a frequency between these limits; the upper one follows from the sampling rate",
+    )
+    .at(format!("recipe, filter.{key}"))
+    .expected_found(
+        format!("above {above} and below {below} Hz"),
+        format!("{value} Hz"),
+    ))
+}
+
+fn resampler(filter: &Filter, rate_hz: f64) -> Result<Option<Resampler>> {
+    let Some(wanted) = filter.resample_hz.filter(|wanted| *wanted != rate_hz) else {
+        return Ok(None);
+    };
+    let lowest = filter.high_pass_hz.map_or(0.0, |edge| 2.0 * edge);
+    let ratio = resample::ratio(rate_hz, wanted).filter(|_| wanted > lowest && wanted < rate_hz);
+    let (up, down) = ratio.ok_or_else(|| {
+        Problem::new(
+            Kind::Recipe,
+            "resample_hz does not fit this recording",
+            "choose a rate between twice the high-pass edge and the recording's own rate",
+        )
+        .at("recipe, filter.resample_hz")
+        .expected_found(
+            format!("above {lowest} and at most {rate_hz} Hz"),
+            format!("{wanted} Hz"),
+        )
+    })?;
+    Ok(Some(Resampler::new(up, down)))
+}
+
+/// All filters as one kernel; refused when it is longer than every stretch, which also bounds what is allocated.
+fn kernel(designs: &[Design], longest: usize, rate_hz: f64) -> Result<Option<Vec<f64>>> {
+    let length = designs
+        .iter()
+        .fold(1, |sum: usize, d| sum.saturating_add(d.length - 1));
+    if !designs.is_empty() && length > longest {
+        return Err(Problem::new(
+            Kind::Recipe,
+            "the filter is longer than the longest unbroken part of the recording",
+            "raise the high-pass edge, or leave the filter out",
+        )
+        .at("recipe, filter")
+        .expected_found(
+            format!("at most {:.3} s", longest as f64 / rate_hz),
+            format!("{:.3} s", length as f64 / rate_hz),
+        ));
+    }
+    let taps: Vec<Vec<f64>> = designs.iter().map(Design::taps).collect();
+    Ok(fir::in_a_row(&taps))
+}
+
+fn short_stretches(stretches: &[Stretch], taps: usize, rate_hz: f64) -> Option<String> {
+    let short = stretches.iter().filter(|s| s.count <= taps / 2).count();
+    let (parts, are) = if short == 1 {
+        ("part", "is")
+    } else {
+        ("parts", "are")
+    };
+    (short > 0).then(|| {
+        format!(
+            "{short} unbroken {parts} of the recording {are} shorter than half the filter ({:.2} s); what is filtered there \
+             comes mostly from mirror images.",
+            (taps / 2) as f64 / rate_hz
+        )
+    })
 }

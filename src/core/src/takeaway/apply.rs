@@ -3,9 +3,9 @@
 //! Everything in the preparation is linear: a filter for the raw channels followed by the same FIR filters gives what the
 //! filter for the prepared channels gives after them. So the raw channels are combined first, in f64, and only the
 //! components are filtered and resampled.
-use super::series::Series;
 use super::strict::quote;
-use super::weights::Weights;
+use super::weights::{Weights, same};
+use crate::analysis::Series;
 use crate::error::{Kind, Problem, Result};
 use crate::prepare::Preparing;
 use crate::recipe::{Contrast, EventWindow, Evidence, Keep, Measure, Recipe, Shrink};
@@ -13,7 +13,7 @@ use crate::recording::{Channel, Recording};
 use crate::sheet::{ChannelCard, ChannelState};
 
 /// What applying gives.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone)]
 pub struct Applied {
     /// Time courses of the components.
     pub series: Series,
@@ -22,7 +22,7 @@ pub struct Applied {
 }
 
 impl Weights {
-    /// The components' time courses in `recording`. Channels are matched by name, in any order; more channels are fine, a
+    /// The components' time courses in `recording`. Channels are matched by name, in any order (the second of a name with the second); more channels are fine, a
     /// missing one is an error, so is a unit of another kind. Another unit of the same kind is converted. A recording sampled
     /// faster is resampled after the filters, one sampled slower is refused, because it lacks what the weights were fitted to.
     pub fn apply(&self, recording: &Recording) -> Result<Applied> {
@@ -51,17 +51,8 @@ impl Weights {
             halves.push(high);
             halves.push(low);
         }
-        let (values, rate_hz) = self.filtered(recording, halves, filter)?;
-        Ok(Applied {
-            series: Series {
-                names: self.component_names(),
-                values,
-                rate_hz,
-                stretches: recording.stretches.clone(),
-                recorded_hz: recording.rate_hz,
-            },
-            notes,
-        })
+        let series = self.filtered(recording, halves, filter)?;
+        Ok(Applied { series, notes })
     }
 
     /// Index in the recording and factor of unit of every channel.
@@ -70,11 +61,11 @@ impl Weights {
         let mut missing = Vec::new();
         for (k, wanted) in self.channels.iter().enumerate() {
             let needed = self.filters.iter().any(|row| row[k] != 0.0);
-            let Some(at) = recording
-                .channels
-                .iter()
-                .position(|c| c.name == wanted.name)
-            else {
+            let Some(at) = same(
+                recording.channels.iter().map(|c| c.name.as_str()),
+                self.channels[..k].iter().map(|c| c.name.as_str()),
+                &wanted.name,
+            ) else {
                 if needed {
                     missing.push(quote(&wanted.name));
                 }
@@ -157,7 +148,7 @@ impl Weights {
         recording: &Recording,
         halves: Vec<Vec<f32>>,
         filter: crate::recipe::Filter,
-    ) -> Result<(Vec<Vec<f64>>, f64)> {
+    ) -> Result<Series> {
         let channels: Vec<Channel> = (0..halves.len())
             .map(|k| Channel {
                 name: format!("half {k}"),
@@ -194,7 +185,7 @@ impl Weights {
                 "the preparation of the weights cannot be repeated on it",
             )
         })?;
-        let values = prepared
+        let samples = prepared
             .samples
             .chunks(2)
             .map(|pair| {
@@ -206,7 +197,12 @@ impl Weights {
                     .collect()
             })
             .collect();
-        Ok((values, prepared.rate_hz))
+        Ok(Series {
+            names: self.component_names(),
+            samples,
+            rate_hz: prepared.rate_hz,
+            stretches: prepared.stretches,
+        })
     }
 }
 
@@ -214,7 +210,7 @@ fn refuse(recording: &Recording, what: &str) -> Problem {
     Problem::new(
         Kind::Contrast,
         what,
-        "Choose a recording of the same montage, or fit new weights to this one.",
+        "choose a recording of the same montage, or fit new weights to this one",
     )
     .in_file(&recording.name)
 }

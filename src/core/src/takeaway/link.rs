@@ -97,7 +97,7 @@ pub fn link_decode(text: &str) -> Result<RecipeLink> {
         Problem::new(
             Kind::Recipe,
             "the link does not hold a recipe",
-            "Copy the whole link again.",
+            "copy the whole link again",
         )
         .expected_found("base64url of a recipe", found)
     };
@@ -187,7 +187,7 @@ impl RecipeLink {
                 Problem::new(
                     Kind::Contrast,
                     "the link leaves the events to the recording, and the recording has too few kinds of them",
-                    "Choose the events by hand.",
+                    "choose the events by hand",
                 )
                 .expected_found(format!("at least {rank}"), labels.len())
             })

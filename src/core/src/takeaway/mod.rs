@@ -30,7 +30,7 @@ pub use readings::{Reading, Section, Span, Tone, readings};
 pub use recipe_file::{recipe_check, recipe_from_json, recipe_json};
 pub use report::report_html;
 pub use results::results_json;
-pub use series::{Series, series_csv, series_npy};
+pub use series::{series_csv, series_npy};
 pub use weights::{Weights, weights_csv, weights_json, weights_npy};
 
 use crate::error::{Kind, Problem, Result};
@@ -48,6 +48,6 @@ fn written(cause: impl std::fmt::Display) -> Problem {
     Problem::new(
         Kind::Storage,
         format!("the file could not be put together: {cause}"),
-        "Try again with fewer components.",
+        "try again with fewer components",
     )
 }

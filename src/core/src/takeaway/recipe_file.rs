@@ -93,7 +93,7 @@ pub fn recipe_from_json(text: &str) -> Result<Recipe> {
         Problem::new(
             Kind::Recipe,
             "the recipe breaks its rules",
-            "Mend it there, or take it from Teasel again.",
+            "mend it there, or take it from Teasel again",
         )
         .at(format!("line {}, column {}", e.line(), e.column()))
         .expected_found("a recipe", e)
@@ -109,7 +109,7 @@ fn out(path: &str, expected: impl std::fmt::Display, found: impl std::fmt::Displ
     Problem::new(
         Kind::Recipe,
         "a value of the recipe is out of range",
-        "Change it to a value in that range.",
+        "change it to a value in that range",
     )
     .at(path)
     .expected_found(expected, found)
@@ -141,7 +141,7 @@ pub fn recipe_check(recipe: &Recipe) -> Result<()> {
         return Err(Problem::new(
             Kind::Recipe,
             "this recipe is of another version of the schema",
-            "Use the version of Teasel that wrote it.",
+            "use the version of Teasel that wrote it",
         )
         .at("teasel_recipe")
         .expected_found(1, recipe.teasel_recipe));
@@ -177,7 +177,7 @@ fn check_keep(keep: Keep) -> Result<()> {
         Keep::Number(1) => Err(Problem::new(
             Kind::Recipe,
             "With C = 1 the direction is chosen by size alone and nothing is left to compare",
-            "Keep 2 dimensions or more.",
+            "keep 2 dimensions or more",
         )
         .at("keep")
         .expected_found("a whole number above 1, \"auto\" or \"best\"", 1)),
@@ -251,7 +251,7 @@ fn check_shrink(shrink: Shrink, measure: Measure) -> Result<()> {
             Err(Problem::new(
                 Kind::Recipe,
                 "this shrinkage belongs to the measure total",
-                "Set shrink to auto or a number, or measure to total.",
+                "set shrink to auto or a number, or measure to total",
             )
             .at("shrink")
             .expected_found("\"auto\" or a number", "a rule for total"))

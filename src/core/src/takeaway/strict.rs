@@ -45,7 +45,7 @@ pub(crate) fn check(text: &str, shape: &Shape, name: &str) -> Result<()> {
         return Err(Problem::new(
             Kind::Recipe,
             format!("{name} is too long to be one"),
-            "Choose the right file.",
+            "choose the right file",
         )
         .expected_found(
             format!("at most {SIZE_CAP} bytes"),
@@ -56,14 +56,14 @@ pub(crate) fn check(text: &str, shape: &Shape, name: &str) -> Result<()> {
         return Err(Problem::new(
             Kind::Recipe,
             format!("{name} is empty"),
-            "Choose the right file.",
+            "choose the right file",
         ));
     }
     let broken = |e: serde_json::Error| {
         Problem::new(
             Kind::Recipe,
             format!("{name} is not JSON"),
-            "Mend it there, or take it from Teasel again.",
+            "mend it there, or take it from Teasel again",
         )
         .at(format!("line {}, column {}", e.line(), e.column()))
         .expected_found("valid JSON", cause(&e.to_string()))
@@ -143,7 +143,7 @@ impl<'a> Walk<'a> {
         Problem::new(
             Kind::Recipe,
             format!("{} breaks its rules", self.name),
-            "Mend it there, or take it from Teasel again.",
+            "mend it there, or take it from Teasel again",
         )
         .at(self.place(raw, path))
         .expected_found(expected, found)
@@ -224,7 +224,7 @@ impl<'a> Walk<'a> {
                 None if later.contains(&kind.as_str()) => Err(Problem::new(
                     Kind::Recipe,
                     "this version computes the kind windows",
-                    "Write the contrast as windows around events, or use a later version.",
+                    "write the contrast as windows around events, or use a later version",
                 )
                 .at(place_of(self.text, &join(path, "kind")))
                 .expected_found(expected, quote(kind))),

@@ -138,21 +138,13 @@ impl Weights {
             return Err(Problem::new(
                 Kind::Recipe,
                 "these weights are of another version of the schema",
-                "Use the version of Teasel that wrote them.",
+                "use the version of Teasel that wrote them",
             )
             .at("teasel_weights")
             .expected_found(1, self.teasel_weights));
         }
         if self.rate_hz <= 0.0 {
             return Err(broken("rate_hz").expected_found("a number of Hz above 0", self.rate_hz));
-        }
-        for (at, channel) in self.channels.iter().enumerate() {
-            if self.channels[..at].iter().any(|c| c.name == channel.name) {
-                return Err(broken("channels").expected_found(
-                    "each channel once",
-                    format!("{} twice", strict::quote(&channel.name)),
-                ));
-            }
         }
         let components = self.filters.len();
         if components == 0 {
@@ -204,7 +196,7 @@ fn broken(path: &str) -> Problem {
     Problem::new(
         Kind::Recipe,
         "the weights file breaks its rules",
-        "Take it from Teasel again.",
+        "take it from Teasel again",
     )
     .at(path)
 }
@@ -248,13 +240,27 @@ struct Row<'a> {
     patterns: Vec<Option<f64>>,
 }
 
+/// Where `name` stands among `names`; where names repeat, the k-th of `before` and itself is the k-th among `names`.
+pub(super) fn same<'a>(
+    names: impl Iterator<Item = &'a str>,
+    before: impl Iterator<Item = &'a str>,
+    name: &str,
+) -> Option<usize> {
+    let earlier = before.filter(|n| *n == name).count();
+    names
+        .enumerate()
+        .filter(|(_, n)| *n == name)
+        .nth(earlier)
+        .map(|(at, _)| at)
+}
+
 fn rows(sheet: &Sheet) -> Result<Vec<Row<'_>>> {
     let components = ordered(sheet);
     if components.is_empty() {
         return Err(Problem::new(
             Kind::Contrast,
             "there are no filters yet",
-            "Wait until the components are there.",
+            "wait until the components are there",
         ));
     }
     let prepared: &[String] = sheet
@@ -262,7 +268,12 @@ fn rows(sheet: &Sheet) -> Result<Vec<Row<'_>>> {
         .as_ref()
         .map_or(&[], |p| p.channels.as_slice());
     let rows = sheet.channels.iter().enumerate().map(|(at, channel)| {
-        let pattern_at = prepared.iter().position(|name| *name == channel.name);
+        let before = &sheet.channels[..at];
+        let pattern_at = same(
+            prepared.iter().map(String::as_str),
+            before.iter().map(|c| c.name.as_str()),
+            &channel.name,
+        );
         Row {
             name: &channel.name,
             unit: &channel.unit,

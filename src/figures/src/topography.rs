@@ -1,0 +1,118 @@
+//! Filled bands of a surface over the head, cut at a circle.
+use crate::look::{Ramp, step};
+use crate::pen::Point;
+use contour::ContourBuilder;
+use plotters::style::RGBAColor;
+use std::f64::consts::TAU;
+
+pub(crate) use teasel_core::describe::positions::flat;
+
+/// A closed line and the colour inside it.
+pub(crate) type Patch = (Vec<Point>, RGBAColor);
+
+/// The patches of a square grid of values, to be painted in this order.
+///
+/// `grid` is row-major from the front left; the plane's unit is 1 at the equator; `extent` is half the grid's side; what lies
+/// beyond `radius` is cut off. Every ring of a level is painted, the largest first, in the colour of the side towards its
+/// inside: a hole is simply painted over, so polygons need no holes.
+pub(crate) fn patches(
+    grid: &[f64],
+    extent: f64,
+    radius: f64,
+    limit: f64,
+    ramp: &Ramp,
+) -> Vec<Patch> {
+    let side = (grid.len() as f64).sqrt().round() as usize;
+    if side < 3 || side * side != grid.len() || grid.iter().any(|v| !v.is_finite()) {
+        return Vec::new();
+    }
+    let disc = circle(radius);
+    let mut painted: Vec<(f64, Vec<Point>, RGBAColor)> =
+        vec![(f64::INFINITY, disc.clone(), ramp[lowest(grid, limit)])];
+    let cell = 2.0 * extent / (side - 1) as f64;
+    let levels: Vec<f64> = (1..11)
+        .map(|k| limit * (2.0 * f64::from(k) / 11.0 - 1.0))
+        .collect();
+    // The crate puts the grid's points at the middles of its cells: point i lies at i + 0.5.
+    let builder = ContourBuilder::new(side, side, true);
+    let Ok(lines) = builder.lines(grid, &levels) else {
+        return Vec::new();
+    };
+    for (k, line) in lines.iter().enumerate() {
+        for ring in &line.geometry().0 {
+            let points = ring
+                .0
+                .iter()
+                .map(|p| ((p.x - 0.5) * cell - extent, extent - (p.y - 0.5) * cell));
+            let points: Vec<Point> = points.collect();
+            let area = signed_area(&points);
+            // Rings run so that the larger values lie inside when the area, with y upwards, is negative.
+            let color = if area < 0.0 { ramp[k + 1] } else { ramp[k] };
+            let inside = clip(&points, &disc);
+            if inside.len() > 2 {
+                painted.push((area.abs(), inside, color));
+            }
+        }
+    }
+    painted.sort_by(|a, b| b.0.total_cmp(&a.0));
+    painted
+        .into_iter()
+        .map(|(_, points, color)| (points, color))
+        .collect()
+}
+
+/// The step that no ring rises from: that of the smallest value.
+fn lowest(grid: &[f64], limit: f64) -> usize {
+    step(grid.iter().copied().fold(f64::INFINITY, f64::min), limit)
+}
+
+/// A circle about the vertex as a polygon, against the clock.
+pub(crate) fn circle(radius: f64) -> Vec<Point> {
+    let at = |i: i32| {
+        let angle = TAU * f64::from(i) / 120.0;
+        (radius * angle.cos(), radius * angle.sin())
+    };
+    (0..120).map(at).collect()
+}
+
+fn signed_area(points: &[Point]) -> f64 {
+    let next = points.iter().cycle().skip(1);
+    points
+        .iter()
+        .zip(next)
+        .map(|(a, b)| a.0 * b.1 - b.0 * a.1)
+        .sum::<f64>()
+        / 2.0
+}
+
+/// The part of a polygon inside a convex one that runs against the clock (Sutherland & Hodgman 1974).
+pub(crate) fn clip(polygon: &[Point], convex: &[Point]) -> Vec<Point> {
+    let reach = convex
+        .iter()
+        .map(|p| p.0.hypot(p.1))
+        .fold(f64::INFINITY, f64::min);
+    let inner = reach * (std::f64::consts::PI / convex.len() as f64).cos();
+    if polygon.iter().all(|p| p.0.hypot(p.1) <= inner) {
+        return polygon.to_vec();
+    }
+    let mut kept = polygon.to_vec();
+    for (a, b) in convex.iter().zip(convex.iter().cycle().skip(1)) {
+        let side = |p: &Point| (b.0 - a.0) * (p.1 - a.1) - (b.1 - a.1) * (p.0 - a.0);
+        let mut out = Vec::with_capacity(kept.len() + 4);
+        for (p, q) in kept.iter().zip(kept.iter().cycle().skip(1)) {
+            let (sp, sq) = (side(p), side(q));
+            if sp >= 0.0 {
+                out.push(*p);
+            }
+            if (sp >= 0.0) != (sq >= 0.0) {
+                let t = sp / (sp - sq);
+                out.push((p.0 + t * (q.0 - p.0), p.1 + t * (q.1 - p.1)));
+            }
+        }
+        kept = out;
+        if kept.is_empty() {
+            break;
+        }
+    }
+    kept
+}

@@ -1,0 +1,168 @@
+//! How often the permutation test finds what is not there.
+//!
+//! Recordings of noise alone, events at random: p is uniform when the test is right, so the rate of p ≤ 0.05 has to lie in the
+//! binomial interval around 0.05. The test suite runs a small form, `cargo xtask bench --null` the full one.
+use rand_chacha::ChaCha8Rng;
+use rand_chacha::rand_core::SeedableRng;
+use rand_distr::{Distribution, StandardNormal, StandardUniform};
+use teasel_core::analysis::Analysis;
+use teasel_core::recipe::{
+    Contrast, EventWindow, Evidence, Keep, Measure, Recipe, Shrink, ShrinkWord,
+};
+use teasel_core::recording::{Channel, Event, Recording, Stretch};
+
+/// What the noise is like.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Noise {
+    /// Independent samples, mixed over channels.
+    White,
+    /// Power falling as 1/f, mixed over channels: a sum of first-order processes an octave apart (Voss & Clarke 1978 sum such sources).
+    Pink,
+}
+
+/// A recording of noise: `channels` at 100 Hz with `trials` events "tick" about 2 s apart.
+pub fn null_recording(seed: u64, noise: Noise, channels: usize, trials: usize) -> Recording {
+    const RATE_HZ: f64 = 100.0;
+    let mut rng = ChaCha8Rng::seed_from_u64(seed);
+    let samples = (RATE_HZ * (2.0 * trials as f64 + 4.0)) as usize;
+    let sources: Vec<Vec<f64>> = (0..channels)
+        .map(|_| source(&mut rng, noise, samples))
+        .collect();
+    let mixed = (0..channels)
+        .map(|_| {
+            let weights: Vec<f64> = (0..channels)
+                .map(|_| StandardNormal.sample(&mut rng))
+                .collect();
+            (0..samples)
+                .map(|t| {
+                    weights
+                        .iter()
+                        .zip(&sources)
+                        .map(|(w, s)| w * s[t])
+                        .sum::<f64>() as f32
+                })
+                .collect()
+        })
+        .collect();
+    let events = (0..trials)
+        .map(|k| {
+            let jitter: f64 = StandardUniform.sample(&mut rng);
+            Event {
+                onset_s: 2.0 * k as f64 + 2.0 + 0.3 * jitter,
+                duration_s: 0.0,
+                label: "tick".into(),
+            }
+        })
+        .collect();
+    Recording {
+        name: format!("null-{seed}"),
+        format: "synthetic".into(),
+        rate_hz: RATE_HZ,
+        channels: (1..=channels)
+            .map(|i| Channel {
+                name: format!("X{i}"),
+                unit: "µV".into(),
+                position: None,
+            })
+            .collect(),
+        samples: mixed,
+        stretches: vec![Stretch {
+            first: 0,
+            count: samples,
+            onset_s: 0.0,
+        }],
+        events,
+        ..Recording::default()
+    }
+}
+
+fn source(rng: &mut ChaCha8Rng, noise: Noise, samples: usize) -> Vec<f64> {
+    match noise {
+        Noise::White => (0..samples).map(|_| StandardNormal.sample(rng)).collect(),
+        Noise::Pink => {
+            let mut out = vec![0.0; samples];
+            for octave in 0..8 {
+                let memory = 1.0 - 0.5f64.powi(octave + 1);
+                let scale = (1.0 - memory * memory).sqrt();
+                let mut state: f64 = StandardNormal.sample(rng);
+                for x in &mut out {
+                    *x += state;
+                    let fresh: f64 = StandardNormal.sample(rng);
+                    state = memory * state + scale * fresh;
+                }
+            }
+            out
+        }
+    }
+}
+
+/// The question put to every null recording.
+pub fn null_recipe(measure: Measure, permutations: usize) -> Recipe {
+    let window = |from_s, to_s| EventWindow {
+        event: "tick".into(),
+        from_s,
+        to_s,
+    };
+    Recipe {
+        teasel_recipe: 1,
+        channels: Default::default(),
+        filter: Default::default(),
+        keep: Keep::Number(6),
+        measure,
+        contrast: Contrast::Windows {
+            signal: window(0.0, 0.8),
+            reference: window(-0.8, 0.0),
+        },
+        shrink: Shrink::Word(ShrinkWord::Auto),
+        components: 1,
+        evidence: Evidence {
+            folds: 4,
+            permutations,
+            bootstrap: 0,
+            seed: 1,
+        },
+    }
+}
+
+/// Of `count` null recordings from `first` on: how many reach p ≤ 0.05 at the stronger and at the weaker end.
+pub fn rejections(
+    first: u64,
+    count: u64,
+    noise: Noise,
+    measure: Measure,
+    permutations: usize,
+) -> [u64; 2] {
+    let mut hits = [0; 2];
+    for seed in first..first + count {
+        let mut analysis = Analysis::new(
+            null_recording(seed, noise, 8, 20),
+            null_recipe(measure, permutations),
+        )
+        .unwrap();
+        analysis.run(|_| ()).unwrap();
+        let sheet = analysis.sheet();
+        for (hit, end) in hits.iter_mut().zip([&sheet.stronger, &sheet.weaker]) {
+            *hit += u64::from(end.first().and_then(|c| c.p).is_some_and(|p| p <= 0.05));
+        }
+    }
+    hits
+}
+
+/// The central 99 % of a binomial distribution (n, 0.05): smallest and largest count inside.
+pub fn binomial_99(n: u64) -> [u64; 2] {
+    let mut probability = 0.95f64.powi(n as i32);
+    let (mut below, mut low, mut high) = (0.0, None, n);
+    for k in 0..=n {
+        let up_to = below + probability;
+        if low.is_none() && up_to > 0.005 {
+            low = Some(k);
+        }
+        if up_to >= 0.995 {
+            high = k;
+            break;
+        }
+        below = up_to;
+        probability *= (n - k) as f64 / (k + 1) as f64 * 0.05 / 0.95;
+    }
+    [low.unwrap_or(0), high]
+}
