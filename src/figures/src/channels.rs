@@ -164,7 +164,7 @@ impl Channels {
         let word = Word::new(TICK, pen.inks.slate).at(At::Right);
         let hz = self
             .mains_hz
-            .map_or("mains".to_owned(), |hz| format!("{} Hz", text::short(hz)));
+            .map_or("mains".to_owned(), |hz| format!("{} Hz", text::hertz(hz)));
         pen.word(&hz, (LEFT - 9.0, base - 30.0), word)?;
         pen.word("excess", (LEFT - 9.0, base - 16.0), word)?;
         Ok(())

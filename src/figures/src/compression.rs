@@ -82,14 +82,17 @@ fn beside_line<DB: DrawingBackend>(
         text::bold_width(strong, LABEL) + 7.0,
         text::width(plain, LABEL),
     );
-    let right = x + 8.0 + bold + rest < pen.w;
     let word = Word::new(LABEL, pen.inks.ink);
-    if right {
+    if x + 8.0 + bold + rest < pen.w {
         pen.word(strong, (x + 8.0, y), word.bold())?;
         pen.word(plain, (x + 8.0 + bold, y), word)
-    } else {
+    } else if x - 8.0 - bold - rest > 0.0 {
         pen.word(strong, (x - 15.0 - rest, y), word.bold().at(At::Right))?;
         pen.word(plain, (x - 8.0, y), word.at(At::Right))
+    } else if x + 8.0 + bold < pen.w {
+        pen.word(strong, (x + 8.0, y), word.bold())
+    } else {
+        pen.word(strong, (x - 8.0, y), word.bold().at(At::Right))
     }
 }
 
@@ -251,8 +254,12 @@ impl Plot for Keep {
         let inks = pen.inks;
         let slate = Word::new(TICK, inks.slate);
         kept_ground(pen, &frame, self.kept)?;
-        let said = "Ratio of component 1: held-out with ± one standard error, fitted thin";
-        pen.word(&text::fit(said, TICK, pen.w - 8.0), (4.0, 9.0), slate)?;
+        let said = [
+            "Ratio of component 1: held-out with ± one standard error, fitted thin",
+            "Ratio, held-out ± one standard error; fitted thin",
+            "Held-out ratio (fitted thin)",
+        ];
+        pen.word(text::first(&said, TICK, pen.w - 8.0), (4.0, 9.0), slate)?;
         pen.hatch(
             (frame.left - FIRST, frame.top),
             (frame.left + FIRST, frame.bottom),

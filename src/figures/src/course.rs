@@ -232,13 +232,24 @@ impl Course {
 
     fn captions<DB: DrawingBackend>(&self, pen: &Pen<DB>, frame: &Frame) -> Drawn<DB> {
         let slate = Word::new(TICK, pen.inks.slate);
-        let said = match self.of {
-            Of::Average => "Average of the component, in its own unit",
-            _ if self.t_s.is_empty() => "The two windows around the event",
-            Of::Windows => "Power of component 1 against its reference mean, dB",
-            Of::Power => "Power against its reference mean, dB",
+        let said: &[&str] = match self.of {
+            Of::Average => &[
+                "Average of the component, in its own unit",
+                "Average, own unit",
+            ],
+            _ if self.t_s.is_empty() => &["The two windows around the event"],
+            Of::Windows => &[
+                "Power of component 1 against its reference mean, dB",
+                "Power against its reference mean, dB",
+                "Power, dB of reference",
+            ],
+            Of::Power => &[
+                "Power against its reference mean, dB",
+                "Power, dB of reference",
+            ],
         };
-        pen.word(&text::fit(said, TICK, pen.w - 8.0), (4.0, 9.0), slate)?;
+        let said = text::first(said, TICK, pen.w - 8.0);
+        pen.word(said, (4.0, 9.0), slate)?;
         if self.trials == 0 {
             return Ok(());
         }

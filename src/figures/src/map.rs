@@ -9,6 +9,8 @@ use crate::{Plot, nan, text};
 use plotters::style::RGBAColor;
 use plotters_backend::DrawingBackend;
 use serde::{Deserialize, Serialize};
+use std::cell::RefCell;
+use std::rc::Rc;
 use teasel_core::describe::map::{EXTENT, MapGrid};
 use teasel_core::sheet::{Component, Sheet};
 
@@ -41,6 +43,33 @@ pub struct Map {
     pub radius: f64,
 }
 
+/// Positions and the grid made for them.
+type Made = (Vec<[f64; 3]>, Rc<MapGrid>);
+
+thread_local! {
+    /// The grid last made and the positions it was made for: all components of a sheet share them, and making it takes longest.
+    static LAST: RefCell<Option<Made>> = const { RefCell::new(None) };
+}
+
+fn grid_of(positions: &[[f64; 3]]) -> Option<Rc<MapGrid>> {
+    LAST.with_borrow_mut(|last| {
+        if let Some((known, grid)) = last
+            && known == positions
+        {
+            return Some(Rc::clone(grid));
+        }
+        let grid = Rc::new(MapGrid::new(positions, SIDE).ok()?);
+        *last = Some((positions.to_vec(), Rc::clone(&grid)));
+        Some(grid)
+    })
+}
+
+/// Every other row and column of a square grid with an odd side.
+fn every_other(grid: &[f64]) -> Vec<f64> {
+    let row = |r: usize| grid[r * SIDE..(r + 1) * SIDE].iter().step_by(2).copied();
+    (0..SIDE).step_by(2).flat_map(row).collect()
+}
+
 impl Map {
     pub(crate) fn of(sheet: &Sheet, component: &Component, end: End, small: bool) -> Option<Self> {
         let names = &sheet.preparation.as_ref()?.channels;
@@ -62,7 +91,7 @@ impl Map {
         let values: Vec<f64> = known.iter().map(|i| component.pattern[*i]).collect();
         // A map of some channels passes for a map of all, unless nearly all are on it.
         let enough = at.len() >= 4 && at.len() * 10 >= names.len() * 8;
-        let spline = enough.then(|| MapGrid::new(&at, SIDE).ok()).flatten();
+        let spline = enough.then(|| grid_of(&at)).flatten();
         let mut places = vec![None; names.len()];
         let mut radius = 1.0;
         let mut grid = Vec::new();
@@ -71,11 +100,10 @@ impl Map {
                 places[*i] = Some(*place);
             }
             radius = (spline.radius + RIM).min(EXTENT);
-            grid = spline
-                .values(&values)
-                .into_iter()
-                .map(|v| f64::from(v as f32))
-                .collect();
+            grid = spline.values(&values);
+            if small {
+                grid = every_other(&grid);
+            }
         }
         Some(Map {
             small,

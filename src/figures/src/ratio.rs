@@ -187,6 +187,10 @@ impl Plot for Row {
             }
             return Ok(());
         };
+        if estimate.ratio.is_none() {
+            let word = Word::new(TICK, inks.slate).at(At::Middle);
+            return pen.word("withheld: too few trials", (pen.w / 2.0, pen.h / 2.0), word);
+        }
         for tick in &ticks {
             let ink = if (*tick - 1.0).abs() < 1e-9 {
                 inks.line
@@ -194,14 +198,6 @@ impl Plot for Row {
                 inks.rule
             };
             pen.down(frame.px(*tick), frame.top, frame.bottom, ink, 1.0)?;
-        }
-        if estimate.ratio.is_none() {
-            let word = Word::new(TICK, inks.slate).at(At::Middle);
-            let said = "withheld: too few trials";
-            let half = text::width(said, TICK) / 2.0 + 3.0;
-            let (x, y) = (pen.w / 2.0, pen.h / 2.0);
-            pen.rect((x - half, y - 8.0), (x + half, y + 8.0), inks.plate)?;
-            return pen.word(said, (x, y), word);
         }
         let y = pen.h / 2.0;
         estimate.ticks(pen, &frame, y + 8.0)?;
@@ -261,6 +257,9 @@ pub struct Rival {
 }
 
 const ROW: f64 = 42.0;
+/// Narrower than this, names stand above their rows instead of left of them.
+const STACKED: f64 = 440.0;
+const TALL_ROW: f64 = 56.0;
 const HEAD: f64 = 28.0;
 
 impl Beside {
@@ -305,16 +304,59 @@ impl Beside {
         })
     }
 
+    fn row(width: f64) -> f64 {
+        if width < STACKED { TALL_ROW } else { ROW }
+    }
+
     fn frame(&self, width: f64) -> Frame {
-        let bottom = HEAD + ROW * self.rows.len() as f64;
+        let left = if width < STACKED {
+            16.0
+        } else {
+            (width * 0.36).clamp(112.0, 184.0)
+        };
         Frame {
-            left: (width * 0.36).clamp(112.0, 184.0),
-            right: width - 92.0,
+            left,
+            right: (width - 92.0).max(left + 10.0),
             top: HEAD,
-            bottom,
+            bottom: HEAD + Self::row(width) * self.rows.len() as f64,
             x: Axis::log(self.axis[0], self.axis[1]),
             y: Axis::falling(self.rows.len() as f64, 0.0),
         }
+    }
+
+    /// What a row is: left of it, or in one line above it.
+    fn title<DB: DrawingBackend>(
+        &self,
+        pen: &Pen<DB>,
+        frame: &Frame,
+        row: &Rival,
+        y: f64,
+    ) -> Drawn<DB> {
+        let slate = Word::new(TICK, pen.inks.slate);
+        let name = Word::new(LABEL, pen.inks.ink);
+        let name = if row.own { name.bold() } else { name };
+        if pen.w >= STACKED {
+            let room = frame.left - 12.0;
+            pen.name(&row.name, (0.0, y - 8.0), room, name)?;
+            return pen.name(&row.note, (0.0, y + 8.0), room, slate);
+        }
+        let wide = text::bold_width(&row.name, LABEL) + 6.0;
+        pen.word(&row.name, (0.0, y - 26.0), name)?;
+        pen.name(&row.note, (wide, y - 26.0), pen.w - wide, slate)
+    }
+
+    /// The grid, broken by names that stand above their rows.
+    fn grid<DB: DrawingBackend>(&self, pen: &Pen<DB>, frame: &Frame, tick: f64) -> Drawn<DB> {
+        let (x, tall) = (frame.px(tick), Self::row(pen.w));
+        let own = (tick - 1.0).abs() < 1e-9;
+        let ink = if own { pen.inks.line } else { pen.inks.rule };
+        for i in 0..self.rows.len() {
+            let end = frame.top + tall * (i as f64 + 1.0);
+            let high = if tall > ROW { tall - 20.0 } else { tall };
+            pen.down(x, end - high, end, ink, 1.0)?;
+        }
+        let word = Word::new(TICK, pen.inks.slate).at(At::Middle);
+        pen.word(&text::ratio_tick(tick), (x, frame.bottom + 14.0), word)
     }
 }
 
@@ -358,20 +400,7 @@ impl Plot for Beside {
             .ratio_ticks(((frame.right - frame.left) / 42.0).clamp(2.0, 7.0) as usize);
         let one = frame.px(1.0);
         for tick in &ticks {
-            let x = frame.px(*tick);
-            let own = (*tick - 1.0).abs() < 1e-9;
-            pen.down(
-                x,
-                frame.top,
-                frame.bottom,
-                if own { inks.line } else { inks.rule },
-                1.0,
-            )?;
-            pen.word(
-                &text::ratio_tick(*tick),
-                (x, frame.bottom + 14.0),
-                slate.at(At::Middle),
-            )?;
+            self.grid(pen, &frame, *tick)?;
         }
         let stronger = if pen.w - one > 140.0 {
             "stronger in signal"
@@ -381,12 +410,11 @@ impl Plot for Beside {
         pen.word("weaker", (one - 6.0, frame.top - 12.0), slate.at(At::Right))?;
         pen.word(stronger, (one + 6.0, frame.top - 12.0), slate)?;
         for (i, row) in self.rows.iter().enumerate() {
-            let y = frame.top + ROW * (i as f64 + 0.5);
+            let tall = Self::row(pen.w);
+            let y = frame.top + tall * (i as f64 + 0.5) + if tall > ROW { 10.0 } else { 0.0 };
+            self.title(pen, &frame, row, y)?;
             let name = Word::new(LABEL, inks.ink);
             let name = if row.own { name.bold() } else { name };
-            let room = frame.left - 12.0;
-            pen.name(&row.name, (0.0, y - 8.0), room, name)?;
-            pen.name(&row.note, (0.0, y + 8.0), room, slate)?;
             let side = row.own.then_some(End::Stronger);
             row.estimate.draw(pen, &frame, y, side, !row.own)?;
             row.estimate.ticks(pen, &frame, y + 9.0)?;
@@ -404,8 +432,8 @@ impl Plot for Beside {
         Ok(())
     }
 
-    fn height(&self, _width: u32) -> u32 {
-        (HEAD + ROW * self.rows.len() as f64 + 26.0) as u32
+    fn height(&self, width: u32) -> u32 {
+        (HEAD + Self::row(f64::from(width)) * self.rows.len() as f64 + 26.0) as u32
     }
 
     fn plot_box(&self, width: f64, _height: f64) -> Option<PlotBox> {

@@ -238,7 +238,7 @@ impl Spectrum {
                 .fold(top, f64::max);
             let y = (frame.py_inside(top) - 2.0).max(12.0);
             pen.down(x, 2.0, y, inks.line, 1.0)?;
-            let said = format!("{} Hz: {}", text::short(hz), text::decibels(difference));
+            let said = format!("{} Hz: {}", text::hertz(hz), text::decibels(difference));
             let wide = text::bold_width(&said, LABEL);
             let right = x + 6.0 + wide < pen.w;
             let (at, side) = if right {
@@ -348,7 +348,7 @@ impl Plot for Spectrum {
         let peak = self.peak().map_or(String::new(), |(hz, _, difference)| {
             format!(
                 " They differ most at {} Hz, by {}.",
-                text::short(hz),
+                text::hertz(hz),
                 text::decibels(difference)
             )
         });
