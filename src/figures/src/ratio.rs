@@ -340,7 +340,8 @@ impl Beside {
             pen.name(&row.name, (0.0, y - 8.0), room, name)?;
             return pen.name(&row.note, (0.0, y + 8.0), room, slate);
         }
-        let wide = text::bold_width(&row.name, LABEL) + 6.0;
+        let wide = if row.own { text::bold_width } else { text::width };
+        let wide = wide(&row.name, LABEL) + 8.0;
         pen.word(&row.name, (0.0, y - 26.0), name)?;
         pen.name(&row.note, (wide, y - 26.0), pen.w - wide, slate)
     }
