@@ -1,5 +1,6 @@
 //! The permutation test: what the largest ratio is when the two sides are alike.
-use crate::axis::{Axis, Frame, PlotBox, range};
+use crate::axis::{Axis, range};
+use crate::frame::{Frame, PlotBox};
 use crate::pen::{At, Drawn, LABEL, Pen, TICK, Word};
 use crate::table::{Table, cell};
 use crate::weights::End;

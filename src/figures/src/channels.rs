@@ -1,5 +1,6 @@
 //! How large every channel is, and how much mains hum is in it.
-use crate::axis::{Axis, Frame, LEFT, PlotBox, RIGHT, range};
+use crate::axis::{Axis, range};
+use crate::frame::{Frame, LEFT, PlotBox, RIGHT};
 use crate::head::Mark;
 use crate::pen::{At, Drawn, Pen, SMALL, TICK, Word};
 use crate::table::{Table, maybe};
