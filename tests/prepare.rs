@@ -311,8 +311,8 @@ fn filters_pass_stop_and_respect_gaps() {
         "zero stays zero behind the gap"
     );
     // Far from the edges; a Hamming window leaves a ripple of 0.2 %.
-    for i in 900..1100 {
-        close("10 Hz", f64::from(x[i]), keep(i), 0.006);
+    for (i, value) in x.iter().enumerate().take(1100).skip(900) {
+        close("10 Hz", f64::from(*value), keep(i), 0.006);
     }
 }
 
@@ -645,4 +645,30 @@ fn positions_come_to_the_unit_sphere() {
     close_all("few", &few[0].unwrap(), &[0.0, 0.0, 1.0], 1e-15);
     assert_eq!(few[1], None);
     close_all("few", &few[2].unwrap(), &[0.6, 0.8, 0.0], 1e-15);
+}
+
+/// The demo as a user meets it: every channel has its place, and the preparation of its own recipe goes through.
+#[test]
+fn the_night_watch_is_prepared() {
+    let demo = teasel_core::demo::night_watch(1);
+    let cards = inspect(&demo.recording, &demo.recipe);
+    assert_eq!(cards.len(), demo.recording.channels.len());
+    for card in &cards {
+        assert_eq!(card.state, ChannelState::Used, "{}", card.name);
+        assert!(
+            card.position.is_some() && card.sd.unwrap() > 0.0,
+            "{}",
+            card.name
+        );
+    }
+    // Mains is part of its story.
+    assert!(
+        cards
+            .iter()
+            .any(|c| c.mains_hz == Some(50.0) && c.mains_db.unwrap() > 10.0)
+    );
+    let prepared = prepare(&demo.recording, &demo.recipe).unwrap();
+    assert_eq!(prepared.channels.len(), prepared.samples.len());
+    let count: usize = prepared.stretches.iter().map(|s| s.count).sum();
+    assert!(prepared.samples.iter().all(|row| row.len() == count));
 }

@@ -8,7 +8,8 @@
 //! * [`prepare`]: channel matrix, filters, resampling.
 //! * [`contrast`]: windows, covariances, compression, the two measures.
 //! * [`evidence`]: held-out ratios, permutation, bootstrap, the curve that helps to choose C.
-//! * [`describe`]: spectra, time courses, maps.
+//! * [`describe`]: spectra, time courses, maps. Its `positions`, `spline` and `welch` are plain mathematics that
+//!   [`prepare`] uses too.
 //! * [`analysis`]: the steps in order, with what is stale recomputed; ends in a [`sheet::Sheet`].
 //! * [`sheet`]: everything known so far, as plain data: what figures, readings and take-aways are made from.
 //! * [`takeaway`]: weights, results, report, archive.

@@ -683,7 +683,7 @@ fn edge_warning(prepared: &Prepared, recipe: &Recipe) -> Option<String> {
     let Contrast::Windows { signal, reference } = &recipe.contrast;
     let shortest = (signal.to_s - signal.from_s).min(reference.to_s - reference.from_s);
     let filter = prepared.card.longest_filter_s;
-    (filter > 2.0 * shortest).then(|| {
+    (filter > 5.0 * shortest).then(|| {
         format!("The longest filter spans {filter:.2} s, the shorter windows {shortest:.2} s: what happens beside a window reaches into it.")
     })
 }

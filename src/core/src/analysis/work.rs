@@ -19,7 +19,7 @@ use crate::sheet::{ChannelCard, KeepCurve, Sheet};
 /// Largest C of `keep: "auto"`.
 const AUTO_LIMIT: usize = 150;
 /// Floating-point operations of one bite: about 20 ms in a browser.
-const BITE: f64 = 4e7;
+const BITE: f64 = 2e7;
 /// Values of C that `keep: "best"` chooses from go no further.
 const BEST_LIMIT: usize = 64;
 
@@ -124,9 +124,9 @@ impl Work {
         if preparation {
             // Refuse before anything is dropped.
             let cards = inspect(recording, new);
-            Preparing::new(recording, &cards, new)?;
-            self.cards = None;
-            self.preparing = None;
+            let preparing = Preparing::new(recording, &cards, new)?;
+            self.cards = Some(cards);
+            self.preparing = Some(preparing);
             self.prepared = None;
         } else if let Some(prepared) = &self.prepared {
             check(&new.contrast, &recording.events, prepared.rate_hz)?;
@@ -190,6 +190,9 @@ impl Work {
                 curve: !curve_holds,
             },
         );
+        if preparation {
+            self.sheet.channels = self.cards.clone().unwrap_or_default();
+        }
         Ok(())
     }
 

@@ -102,7 +102,7 @@ impl Preparing {
         let mut filters: Vec<String> = designs.iter().map(Design::sentence).collect();
         let mut new_rate_hz = rate_hz;
         if let Some(r) = &resampler {
-            new_rate_hz = rate_hz * r.up as f64 / r.down as f64;
+            new_rate_hz = new_rate(rate_hz, r, recipe.filter.resample_hz);
             filters.push(format!(
                 "resampled from {rate_hz} to {new_rate_hz} Hz ({}/{})",
                 r.up, r.down
@@ -214,6 +214,14 @@ impl Preparing {
         }
         out
     }
+}
+
+/// The exact new rate: the wanted one where the two differ only by rounding.
+fn new_rate(rate_hz: f64, r: &Resampler, wanted: Option<f64>) -> f64 {
+    let exact = rate_hz * r.up as f64 / r.down as f64;
+    wanted
+        .filter(|w| (w / exact - 1.0).abs() < 4.0 * f64::EPSILON)
+        .unwrap_or(exact)
 }
 
 /// A row of A over one stretch, less the reference.
