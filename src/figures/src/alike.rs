@@ -1,5 +1,6 @@
 //! The permutation test: what the largest ratio is when the two sides are alike.
-use crate::axis::{Axis, Frame, PlotBox, range};
+use crate::axis::{Axis, range};
+use crate::frame::{Frame, PlotBox};
 use crate::pen::{At, Drawn, LABEL, Pen, TICK, Word};
 use crate::table::{Table, cell};
 use crate::weights::End;
@@ -154,16 +155,10 @@ impl Plot for Alike {
         let all = text::thousands(self.null.len());
         let full =
             format!("{which} fitted ratio of {all} arrangements; how many reach each component");
-        let said = if text::width(&full, TICK) < pen.w - 8.0 {
-            full
-        } else {
-            format!("{which} fitted ratio; arrangements that reach it")
-        };
-        pen.word(
-            &text::fit(&said, TICK, pen.w - 6.0),
-            (4.0, 9.0),
-            Word::new(TICK, inks.slate),
-        )?;
+        let short = format!("{which} fitted ratio; arrangements that reach it");
+        let least = format!("{which} fitted ratio");
+        let said = text::first(&[&full, &short, &least], TICK, pen.w - 6.0);
+        pen.word(said, (4.0, 9.0), Word::new(TICK, inks.slate))?;
         let bins = self.bins(&frame);
         let tallest = bins.iter().map(|b| b.2).max().unwrap_or(1).max(1) as f64;
         for (from, to, count) in &bins {

@@ -1,12 +1,14 @@
 //! Which figures a sheet gives, under which names.
 use crate::alike::Alike;
+use crate::beside::Beside;
 use crate::channels::Channels;
-use crate::compression::{Eigenvalues, Keep};
+use crate::channels_map::ChannelsMap;
 use crate::course::{Course, Of};
-use crate::head::ChannelsMap;
+use crate::eigenvalues::Eigenvalues;
+use crate::keep::Keep;
 use crate::map::Map;
 use crate::overview::Overview;
-use crate::ratio::{Beside, Row};
+use crate::ratio::Row;
 use crate::scores::Scores;
 use crate::spectrum::Spectrum;
 use crate::trials::Trials;

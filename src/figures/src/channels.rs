@@ -1,5 +1,6 @@
 //! How large every channel is, and how much mains hum is in it.
-use crate::axis::{Axis, Frame, LEFT, PlotBox, RIGHT, range};
+use crate::axis::{Axis, range};
+use crate::frame::{Frame, LEFT, PlotBox, RIGHT};
 use crate::head::Mark;
 use crate::pen::{At, Drawn, Pen, SMALL, TICK, Word};
 use crate::table::{Table, maybe};
@@ -164,7 +165,7 @@ impl Channels {
         let word = Word::new(TICK, pen.inks.slate).at(At::Right);
         let hz = self
             .mains_hz
-            .map_or("mains".to_owned(), |hz| format!("{} Hz", text::short(hz)));
+            .map_or("mains".to_owned(), |hz| format!("{} Hz", text::hertz(hz)));
         pen.word(&hz, (LEFT - 9.0, base - 30.0), word)?;
         pen.word("excess", (LEFT - 9.0, base - 16.0), word)?;
         Ok(())

@@ -3,24 +3,33 @@
 //! A [`Figure`] is plain data made from a [`Sheet`] ([`from_sheet`], by one of the [`names`]) or from a recording
 //! ([`traces`]); [`draw`] puts it on a drawing area, [`svg`] writes it as a file, [`table`] gives the numbers behind it.
 //!
-//! `look` colours and sizes · `fine` coordinates between pixels · `pen` lines and words · `axis` ticks and grids · `text`
-//! widths, shortening, numbers · `catalogue` which figures a sheet gives · one room for each family of figures.
+//! `look` scheme and scale · `inks` colours · `fine` coordinates between pixels · `pen` lines and words · `axis`, `frame` ticks,
+//! grids, plot boxes · `text` widths, shortening, numbers · `places` room for names · `topography` filled bands on the head ·
+//! `catalogue` which figures a sheet gives · `svg`, `table` files · one room for each family of figures.
 //!
 //! # Units
 //! Sizes are CSS pixels, from the upper left corner. Data keep the units of the sheet.
 mod alike;
 mod axis;
+mod beside;
 mod catalogue;
 mod channels;
-mod compression;
+mod channels_map;
 mod course;
+mod eigenvalues;
+mod estimate;
 mod fine;
+mod frame;
 mod head;
+mod inks;
+mod keep;
+mod kept;
 mod look;
 mod map;
 mod nan;
 mod overview;
 mod pen;
+mod places;
 mod ratio;
 mod scores;
 mod spectrum;
@@ -37,9 +46,9 @@ mod sample;
 #[cfg(test)]
 mod tests;
 
-pub use axis::PlotBox;
 pub use catalogue::{from_sheet, names};
 pub use fine::Fine;
+pub use frame::PlotBox;
 pub use look::{FACE, Look, Scheme};
 pub use pen::Drawn;
 pub use svg::svg;
@@ -86,15 +95,15 @@ figures! {
     /// Channels over seconds.
     Traces(traces::Traces),
     /// Channels on the head seen from above.
-    ChannelsMap(head::ChannelsMap),
+    ChannelsMap(channels_map::ChannelsMap),
     /// Standard deviation and mains excess of every channel.
     Channels(channels::Channels),
     /// Power or average around an event, with the windows.
     Course(course::Course),
     /// Variance of every dimension.
-    Eigenvalues(compression::Eigenvalues),
+    Eigenvalues(eigenvalues::Eigenvalues),
     /// Fitted and held-out ratio against C.
-    Keep(compression::Keep),
+    Keep(keep::Keep),
     /// A pattern on the head.
     Map(map::Map),
     /// The largest weights of a filter.
@@ -106,7 +115,7 @@ figures! {
     /// One ratio on the shared axis, or the axis itself.
     Ratio(ratio::Row),
     /// The same held-out measure for what one would have used otherwise.
-    Beside(ratio::Beside),
+    Beside(beside::Beside),
     /// The permutation test.
     Alike(alike::Alike),
     /// Held-out ratio of every trial.

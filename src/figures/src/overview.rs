@@ -1,5 +1,6 @@
 //! The whole recording: how large its channels are over time, and when its events happened.
-use crate::axis::{Axis, Frame, LEFT, PlotBox, RIGHT, range};
+use crate::axis::{Axis, range};
+use crate::frame::{Frame, LEFT, PlotBox, RIGHT};
 use crate::pen::{At, Drawn, Pen, TICK, Word};
 use crate::table::{Table, cell};
 use crate::{Plot, nan, text};

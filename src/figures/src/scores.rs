@@ -1,5 +1,6 @@
 //! The held-out ratio of every trial, in order of time.
-use crate::axis::{Axis, Frame, LEFT, PlotBox, RIGHT, range};
+use crate::axis::{Axis, range};
+use crate::frame::{Frame, LEFT, PlotBox, RIGHT};
 use crate::pen::{At, Drawn, Pen, SMALL, TICK, Word};
 use crate::table::{Table, cell};
 use crate::{Plot, nan, text};

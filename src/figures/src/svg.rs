@@ -1,6 +1,7 @@
 //! Figures as SVG files.
 use crate::fine::Fine;
-use crate::look::{Inks, Look};
+use crate::inks::Inks;
+use crate::look::Look;
 use crate::{Figure, draw, spoken};
 use plotters::drawing::IntoDrawingArea;
 use plotters_svg::SVGBackend;

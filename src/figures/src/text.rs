@@ -45,6 +45,12 @@ pub(crate) fn bold_width(text: &str, size: f64) -> f64 {
     1.12 * width(text, size)
 }
 
+/// The first of several wordings that fits into `room` pixels, or the last.
+pub(crate) fn first<'a>(wordings: &[&'a str], size: f64, room: f64) -> &'a str {
+    let fits = wordings.iter().find(|w| width(w, size) <= room);
+    fits.or(wordings.last()).copied().unwrap_or("")
+}
+
 /// The text, cleaned, and cut with an ellipsis where it would be wider than `room` pixels.
 pub(crate) fn fit(text: &str, size: f64, room: f64) -> String {
     let text = clean(text);
@@ -98,6 +104,11 @@ pub(crate) fn short(value: f64) -> String {
         (1.0 - size.log10().floor()).clamp(0.0, 6.0) as usize
     };
     trimmed(&number(value, decimals))
+}
+
+/// A frequency with at most one decimal place: "21", "10.5".
+pub(crate) fn hertz(value: f64) -> String {
+    trimmed(&number(value, 1))
 }
 
 /// Without zeros that end a fraction.

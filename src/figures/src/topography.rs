@@ -1,5 +1,5 @@
 //! Filled bands of a surface over the head, cut at a circle.
-use crate::look::{Ramp, step};
+use crate::inks::{Ramp, step};
 use crate::pen::Point;
 use contour::ContourBuilder;
 use plotters::style::RGBAColor;

@@ -1,6 +1,7 @@
 //! Single trials around the event, one row each.
-use crate::axis::{self, Axis, Frame, PlotBox, RIGHT};
-use crate::look::step;
+use crate::axis::{self, Axis};
+use crate::frame::{Frame, PlotBox, RIGHT};
+use crate::inks::step;
 use crate::pen::{At, Drawn, Pen, TICK, Word};
 use crate::table::Table;
 use crate::{Plot, text};

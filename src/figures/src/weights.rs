@@ -1,5 +1,5 @@
 //! The largest weights of a filter, and the two ends that components belong to.
-use crate::look::{Inks, Ramp};
+use crate::inks::{Inks, Ramp};
 use crate::pen::{At, Drawn, Pen, TICK, Word};
 use crate::table::{Table, cell};
 use crate::{Plot, nan, text};

@@ -210,7 +210,7 @@ pub(super) fn clock(seconds: f64) -> String {
 pub(super) fn percent(share: f64) -> String {
     let value = share * 100.0;
     // Nothing short of all is called all.
-    if value < 100.0 && value >= 99.95 {
+    if (99.95..100.0).contains(&value) {
         return format!("more than 99.9{NB}%");
     }
     format!("{}{NB}%", trimmed(value, 1))

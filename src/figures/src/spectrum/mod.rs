@@ -1,7 +1,10 @@
 //! How a component's power spreads over frequency in signal and in reference windows.
-use crate::axis::{self, Axis, Frame, PlotBox, RIGHT, range};
-use crate::look::see_through;
-use crate::pen::{At, Drawn, LABEL, Pen, Point, Word};
+mod label;
+
+use crate::axis::{self, Axis, range};
+use crate::frame::{Frame, PlotBox, RIGHT};
+use crate::inks::see_through;
+use crate::pen::{At, Drawn, LABEL, Pen, Word};
 use crate::table::Table;
 use crate::{Plot, nan, text};
 use plotters_backend::DrawingBackend;
@@ -138,75 +141,6 @@ impl Spectrum {
         pen.path(&signal, inks.signal, wide)
     }
 
-    /// Writes a curve's name where it stands clear of both bands and nearest to its own curve.
-    fn name<DB: DrawingBackend>(
-        &self,
-        pen: &Pen<DB>,
-        frame: &Frame,
-        said: &str,
-        own: &[f64],
-        taken: &mut Vec<[f64; 4]>,
-        word: Word,
-    ) -> Drawn<DB> {
-        let wide = text::bold_width(said, LABEL) + 6.0;
-        let upper = max_of(
-            &self.signal_high,
-            &self.reference_high,
-            &self.signal,
-            &self.reference,
-        );
-        let lower = upper_of_negative(
-            &self.signal_low,
-            &self.reference_low,
-            &self.signal,
-            &self.reference,
-        );
-        let mut best: Option<(f64, Point)> = None;
-        let steps = ((frame.right - frame.left - wide) / 6.0).max(1.0) as usize;
-        for k in 0..=steps {
-            let x0 = frame.left + 4.0 + 6.0 * k as f64;
-            let x1 = x0 + wide;
-            if x1 > frame.right {
-                break;
-            }
-            let under: Vec<usize> = (0..self.hz.len())
-                .filter(|i| (x0..=x1).contains(&frame.px(self.hz[*i])))
-                .collect();
-            let own_y = under
-                .iter()
-                .map(|i| frame.py_inside(own[*i]))
-                .filter(|y| y.is_finite());
-            let (sum, n) = own_y.fold((0.0, 0.0), |(s, n), y| (s + y, n + 1.0));
-            if n == 0.0 {
-                continue;
-            }
-            let top = under
-                .iter()
-                .map(|i| frame.py_inside(upper[*i]))
-                .fold(f64::INFINITY, f64::min);
-            let bottom = under
-                .iter()
-                .map(|i| frame.py_inside(lower[*i]))
-                .fold(f64::NEG_INFINITY, f64::max);
-            for y in [top - 9.0, bottom + 9.0] {
-                let mine = [x0, y - 8.0, x1, y + 8.0];
-                let inside = mine[1] > frame.top - 4.0 && mine[3] < frame.bottom;
-                let apart = taken.iter().all(|o| {
-                    mine[0] >= o[2] || o[0] >= mine[2] || mine[1] >= o[3] || o[1] >= mine[3]
-                });
-                let cost = (y - sum / n).abs() - 0.004 * x0;
-                if inside && apart && best.is_none_or(|(c, _)| cost < c) {
-                    best = Some((cost, (x0 + 4.0, y)));
-                }
-            }
-        }
-        if let Some((_, at)) = best {
-            taken.push([at.0 - 4.0, at.1 - 8.0, at.0 + wide, at.1 + 8.0]);
-            pen.word(said, at, word)?;
-        }
-        Ok(())
-    }
-
     fn full<DB: DrawingBackend>(&self, pen: &Pen<DB>, frame: &Frame) -> Drawn<DB> {
         let inks = pen.inks;
         let ticks = frame
@@ -238,7 +172,7 @@ impl Spectrum {
                 .fold(top, f64::max);
             let y = (frame.py_inside(top) - 2.0).max(12.0);
             pen.down(x, 2.0, y, inks.line, 1.0)?;
-            let said = format!("{} Hz: {}", text::short(hz), text::decibels(difference));
+            let said = format!("{} Hz: {}", text::hertz(hz), text::decibels(difference));
             let wide = text::bold_width(&said, LABEL);
             let right = x + 6.0 + wide < pen.w;
             let (at, side) = if right {
@@ -270,23 +204,6 @@ impl Spectrum {
             .ticks(((frame.right - frame.left) / 56.0).max(2.0) as usize);
         frame.x_axis(pen, &ticks, &axis::labels(&ticks), "Hz")
     }
-}
-
-fn max_of(a: &[f64], b: &[f64], c: &[f64], d: &[f64]) -> Vec<f64> {
-    let at = |v: &[f64], i: usize| {
-        v.get(i)
-            .copied()
-            .filter(|x| x.is_finite())
-            .unwrap_or(f64::NEG_INFINITY)
-    };
-    (0..c.len())
-        .map(|i| at(a, i).max(at(b, i)).max(at(c, i)).max(at(d, i)))
-        .collect()
-}
-
-fn upper_of_negative(a: &[f64], b: &[f64], c: &[f64], d: &[f64]) -> Vec<f64> {
-    let minus = |v: &[f64]| v.iter().map(|x| -x).collect::<Vec<_>>();
-    minus(&max_of(&minus(a), &minus(b), &minus(c), &minus(d)))
 }
 
 impl Plot for Spectrum {
@@ -348,7 +265,7 @@ impl Plot for Spectrum {
         let peak = self.peak().map_or(String::new(), |(hz, _, difference)| {
             format!(
                 " They differ most at {} Hz, by {}.",
-                text::short(hz),
+                text::hertz(hz),
                 text::decibels(difference)
             )
         });

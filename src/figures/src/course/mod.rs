@@ -1,7 +1,10 @@
 //! A component around its event: power or average, with the two windows.
-use crate::axis::{self, Axis, Frame, LEFT, PlotBox, RIGHT, range};
-use crate::look::{mix, see_through};
-use crate::pen::{At, Drawn, LABEL, Pen, TICK, Word};
+mod windows;
+
+use crate::axis::{self, Axis, range};
+use crate::frame::{Frame, LEFT, PlotBox, RIGHT};
+use crate::inks::{mix, see_through};
+use crate::pen::{At, Drawn, Pen, TICK, Word};
 use crate::table::Table;
 use crate::weights::End;
 use crate::{Plot, nan, text};
@@ -126,130 +129,11 @@ impl Course {
         }
     }
 
-    fn washes<DB: DrawingBackend>(&self, pen: &Pen<DB>, frame: &Frame) -> Drawn<DB> {
-        let inks = pen.inks;
-        let middle = (frame.top + frame.bottom) / 2.0;
-        let (above, below) = if self.one_event() {
-            (frame.bottom, frame.top)
-        } else {
-            (middle, middle)
-        };
-        let sides = [
-            (
-                "reference",
-                self.reference,
-                inks.reference_wash,
-                inks.reference,
-                below,
-                frame.bottom,
-                &self.events[1],
-            ),
-            (
-                "signal",
-                self.signal,
-                inks.signal_wash,
-                inks.signal,
-                frame.top,
-                above,
-                &self.events[0],
-            ),
-        ];
-        let mut used: Vec<(f64, f64)> = vec![self.event_span(frame)];
-        for (said, [from, to], wash, ink, top, bottom, event) in sides {
-            let x0 = frame.px_inside(from);
-            let x1 = frame.px_inside(to);
-            pen.rect((x0, top), (x1, bottom), wash)?;
-            let said = if self.one_event() {
-                said.to_owned()
-            } else {
-                format!("{said}, from {}", text::fit(event, LABEL, 80.0))
-            };
-            let half = text::bold_width(&said, LABEL) / 2.0 + 2.0;
-            let free = |x: f64, used: &[(f64, f64)]| {
-                used.iter().all(|(a, b)| x + half <= *a || x - half >= *b)
-            };
-            let centre = (x0 + x1) / 2.0;
-            let shifts = [0.0, 1.0, -1.0, 2.0, -2.0, 3.0, -3.0, 4.0, -4.0];
-            let tries = shifts.map(|s| {
-                (centre + s * half * 0.6)
-                    .min(frame.right - half)
-                    .max(frame.left + half)
-            });
-            let x = tries
-                .into_iter()
-                .find(|x| free(*x, &used))
-                .unwrap_or(tries[0]);
-            used.push((x - half, x + half));
-            let word = Word::new(LABEL, ink).bold().at(At::Middle);
-            pen.word(&said, (x, frame.top - 9.0), word)?;
-        }
-        Ok(())
-    }
-
-    fn event_name(&self) -> String {
-        text::fit(&self.event, TICK, 90.0)
-    }
-
-    fn event_span(&self, frame: &Frame) -> (f64, f64) {
-        let half = text::width(&self.event_name(), TICK) / 2.0 + 3.0;
-        let x = frame.px(0.0);
-        (x - half, x + half)
-    }
-
-    /// Edges of the windows with their times below; a time that would run into its neighbour is moved aside.
-    fn edges<DB: DrawingBackend>(&self, pen: &Pen<DB>, frame: &Frame) -> Drawn<DB> {
-        let inks = pen.inks;
-        let mut edges: Vec<(f64, plotters::style::RGBAColor)> = Vec::new();
-        edges.extend(self.reference.map(|t| (t, inks.reference)));
-        edges.extend(self.signal.map(|t| (t, inks.signal)));
-        edges.sort_by(|a, b| a.0.total_cmp(&b.0));
-        let mut used = f64::NEG_INFINITY;
-        for (t, ink) in edges {
-            let at = frame.px(t);
-            if at < frame.left - 1.0 || at > frame.right + 1.0 {
-                continue;
-            }
-            pen.down(at, frame.top, frame.bottom + 4.0, ink, 1.5)?;
-            let said = format!("{} s", text::number(t, 2));
-            let half = text::bold_width(&said, TICK) / 2.0 + 1.0;
-            let x = at.max(used + half + 4.0);
-            pen.word(
-                &said,
-                (x, frame.bottom + 44.0),
-                Word::new(TICK, ink).bold().at(At::Middle),
-            )?;
-            used = x + half;
-        }
-        Ok(())
-    }
-
-    fn ink(&self, inks: &crate::look::Inks) -> plotters::style::RGBAColor {
+    fn ink(&self, inks: &crate::inks::Inks) -> plotters::style::RGBAColor {
         match self.end {
             Some(end) => end.ink(inks),
             None => inks.ink,
         }
-    }
-
-    fn captions<DB: DrawingBackend>(&self, pen: &Pen<DB>, frame: &Frame) -> Drawn<DB> {
-        let slate = Word::new(TICK, pen.inks.slate);
-        let said = match self.of {
-            Of::Average => "Average of the component, in its own unit",
-            _ if self.t_s.is_empty() => "The two windows around the event",
-            Of::Windows => "Power of component 1 against its reference mean, dB",
-            Of::Power => "Power against its reference mean, dB",
-        };
-        pen.word(&text::fit(said, TICK, pen.w - 8.0), (4.0, 9.0), slate)?;
-        if self.trials == 0 {
-            return Ok(());
-        }
-        let trials = format!(
-            "mean of {}; band: 95 % interval",
-            text::count(self.trials, "trial")
-        );
-        if text::width(said, TICK) + text::width(&trials, TICK) < pen.w - 40.0 {
-            pen.word(&trials, (frame.right, 9.0), slate.at(At::Right))?;
-        }
-        Ok(())
     }
 }
 

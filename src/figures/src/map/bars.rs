@@ -1,0 +1,84 @@
+//! A pattern in order of size, and the key of both drawings.
+use super::{KEY, Map};
+use crate::inks::{Ramp, step};
+use crate::pen::{At, Drawn, Pen, SMALL, TICK, Word};
+use crate::text;
+use plotters_backend::DrawingBackend;
+
+impl Map {
+    pub(super) fn key<DB: DrawingBackend>(&self, pen: &Pen<DB>, ramp: &Ramp) -> Drawn<DB> {
+        let wide = (pen.w - 60.0).clamp(80.0, 162.0);
+        let (left, top) = ((pen.w - wide) / 2.0, pen.h - 27.0);
+        for (i, color) in ramp.iter().enumerate() {
+            let x = |k: f64| left + wide * k / 11.0;
+            pen.rect((x(i as f64), top), (x(i as f64 + 1.0), top + 9.0), *color)?;
+        }
+        pen.frame((left, top), (left + wide, top + 9.0), pen.inks.line)?;
+        let word = Word::new(TICK, pen.inks.slate).at(At::Middle);
+        let limit = text::short(self.limit());
+        let unit = format!("{} per unit", text::fit(&self.unit, TICK, 90.0));
+        pen.word(&unit, (pen.w / 2.0, top - 9.0), word)?;
+        pen.word(&format!("−{limit}"), (left, top + 19.0), word.at(At::Left))?;
+        pen.word("0", (pen.w / 2.0, top + 19.0), word)?;
+        pen.word(&limit, (left + wide, top + 19.0), word.at(At::Right))
+    }
+
+    /// Where the map cannot be drawn: the largest entries as bars.
+    pub(super) fn bars<DB: DrawingBackend>(&self, pen: &Pen<DB>, ramp: &Ramp) -> Drawn<DB> {
+        let (top, bottom) = if self.small {
+            (2.0, pen.h - 2.0)
+        } else {
+            (22.0, pen.h - KEY - 20.0)
+        };
+        let row = if self.small { 5.0 } else { 15.0 };
+        let fit = ((bottom - top) / row).max(1.0) as usize;
+        let order = self.order();
+        let shown = &order[..order.len().min(fit)];
+        let (left, right) = if self.small {
+            (2.0, pen.w - 2.0)
+        } else {
+            (64.0, pen.w - 12.0)
+        };
+        let zero = (left + right) / 2.0;
+        let limit = self.limit();
+        if !self.small {
+            let said = format!(
+                "{} of {}, by size",
+                shown.len(),
+                text::count(order.len(), "channel")
+            );
+            pen.word(&said, (4.0, 8.0), Word::new(TICK, pen.inks.slate))?;
+            let note = format!(
+                "no map: {} without a position",
+                text::count(self.missing(), "channel")
+            );
+            let word = Word::new(SMALL, pen.inks.slate).at(At::Middle);
+            pen.word(
+                &text::fit(&note, SMALL, pen.w),
+                (pen.w / 2.0, pen.h - KEY - 8.0),
+                word,
+            )?;
+        }
+        for (k, i) in shown.iter().enumerate() {
+            let y = top + row * (k as f64 + 0.5);
+            let x = zero + (right - zero) * self.values[*i] / limit;
+            let half = if self.small { 1.5 } else { 4.5 };
+            pen.rect(
+                (zero, y - half),
+                (x, y + half),
+                ramp[step(self.values[*i], limit)],
+            )?;
+            if !self.small {
+                let word = Word::new(SMALL, pen.inks.slate).at(At::Right);
+                pen.name(&self.names[*i], (left - 6.0, y), left - 8.0, word)?;
+            }
+        }
+        pen.down(
+            zero,
+            top,
+            top + row * shown.len() as f64,
+            pen.inks.line,
+            1.0,
+        )
+    }
+}
