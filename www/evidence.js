@@ -14,11 +14,11 @@ export function mountEvidence(app) {
   const beside = figureSlot(app, "beside", { section: "evidence", title: "Beside it", hint: "the same held-out windows", label: "Held-out ratio of component 1 beside principal components and single channels" }).root;
   const alike = figureSlot(app, "alike", { section: "evidence", title: "If the sides were alike", hint: "", label: "Largest fitted ratio of every permuted arrangement, with the observed ones" }).root;
   const weaker = figureSlot(app, "alike-weaker", { section: "evidence", title: "The same, weaker end", hint: "", label: "Smallest fitted ratio of every permuted arrangement, with the observed ones" }).root;
-  const nothing = make("p", { class: "quiet small null" });
-  const pair = make("div", { class: "pair" }, make("div", {}, beside, nothing), make("div", {}, alike, weaker));
-  const trials = figureSlot(app, "trial-by-trial", { section: "evidence", title: "Trial by trial", hint: "held-out, in order of time; each trial scored by filters that never saw it", label: "Held-out ratio of every trial" }).root;
   const choices = moreChoices(app);
-  body.append(pair, trials, choices.root);
+  const nothing = make("p", { class: "quiet small null" });
+  const pair = make("div", { class: "pair" }, make("div", {}, beside, nothing, choices.root), make("div", {}, alike, weaker));
+  const trials = figureSlot(app, "trial-by-trial", { section: "evidence", title: "Trial by trial", hint: "held-out, in order of time; each trial scored by filters that never saw it", label: "Held-out ratio of every trial" }).root;
+  body.append(pair, trials);
   follow((state, before) => {
     if (state.recipe !== before.recipe) choices.show();
     if (state.sheet !== before.sheet) nothing.textContent = permuted(state.sheet);

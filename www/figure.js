@@ -16,6 +16,7 @@ import { saving } from "./save-figure.js";
  * @property {number} [width] fixed width in CSS px; otherwise the place's own
  * @property {number} [height] fixed height in CSS px; otherwise the figure's natural one
  * @property {() => Promise<Figure | null>} [load] where the data come from; otherwise the newest sheet
+ * @property {(figure: any) => boolean} [bare] whether the figure still lacks what it is about
  * @property {(figure: any) => Figure} [adjust] brings the figure's dials up to the choices, ahead of the numbers
  * @property {(box: PlotBox | null, size: { width: number, height: number }) => void} [placed] called after each drawing
  */
@@ -48,7 +49,7 @@ const PAPER_WIDTH = 688;
  * @returns {Slot}
  */
 export function figureSlot(app, name, plan) {
-  const canvas = make("canvas", { role: "img", "aria-label": plan.label });
+  const canvas = make("canvas", { role: "img", "aria-label": plan.label, hidden: true });
   const place = make("div", { class: "drawn" }, canvas);
   const caption = plan.title ? make("div", { class: "caption" }, make("b", {}, plan.title), make("span", { class: "quiet hint" }, plan.hint ?? "")) : null;
   const root = make("figure", { class: plan.title ? "figure" : "figure small-figure", "data-figure": name }, caption, place);
@@ -63,6 +64,7 @@ export function figureSlot(app, name, plan) {
     const height = plan.height ?? app.bridge.figureHeight(adjusted, width);
     const scale = printing ? 3 : Math.max(1, devicePixelRatio);
     app.bridge.draw(canvas, adjusted, { width, height, scale, dark: dark.matches && !printing });
+    canvas.hidden = false;
     canvas.style.width = plan.width ? `${width}px` : "";
     canvas.setAttribute("aria-label", `${plan.label}. ${readingOf(plan.section)}`);
     plan.placed?.(app.bridge.plotBox(adjusted, width, height), { width, height });
@@ -83,7 +85,7 @@ export function figureSlot(app, name, plan) {
         loaded = await newest();
       } while (again);
       // While the work goes on, the figure of the choices before stays.
-      if (!loaded && figure && now().phase === "working") return;
+      if (figure && now().phase === "working" && (!loaded || plan.bare?.(loaded))) return;
       figure = loaded;
       fresh = true;
       root.hidden = !figure;

@@ -12,11 +12,11 @@ let shown = null;
 /** @type {[string, string, string][]} */
 const PARTS = [
   ["map", "Pattern", ""],
-  ["spectrum", "Spectrum", "bands: 95 % interval"],
-  ["filter", "Filter", "largest weights"],
-  ["course", "Power around the event", "band: 95 % interval over trials"],
-  ["average", "Average around the event", "the component itself, not its power"],
-  ["trials", "Trials", "against each one’s reference, in order of time"],
+  ["spectrum", "Spectrum", "dB; bands: 95 % interval"],
+  ["filter", "Filter", ""],
+  ["course", "Power around the event", ""],
+  ["average", "Average around the event", ""],
+  ["trials", "Trials", "in order of time"],
 ];
 
 export const openedRow = {
@@ -26,9 +26,8 @@ export const openedRow = {
     const slots = PARTS.map(([kind, title, hint]) =>
       figureSlot(app, `${id}-${kind}`, { section: "components", title, hint, label: `${title} of ${id.replace("-", " component ")}` }));
     const [map, spectrum, filter, course, average, trials] = slots.map(({ root }) => root);
-    const left = make("div", { class: "one-side" }, map, filter);
-    const right = make("div", { class: "one-side" }, spectrum, course, average, trials);
-    const row = make("tr", { class: "whole" }, make("td", { colspan: columns }, make("div", { class: "opened-one" }, told, left, right)));
+    const last = make("div", { class: "halves" }, average, trials);
+    const row = make("tr", { class: "whole" }, make("td", { colspan: columns }, make("div", { class: "opened-one" }, told, map, spectrum, filter, course, last)));
     shown = { row, slots, told, id };
     tell();
     return row;

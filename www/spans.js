@@ -15,7 +15,7 @@ export function writeSpans(place, spans) {
 
 /** Keeps a number with its unit, and a comparison, on one line. @param {string} text */
 function bound(text) {
-  return text.replace(/(\d) (s|ms|min|Hz|kHz|%|µV|dB)(?![\p{L}\d])/gu, "$1\u00a0$2").replace(/(\S) ([=≤≥<>]) (?=\S)/g, "$1\u00a0$2\u00a0");
+  return text.replace(/(\d) (s|ms|min|Hz|kHz|%|µV|dB)(?![\p{L}\d])/gu, "$1\u00a0$2").replace(/(\d\u00a0min) (?=\d)/g, "$1\u00a0").replace(/(\S) ([=≤≥<>]) (?=\S)/g, "$1\u00a0$2\u00a0");
 }
 
 /** @param {Span[]} spans */

@@ -9,6 +9,7 @@ import { follow } from "./state.js";
 /** @typedef {"wait" | "now" | "work" | "done" | "look"} Knot */
 /** @typedef {{ knot: Knot, answer: string, percent?: number }} Answer */
 
+const WITHHELD = "withheld";
 /** @type {StepName[]} */
 const STEPS = ["recording", "channels", "windows", "compression", "components", "evidence", "take-away"];
 /** @type {Record<Knot, string>} */
@@ -16,11 +17,24 @@ const WORDS = { wait: "waiting", now: "waiting for you", work: "working", done: 
 
 export function mountThread() {
   follow((state) => {
-    const answers = STEPS.map((step) => answer(step, state));
+    const answers = STEPS.map((step) => remembered(step, answer(step, state), state));
     STEPS.forEach((step, i) => show(step, answers[i] ?? { knot: "wait", answer: "" }));
     weave(state);
   });
   weave(null);
+}
+
+/** What each step said when it was done. @type {Map<StepName, Answer>} */
+const known = new Map();
+
+/** While the evidence is on its way again, a step keeps what it said before. @param {StepName} step @param {Answer} said @param {State} state */
+function remembered(step, said, { phase, sheet }) {
+  if (!sheet) known.clear();
+  const open = said.answer === WITHHELD || (step === "components" && said.answer.includes("+"));
+  const before = known.get(step);
+  if (open && phase === "working" && before) return { ...said, knot: said.knot === "work" ? "work" : before.knot, answer: before.answer };
+  if (phase === "ready") known.set(step, said);
+  return said;
 }
 
 /** @param {StepName} step @param {Answer} said */
@@ -87,7 +101,7 @@ function settled(step, { summary, sheet, phase, taken }) {
 function evidence(sheet) {
   const leading = sheet.stronger[0];
   const measure = sheet.recipe.measure === "total" ? leading?.total : leading?.typical;
-  if (measure?.held_out === null || measure?.held_out === undefined) return { knot: sheet.windows ? "look" : "wait", answer: "withheld" };
+  if (measure?.held_out === null || measure?.held_out === undefined) return { knot: sheet.windows ? "look" : "wait", answer: WITHHELD };
   return { knot: "done", answer: `held-out ${factor(measure.held_out)}` };
 }
 
@@ -114,7 +128,8 @@ let woven = "";
 function weave(state) {
   const plan = strands(state);
   const pattern = JSON.stringify(plan);
-  if (pattern === woven) return;
+  const open = state?.phase === "working" && state.sheet && !passing(state.sheet).tested && woven.includes("up");
+  if (pattern === woven || open) return;
   woven = pattern;
   const random = chance(3);
   const paths = plan.flatMap((kinds, i) => {

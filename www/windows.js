@@ -36,6 +36,7 @@ export function mountWindows(app) {
   );
   const figure = figureSlot(app, "windows", {
     section: "windows", title: "Average time course", hint: "drag an edge, or move it with the arrow keys", label: "Power of the leading component around the event, with the two windows",
+    bare: (course) => !course.t_s.length,
     adjust,
     placed: (box) => ((plot = box), edges.over(box)),
   });

@@ -16,6 +16,12 @@ async function demo(options = {}) {
   return opened;
 }
 
+/** Brings a figure into sight and waits until it is drawn and its dials are laid over it. @param {import("playwright-core").Page} page @param {string} name */
+async function drawn(page, name) {
+  await page.evaluate((figure) => document.querySelector(`[data-figure="${figure}"]`)?.scrollIntoView({ behavior: "instant", block: "center" }), name);
+  await page.waitForFunction((figure) => document.querySelector(`[data-figure="${figure}"] canvas:not([hidden])`) !== null, name);
+}
+
 /** The recipe that the address holds. @param {import("playwright-core").Page} page */
 async function recipeInLink(page) {
   await page.waitForTimeout(400);
@@ -49,6 +55,7 @@ test("the ledger counts an attempt that the policy refuses", async () => {
 
 test("arrow keys move a window's edge, field and recipe follow", async () => {
   const { page } = await demo();
+  await drawn(page, "windows");
   const edge = page.getByRole("slider", { name: "signal from" });
   const field = page.getByRole("textbox", { name: /^signal from/ });
   const start = Number(await edge.getAttribute("aria-valuenow"));
@@ -66,11 +73,30 @@ test("arrow keys move a window's edge, field and recipe follow", async () => {
 
 test("an edge that meets its partner pushes it along", async () => {
   const { page } = await demo();
+  await drawn(page, "windows");
   const from = page.getByRole("slider", { name: "signal from" });
   const to = page.getByRole("slider", { name: "signal to" });
   await from.focus();
   await page.keyboard.press("End");
   assert.ok(Number(await from.getAttribute("aria-valuenow")) < Number(await to.getAttribute("aria-valuenow")));
+  await page.close();
+});
+
+test("a dragged edge stays under the pointer", async () => {
+  const { page } = await demo();
+  await drawn(page, "windows");
+  const edge = page.getByRole("slider", { name: "signal to" });
+  const box = await edge.boundingBox();
+  assert.ok(box);
+  const [x, y] = [box.x + box.width / 2, box.y + box.height - 12];
+  await page.mouse.move(x, y);
+  await page.mouse.down();
+  await page.mouse.move(x + 60, y, { steps: 12 });
+  await page.waitForTimeout(300);
+  const moved = await edge.boundingBox();
+  assert.ok(moved && Math.abs(moved.x - box.x - 60) < 3, `moved by ${(moved?.x ?? 0) - box.x} px`);
+  await page.mouse.up();
+  assert.equal(await reaches(page, ["ready", "error"]), "ready");
   await page.close();
 });
 
@@ -89,6 +115,7 @@ test("the dial sets C, and C = 1 is out of reach", async () => {
 
 test("the thumb of the dial stands under its value on the plot's axis", async () => {
   const { page } = await demo();
+  await drawn(page, "keep");
   const off = await page.evaluate(() => {
     const keep = /** @type {HTMLInputElement} */ (document.querySelector("#keep"));
     const canvas = /** @type {HTMLElement} */ (document.querySelector('[data-figure="keep"] canvas'));
@@ -142,6 +169,7 @@ test("every control has a name, every heading its level, every slider its words"
     return [...document.querySelectorAll("button, input, select, a, summary, [role=slider], [role=img], canvas, section")].filter((node) => shown(node) && !name(node)).map((node) => node.outerHTML.slice(0, 120));
   });
   assert.deepEqual(nameless, []);
+  await drawn(page, "windows");
   const sliders = await page.locator("[role=slider]:visible").all();
   assert.equal(sliders.length, 5);
   for (const slider of sliders) for (const word of ["aria-valuenow", "aria-valuemin", "aria-valuemax", "aria-valuetext"]) assert.ok(await slider.getAttribute(word), word);
