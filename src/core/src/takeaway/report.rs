@@ -153,9 +153,15 @@ impl Page<'_> {
         self.figure_in(name, "")
     }
 
+    /// Under a heading that names the component, the caption goes on without its name.
     fn figure_in(&self, name: &str, class: &str) -> Markup {
         html! {
             @if let Some((_, caption, svg)) = self.svg(name) {
+                @let own = name.starts_with("stronger-") || name.starts_with("weaker-");
+                @let caption = match caption.split_once(": ") {
+                    Some((_, rest)) if own => words::capital(rest),
+                    _ => caption.clone(),
+                };
                 figure class=[(!class.is_empty()).then_some(class)] {
                     figcaption { (caption) }
                     (drawing(svg))
@@ -203,7 +209,7 @@ impl Page<'_> {
         let out = of(|s| matches!(s, ChannelState::LeftOut | ChannelState::Unusable(_)));
         let replaced = of(|s| matches!(s, ChannelState::Interpolated));
         html! {
-            dl.facts {
+            div.pair { dl.facts {
                 @if !out.is_empty() { dt { "left out" } dd { (list(&out)) } }
                 @if !replaced.is_empty() { dt { "interpolated" } dd { (list(&replaced)) } }
                 dt { "reference" }
@@ -224,8 +230,7 @@ impl Page<'_> {
                     }
                     dt { "after it" } dd { (card.channels.len()) " channels of rank " (card.rank) " at " (words::hertz(card.rate_hz)) }
                 }
-            }
-            div.pair { (self.figure_in("channels-map", "narrow")) }
+            } (self.figure_in("channels-map", "narrow")) }
             (self.figure("channels"))
         }
     }
