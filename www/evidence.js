@@ -1,7 +1,8 @@
 /** Evidence: what else one could have used, what chance does, and every held-out trial in order of time. */
-import { count, find, make } from "./kit.js";
+import { find, make } from "./kit.js";
 import { numberField, select } from "./fields.js";
 import { figureSlot } from "./figure.js";
+import { count } from "./numbers.js";
 import { follow, now } from "./state.js";
 
 /** @typedef {import("./types").App} App */
