@@ -63,7 +63,7 @@ fn one(recipe: &Recipe, path: &Path, given: &Given, folder: &Path) -> Result<She
     folder::write(folder, &files)?;
     drop(meter);
     for warning in &analysis.sheet().warnings {
-        say::line(&format!("{}: note: {warning}", source::file_name(path)));
+        say::note(&format!("{}: note: {warning}", source::file_name(path)));
     }
     Ok(analysis.sheet().clone())
 }

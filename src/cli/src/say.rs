@@ -8,6 +8,13 @@ pub fn line(text: &str) {
     let _ = writeln!(std::io::stderr(), "teasel: {text}");
 }
 
+/// Writes a line for a person at a terminal; what it says stands in the results as well.
+pub fn note(text: &str) {
+    if std::io::stderr().is_terminal() {
+        line(text);
+    }
+}
+
 /// Says what went wrong, in one line.
 pub fn problem(problem: &Problem) {
     let text = problem.to_string();

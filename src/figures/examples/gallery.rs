@@ -37,7 +37,24 @@ fn write(folder: &Path, name: &str, figure: &Figure, width: u32) -> std::io::Res
     Ok(())
 }
 
-fn main() -> std::io::Result<()> {
+/// Every figure of the Night watch demo, computed.
+fn night_watch(folder: &Path) -> Result<(), Box<dyn std::error::Error>> {
+    std::fs::create_dir_all(folder)?;
+    let demo = teasel_core::demo::night_watch(1);
+    let mut analysis = teasel_core::analysis::Analysis::new(demo.recording, demo.recipe)?;
+    analysis.run(|_| ())?;
+    for (name, _) in teasel_figures::names(analysis.sheet()) {
+        if let Some(figure) = teasel_figures::from_sheet(analysis.sheet(), &name) {
+            write(folder, &name, &figure, width(&name))?;
+        }
+    }
+    let shown: Vec<usize> = (0..8).collect();
+    let traces = teasel_figures::traces(analysis.recording(), 60.0, 10.0, &shown);
+    write(folder, "traces", &traces, 888)?;
+    Ok(())
+}
+
+fn main() -> Result<(), Box<dyn std::error::Error>> {
     let folder = std::env::args()
         .nth(1)
         .unwrap_or_else(|| "gallery".to_owned());
@@ -76,5 +93,5 @@ fn main() -> std::io::Result<()> {
             888,
         )?;
     }
-    Ok(())
+    night_watch(&folder.join("watch"))
 }

@@ -385,3 +385,22 @@ fn the_dark_scheme_changes_colours_and_nothing_else() {
         sound(&name, &b);
     }
 }
+
+#[test]
+fn a_map_shows_the_value_of_every_channel() {
+    let mut sheet = sample::sheet(32, 40);
+    for i in [3, 12, 19, 29] {
+        let pattern = &mut sheet.stronger[0].pattern;
+        pattern.fill(0.0);
+        pattern[i] = 3.0;
+        let Some(Figure::Map(map)) = from_sheet(&sheet, "stronger-1-map") else {
+            panic!("no map");
+        };
+        // The spline passes within 1 % of every channel; the nearest point of the grid lies up to half a step away.
+        let [x, y] = map.places[i].unwrap();
+        let side = (map.grid.len() as f64).sqrt() as usize;
+        let index = |v: f64| ((v / 1.12 + 1.0) / 2.0 * (side - 1) as f64).round() as usize;
+        let shown = map.grid[index(-y) * side + index(x)];
+        assert!((shown - 3.0).abs() < 0.2, "channel {i}: {shown}");
+    }
+}

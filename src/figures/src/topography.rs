@@ -46,8 +46,8 @@ pub(crate) fn patches(
                 .map(|p| ((p.x - 0.5) * cell - extent, extent - (p.y - 0.5) * cell));
             let points: Vec<Point> = points.collect();
             let area = signed_area(&points);
-            // Rings run so that the larger values lie inside when the area, with y upwards, is negative.
-            let color = if area < 0.0 { ramp[k + 1] } else { ramp[k] };
+            // Rings run against the clock, with y upwards, where the larger values lie inside.
+            let color = if area > 0.0 { ramp[k + 1] } else { ramp[k] };
             let inside = clip(&points, &disc);
             if inside.len() > 2 {
                 painted.push((area.abs(), inside, color));
@@ -115,4 +115,81 @@ pub(crate) fn clip(polygon: &[Point], convex: &[Point]) -> Vec<Point> {
         }
     }
     kept
+}
+
+#[cfg(test)]
+mod tests {
+    #![allow(clippy::unwrap_used, reason = "tests")]
+    use super::*;
+    use crate::inks::Inks;
+    use crate::look::Scheme;
+
+    fn inside(polygon: &[Point], (x, y): Point) -> bool {
+        let next = polygon.iter().cycle().skip(1);
+        let crossed = polygon.iter().zip(next).filter(|(a, b)| {
+            (a.1 > y) != (b.1 > y) && x < a.0 + (y - a.1) / (b.1 - a.1) * (b.0 - a.0)
+        });
+        crossed.count() % 2 == 1
+    }
+
+    /// At every point the patch painted last has the colour of the value there, on hills, in holes and along the border.
+    #[test]
+    fn every_point_has_the_colour_of_its_value() {
+        let ramp = Inks::of(Scheme::Light).stronger;
+        let surfaces: [fn(f64, f64) -> f64; 4] = [
+            |x, y| 1.2 - 2.5 * (x * x + y * y),
+            |x, y| 0.9 * (3.0 * x).sin() * (4.0 * y).cos() + 0.1,
+            |x, y| x * 0.8 - y * 0.3,
+            |x, y| {
+                0.02 + (-(x * x + (y - 0.4) * (y - 0.4)) * 20.0).exp()
+                    - 0.3 * (-(x * x + y * y) * 9.0).exp()
+            },
+        ];
+        let (side, extent) = (57, 1.12);
+        let cell = 2.0 * extent / (side - 1) as f64;
+        for (n, value) in surfaces.into_iter().enumerate() {
+            let point = |k: usize| {
+                (
+                    (k % side) as f64 * cell - extent,
+                    extent - (k / side) as f64 * cell,
+                )
+            };
+            let grid: Vec<f64> = (0..side * side)
+                .map(|k| value(point(k).0, point(k).1))
+                .collect();
+            let painted = patches(&grid, extent, 1.0, 1.0, &ramp);
+            let mut seen = 0;
+            for k in 0..2000 {
+                let (turn, r) = (2.399963 * k as f64, 0.98 * (k as f64 / 2000.0).sqrt());
+                let (x, y) = (r * turn.cos(), r * turn.sin());
+                let near_level = ((value(x, y) + 1.0) * 5.5).fract();
+                if !(0.12..0.88).contains(&near_level) {
+                    continue;
+                }
+                let top = painted.iter().rfind(|(points, _)| inside(points, (x, y)));
+                assert_eq!(
+                    top.unwrap().1,
+                    ramp[step(value(x, y), 1.0)],
+                    "surface {n} at {x}, {y}"
+                );
+                seen += 1;
+            }
+            assert!(seen > 1000, "{seen} points");
+        }
+    }
+
+    #[test]
+    fn clipping_keeps_what_lies_inside() {
+        let square = vec![(-2.0, -0.5), (2.0, -0.5), (2.0, 0.5), (-2.0, 0.5)];
+        let disc = circle(1.0);
+        let kept = clip(&square, &disc);
+        assert!(kept.iter().all(|p| p.0.hypot(p.1) < 1.0 + 1e-9));
+        // A strip of half width h of the unit disc: 2·(h·√(1 − h²) + asin h), less what the 120-sided polygon lacks.
+        let strip = 2.0 * (0.5 * 0.75f64.sqrt() + 0.5f64.asin());
+        assert!((signed_area(&kept) - strip).abs() < 2e-3);
+        assert_eq!(
+            clip(&[(5.0, 5.0), (6.0, 5.0), (5.0, 6.0)], &disc),
+            Vec::new()
+        );
+    }
 }

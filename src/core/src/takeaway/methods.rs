@@ -119,8 +119,12 @@ fn channels(sheet: &Sheet) -> Option<String> {
     let replaced = of(|s| matches!(s, ChannelState::Interpolated));
     let used = all - out.len() - unusable.len();
     let mut text = format!(
-        "{} of {all} channels sampled at {} were analysed",
-        used,
+        "{} channels sampled at {} were analysed",
+        if used == all {
+            format!("All {all}")
+        } else {
+            format!("{used} of {all}")
+        },
         words::hertz(sheet.recording.rate_hz)
     );
     let mut notes = Vec::new();
@@ -163,8 +167,11 @@ fn filters(sheet: &Sheet) -> Option<String> {
     ))
 }
 
-fn dropped(side: &SideCard) -> usize {
-    side.dropped.values().sum()
+fn dropped(side: &SideCard) -> String {
+    match side.dropped.values().sum() {
+        0 => "none".into(),
+        n => words::grouped(n),
+    }
 }
 
 fn windows(sheet: &Sheet) -> Option<String> {
@@ -293,7 +300,7 @@ fn permutation(sheet: &Sheet) -> Option<String> {
     };
     let null = words::plain(&test.null, 300);
     Some(format!(
-        "They were tested against {how} (null hypothesis: {}); each component was compared with the largest ratio of every arrangement (the smallest, at the weaker end), which controls the family-wise error over components (Nichols & Holmes, 2002; {p}).",
+        "The components were tested against {how} (null hypothesis: {}); each component was compared with the largest ratio of every arrangement (the smallest, at the weaker end), which controls the family-wise error over components (Nichols & Holmes, 2002; {p}).",
         quoted_lower(null.trim_end_matches('.'))
     ))
 }

@@ -52,10 +52,6 @@ fn spans(spans: &[Span]) -> Markup {
     }
 }
 
-fn said(reading: &Reading) -> String {
-    reading.text.iter().map(|s| s.text.as_str()).collect()
-}
-
 impl Page<'_> {
     fn reading(&self, section: Section) -> Option<&Reading> {
         self.readings.iter().find(|r| r.section == section)
@@ -152,37 +148,25 @@ impl Page<'_> {
         self.figures.iter().find(|(n, _, _)| n == name)
     }
 
-    /// A figure with its caption and, as its text alternative, the reading of its section.
+    /// A figure with its caption; its text alternative is in the SVG, its reading beside it.
     fn figure(&self, name: &str) -> Markup {
         self.figure_in(name, "")
     }
 
+    /// Under a heading that names the component, the caption goes on without its name.
     fn figure_in(&self, name: &str, class: &str) -> Markup {
         html! {
             @if let Some((_, caption, svg)) = self.svg(name) {
+                @let own = name.starts_with("stronger-") || name.starts_with("weaker-");
+                @let caption = match caption.split_once(": ") {
+                    Some((_, rest)) if own => words::capital(rest),
+                    _ => caption.clone(),
+                };
                 figure class=[(!class.is_empty()).then_some(class)] {
                     figcaption { (caption) }
-                    div role="img" aria-label=(self.alternative(name, caption)) { (PreEscaped(svg)) }
+                    (drawing(svg))
                 }
             }
-        }
-    }
-
-    fn alternative(&self, name: &str, caption: &str) -> String {
-        let section = match name {
-            "overview" | "traces" => Section::Recording,
-            "channels-map" | "channels" => Section::Channels,
-            "windows" => Section::Windows,
-            "eigenvalues" | "keep" => Section::Compression,
-            "beside" | "alike" | "alike-weaker" | "trial-by-trial" => Section::Evidence,
-            _ => Section::Components,
-        };
-        let component = ["stronger", "weaker"]
-            .iter()
-            .any(|end| name.starts_with(end));
-        match self.reading(section).filter(|_| !component) {
-            Some(reading) => format!("{caption}. {}", said(reading)),
-            None => caption.into(),
         }
     }
 
@@ -225,7 +209,7 @@ impl Page<'_> {
         let out = of(|s| matches!(s, ChannelState::LeftOut | ChannelState::Unusable(_)));
         let replaced = of(|s| matches!(s, ChannelState::Interpolated));
         html! {
-            dl.facts {
+            div.pair { dl.facts {
                 @if !out.is_empty() { dt { "left out" } dd { (list(&out)) } }
                 @if !replaced.is_empty() { dt { "interpolated" } dd { (list(&replaced)) } }
                 dt { "reference" }
@@ -246,8 +230,7 @@ impl Page<'_> {
                     }
                     dt { "after it" } dd { (card.channels.len()) " channels of rank " (card.rank) " at " (words::hertz(card.rate_hz)) }
                 }
-            }
-            div.pair { (self.figure_in("channels-map", "narrow")) }
+            } (self.figure_in("channels-map", "narrow")) }
             (self.figure("channels"))
         }
     }
@@ -259,13 +242,13 @@ impl Page<'_> {
     fn components(&self) -> Markup {
         let sheet = self.sheet;
         html! {
-            table.comps {
+            div.scroll tabindex="0" role="region" aria-label="What differs" { table.comps {
                 caption { "What differs" }
                 thead {
                     tr {
                         th scope="col" {}
-                        th scope="col" { "pattern" }
-                        th scope="col" { "spectrum" }
+                        th.l scope="col" { "pattern" }
+                        th.l scope="col" { "spectrum" }
                         th.l scope="col" { "largest at" }
                         th scope="col" { "peak" }
                         th scope="col" { "typical, held-out" }
@@ -280,7 +263,7 @@ impl Page<'_> {
                     @if !sheet.weaker.is_empty() { tr.end { td colspan="9" { span.r { "Weaker in signal" } } } }
                     @for (k, component) in sheet.weaker.iter().enumerate() { (self.row("weaker", k, component)) }
                 }
-            }
+            } }
             @for (end, k) in self.looked_at() { (self.close_up(end, k)) }
         }
     }
@@ -288,9 +271,7 @@ impl Page<'_> {
     fn row(&self, end: &str, k: usize, component: &Component) -> Markup {
         let small = |part: &str| {
             html! {
-                @if let Some((_, caption, svg)) = self.svg(&format!("{end}-{}-{part}", k + 1)) {
-                    div role="img" aria-label=(caption) { (PreEscaped(svg)) }
-                }
+                @if let Some((_, _, svg)) = self.svg(&format!("{end}-{}-{part}", k + 1)) { (drawing(svg)) }
             }
         };
         // A ratio that could not be tested is not quoted alone.
@@ -435,18 +416,20 @@ impl Page<'_> {
     }
 }
 
+/// A drawing of ours as it is, without marks that turn the direction of writing: a label may hold one.
+fn drawing(svg: &str) -> PreEscaped<String> {
+    PreEscaped(svg.chars().filter(|c| !words::invisible(*c)).collect())
+}
+
 /// Marks that turn the direction of writing, made visible as JSON writes them, so that the text stays valid and honest.
 fn visible(json: &str) -> String {
     json.chars()
-        .map(|c| match c {
-            '\u{200b}'..='\u{200f}'
-            | '\u{2028}'..='\u{202e}'
-            | '\u{2060}'..='\u{206f}'
-            | '\u{feff}'
-            | '\u{61c}' => {
+        .map(|c| {
+            if words::invisible(c) {
                 format!("\\u{:04x}", c as u32)
+            } else {
+                c.to_string()
             }
-            c => c.to_string(),
         })
         .collect()
 }

@@ -23,7 +23,7 @@ pub(super) fn plain(text: &str, most: usize) -> String {
 }
 
 /// Marks that turn the direction of writing or take no room.
-fn invisible(c: char) -> bool {
+pub(super) fn invisible(c: char) -> bool {
     matches!(c,
         '\u{200b}'..='\u{200f}' | '\u{2028}'..='\u{202e}' | '\u{2060}'..='\u{206f}' | '\u{feff}' | '\u{61c}')
 }

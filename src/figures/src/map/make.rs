@@ -6,6 +6,9 @@ use std::rc::Rc;
 use teasel_core::describe::map::{EXTENT, MapGrid};
 use teasel_core::sheet::{Component, Sheet};
 
+/// Smoothing of the spline: so little that the map shows every channel's own value.
+const LAMBDA: f64 = 1e-8;
+
 /// Positions and the grid made for them.
 type Made = (Vec<[f64; 3]>, Rc<MapGrid>);
 
@@ -21,7 +24,7 @@ fn grid_of(positions: &[[f64; 3]]) -> Option<Rc<MapGrid>> {
         {
             return Some(Rc::clone(grid));
         }
-        let grid = Rc::new(MapGrid::new(positions, SIDE).ok()?);
+        let grid = Rc::new(MapGrid::smoothed(positions, SIDE, LAMBDA).ok()?);
         *last = Some((positions.to_vec(), Rc::clone(&grid)));
         Some(grid)
     })

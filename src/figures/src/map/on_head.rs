@@ -52,13 +52,13 @@ impl Map {
                 centre.1 - p[1] / self.radius * r,
             )
         };
-        let under = |i: usize| ramp[step(self.values[i], limit)];
+        let under = |[x, y]: [f64; 2]| ramp[step(self.at(x, y), limit)];
         let known: Vec<(usize, Point)> = (0..self.places.len())
             .filter_map(|i| Some((i, to(self.places[i]?))))
             .collect();
         let size = if known.len() > 70 { 1.2 } else { 1.8 };
         for (i, at) in &known {
-            let ground = under(*i);
+            let ground = under(self.places[*i].unwrap_or_default());
             pen.dot(*at, size, mix(pen.inks.on(ground), ground, 0.6))?;
         }
         let largest = self
@@ -66,7 +66,7 @@ impl Map {
             .into_iter()
             .find_map(|i| known.iter().find(|k| k.0 == i));
         if let Some((i, at)) = largest {
-            let ground = under(*i);
+            let ground = under(self.places[*i].unwrap_or_default());
             let ink = pen.inks.on(ground);
             pen.ring(*at, 4.0, ink, 1.6, ground)?;
             let said = text::fit(&self.names[*i], LABEL, r * 0.9);
