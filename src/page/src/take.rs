@@ -4,7 +4,7 @@ use teasel_core::analysis::Analysis;
 use teasel_core::error::{Kind, Problem, Result};
 use teasel_core::sheet::Sheet;
 use teasel_core::takeaway::{
-    archive, recipe_json, report_html, results_json, weights_csv, weights_json,
+    archive, methods, recipe_json, references, report_html, results_json, weights_csv, weights_json,
 };
 use teasel_figures::Look;
 
@@ -21,12 +21,22 @@ pub fn file(analysis: &Analysis, kind: &str, extras: Vec<NamedBytes>) -> Result<
         "recipe" => recipe_json(&sheet.recipe).map(String::into_bytes),
         "report" => Ok(report_html(sheet, &figures(sheet)).into_bytes()),
         "everything" => everything(sheet, extras),
+        "methods" => Ok(paragraph(sheet).into_bytes()),
         other => Err(Problem::new(
             Kind::Unknown,
             format!("there is no take-away called {other}"),
             "Choose one of the take-aways on the page.",
         )),
     }
+}
+
+/// The methods paragraph with its references below, as text.
+fn paragraph(sheet: &Sheet) -> String {
+    let cited = references(sheet);
+    if cited.is_empty() {
+        return methods(sheet);
+    }
+    format!("{}\n\n{}", methods(sheet), cited.join("\n"))
 }
 
 fn everything(sheet: &Sheet, extras: Vec<NamedBytes>) -> Result<Vec<u8>> {
