@@ -22,7 +22,7 @@ fn refused(bytes: &[u8]) -> Problem {
         !line.contains('\n') && line.starts_with("a.edf: "),
         "{line}"
     );
-    *Box::new(problem)
+    problem
 }
 
 #[test]
@@ -278,6 +278,40 @@ fn a_long_file_is_read_in_slices() {
             .all(|s| s[0].0 < s[1].0 && s[0].1 == s[1].1)
     );
     assert_eq!(opening.finish().unwrap().sample_count(), 4_000_000);
+}
+
+/// Fails to read beyond a place.
+struct Failing(MemorySource, u64);
+
+impl Source for Failing {
+    fn name(&self) -> &str {
+        self.0.name()
+    }
+    fn len(&self) -> u64 {
+        self.0.len()
+    }
+    fn read_at(&mut self, offset: u64, out: &mut [u8]) -> teasel_core::error::Result<()> {
+        if offset + out.len() as u64 > self.1 {
+            return Err(Problem::new(
+                Kind::Storage,
+                "the disk is gone",
+                "plug it in",
+            ));
+        }
+        self.0.read_at(offset, out)
+    }
+}
+
+#[test]
+fn a_disk_that_goes_away() {
+    let bytes = Plan::new(vec![signal("Fz", 9000)], 600).bytes();
+    let source = Failing(MemorySource::new("a.edf", bytes), 9_000_000);
+    let mut opening = Opening::begin(Box::new(source), vec![], OpenOptions::default()).unwrap();
+    assert!(opening.step().is_ok());
+    assert_eq!(opening.step().unwrap_err().kind, Kind::Storage);
+    assert_eq!(opening.step().unwrap_err().kind, Kind::Storage, "and still");
+    let problem = opening.finish().unwrap_err();
+    assert_eq!(problem.file.as_deref(), Some("a.edf"));
 }
 
 #[test]
