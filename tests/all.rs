@@ -3,4 +3,5 @@
 mod contrast;
 mod describe;
 mod prepare;
+mod readers;
 mod takeaway;

@@ -10,6 +10,8 @@ mod carried;
 mod files;
 #[path = "takeaway/recipes.rs"]
 mod recipes;
+#[path = "takeaway/reports.rs"]
+mod reports;
 #[path = "takeaway/sample.rs"]
 mod sample;
 #[path = "takeaway/sentences.rs"]

@@ -1,7 +1,8 @@
 /** Channels: filters, reference, and which channels are left out. */
-import { find, make, typed, written } from "./kit.js";
+import { find, make } from "./kit.js";
 import { numberField, select } from "./fields.js";
 import { figureSlot } from "./figure.js";
+import { typed, written } from "./numbers.js";
 import { follow, now } from "./state.js";
 
 /** @typedef {import("./types").App} App */

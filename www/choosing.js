@@ -1,5 +1,6 @@
 /** One question before a long computation: which event holds the activity of interest. */
-import { count, find, make, makeSvg, seconds, size } from "./kit.js";
+import { find, make, makeSvg } from "./kit.js";
+import { count, seconds, size } from "./numbers.js";
 import { follow, now } from "./state.js";
 
 /** @typedef {import("./types").App} App */

@@ -1,7 +1,8 @@
 /** Components: one row each, on one shared axis of ratios; one row can be opened. */
-import { factor, find, interval, make, probability } from "./kit.js";
+import { find, make } from "./kit.js";
 import { picks } from "./fields.js";
 import { figureSlot } from "./figure.js";
+import { factor, interval, probability } from "./numbers.js";
 import { openedRow } from "./opened-row.js";
 import { follow, now } from "./state.js";
 

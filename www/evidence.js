@@ -2,6 +2,7 @@
 import { find, make } from "./kit.js";
 import { numberField, select } from "./fields.js";
 import { figureSlot } from "./figure.js";
+import { count } from "./numbers.js";
 import { follow, now } from "./state.js";
 
 /** @typedef {import("./types").App} App */
@@ -10,15 +11,26 @@ import { follow, now } from "./state.js";
 /** @param {App} app */
 export function mountEvidence(app) {
   const body = find("#evidence .body");
-  const pair = make("div", { class: "pair" },
-    figureSlot(app, "beside", { section: "evidence", title: "Beside it", hint: "the same held-out windows", label: "Held-out ratio of component 1 beside principal components and single channels" }).root,
-    figureSlot(app, "alike", { section: "evidence", title: "If the sides were alike", hint: "", label: "Largest fitted ratio of every permuted arrangement, with the observed ones" }).root);
+  const beside = figureSlot(app, "beside", { section: "evidence", title: "Beside it", hint: "the same held-out windows", label: "Held-out ratio of component 1 beside principal components and single channels" }).root;
+  const alike = figureSlot(app, "alike", { section: "evidence", title: "If the sides were alike", hint: "", label: "Largest fitted ratio of every permuted arrangement, with the observed ones" }).root;
+  const weaker = figureSlot(app, "alike-weaker", { section: "evidence", title: "The same, weaker end", hint: "", label: "Smallest fitted ratio of every permuted arrangement, with the observed ones" }).root;
+  const nothing = make("p", { class: "quiet small null" });
+  const pair = make("div", { class: "pair" }, make("div", {}, beside, nothing), make("div", {}, alike, weaker));
   const trials = figureSlot(app, "trial-by-trial", { section: "evidence", title: "Trial by trial", hint: "held-out, in order of time; each trial scored by filters that never saw it", label: "Held-out ratio of every trial" }).root;
   const choices = moreChoices(app);
   body.append(pair, trials, choices.root);
   follow((state, before) => {
     if (state.recipe !== before.recipe) choices.show();
+    if (state.sheet !== before.sheet) nothing.textContent = permuted(state.sheet);
   });
+}
+
+/** What the permutation supposes, and how p is counted. @param {import("./types").Sheet | null} sheet */
+function permuted(sheet) {
+  const test = sheet?.permutation;
+  if (!test || !test.done) return "";
+  const many = test.exact ? `All ${count(test.done)} arrangements were tried` : `${count(test.done)} arrangements were drawn`;
+  return `${test.null.replace(/\.?$/, ".")} ${many}; p is (b + 1) / (m + 1), where b of m reach the observed ratio. Each component is held against the largest ratio of an arrangement, so p holds for all of them together.`;
 }
 
 /** @param {App} app */

@@ -1,5 +1,6 @@
 /** Places to fill in: number fields, picks and selects that show the recipe and change it. */
-import { make, typed, written } from "./kit.js";
+import { make } from "./kit.js";
+import { typed, written } from "./numbers.js";
 
 /**
  * A number field. It speaks up (aria-invalid) where the text is no number in range; it never changes what the user is typing.

@@ -1,8 +1,8 @@
 /** A figure on the sheet: canvas, caption, saving, the numbers behind it, and redrawing whenever its place or the scheme changes. */
-import { afterRest, download, make } from "./kit.js";
-import { csv } from "./tables.js";
+import { afterRest, make } from "./kit.js";
 import { follow, now } from "./state.js";
 import { readingOf } from "./readings.js";
+import { saving } from "./save-figure.js";
 
 /** @typedef {import("./types").App} App */
 /** @typedef {import("./types").Figure} Figure */
@@ -182,43 +182,4 @@ export function mountFigures() {
   });
   addEventListener("beforeprint", () => turn(true));
   addEventListener("afterprint", () => turn(false));
-}
-
-/**
- * @param {App} app
- * @param {Slot} slot
- */
-function saving(app, slot) {
-  const width = 888;
-  const size = (/** @type {Figure} */ figure) => ({ width, height: app.bridge.figureHeight(figure, width) });
-  const asSvg = (/** @type {Figure} */ figure) => download(`${slot.name}.svg`, app.bridge.svg(figure, width, size(figure).height), "image/svg+xml");
-  const asPng = async (/** @type {Figure} */ figure) => download(`${slot.name}.png`, new Uint8Array(await pngBytes(app, figure)), "image/png");
-  const asCsv = (/** @type {Figure} */ figure) => download(`${slot.name}.csv`, csv(app.bridge.table(figure)), "text/csv");
-  const button = (/** @type {string} */ label, /** @type {(figure: Figure) => void} */ act) =>
-    make("button", { type: "button", class: "button slim", click: () => {
-      const figure = slot.figure();
-      if (figure) act(figure);
-      menu.open = false;
-    } }, label);
-  const menu = make("details", { class: "save" },
-    make("summary", {}, "Save figure", make("span", { class: "aside" }, `: ${slot.plan.title}`)),
-    make("p", {}, button("SVG", asSvg), button("PNG", asPng), button("Numbers", asCsv)));
-  menu.addEventListener("keydown", (event) => event.key === "Escape" && (menu.open = false));
-  menu.addEventListener("focusout", (event) => {
-    if (!menu.contains(/** @type {Node | null} */ (event.relatedTarget)) && event.relatedTarget) menu.open = false;
-  });
-  return menu;
-}
-
-/**
- * A PNG of a figure for files: light, two pixels to a CSS pixel.
- * @param {App} app
- * @param {Figure} figure
- */
-export async function pngBytes(app, figure) {
-  const canvas = make("canvas");
-  const width = 888;
-  app.bridge.draw(canvas, figure, { width, height: app.bridge.figureHeight(figure, width), scale: 2, dark: false });
-  const blob = await new Promise((/** @type {(blob: Blob | null) => void} */ done) => canvas.toBlob(done, "image/png"));
-  return blob ? blob.arrayBuffer() : new ArrayBuffer(0);
 }

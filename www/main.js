@@ -1,16 +1,16 @@
 /** The page: starts the bridge, joins the parts, and opens recordings through one door. */
 import { start } from "./bridge.js";
-import { eachFrame, find, make, size } from "./kit.js";
+import { find, make } from "./kit.js";
 import { mountChannels } from "./channels.js";
 import { mountChoosing } from "./choosing.js";
 import { mountComponents } from "./components.js";
 import { mountCompression } from "./compression.js";
 import { mountEvidence } from "./evidence.js";
-import { figuresOf, mountFigures, refreshFigures, settleFigures } from "./figure.js";
+import { figuresOf, mountFigures } from "./figure.js";
 import { mountFinding } from "./finding.js";
 import { mountFirst } from "./first.js";
 import { mountLedger } from "./ledger.js";
-import { unsay } from "./notices.js";
+import { size } from "./numbers.js";
 import { door } from "./open.js";
 import { mountProgress } from "./progress.js";
 import { mountReadings } from "./readings.js";
@@ -21,13 +21,9 @@ import { numbersOf } from "./tables.js";
 import { mountTakeaway } from "./takeaway.js";
 import { mountThread } from "./thread.js";
 import { mountWindows } from "./windows.js";
+import { mountWork } from "./work.js";
 
 /** @typedef {import("./types").Bridge} Bridge */
-/** @typedef {import("./types").Sheet} Sheet */
-/** @typedef {import("./types").SheetNews} SheetNews */
-
-/** The generation of the choices in force; unknown while they are on their way. */
-let expected = Infinity;
 
 mountLedger();
 mountThread();
@@ -51,35 +47,10 @@ opened.then(({ begin }) => begin(), (thrown) => {
 
 /** @param {Bridge} bridge */
 function join(bridge) {
-  let sent = 0;
-  const send = eachFrame(() => {
-    const { recipe, phase } = now();
-    if (!recipe || phase === "choosing") return;
-    put({ phase: "working" });
-    sent += 1;
-    const mine = sent;
-    bridge.setRecipe(recipe).then(
-      (generation) => {
-        if (generation !== null && mine === sent) expected = generation;
-      },
-      (thrown) => mine === sent && doors.failed(thrown),
-    );
-  });
+  const work = mountWork(bridge, { failed: (thrown) => doors.failed(thrown), died: () => doors.died() });
   /** @type {import("./types").App} */
-  const app = {
-    bridge,
-    change(edit) {
-      const { recipe, sheet } = now();
-      if (!recipe) return;
-      const next = structuredClone(recipe);
-      edit(next);
-      expected = Infinity;
-      put({ recipe: next, stale: Boolean(sheet?.stronger.length) });
-      unsay("#problem");
-      send();
-    },
-  };
-  const doors = door(app, send);
+  const app = { bridge, change: work.change };
+  const doors = door(app, work.send);
   mountRecording(app);
   mountChannels(app);
   mountWindows(app);
@@ -90,13 +61,12 @@ function join(bridge) {
   mountTakeaway(app, doors.failed);
   mountChoosing(app, () => {
     put({ phase: "working" });
-    send();
+    work.send();
   });
   mountProgress(() => void doors.stop());
   mountRecipeLink(bridge);
   head();
   sections(app);
-  listen(bridge, doors);
   return doors;
 }
 
@@ -121,36 +91,4 @@ function sections(app) {
     const update = numbersOf(app, /** @type {HTMLElement} */ (section), () => figuresOf(section.id).filter(({ plan, place }) => plan.width === undefined && place.isConnected));
     follow((state, before) => state.sheet !== before.sheet && update());
   }
-}
-
-/** @param {Bridge} bridge @param {ReturnType<typeof door>} doors */
-function listen(bridge, doors) {
-  bridge.on("progress", (progress) => now().phase === "working" && put({ progress }));
-  bridge.on("sheet", (/** @type {SheetNews} */ { sheet, readings, figures, drawn, generation }) => {
-    const whole = sheet.stronger.length > 0;
-    const told = whole || !now().stale ? { readings } : {};
-    put({ sheet: carriedOver(sheet, now().sheet), ...told, figures, drawn: drawn ?? {}, generation, stale: now().stale && !(whole && generation >= expected) });
-    document.documentElement.toggleAttribute("data-sheet", Boolean(now().sheet?.stronger.length));
-    refreshFigures();
-  });
-  bridge.on("finished", ({ generation }) => {
-    if (generation < expected) return;
-    put({ phase: "ready", progress: null, stale: false });
-    refreshFigures();
-    void settleFigures();
-  });
-  bridge.on("problem", (problem) => doors.failed(problem));
-  bridge.on("died", () => doors.died());
-}
-
-/**
- * Results are never blanked: until the new ones are there, the sheet shows those of the choices before (greyed, see `stale`).
- * @param {Sheet} sheet
- * @param {Sheet | null} before
- * @returns {Sheet}
- */
-function carriedOver(sheet, before) {
-  if (!before || sheet.stronger.length || !before.stronger.length) return sheet;
-  const { stronger, weaker, compare, permutation, folds, curve } = before;
-  return { ...before, ...sheet, stronger, weaker, compare, permutation, folds, curve, preparation: sheet.preparation ?? before.preparation, windows: sheet.windows ?? before.windows, compression: sheet.compression ?? before.compression };
 }

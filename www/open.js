@@ -1,7 +1,8 @@
 /** The one door: drop, picker, demo and link meet here, and what goes wrong is said in the error's own words. */
-import { clock, count, download, find, make } from "./kit.js";
+import { download, find, make } from "./kit.js";
 import { isSmall } from "./choosing.js";
 import { asProblem, say, sentence, unsay, whereabouts } from "./notices.js";
+import { clock, count } from "./numbers.js";
 import { clearLink, recipeAtStart } from "./recipe-link.js";
 import { now, put } from "./state.js";
 
@@ -95,10 +96,11 @@ export function door({ bridge, change: edit }, compute) {
     if (summary) await ask(summary).catch(failed);
   }
 
-  async function goOn() {
+  /** Takes the same choices again: the worker computes only what is missing. */
+  function goOn() {
     unsay("#hint");
     put({ phase: "working" });
-    await bridge.resume().catch(failed);
+    compute();
   }
 
   /** Another worker, the same recording, the same choices. */
@@ -152,7 +154,7 @@ export function door({ bridge, change: edit }, compute) {
       const { summary, recipe } = now();
       await bridge.stop();
       put({ phase: !summary ? "empty" : recipe ? "ready" : "choosing", progress: null });
-      if (summary && recipe) say("#hint", { title: "Stopped", text: ["What was computed before stays on the sheet."], ways: [{ label: "Go on", main: true, act: () => void goOn() }, { label: "Leave it", act: () => unsay("#hint") }] });
+      if (summary && recipe) say("#hint", { title: "Stopped", text: ["What was computed before stays on the sheet."], ways: [{ label: "Go on", main: true, act: goOn }, { label: "Leave it", act: () => unsay("#hint") }] });
     },
     died() {
       put({ phase: "error", progress: null });

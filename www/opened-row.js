@@ -1,6 +1,7 @@
 /** The whole of one component: map, spectrum, filter, single trials, course and average. */
-import { factor, make } from "./kit.js";
+import { make } from "./kit.js";
 import { figureSlot } from "./figure.js";
+import { factor } from "./numbers.js";
 import { follow, now } from "./state.js";
 
 /** @typedef {import("./types").App} App */

@@ -1,5 +1,6 @@
 /** Progress: what is at work, how far it is, and a way to stop it. Short work is never mentioned. */
-import { afterRest, count, find } from "./kit.js";
+import { afterRest, find } from "./kit.js";
+import { count } from "./numbers.js";
 import { speak } from "./readings.js";
 import { follow, now } from "./state.js";
 

@@ -1,7 +1,8 @@
 /** Recording: the whole of it, and ten seconds under a frame that can be moved. */
-import { clock, find, make, makeSvg } from "./kit.js";
+import { find, make, makeSvg } from "./kit.js";
 import { keyed } from "./edges.js";
 import { figureSlot } from "./figure.js";
+import { clock } from "./numbers.js";
 import { follow, now } from "./state.js";
 
 /** @typedef {import("./types").App} App */

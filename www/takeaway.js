@@ -1,6 +1,8 @@
 /** Take-away: files, the link, the methods paragraph. */
-import { download, find, size } from "./kit.js";
-import { figuresOf, pngBytes } from "./figure.js";
+import { download, find } from "./kit.js";
+import { figuresOf } from "./figure.js";
+import { size } from "./numbers.js";
+import { pngBytes } from "./save-figure.js";
 import { follow, now, put } from "./state.js";
 
 /** @typedef {import("./types").App} App */
@@ -10,6 +12,9 @@ const FILES = {
   "weights-json": ["weights.json", "application/json"], "weights-csv": ["weights.csv", "text/csv"], "results-json": ["results.json", "application/json"],
   recipe: ["recipe.json", "application/json"], report: ["report.html", "text/html"], everything: ["teasel.zip", "application/zip"],
 };
+
+/** Parts of the table's rows; the same things come large. */
+const SMALL = /-small$|-ratio$|^ratio-axis$/;
 
 /** @param {App} app @param {(thrown: unknown) => void} failed */
 export function mountTakeaway(app, failed) {
@@ -52,7 +57,7 @@ async function showMethods(app) {
 /** Every figure of the sheet as PNG; the core adds the SVG files itself. @param {App} app */
 async function pictures(app) {
   const made = [];
-  for (const name of now().figures) {
+  for (const name of now().figures.filter((one) => !SMALL.test(one))) {
     const shown = figuresOf().find((slot) => slot.name === name)?.figure();
     const figure = shown ?? (await app.bridge.figure(name));
     if (figure) made.push({ name: `figures/${name}.png`, bytes: new Uint8Array(await pngBytes(app, figure)) });

@@ -1,6 +1,7 @@
 /** The thread: seven knots, each with its step's answer, and between them the fibres as far as they are teased apart. */
-import { clock, factor, find, makeSvg } from "./kit.js";
+import { find, makeSvg } from "./kit.js";
 import { chance, smooth } from "./curve.js";
+import { clock, factor } from "./numbers.js";
 import { follow } from "./state.js";
 
 /** @typedef {import("./types").State} State */

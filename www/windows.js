@@ -1,8 +1,9 @@
 /** Windows: which event, from when to when, by typing, dragging or arrows. */
-import { find, make, seconds } from "./kit.js";
+import { find, make } from "./kit.js";
 import { edgesOver } from "./edges.js";
 import { numberField, picks, select } from "./fields.js";
 import { figureSlot } from "./figure.js";
+import { seconds } from "./numbers.js";
 import { follow, now } from "./state.js";
 
 /** @typedef {import("./types").App} App */

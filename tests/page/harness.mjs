@@ -1,6 +1,6 @@
 // One browser, one fresh page a test, and a witness of everything that must not happen: requests, blocked attempts, errors.
 import { existsSync } from "node:fs";
-import { mkdir, mkdtemp, rm } from "node:fs/promises";
+import { mkdir, mkdtemp, readFile, rm, writeFile } from "node:fs/promises";
 import { tmpdir } from "node:os";
 import { join, resolve } from "node:path";
 import { fileURLToPath, pathToFileURL } from "node:url";
@@ -9,6 +9,8 @@ import { chromium } from "playwright-core";
 export const root = resolve(fileURLToPath(new URL("../..", import.meta.url)));
 export const pageFile = join(root, "dist/teasel.html");
 export const pageUrl = pathToFileURL(pageFile).href;
+/** Where `cargo xtask test` has put the demo recording as a file. */
+export const recordings = process.env.TEASEL_RECORDINGS ?? join(root, "target/page-tests");
 const shots = join(root, "target/screenshots");
 
 const candidates = [process.env.TEASEL_CHROMIUM, "/usr/bin/chromium", "/usr/bin/chromium-browser", "/usr/bin/google-chrome"];
@@ -107,4 +109,32 @@ export async function download(page, selector) {
   const chunks = [];
   for await (const chunk of stream) chunks.push(chunk);
   return { name: handed.suggestedFilename(), bytes: Buffer.concat(chunks) };
+}
+
+/**
+ * The built page with its own script exchanged for one that only starts the bridge, as `bridgeReady`: the same module, worker and
+ * policy, without the sheet around them.
+ */
+export async function bridgeUrl() {
+  const [{ build }, { createHash }] = await Promise.all([import("esbuild"), import("node:crypto")]);
+  const { outputFiles } = await build({
+    stdin: {
+      contents: `import { start } from "./www/bridge.js"; globalThis.bridgeReady = start(); document.documentElement.dataset.state = "empty";`,
+      resolveDir: root,
+    },
+    bundle: true,
+    minify: true,
+    format: "iife",
+    write: false,
+    define: { "import.meta.url": '"about:blank"' },
+    alias: { "teasel-module": join(root, "target/page/teasel_page.js") },
+  });
+  const script = outputFiles[0].text.trim();
+  const hash = createHash("sha256").update(script).digest("base64");
+  const html = await readFile(pageFile, "utf8");
+  const own = html.lastIndexOf("<script>");
+  const exchanged = `${html.slice(0, own)}<script>${script}</script></body></html>`.replace(/'sha256-[^']+'/, `'sha256-${hash}'`);
+  const file = join(root, "target/page/bridge.html");
+  await writeFile(file, exchanged);
+  return pathToFileURL(file).href;
 }

@@ -1,2 +1,114 @@
-//! Part of Teasel.
-fn main() {}
+//! Teasel from a terminal: the page's pipeline for many recordings, and for checking.
+//!
+//! * `source`: recordings and side files on disk.
+//! * `run`, `apply`, `inspect`: the three commands.
+//! * `folder`: files written beside their place and renamed, so that none is ever seen half written.
+//! * `say`: lines and progress on standard error.
+//!
+//! Exit codes: 0 done, 1 bad input (one line each on standard error; the other recordings of the call still run), 2 usage.
+mod apply;
+mod figures;
+mod folder;
+mod inspect;
+mod run;
+mod say;
+mod source;
+
+use clap::{Args, Parser, Subcommand};
+use std::path::PathBuf;
+use std::process::ExitCode;
+
+const EXAMPLE: &str = "\
+Example:
+  teasel inspect night-watch.edf
+  teasel run recipe.json night-watch.edf --out results
+  teasel apply results/night-watch/weights.json another-night.edf --out carried
+
+A recipe that suffices:
+  { \"teasel_recipe\": 1,
+    \"contrast\": { \"kind\": \"windows\",
+      \"signal\":    { \"event\": \"buoy\", \"from_s\": 0.2, \"to_s\": 1.0 },
+      \"reference\": { \"event\": \"buoy\", \"from_s\": -1.0, \"to_s\": -0.2 } } }
+
+Exit codes: 0 done, 1 bad input (one line for each file on standard error; the others still run), 2 usage.
+
+Teasel is for research. It makes no diagnosis and replaces no licensed reading of a recording.";
+
+/// Spatial filters that tell signal windows from reference windows, with the evidence for them.
+#[derive(Parser)]
+#[command(name = "teasel", version, after_help = EXAMPLE, arg_required_else_help = true)]
+struct Arguments {
+    #[command(subcommand)]
+    command: Command,
+}
+
+#[derive(Subcommand)]
+enum Command {
+    /// Compute what a recipe asks of each recording.
+    Run {
+        /// The recipe (JSON).
+        recipe: PathBuf,
+        #[command(flatten)]
+        given: Given,
+        /// Folder for the results; each recording gets a folder of its name in it.
+        #[arg(long, value_name = "DIR")]
+        out: PathBuf,
+        /// Seed of everything drawn, in place of the recipe's.
+        #[arg(long, value_name = "N", value_parser = clap::value_parser!(u64).range(..=9_007_199_254_740_991))]
+        seed: Option<u64>,
+    },
+    /// Apply the filters of a weights file to each recording.
+    Apply {
+        /// The weights (weights.json of a run).
+        weights: PathBuf,
+        #[command(flatten)]
+        given: Given,
+        /// Folder for the time courses; each recording gets a folder of its name in it.
+        #[arg(long, value_name = "DIR")]
+        out: PathBuf,
+    },
+    /// Say what a recording holds, and propose a recipe for it.
+    Inspect {
+        #[command(flatten)]
+        given: Given,
+        /// Write JSON.
+        #[arg(long)]
+        json: bool,
+    },
+}
+
+/// Recordings, and how they are opened.
+#[derive(Args)]
+struct Given {
+    /// The recordings.
+    #[arg(required = true, value_name = "RECORDING")]
+    recordings: Vec<PathBuf>,
+    /// A side file that does not lie beside the recording under its BIDS name (repeatable).
+    #[arg(long = "with", value_name = "FILE")]
+    with: Vec<PathBuf>,
+    /// Open the whole records before a cut or other damage.
+    #[arg(long)]
+    salvage: bool,
+}
+
+fn main() -> ExitCode {
+    let fine = match Arguments::parse().command {
+        Command::Run {
+            recipe,
+            given,
+            out,
+            seed,
+        } => run::run(&recipe, &given, &out, seed),
+        Command::Apply {
+            weights,
+            given,
+            out,
+        } => apply::apply(&weights, &given, &out),
+        Command::Inspect { given, json } => inspect::inspect(&given, json),
+    };
+    if fine {
+        ExitCode::SUCCESS
+    } else {
+        ExitCode::from(1)
+    }
+}

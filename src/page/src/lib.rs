@@ -2,10 +2,22 @@
 //!
 //! One compiled module, two instances: the worker's holds a [`session::Session`] with the recording; the page's draws.
 //!
+//! * [`session`]: a recording, a recipe, and the steps from one to the other.
+//! * [`source`]: a file of the browser as bytes that can be read anywhere.
+//! * [`take`]: the files that are taken away.
+//! * [`draw`]: figures on the page's canvas and as SVG, and the numbers behind them.
+//! * [`links`]: recipes as text and inside an address.
 //! * [`convert`]: plain data to and from JavaScript, problems as thrown objects.
+//! * [`bench`]: kernels by themselves, for the budget table.
 //! * [`panics`]: the last words of an instance that ends.
+pub mod bench;
 mod convert;
+pub mod draw;
+pub mod links;
 mod panics;
+pub mod session;
+mod source;
+mod take;
 
 use wasm_bindgen::prelude::wasm_bindgen;
 

@@ -1,4 +1,43 @@
+//! The demo recordings as files.
+use crate::house;
 use anyhow::Result;
+use std::path::{Path, PathBuf};
+use teasel_core::demo;
+use teasel_core::recording::edf;
+use teasel_core::takeaway::recipe_json;
+
+/// The seed of the recording that the page's button makes.
+const SEED: u64 = 1;
+
+/// Writes `demo-data/night-watch.edf` with its recipe and its true patterns.
 pub fn write() -> Result<()> {
+    for (path, bytes) in write_to(&house::root().join("demo-data"))? {
+        println!("{}: {bytes} bytes", path.display());
+    }
     Ok(())
+}
+
+/// Writes the same files elsewhere; gives their paths and sizes.
+pub fn write_to(folder: &Path) -> Result<Vec<(PathBuf, usize)>> {
+    let made = demo::night_watch(SEED);
+    let mut truth = serde_json::to_string_pretty(&made.truth)?;
+    truth.push('\n');
+    let files = [
+        (
+            "night-watch.edf",
+            edf::write(&made.recording, &edf::Identity::default())?,
+        ),
+        (
+            "night-watch.recipe.json",
+            recipe_json(&made.recipe)?.into_bytes(),
+        ),
+        ("night-watch.truth.json", truth.into_bytes()),
+    ];
+    let mut written = Vec::new();
+    for (name, bytes) in files {
+        let path = folder.join(name);
+        house::write(&path, &bytes)?;
+        written.push((path, bytes.len()));
+    }
+    Ok(written)
 }

@@ -9,6 +9,7 @@
 //! ratio against C follow, in this order.
 mod cards;
 mod propose;
+mod summary;
 mod work;
 
 use crate::contrast::windows::check;
@@ -18,6 +19,7 @@ use crate::recording::Recording;
 use crate::sheet::Sheet;
 pub use propose::{Proposal, propose};
 use serde::{Deserialize, Serialize};
+pub use summary::{Summary, fits, summary};
 use work::Work;
 
 /// What a step is about.

@@ -12,6 +12,9 @@ use crate::recipe::Recipe;
 use crate::recording::Recording;
 use serde::{Deserialize, Serialize};
 
+/// The seed of the night watch that the page offers and the files under `demo-data/` hold.
+pub const WATCH_SEED: u64 = 2;
+
 /// A demo recording, what is true about it, and the recipe that asks for it.
 #[derive(Debug, Clone)]
 pub struct Demo {

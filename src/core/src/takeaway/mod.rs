@@ -3,7 +3,7 @@
 //! * [`recipe_json`], [`recipe_from_json`], [`recipe_check`]: the recipe file; [`link_encode`], [`link_decode`]: the same inside an address.
 //! * [`weights_json`], [`weights_csv`], [`weights_npy`]: the filters; [`Weights`] reads them back and applies them to another recording.
 //! * [`results_json`]: every number in full precision.
-//! * [`series_csv`], [`series_npy`]: time courses.
+//! * [`series_csv`], [`series_npy`]: time courses; [`summary_csv`], [`summary_json`]: many recordings in one table.
 //! * [`readings`]: the sentences beside the figures; [`methods`], [`references`]: the paragraph for a paper.
 //! * [`report_html`]: one page to keep; [`archive`]: everything in one ZIP.
 //!
@@ -19,6 +19,7 @@ mod report;
 mod results;
 mod series;
 mod strict;
+mod summary;
 mod weights;
 mod words;
 
@@ -31,6 +32,7 @@ pub use recipe_file::{recipe_check, recipe_from_json, recipe_json};
 pub use report::report_html;
 pub use results::results_json;
 pub use series::{series_csv, series_npy};
+pub use summary::{SummaryRow, summary_csv, summary_json};
 pub use weights::{Weights, weights_csv, weights_json, weights_npy};
 
 use crate::error::{Kind, Problem, Result};

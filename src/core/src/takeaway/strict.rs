@@ -9,15 +9,15 @@ use serde_json::Value;
 use serde_json::value::RawValue;
 use std::fmt;
 
+/// Keys of an object, whether each must be there, and what it holds.
+type Keys = &'static [(&'static str, bool, Shape)];
+
 /// What a piece of JSON may be.
 pub(crate) enum Shape {
     /// Exactly these keys; the flag says which must be there.
-    Object(&'static [(&'static str, bool, Shape)]),
+    Object(Keys),
     /// An object whose `kind` decides its keys, with kinds that this version knows and does not compute.
-    Kinds(
-        &'static [(&'static str, &'static [(&'static str, bool, Shape)])],
-        &'static [&'static str],
-    ),
+    Kinds(&'static [(&'static str, Keys)], &'static [&'static str]),
     /// Any finite number.
     Number,
     /// A whole number from 0 to 2^53.
@@ -212,7 +212,7 @@ impl<'a> Walk<'a> {
         &self,
         raw: &'a RawValue,
         value: &Value,
-        known: &[(&str, &[(&str, bool, Shape)])],
+        known: &[(&str, Keys)],
         later: &[&str],
         path: &str,
     ) -> Result<()> {

@@ -23,7 +23,7 @@ pub(super) fn plain(text: &str, most: usize) -> String {
 }
 
 /// Marks that turn the direction of writing or take no room.
-fn invisible(c: char) -> bool {
+pub(super) fn invisible(c: char) -> bool {
     matches!(c,
         '\u{200b}'..='\u{200f}' | '\u{2028}'..='\u{202e}' | '\u{2060}'..='\u{206f}' | '\u{feff}' | '\u{61c}')
 }
@@ -210,7 +210,7 @@ pub(super) fn clock(seconds: f64) -> String {
 pub(super) fn percent(share: f64) -> String {
     let value = share * 100.0;
     // Nothing short of all is called all.
-    if value < 100.0 && value >= 99.95 {
+    if (99.95..100.0).contains(&value) {
         return format!("more than 99.9{NB}%");
     }
     format!("{}{NB}%", trimmed(value, 1))

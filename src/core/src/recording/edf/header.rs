@@ -2,11 +2,14 @@
 use crate::error::{Kind, Problem, Result};
 use crate::recording::Source;
 use crate::recording::budget::Budget;
+use std::ops::RangeInclusive;
 
 /// Bytes of the fixed part, and of each signal's part.
 pub(super) const PART: u64 = 256;
 /// Label of a signal that holds text, in EDF+.
 const TEXT_LABEL: &str = "EDF Annotations";
+/// Durations of a record that 8 digits write without an exponent.
+const SHORTEST_TO_LONGEST_S: RangeInclusive<f64> = 1e-6..=99_999_999.0;
 /// Widths of a signal's ten fields, in file order.
 const WIDTHS: [usize; 10] = [16, 80, 8, 8, 8, 8, 8, 80, 8, 32];
 
@@ -252,11 +255,14 @@ fn scale(physical: [f64; 2], digital: [i64; 2], factor: f64) -> std::result::Res
             physical[0]
         ));
     }
-    Ok(Scale::from_limits(
-        physical,
-        digital.map(|d| d as f64),
-        factor,
-    ))
+    let scale = Scale::from_limits(physical, digital.map(|d| d as f64), factor);
+    if !scale.value(i16::MIN).is_finite() || !scale.value(i16::MAX).is_finite() {
+        return Err(format!(
+            "its limits {} and {} are too far apart for numbers of 32 bits",
+            physical[0], physical[1]
+        ));
+    }
+    Ok(scale)
 }
 
 /// Factor to µV for a voltage, `None` for anything else. The sign for micro comes as `u`, as U+00B5 and as U+03BC.
@@ -281,10 +287,13 @@ fn check_duration(header: &Header) -> Result<()> {
         .at("file header, labels, byte 256")
         .expected_found("at least 1 signal", "annotations only"));
     }
-    if header.record_s <= 0.0 {
-        return Err(damaged("a record's duration is not above zero")
+    if !SHORTEST_TO_LONGEST_S.contains(&header.record_s) {
+        return Err(damaged("a record cannot last that long")
             .at("file header, duration of a record, byte 244")
-            .expected_found("more than 0 s", format!("{} s", header.record_s)));
+            .expected_found(
+                "more than 0 s, from 0.000001 s to 99999999 s",
+                format!("{} s", header.record_s),
+            ));
     }
     if header.record_bytes == 0 {
         return Err(damaged("no channel has a sample")

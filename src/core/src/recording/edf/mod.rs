@@ -26,6 +26,7 @@
 mod annotations;
 mod header;
 mod read;
+mod records;
 mod write;
 
 pub use write::{Identity, write};

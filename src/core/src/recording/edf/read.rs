@@ -1,7 +1,8 @@
 //! From an EDF file's header to a recording: which signals, how many records, decoding slice after slice.
 use super::annotations;
 use super::header::{self, Header, Scale, Signal, Variant, counted, damaged, to_microvolts};
-use crate::error::{Kind, Problem, Result, Salvage};
+use super::records;
+use crate::error::Result;
 use crate::recording::budget::Budget;
 use crate::recording::opening::{OpenOptions, Reader};
 use crate::recording::{Channel, Event, OtherChannel, Recording, Source, Stretch};
@@ -60,7 +61,7 @@ pub(super) fn begin(
     let mut header = header::read(source, budget)?;
     let mut warnings = std::mem::take(&mut header.warnings);
     let samples = commonest(&header)?;
-    let records = count_records(&header, source.len(), options, &mut warnings)?;
+    let records = records::count(&header, source.len(), options, &mut warnings)?;
     if header.variant != Variant::Plain && !header.signals.iter().any(|s| s.is_text) {
         warnings.push(without_text(&header)?);
     }
@@ -165,114 +166,6 @@ fn commonest(header: &Header) -> Result<u64> {
         })
 }
 
-/// Whole records to read, with what does not fit said in warnings or as the problem.
-fn count_records(
-    header: &Header,
-    file_bytes: u64,
-    options: OpenOptions,
-    warnings: &mut Vec<String>,
-) -> Result<u64> {
-    let body = file_bytes - header.bytes;
-    let (whole, rest) = (body / header.record_bytes, body % header.record_bytes);
-    let stated = match header.records {
-        Some(0) | None if body == 0 => return Err(no_records(header)),
-        Some(stated) if stated > 0 && stated <= whole => {
-            let left = body - stated * header.record_bytes;
-            if left > 0 {
-                warnings.push(format!(
-                    "The header counts {}; {left} bytes after them were not read (a record has {} bytes).",
-                    counted(stated, "record"),
-                    header.record_bytes
-                ));
-            }
-            return Ok(stated);
-        }
-        stated => stated,
-    };
-    let problem = match stated {
-        Some(0) => damaged("the header counts no record, but data follow it")
-            .at("file header, number of records, byte 236")
-            .expected_found(counted(whole, "record"), 0),
-        stated => cut(header, stated, whole, rest),
-    };
-    if whole == 0 {
-        return Err(problem);
-    }
-    if stated.is_none() {
-        let ending = match rest {
-            0 => String::new(),
-            _ => format!(", and {rest} bytes of an unfinished one were not read"),
-        };
-        warnings.push(format!(
-            "The header does not say how many records there are (-1): the file holds {}{ending}.",
-            counted(whole, "whole record")
-        ));
-        return Ok(whole);
-    }
-    let problem = salvageable(problem, header, whole);
-    if options.salvage {
-        warnings.push(opened_before(&problem, whole));
-        return Ok(whole);
-    }
-    Err(problem)
-}
-
-fn no_records(header: &Header) -> Problem {
-    Problem::new(
-        Kind::Empty,
-        "the file has a header and no record",
-        "check whether the recording was stopped before it was saved",
-    )
-    .at(format!("record 1, byte {}", header.bytes))
-    .expected_found(format!("{} bytes", header.record_bytes), "0 bytes")
-}
-
-fn cut(header: &Header, stated: Option<u64>, whole: u64, rest: u64) -> Problem {
-    let problem = damaged("the file is cut short").at(header.place(whole, rest));
-    match stated {
-        Some(stated) if rest == 0 => problem
-            .at(format!(
-                "record {}, byte {}",
-                whole + 1,
-                header.bytes + whole * header.record_bytes
-            ))
-            .expected_found(counted(stated, "record"), counted(whole, "record")),
-        _ => problem.expected_found(
-            format!("{} bytes of this record", header.record_bytes),
-            counted(rest, "byte"),
-        ),
-    }
-}
-
-/// Adds what can still be opened, if anything.
-fn salvageable(mut problem: Problem, header: &Header, whole: u64) -> Problem {
-    if whole > 0 {
-        let seconds = whole as f64 * header.record_s;
-        problem.advice = format!(
-            "the {} before it ({} s) can still be opened; or copy the file again from where it was recorded",
-            counted(whole, "whole record"),
-            (seconds * 1000.0).round() / 1000.0
-        );
-        problem.salvage = Some(Salvage {
-            records: whole,
-            seconds,
-        });
-    }
-    problem
-}
-
-fn opened_before(problem: &Problem, whole: u64) -> String {
-    let part = |p: &Option<String>| p.clone().unwrap_or_default();
-    format!(
-        "Only the {} before the damage were opened: {} ({}: expected {}, found {}).",
-        counted(whole, "whole record"),
-        problem.what,
-        part(&problem.place),
-        part(&problem.expected),
-        part(&problem.found)
-    )
-}
-
 /// An EDF+ file without an annotation signal has no clock: that matters only where there may be gaps.
 fn without_text(header: &Header) -> Result<String> {
     if header.variant == Variant::Discontinuous {
@@ -330,36 +223,10 @@ fn decode(bytes: &[u8], scale: Scale, out: &mut Vec<f32>) {
 
 impl Reader for EdfReader {
     fn step(&mut self, source: &mut dyn Source, budget: &mut Budget) -> Result<(u64, u64)> {
-        let record_bytes = self.header.record_bytes as usize;
-        let left = usize::try_from(self.records - self.done).unwrap_or(usize::MAX);
-        let records = (self.slice.len() / record_bytes).min(left);
         let mut slice = std::mem::take(&mut self.slice);
-        let bytes = &mut slice[..records * record_bytes];
-        source.read_at(
-            self.header.bytes + self.done * self.header.record_bytes,
-            bytes,
-        )?;
-        let mut good = 0;
-        for record in bytes.chunks_exact(record_bytes) {
-            let index = self.done + good as u64;
-            if let Err(problem) = self.keep_time(record, index, budget) {
-                if !(problem.salvage.is_some() && self.options.salvage) {
-                    return Err(problem);
-                }
-                self.warnings.push(opened_before(&problem, index));
-                self.records = index;
-                break;
-            }
-            good += 1;
-        }
-        for column in &mut self.columns {
-            let place = column.offset..column.offset + column.bytes;
-            for record in bytes[..good * record_bytes].chunks_exact(record_bytes) {
-                decode(&record[place.clone()], column.scale, &mut column.samples);
-            }
-        }
+        let read = self.read_slice(&mut slice, source, budget);
         self.slice = slice;
-        self.done += good as u64;
+        read?;
         let end = |records: u64| self.header.bytes + records * self.header.record_bytes;
         Ok((end(self.done), end(self.records)))
     }
@@ -382,6 +249,44 @@ impl Reader for EdfReader {
 }
 
 impl EdfReader {
+    fn read_slice(
+        &mut self,
+        slice: &mut [u8],
+        source: &mut dyn Source,
+        budget: &mut Budget,
+    ) -> Result<()> {
+        let record_bytes = self.header.record_bytes as usize;
+        let left = usize::try_from(self.records - self.done).unwrap_or(usize::MAX);
+        let records = (slice.len() / record_bytes).min(left);
+        let bytes = &mut slice[..records * record_bytes];
+        source.read_at(
+            self.header.bytes + self.done * self.header.record_bytes,
+            bytes,
+        )?;
+        let mut good = 0;
+        for record in bytes.chunks_exact(record_bytes) {
+            let index = self.done + good as u64;
+            if let Err(problem) = self.keep_time(record, index, budget) {
+                if !(problem.salvage.is_some() && self.options.salvage) {
+                    return Err(problem);
+                }
+                let warning = records::opened_before(&problem, index);
+                self.warnings.push(warning);
+                self.records = index;
+                break;
+            }
+            good += 1;
+        }
+        for column in &mut self.columns {
+            let place = column.offset..column.offset + column.bytes;
+            for record in bytes[..good * record_bytes].chunks_exact(record_bytes) {
+                decode(&record[place.clone()], column.scale, &mut column.samples);
+            }
+        }
+        self.done += good as u64;
+        Ok(())
+    }
+
     /// Reads a record's annotations and puts the record on the clock.
     fn keep_time(&mut self, record: &[u8], index: u64, budget: &mut Budget) -> Result<()> {
         let mut onset_s = None;
@@ -462,7 +367,7 @@ impl EdfReader {
             let problem = damaged("a record's onset cannot be right")
                 .at(self.header.place(index, text.map_or(0, |s| s.offset)))
                 .expected_found(expected, found);
-            salvageable(problem, &self.header, index)
+            records::salvageable(problem, &self.header, index)
         };
         let Some(onset_s) = onset_s else {
             let expected = "the record's onset as its first annotation".to_owned();

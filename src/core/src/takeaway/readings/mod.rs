@@ -10,6 +10,7 @@ mod so_far;
 
 use super::words;
 use crate::sheet::Sheet;
+pub(super) use judge::passes;
 use serde::{Deserialize, Serialize};
 
 /// The place on the page that a reading belongs to.

@@ -258,7 +258,12 @@ fn channels_doubt(sheet: &Sheet) -> Option<Line> {
     let strong_mains = sheet
         .channels
         .iter()
-        .find(|c| c.state == ChannelState::Used && c.mains_db.is_some_and(|db| db >= 10.0));
+        .filter(|c| c.state == ChannelState::Used && c.mains_db.is_some_and(|db| db >= 10.0))
+        .max_by(|a, b| {
+            a.mains_db
+                .unwrap_or(0.0)
+                .total_cmp(&b.mains_db.unwrap_or(0.0))
+        });
     if let Some((channel, hz)) = strong_mains.and_then(|c| c.mains_hz.map(|hz| (c, hz))) {
         let filter = &sheet.recipe.filter;
         let stopped = filter.notch_hz.iter().any(|n| (n - hz).abs() <= 1.0)

@@ -1,0 +1,111 @@
+//! `teasel run`: everything a recipe asks of each recording.
+use crate::say::{self, Meter};
+use crate::{Given, figures, folder, source};
+use std::path::Path;
+use teasel_core::analysis::{Analysis, Series};
+use teasel_core::error::Result;
+use teasel_core::recipe::Recipe;
+use teasel_core::sheet::Sheet;
+use teasel_core::takeaway::{self as take, SummaryRow};
+
+/// Runs all recordings; false where the recipe or a recording was bad.
+pub fn run(recipe: &Path, given: &Given, out: &Path, seed: Option<u64>) -> bool {
+    let read = source::text(recipe).and_then(|text| {
+        take::recipe_from_json(&text).map_err(|p| p.in_file(source::file_name(recipe)))
+    });
+    let mut recipe = match read {
+        Ok(recipe) => recipe,
+        Err(problem) => {
+            say::problem(&problem);
+            return false;
+        }
+    };
+    if let Some(seed) = seed {
+        recipe.evidence.seed = seed;
+    }
+    let mut rows = Vec::new();
+    let mut fine = true;
+    for (path, name) in given
+        .recordings
+        .iter()
+        .zip(folder::names(&given.recordings))
+    {
+        let shown = name.display().to_string();
+        match one(&recipe, path, given, &out.join(&name)) {
+            Ok(sheet) => rows.push(SummaryRow::of(&sheet, &shown)),
+            Err(problem) => {
+                let problem = problem.in_file(source::file_name(path));
+                say::problem(&problem);
+                rows.push(SummaryRow::failed(
+                    &source::file_name(path),
+                    &shown,
+                    &problem,
+                ));
+                fine = false;
+            }
+        }
+    }
+    if given.recordings.len() > 1
+        && let Err(problem) = write_table(out, &rows)
+    {
+        say::problem(&problem);
+        fine = false;
+    }
+    fine
+}
+
+fn one(recipe: &Recipe, path: &Path, given: &Given, folder: &Path) -> Result<Sheet> {
+    let mut meter = Meter::new(&source::file_name(path));
+    let recording = source::recording(path, given, &mut meter)?;
+    let mut analysis = Analysis::new(recording, recipe.clone())?;
+    analysis.run(|progress| meter.analysis(progress))?;
+    let files = files(analysis.sheet(), analysis.series())?;
+    folder::write(folder, &files)?;
+    drop(meter);
+    for warning in &analysis.sheet().warnings {
+        say::note(&format!("{}: note: {warning}", source::file_name(path)));
+    }
+    Ok(analysis.sheet().clone())
+}
+
+/// Every file of one recording's folder.
+fn files(sheet: &Sheet, series: Option<Series>) -> Result<Vec<(String, Vec<u8>)>> {
+    let drawings = figures::drawings(sheet);
+    let mut files: Vec<(String, Vec<u8>)> = vec![
+        ("results.json".into(), take::results_json(sheet)?.into()),
+        (
+            "report.html".into(),
+            take::report_html(sheet, &drawings).into(),
+        ),
+    ];
+    if !(sheet.stronger.is_empty() && sheet.weaker.is_empty()) {
+        files.push(("weights.json".into(), take::weights_json(sheet)?.into()));
+        files.push(("weights.csv".into(), take::weights_csv(sheet)?.into()));
+        for (name, bytes) in take::weights_npy(sheet)? {
+            files.push((name.into(), bytes));
+        }
+    }
+    if let Some(series) = series {
+        files.push(("series.csv".into(), take::series_csv(&series)?.into()));
+        files.push(("series.npy".into(), take::series_npy(&series)?));
+    }
+    for (name, _, svg) in drawings {
+        if figures::stands_alone(&name) {
+            files.push((
+                format!("figures/{}.svg", take::safe_name(&name)),
+                svg.into(),
+            ));
+        }
+    }
+    Ok(files)
+}
+
+fn write_table(out: &Path, rows: &[SummaryRow]) -> Result<()> {
+    folder::write(
+        out,
+        &[
+            ("table.csv".into(), take::summary_csv(rows)?.into()),
+            ("table.json".into(), take::summary_json(rows)?.into()),
+        ],
+    )
+}

@@ -1,0 +1,49 @@
+//! What is known of a recording before a contrast is chosen.
+use super::{cards, check_recipe};
+use crate::error::Result;
+use crate::prepare::inspect;
+use crate::recipe::{Channels, Contrast, EventWindow, Evidence, Filter, Keep, Measure, Recipe, Shrink};
+use crate::recording::Recording;
+use crate::sheet::{ChannelCard, RecordingCard};
+use serde::Serialize;
+
+/// The recording and its channels.
+#[derive(Debug, Clone, PartialEq, Serialize)]
+pub struct Summary {
+    /// The recording.
+    pub recording: RecordingCard,
+    /// Every channel that can be analysed, in file order.
+    pub channels: Vec<ChannelCard>,
+}
+
+/// Looks at a recording as it stands.
+pub fn summary(recording: &Recording) -> Summary {
+    let recipe = no_contrast();
+    Summary {
+        recording: cards::begin(recording, &recipe).recording,
+        channels: inspect(recording, &recipe),
+    }
+}
+
+/// What [`super::Analysis::new`] would refuse, without giving the recording away.
+///
+/// # Errors
+/// Those of [`super::Analysis::new`].
+pub fn fits(recording: &Recording, recipe: &Recipe) -> Result<()> {
+    check_recipe(recipe, recording)
+}
+
+fn no_contrast() -> Recipe {
+    let none = || EventWindow { event: String::new(), from_s: 0.0, to_s: 0.0 };
+    Recipe {
+        teasel_recipe: 1,
+        channels: Channels::default(),
+        filter: Filter::default(),
+        keep: Keep::default(),
+        measure: Measure::default(),
+        contrast: Contrast::Windows { signal: none(), reference: none() },
+        shrink: Shrink::default(),
+        components: 4,
+        evidence: Evidence::default(),
+    }
+}
