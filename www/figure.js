@@ -158,9 +158,9 @@ export async function settleFigures() {
   }
 }
 
-/** How much narrower a place is on paper than on the screen. @param {HTMLElement} place */
+/** How much narrower a place is on paper than on the screen; what stands side by side there stands below each other here. @param {HTMLElement} place */
 function onPaper(place) {
-  const column = place.closest(".body")?.clientWidth;
+  const column = place.closest(".pair > div, .body")?.clientWidth;
   return printing && column ? PAPER_WIDTH / column : 1;
 }
 

@@ -44,6 +44,11 @@ export function whereabouts({ place, expected, found }) {
   return [place, numbers].filter(Boolean).join(": ");
 }
 
+/** A whole sentence, with its full stop. @param {string} text */
+export function whole(text) {
+  return sentence(text.replace(/[^.?!…]$/, "$&."), null);
+}
+
 /** A sentence's first letter, large, unless it is a file's. @param {string} text @param {string | null} file */
 export function sentence(text, file) {
   return file && text.startsWith(file) ? text : text.charAt(0).toUpperCase() + text.slice(1);

@@ -1,7 +1,7 @@
 /** The one door: drop, picker, demo and link meet here, and what goes wrong is said in the error's own words. */
 import { download, find, make } from "./kit.js";
 import { isSmall } from "./choosing.js";
-import { asProblem, say, sentence, unsay, whereabouts } from "./notices.js";
+import { asProblem, say, sentence, unsay, whereabouts, whole } from "./notices.js";
 import { clock, count } from "./numbers.js";
 import { clearLink, recipeAtStart } from "./recipe-link.js";
 import { now, put } from "./state.js";
@@ -82,11 +82,14 @@ export function door({ bridge, change: edit }, compute) {
     /** @type {import("./notices.js").Way[]} */
     const ways = [];
     if (salvage && salvaged) ways.push({ label: `Open the ${count(salvage.records)} whole records`, main: true, act: () => void open({ files: salvaged, salvage: true }) });
-    if (problem.kind === "recipe") ways.push({ label: "Open another recipe…", act: () => find("#recipe-file").click() });
-    if (problem.kind === "contrast" && now().summary) ways.push({ label: "Propose afresh", act: () => void afresh() });
-    else if (problem.kind !== "recipe") ways.push({ label: "Choose another recording…", act: pick });
+    const ofChoices = problem.kind === "contrast" || problem.kind === "recipe";
+    const before = now().sheet?.stronger.length ? now().sheet?.recipe : null;
+    if (ofChoices && before) ways.push({ label: "Back to the choices before", main: true, act: () => change(before) });
+    if (problem.kind === "recipe" && !before) ways.push({ label: "Open another recipe…", act: () => find("#recipe-file").click() });
+    if (ofChoices && now().summary) ways.push({ label: "Propose afresh", act: () => void afresh() });
+    if (!ofChoices) ways.push({ label: "Choose another recording…", act: pick });
     const rest = salvage ? [" The ", make("b", {}, `${count(salvage.records)} whole records before it (${clock(salvage.seconds)})`), " can be opened."] : [];
-    say("#problem", { title: sentence(about + problem.what, file), text: [problem.advice, ...rest], where: whereabouts(problem), ways });
+    say("#problem", { title: sentence(about + problem.what, file), text: [whole(problem.advice), ...rest], where: whereabouts(problem), ways });
   }
 
   async function afresh() {

@@ -47,8 +47,8 @@ function block({ name, plan }, table) {
   const row = (/** @type {"th" | "td"} */ tag, /** @type {string[]} */ cells) => make("tr", {}, ...cells.map((text) => make(tag, tag === "th" ? { scope: "col" } : {}, short(text))));
   const more = table.rows.length - ROWS_SHOWN;
   return [
-    make("h4", {}, plan.title ?? plan.label, save),
-    make("table", {}, make("thead", {}, row("th", table.columns)), make("tbody", {}, ...table.rows.slice(0, ROWS_SHOWN).map((cells) => row("td", cells)))),
+    make("h4", {}, make("span", {}, plan.title ?? plan.label), save),
+    make("table", {}, make("thead", {}, row("th", table.columns.map((name) => name.replace(/_/g, " ")))), make("tbody", {}, ...table.rows.slice(0, ROWS_SHOWN).map((cells) => row("td", cells)))),
     ...(more > 0 ? [make("p", { class: "quiet" }, `${more} more rows in the saved table.`)] : []),
   ];
 }

@@ -12,8 +12,8 @@ import { follow, now } from "./state.js";
 /** @typedef {"from_s" | "to_s"} End */
 
 const PICKS = 4;
-/** Two samples are the least that has a variance. */
-const LEAST = 2;
+/** The core asks for three samples: the least whose variance says anything. */
+const LEAST = 3;
 /** @type {PlotBox | null} */
 let plot = null;
 /** Ends of the time axis while an edge is dragged. @type {[number, number] | null} */

@@ -43,7 +43,8 @@ export function mountWork(bridge, trouble) {
       const next = structuredClone(recipe);
       edit(next);
       expected = Infinity;
-      put({ recipe: next, stale: Boolean(sheet?.stronger.length) });
+      const asProposed = JSON.stringify(next.contrast) === JSON.stringify(recipe.contrast);
+      put({ recipe: next, stale: Boolean(sheet?.stronger.length), taken: 0, why: asProposed ? now().why : "" });
       unsay("#problem");
       send();
     },
