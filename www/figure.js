@@ -1,5 +1,5 @@
 /** A figure on the sheet: canvas, caption, saving, the numbers behind it, and redrawing whenever its place or the scheme changes. */
-import { afterRest, make } from "./kit.js";
+import { afterRest, eachFrame, make } from "./kit.js";
 import { follow, now } from "./state.js";
 import { readingOf } from "./readings.js";
 import { saving } from "./save-figure.js";
@@ -40,6 +40,8 @@ import { saving } from "./save-figure.js";
 const slots = new Set();
 const dark = matchMedia("(prefers-color-scheme: dark)");
 let printing = false;
+/** Time for drawing in one frame. */
+const DRAWING_MS = 14;
 /** Height of a figure that is not drawn yet, so that little moves when it comes. */
 const RESERVED = 220;
 /** A4 less its margins (see @page in the style sheet), in CSS px. */
@@ -94,7 +96,7 @@ export function figureSlot(app, name, plan) {
       figure = loaded;
       fresh = true;
       root.hidden = !figure;
-      draw();
+      soon(draw);
     } finally {
       loading = false;
     }
@@ -135,10 +137,28 @@ export function figureSlot(app, name, plan) {
   return slot;
 }
 
+/** Drawing is spread over frames, so that the page answers in between: the queue, in the order of asking. @type {Set<() => void>} */
+const queue = new Set();
+const pump = eachFrame(() => {
+  const began = performance.now();
+  for (const draw of queue) {
+    queue.delete(draw);
+    draw();
+    if (performance.now() - began > DRAWING_MS) break;
+  }
+  if (queue.size) pump();
+});
+
+/** @param {() => void} draw */
+function soon(draw) {
+  queue.add(draw);
+  pump();
+}
+
 /** @type {WeakMap<Element, Slot>} */
 const owners = new WeakMap();
 const nearby = new IntersectionObserver((entries) => entries.forEach(({ target, isIntersecting }) => owners.get(target)?.comes(isIntersecting)), { rootMargin: "300px" });
-const resized = new ResizeObserver((entries) => entries.forEach(({ target }) => owners.get(target)?.draw()));
+const resized = new ResizeObserver((entries) => entries.forEach(({ target }) => soon(owners.get(target)?.draw ?? (() => undefined))));
 
 /** Asks for the figures near the window to come along with each sheet. @type {(app: App) => void} */
 const watch = (() => {
@@ -191,7 +211,7 @@ export function mountFigures() {
   };
   follow((state, before) => {
     if (state.summary !== before.summary) for (const slot of slots) slot.forget(), slot.refresh();
-    if (state.recipe !== before.recipe) for (const slot of slots) if (slot.plan.adjust) slot.draw();
+    if (state.recipe !== before.recipe) for (const slot of slots) if (slot.plan.adjust) soon(slot.draw);
   });
   addEventListener("beforeprint", () => turn(true));
   addEventListener("afterprint", () => turn(false));
