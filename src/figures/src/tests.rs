@@ -246,6 +246,27 @@ fn plot_boxes_say_where_the_axes_were_drawn() {
 }
 
 #[test]
+fn the_times_of_windows_that_touch_stand_side_by_side() {
+    let mut sheet = sample::sheet(32, 40);
+    let Contrast::Windows { signal, reference } = &mut sheet.recipe.contrast;
+    (signal.from_s, reference.to_s) = (0.0, 0.0);
+    let text = drawn(&from_sheet(&sheet, "windows").unwrap(), 888);
+    let document = roxmltree::Document::parse(&text).unwrap();
+    let both = document
+        .descendants()
+        .filter(|n| n.text() == Some("0.00 s") && n.has_tag_name("text"));
+    let x: Vec<f64> = both
+        .map(|n| n.attribute("x").unwrap().parse::<f64>().unwrap() / 10.0)
+        .collect();
+    let plot = plot_box(&from_sheet(&sheet, "windows").unwrap(), 888, 304).unwrap();
+    let zero = plot.left - plot.x0 / (plot.x1 - plot.x0) * (plot.right - plot.left);
+    assert!(
+        x[1] - x[0] > 40.0 && ((x[0] + x[1]) / 2.0 - zero).abs() < 1.0,
+        "{x:?} about {zero}"
+    );
+}
+
+#[test]
 fn windows_of_two_events_stand_one_above_the_other() {
     let mut sheet = sample::sheet(32, 40);
     let Contrast::Windows { reference, .. } = &mut sheet.recipe.contrast;

@@ -3,6 +3,7 @@ use super::{Course, Of};
 use crate::frame::Frame;
 use crate::pen::{At, Drawn, LABEL, Pen, TICK, Word};
 use crate::text;
+use plotters::style::RGBAColor;
 use plotters_backend::DrawingBackend;
 
 impl Course {
@@ -76,29 +77,28 @@ impl Course {
         (x - half, x + half)
     }
 
-    /// Edges of the windows with their times below; a time that would run into its neighbour is moved aside.
+    /// Edges of the windows with their times below; times that would run into each other are moved apart.
     pub(super) fn edges<DB: DrawingBackend>(&self, pen: &Pen<DB>, frame: &Frame) -> Drawn<DB> {
         let inks = pen.inks;
-        let mut edges: Vec<(f64, plotters::style::RGBAColor)> = Vec::new();
+        let mut edges: Vec<(f64, RGBAColor)> = Vec::new();
         edges.extend(self.reference.map(|t| (t, inks.reference)));
         edges.extend(self.signal.map(|t| (t, inks.signal)));
+        edges.retain(|(t, _)| frame.x.unit(*t) > -0.002 && frame.x.unit(*t) < 1.002);
         edges.sort_by(|a, b| a.0.total_cmp(&b.0));
-        let mut used = f64::NEG_INFINITY;
-        for (t, ink) in edges {
-            let at = frame.px(t);
-            if at < frame.left - 1.0 || at > frame.right + 1.0 {
-                continue;
-            }
-            pen.down(at, frame.top, frame.bottom + 4.0, ink, 1.5)?;
-            let said = format!("{} s", text::number(t, 2));
-            let half = text::bold_width(&said, TICK) / 2.0 + 1.0;
-            let x = at.max(used + half + 4.0);
-            pen.word(
-                &said,
-                (x, frame.bottom + 44.0),
-                Word::new(TICK, ink).bold().at(At::Middle),
-            )?;
-            used = x + half;
+        let words: Vec<String> = edges
+            .iter()
+            .map(|(t, _)| format!("{} s", text::number(*t, 2)))
+            .collect();
+        let widths: Vec<f64> = words
+            .iter()
+            .map(|w| text::bold_width(w, TICK) + 5.0)
+            .collect();
+        let at: Vec<f64> = edges.iter().map(|(t, _)| frame.px(*t)).collect();
+        let apart = apart(&at, &widths, pen.w);
+        for (i, (_, ink)) in edges.iter().enumerate() {
+            pen.down(at[i], frame.top, frame.bottom + 4.0, *ink, 1.5)?;
+            let word = Word::new(TICK, *ink).bold().at(At::Middle);
+            pen.word(&words[i], (apart[i], frame.bottom + 44.0), word)?;
         }
         Ok(())
     }
@@ -135,4 +135,22 @@ impl Course {
         }
         Ok(())
     }
+}
+
+/// Moves the middles of neighbours, in order, until none overlaps, each pair by equal parts.
+fn apart(at: &[f64], widths: &[f64], end: f64) -> Vec<f64> {
+    let mut placed = at.to_vec();
+    for _ in 0..60 {
+        for i in 1..placed.len() {
+            let need = (widths[i - 1] + widths[i]) / 2.0 - (placed[i] - placed[i - 1]);
+            if need > 0.0 {
+                placed[i - 1] -= need / 2.0;
+                placed[i] += need / 2.0;
+            }
+        }
+        for (x, wide) in placed.iter_mut().zip(widths) {
+            *x = x.min(end - wide / 2.0).max(wide / 2.0);
+        }
+    }
+    placed
 }

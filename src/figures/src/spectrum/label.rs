@@ -16,7 +16,7 @@ impl Spectrum {
         taken: &mut Vec<[f64; 4]>,
         word: Word,
     ) -> Drawn<DB> {
-        let wide = text::bold_width(said, LABEL) + 6.0;
+        let wide = text::bold_width(said, LABEL) + 14.0;
         let upper = max_of(
             &self.signal_high,
             &self.reference_high,

@@ -14,7 +14,6 @@ use serde::{Deserialize, Serialize};
 
 const TOP: f64 = 24.0;
 const FOOT: f64 = 26.0;
-const BAR: f64 = 34.0;
 
 /// See [`crate::Figure::Traces`].
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
@@ -53,7 +52,7 @@ impl Traces {
     fn frame(&self, width: f64, height: f64) -> Frame {
         Frame {
             left: LEFT,
-            right: width - RIGHT - if self.lines.is_empty() { 0.0 } else { BAR },
+            right: width - RIGHT,
             top: TOP,
             bottom: (height - FOOT).max(TOP + 1.0),
             x: Axis::linear(self.from_s, self.from_s + self.seconds),
@@ -70,7 +69,7 @@ impl Plot for Traces {
             let (x0, x1) = (frame.px(gap[0]), frame.px(gap[1]));
             pen.hatch((x0, frame.top), (x1, frame.bottom), pen.inks.line)?;
         }
-        self.events(pen, &frame)?;
+        self.events(pen, &frame, row)?;
         self.lines(pen, &frame, row)?;
         self.bars(pen, &frame, row)?;
         let most = ((frame.right - frame.left) / 90.0).max(2.0) as usize;
