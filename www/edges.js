@@ -16,8 +16,8 @@ import { make } from "./kit.js";
 
 /** Below the axis, above the values, which the figure writes itself. */
 const ROOM_BELOW = 32;
-/** Grips nearer than this to each other move apart; the lines that the figure draws stay. */
-const GRIP_ROOM = 26;
+/** Grips nearer than this to each other move apart, so that each can be hit; the lines that the figure draws stay. */
+const GRIP_ROOM = matchMedia("(pointer: coarse)").matches ? 46 : 26;
 
 /**
  * Lays edges over a figure's plot and keeps them there.

@@ -1,5 +1,5 @@
 /** A figure on the sheet: canvas, caption, saving, the numbers behind it, and redrawing whenever its place or the scheme changes. */
-import { afterRest, make } from "./kit.js";
+import { afterRest, eachFrame, make } from "./kit.js";
 import { follow, now } from "./state.js";
 import { readingOf } from "./readings.js";
 import { saving } from "./save-figure.js";
@@ -29,6 +29,7 @@ import { saving } from "./save-figure.js";
  * @property {() => Figure | null} figure
  * @property {() => void} draw
  * @property {() => boolean} near whether it can be seen, or nearly
+ * @property {() => void} forget the recording has changed: nothing of the figure holds
  * @property {() => void} refresh fetches the data again: at once where the figure can be seen, otherwise when it comes near
  * @property {() => Promise<void>} settle fetches and draws wherever the figure is
  * @property {() => void} drop forgets the figure's place on the page
@@ -39,6 +40,10 @@ import { saving } from "./save-figure.js";
 const slots = new Set();
 const dark = matchMedia("(prefers-color-scheme: dark)");
 let printing = false;
+/** Time for drawing in one frame. */
+const DRAWING_MS = 14;
+/** Height of a figure that is not drawn yet, so that little moves when it comes. */
+const RESERVED = 220;
 /** A4 less its margins (see @page in the style sheet), in CSS px. */
 const PAPER_WIDTH = 688;
 
@@ -51,6 +56,7 @@ const PAPER_WIDTH = 688;
 export function figureSlot(app, name, plan) {
   const canvas = make("canvas", { role: "img", "aria-label": plan.label, hidden: true });
   const place = make("div", { class: "drawn" }, canvas);
+  place.style.minHeight = `${plan.height ?? (plan.title ? RESERVED : 0)}px`;
   const caption = plan.title ? make("div", { class: "caption" }, make("b", {}, plan.title), make("span", { class: "quiet hint" }, plan.hint ?? "")) : null;
   const root = make("figure", { class: plan.title ? "figure" : "figure small-figure", "data-figure": name }, caption, place);
   /** @type {Figure | null} */
@@ -65,6 +71,7 @@ export function figureSlot(app, name, plan) {
     const scale = printing ? 3 : Math.max(1, devicePixelRatio);
     app.bridge.draw(canvas, adjusted, { width, height, scale, dark: dark.matches && !printing });
     canvas.hidden = false;
+    place.style.minHeight = "";
     canvas.style.width = plan.width ? `${width}px` : "";
     canvas.setAttribute("aria-label", `${plan.label}. ${readingOf(plan.section)}`);
     plan.placed?.(app.bridge.plotBox(adjusted, width, height), { width, height });
@@ -89,7 +96,7 @@ export function figureSlot(app, name, plan) {
       figure = loaded;
       fresh = true;
       root.hidden = !figure;
-      draw();
+      soon(draw);
     } finally {
       loading = false;
     }
@@ -99,10 +106,15 @@ export function figureSlot(app, name, plan) {
     name, root, place, plan, draw,
     near: () => near,
     figure: () => figure,
+    forget() {
+      figure = null;
+      fresh = false;
+      canvas.hidden = true;
+    },
     refresh() {
       fresh = false;
       if (root.hidden && (plan.load || now().figures.includes(name))) root.hidden = false;
-      if (near) void load();
+      if (near) void load().catch(() => undefined);
     },
     settle: async () => void (fresh || (await load().catch(() => undefined))),
     drop() {
@@ -114,7 +126,7 @@ export function figureSlot(app, name, plan) {
     comes(yes) {
       near = yes;
       watch(app);
-      if (yes && !fresh) void load();
+      if (yes && !fresh) void load().catch(() => undefined);
     },
   };
   if (caption) caption.append(saving(app, slot));
@@ -125,10 +137,28 @@ export function figureSlot(app, name, plan) {
   return slot;
 }
 
+/** Drawing is spread over frames, so that the page answers in between: the queue, in the order of asking. @type {Set<() => void>} */
+const queue = new Set();
+const pump = eachFrame(() => {
+  const began = performance.now();
+  for (const draw of queue) {
+    queue.delete(draw);
+    draw();
+    if (performance.now() - began > DRAWING_MS) break;
+  }
+  if (queue.size) pump();
+});
+
+/** @param {() => void} draw */
+function soon(draw) {
+  queue.add(draw);
+  pump();
+}
+
 /** @type {WeakMap<Element, Slot>} */
 const owners = new WeakMap();
 const nearby = new IntersectionObserver((entries) => entries.forEach(({ target, isIntersecting }) => owners.get(target)?.comes(isIntersecting)), { rootMargin: "300px" });
-const resized = new ResizeObserver((entries) => entries.forEach(({ target }) => owners.get(target)?.draw()));
+const resized = new ResizeObserver((entries) => entries.forEach(({ target }) => soon(owners.get(target)?.draw ?? (() => undefined))));
 
 /** Asks for the figures near the window to come along with each sheet. @type {(app: App) => void} */
 const watch = (() => {
@@ -180,7 +210,8 @@ export function mountFigures() {
     all();
   };
   follow((state, before) => {
-    if (state.recipe !== before.recipe) for (const slot of slots) if (slot.plan.adjust) slot.draw();
+    if (state.summary !== before.summary) for (const slot of slots) slot.forget(), slot.refresh();
+    if (state.recipe !== before.recipe) for (const slot of slots) if (slot.plan.adjust) soon(slot.draw);
   });
   addEventListener("beforeprint", () => turn(true));
   addEventListener("afterprint", () => turn(false));

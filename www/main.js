@@ -10,7 +10,8 @@ import { figuresOf, mountFigures } from "./figure.js";
 import { mountFinding } from "./finding.js";
 import { mountFirst } from "./first.js";
 import { mountLedger } from "./ledger.js";
-import { size } from "./numbers.js";
+import { duration, size } from "./numbers.js";
+import { unsay } from "./notices.js";
 import { door } from "./open.js";
 import { mountProgress } from "./progress.js";
 import { mountReadings } from "./readings.js";
@@ -60,6 +61,7 @@ function join(bridge) {
   mountFinding(app);
   mountTakeaway(app, doors.failed);
   mountChoosing(app, () => {
+    unsay("#hint");
     put({ phase: "working" });
     work.send();
   });
@@ -77,8 +79,7 @@ function head() {
     const card = state.summary?.recording;
     find("#steps").hidden = !card;
     if (!card || !state.summary) return;
-    const minutes = card.duration_s >= 90 ? `${Number((card.duration_s / 60).toFixed(1))} min` : `${Number(card.duration_s.toFixed(1))} s`;
-    const facts = [`${state.summary.channels.length} channels`, `${Number(card.rate_hz.toFixed(3))} Hz`, minutes, ...(state.source?.size ? [size(state.source.size)] : [])];
+    const facts = [`${state.summary.channels.length} channels`, `${Number(card.rate_hz.toFixed(3))} Hz`, duration(card.duration_s), ...(state.source?.size ? [size(state.source.size)] : [])];
     find("#opened").replaceChildren(make("b", {}, card.name), ` · ${facts.join(" · ")}`);
     document.title = `${card.name} · Teasel`;
   });

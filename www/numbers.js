@@ -35,6 +35,13 @@ export function clock(value) {
   return h ? `${h}:${tail}` : tail;
 }
 
+/** A length of time: `2 h 13 min`, `4 min`, `58.5 s`. @param {number} value in seconds */
+export function duration(value) {
+  if (value < 90) return `${Number(value.toFixed(1))} s`;
+  const minutes = Math.round(value / 6) / 10;
+  return minutes < 90 ? `${minutes} min` : `${Math.floor(minutes / 60)} h ${Math.round(minutes % 60)} min`;
+}
+
 /** A count in groups of three: `1,000`. @param {number} value */
 export function count(value) {
   return String(Math.round(value)).replace(/\B(?=(\d{3})+$)/g, ",");

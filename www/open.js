@@ -1,10 +1,11 @@
 /** The one door: drop, picker, demo and link meet here, and what goes wrong is said in the error's own words. */
-import { download, find, make } from "./kit.js";
+import { download, find } from "./kit.js";
 import { isSmall } from "./choosing.js";
-import { asProblem, say, sentence, unsay, whereabouts, whole } from "./notices.js";
-import { clock, count } from "./numbers.js";
+import { asProblem, unsay } from "./notices.js";
+import { count } from "./numbers.js";
 import { clearLink, recipeAtStart } from "./recipe-link.js";
-import { now, put } from "./state.js";
+import { sayEnded, sayFewEvents, sayNoEvents, sayOpenEnds, sayProblem, sayStopped, sayWaiting, sayWeights } from "./sayings.js";
+import { forget, now, put } from "./state.js";
 
 /** @typedef {import("./types").App} App */
 /** @typedef {import("./types").Recipe} Recipe */
@@ -25,6 +26,8 @@ export function door({ bridge, change: edit }, compute) {
   let waiting = null;
   /** @type {Source | null} */
   let last = null;
+  /** Counts what was opened: an answer that was overtaken is dropped. */
+  let turn = 0;
 
   const pick = () => find("#recording").click();
   const takeRecipe = () => download("recipe.json", bridge.recipeText(/** @type {Recipe} */ (now().recipe)), "application/json");
@@ -32,12 +35,25 @@ export function door({ bridge, change: edit }, compute) {
   /** @param {Source} source */
   async function open(source) {
     last = source;
+    turn += 1;
+    const mine = turn;
     unsay("#problem");
     unsay("#hint");
     const demo = "demo" in source ? source.demo : null;
     put({ phase: "reading", progress: { stage: demo ? "making" : "reading", done: 0, of: 1 } });
+    /** @type {Summary} */
+    let summary;
     try {
-      const summary = "demo" in source ? await bridge.openDemo(source.demo) : await bridge.open(source.files, { salvage: source.salvage });
+      summary = "demo" in source ? await bridge.openDemo(source.demo) : await bridge.open(source.files, { salvage: source.salvage });
+    } catch (thrown) {
+      if (mine !== turn) return;
+      // The worker has let go of what was open before.
+      forget();
+      document.documentElement.removeAttribute("data-sheet");
+      return failed(thrown);
+    }
+    if (mine !== turn) return;
+    try {
       const size = "files" in source ? (source.files.find(({ name }) => name === summary.recording.name)?.size ?? null) : null;
       put({ summary, sheet: null, readings: [], figures: [], recipe: null, stale: false, taken: 0, source: { name: summary.recording.name, size, demo } });
       document.documentElement.removeAttribute("data-sheet");
@@ -51,24 +67,17 @@ export function door({ bridge, change: edit }, compute) {
   async function ask(summary) {
     const proposal = await bridge.propose();
     const brought = waiting?.link ? bridge.linkComplete(waiting.link, summary.recording.events) : waiting;
-    const recipe = brought?.recipe ?? proposal?.recipe;
-    if (brought && "notes" in brought && brought.notes.length) say("#hint", { title: "The link left some things open", text: [brought.notes.join(" ")], ways: [{ label: "Close", act: () => unsay("#hint") }] });
+    const recipe = brought?.recipe ?? proposal?.recipe ?? unproposed(bridge, summary);
+    if (brought && "notes" in brought && brought.notes.length) sayOpenEnds(brought.notes);
     if (!recipe) {
       put({ phase: "choosing", progress: null });
-      return noEvents();
+      return sayNoEvents(pick);
     }
-    put({ recipe, why: waiting ? "" : (proposal?.why ?? ""), progress: null, phase: waiting || isSmall(summary) ? "working" : "choosing" });
+    put({ recipe, why: waiting ? "" : (proposal?.why ?? ""), progress: null, phase: waiting || (proposal && isSmall(summary)) ? "working" : "choosing" });
+    if (!waiting && !proposal) sayFewEvents();
     waiting = null;
     if (now().phase === "working") compute();
     find("#main").focus({ preventScroll: true });
-  }
-
-  function noEvents() {
-    say("#hint", {
-      title: "This recording holds no events",
-      text: ["This version compares windows around events. Drop the recording again together with its table of events: a tab-separated file with the columns ", make("b", {}, "onset"), ", ", make("b", {}, "duration"), " and ", make("b", {}, "trial_type"), ", named as the recording and ending in ", make("b", {}, "events.tsv"), "."],
-      ways: [{ label: "Choose the recording and its events…", act: pick, main: true }],
-    });
   }
 
   /** @param {unknown} thrown */
@@ -76,20 +85,23 @@ export function door({ bridge, change: edit }, compute) {
     const problem = asProblem(thrown);
     if (problem.kind === "stopped") return put({ phase: now().summary ? "ready" : "empty", progress: null });
     put({ phase: "error", progress: null });
-    const { salvage, file } = problem;
-    const about = file && !problem.what.includes(file) ? `${file}: ` : "";
-    const salvaged = salvage && last && "files" in last ? last.files : null;
-    /** @type {import("./notices.js").Way[]} */
-    const ways = [];
-    if (salvage && salvaged) ways.push({ label: `Open the ${count(salvage.records)} whole records`, main: true, act: () => void open({ files: salvaged, salvage: true }) });
-    const ofChoices = problem.kind === "contrast" || problem.kind === "recipe";
-    const before = now().sheet?.stronger.length ? now().sheet?.recipe : null;
-    if (ofChoices && before) ways.push({ label: "Back to the choices before", main: true, act: () => change(before) });
-    if (problem.kind === "recipe" && !before) ways.push({ label: "Open another recipe…", act: () => find("#recipe-file").click() });
-    if (ofChoices && now().summary) ways.push({ label: "Propose afresh", act: () => void afresh() });
-    if (!ofChoices) ways.push({ label: "Choose another recording…", act: pick });
-    const rest = salvage ? [" The ", make("b", {}, `${count(salvage.records)} whole records before it (${clock(salvage.seconds)})`), " can be opened."] : [];
-    say("#problem", { title: sentence(about + problem.what, file), text: [whole(problem.advice), ...rest], where: whereabouts(problem), ways });
+    sayProblem(problem, waysOn(problem));
+  }
+
+  /** @param {import("./types").Problem} problem @returns {import("./notices.js").Way[]} */
+  function waysOn({ kind, salvage }) {
+    const files = last && "files" in last ? last.files : null;
+    const { sheet, summary } = now();
+    const before = sheet?.stronger.length ? sheet.recipe : null;
+    const ofChoices = kind === "contrast" || kind === "recipe";
+    const ways = [
+      salvage && files && { label: `Open the ${count(salvage.records)} whole records`, main: true, act: () => void open({ files, salvage: true }) },
+      ofChoices && before && { label: "Back to the choices before", main: true, act: () => change(before) },
+      kind === "recipe" && !before && { label: "Open another recipe…", act: () => find("#recipe-file").click() },
+      ofChoices && summary && { label: "Propose afresh", act: () => void afresh() },
+      !ofChoices && { label: "Choose another recording…", act: pick },
+    ];
+    return ways.flatMap((way) => way || []);
   }
 
   async function afresh() {
@@ -134,7 +146,7 @@ export function door({ bridge, change: edit }, compute) {
       unsay("#problem");
       try {
         const text = await file.text();
-        if (/"teasel_weights"\s*:/.test(text)) return say("#hint", { title: `${file.name} holds weights`, text: ["This version applies weights in the terminal: ", make("code", {}, `teasel apply ${file.name} RECORDING --out DIR`), "."], ways: [{ label: "Close", act: () => unsay("#hint") }] });
+        if (/"teasel_weights"\s*:/.test(text)) return sayWeights(file.name);
         const recipe = bridge.parseRecipe(text);
         if (!now().summary) return wait({ recipe, link: null }, `${file.name} is open`);
         unsay("#hint");
@@ -157,27 +169,37 @@ export function door({ bridge, change: edit }, compute) {
       const { summary, recipe } = now();
       await bridge.stop();
       put({ phase: !summary ? "empty" : recipe ? "ready" : "choosing", progress: null });
-      if (summary && recipe) say("#hint", { title: "Stopped", text: ["What was computed before stays on the sheet."], ways: [{ label: "Go on", main: true, act: goOn }, { label: "Leave it", act: () => unsay("#hint") }] });
+      if (summary && recipe) sayStopped(goOn);
     },
     died() {
       put({ phase: "error", progress: null });
       const { recipe, summary } = now();
-      say("#problem", {
-        title: "The computation stopped; your choices are kept",
-        text: ["The browser ended the worker, most likely for memory. Fewer channels or a lower sampling rate need less."],
-        ways: [{ label: "Try again as it was", main: true, act: () => void again() }, ...(summary && recipe ? [{ label: "Take recipe.json", bare: true, act: takeRecipe }] : [])],
-      });
+      sayEnded(() => void again(), summary && recipe ? takeRecipe : null);
     },
   };
 
   /** @param {Waiting} recipe @param {string} title */
   function wait(recipe, title) {
     waiting = recipe;
-    say("#hint", {
-      title,
-      text: ["They are used for the next recording that is opened. A link holds no data: drop the recording it belongs to, or take a demo."],
-      ways: [{ label: "Set them aside", act: () => ((waiting = null), clearLink(), unsay("#hint")) }],
+    sayWaiting(title, () => {
+      waiting = null;
+      clearLink();
+      unsay("#hint");
     });
   }
 }
 
+/**
+ * Windows as the core proposes them, around the most frequent event, however rare; null where there are no events.
+ * @param {App["bridge"]} bridge
+ * @param {Summary} summary
+ */
+function unproposed(bridge, { recording }) {
+  const [most] = Object.entries(recording.events).sort((a, b) => b[1] - a[1]);
+  if (!most) return null;
+  const onsets = recording.event_onsets_s[most[0]] ?? [];
+  const gaps = onsets.slice(1).map((t, i) => t - Number(onsets[i]));
+  const long = Math.min(1, ...gaps.filter((gap) => gap > 0).map((gap) => gap / 2));
+  const window = (/** @type {number} */ from_s, /** @type {number} */ to_s) => ({ event: most[0], from_s, to_s });
+  return bridge.parseRecipe(JSON.stringify({ teasel_recipe: 1, contrast: { kind: "windows", signal: window(0, long), reference: window(-long, 0) } }));
+}

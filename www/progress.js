@@ -56,7 +56,7 @@ function show(box) {
 function heading() {
   const { progress } = now();
   if (!progress) return "";
-  const numbers = progress.stage === "permuting" ? `: ${count(progress.done)} of ${count(progress.of)}` : progress.of > 1 ? `: ${Math.floor((100 * progress.done) / progress.of)} %` : "";
+  const numbers = progress.stage === "permuting" ? `: ${count(progress.done)} of ${count(progress.of)}` : progress.of > 1 && progress.done < progress.of ? `: ${Math.floor((100 * progress.done) / progress.of)} %` : "";
   return (WORDS[progress.stage] ?? "Working") + numbers;
 }
 

@@ -11,7 +11,8 @@ export function mountReadings() {
   const later = afterRest(writeAll, REST_MS);
   follow((state, before) => {
     if (state.readings === before.readings) return;
-    if (before.readings.length === 0) writeAll();
+    if (state.readings.length === 0) clear();
+    else if (before.readings.length === 0) writeAll();
     else later();
   });
 }
@@ -20,6 +21,16 @@ export function mountReadings() {
 export function readingOf(section) {
   const reading = now().readings.find((one) => one.section === section);
   return reading ? plainText(reading.text) + (reading.but ? ` But ${plainText(reading.but)}` : "") : "";
+}
+
+/** Nothing is known any more. */
+function clear() {
+  for (const section of written.keys()) {
+    const place = find(`#reading-${section}`);
+    place.replaceChildren();
+    writeBut(place, null);
+  }
+  written.clear();
 }
 
 function writeAll() {

@@ -65,7 +65,7 @@ function answer(step, state) {
 }
 
 /** @param {StepName} step @param {State} state @returns {Answer} */
-function settled(step, { summary, sheet, phase, taken }) {
+function settled(step, { summary, sheet, phase, recipe, taken }) {
   /** @type {Answer} */
   const waiting = { knot: "wait", answer: "" };
   if (step === "recording") {
@@ -81,6 +81,7 @@ function settled(step, { summary, sheet, phase, taken }) {
     const out = channels.length - used;
     return { knot: doubt ? "look" : "done", answer: out ? `${used} used, ${out} out` : `${used} used` };
   }
+  if (step === "windows" && phase === "choosing" && !recipe) return { knot: "look", answer: "no events" };
   if (step === "windows" && phase === "choosing") return { knot: "now", answer: "pick an event" };
   if (!sheet) return waiting;
   if (step === "windows" && sheet.windows) {

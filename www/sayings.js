@@ -1,0 +1,73 @@
+/** What the page says when something is missing, kept, stopped or wrong. */
+import { make } from "./kit.js";
+import { asProblem, say, sentence, unsay, whereabouts, whole } from "./notices.js";
+import { clock, count } from "./numbers.js";
+
+/** @typedef {import("./notices.js").Way} Way */
+
+/** @type {Way} */
+const CLOSE = { label: "Close", act: () => unsay("#hint") };
+
+/** @param {() => void} pick */
+export function sayNoEvents(pick) {
+  const strong = (/** @type {string} */ text) => make("b", {}, text);
+  say("#hint", {
+    title: "This recording holds no events",
+    text: ["This version compares windows around events. Drop the recording again together with its table of events: a tab-separated file with the columns ", strong("onset"), ", ", strong("duration"), " and ", strong("trial_type"), ", named as the recording and ending in ", strong("events.tsv"), "."],
+    ways: [{ label: "Choose the recording and its events…", act: pick, main: true }],
+  });
+}
+
+export function sayFewEvents() {
+  say("#hint", {
+    title: "No event occurs ten times",
+    text: ["With fewer than ten windows a side, held-out ratios and p are withheld: enough to look, too few to test. Choose an event and its components can be looked at."],
+    ways: [CLOSE],
+  });
+}
+
+/** @param {string[]} notes */
+export function sayOpenEnds(notes) {
+  say("#hint", { title: "The link left some things open", text: [notes.join(" ")], ways: [CLOSE] });
+}
+
+/** @param {string} file */
+export function sayWeights(file) {
+  say("#hint", { title: `${file} holds weights`, text: ["This version applies weights in the terminal: ", make("code", {}, `teasel apply ${file} RECORDING --out DIR`), "."], ways: [CLOSE] });
+}
+
+/** Choices that wait for a recording. @param {string} title @param {() => void} aside */
+export function sayWaiting(title, aside) {
+  say("#hint", {
+    title,
+    text: ["They are used for the next recording that is opened. A link holds no data: drop the recording it belongs to, or take a demo."],
+    ways: [{ label: "Set them aside", act: aside }],
+  });
+}
+
+/** @param {() => void} goOn */
+export function sayStopped(goOn) {
+  say("#hint", { title: "Stopped", text: ["What was computed before stays on the sheet."], ways: [{ label: "Go on", main: true, act: goOn }, { ...CLOSE, label: "Leave it" }] });
+}
+
+/** The worker ended. @param {() => void} again @param {(() => void) | null} takeRecipe */
+export function sayEnded(again, takeRecipe) {
+  say("#problem", {
+    title: "The computation stopped; your choices are kept",
+    text: ["The browser ended the worker, most likely for memory. Fewer channels or a lower sampling rate need less."],
+    ways: [{ label: "Try again as it was", main: true, act: again }, ...(takeRecipe ? [{ label: "Take recipe.json", bare: true, act: takeRecipe }] : [])],
+  });
+}
+
+/**
+ * An error in its own words: what, where, expected and found, what to do.
+ * @param {unknown} thrown
+ * @param {Way[]} ways
+ */
+export function sayProblem(thrown, ways) {
+  const problem = asProblem(thrown);
+  const { salvage, file } = problem;
+  const about = file && !problem.what.includes(file) ? `${file}: ` : "";
+  const rest = salvage ? [" The ", make("b", {}, `${count(salvage.records)} whole records before it (${clock(salvage.seconds)})`), " can be opened."] : [];
+  say("#problem", { title: sentence(about + problem.what, file), text: [whole(problem.advice), ...rest], where: whereabouts(problem), ways });
+}
