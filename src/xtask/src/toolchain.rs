@@ -72,7 +72,7 @@ fn target_installed() -> bool {
 }
 
 impl Toolchain {
-    /// `cargo build --release` for the page's crate, without what the outer cargo left in the environment.
+    /// `cargo build --profile page` for the page's crate, without what the outer cargo left in the environment.
     pub fn cargo_build(self) -> Result<Command> {
         let mut command = match self {
             Toolchain::Own => {
@@ -93,7 +93,7 @@ impl Toolchain {
             }
         };
         command
-            .args(["build", "--quiet", "--release", "--target", TARGET])
+            .args(["build", "--quiet", "--profile", "page", "--target", TARGET])
             .args(["--package", "teasel-page", "--target-dir"])
             .arg(house::target("wasm")?)
             .current_dir(house::root())

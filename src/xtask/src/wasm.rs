@@ -31,7 +31,7 @@ pub fn build() -> Result<Vec<u8>> {
     shell::run("compiling the module", &mut chosen.cargo_build()?)?;
     let compiled = house::target("wasm")?
         .join(toolchain::TARGET)
-        .join("release/teasel_page.wasm");
+        .join("page/teasel_page.wasm");
     let bound = bind(&compiled)?;
     let module = shrink(&bound)?;
     println!(
