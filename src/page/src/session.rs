@@ -5,7 +5,7 @@ use crate::take;
 use js_sys::Function;
 use serde::{Deserialize, Serialize};
 use std::mem;
-use teasel_core::analysis::{self, Analysis, Progress, Stage};
+use teasel_core::analysis::{self, Analysis, Progress, Proposal, Stage};
 use teasel_core::demo;
 use teasel_core::error::{Kind, Problem};
 use teasel_core::recipe::Recipe;
@@ -15,14 +15,13 @@ use teasel_core::takeaway::readings;
 use wasm_bindgen::JsValue;
 use wasm_bindgen::prelude::wasm_bindgen;
 
-/// Seed of the demo recording: the page's is the one that `cargo xtask demo` writes.
-const DEMO_SEED: u64 = 1;
-
 /// What a worker holds.
 #[wasm_bindgen]
 #[derive(Default)]
 pub struct Session {
     state: State,
+    /// The question that a demo brings along.
+    brought: Option<Proposal>,
 }
 
 #[derive(Default)]
@@ -72,6 +71,7 @@ impl Session {
         salvage: bool,
     ) -> Outcome<()> {
         self.state = State::Empty;
+        self.brought = None;
         let sides: Vec<NamedBytes> = from_js(sides)?;
         let sides = sides
             .into_iter()
@@ -89,10 +89,15 @@ impl Session {
     /// Makes a demo recording: `watch`.
     #[wasm_bindgen(js_name = beginDemo)]
     pub fn begin_demo(&mut self, which: &str) -> Outcome<()> {
-        self.state = match which {
-            "watch" => State::Open(Box::new(demo::night_watch(DEMO_SEED).recording)),
-            other => return Err(thrown(unknown_demo(other))),
-        };
+        if which != "watch" {
+            return Err(thrown(unknown_demo(which)));
+        }
+        let made = demo::night_watch(demo::WATCH_SEED);
+        self.brought = Some(Proposal {
+            recipe: made.recipe,
+            why: demo::WATCH_WHY.to_owned(),
+        });
+        self.state = State::Open(Box::new(made.recording));
         Ok(())
     }
 
@@ -101,9 +106,11 @@ impl Session {
         to_js(&analysis::summary(self.recording()?))
     }
 
-    /// `{recipe, why}`, or null where no event is frequent enough.
+    /// `{recipe, why}`: a demo's own question, else one for the most frequent event; null where no event is frequent enough.
     pub fn propose(&self) -> Outcome<JsValue> {
-        to_js(&analysis::propose(self.recording()?))
+        let recording = self.recording()?;
+        let proposal = self.brought.clone();
+        to_js(&proposal.or_else(|| analysis::propose(recording)))
     }
 
     /// Takes a recipe; what it makes stale is computed by the steps that follow. On a problem nothing changes.

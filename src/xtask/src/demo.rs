@@ -6,9 +6,6 @@ use teasel_core::demo;
 use teasel_core::recording::edf;
 use teasel_core::takeaway::recipe_json;
 
-/// The seed of the recording that the page's button makes.
-const SEED: u64 = 1;
-
 /// Writes `demo-data/night-watch.edf` with its recipe and its true patterns.
 pub fn write() -> Result<()> {
     for (path, bytes) in write_to(&house::root().join("demo-data"))? {
@@ -19,7 +16,7 @@ pub fn write() -> Result<()> {
 
 /// Writes the same files elsewhere; gives their paths and sizes.
 pub fn write_to(folder: &Path) -> Result<Vec<(PathBuf, usize)>> {
-    let made = demo::night_watch(SEED);
+    let made = demo::night_watch(demo::WATCH_SEED);
     let mut truth = serde_json::to_string_pretty(&made.truth)?;
     truth.push('\n');
     let files = [

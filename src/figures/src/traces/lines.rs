@@ -1,6 +1,6 @@
 //! The lines themselves, their scale bars and the events across them.
 use super::make::{median, spread};
-use super::{Line, Traces};
+use super::{HEADROOM, Line, Traces};
 use crate::axis::nice_step;
 use crate::frame::{Frame, LEFT};
 use crate::pen::{At, Drawn, Pen, SMALL, TICK, Word};
@@ -82,7 +82,7 @@ impl Traces {
         order.sort_by_key(|i| !faint(&self.lines[*i]));
         for i in order {
             let line = &self.lines[i];
-            let y = frame.top + row * (i as f64 + 0.5);
+            let y = frame.top + row * (i as f64 + HEADROOM + 0.5);
             if i % every == 0 {
                 pen.name(&line.name, (LEFT - 9.0, y), LEFT - 12.0, word)?;
             }

@@ -48,6 +48,9 @@ pub struct Line {
     pub faint: bool,
 }
 
+/// Rows of room above the first line: frontal channels stand first in most montages, and blinks are tall.
+const HEADROOM: f64 = 1.5;
+
 impl Traces {
     fn frame(&self, width: f64, height: f64) -> Frame {
         Frame {
@@ -64,7 +67,7 @@ impl Traces {
 impl Plot for Traces {
     fn draw<DB: DrawingBackend>(&self, pen: &Pen<DB>) -> Drawn<DB> {
         let frame = self.frame(pen.w, pen.h);
-        let row = (frame.bottom - frame.top) / self.lines.len().max(1) as f64;
+        let row = (frame.bottom - frame.top) / (self.lines.len().max(1) as f64 + HEADROOM);
         for gap in &self.gaps {
             let (x0, x1) = (frame.px(gap[0]), frame.px(gap[1]));
             pen.hatch((x0, frame.top), (x1, frame.bottom), pen.inks.line)?;
@@ -86,7 +89,7 @@ impl Plot for Traces {
     fn height(&self, _width: u32) -> u32 {
         let n = self.lines.len().max(1) as f64;
         let row = (400.0 / n).clamp(12.0, 29.0);
-        (TOP + FOOT + (row * n).min(720.0)) as u32
+        (TOP + FOOT + (row * (n + HEADROOM)).min(720.0)) as u32
     }
 
     fn plot_box(&self, width: f64, height: f64) -> Option<PlotBox> {
