@@ -1,6 +1,10 @@
 //! `recipe.json`: all choices of the user; with a recording it reproduces the result.
 //!
 //! Unknown keys are errors, every key is optional but `teasel_recipe` and `contrast`.
+mod check;
+
+pub(crate) use check::WHOLE_MAX;
+pub use check::recipe_check;
 use serde::{Deserialize, Serialize};
 
 /// All choices.

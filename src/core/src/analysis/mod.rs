@@ -13,8 +13,8 @@ mod summary;
 mod work;
 
 use crate::contrast::windows::check;
-use crate::error::{Kind, Problem, Result};
-use crate::recipe::{Contrast, Keep, Measure, Recipe, Shrink, ShrinkWord};
+use crate::error::Result;
+use crate::recipe::{Recipe, recipe_check};
 use crate::recording::Recording;
 use crate::sheet::Sheet;
 pub use propose::{Proposal, propose};
@@ -143,96 +143,8 @@ impl Analysis {
     }
 }
 
-/// Refuses what no recording could make sense of.
+/// Refuses ranges that no recording makes sense of, and events that this one does not hold.
 fn check_recipe(recipe: &Recipe, recording: &Recording) -> Result<()> {
-    let refuse = |what: &str, place: &str, expected: &str, found: String, advice: &str| {
-        Err(Problem::new(Kind::Recipe, what, advice)
-            .at(place)
-            .expected_found(expected, found))
-    };
-    if let Keep::Number(keep) = recipe.keep
-        && keep < 2
-    {
-        return refuse(
-            "keep at least 2 dimensions",
-            "keep",
-            "an integer above 1",
-            keep.to_string(),
-            "with C = 1 the direction is chosen by size alone and nothing is left to compare",
-        );
-    }
-    if let Shrink::Number(x) = recipe.shrink
-        && !(0.0..1.0).contains(&x)
-    {
-        return refuse(
-            "the shrinkage is out of range",
-            "shrink",
-            "a number from 0 to below 1",
-            x.to_string(),
-            "choose \"auto\" or a number such as 0.1",
-        );
-    }
-    if recipe.measure == Measure::Typical
-        && let Shrink::Word(word @ (ShrinkWord::LedoitWolf | ShrinkWord::Oas)) = recipe.shrink
-    {
-        let found = if word == ShrinkWord::Oas {
-            "oas"
-        } else {
-            "ledoit-wolf"
-        };
-        return refuse(
-            "this shrinkage belongs to the total measure",
-            "shrink",
-            "\"auto\" or a number for the typical measure",
-            format!("\"{found}\""),
-            "choose \"auto\", or the measure \"total\"",
-        );
-    }
-    if !(1..=64).contains(&recipe.components) {
-        return refuse(
-            "the number of components is out of range",
-            "components",
-            "1 to 64",
-            recipe.components.to_string(),
-            "4 serves most questions",
-        );
-    }
-    if !(2..=100).contains(&recipe.evidence.folds) {
-        return refuse(
-            "the number of folds is out of range",
-            "evidence, folds",
-            "2 to 100",
-            recipe.evidence.folds.to_string(),
-            "5 serves most questions",
-        );
-    }
-    if recipe.evidence.permutations > 1_000_000 || recipe.evidence.bootstrap > 100_000 {
-        return refuse(
-            "more repetitions than can be kept",
-            "evidence",
-            "at most 1000000 permutations and 100000 bootstrap samples",
-            format!(
-                "{} and {}",
-                recipe.evidence.permutations, recipe.evidence.bootstrap
-            ),
-            "1000 and 500 serve most questions",
-        );
-    }
-    let Contrast::Windows { signal, reference } = &recipe.contrast;
-    for (side, w) in [("signal", signal), ("reference", reference)] {
-        let fine = w.from_s.is_finite()
-            && w.to_s.is_finite()
-            && w.from_s < w.to_s
-            && w.from_s.abs().max(w.to_s.abs()) < 1e6;
-        if !fine {
-            return refuse(
-                &format!("the {side} windows end before they begin"),
-                &format!("contrast, {side}"),
-                "from_s below to_s",
-                format!("{} to {} s", w.from_s, w.to_s),
-                "exchange the two ends, or type new ones",
-            );
-        }
-    }
+    recipe_check(recipe)?;
     check(&recipe.contrast, &recording.events, recording.rate_hz)
 }

@@ -2,7 +2,9 @@
 use super::{cards, check_recipe};
 use crate::error::Result;
 use crate::prepare::inspect;
-use crate::recipe::{Channels, Contrast, EventWindow, Evidence, Filter, Keep, Measure, Recipe, Shrink};
+use crate::recipe::{
+    Channels, Contrast, EventWindow, Evidence, Filter, Keep, Measure, Recipe, Shrink,
+};
 use crate::recording::Recording;
 use crate::sheet::{ChannelCard, RecordingCard};
 use serde::Serialize;
@@ -34,14 +36,21 @@ pub fn fits(recording: &Recording, recipe: &Recipe) -> Result<()> {
 }
 
 fn no_contrast() -> Recipe {
-    let none = || EventWindow { event: String::new(), from_s: 0.0, to_s: 0.0 };
+    let none = || EventWindow {
+        event: String::new(),
+        from_s: 0.0,
+        to_s: 0.0,
+    };
     Recipe {
         teasel_recipe: 1,
         channels: Channels::default(),
         filter: Filter::default(),
         keep: Keep::default(),
         measure: Measure::default(),
-        contrast: Contrast::Windows { signal: none(), reference: none() },
+        contrast: Contrast::Windows {
+            signal: none(),
+            reference: none(),
+        },
         shrink: Shrink::default(),
         components: 4,
         evidence: Evidence::default(),

@@ -23,12 +23,13 @@ mod summary;
 mod weights;
 mod words;
 
+pub use crate::recipe::recipe_check;
 pub use apply::Applied;
 pub use archive::{archive, safe_name};
 pub use link::{RecipeLink, link_decode, link_encode};
 pub use methods::{methods, references};
 pub use readings::{Reading, Section, Span, Tone, readings};
-pub use recipe_file::{recipe_check, recipe_from_json, recipe_json};
+pub use recipe_file::{recipe_from_json, recipe_json};
 pub use report::report_html;
 pub use results::results_json;
 pub use series::{series_csv, series_npy};

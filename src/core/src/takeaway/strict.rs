@@ -36,8 +36,6 @@ pub(crate) enum Shape {
 
 /// The largest file read, in bytes.
 pub(crate) const SIZE_CAP: usize = 1 << 20;
-/// The largest whole number that JavaScript and Rust both hold exactly.
-pub(crate) const WHOLE_MAX: f64 = 9_007_199_254_740_991.0;
 
 /// Checks `text` against `shape`; `name` is what the file is called in errors ("the recipe").
 pub(crate) fn check(text: &str, shape: &Shape, name: &str) -> Result<()> {
@@ -257,7 +255,9 @@ fn fits(value: &Value, shape: &Shape) -> bool {
     match shape {
         Shape::Object(_) | Shape::Kinds(..) => value.is_object(),
         Shape::Number => value.as_f64().is_some_and(f64::is_finite),
-        Shape::Whole => value.as_u64().is_some_and(|n| n as f64 <= WHOLE_MAX),
+        Shape::Whole => value
+            .as_u64()
+            .is_some_and(|n| n as f64 <= crate::recipe::WHOLE_MAX),
         Shape::Text => value.is_string(),
         Shape::List(_) => value.is_array(),
         Shape::Word(words) => value.as_str().is_some_and(|t| words.contains(&t)),
