@@ -99,7 +99,10 @@ impl Toolchain {
             .current_dir(house::root())
             .env("CARGO_ENCODED_RUSTFLAGS", flags().join("\u{1f}"));
         if self == Toolchain::Debian {
-            command.arg("-Zbuild-std=std,panic_abort");
+            command.args([
+                "-Zbuild-std=std,panic_abort",
+                "-Zbuild-std-features=optimize_for_size",
+            ]);
         }
         Ok(command)
     }
