@@ -31,9 +31,11 @@ async function firstScreen() {
 /** The engine behind the sheet: bridge, worker, drawing on real canvases. */
 async function engine() {
   const { page } = await openPage(context, { url: await bridgeUrl() });
-  await page.evaluate(() => document.body.replaceChildren(Object.assign(document.createElement("input"), { type: "file", id: "file" })));
+  await page.evaluate(() => document.body.append(Object.assign(document.createElement("input"), { type: "file", id: "file" })));
   await page.setInputFiles("#file", recording);
   const measured = await page.evaluate(async (text) => {
+    // A problem is a plain object: thrown as an error, so that it can be read.
+    const readable = (/** @type {any} */ problem) => Promise.reject(problem instanceof Error ? problem : new Error(JSON.stringify(problem)));
     const w = /** @type {any} */ (globalThis);
     const bridge = await w.bridgeReady;
     const input = /** @type {HTMLInputElement} */ (document.getElementById("file"));
@@ -60,7 +62,7 @@ async function engine() {
     const drawn = (/** @type {any} */ next, /** @type {number} */ from) =>
       new Promise((done, failed) => {
         wanted = { done: (/** @type {number} */ at) => done(at - from), failed, fits: (/** @type {any} */ news) => JSON.stringify(news.sheet.recipe) === next };
-        bridge.setRecipe(JSON.parse(next)).catch(failed);
+        bridge.setRecipe(JSON.parse(next)).catch(readable).catch(failed);
       });
     const until = async (/** @type {string} */ stage) => {
       while (stages.at(-1)?.stage !== stage) await new Promise((next) => setTimeout(next, 20));
@@ -70,7 +72,7 @@ async function engine() {
 
     await bridge.watch(watched);
     const from = performance.now();
-    await bridge.open([.../** @type {FileList} */ (input.files)]);
+    await bridge.open([.../** @type {FileList} */ (input.files)]).catch(readable);
     const opened = performance.now() - from;
     const read = (stages.findLast(({ stage }) => stage === "reading")?.at ?? 0) - from;
     const first = await drawn(asText(asked), from);

@@ -165,22 +165,18 @@ def measure(path, recipe_path):
     timed(table, "maps", lambda: spline(unit(len(NAMES)), unit(67 * 67)) @ patterns)
     table["first_result"] = sum(table.values())
 
-    def changed():
-        filters, patterns, _ = contrast.fit(20)
-        contrast.spectra(filters[:, :1])
+    def described(of, keep):
+        filters, patterns, _ = of.fit(keep)
+        of.spectra(filters[:, :1])
         return patterns
 
-    table["change_keep"] = min(repeats(changed))
-    edge = json.loads(json.dumps(recipe))
-    edge["contrast"]["signal"]["from_s"] += 0.05
+    def moved(step):
+        edge = json.loads(json.dumps(recipe))
+        edge["contrast"]["signal"]["from_s"] += 0.05 * step
+        return described(Contrast(data, onsets, edge), len(NAMES))
 
-    def moved():
-        again = Contrast(data, onsets, edge)
-        filters, patterns, _ = again.fit(len(NAMES))
-        again.spectra(filters[:, :1])
-        return patterns
-
-    table["change_edge"] = min(repeats(moved))
+    table["change_keep"] = median(seconds(lambda: described(contrast, keep)) for keep in (20, 24, 28, 32, 36, 40, 48))
+    table["change_edge"] = median(seconds(lambda: moved(step)) for step in (1, 2, 3, 4, 5))
     contrast.fit(32)
 
     def permute():
@@ -198,13 +194,19 @@ def measure(path, recipe_path):
     print(json.dumps(table))
 
 
+def seconds(act):
+    started = time.perf_counter()
+    act()
+    return time.perf_counter() - started
+
+
+def median(times):
+    ordered = sorted(times)
+    return ordered[len(ordered) // 2]
+
+
 def repeats(act, count=3):
-    times = []
-    for _ in range(count):
-        started = time.perf_counter()
-        act()
-        times.append(time.perf_counter() - started)
-    return times
+    return [seconds(act) for _ in range(count)]
 
 
 if __name__ == "__main__":

@@ -117,7 +117,7 @@ fn bundled(entry: &Path) -> Result<String> {
     shell::output("esbuild", &mut command)
 }
 
-fn assemble(index: &str, style: &str, script: &str, worker: &str, module: &[u8]) -> Result<String> {
+fn assemble(index: &str, style: &str, script: &str, worker: &str, packed: &[u8]) -> Result<String> {
     let (script, worker) = (script.trim(), worker.trim());
     for (name, text) in [("www/main.js", script), ("www/worker.js", worker)] {
         let lower = text.to_ascii_lowercase();
@@ -138,7 +138,7 @@ fn assemble(index: &str, style: &str, script: &str, worker: &str, module: &[u8])
     let scripts = format!(
         "<script type=\"application/gzip\" id=\"teasel-module\">{}</script>\n\
          <script type=\"text/plain\" id=\"teasel-worker\">{worker}</script>\n<script>{script}</script>",
-        BASE64_STANDARD.encode(gzip(module))
+        BASE64_STANDARD.encode(packed)
     );
     let html = replaced(index, CHARSET, &head)?;
     let html = replaced(&html, STYLE, &format!("<style>{}</style>", style.trim()))?;
@@ -199,7 +199,7 @@ mod tests {
 
     #[test]
     fn the_module_comes_back_from_its_data_block() {
-        let html = assemble(&index(), "", "", "", b"a module's bytes").unwrap();
+        let html = assemble(&index(), "", "", "", &gzip(b"a module's bytes")).unwrap();
         let block = html
             .split_once("id=\"teasel-module\">")
             .unwrap()

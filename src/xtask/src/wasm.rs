@@ -23,7 +23,7 @@ pub fn folder() -> Result<PathBuf> {
     house::target("page")
 }
 
-/// Compiles, binds and shrinks; gives the module that goes into the page.
+/// Compiles, binds, shrinks and packs; gives the gzipped module that goes into the page.
 pub fn build() -> Result<Vec<u8>> {
     let chosen = toolchain::choose()?;
     let started = Instant::now();
@@ -34,13 +34,15 @@ pub fn build() -> Result<Vec<u8>> {
         .join("page/teasel_page.wasm");
     let bound = bind(&compiled)?;
     let module = shrink(&bound)?;
+    let packed = pack(&module)?;
     println!(
-        "Module: {} KB as compiled, {} KB as shipped; {:.0} s.",
+        "Module: {} KB as compiled, {} KB as shipped, {} KB packed; {:.0} s.",
         bound.metadata()?.len() / 1000,
         module.len() / 1000,
+        packed.len() / 1000,
         started.elapsed().as_secs_f64()
     );
-    Ok(module)
+    Ok(packed)
 }
 
 /// Writes the bindings as an ES module, which the bundler turns into classic scripts for the page and for the worker.
@@ -61,26 +63,49 @@ fn bind(compiled: &Path) -> Result<PathBuf> {
 /// Runs the size and speed pass of npm's binaryen, once for each input.
 fn shrink(bound: &Path) -> Result<Vec<u8>> {
     let before = house::read(bound)?;
-    let kept = house::target("page/shrunk")?.join(format!("{}.wasm", house::sha256_hex(&before)));
-    if !kept.exists() {
-        for old in fs::read_dir(house::target("page/shrunk")?)?.flatten() {
-            fs::remove_file(old.path())?;
-        }
-        let beside = kept.with_extension("tmp");
+    let after = once("shrunk", &before, |beside| {
         let mut command = node::tool("wasm-opt")?;
         command
             .args(FEATURES)
             .args(["-O3", "--strip-debug", "--strip-producers"])
             .arg(bound)
             .arg("-o")
-            .arg(&beside);
-        shell::output("wasm-opt", &mut command)?;
-        fs::rename(&beside, &kept)?;
-    }
-    let after = house::read(&kept)?;
+            .arg(beside);
+        shell::output("wasm-opt", &mut command).map(drop)
+    })?;
     Ok(if after.len() < before.len() {
         after
     } else {
         before
     })
+}
+
+/// Gzip by Zopfli, which searches longer and saves a twentieth; once for each input.
+fn pack(module: &[u8]) -> Result<Vec<u8>> {
+    once("packed", module, |beside| {
+        let file = fs::File::create(beside)?;
+        let options = zopfli::Options::default();
+        Ok(zopfli::compress(
+            options,
+            zopfli::Format::Gzip,
+            module,
+            file,
+        )?)
+    })
+}
+
+/// What `make` writes for an input, kept in `target/page/` until the input changes.
+fn once(kind: &str, input: &[u8], make: impl FnOnce(&Path) -> Result<()>) -> Result<Vec<u8>> {
+    let folder = house::target("page")?.join(kind);
+    let kept = folder.join(house::sha256_hex(input));
+    if !kept.exists() {
+        if folder.exists() {
+            fs::remove_dir_all(&folder)?;
+        }
+        fs::create_dir_all(&folder)?;
+        let beside = kept.with_extension("tmp");
+        make(&beside)?;
+        fs::rename(&beside, &kept)?;
+    }
+    house::read(&kept)
 }
