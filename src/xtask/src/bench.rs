@@ -181,7 +181,7 @@ fn print_rows(rows: &[Row]) {
             Budget::BelowPythonAnd(limit) => format!("≤ Py and ≤ {limit}"),
             Budget::None => String::new(),
         };
-        let python = row.python.map_or(String::new(), |value| three(value));
+        let python = row.python.map_or(String::new(), three);
         let ratio = row
             .python
             .map_or(String::new(), |value| format!("{:.2}", row.found / value));
