@@ -18,7 +18,7 @@ use teasel_core::evidence::permute::p_value;
 use teasel_core::recipe::{Contrast, EventWindow, Evidence, Keep, Measure, Recipe, Shrink};
 use teasel_core::recording::{MemorySource, OpenOptions, Recording, open};
 use teasel_core::sheet::{ComparatorKind, Component, Sheet};
-use teasel_tests::calibration::{Noise, binomial_99, rejections};
+use teasel_tests::calibration::{Noise, binomial_99, null_recipe, null_recording, rejections};
 use teasel_tests::{Lcg, close, close_all, largest, number, numbers, reference, rows};
 
 fn matrix(value: &Value) -> DMatrix<f64> {
@@ -489,4 +489,136 @@ fn the_night_watch_gives_back_what_was_planted() {
         .find(|c| c.kind == ComparatorKind::FirstPc)
         .unwrap();
     assert!((0.7..1.4).contains(&first.typical.held_out.unwrap()));
+}
+
+/// Noise with a source that doubles after each of `trials` events "tick".
+fn plain_recording(trials: usize) -> Recording {
+    null_recording(3, Noise::White, 6, trials)
+}
+
+#[test]
+fn flat_windows_are_left_out_with_their_partners_and_said() {
+    let mut recording = plain_recording(20);
+    // The amplifier is blanked after the third event.
+    let at = (recording.events[2].onset_s * recording.rate_hz).round() as usize;
+    for channel in &mut recording.samples {
+        channel[at..at + 90].fill(0.0);
+    }
+    let sheet = sheet(recording, null_recipe(Measure::Typical, 50));
+    let windows = sheet.windows.unwrap();
+    assert_eq!((windows.signal.used, windows.reference.used), (19, 19));
+    assert_eq!(windows.signal.dropped.get("flat"), Some(&1));
+    assert_eq!(windows.reference.dropped.get("partner"), Some(&1));
+    assert_eq!(windows.trials[2].dropped.as_deref(), Some("flat"));
+    assert!(sheet.stronger[0].typical.held_out.unwrap().is_finite());
+    assert!(
+        sheet.warnings.iter().any(|w| w.contains("no variance")),
+        "{:?}",
+        sheet.warnings
+    );
+}
+
+#[test]
+fn channels_that_are_flat_outside_one_fold_are_an_error_in_words() {
+    let mut recording = plain_recording(20);
+    let count = recording.sample_count();
+    for (i, channel) in recording.samples.iter_mut().enumerate().skip(1) {
+        // All but one channel lie on a line through the first four fifths.
+        let first = channel[0];
+        channel[..count * 4 / 5 - 200].fill(first * i as f32);
+    }
+    let mut recipe = null_recipe(Measure::Typical, 10);
+    recipe.evidence.folds = 5;
+    let mut analysis = Analysis::new(recording, recipe).unwrap();
+    let problem = analysis.run(|_| ()).unwrap_err();
+    assert!(problem.to_string().contains("fold 5"), "{problem}");
+}
+
+#[test]
+fn times_beyond_any_clock_are_outside() {
+    let mut recording = plain_recording(20);
+    recording.events.push(teasel_core::recording::Event {
+        onset_s: 9e17,
+        duration_s: 0.0,
+        label: "tick".into(),
+    });
+    let sheet = sheet(recording, null_recipe(Measure::Typical, 10));
+    assert_eq!(
+        sheet.windows.unwrap().signal.dropped.get("outside"),
+        Some(&1)
+    );
+}
+
+#[test]
+fn a_side_with_fewer_windows_than_folds_still_tests_both_sides_in_every_fold() {
+    let mut recording = plain_recording(60);
+    for (k, event) in recording.events.iter_mut().enumerate() {
+        event.label = if k % 5 == 0 {
+            "tick".into()
+        } else {
+            "tock".into()
+        };
+    }
+    let mut recipe = null_recipe(Measure::Total, 20);
+    recipe.evidence.folds = 20;
+    recipe.contrast = Contrast::Windows {
+        signal: EventWindow {
+            event: "tick".into(),
+            from_s: 0.0,
+            to_s: 0.8,
+        },
+        reference: EventWindow {
+            event: "tock".into(),
+            from_s: 0.0,
+            to_s: 0.8,
+        },
+    };
+    let sheet = sheet(recording, recipe);
+    assert_eq!(sheet.folds.len(), 12);
+    let c = &sheet.stronger[0];
+    assert!(c.total.folds.iter().all(|x| x.is_finite()) && c.total.held_out.unwrap().is_finite());
+    assert!(c.typical.held_out.unwrap().is_finite());
+}
+
+#[test]
+fn the_sheet_after_a_change_of_c_is_that_of_a_fresh_run() {
+    let recording = null_recording(5, Noise::Pink, 24, 30);
+    let mut recipe = null_recipe(Measure::Typical, 20);
+    recipe.keep = Keep::Number(11);
+    let fresh = sheet(recording.clone(), recipe.clone());
+    let mut other = recipe.clone();
+    let mut analysis = {
+        other.keep = Keep::Number(15);
+        Analysis::new(recording, other).unwrap()
+    };
+    analysis.run(|_| ()).unwrap();
+    analysis.set_recipe(recipe).unwrap();
+    analysis.run(|_| ()).unwrap();
+    assert_eq!(
+        serde_json::to_string(analysis.sheet()).unwrap(),
+        serde_json::to_string(&fresh).unwrap()
+    );
+}
+
+#[test]
+fn trials_that_share_samples_are_said_to_flatter() {
+    let mut recording = plain_recording(20);
+    let doubled: Vec<_> = recording
+        .events
+        .iter()
+        .map(|e| teasel_core::recording::Event {
+            onset_s: e.onset_s + 0.002,
+            ..e.clone()
+        })
+        .collect();
+    recording.events.extend(doubled);
+    recording
+        .events
+        .sort_by(|a, b| a.onset_s.total_cmp(&b.onset_s));
+    let sheet = sheet(recording, null_recipe(Measure::Typical, 10));
+    assert!(
+        sheet.warnings.iter().any(|w| w.contains("not independent")),
+        "{:?}",
+        sheet.warnings
+    );
 }

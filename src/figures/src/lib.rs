@@ -31,6 +31,7 @@ mod overview;
 mod pen;
 mod places;
 mod ratio;
+mod recorder;
 mod scores;
 mod spectrum;
 mod svg;
@@ -131,8 +132,10 @@ pub fn draw<DB: DrawingBackend>(
     area: &DrawingArea<DB, Shift>,
     look: &Look,
 ) -> Drawn<DB> {
-    let pen = pen::Pen::new(area, look);
-    each!(figure, data => data.draw(&pen))
+    recorder::through(area, |area| {
+        let pen = pen::Pen::new(area, look);
+        each!(figure, data => data.draw(&pen))
+    })
 }
 
 /// Natural height in CSS pixels for a width.

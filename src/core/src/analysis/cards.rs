@@ -77,6 +77,8 @@ pub(super) fn begin(recording: &Recording, recipe: &Recipe) -> Sheet {
 fn envelope(recording: &Recording) -> Vec<f64> {
     let n = recording.sample_count();
     let bins = ENVELOPE_BINS.min(n);
+    // A product of two counts outgrows the 32 bits of a browser's usize.
+    let at = |b: usize| (b as u64 * n as u64 / bins as u64) as usize;
     let mut out = vec![0.0; bins];
     let mut counted = 0usize;
     for channel in &recording.samples {
@@ -87,7 +89,7 @@ fn envelope(recording: &Recording) -> Vec<f64> {
         counted += 1;
         let mean = channel.iter().map(|x| f64::from(*x)).sum::<f64>() / n.max(1) as f64;
         for (b, bin) in out.iter_mut().enumerate() {
-            let part = &channel[b * n / bins..(b + 1) * n / bins];
+            let part = &channel[at(b)..at(b + 1)];
             *bin += part
                 .iter()
                 .map(|x| (f64::from(*x) - mean).powi(2))
@@ -111,6 +113,7 @@ pub(super) fn forget(sheet: &mut Sheet, recipe: &Recipe, stale: &Stale) {
         sheet.windows = None;
     }
     if stale.method {
+        sheet.warnings = sheet.recording.warnings.clone();
         sheet.compression = None;
         sheet.shrinkage = None;
         sheet.stronger.clear();

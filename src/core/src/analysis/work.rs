@@ -15,6 +15,7 @@ use crate::prepare::{Prepared, Preparing, inspect};
 use crate::recipe::{Contrast, Keep, KeepWord, Measure, Recipe, Shrink, ShrinkWord};
 use crate::recording::Recording;
 use crate::sheet::{ChannelCard, KeepCurve, Sheet};
+use std::collections::BTreeMap;
 
 /// Largest C of `keep: "auto"`.
 const AUTO_LIMIT: usize = 150;
@@ -49,15 +50,16 @@ pub(super) struct Work {
 /// The ratio against C as far as it is.
 #[derive(Debug, Default)]
 struct CurveWork {
-    grid: Option<Vec<usize>>,
+    /// Fitted ratio, held-out ratio and standard error of its log, at every C that is done; `None` where the fit is singular.
+    points: BTreeMap<usize, Option<[f64; 3]>>,
+    /// Fitted ratio at the value of C in work.
+    fitted: f64,
     /// Held-out variances at the value of C in work, over the folds done.
     scores: Scores,
     /// 0: the whole; f + 1: fold f.
     part: usize,
-    fitted: Vec<f64>,
-    held_out: Vec<f64>,
-    log_se: Vec<f64>,
-    done: bool,
+    /// The sheet holds the curve for the C in force.
+    shown: bool,
 }
 
 /// The next thing to do.
@@ -79,6 +81,14 @@ enum Task {
     Permute,
     Curve,
     Nothing,
+}
+
+/// Most dimensions that a space holds.
+fn limit(recipe: &Recipe) -> usize {
+    match recipe.keep {
+        Keep::Number(keep) => keep.max(AUTO_LIMIT),
+        Keep::Word(_) => AUTO_LIMIT,
+    }
 }
 
 fn bites(per_unit: f64) -> usize {
@@ -156,8 +166,19 @@ impl Work {
             self.ends = None;
             self.described = 0;
         }
-        if folds {
+        let spaces = limit(old) != limit(new);
+        if spaces {
+            self.ground = None;
+        }
+        if folds || spaces {
             self.folds.clear();
+        }
+        if old.keep != new.keep {
+            // Only the logarithms of the C in force are kept, or dragging it would fill the memory.
+            self.ground
+                .iter_mut()
+                .chain(&mut self.folds)
+                .for_each(|g| g.logs.clear());
         }
         if windows || folds {
             self.design = None;
@@ -174,8 +195,14 @@ impl Work {
         {
             self.described = 0;
         }
-        let curve_holds =
-            !windows && !folds && old.measure == new.measure && old.shrink == new.shrink;
+        // What is known of the curve does not depend on the C in force, the choice of its points does.
+        self.curve.part = 0;
+        self.curve.shown = false;
+        let curve_holds = !windows
+            && !folds
+            && old.measure == new.measure
+            && old.shrink == new.shrink
+            && limit(old) == limit(new);
         if !curve_holds {
             self.curve = CurveWork::default();
         }
@@ -265,7 +292,7 @@ impl Work {
         if self.plan.is_none_or(|p| self.null.len() < p.count) {
             return Task::Permute;
         }
-        if !self.curve.done {
+        if !self.curve.shown {
             Task::Curve
         } else {
             Task::Nothing
@@ -309,6 +336,7 @@ impl Work {
                     prepared.rate_hz,
                 )?;
                 self.sheet.windows = Some(selection.card.clone());
+                afford(prepared.samples.len(), selection.windows.len(), recipe)?;
                 let all = selection.windows.len() as u64;
                 self.selection = Some(selection);
                 Ok(progress(Stage::Windows, 0, all, true))
@@ -388,9 +416,7 @@ impl Work {
         for window in selection.windows.iter().skip(first).take(bite) {
             self.covariances.push(&prepared.samples, window);
         }
-        if self
-            .covariances
-            .packed
+        if self.covariances.packed[first..]
             .iter()
             .flatten()
             .any(|x| !x.is_finite())
@@ -404,19 +430,28 @@ impl Work {
         let done = self.covariances.packed.len();
         if done == all {
             self.design = None;
+            self.drop_flat()?;
         }
         Ok(progress(Stage::Windows, done as u64, all as u64, false))
     }
 
-    fn limit(&self, recipe: &Recipe) -> usize {
-        match recipe.keep {
-            Keep::Number(keep) => keep.max(AUTO_LIMIT),
-            Keep::Word(_) => AUTO_LIMIT,
+    /// Leaves out windows that hold nothing: a variance of zero has no logarithm, and one flat window would decide a mean of logs.
+    fn drop_flat(&mut self) -> Result<()> {
+        let Some(selection) = &mut self.selection else {
+            return Err(lost());
+        };
+        let flat = self.covariances.flat();
+        if flat.iter().any(|f| *f) {
+            let kept = selection.drop_flat(&flat);
+            self.covariances.keep_only(&kept);
+            self.sheet.windows = Some(selection.card.clone());
+            selection.enough()?;
         }
+        Ok(())
     }
 
     fn push_ground(&mut self, recipe: &Recipe) -> Result<Progress> {
-        let limit = self.limit(recipe);
+        let limit = limit(recipe);
         let all = self.covariances.packed.len();
         if self.ground.is_none() {
             let ground = Ground::new(&self.covariances, limit, vec![true; all]);
@@ -561,10 +596,15 @@ impl Work {
                 .filter(|w| w.signal)
                 .map(|w| w.onset_s)
                 .collect();
+            // Both lists are in order of time.
+            let mut at = used.iter().peekable();
             onsets
                 .iter()
                 .copied()
-                .filter(|o| used.contains(&o.1))
+                .filter(|o| {
+                    while at.next_if(|t| **t < o.1).is_some() {}
+                    at.next_if(|t| **t == o.1).is_some()
+                })
                 .collect()
         } else {
             onsets
@@ -632,15 +672,18 @@ impl Work {
     }
 
     fn push_fold_ground(&mut self, f: usize, recipe: &Recipe) -> Result<Progress> {
-        let limit = self.limit(recipe);
+        let limit = limit(recipe);
         let (Some(design), Some(prepared), Some(selection)) =
             (&self.design, &self.prepared, &self.selection)
         else {
             return Err(lost());
         };
         if self.folds.len() <= f {
-            self.folds
-                .push(Ground::new(&self.covariances, limit, design.train(f)));
+            let ground = Ground::new(&self.covariances, limit, design.train(f));
+            if ground.space.dimensions() < 2 {
+                return Err(flat_fold(f, ground.space.dimensions()));
+            }
+            self.folds.push(ground);
         }
         push_space(
             &mut self.folds[f],
@@ -740,15 +783,19 @@ impl Work {
         else {
             return Err(lost());
         };
-        let grid = self
-            .curve
-            .grid
-            .get_or_insert_with(|| curve_grid(ground.space.dimensions(), keep));
-        let of = (grid.len() * (self.folds.len() + 1)) as u64;
-        let at = self.curve.held_out.len();
+        let grid = curve_grid(ground.space.dimensions(), keep);
+        let parts = self.folds.len() + 1;
+        let of = (grid.len() * parts) as u64;
+        let points = &mut self.curve.points;
+        let Some(at) = grid.iter().position(|c| !points.contains_key(c)) else {
+            self.sheet.curve = Some(curve_of(&grid, points));
+            self.curve.shown = true;
+            cards::guides(&mut self.sheet);
+            return Ok(progress(Stage::Curve, of, of, true));
+        };
         let c = grid[at];
         let part = self.curve.part;
-        let step = (at * (self.folds.len() + 1) + part) as u64;
+        let step = (at * parts + part) as u64;
         let target = if part == 0 {
             ground
         } else {
@@ -762,16 +809,20 @@ impl Work {
             signal: &design.signal,
             train: &target.train,
         };
-        let ends = fit(target.view(&self.covariances.weights, c), labels, &method)
-            .ok_or_else(|| singular_fold(part))?;
-        let u = &ends.stronger[0].u;
+        let ends = fit(target.view(&self.covariances.weights, c), labels, &method);
+        let Some(u) = ends.as_ref().and_then(|e| Some(&e.stronger.first()?.u)) else {
+            // The reference is singular at this C: the curve has no value there.
+            self.curve.points.insert(c, None);
+            self.curve.part = 0;
+            return Ok(progress(Stage::Curve, step + 1, of, false));
+        };
         if part == 0 {
             let v = variances(&target.space, u);
             let log = match recipe.measure {
                 Measure::Typical => log_typical(&v, design),
                 Measure::Total => log_total(&v, &self.covariances.weights, design, |_| true),
             };
-            self.curve.fitted.push(log.exp());
+            self.curve.fitted = log.exp();
             self.curve.scores = vec![f64::NAN; v.len()];
         } else {
             score_into(
@@ -796,21 +847,12 @@ impl Work {
                 design,
                 recipe.measure,
             );
-            self.curve.held_out.push(mean.exp());
-            self.curve.log_se.push(error);
+            let point = [self.curve.fitted, mean.exp(), error];
+            let whole = point.iter().all(|x| x.is_finite());
+            self.curve.points.insert(c, whole.then_some(point));
             self.curve.part = 0;
         }
-        self.curve.done = self.curve.held_out.len() == grid.len();
-        if self.curve.done {
-            self.sheet.curve = Some(KeepCurve {
-                keep: grid.clone(),
-                fitted: self.curve.fitted.clone(),
-                held_out: self.curve.held_out.clone(),
-                log_se: self.curve.log_se.clone(),
-            });
-            cards::guides(&mut self.sheet);
-        }
-        Ok(progress(Stage::Curve, step + 1, of, self.curve.done))
+        Ok(progress(Stage::Curve, step + 1, of, false))
     }
 
     pub(super) fn series(&self) -> Option<Series> {
@@ -856,6 +898,45 @@ fn lost() -> Problem {
         "a step began before what it needs",
         "open the recording again; this is a fault of the program",
     )
+}
+
+/// Refuses work whose covariances would not fit: every window's, as they are and whitened for the whole and for each fold.
+fn afford(channels: usize, windows: usize, recipe: &Recipe) -> Result<()> {
+    const MOST_BYTES: f64 = if cfg!(target_pointer_width = "32") {
+        1.5e9
+    } else {
+        16e9
+    };
+    let bytes = |n: usize| windows as f64 * 4.0 * n as f64 * (n as f64 + 1.0);
+    let whitened = bytes(channels.min(limit(recipe)));
+    // The logarithms at the C in force double what is whitened.
+    let need = bytes(channels) + 2.0 * whitened * (recipe.evidence.folds as f64 + 1.0);
+    if need <= MOST_BYTES {
+        return Ok(());
+    }
+    Err(Problem::new(
+        Kind::TooLarge,
+        "the covariances of these windows do not fit into the memory",
+        "use fewer channels, fewer events or fewer folds",
+    )
+    .at(format!(
+        "{windows} windows of {channels} channels, {} folds",
+        recipe.evidence.folds
+    ))
+    .expected_found(
+        format!("at most {:.1} GB", MOST_BYTES / 1e9),
+        format!("{:.1} GB", need / 1e9),
+    ))
+}
+
+fn flat_fold(f: usize, dimensions: usize) -> Problem {
+    Problem::new(
+        Kind::Contrast,
+        "without the trials of one fold the channels span fewer than two dimensions",
+        "leave out channels that are flat for much of the recording, or use fewer folds",
+    )
+    .at(format!("fold {}", f + 1))
+    .expected_found("a rank of at least 2", dimensions)
 }
 
 fn singular_fold(f: usize) -> Problem {
@@ -960,6 +1041,21 @@ fn curve_grid(most: usize, keep: usize) -> Vec<usize> {
     grid.sort_unstable();
     grid.dedup();
     grid
+}
+
+/// The curve over those values of C that have one.
+fn curve_of(grid: &[usize], points: &BTreeMap<usize, Option<[f64; 3]>>) -> KeepCurve {
+    let done: Vec<(usize, [f64; 3])> = grid
+        .iter()
+        .filter_map(|c| Some((*c, (*points.get(c)?)?)))
+        .collect();
+    let part = |i: usize| done.iter().map(|(_, p)| p[i]).collect();
+    KeepCurve {
+        keep: done.iter().map(|(c, _)| *c).collect(),
+        fitted: part(0),
+        held_out: part(1),
+        log_se: part(2),
+    }
 }
 
 /// The values of C that `keep: "best"` chooses from.

@@ -245,6 +245,13 @@ fn inner_gamma(view: View<'_>, labels: Labels<'_>, method: &Method) -> f64 {
 /// Contiguous folds of the training windows, each side apart, in the order they stand.
 pub fn inner_folds(labels: Labels<'_>, folds: usize) -> Vec<Option<usize>> {
     let mut out = vec![None; labels.signal.len()];
+    let count = |side: bool| {
+        (0..labels.signal.len())
+            .filter(|k| labels.train[*k] && labels.signal[*k] == side)
+            .count()
+    };
+    // Every inner fold tests both sides.
+    let folds = folds.min(count(true)).min(count(false));
     for side in [true, false] {
         let members: Vec<usize> = (0..out.len())
             .filter(|k| labels.train[*k] && labels.signal[*k] == side)

@@ -52,6 +52,26 @@ impl Covariances {
         self.weights.push(weight);
     }
 
+    /// Windows whose whole variance is below 1e-8 of the median window's: an amplifier that was blanked, a lead that was off.
+    pub fn flat(&self) -> Vec<bool> {
+        let trace = |packed: &Packed| -> f64 {
+            (0..self.channels).map(|i| packed[packed_len(i) + i]).sum()
+        };
+        let traces: Vec<f64> = self.packed.iter().map(trace).collect();
+        let mut sorted = traces.clone();
+        sorted.sort_by(f64::total_cmp);
+        let median = sorted.get(sorted.len() / 2).copied().unwrap_or(0.0);
+        traces.iter().map(|t| *t <= 1e-8 * median).collect()
+    }
+
+    /// Drops the windows that `kept` does not name.
+    pub fn keep_only(&mut self, kept: &[bool]) {
+        let mut at = kept.iter();
+        self.packed.retain(|_| at.next().copied().unwrap_or(true));
+        let mut at = kept.iter();
+        self.weights.retain(|_| at.next().copied().unwrap_or(true));
+    }
+
     /// Weighted mean over the windows that `include` names.
     pub fn pooled(&self, include: impl Fn(usize) -> bool) -> Packed {
         pooled(

@@ -8,7 +8,7 @@ use crate::error::{Kind, Problem, Result};
 use crate::recipe::{Contrast, EventWindow};
 use crate::recording::{Event, Stretch};
 use crate::sheet::{SideCard, Trial, WindowsCard};
-use std::collections::BTreeMap;
+use std::collections::{BTreeMap, BTreeSet};
 
 /// One used window.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -46,7 +46,11 @@ enum Placed {
 }
 
 fn place(stretches: &[Stretch], rate_hz: f64, from_s: f64, count: usize) -> Placed {
-    let first = (from_s * rate_hz).round() as i64;
+    let first = (from_s * rate_hz).round();
+    if first.abs() > 1e15 || count as u64 > 1 << 50 {
+        return Placed::Outside;
+    }
+    let first = first as i64;
     let end = first + count as i64;
     let clock = |s: &Stretch| (s.onset_s * rate_hz).round() as i64;
     for s in stretches {
@@ -136,42 +140,7 @@ pub fn select(
     } else {
         unpaired(signal, reference, events, stretches, rate_hz)
     };
-    let least = selection
-        .card
-        .signal
-        .used
-        .min(selection.card.reference.used);
-    if least < 2 {
-        let reasons = |side: &SideCard| {
-            let list: Vec<String> = side
-                .dropped
-                .iter()
-                .map(|(reason, n)| format!("{n} {reason}"))
-                .collect();
-            if list.is_empty() {
-                "none dropped".to_owned()
-            } else {
-                list.join(", ")
-            }
-        };
-        return Err(Problem::new(
-            Kind::Contrast,
-            "too few windows are left",
-            "choose another event, or windows that stay inside the recording",
-        )
-        .at(format!(
-            "signal dropped: {}; reference dropped: {}",
-            reasons(&selection.card.signal),
-            reasons(&selection.card.reference)
-        ))
-        .expected_found(
-            "at least 2 windows a side",
-            format!(
-                "{} signal and {} reference",
-                selection.card.signal.used, selection.card.reference.used
-            ),
-        ));
-    }
+    selection.enough()?;
     Ok(selection)
 }
 
@@ -313,35 +282,36 @@ fn unpaired(
     }
 }
 
-/// Says how many signal windows share samples with a reference window.
+/// Says how many windows share samples with one of the other side, and with one of their own.
 fn overlap_warning(windows: &[Window]) -> Vec<String> {
-    let mut spans: Vec<(usize, usize, bool)> = windows
+    let mut spans: Vec<(usize, usize, usize)> = windows
         .iter()
-        .map(|w| (w.first, w.first + w.count, w.signal))
+        .map(|w| (w.first, w.first + w.count, usize::from(w.signal)))
         .collect();
     spans.sort_unstable();
-    let (mut end_signal, mut end_reference, mut overlaps) = (0, 0, 0usize);
-    for (first, end, signal) in spans {
-        let other = if signal { end_reference } else { end_signal };
-        overlaps += usize::from(first < other);
-        let own = if signal {
-            &mut end_signal
+    let (mut ends, mut across, mut within) = ([0usize; 2], 0usize, 0usize);
+    for (first, end, side) in spans {
+        across += usize::from(first < ends[1 - side]);
+        within += usize::from(first < ends[side]);
+        ends[side] = ends[side].max(end);
+    }
+    let times = |n: usize| {
+        if n == 1 {
+            "once".to_owned()
         } else {
-            &mut end_reference
-        };
-        *own = end.max(*own);
-    }
-    if overlaps == 0 {
-        return Vec::new();
-    }
-    let (times, share) = if overlaps == 1 {
-        ("time", "shares")
-    } else {
-        ("times", "share")
+            format!("{n} times")
+        }
     };
-    vec![format!(
-        "Signal and reference overlap {overlaps} {times}: a window {share} samples with one of the other side, which pulls the ratio toward 1."
-    )]
+    let mut warnings = Vec::new();
+    if across > 0 {
+        let times = times(across);
+        warnings.push(format!("Signal and reference windows overlap {times}; samples that both sides share pull the ratio toward 1."));
+    }
+    if within > 0 {
+        let times = times(within);
+        warnings.push(format!("Windows of the same side overlap {times}: trials that share samples are not independent, so held-out ratios and p flatter."));
+    }
+    warnings
 }
 
 /// K contiguous folds of `count` trials: sizes differ by at most one, larger ones first. The fold of each trial.
@@ -354,8 +324,98 @@ pub fn contiguous_folds(count: usize, folds: usize) -> Vec<usize> {
 }
 
 impl Selection {
+    /// Refuses fewer than two windows a side.
+    pub fn enough(&self) -> Result<()> {
+        let least = self.card.signal.used.min(self.card.reference.used);
+        if least < 2 {
+            let reasons = |side: &SideCard| {
+                let list: Vec<String> = side
+                    .dropped
+                    .iter()
+                    .map(|(reason, n)| format!("{n} {reason}"))
+                    .collect();
+                if list.is_empty() {
+                    "none dropped".to_owned()
+                } else {
+                    list.join(", ")
+                }
+            };
+            return Err(Problem::new(
+                Kind::Contrast,
+                "too few windows are left",
+                "choose another event, or windows that stay inside the recording",
+            )
+            .at(format!(
+                "signal dropped: {}; reference dropped: {}",
+                reasons(&self.card.signal),
+                reasons(&self.card.reference)
+            ))
+            .expected_found(
+                "at least 2 windows a side",
+                format!(
+                    "{} signal and {} reference",
+                    self.card.signal.used, self.card.reference.used
+                ),
+            ));
+        }
+        Ok(())
+    }
+
+    /// Drops the flat windows and their partners, counted as `flat` and `partner`; gives which windows are kept.
+    pub fn drop_flat(&mut self, flat: &[bool]) -> Vec<bool> {
+        let paired = self.paired;
+        let lost: BTreeSet<usize> = (0..flat.len())
+            .filter(|k| paired && flat[*k])
+            .map(|k| self.windows[k].trial)
+            .collect();
+        let gone = |k: usize, w: &Window| {
+            if paired {
+                lost.contains(&w.trial)
+            } else {
+                flat[k]
+            }
+        };
+        let kept: Vec<bool> = self
+            .windows
+            .iter()
+            .enumerate()
+            .map(|(k, w)| !gone(k, w))
+            .collect();
+        for (k, w) in self.windows.iter().enumerate().filter(|(k, _)| !kept[*k]) {
+            let side = if w.signal {
+                &mut self.card.signal
+            } else {
+                &mut self.card.reference
+            };
+            side.used -= 1;
+            drop_one(side, if flat[k] { "flat" } else { "partner" });
+            let known = |t: &&mut Trial| t.onset_s == w.onset_s && t.dropped.is_none();
+            if let Some(trial) = self.card.trials.iter_mut().find(known) {
+                trial.dropped = Some("flat".to_owned());
+            }
+        }
+        let dropped = kept.iter().filter(|k| !**k).count();
+        let (windows, hold) = if dropped == 1 {
+            ("window was", "it holds")
+        } else {
+            ("windows were", "they or their partners hold")
+        };
+        self.warnings.push(format!("{dropped} {windows} left out because {hold} no variance: a blanked amplifier or a lead that was off."));
+        let mut at = kept.iter();
+        self.windows.retain(|_| at.next().copied().unwrap_or(true));
+        let mut next = [0usize; 2];
+        for w in &mut self.windows {
+            let count = &mut next[usize::from(w.signal)];
+            w.trial = *count;
+            *count += 1;
+        }
+        kept
+    }
+
     /// The fold of every window: trials (paired) or each side's windows (unpaired) in contiguous folds.
     pub fn folds(&self, folds: usize) -> Vec<usize> {
+        // Every fold tests both sides.
+        let folds = folds.min(self.repetitions());
         let of_signal = contiguous_folds(self.card.signal.used, folds);
         let of_reference = contiguous_folds(self.card.reference.used, folds);
         self.windows

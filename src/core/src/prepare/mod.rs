@@ -69,6 +69,9 @@ pub struct Preparing {
     result: Prepared,
 }
 
+/// A matrix of channels by channels is never made beyond this.
+const MOST_CHANNELS: usize = 2000;
+
 impl Preparing {
     /// Checks the recipe's channels and filter against the recording and builds T and the filters.
     /// `channels` are the cards of [`inspect()`] for the same recording and recipe.
@@ -82,6 +85,15 @@ impl Preparing {
     /// than every stretch.
     pub fn new(recording: &Recording, channels: &[ChannelCard], recipe: &Recipe) -> Result<Self> {
         let rate_hz = recording.rate_hz;
+        if recording.channels.len() > MOST_CHANNELS {
+            return Err(Problem::new(
+                Kind::TooLarge,
+                "more channels than a covariance can be made of",
+                "split the recording into parts with fewer channels",
+            )
+            .at("channels")
+            .expected_found(format!("at most {MOST_CHANNELS}"), recording.channels.len()));
+        }
         let matrix = ChannelMatrix::new(channels, &recipe.channels)?;
         let designs = designs(&recipe.filter, rate_hz)?;
         let resampler = resampler(&recipe.filter, rate_hz)?;

@@ -79,9 +79,11 @@ impl Resampler {
         out.extend((0..self.count(samples.len())).map(|j| self.value(samples, j)));
     }
     fn value(&self, samples: &[f64], j: usize) -> f64 {
-        let place = j * self.down + self.half;
-        let taps = &self.phases[place % self.up];
-        let first = (place / self.up + 1) as isize - taps.len() as isize;
+        // The product outgrows the 32 bits of a browser's usize within hours of recording.
+        let place = j as u64 * self.down as u64 + self.half as u64;
+        let up = self.up as u64;
+        let taps = &self.phases[(place % up) as usize];
+        let first = (place / up + 1) as isize - taps.len() as isize;
         let end = first + taps.len() as isize;
         if first >= 0 && end <= samples.len() as isize {
             return dot(taps, &samples[first as usize..end as usize]);

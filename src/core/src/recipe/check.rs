@@ -1,5 +1,5 @@
 //! Ranges of a recipe's values, whatever the recording.
-use super::{Contrast, Keep, Measure, Recipe, Reference, Shrink, ShrinkWord};
+use super::{Contrast, Keep, KeepWord, Measure, Recipe, Reference, Shrink, ShrinkWord};
 use crate::error::{Kind, Problem, Result};
 
 /// The largest whole number that every reader of JSON keeps exactly: 2^53 − 1.
@@ -47,6 +47,7 @@ pub fn recipe_check(recipe: &Recipe) -> Result<()> {
         .expected_found(1, recipe.teasel_recipe));
     }
     check_keep(recipe.keep)?;
+    check_best(recipe)?;
     check_filter(recipe)?;
     check_contrast(&recipe.contrast)?;
     check_shrink(recipe.shrink, recipe.measure)?;
@@ -86,8 +87,28 @@ fn check_keep(keep: Keep) -> Result<()> {
             "a whole number above 1, \"auto\" or \"best\"",
             0,
         )),
-        _ => Ok(()),
+        Keep::Number(keep) => within("keep", keep, 2, 100_000),
+        Keep::Word(_) => Ok(()),
     }
+}
+
+/// C by held-out ratio with an inner choice of γ at every C, in every fold and every permutation, would take hours.
+fn check_best(recipe: &Recipe) -> Result<()> {
+    let best = recipe.keep == Keep::Word(KeepWord::Best);
+    let auto = recipe.shrink == Shrink::Word(ShrinkWord::Auto);
+    if !(best && auto && recipe.measure == Measure::Total) {
+        return Ok(());
+    }
+    Err(Problem::new(
+        Kind::Recipe,
+        "two choices by held-out ratio inside one another take too long",
+        "set shrink to a number such as 0.01, keep to a number, or measure to typical",
+    )
+    .at("shrink")
+    .expected_found(
+        "a number, where keep is \"best\" and measure is \"total\"",
+        "\"auto\"",
+    ))
 }
 
 fn check_filter(recipe: &Recipe) -> Result<()> {

@@ -150,7 +150,7 @@ fn seconds(row: &csv::ByteRecord, column: usize, name: &str) -> Result<Option<f6
     };
     let number = std::str::from_utf8(cell).ok().and_then(|c| c.parse().ok());
     match number {
-        Some(seconds) if f64::is_finite(seconds) => Ok(Some(seconds)),
+        Some(seconds) if f64::abs(seconds) <= 1e9 => Ok(Some(seconds)),
         _ => Err(broken("a time in the table of events is no number")
             .at(format!("line {}, column {name}", line(row)))
             .expected_found(

@@ -213,7 +213,9 @@ fn count(n: usize, single: &str, many: &str) -> String {
 fn compression(sheet: &Sheet) -> Option<String> {
     let card = sheet.compression.as_ref()?;
     let choice = match sheet.recipe.keep {
-        Keep::Number(_) => "fixed beforehand",
+        Keep::Number(_) => {
+            "set by hand; where it was set after looking at these results, p and the held-out ratios do not pay for that choice"
+        }
         Keep::Word(KeepWord::Auto) => "the smaller of the rank and 150",
         Keep::Word(KeepWord::Best) => {
             "the smallest number within one standard error of the best held-out ratio (Breiman et al., 1984), chosen again inside every fold and every permutation"
@@ -242,7 +244,7 @@ fn filters_in_space(sheet: &Sheet) -> Option<String> {
         }
         Measure::Total => {
             let how = match sheet.recipe.shrink {
-                Shrink::Number(_) => "fixed beforehand",
+                Shrink::Number(_) => "set by hand",
                 Shrink::Word(ShrinkWord::Auto) => "chosen by inner cross-validation",
                 Shrink::Word(ShrinkWord::LedoitWolf) => "Ledoit & Wolf, 2004",
                 Shrink::Word(ShrinkWord::Oas) => "Chen et al., 2010",

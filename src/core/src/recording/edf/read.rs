@@ -413,7 +413,7 @@ impl EdfReader {
         }
         if off_time.0 > 0 {
             self.warnings.push(format!(
-                "The file calls itself continuous (EDF+C), but {} say they start elsewhere than where the one before ends; they were taken as continuous. The first is {}.",
+                "The file calls itself continuous (EDF+C), but {} say they start elsewhere than where the one before ends; they were taken as continuous. If its pauses are real, later events lie beside their samples: such a file should be EDF+D. The first is {}.",
                 counted(off_time.0, "record"),
                 off_time.1
             ));
