@@ -213,16 +213,20 @@ fn count(n: usize, single: &str, many: &str) -> String {
 fn compression(sheet: &Sheet) -> Option<String> {
     let card = sheet.compression.as_ref()?;
     let choice = match sheet.recipe.keep {
-        Keep::Number(_) => {
-            "set by hand; where it was set after looking at these results, p and the held-out ratios do not pay for that choice"
-        }
+        Keep::Number(_) => "set by hand",
         Keep::Word(KeepWord::Auto) => "the smaller of the rank and 150",
         Keep::Word(KeepWord::Best) => {
             "the smallest number within one standard error of the best held-out ratio (Breiman et al., 1984), chosen again inside every fold and every permutation"
         }
     };
+    let caveat = match sheet.recipe.keep {
+        Keep::Number(_) => {
+            " Had this number been chosen after looking at these results, neither the held-out ratios nor p would account for that."
+        }
+        Keep::Word(_) => "",
+    };
     Some(format!(
-        "Each window’s covariance was taken about the window’s own channel means; the channels (rank {}) were compressed to {} dimensions ({} of the variance; {choice}) by the leading principal components of the covariance pooled over both sides, that is without use of the labels.",
+        "Each window’s covariance was taken about the window’s own channel means; the channels (rank {}) were compressed to {} dimensions ({} of the variance; {choice}) by the leading principal components of the covariance pooled over both sides, that is without use of the labels.{caveat}",
         card.rank,
         card.kept,
         words::percent(card.share)
