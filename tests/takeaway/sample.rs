@@ -183,6 +183,7 @@ pub fn sheet() -> Sheet {
             held_out: vec![1.6, 2.1, 2.7, 2.83, 2.8],
             log_se: vec![0.1; 5],
         }),
+        leading: teasel_core::sheet::End::Stronger,
         shrinkage: Some(0.1),
         stronger: vec![
             component(0, 2.83, 3.06, [2.33, 3.47], 0.004),

@@ -26,18 +26,32 @@ pub struct Sheet {
     pub curve: Option<KeepCurve>,
     /// The shrinkage in force: ρ (typical) or γ (total).
     pub shrinkage: Option<f64>,
+    /// The end whose first component departs farther from 1 on the windows it was fitted to: curve, folds, comparators, and the
+    /// figures and readings that speak of one component, are about the first component of this end.
+    pub leading: End,
     /// Components stronger in signal, strongest first.
     pub stronger: Vec<Component>,
     /// Components weaker in signal, weakest first.
     pub weaker: Vec<Component>,
-    /// The same held-out measure for what one would have used otherwise, best known comparators first.
+    /// The same held-out measure for what one would have used otherwise, chosen in the direction of the leading end.
     pub compare: Vec<Comparator>,
     /// The permutation test.
     pub permutation: Option<Permutation>,
-    /// Mean held-out log ratio of stronger component 1 in each fold, as a factor, with the trials in it.
+    /// Mean held-out log ratio of the leading component in each fold, as a factor, with the trials in it.
     pub folds: Vec<FoldCard>,
     /// Everything a careful reader should know, each a sentence; the first is the most important.
     pub warnings: Vec<String>,
+}
+
+/// Which end of a contrast.
+#[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum End {
+    /// More variance in signal windows.
+    #[default]
+    Stronger,
+    /// Less variance in signal windows.
+    Weaker,
 }
 
 /// The recording as the page and the report show it.
@@ -169,7 +183,7 @@ pub struct CompressionCard {
     pub guides: BTreeMap<String, usize>,
 }
 
-/// Fitted and held-out ratio of the first stronger component against C, in the chosen measure.
+/// Fitted and held-out ratio of the leading component against C, in the chosen measure.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct KeepCurve {
     /// Values of C, ascending.
@@ -362,11 +376,18 @@ pub struct Permutation {
 pub struct FoldCard {
     /// Trials (or windows) tested in it.
     pub trials: usize,
-    /// Held-out typical ratio of stronger component 1 in it.
+    /// Held-out typical ratio of the leading component in it.
     pub ratio: f64,
 }
 
 impl Sheet {
+    /// The first component of the leading end.
+    pub fn first(&self) -> Option<&Component> {
+        match self.leading {
+            End::Stronger => self.stronger.first(),
+            End::Weaker => self.weaker.first(),
+        }
+    }
     /// Pairs (paired) or the smaller side's windows (unpaired).
     pub fn repetitions(&self) -> usize {
         self.windows

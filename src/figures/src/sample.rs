@@ -113,6 +113,7 @@ pub fn sheet(channels: usize, trials: usize) -> Sheet {
         windows: None,
         compression: Some(compression(used.len() - 1)),
         curve: Some(curve(used.len() - 1, &mut chance)),
+        leading: teasel_core::sheet::End::Stronger,
         shrinkage: Some(0.1),
         folds: folds(&stronger),
         compare: comparators(),

@@ -12,8 +12,8 @@ use crate::prepare::Prepared;
 use crate::recipe::{Contrast, Keep, KeepWord, Recipe};
 use crate::recording::Recording;
 use crate::sheet::{
-    Comparator, ComparatorKind, Component, CompressionCard, FoldCard, Permutation, RecordingCard,
-    Sheet, TotalRatio, TrialScore, TypicalRatio,
+    Comparator, ComparatorKind, Component, CompressionCard, End, FoldCard, Permutation,
+    RecordingCard, Sheet, TotalRatio, TrialScore, TypicalRatio,
 };
 use std::collections::BTreeMap;
 
@@ -64,6 +64,7 @@ pub(super) fn begin(recording: &Recording, recipe: &Recipe) -> Sheet {
         compression: None,
         curve: None,
         shrinkage: None,
+        leading: End::default(),
         stronger: Vec::new(),
         weaker: Vec::new(),
         compare: Vec::new(),
@@ -238,6 +239,7 @@ pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
     let (stronger, weaker) = reported(ends);
     work.sheet.stronger = stronger.iter().map(component).collect();
     work.sheet.weaker = weaker.iter().map(component).collect();
+    work.sheet.leading = leading(ends);
     work.sheet.shrinkage = Some(ends.shrinkage);
     let eigenvalues = ground.space.eigenvalues.clone();
     let all: f64 = eigenvalues.iter().filter(|e| **e > 0.0).sum();
@@ -267,6 +269,25 @@ pub(super) fn reported(ends: &Ends) -> (&[Direction], &[Direction]) {
     (&ends.stronger[..up], &ends.weaker[..down])
 }
 
+/// The end whose first direction departs farther from 1.
+fn leading(ends: &Ends) -> End {
+    let far = |list: &[Direction]| list.first().map_or(0.0, |d| d.statistic.ln().abs());
+    let (up, down) = reported(ends);
+    if far(down) > far(up) {
+        End::Weaker
+    } else {
+        End::Stronger
+    }
+}
+
+/// The first direction of the leading end.
+pub(super) fn leading_direction(ends: &Ends, leading: End) -> Option<&Direction> {
+    match leading {
+        End::Stronger => ends.stronger.first(),
+        End::Weaker => ends.weaker.first(),
+    }
+}
+
 /// w_raw = Tᵀw.
 fn raw_filter(prepared: &Prepared, filter: &[f64]) -> Vec<f64> {
     let t = &prepared.matrix;
@@ -290,17 +311,19 @@ pub(super) fn guides(sheet: &mut Sheet) {
     let share_95 = share_95.count().max(2).min(card.rank);
     card.guides.insert("share_95".into(), share_95);
     let Some(curve) = &sheet.curve else { return };
-    let Some(peak) = (0..curve.keep.len()).max_by(|a, b| {
-        curve.held_out[*a]
-            .total_cmp(&curve.held_out[*b])
-            .then(b.cmp(a))
-    }) else {
+    // Held-out log ratios in the direction of the leading end.
+    let sign = if sheet.leading == End::Stronger {
+        1.0
+    } else {
+        -1.0
+    };
+    let worth: Vec<f64> = curve.held_out.iter().map(|x| sign * x.ln()).collect();
+    let Some(peak) = (0..worth.len()).max_by(|a, b| worth[*a].total_cmp(&worth[*b]).then(b.cmp(a)))
+    else {
         return;
     };
-    let bar = curve.held_out[peak].ln() - curve.log_se[peak];
-    let simplest = (0..=peak)
-        .find(|i| curve.held_out[*i].ln() >= bar)
-        .unwrap_or(peak);
+    let bar = worth[peak] - curve.log_se[peak];
+    let simplest = (0..=peak).find(|i| worth[*i] >= bar).unwrap_or(peak);
     card.guides.insert("held_out_peak".into(), curve.keep[peak]);
     card.guides
         .insert("one_standard_error".into(), curve.keep[simplest]);
@@ -374,7 +397,7 @@ pub(super) fn held_out(work: &mut Work, recipe: &Recipe) {
                     .filter(|c| c.iter().any(|x| c.get(rank).is_none_or(|own| x > own)))
                     .count(),
             );
-            if end == 0 && rank == 0 {
+            if rank == 0 && (end == 0) == (work.sheet.leading == End::Stronger) {
                 leading = Some(scores);
             }
         }
@@ -462,6 +485,7 @@ fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator
     let pc_variance = |g: &Ground, i: usize, k: usize| diagonal(&g.space.covariances[k], i);
     let channel_variance = |i: usize, k: usize| diagonal(&all.packed[k], i);
     let best_pc = best_of(
+        work.sheet.leading,
         keep,
         |i, k| pc_variance(ground, i, k),
         weights,
@@ -470,6 +494,7 @@ fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator
         recipe.measure,
     );
     let best_channel = best_of(
+        work.sheet.leading,
         all.channels,
         channel_variance,
         weights,
@@ -642,7 +667,7 @@ fn warnings(work: &Work, recipe: &Recipe) -> Vec<String> {
 
 /// Where a few large windows decide between the two measures, says how many.
 fn disagreement(work: &Work) -> Option<String> {
-    let component = work.sheet.stronger.first()?;
+    let component = work.sheet.first()?;
     let typical = component
         .typical
         .held_out
@@ -657,7 +682,10 @@ fn disagreement(work: &Work) -> Option<String> {
         work.design.as_ref()?,
         work.ends.as_ref()?,
     );
-    let v = variances(&ground.space, &ends.stronger.first()?.u);
+    let v = variances(
+        &ground.space,
+        &leading_direction(ends, work.sheet.leading)?.u,
+    );
     let side = factor > 1.0;
     let mut powers: Vec<f64> = v
         .iter()

@@ -14,7 +14,7 @@ use crate::evidence::permute::{Plan, STREAM_DESCRIBE, arrangement, plan};
 use crate::prepare::{Prepared, Preparing, inspect};
 use crate::recipe::{Contrast, Keep, KeepWord, Measure, Recipe, Shrink, ShrinkWord};
 use crate::recording::Recording;
-use crate::sheet::{ChannelCard, KeepCurve, Sheet};
+use crate::sheet::{ChannelCard, End, KeepCurve, Sheet};
 use std::collections::BTreeMap;
 
 /// Largest C of `keep: "auto"`.
@@ -58,6 +58,8 @@ struct CurveWork {
     scores: Scores,
     /// 0: the whole; f + 1: fold f.
     part: usize,
+    /// The end that it is about.
+    end: End,
     /// The sheet holds the curve for the C in force.
     shown: bool,
 }
@@ -717,8 +719,15 @@ impl Work {
             ),
             _ => keep.min(fold.space.dimensions()),
         };
-        let fitted = fit_ground(fold, keep, &self.covariances, design, &method)
-            .ok_or_else(|| singular_fold(f))?;
+        let fitted = fit_ground(
+            fold,
+            keep,
+            &self.covariances,
+            design,
+            &method,
+            self.sheet.leading,
+        )
+        .ok_or_else(|| singular_fold(f))?;
         self.fits.push(fitted);
         Ok(self.fold_progress(f, 3))
     }
@@ -783,6 +792,13 @@ impl Work {
         else {
             return Err(lost());
         };
+        if self.curve.end != self.sheet.leading {
+            let end = self.sheet.leading;
+            self.curve = CurveWork {
+                end,
+                ..CurveWork::default()
+            };
+        }
         let grid = curve_grid(ground.space.dimensions(), keep);
         let parts = self.folds.len() + 1;
         let of = (grid.len() * parts) as u64;
@@ -810,7 +826,10 @@ impl Work {
             train: &target.train,
         };
         let ends = fit(target.view(&self.covariances.weights, c), labels, &method);
-        let Some(u) = ends.as_ref().and_then(|e| Some(&e.stronger.first()?.u)) else {
+        let Some(u) = ends
+            .as_ref()
+            .and_then(|e| Some(&cards::leading_direction(e, self.sheet.leading)?.u))
+        else {
             // The reference is singular at this C: the curve has no value there.
             self.curve.points.insert(c, None);
             self.curve.part = 0;

@@ -1,20 +1,12 @@
 //! Power spectral densities of a component in signal and in reference windows.
 use super::bootstrap;
 use super::welch::{Welch, segment_for};
+pub use crate::sheet::End;
 use crate::sheet::Spectra;
 use nalgebra::DMatrix;
 
 /// A window: index of its first sample, number of samples.
 pub type Window = (usize, usize);
-
-/// Which end a component belongs to.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub enum End {
-    /// More variance in signal windows.
-    Stronger,
-    /// Less variance in signal windows.
-    Weaker,
-}
 
 /// Spectra of one component.
 ///

@@ -7,7 +7,7 @@ use crate::contrast::linalg::{Packed, log_shrunk, packed_len, quadratic};
 use crate::contrast::space::{Covariances, Space};
 use crate::contrast::windows::Window;
 use crate::recipe::Measure;
-use crate::sheet::{TotalRatio, TypicalRatio};
+use crate::sheet::{End, TotalRatio, TypicalRatio};
 use std::collections::BTreeMap;
 
 /// Which windows, which labels, which folds: everything about a selection that evidence needs.
@@ -158,6 +158,7 @@ pub fn fit_ground(
     all: &Covariances,
     design: &Design,
     method: &Method,
+    end: End,
 ) -> Option<FoldFit> {
     let labels = Labels {
         signal: &design.signal,
@@ -166,6 +167,7 @@ pub fn fit_ground(
     let view = ground.view(&all.weights, keep);
     let ends = fit(view, labels, method)?;
     let best_pc = best_of(
+        end,
         view.keep,
         |i, k| diagonal(&ground.space.covariances[k], i),
         &all.weights,
@@ -174,6 +176,7 @@ pub fn fit_ground(
         method.measure,
     );
     let best_channel = best_of(
+        end,
         all.channels,
         |i, k| diagonal(&all.packed[k], i),
         &all.weights,
@@ -189,7 +192,8 @@ pub fn fit_ground(
     })
 }
 
-/// C for `keep: "best"`: over inner folds of the training windows of `ground`, the smallest C whose mean held-out log ratio is
+/// C for `keep: "best"`: over inner folds of the training windows of `ground`, the smallest C whose separation (held-out log ratio of the
+/// first stronger direction minus that of the first weaker one) is
 /// within one standard error (over inner folds) of the best (Breiman, Friedman, Olshen & Stone 1984, sec. 3.4.3). The space stays
 /// that of all training windows: it is blind to the labels. `grid` ascending, with logarithms ready.
 pub fn choose_keep(
@@ -225,11 +229,11 @@ pub fn choose_keep(
                         ..*method
                     },
                 )?;
-                let u = &ends.stronger.first()?.u;
-                Some(match method.measure {
+                let log = |u: &[f64]| match method.measure {
                     Measure::Total => fit_log_total(view, signal, &test, u),
                     Measure::Typical => log_typical_of(view, signal, &test, u),
-                })
+                };
+                Some(log(&ends.stronger.first()?.u) - log(&ends.weaker.first()?.u))
             })
             .collect();
         curve.push(scores.map(|s| mean_and_error_of(&s)));
@@ -273,8 +277,10 @@ pub fn diagonal(packed: &[f64], i: usize) -> f64 {
     packed[packed_len(i) + i]
 }
 
-/// Index of the candidate with the largest ratio by `measure` on the windows in `of`; the first of equals.
+/// Index of the candidate with the largest ratio by `measure` on the windows in `of` (the smallest, at the weaker end); the
+/// first of equals.
 pub fn best_of(
+    end: End,
     candidates: usize,
     variance: impl Fn(usize, usize) -> f64,
     weights: &[f64],
@@ -291,8 +297,12 @@ pub fn best_of(
             Measure::Typical => log_typical(&variances, design),
             Measure::Total => log_total(&variances, weights, design, |k| of[k]),
         };
-        if ratio > best.0 {
-            best = (ratio, i);
+        let worth = match end {
+            End::Stronger => ratio,
+            End::Weaker => -ratio,
+        };
+        if worth > best.0 {
+            best = (worth, i);
         }
     }
     best.1
@@ -376,6 +386,15 @@ pub fn pair_log_ratios(scores: &Scores, design: &Design) -> Vec<f64> {
     out
 }
 
+/// Log variances of one side's windows.
+fn side_logs(scores: &Scores, design: &Design, signal: bool) -> Vec<f64> {
+    let of_side = scores
+        .iter()
+        .zip(&design.signal)
+        .filter(|(_, s)| **s == signal);
+    of_side.map(|(v, _)| v.ln()).collect()
+}
+
 /// Typical ratio from held-out variances with its bootstrap interval.
 pub fn typical_ratio(
     fitted: f64,
@@ -399,14 +418,7 @@ pub fn typical_ratio(
             mean_interval(&logs, &[], bootstrap, &mut rng),
         )
     } else {
-        let side = |signal: bool| -> Vec<f64> {
-            scores
-                .iter()
-                .zip(&design.signal)
-                .filter(|(_, s)| **s == signal)
-                .map(|(v, _)| v.ln())
-                .collect()
-        };
+        let side = |signal| side_logs(scores, design, signal);
         (
             log_typical(scores, design),
             mean_interval(&side(true), &side(false), bootstrap, &mut rng),
@@ -457,14 +469,7 @@ pub fn mean_and_error(
             error(&pair_log_ratios(scores, design)),
         ),
         Measure::Typical => {
-            let side = |signal: bool| -> Vec<f64> {
-                scores
-                    .iter()
-                    .zip(&design.signal)
-                    .filter(|(_, s)| **s == signal)
-                    .map(|(v, _)| v.ln())
-                    .collect()
-            };
+            let side = |signal| side_logs(scores, design, signal);
             (
                 log_typical(scores, design),
                 error(&side(true)).hypot(error(&side(false))),

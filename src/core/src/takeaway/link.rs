@@ -104,7 +104,7 @@ pub fn link_decode(text: &str) -> Result<RecipeLink> {
     let text = text.trim();
     let text = text.strip_prefix('#').unwrap_or(text);
     let text = text.strip_prefix("recipe=").unwrap_or(text);
-    if text.len() > super::strict::SIZE_CAP * 2 {
+    if text.len() > super::strict::RECIPE_BYTES * 2 {
         return Err(damaged(format!("{} characters", text.len())));
     }
     let bytes = ENGINE.decode(text).map_err(|e| damaged(e.to_string()))?;

@@ -88,7 +88,7 @@ pub fn recipe_json(recipe: &Recipe) -> Result<String> {
 /// Reads `recipe.json`. Unknown keys, repeated keys, wrong types and values out of range are refused, each with line,
 /// column, what was expected and what was found; ranges as in [`recipe_check`].
 pub fn recipe_from_json(text: &str) -> Result<Recipe> {
-    strict::check(text, &RECIPE, "the recipe")?;
+    strict::check(text, &RECIPE, "the recipe", strict::RECIPE_BYTES)?;
     let recipe: Recipe = serde_json::from_str(text).map_err(|e| {
         Problem::new(
             Kind::Recipe,

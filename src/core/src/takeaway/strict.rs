@@ -34,19 +34,21 @@ pub(crate) enum Shape {
     Maybe(&'static Shape),
 }
 
-/// The largest file read, in bytes.
-pub(crate) const SIZE_CAP: usize = 1 << 20;
+/// The largest recipe read, in bytes.
+pub(crate) const RECIPE_BYTES: usize = 1 << 20;
+/// The largest weights file read, in bytes: 2,000 channels of 40 filters and patterns take about 4 MB.
+pub(crate) const WEIGHTS_BYTES: usize = 16 << 20;
 
-/// Checks `text` against `shape`; `name` is what the file is called in errors ("the recipe").
-pub(crate) fn check(text: &str, shape: &Shape, name: &str) -> Result<()> {
-    if text.len() > SIZE_CAP {
+/// Checks `text`, of at most `most` bytes, against `shape`; `name` is what the file is called in errors ("the recipe").
+pub(crate) fn check(text: &str, shape: &Shape, name: &str, most: usize) -> Result<()> {
+    if text.len() > most {
         return Err(Problem::new(
             Kind::Recipe,
             format!("{name} is too long to be one"),
             "choose the right file",
         )
         .expected_found(
-            format!("at most {SIZE_CAP} bytes"),
+            format!("at most {most} bytes"),
             format!("{} bytes", text.len()),
         ));
     }

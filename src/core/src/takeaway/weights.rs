@@ -123,7 +123,7 @@ const WEIGHTS: Shape = Shape::Object(&[
 impl Weights {
     /// Reads `weights.json`, as strictly as a recipe: unknown keys, wrong types and rows of unequal length are refused.
     pub fn from_json(text: &str) -> Result<Weights> {
-        strict::check(text, &WEIGHTS, "the weights file")?;
+        strict::check(text, &WEIGHTS, "the weights file", strict::WEIGHTS_BYTES)?;
         let weights: Weights =
             serde_json::from_str(text).map_err(|e| broken("").expected_found("weights", e))?;
         weights.check().map_err(|mut problem| {
