@@ -46,7 +46,8 @@ pub struct Rival {
 
 impl Beside {
     pub(crate) fn of(sheet: &Sheet) -> Option<Self> {
-        let first = sheet.stronger.first()?;
+        let first = sheet.first()?;
+        let end = End::from(sheet.leading);
         if sheet.compare.is_empty() {
             return None;
         }
@@ -56,7 +57,10 @@ impl Beside {
             estimate.folds = sheet.folds.iter().map(|f| f.ratio).collect();
         }
         let mut rows = vec![Rival {
-            name: "Component 1".to_owned(),
+            name: match end {
+                End::Stronger => "Component 1".to_owned(),
+                End::Weaker => "Weaker component 1".to_owned(),
+            },
             note: "this contrast".to_owned(),
             estimate,
             own: true,

@@ -88,7 +88,7 @@ pub fn from_sheet(sheet: &Sheet, name: &str) -> Option<Figure> {
         "channels-map" => ChannelsMap::of(sheet).map(Figure::ChannelsMap),
         "channels" => Channels::of(sheet).map(Figure::Channels),
         "windows" => {
-            let first = sheet.stronger.first().map(|c| (c, End::Stronger));
+            let first = sheet.first().map(|c| (c, End::from(sheet.leading)));
             Course::of(sheet, first, Of::Windows).map(Figure::Course)
         }
         "eigenvalues" => Eigenvalues::of(sheet).map(Figure::Eigenvalues),

@@ -50,8 +50,9 @@ impl Channels {
     pub(crate) fn of(sheet: &Sheet) -> Option<Self> {
         let first = sheet.channels.first()?;
         let shared = sheet.channels.iter().all(|c| c.unit == first.unit);
+        let names = text::Shared::of(sheet.channels.iter().map(|c| c.name.as_str()));
         let stems = sheet.channels.iter().map(|c| Stem {
-            name: c.name.clone(),
+            name: names.without(&c.name),
             unit: c.unit.clone(),
             sd: c.sd.filter(|v| v.is_finite()),
             mains_db: c.mains_db.filter(|v| v.is_finite()),
@@ -166,8 +167,14 @@ impl Channels {
         let hz = self
             .mains_hz
             .map_or("mains".to_owned(), |hz| format!("{} Hz", text::hertz(hz)));
-        pen.word(&hz, (LEFT - 9.0, base - 30.0), word)?;
-        pen.word("excess", (LEFT - 9.0, base - 16.0), word)?;
+        // Below this the larger of 50 and 60 Hz is a matter of chance.
+        let words = if known.last().is_none_or(|most| *most < DARK_DB) {
+            ["no mains".to_owned(), "found".to_owned()]
+        } else {
+            [hz, "excess".to_owned()]
+        };
+        pen.word(&words[0], (LEFT - 9.0, base - 30.0), word)?;
+        pen.word(&words[1], (LEFT - 9.0, base - 16.0), word)?;
         Ok(())
     }
 

@@ -32,6 +32,7 @@ pub struct Spot {
 
 impl ChannelsMap {
     pub(crate) fn of(sheet: &Sheet) -> Option<Self> {
+        let shared = text::Shared::of(sheet.channels.iter().map(|c| c.name.as_str()));
         let spots: Vec<Spot> = sheet
             .channels
             .iter()
@@ -39,7 +40,7 @@ impl ChannelsMap {
                 let at = flat(c.position?);
                 let whole = at.iter().all(|v| v.is_finite());
                 whole.then(|| Spot {
-                    name: c.name.clone(),
+                    name: shared.without(&c.name),
                     at,
                     mark: Mark::of(&c.state),
                 })

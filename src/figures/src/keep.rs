@@ -5,6 +5,7 @@ use crate::inks::mix;
 use crate::kept::{TOP, beside_line, frame, kept_ground};
 use crate::pen::{At, Drawn, Pen, TICK, Word};
 use crate::table::{Table, cell};
+use crate::weights::End;
 use crate::{Plot, nan, text};
 use plotters_backend::DrawingBackend;
 use serde::{Deserialize, Serialize};
@@ -31,6 +32,8 @@ pub struct Keep {
     pub kept: usize,
     /// Largest C.
     pub rank: usize,
+    /// The end whose first component it is.
+    pub end: End,
 }
 
 impl Keep {
@@ -44,6 +47,7 @@ impl Keep {
             log_se: curve.log_se.clone(),
             kept: card.kept,
             rank: card.rank,
+            end: sheet.leading.into(),
         })
     }
 
@@ -77,7 +81,10 @@ impl Plot for Keep {
         let slate = Word::new(TICK, inks.slate);
         kept_ground(pen, &frame, self.kept)?;
         let said = [
-            "Ratio of component 1: held-out with ± one standard error, fitted thin",
+            &format!(
+                "Ratio of {}: held-out with ± one standard error, fitted thin",
+                self.end.first()
+            ),
             "Ratio, held-out ± one standard error; fitted thin",
             "Held-out ratio (fitted thin)",
         ];
@@ -96,7 +103,7 @@ impl Plot for Keep {
             "1× = no difference",
             (
                 frame.right,
-                if frame.bottom - one > 19.0 {
+                if frame.bottom - one > 19.0 && self.held_out.last().is_none_or(|x| *x >= 1.0) {
                     one + 9.0
                 } else {
                     one - 9.0
@@ -181,7 +188,8 @@ impl Plot for Keep {
             format!(", {} at C = {}", text::factor(r), self.kept)
         });
         format!(
-            "Held-out and fitted ratio of component 1 against the number of dimensions kept{now}."
+            "Held-out and fitted ratio of {} against the number of dimensions kept{now}.",
+            self.end.first()
         )
     }
 }

@@ -3,6 +3,7 @@ use crate::axis::{Axis, range};
 use crate::frame::{Frame, LEFT, PlotBox, RIGHT};
 use crate::pen::{At, Drawn, Pen, SMALL, TICK, Word};
 use crate::table::{Table, cell};
+use crate::weights::End;
 use crate::{Plot, nan, text};
 use plotters_backend::DrawingBackend;
 use serde::{Deserialize, Serialize};
@@ -22,17 +23,20 @@ pub struct Scores {
     /// Its held-out ratio, as a factor.
     #[serde(with = "nan")]
     pub ratio: Vec<f64>,
+    /// The end whose first component it is.
+    pub end: End,
 }
 
 impl Scores {
     pub(crate) fn of(sheet: &Sheet) -> Option<Self> {
-        let mut trials = sheet.stronger.first()?.trials.clone();
+        let mut trials = sheet.first()?.trials.clone();
         trials.retain(|t| t.log_ratio.is_finite());
         trials.sort_by(|a, b| a.onset_s.total_cmp(&b.onset_s));
         (!trials.is_empty()).then(|| Scores {
             onset_s: trials.iter().map(|t| t.onset_s).collect(),
             fold: trials.iter().map(|t| t.fold).collect(),
             ratio: trials.iter().map(|t| t.log_ratio.exp()).collect(),
+            end: sheet.leading.into(),
         })
     }
 
@@ -150,7 +154,8 @@ impl Plot for Scores {
     fn spoken(&self) -> String {
         let below = self.ratio.iter().filter(|r| **r < 1.0).count();
         format!(
-            "Held-out ratio of component 1 in each of {} in order of time; {} below 1.",
+            "Held-out ratio of {} in each of {} in order of time; {} below 1.",
+            self.end.first(),
             text::count(self.ratio.len(), "trial"),
             below
         )

@@ -425,3 +425,19 @@ fn a_map_shows_the_value_of_every_channel() {
         assert!((shown - 3.0).abs() < 0.2, "channel {i}: {shown}");
     }
 }
+
+#[test]
+fn labels_drop_what_all_names_share() {
+    let names = ["EEG Fp1-REF", "EEG Cz-REF", "EEG O2-REF"];
+    let shared = crate::text::Shared::of(names.into_iter());
+    assert_eq!(names.map(|n| shared.without(n)), ["Fp1", "Cz", "O2"]);
+    for names in [
+        ["Fp1", "Fp2", "Fpz"],
+        ["A-1", "A-1", "B-2"],
+        ["x y", "x z", "x "],
+        ["-", "-", "-"],
+    ] {
+        let shared = crate::text::Shared::of(names.into_iter());
+        assert_eq!(names.map(|n| shared.without(n)), names);
+    }
+}

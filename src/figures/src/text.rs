@@ -51,6 +51,55 @@ pub(crate) fn first<'a>(wordings: &[&'a str], size: f64, room: f64) -> &'a str {
     fits.or(wordings.last()).copied().unwrap_or("")
 }
 
+/// What all names begin and end with, up to a space or a hyphen: "EEG " and "-REF" of "EEG Fz-REF", "EEG Cz-REF". On a label it
+/// only takes room. Nothing is shared by fewer than three names.
+pub(crate) struct Shared {
+    head: usize,
+    tail: usize,
+}
+
+impl Shared {
+    pub(crate) fn of<'a>(names: impl Iterator<Item = &'a str> + Clone) -> Self {
+        let none = Shared { head: 0, tail: 0 };
+        let Some(first) = names.clone().next() else {
+            return none;
+        };
+        if names.clone().count() < 3 {
+            return none;
+        }
+        let all = |part: &str, begins: bool| {
+            names.clone().all(|n| {
+                let rest = if begins {
+                    n.strip_prefix(part)
+                } else {
+                    n.strip_suffix(part)
+                };
+                rest.is_some_and(|r| !r.trim().is_empty())
+            })
+        };
+        let breaks = |c: char| c == ' ' || c == '-';
+        let heads = first.match_indices(breaks).map(|(i, c)| i + c.len());
+        let head = heads.filter(|i| all(&first[..*i], true)).max().unwrap_or(0);
+        let tails = first.match_indices(breaks).map(|(i, _)| first.len() - i);
+        let tail = tails
+            .filter(|n| all(&first[first.len() - n..], false))
+            .max()
+            .unwrap_or(0);
+        if names.clone().all(|n| head + tail < n.len()) {
+            Shared { head, tail }
+        } else {
+            none
+        }
+    }
+
+    /// A name without what all share.
+    pub(crate) fn without(&self, name: &str) -> String {
+        name.get(self.head..name.len().saturating_sub(self.tail))
+            .unwrap_or(name)
+            .to_owned()
+    }
+}
+
 /// The text, cleaned, and cut with an ellipsis where it would be wider than `room` pixels.
 pub(crate) fn fit(text: &str, size: f64, room: f64) -> String {
     let text = clean(text);

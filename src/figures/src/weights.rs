@@ -18,7 +18,23 @@ pub enum End {
     Weaker,
 }
 
+impl From<teasel_core::sheet::End> for End {
+    fn from(end: teasel_core::sheet::End) -> Self {
+        match end {
+            teasel_core::sheet::End::Stronger => End::Stronger,
+            teasel_core::sheet::End::Weaker => End::Weaker,
+        }
+    }
+}
+
 impl End {
+    /// What the first component of this end is called.
+    pub(crate) fn first(self) -> &'static str {
+        match self {
+            End::Stronger => "component 1",
+            End::Weaker => "weaker component 1",
+        }
+    }
     pub(crate) fn ink(self, inks: &Inks) -> RGBAColor {
         match self {
             End::Stronger => inks.signal,

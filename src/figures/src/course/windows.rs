@@ -3,6 +3,7 @@ use super::{Course, Of};
 use crate::frame::Frame;
 use crate::pen::{At, Drawn, LABEL, Pen, TICK, Word};
 use crate::text;
+use crate::weights::End;
 use plotters::style::RGBAColor;
 use plotters_backend::DrawingBackend;
 
@@ -105,6 +106,8 @@ impl Course {
 
     pub(super) fn captions<DB: DrawingBackend>(&self, pen: &Pen<DB>, frame: &Frame) -> Drawn<DB> {
         let slate = Word::new(TICK, pen.inks.slate);
+        let whose = self.end.map_or("component 1", End::first);
+        let whose = format!("Power of {whose} against its reference mean, dB");
         let said: &[&str] = match self.of {
             Of::Average => &[
                 "Average of the component, in its own unit",
@@ -112,7 +115,7 @@ impl Course {
             ],
             _ if self.t_s.is_empty() => &["The two windows around the event"],
             Of::Windows => &[
-                "Power of component 1 against its reference mean, dB",
+                &whose,
                 "Power against its reference mean, dB",
                 "Power, dB of reference",
             ],

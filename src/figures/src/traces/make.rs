@@ -1,6 +1,7 @@
 //! From a recording to the lines of a few seconds.
 use super::{Line, Traces};
 use crate::Figure;
+use crate::text;
 use teasel_core::recording::Recording;
 
 /// `seconds` of some channels from `from_s` on the file's clock; indexes that do not exist are passed over.
@@ -39,6 +40,7 @@ pub fn traces(recording: &Recording, from_s: f64, seconds: f64, channels: &[usiz
         }
         t_s.push(f64::NAN);
     }
+    let shared = text::Shared::of(recording.channels.iter().map(|c| c.name.as_str()));
     let line = |c: &usize| -> Option<Line> {
         let samples = recording.samples.get(*c)?;
         let card = recording.channels.get(*c)?;
@@ -53,7 +55,7 @@ pub fn traces(recording: &Recording, from_s: f64, seconds: f64, channels: &[usiz
         let middle = median(&values);
         values.iter_mut().for_each(|v| *v -= middle);
         Some(Line {
-            name: card.name.clone(),
+            name: shared.without(&card.name),
             unit: card.unit.clone(),
             values,
             faint: false,
