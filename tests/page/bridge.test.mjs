@@ -79,9 +79,10 @@ test("a demo recording is the file that is written of it", async () => {
   const { page } = await opened();
   const results = await run(page, `
     const texts = [];
+    let recipe = null;
     for (const open of [() => bridge.open([pick(undefined, "night-watch.edf")]), () => bridge.openDemo("watch")]) {
       await open();
-      const { recipe } = await bridge.propose();
+      recipe ??= (await bridge.propose()).recipe;
       said.length = 0;
       await bridge.setRecipe(recipe);
       await until(() => said.some((s) => s.name === "finished"));

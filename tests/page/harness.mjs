@@ -60,9 +60,15 @@ export async function openPage(context, { fragment = "", url = pageUrl } = {}) {
     if (!own && !address.startsWith("data:") && !address.startsWith("blob:")) seen.requests.push(address);
   });
   page.on("websocket", (socket) => seen.requests.push(socket.url()));
-  page.on("pageerror", (error) => seen.errors.push(String(error)));
   await page.exposeFunction("teaselTestViolation", (/** @type {any} */ violation) => seen.violations.push(violation));
+  await page.exposeFunction("teaselTestError", (/** @type {string} */ error) => seen.errors.push(error));
   await page.addInitScript(() => {
+    // A problem is a plain object, which the browser would report as "Object".
+    const told = (/** @type {any} */ thrown) => (thrown instanceof Error ? String(thrown) : JSON.stringify(thrown));
+    // @ts-ignore: exposed above
+    addEventListener("error", (event) => window.teaselTestError(told(event.error ?? event.message)));
+    // @ts-ignore: exposed above
+    addEventListener("unhandledrejection", (event) => window.teaselTestError(told(event.reason)));
     document.addEventListener("securitypolicyviolation", (event) =>
       // @ts-ignore: exposed above
       window.teaselTestViolation({ blocked: event.blockedURI, directive: event.effectiveDirective }),

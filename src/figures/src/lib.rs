@@ -79,7 +79,7 @@ macro_rules! figures {
     ($($(#[$doc:meta])* $name:ident($data:path),)*) => {
         /// Plain data for one drawing.
         #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
-        #[serde(rename_all = "kebab-case")]
+        #[serde(tag = "figure", rename_all = "kebab-case")]
         pub enum Figure { $($(#[$doc])* $name($data),)* }
 
         macro_rules! each {
