@@ -218,7 +218,6 @@ pub fn null(recordings: usize) -> Result<()> {
         .args([
             "run",
             "--quiet",
-            "--release",
             "--package",
             "teasel-tests",
             "--bin",
