@@ -38,6 +38,8 @@ pub(super) struct Work {
     pub(super) keep: Option<usize>,
     pub(super) design: Option<Design>,
     pub(super) ends: Option<Ends>,
+    /// Components described without intervals, for a first look: the first of each end.
+    sketched: usize,
     described: usize,
     pub(super) folds: Vec<Ground>,
     pub(super) fits: Vec<FoldFit>,
@@ -75,6 +77,7 @@ enum Task {
     Keep,
     Logs,
     Solve,
+    Sketch,
     Describe,
     FoldGround(usize),
     FoldLogs(usize),
@@ -115,6 +118,7 @@ impl Work {
             keep: None,
             design: None,
             ends: None,
+            sketched: 0,
             described: 0,
             folds: Vec::new(),
             fits: Vec::new(),
@@ -166,6 +170,7 @@ impl Work {
             }
             self.keep = None;
             self.ends = None;
+            self.sketched = 0;
             self.described = 0;
         }
         let spaces = limit(old) != limit(new);
@@ -266,7 +271,11 @@ impl Work {
         if self.ends.is_none() {
             return Task::Solve;
         }
-        if self.described < self.sheet.stronger.len() + self.sheet.weaker.len() {
+        let (up, down) = (self.sheet.stronger.len(), self.sheet.weaker.len());
+        if self.sketched < up.min(1) + down.min(1) {
+            return Task::Sketch;
+        }
+        if self.described < up + down {
             return Task::Describe;
         }
         if !self.enough() {
@@ -361,7 +370,18 @@ impl Work {
                 ))
             }
             Task::Solve => self.solve(recipe),
-            Task::Describe => self.describe(recording, recipe),
+            Task::Sketch => {
+                self.describe(recording, recipe, self.sketched, 0)?;
+                self.sketched += 1;
+                let firsts = self.sheet.stronger.len().min(1) + self.sheet.weaker.len().min(1);
+                Ok(self.fitted(self.sketched == firsts))
+            }
+            Task::Describe => {
+                self.describe(recording, recipe, self.described, recipe.evidence.bootstrap)?;
+                self.described += 1;
+                let all = self.sheet.stronger.len() + self.sheet.weaker.len();
+                Ok(self.fitted(self.described == all))
+            }
             Task::FoldGround(f) => self.push_fold_ground(f, recipe),
             Task::FoldLogs(f) => {
                 let rho = self.method(recipe).rho();
@@ -557,13 +577,26 @@ impl Work {
         Ok(progress(Stage::Fitting, all, all, false))
     }
 
-    /// Spectra, course and single trials of the next component: the first of each end, then the others.
-    fn describe(&mut self, recording: &Recording, recipe: &Recipe) -> Result<Progress> {
+    /// Progress of the fitting stage once everything is fitted.
+    fn fitted(&self, news: bool) -> Progress {
+        let all = self.covariances.packed.len() as u64;
+        progress(Stage::Fitting, all, all, news)
+    }
+
+    /// Spectra, course and single trials of component number `at` (the first of each end, then the others), with intervals from
+    /// `count` bootstrap samples.
+    fn describe(
+        &mut self,
+        recording: &Recording,
+        recipe: &Recipe,
+        at: usize,
+        count: usize,
+    ) -> Result<()> {
         let (Some(prepared), Some(selection)) = (&self.prepared, &self.selection) else {
             return Err(lost());
         };
         let (up, down) = (self.sheet.stronger.len(), self.sheet.weaker.len());
-        let (stronger, index) = describing(self.described, up, down);
+        let (stronger, index) = describing(at, up, down);
         let component = if stronger {
             &mut self.sheet.stronger[index]
         } else {
@@ -619,10 +652,7 @@ impl Work {
             &kept,
             span,
         );
-        let (count, seed) = (
-            recipe.evidence.bootstrap,
-            recipe.evidence.seed ^ STREAM_DESCRIBE << 32,
-        );
+        let seed = recipe.evidence.seed ^ STREAM_DESCRIBE << 32;
         let found = spectra::of_component(&series, &signals, &references, rate, count, seed);
         component.peak_hz = spectra::peak_hz(
             &found,
@@ -656,16 +686,7 @@ impl Work {
             component.course = Some(c);
             component.image = Some(image);
         }
-        self.described += 1;
-        // The first of both ends is a first result; then again when all are there.
-        let first = self.described == 2.min(up + down);
-        let all = self.covariances.packed.len() as u64;
-        Ok(progress(
-            Stage::Fitting,
-            all,
-            all,
-            first || self.described == up + down,
-        ))
+        Ok(())
     }
 
     fn fold_progress(&self, f: usize, part: u64) -> Progress {
@@ -1124,14 +1145,24 @@ fn partial_series(
     out
 }
 
-/// out[from..to] += wᵀX[from..to], in blocks that stay in the cache.
+/// out[from..to] += wᵀX[from..to], in blocks that stay in the cache, four channels at a time.
 fn add_projection(out: &mut [f64], prepared: &Prepared, filter: &[f64], from: usize, to: usize) {
     const BLOCK: usize = 4096;
     let mut start = from;
     while start < to {
         let end = (start + BLOCK).min(to);
-        for (w, channel) in filter.iter().zip(&prepared.samples) {
-            for (y, x) in out[start..end].iter_mut().zip(&channel[start..end]) {
+        let into = &mut out[start..end];
+        let (weights, samples) = (filter.chunks_exact(4), prepared.samples.chunks_exact(4));
+        let rest = weights.remainder().iter().zip(samples.remainder());
+        for (w, x) in weights.zip(samples) {
+            let [a, b, c, d] = [0, 1, 2, 3].map(|i| &x[i][start..end]);
+            for (i, y) in into.iter_mut().enumerate() {
+                *y += (w[0] * f64::from(a[i]) + w[1] * f64::from(b[i]))
+                    + (w[2] * f64::from(c[i]) + w[3] * f64::from(d[i]));
+            }
+        }
+        for (w, channel) in rest {
+            for (y, x) in into.iter_mut().zip(&channel[start..end]) {
                 *y += w * f64::from(*x);
             }
         }
