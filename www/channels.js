@@ -51,7 +51,9 @@ function notchField(app) {
   const get = () => now().recipe?.filter.notch_hz ?? [];
   const field = make("input", { class: "field", type: "text", autocomplete: "off", "aria-label": "mains and other lines to stop, in hertz", placeholder: "none" });
   field.addEventListener("change", () => {
-    const values = field.value.split(/[\s;]+|, /).filter(Boolean).map(typed);
+    // A comma between whole numbers of two or three digits parts them ("50,60"); elsewhere it is a decimal mark ("16,7").
+    const parted = field.value.replace(/(?<=\b\d{2,3}),(?=\d{2,3}(?:[,\s;]|$))/g, " ");
+    const values = parted.split(/[\s;]+|, /).filter(Boolean).map(typed);
     const good = values.every((value) => value !== null && value > 0);
     field.setAttribute("aria-invalid", String(!good));
     if (good) app.change((recipe) => void (recipe.filter.notch_hz = values.map(Number)));

@@ -72,7 +72,8 @@ function build(app, table, wanted) {
   };
   table.replaceChildren(...ENDS.flatMap(group));
   if (!wanted.includes(open)) open = "";
-  const row = rows.get(open || (wanted[0] ?? ""));
+  const first = `${now().sheet?.leading ?? "stronger"}-1`;
+  const row = rows.get(open || (wanted.includes(first) ? first : (wanted[0] ?? "")));
   if (row) turn(app, row, true);
 }
 
@@ -90,7 +91,12 @@ function makeRow(app, id, table) {
   const row = make("tr", { "data-component": id }, make("th", { scope: "row" }, id.replace(/\D+/, "")), make("td", {}, map), make("td", {}, spectrum), make("td", { class: "axis-cell" }, ratio),
     cells.typical, cells.total, cells.p, cells.stability, make("td", { class: "right act" }, button));
   const made = { id, row, cells, button, slots };
-  button.addEventListener("click", () => turn(app, made, button.getAttribute("aria-expanded") !== "true"));
+  button.addEventListener("click", () => {
+    // The row that was pressed stays where it is, though one above it closes.
+    const before = row.getBoundingClientRect().top;
+    turn(app, made, button.getAttribute("aria-expanded") !== "true");
+    scrollBy({ top: row.getBoundingClientRect().top - before, behavior: "instant" });
+  });
   button.setAttribute("aria-label", `Open ${words}`);
   return made;
 }

@@ -10,6 +10,7 @@ import { typed, written } from "./numbers.js";
  * @param {(value: number | null) => void} plan.set
  * @param {boolean} [plan.optional] an empty field is an answer
  * @param {[number, number]} [plan.range]
+ * @param {(value: number) => string} [plan.refuse] why a number cannot be taken, in words; "" where it can
  * @param {() => number} [plan.step] what an arrow key adds
  * @param {(value: number) => string} [plan.write] how a value stands in the field
  * @param {string} [plan.empty] shown where nothing is set
@@ -19,14 +20,30 @@ export function numberField(label, plan) {
   const accepts = (/** @type {number | null} */ value, /** @type {string} */ text) =>
     value === null ? Boolean(plan.optional && text.trim() === "") : !plan.range || (value >= plan.range[0] && value <= plan.range[1]);
   const field = make("input", { class: "field", type: "text", inputmode: "decimal", autocomplete: "off", spellcheck: "false", "aria-label": label, placeholder: plan.empty });
+  /** What is being typed belongs to the user until it is entered or taken back. */
+  let edited = false;
+  const fault = (/** @type {string} */ words) => {
+    field.setAttribute("aria-invalid", String(words !== ""));
+    field.setCustomValidity(words);
+    if (words && document.activeElement === field) field.reportValidity();
+    return words !== "";
+  };
   const commit = () => {
+    edited = false;
     const value = typed(field.value);
-    const good = accepts(value, field.value);
-    field.setAttribute("aria-invalid", String(!good));
-    if (good && value !== (plan.get() ?? null)) plan.set(value);
+    if (!accepts(value, field.value)) return fault(plan.range ? `A number from ${written(plan.range[0])} to ${written(plan.range[1])} goes here${plan.optional ? ", or nothing" : ""}.` : "A number goes here.");
+    if (fault(value === null ? "" : (plan.refuse?.(value) ?? ""))) return true;
+    if (value !== (plan.get() ?? null)) plan.set(value);
+    return false;
   };
   field.addEventListener("change", commit);
+  field.addEventListener("input", () => (edited = true));
   field.addEventListener("keydown", (event) => {
+    if (event.key === "Escape") {
+      edited = false;
+      fault("");
+      field.value = write(plan.get() ?? null);
+    }
     const way = { ArrowUp: 1, ArrowDown: -1 }[event.key];
     const value = typed(field.value);
     if (!way || !plan.step || value === null) return;
@@ -38,10 +55,10 @@ export function numberField(label, plan) {
     field,
     show() {
       const value = plan.get() ?? null;
-      if (document.activeElement === field && field.getAttribute("aria-invalid") === "true") return;
+      if (document.activeElement === field && (edited || field.getAttribute("aria-invalid") === "true")) return;
       if (document.activeElement === field && typed(field.value) === value) return void field.setAttribute("aria-invalid", "false");
       field.value = write(value);
-      field.setAttribute("aria-invalid", "false");
+      fault("");
     },
   };
 }

@@ -5,13 +5,19 @@ import { asProblem, unsay } from "./notices.js";
 import { count } from "./numbers.js";
 import { clearLink, recipeAtStart } from "./recipe-link.js";
 import { sayEnded, sayFewEvents, sayNoEvents, sayOpenEnds, sayProblem, sayStopped, sayWaiting, sayWeights } from "./sayings.js";
-import { forget, now, put } from "./state.js";
+import { fitted, forget, now, put } from "./state.js";
 
 /** @typedef {import("./types").App} App */
 /** @typedef {import("./types").Recipe} Recipe */
 /** @typedef {import("./types").Summary} Summary */
 /** @typedef {{ files: File[], salvage: boolean } | { demo: string }} Source */
 /** @typedef {{ recipe: Recipe, link: string | null }} Waiting */
+
+/** Whether two events are equally the most frequent: then the page asks instead of choosing by the alphabet. @param {Summary} summary */
+function tied(summary) {
+  const [first, second] = Object.values(summary.recording.events).sort((a, b) => b - a);
+  return first !== undefined && first === second;
+}
 
 /**
  * @param {App} app
@@ -26,6 +32,8 @@ export function door({ bridge, change: edit }, compute) {
   let waiting = null;
   /** @type {Source | null} */
   let last = null;
+  /** What is open: a file that cannot be opened does not take its place. @type {Source | null} */
+  let standing = null;
   /** Counts what was opened: an answer that was overtaken is dropped. */
   let turn = 0;
 
@@ -47,12 +55,10 @@ export function door({ bridge, change: edit }, compute) {
       summary = "demo" in source ? await bridge.openDemo(source.demo) : await bridge.open(source.files, { salvage: source.salvage });
     } catch (thrown) {
       if (mine !== turn) return;
-      // The worker has let go of what was open before.
-      forget();
-      document.documentElement.removeAttribute("data-sheet");
-      return failed(thrown);
+      return standing ? await back(standing, thrown) : lost(thrown);
     }
     if (mine !== turn) return;
+    standing = source;
     try {
       const size = "files" in source ? (source.files.find(({ name }) => name === summary.recording.name)?.size ?? null) : null;
       put({ summary, sheet: null, readings: [], figures: [], recipe: null, stale: false, taken: 0, source: { name: summary.recording.name, size, demo } });
@@ -63,9 +69,32 @@ export function door({ bridge, change: edit }, compute) {
     }
   }
 
+  /** Nothing is open any more. @param {unknown} thrown */
+  function lost(thrown) {
+    standing = null;
+    forget();
+    document.documentElement.removeAttribute("data-sheet");
+    failed(thrown);
+  }
+
+  /** Opens again what was open before a file that cannot be, with its choices. @param {Source} source @param {unknown} thrown */
+  async function back(source, thrown) {
+    const { recipe } = now();
+    try {
+      const summary = "demo" in source ? await bridge.openDemo(source.demo) : await bridge.open(source.files, { salvage: source.salvage });
+      put({ summary, phase: recipe ? "working" : "choosing", progress: null });
+      const problem = asProblem(thrown);
+      sayProblem(problem, waysOn(problem));
+      if (recipe) compute();
+    } catch {
+      lost(thrown);
+    }
+  }
+
   /** A recipe that came along, or a proposal; then the work begins, at once where it is small. @param {Summary} summary */
   async function ask(summary) {
     const proposal = await bridge.propose();
+    const brings = Boolean(standing && "demo" in standing);
     const brought = waiting?.link ? bridge.linkComplete(waiting.link, summary.recording.events) : waiting;
     const recipe = brought?.recipe ?? proposal?.recipe ?? unproposed(bridge, summary);
     if (brought && "notes" in brought && brought.notes.length) sayOpenEnds(brought.notes);
@@ -73,7 +102,7 @@ export function door({ bridge, change: edit }, compute) {
       put({ phase: "choosing", progress: null });
       return sayNoEvents(pick);
     }
-    put({ recipe, why: waiting ? "" : (proposal?.why ?? ""), progress: null, phase: waiting || (proposal && isSmall(summary)) ? "working" : "choosing" });
+    put({ recipe, why: waiting ? "" : (proposal?.why ?? ""), progress: null, phase: waiting || (proposal && isSmall(summary) && (brings || !tied(summary))) ? "working" : "choosing" });
     if (!waiting && !proposal) sayFewEvents();
     waiting = null;
     if (now().phase === "working") compute();
@@ -92,7 +121,7 @@ export function door({ bridge, change: edit }, compute) {
   function waysOn({ kind, salvage }) {
     const files = last && "files" in last ? last.files : null;
     const { sheet, summary } = now();
-    const before = sheet?.stronger.length ? sheet.recipe : null;
+    const before = fitted(sheet) && JSON.stringify(sheet?.recipe) !== JSON.stringify(now().recipe) ? sheet?.recipe : null;
     const ofChoices = kind === "contrast" || kind === "recipe";
     const ways = [
       salvage && files && { label: `Open the ${count(salvage.records)} whole records`, main: true, act: () => void open({ files, salvage: true }) },

@@ -2,7 +2,7 @@
 import { afterRest, find } from "./kit.js";
 import { count } from "./numbers.js";
 import { speak } from "./readings.js";
-import { follow, now } from "./state.js";
+import { fitted, follow, now } from "./state.js";
 
 /** Work that ends sooner than this goes unmentioned. */
 const [PATIENCE_MS, READING_PATIENCE_MS] = [450, 180];
@@ -65,7 +65,7 @@ function rest(part) {
   const spent = (performance.now() - stageBegan) / 1000;
   const left = part > 3 && spent > 0.8 ? Math.ceil((spent * (100 - part)) / part) : 0;
   const time = left > 90 ? `About ${Math.ceil(left / 60)} min left.` : left ? `About ${left} s left.` : "";
-  const moving = /permut/i.test(stage) && now().sheet?.stronger.length ? " The ratios above are final; only p is still moving." : "";
+  const moving = /permut/i.test(stage) && fitted(now().sheet) ? " The ratios above are final; only p is still moving." : "";
   return `${time}${moving}`.trim();
 }
 

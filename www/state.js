@@ -26,6 +26,16 @@ export function put(patch) {
   for (const listener of listeners) listener(state, before);
 }
 
+/** Whether a sheet holds a result: the fit brings the compression with it, whichever ends it found. @param {import("./types").Sheet | null | undefined} sheet */
+export function fitted(sheet) {
+  return Boolean(sheet?.compression);
+}
+
+/** The first component of the end that leads, or undefined. @param {import("./types").Sheet | null | undefined} sheet */
+export function leadingComponent(sheet) {
+  return sheet ? sheet[sheet.leading ?? "stronger"][0] : undefined;
+}
+
 /** Forgets the recording and everything made from it. */
 export function forget() {
   put({ ...EMPTY });

@@ -2,7 +2,7 @@
 import { find, makeSvg } from "./kit.js";
 import { chance, smooth } from "./curve.js";
 import { clock, factor } from "./numbers.js";
-import { follow } from "./state.js";
+import { fitted, follow, leadingComponent } from "./state.js";
 
 /** @typedef {import("./types").State} State */
 /** @typedef {import("./types").StepName} StepName */
@@ -89,18 +89,18 @@ function settled(step, { summary, sheet, phase, recipe, taken }) {
     return { knot: Math.min(signal.used, reference.used) < 10 ? "look" : "done", answer: `${signal.used} + ${reference.used}` };
   }
   if (step === "compression" && sheet.compression) return { knot: "done", answer: `keep ${sheet.compression.kept} of ${sheet.compression.rank}` };
-  if (step === "components" && sheet.stronger.length + sheet.weaker.length) {
+  if (step === "components" && fitted(sheet)) {
     const { up, down, tested } = passing(sheet);
     return { knot: "done", answer: tested ? `${up} up, ${down} down` : `${sheet.stronger.length} + ${sheet.weaker.length}` };
   }
-  if (step === "evidence" && sheet.stronger[0]) return evidence(sheet);
-  if (step === "take-away" && sheet.stronger[0]) return taken ? { knot: "done", answer: taken === 1 ? "1 file taken" : `${taken} files taken` } : { knot: "wait", answer: "not taken yet" };
+  if (step === "evidence" && fitted(sheet)) return evidence(sheet);
+  if (step === "take-away" && fitted(sheet)) return taken ? { knot: "done", answer: taken === 1 ? "1 file taken" : `${taken} files taken` } : { knot: "wait", answer: "not taken yet" };
   return waiting;
 }
 
 /** @param {import("./types").Sheet} sheet @returns {Answer} */
 function evidence(sheet) {
-  const leading = sheet.stronger[0];
+  const leading = leadingComponent(sheet);
   const measure = sheet.recipe.measure === "total" ? leading?.total : leading?.typical;
   if (measure?.held_out === null || measure?.held_out === undefined) return { knot: sheet.windows ? "look" : "wait", answer: WITHHELD };
   return { knot: "done", answer: `held-out ${factor(measure.held_out)}` };
@@ -117,7 +117,7 @@ export function passing(sheet) {
 function strands(state) {
   const many = (/** @type {number} */ n) => Array.from({ length: n }, () => "fibre");
   const kept = state?.sheet?.compression ? Math.max(2, Math.min(6, Math.round(state.sheet.compression.kept / 3))) : 0;
-  const apart = state?.sheet?.stronger.length ? passing(state.sheet) : null;
+  const apart = state?.sheet && fitted(state.sheet) ? passing(state.sheet) : null;
   const ends = apart ? [...Array(apart.up).fill("up"), ...Array(apart.down).fill("down")] : [];
   const out = ends.length ? ends : apart ? ["fibre"] : [];
   return [state?.summary ? many(11) : [], state?.sheet?.preparation ? many(9) : [], state?.sheet?.windows ? many(8) : [], many(kept), out, apart?.tested ? out : []];

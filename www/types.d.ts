@@ -81,6 +81,7 @@ export interface Sheet {
   compression: { kept: number; rank: number; share: number; guides: Record<string, number> } | null;
   curve: { keep: number[]; fitted: number[]; held_out: number[]; log_se: number[] } | null;
   shrinkage: number | null;
+  leading: "stronger" | "weaker";
   stronger: Component[];
   weaker: Component[];
   compare: unknown[];

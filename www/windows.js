@@ -26,7 +26,7 @@ export function mountWindows(app) {
   const events = select("event of the signal windows", (value) => takeEvent(app, value));
   const against = select("event of the reference windows", (value) => app.change(({ contrast }) => void (contrast.reference.event = value)));
   const fields = /** @type {[Side, End][]} */ ([["signal", "from_s"], ["signal", "to_s"], ["reference", "from_s"], ["reference", "to_s"]]).map(([side, end]) =>
-    numberField(`${side} ${end === "from_s" ? "from" : "to"}, in seconds from the event`, { get: () => window(side)?.[end], step: sample, write: seconds, set: (value) => value !== null && move(app, side, end, value) }));
+    numberField(`${side} ${end === "from_s" ? "from" : "to"}, in seconds from the event`, { get: () => window(side)?.[end], step: sample, write: seconds, refuse: (value) => order(side, end, value), set: (value) => value !== null && app.change(({ contrast }) => void (contrast[side][end] = onGrid(value))) }));
   const why = make("span", { class: "quiet small" });
   body.append(
     make("div", { class: "choice" }, event.root, events.root,
@@ -102,6 +102,14 @@ function limits(side, end) {
 /** @param {number} t */
 function onGrid(t) {
   return Number((Math.round(t / sample()) * sample()).toFixed(6));
+}
+
+/** Why a typed end cannot be taken: unlike a dragged edge it pushes nothing along. @param {Side} side @param {End} end @param {number} to */
+function order(side, end, to) {
+  const other = window(side)?.[end === "from_s" ? "to_s" : "from_s"] ?? 0;
+  const length = end === "from_s" ? other - to : to - other;
+  if (length <= 0) return end === "from_s" ? `The window ends at ${seconds(other)} s: it must begin before. Change its end first.` : `The window begins at ${seconds(other)} s: it must end after. Change its beginning first.`;
+  return length < (LEAST - 0.5) * sample() ? "A window holds at least three samples." : "";
 }
 
 /** An edge that meets the other pushes it along. @param {App} app @param {Side} side @param {End} end @param {number} to */

@@ -2,7 +2,7 @@
 import { refreshFigures, settleFigures } from "./figure.js";
 import { eachFrame } from "./kit.js";
 import { unsay } from "./notices.js";
-import { now, put } from "./state.js";
+import { fitted, now, put } from "./state.js";
 
 /** @typedef {import("./types").Bridge} Bridge */
 /** @typedef {import("./types").Recipe} Recipe */
@@ -44,7 +44,7 @@ export function mountWork(bridge, trouble) {
       edit(next);
       expected = Infinity;
       const asProposed = JSON.stringify(next.contrast) === JSON.stringify(recipe.contrast);
-      put({ recipe: next, stale: Boolean(sheet?.stronger.length), taken: 0, why: asProposed ? now().why : "" });
+      put({ recipe: next, stale: fitted(sheet), taken: 0, why: asProposed ? now().why : "" });
       unsay("#problem");
       send();
     },
@@ -67,10 +67,10 @@ function listen(bridge, trouble) {
 
 /** @param {SheetNews} news */
 function take({ sheet, readings, figures, drawn, generation }) {
-  const whole = sheet.stronger.length > 0;
+  const whole = fitted(sheet);
   const told = whole || !now().stale ? { readings } : {};
   put({ sheet: carriedOver(sheet, now().sheet), ...told, figures, drawn: drawn ?? {}, generation, stale: now().stale && !(whole && generation >= expected) });
-  document.documentElement.toggleAttribute("data-sheet", Boolean(now().sheet?.stronger.length));
+  document.documentElement.toggleAttribute("data-sheet", fitted(now().sheet));
   refreshFigures();
 }
 
@@ -81,11 +81,12 @@ function take({ sheet, readings, figures, drawn, generation }) {
  * @returns {Sheet}
  */
 function carriedOver(sheet, before) {
-  if (!before || sheet.stronger.length || !before.stronger.length) return sheet;
-  const { stronger, weaker, compare, permutation, folds, curve } = before;
+  if (!before || fitted(sheet) || !fitted(before)) return sheet;
+  // Whose numbers these are is said by their own recipe.
+  const { recipe, leading, stronger, weaker, compare, permutation, folds, curve } = before;
   const { preparation, windows, compression } = sheet;
   return {
-    ...sheet, stronger, weaker, compare, permutation, folds, curve,
+    ...sheet, recipe, leading, stronger, weaker, compare, permutation, folds, curve,
     preparation: preparation ?? before.preparation, windows: windows ?? before.windows, compression: compression ?? before.compression,
   };
 }
