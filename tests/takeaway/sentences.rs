@@ -192,7 +192,7 @@ fn the_whole_story_of_a_good_recording() {
         ),
         (
             Section::Windows,
-            "40 of 42 buoy events give a pair of windows of 0.80 s. Component 1, held-out, rises in 34 of 40 trials. But windows of 0.80 s hold less than one cycle of the high-pass (1 Hz), so only a part of rhythms under 1.2 Hz; of the windows on either side one leaves the recording and one lost its partner.",
+            "40 of 42 buoy events give a pair of windows of 0.80 s. Component 1, held-out, rises in 34 of 40 trials. But windows of 0.80 s hold less than one cycle of the high-pass (1 Hz), so only a part of rhythms under 1.2 Hz; of the windows on either side one lies beyond the end and one lost its partner.",
         ),
         (
             Section::Compression,
