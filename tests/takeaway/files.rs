@@ -322,6 +322,7 @@ fn archives_are_whole_safe_and_the_same_twice() {
         .read_to_string(&mut readme)
         .unwrap();
     assert!(readme.contains(teasel_core::CAUTION) && readme.contains("weights.json"));
+    assert!(readme.lines().count() < 24, "{readme}");
 }
 
 #[test]

@@ -306,7 +306,7 @@ fn each_refusal_says_where_what_was_expected_and_what_was_found() {
             LEAST.replace("\"to_s\": 1}", "\"to_s\": 0}"),
             "out of range",
             "line 2, column 52, \"contrast.signal.to_s\"",
-            "after from_s, 0",
+            "after their start, 0 s",
         ),
         (
             LEAST.replace("\"from_s\": -1,", ""),

@@ -1,7 +1,7 @@
 //! Readings: what they say in each case, how long they are, and that no name becomes markup.
 use super::sample;
-use teasel_core::recipe::Contrast;
-use teasel_core::sheet::{FoldCard, Sheet};
+use teasel_core::recipe::{Contrast, Measure};
+use teasel_core::sheet::{End, FoldCard, Sheet};
 use teasel_core::takeaway::{Reading, Section, Span, Tone, readings};
 
 fn text(spans: &[Span]) -> String {
@@ -80,6 +80,27 @@ fn cases() -> Vec<(&'static str, Sheet)> {
         ),
         ("one end", change(|s| s.weaker.clear())),
         ("other end", change(|s| s.stronger.clear())),
+        ("weaker leads", change(|s| s.leading = End::Weaker)),
+        (
+            "weaker pending",
+            change(|s| {
+                s.leading = End::Weaker;
+                s.permutation = None;
+                s.stronger[0].p = None;
+                s.weaker[0].p = None;
+                s.weaker[0].typical.held_out = Some(1.1);
+                s.stronger[0].typical.held_out = Some(0.94);
+            }),
+        ),
+        (
+            "total",
+            change(|s| {
+                s.recipe.measure = Measure::Total;
+                s.recipe.filter.high_pass_hz = None;
+                s.stronger[0].total.folds = vec![1.7, 3.1, 2.4];
+                s.weaker.clear();
+            }),
+        ),
         ("unpaired", change(unpaired)),
         (
             "many",
@@ -150,8 +171,8 @@ fn unpaired(sheet: &mut Sheet) {
     windows.paired = false;
     windows.signal.used = 41;
     windows.reference.used = 20;
-    windows.reference.samples = 100;
-    windows.reference.seconds = 0.4;
+    windows.reference.samples = 50;
+    windows.reference.seconds = 0.2;
     for c in sheet.stronger.iter_mut().chain(&mut sheet.weaker) {
         c.trials.clear();
     }
@@ -163,15 +184,15 @@ fn the_whole_story_of_a_good_recording() {
     let expected = [
         (
             Section::SoFar,
-            "After buoy, a component peaking at 21 Hz, largest at CP1, has 2.83 times its reference variance in a typical trial; one at 10.5 Hz, largest at Oz, falls to 0.35 times. But the 95 % intervals of the held-out typical ratios are 2.33–3.47 and 0.27–0.46, from 40 pairs of one recording; p = 0.004 and 0.004.",
+            "After buoy, a component peaking at 21 Hz, largest at CP1, has 2.83 times its reference variance in a typical trial; one at 10.5 Hz, largest at Oz, falls to 0.35 times. But windows of 0.80 s hold less than one cycle of the high-pass (1 Hz), so only a part of rhythms under 1.2 Hz; 95 % intervals 2.33–3.47 and 0.27–0.46, 40 pairs; p = 0.004 and 0.004.",
         ),
         (
             Section::Recording,
-            "8 channels at 250 Hz for 4 min 0 s, in µV, without gaps; 42 buoy and 20 swell. But one channel is listed and not analysed: Airflow, sampled at 25 Hz, most channels at 250 Hz.",
+            "8 channels at 250 Hz for 4 min 0 s, in µV, without gaps; 42 buoy and 20 swell. But one channel is listed and not analysed: Airflow (sampled at 25 Hz, most channels at 250 Hz).",
         ),
         (
             Section::Windows,
-            "40 of 42 buoy events give a pair of windows of 0.80 s. Component 1, held-out, rises in 34 of 40 trials. But of the signal windows one leaves the recording and one lost its partner; of the reference windows one leaves the recording and one lost its partner.",
+            "40 of 42 buoy events give a pair of windows of 0.80 s. Component 1, held-out, rises in 34 of 40 trials. But windows of 0.80 s hold less than one cycle of the high-pass (1 Hz), so only a part of rhythms under 1.2 Hz; of the windows on either side one lies beyond the end and one lost its partner.",
         ),
         (
             Section::Compression,
@@ -217,7 +238,7 @@ fn each_case_has_its_words() {
             &[
                 "no component passes (smallest p = 0.31)",
                 "no proof of sameness",
-                "40 pairs",
+                "After buoy, nothing differs that 40 pairs could show",
                 "under about 2.05",
             ],
         ),
@@ -230,7 +251,8 @@ fn each_case_has_its_words() {
             "overfitted",
             Section::SoFar,
             &[
-                "Fitted 3.90 times, held-out 1.10 times: the filters learnt these trials, not the difference",
+                "After buoy, nothing differs",
+                "(fitted 3.90 times, held-out 1.10 times): the filters learnt these trials, not the difference",
             ],
         ),
         (
@@ -249,12 +271,8 @@ fn each_case_has_its_words() {
             Section::Components,
             &["2.83×", "only 1.20×", "large for other reasons"],
         ),
-        ("pending", Section::SoFar, &["p is still being computed"]),
-        (
-            "pending",
-            Section::Evidence,
-            &["The permutations are still running"],
-        ),
+        ("pending", Section::SoFar, &["p is not computed yet"]),
+        ("pending", Section::Evidence, &["p is not computed yet"]),
         (
             "fitted",
             Section::SoFar,
@@ -263,13 +281,58 @@ fn each_case_has_its_words() {
         (
             "untested",
             Section::Evidence,
-            &["No permutation was asked for"],
+            &["No permutations were asked for, so there is no p."],
         ),
         ("one end", Section::Components, &["none is weaker"]),
         (
             "other end",
             Section::SoFar,
             &["falls to 0.35 times its reference variance"],
+        ),
+        (
+            "weaker leads",
+            Section::SoFar,
+            &[
+                "After buoy, a component peaking at 10.5 Hz, largest at Oz, falls to 0.35 times its reference variance in a typical trial; one at 21 Hz, largest at CP1, has 2.83 times.",
+            ],
+        ),
+        (
+            "weaker leads",
+            Section::Evidence,
+            &["weaker component 1 falls to 0.35×"],
+        ),
+        (
+            "weaker leads",
+            Section::Windows,
+            &["Weaker component 1, held-out, falls in "],
+        ),
+        (
+            "weaker leads",
+            Section::Components,
+            &["Weaker component 1 has 0.35×"],
+        ),
+        (
+            "weaker pending",
+            Section::SoFar,
+            &[
+                "After buoy, nothing stands out so far: what was fitted as weaker has 1.10 times",
+                "p is not computed yet",
+            ],
+        ),
+        (
+            "weaker pending",
+            Section::Components,
+            &["Held-out, 1 of 2 stronger and 1 of 2 weaker components keep to their side of 1."],
+        ),
+        (
+            "total",
+            Section::SoFar,
+            &["total ratio ranges over 1.70–3.10, from 40 pairs of one recording; p = 0.004"],
+        ),
+        (
+            "unpaired",
+            Section::Windows,
+            &["signal windows last 0.80 s, reference windows 0.20 s"],
         ),
         (
             "unpaired",
@@ -280,7 +343,7 @@ fn each_case_has_its_words() {
             "unpaired",
             Section::Windows,
             &[
-                "41 signal windows at buoy of 0.80 s stand against 20 reference windows at swell of 0.40 s",
+                "41 signal windows at buoy of 0.80 s stand against 20 reference windows at swell of 0.20 s",
             ],
         ),
         ("unpaired", Section::Evidence, &["shuffled arrangements"]),
@@ -325,7 +388,7 @@ fn order_changes_trends_and_rivals_are_told() {
         .collect();
     assert!(
         said(&sheet, Section::Evidence)
-            .contains("grows from 1.93× in the first fold to 3.45× in the last")
+            .contains("rises from 1.93× in the first fold to 3.45× in the last")
     );
     sheet.compare[2].typical.held_out = Some(3.0);
     assert!(

@@ -90,7 +90,7 @@ fn files(sheet: &Sheet, series: Option<Series>) -> Result<Vec<(String, Vec<u8>)>
         files.push(("series.npy".into(), take::series_npy(&series)?));
     }
     for (name, _, svg) in drawings {
-        if figures::stands_alone(&name) {
+        if teasel_figures::stands_alone(&name) {
             files.push((
                 format!("figures/{}.svg", take::safe_name(&name)),
                 svg.into(),

@@ -118,8 +118,15 @@ pub fn recording(path: &Path, given: &Given, meter: &mut Meter) -> Result<Record
     };
     let sides = sides(path, given)?;
     let hint = |mut problem: Problem| {
-        if problem.salvage.is_some() && !given.salvage {
-            problem.advice.push_str(" (--salvage opens them)");
+        if let (Some(part), false) = (problem.salvage, given.salvage) {
+            let records = match part.records {
+                1 => "1 whole record".to_string(),
+                n => format!("{n} whole records"),
+            };
+            problem.advice.push_str(&format!(
+                ", or open the {records} before it ({} s) with --salvage",
+                (part.seconds * 1000.0).round() / 1000.0
+            ));
         }
         problem
     };

@@ -8,9 +8,6 @@ use teasel_core::takeaway::{
 };
 use teasel_figures::Look;
 
-/// Width of an exported figure in CSS pixels.
-const WIDTH: u32 = 888;
-
 /// One file, by the name of its button.
 pub fn file(analysis: &Analysis, kind: &str, extras: Vec<NamedBytes>) -> Result<Vec<u8>> {
     let sheet = analysis.sheet();
@@ -48,7 +45,9 @@ fn everything(sheet: &Sheet, extras: Vec<NamedBytes>) -> Result<Vec<u8>> {
         ("weights.csv".into(), weights_csv(sheet)?.into()),
         ("report.html".into(), report_html(sheet, &figures).into()),
     ];
-    let drawn = figures.into_iter();
+    let drawn = figures
+        .into_iter()
+        .filter(|(name, _, _)| teasel_figures::stands_alone(name));
     files.extend(drawn.map(|(name, _, svg)| (format!("figures/{name}.svg"), svg.into())));
     files.extend(extras.into_iter().map(|extra| (extra.name, extra.bytes)));
     archive(&files)
@@ -61,8 +60,9 @@ fn figures(sheet: &Sheet) -> Vec<(String, String, String)> {
         .into_iter()
         .filter_map(|(name, caption)| {
             let figure = teasel_figures::from_sheet(sheet, &name)?;
-            let height = teasel_figures::height(&figure, WIDTH);
-            let svg = teasel_figures::svg(&figure, WIDTH, height, &look);
+            let width = teasel_figures::report_width(&name);
+            let height = teasel_figures::height(&figure, width);
+            let svg = teasel_figures::svg(&figure, width, height, &look);
             Some((name, caption, svg))
         })
         .collect()

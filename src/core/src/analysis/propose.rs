@@ -32,6 +32,12 @@ pub fn propose(recording: &Recording) -> Option<Proposal> {
         .iter()
         .filter(|(_, t)| t.len() >= FEWEST_EVENTS)
         .max_by(|a, b| a.1.len().cmp(&b.1.len()).then(b.0.cmp(a.0)))?;
+    let equals = onsets.values().filter(|t| t.len() == times.len()).count();
+    let most = if equals > 1 {
+        "one of the most frequent events"
+    } else {
+        "the most frequent event"
+    };
     let mut gaps: Vec<f64> = times.windows(2).map(|w| w[1] - w[0]).collect();
     gaps.sort_by(f64::total_cmp);
     let down = |gap: f64| ((gap / 2.0).min(1.0) * 100.0 + 1e-9).floor() / 100.0;
@@ -83,8 +89,9 @@ pub fn propose(recording: &Recording) -> Option<Proposal> {
             evidence: Evidence::default(),
         },
         why: format!(
-            "\u{201c}{label}\u{201d} is the most frequent event ({} times); the windows after and before it last {length}.{filter}",
-            times.len()
+            "\u{201c}{label}\u{201d} is {most} ({} times{}); the windows after and before it last {length}.{filter}",
+            times.len(),
+            if equals > 1 { " each" } else { "" }
         ),
     })
 }
@@ -121,6 +128,22 @@ mod tests {
             (0.0, 0.75, -0.75, 0.0)
         );
         assert!(proposal.why.contains("12 times"));
+        assert!(proposal.why.contains("is the most frequent event"));
         assert_eq!(propose(&recording(&onsets[..9])), None);
+    }
+
+    #[test]
+    fn a_tie_is_called_one() {
+        let onsets: Vec<f64> = (0..12).map(|i| f64::from(i) * 1.5).collect();
+        let mut tied = recording(&onsets);
+        let more: Vec<Event> = (tied.events.iter())
+            .map(|e| Event {
+                label: "gull".into(),
+                ..e.clone()
+            })
+            .collect();
+        tied.events.extend(more);
+        let why = propose(&tied).unwrap().why;
+        assert!(why.contains("“buoy” is one of the most frequent events (12 times each)"));
     }
 }

@@ -324,10 +324,10 @@ fn designs(filter: &Filter, rate_hz: f64) -> Result<Vec<Design>> {
         return Err(Problem::new(
             Kind::Recipe,
             "the high-pass edge is not below the low-pass edge: nothing would pass",
-            "lower high_pass_hz or raise low_pass_hz",
+            "lower the high-pass or raise the low-pass",
         )
-        .at("recipe, filter")
-        .expected_found(format!("high_pass_hz below {low} Hz"), format!("{high} Hz")));
+        .at("recipe, filter.high_pass_hz")
+        .expected_found(format!("a high-pass below {low} Hz"), format!("{high} Hz")));
     }
     let requests = (filter.high_pass_hz.map(Request::HighPass).into_iter())
         .chain(filter.low_pass_hz.map(Request::LowPass))
@@ -337,6 +337,14 @@ fn designs(filter: &Filter, rate_hz: f64) -> Result<Vec<Design>> {
         .collect())
 }
 
+fn filter_in_words(key: &str) -> &'static str {
+    match key {
+        "high_pass_hz" => "the high-pass",
+        "low_pass_hz" => "the low-pass",
+        _ => "the notch",
+    }
+}
+
 /// Refuses a frequency outside the open interval; also one that is not a number.
 fn in_range(key: &str, value: f64, above: f64, below: f64) -> Result<()> {
     if value > above && value < below {
@@ -344,7 +352,7 @@ fn in_range(key: &str, value: f64, above: f64, below: f64) -> Result<()> {
     }
     Err(Problem::new(
         Kind::Recipe,
-        format!("{key} does not fit this recording"),
+        format!("{} does not fit this recording", filter_in_words(key)),
         "choose a frequency between these limits; the upper one follows from the sampling rate",
     )
     .at(format!("recipe, filter.{key}"))
@@ -363,7 +371,7 @@ fn resampler(filter: &Filter, rate_hz: f64) -> Result<Option<Resampler>> {
     let (up, down) = ratio.ok_or_else(|| {
         Problem::new(
             Kind::Recipe,
-            "resample_hz does not fit this recording",
+            "the new sampling rate does not fit this recording",
             "choose a rate between twice the high-pass edge and the recording's own rate",
         )
         .at("recipe, filter.resample_hz")

@@ -5,11 +5,36 @@ use crate::error::{Kind, Problem, Result};
 /// The largest whole number that every reader of JSON keeps exactly: 2^53 − 1.
 pub(crate) const WHOLE_MAX: f64 = 9_007_199_254_740_991.0;
 
+/// A choice of the recipe as one speaks of it.
+fn in_words(path: &str) -> &'static str {
+    match path {
+        "channels.reference" => "the reference",
+        "filter.high_pass_hz" => "the high-pass",
+        "filter.low_pass_hz" => "the low-pass",
+        "filter.notch_hz" => "the notch",
+        "filter.resample_hz" => "the new sampling rate",
+        "keep" => "the number of dimensions kept",
+        "shrink" => "the shrinkage",
+        "components" => "the number of components",
+        "contrast.signal.event" => "the event of the signal windows",
+        "contrast.reference.event" => "the event of the reference windows",
+        "contrast.signal.from_s" => "the start of the signal windows",
+        "contrast.signal.to_s" => "the end of the signal windows",
+        "contrast.reference.from_s" => "the start of the reference windows",
+        "contrast.reference.to_s" => "the end of the reference windows",
+        "evidence.folds" => "the number of folds",
+        "evidence.permutations" => "the number of permutations",
+        "evidence.bootstrap" => "the number of bootstrap samples",
+        "evidence.seed" => "the seed",
+        _ => "a value of the recipe",
+    }
+}
+
 fn out(path: &str, expected: impl std::fmt::Display, found: impl std::fmt::Display) -> Problem {
     Problem::new(
         Kind::Recipe,
-        "a value of the recipe is out of range",
-        "change it to a value in that range",
+        format!("{} is out of range", in_words(path)),
+        "choose a value in that range",
     )
     .at(path)
     .expected_found(expected, found)
@@ -146,7 +171,7 @@ fn check_contrast(contrast: &Contrast) -> Result<()> {
         if window.from_s >= window.to_s {
             return Err(out(
                 &format!("contrast.{side}.to_s"),
-                format!("a time after from_s, {}", window.from_s),
+                format!("a time after their start, {} s", window.from_s),
                 window.to_s,
             ));
         }

@@ -139,15 +139,31 @@ fn readme(names: &[String]) -> String {
         crate::PROGRAM,
         crate::VERSION
     );
-    for name in names {
-        let what = KINDS
-            .iter()
-            .find(|(kind, _)| name.ends_with(kind))
-            .map_or("a further file", |(_, what)| what);
-        let _ = write!(text, "  {name}\r\n      {what}\r\n");
+    // One line a kind: a single file by its name, several by their folder and ending.
+    let mut left: Vec<&String> = names.iter().collect();
+    for (kind, what) in KINDS.iter().chain([&("", "a further file")]) {
+        let (these, others): (Vec<&String>, Vec<&String>) =
+            left.into_iter().partition(|name| name.ends_with(kind));
+        left = others;
+        let label = match these.as_slice() {
+            [] => continue,
+            [one] => (*one).clone(),
+            [first, ..] if kind.is_empty() => format!("{first} and {} more", these.len() - 1),
+            [first, ..] => {
+                let folder = first.rsplit_once('/').map_or("", |(folder, _)| folder);
+                let together = these
+                    .iter()
+                    .all(|name| name.rsplit_once('/').map_or("", |(f, _)| f) == folder);
+                match (together, folder.is_empty()) {
+                    (true, false) => format!("{folder}/*{kind} ({} files)", these.len()),
+                    _ => format!("*{kind} ({} files)", these.len()),
+                }
+            }
+        };
+        let _ = write!(text, "  {label}: {what}\r\n");
     }
     text.push_str(
-        "  manifest.txt\r\n      the SHA-256 sum of every other file; `sha256sum -c manifest.txt` checks them\r\n\r\n\
+        "  manifest.txt: the SHA-256 sum of every other file; `sha256sum -c manifest.txt` checks them\r\n\r\n\
          The recording itself is not in here, nor what it says about the person recorded.\r\n\
          recipe.json and the recording together give the same numbers again, on the page or with `teasel run`.\r\n\r\n",
     );

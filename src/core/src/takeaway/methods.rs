@@ -1,7 +1,7 @@
 //! The methods paragraph: what was done, with every parameter, ready to be pasted into a paper and edited; and its references.
 use super::words::{self, NB};
 use crate::recipe::{Keep, KeepWord, Measure, Reference, ReferenceWord, Shrink, ShrinkWord};
-use crate::sheet::{ChannelState, Sheet, SideCard};
+use crate::sheet::{ChannelState, Component, Sheet, SideCard};
 
 /// A source: how the text cites it, and its entry in the list.
 struct Work {
@@ -263,8 +263,16 @@ fn filters_in_space(sheet: &Sheet) -> Option<String> {
     ))
 }
 
+/// The leading component, or the first of the other end where its end is empty.
+fn first(sheet: &Sheet) -> Option<&Component> {
+    sheet
+        .first()
+        .or(sheet.stronger.first())
+        .or(sheet.weaker.first())
+}
+
 fn held_out(sheet: &Sheet) -> Option<String> {
-    let first = sheet.stronger.first().or(sheet.weaker.first())?;
+    let first = first(sheet)?;
     let evidence = &sheet.recipe.evidence;
     if first.typical.held_out.is_none() && first.total.held_out.is_none() {
         return None;
@@ -320,7 +328,7 @@ fn quoted_lower(sentence: &str) -> String {
 }
 
 fn looks(sheet: &Sheet) -> Option<String> {
-    let first = sheet.stronger.first().or(sheet.weaker.first())?;
+    let first = first(sheet)?;
     let mut parts = Vec::new();
     if let (Some(spectra), Some(card)) = (&first.spectra, &sheet.preparation) {
         parts.push(format!(

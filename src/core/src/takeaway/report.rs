@@ -7,7 +7,7 @@ use super::recipe_file::recipe_json;
 use super::words;
 use crate::recipe::{Measure, Reference, ReferenceWord};
 use crate::sheet::{
-    ChannelState, Comparator, ComparatorKind, Component, Sheet, TotalRatio, TypicalRatio,
+    ChannelState, Comparator, ComparatorKind, Component, End, Sheet, TotalRatio, TypicalRatio,
 };
 use maud::{DOCTYPE, Markup, PreEscaped, html};
 
@@ -359,7 +359,11 @@ impl Page<'_> {
     }
 
     fn comparators(&self) -> Markup {
-        let first = self.sheet.stronger.first();
+        let first = self.sheet.first();
+        let name = match self.sheet.leading {
+            End::Stronger => "Component 1",
+            End::Weaker => "Weaker component 1",
+        };
         html! {
             table {
                 caption { "Beside it, on the same held-out windows" }
@@ -367,7 +371,7 @@ impl Page<'_> {
                 tbody {
                     @if let Some(component) = first {
                         tr {
-                            th scope="row" { "Component 1" } td.l {}
+                            th scope="row" { (name) } td.l {}
                             (typical_cell(&component.typical)) (total_cell(&component.total))
                         }
                     }

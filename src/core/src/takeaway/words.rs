@@ -269,6 +269,15 @@ pub(super) fn capital(text: &str) -> String {
     })
 }
 
+/// As a sentence of its own; one that begins with the symbol p keeps it small.
+pub(super) fn capital_unless_p(text: &str) -> String {
+    if text.starts_with("p ") {
+        text.into()
+    } else {
+        capital(text)
+    }
+}
+
 /// "is" or "are", "window" or "windows": the first for one.
 pub(super) fn one<'a>(count: usize, single: &'a str, many: &'a str) -> &'a str {
     if count == 1 { single } else { many }

@@ -86,11 +86,7 @@ fn cut(header: &Header, stated: Option<u64>, whole: u64, rest: u64) -> Problem {
 pub(super) fn salvageable(mut problem: Problem, header: &Header, whole: u64) -> Problem {
     if whole > 0 {
         let seconds = whole as f64 * header.record_s;
-        problem.advice = format!(
-            "the {} before it ({} s) can still be opened; or copy the file again from where it was recorded",
-            counted(whole, "whole record"),
-            (seconds * 1000.0).round() / 1000.0
-        );
+        problem.advice = "copy the file again from where it was recorded".into();
         problem.salvage = Some(Salvage {
             records: whole,
             seconds,

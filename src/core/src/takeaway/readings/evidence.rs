@@ -1,9 +1,9 @@
 //! The reading of the evidence: held-out ratio, what stands beside it, permutation, drift over folds.
-use super::judge::{self, State};
+use super::judge::{self, Lead, State};
 use super::so_far::by_measure;
 use super::{Line, Said, words};
 use crate::recipe::Measure;
-use crate::sheet::{Comparator, ComparatorKind, Component, Permutation, Sheet};
+use crate::sheet::{Comparator, ComparatorKind, Permutation, Sheet};
 use crate::takeaway::weights::held_out;
 
 pub(super) fn evidence(sheet: &Sheet) -> Option<Said> {
@@ -25,29 +25,34 @@ pub(super) fn evidence(sheet: &Sheet) -> Option<Said> {
             None,
         )),
         _ => {
-            let (component, name, p) = leader(sheet)?;
-            let held = held_out(component, sheet.recipe.measure)?;
-            let text = Line::new(format!("On windows it never saw, {name} reaches "))
-                .strong(words::factor(held))
-                .then(format!(" {}", by_measure(sheet.recipe.measure)))
-                .join(beside(sheet))
-                .then(".")
-                .join(chance(sheet, p));
-            Some((text, evidence_doubt(sheet, held)))
+            let told = judge::told(sheet)?;
+            let held = held_out(told.component, sheet.recipe.measure)?;
+            let near = if told.leading {
+                beside(sheet)
+            } else {
+                Line::default()
+            };
+            let text = Line::new(format!(
+                "On windows it never saw, {} {} ",
+                told.name(),
+                reach(&told, held)
+            ))
+            .strong(words::factor(held))
+            .then(format!(" {}", by_measure(sheet.recipe.measure)))
+            .join(near)
+            .then(".")
+            .join(chance(sheet, told.component.p));
+            Some((text, evidence_doubt(sheet, &told, held)))
         }
     }
 }
 
-fn leader(sheet: &Sheet) -> Option<(&Component, &'static str, Option<f64>)> {
-    let up = sheet.stronger.first();
-    let down = sheet.weaker.first();
-    match (up, down) {
-        (Some(c), Some(d)) if !judge::passes(c) && judge::passes(d) => {
-            Some((d, "weaker component 1", d.p))
-        }
-        (Some(c), _) => Some((c, "component 1", c.p)),
-        (None, Some(d)) => Some((d, "weaker component 1", d.p)),
-        (None, None) => None,
+/// "reaches", or "falls to" for a weaker component that does.
+fn reach(told: &Lead, held: f64) -> &'static str {
+    if !told.stronger && held < 1.0 {
+        "falls to"
+    } else {
+        "reaches"
     }
 }
 
@@ -111,8 +116,10 @@ fn chance(sheet: &Sheet, p: Option<f64>) -> Line {
                 .strong(words::p_value(p))
                 .then(".")
         }
-        _ if sheet.recipe.evidence.permutations == 0 => Line::new(" No permutation was asked for."),
-        _ => Line::new(" The permutations are still running."),
+        _ => Line::new(format!(
+            " {}.",
+            words::capital_unless_p(&judge::without_p(sheet))
+        )),
     }
 }
 
@@ -125,35 +132,42 @@ pub(in crate::takeaway) fn as_good(test: &Permutation, p: f64) -> usize {
     }
 }
 
-fn evidence_doubt(sheet: &Sheet, held: f64) -> Option<Line> {
+fn evidence_doubt(sheet: &Sheet, told: &Lead, held: f64) -> Option<Line> {
+    let name = told.name();
     let rivals = [
         (ComparatorKind::BestChannel, "the best single channel"),
         (ComparatorKind::BestPc, "the best principal component"),
         (ComparatorKind::FirstPc, "the first principal component"),
     ];
     let size = held.ln().abs();
-    for (kind, name) in rivals {
-        if let Some(r) = of(sheet, kind).filter(|r| held > 1.0 && r.ln() >= size) {
+    for (kind, rival_name) in rivals {
+        let way = if told.stronger { 1.0 } else { -1.0 };
+        let rival = of(sheet, kind).filter(|_| told.leading && told.on_its_side(held));
+        if let Some(r) = rival.filter(|r| way * r.ln() >= size) {
             return Some(Line::new(format!(
-                "{name} does as well ({}): where that is enough, it is the simpler account.",
+                "{rival_name} does as well ({}): where that is enough, it is the simpler account.",
                 words::factor(r)
             )));
         }
     }
-    if let Some((first, last)) = judge::trend(sheet) {
+    let trend = judge::trend(sheet).filter(|_| told.leading);
+    if let Some((first, last)) = trend {
         return Some(Line::new(format!(
-            "component 1 {} from {} in the first fold to {} in the last: practice, fatigue or a drifting contact could do that.",
-            if last > first { "grows" } else { "falls" },
+            "{name} {} from {} in the first fold to {} in the last: practice, fatigue or a drifting contact could do that.",
+            if last > first { "rises" } else { "falls" },
             words::factor(first),
             words::factor(last)
         )));
     }
-    let under = sheet.folds.iter().filter(|f| f.ratio < 1.0).count();
-    if under > 0 && under < sheet.folds.len() && held > 1.0 {
+    let under = (sheet.folds.iter())
+        .filter(|f| !told.on_its_side(f.ratio))
+        .count();
+    if told.leading && under > 0 && under < sheet.folds.len() && told.on_its_side(held) {
         return Some(Line::new(format!(
-            "in {} of {} folds component 1 stays under 1.",
+            "in {} of {} folds {name} stays {} 1.",
             words::count(under),
-            words::count(sheet.folds.len())
+            words::count(sheet.folds.len()),
+            if told.stronger { "under" } else { "above" }
         )));
     }
     let first = sheet

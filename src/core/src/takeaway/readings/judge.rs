@@ -1,6 +1,7 @@
 //! What the numbers amount to, decided once for all sentences.
+use super::words;
 use crate::recipe::Measure;
-use crate::sheet::{Component, Sheet};
+use crate::sheet::{Component, End, Sheet};
 use crate::takeaway::weights::{fitted, held_out};
 
 /// How far the evidence is.
@@ -28,7 +29,10 @@ pub(in crate::takeaway) const LEVEL: f64 = 0.05;
 const APART: f64 = 1.5;
 
 pub(in crate::takeaway) fn state(sheet: &Sheet) -> State {
-    let Some(first) = sheet.stronger.first().or(sheet.weaker.first()) else {
+    let Some(Lead {
+        component: first, ..
+    }) = lead(sheet)
+    else {
         return State::Nothing;
     };
     if sheet.repetitions() < LEAST {
@@ -44,6 +48,112 @@ pub(in crate::takeaway) fn state(sheet: &Sheet) -> State {
         Some(p) if (p.exact || p.done >= p.asked) && first.p.is_some() => State::Tested,
         _ => State::HeldOut,
     }
+}
+
+/// A first component of one end, and how the sentences call it.
+#[derive(Debug, Clone, Copy)]
+pub(in crate::takeaway) struct Lead<'a> {
+    /// The component.
+    pub component: &'a Component,
+    /// Whether it belongs to the stronger end.
+    pub stronger: bool,
+    /// Whether curve, folds and comparators are about it.
+    pub leading: bool,
+}
+
+impl Lead<'_> {
+    /// "component 1" or "weaker component 1".
+    pub(in crate::takeaway) fn name(&self) -> &'static str {
+        if self.stronger {
+            "component 1"
+        } else {
+            "weaker component 1"
+        }
+    }
+    /// Whether a ratio lies on this end's side of 1.
+    pub(in crate::takeaway) fn on_its_side(&self, ratio: f64) -> bool {
+        if self.stronger {
+            ratio > 1.0
+        } else {
+            ratio < 1.0
+        }
+    }
+}
+
+/// The first components of both ends, the leading end first; an empty end gives none.
+pub(in crate::takeaway) fn firsts(sheet: &Sheet) -> Vec<Lead<'_>> {
+    let of = |stronger: bool| {
+        let list = if stronger {
+            &sheet.stronger
+        } else {
+            &sheet.weaker
+        };
+        list.first().map(|component| Lead {
+            component,
+            stronger,
+            leading: stronger == (sheet.leading == End::Stronger),
+        })
+    };
+    let up = sheet.leading == End::Stronger;
+    [of(up), of(!up)].into_iter().flatten().collect()
+}
+
+/// The first component of the leading end, or of the other where the leading one is empty.
+pub(in crate::takeaway) fn lead(sheet: &Sheet) -> Option<Lead<'_>> {
+    firsts(sheet).into_iter().next()
+}
+
+/// The component that sentences about one component are about: the leading one, unless only the other end's first passes.
+pub(in crate::takeaway) fn told(sheet: &Sheet) -> Option<Lead<'_>> {
+    let firsts = firsts(sheet);
+    firsts
+        .iter()
+        .find(|f| passes(f.component))
+        .or(firsts.first())
+        .copied()
+}
+
+/// How it stands with p where it is not final: "p is not computed yet".
+pub(in crate::takeaway) fn without_p(sheet: &Sheet) -> String {
+    if sheet.recipe.evidence.permutations == 0 {
+        return "no permutations were asked for, so there is no p".into();
+    }
+    let known = lead(sheet).is_some_and(|l| l.component.p.is_some());
+    match &sheet.permutation {
+        Some(test) if known && test.done > 0 => format!(
+            "p rests on {} of {} arrangements",
+            words::grouped(test.done),
+            words::grouped(test.asked)
+        ),
+        _ => "p is not computed yet".into(),
+    }
+}
+
+/// What the windows' lengths alone can do: lengths that differ by more than a factor of 2, or windows shorter than one cycle
+/// of the high-pass.
+pub(in crate::takeaway) fn lengths(sheet: &Sheet) -> Option<String> {
+    let card = sheet.windows.as_ref()?;
+    let (signal, reference) = (card.signal.seconds, card.reference.seconds);
+    let shortest = signal.min(reference);
+    if shortest <= 0.0 {
+        return None;
+    }
+    if signal.max(reference) / shortest > 2.001 {
+        return Some(format!(
+            "signal windows last {}, reference windows {}: the shorter hold less of slow rhythms, so length alone makes the sides differ",
+            words::seconds(signal),
+            words::seconds(reference)
+        ));
+    }
+    let hz = sheet.recipe.filter.high_pass_hz.filter(|hz| *hz > 0.0)?;
+    (shortest * hz < 0.98).then(|| {
+        format!(
+            "windows of {} hold less than one cycle of the high-pass ({}), so only a part of rhythms under {}",
+            words::seconds(shortest),
+            words::hertz(hz),
+            words::hertz(1.0 / shortest)
+        )
+    })
 }
 
 pub(in crate::takeaway) fn passes(component: &Component) -> bool {
@@ -146,13 +256,25 @@ pub(in crate::takeaway) fn smallest_p(sheet: &Sheet) -> Option<f64> {
         .min_by(f64::total_cmp)
 }
 
-/// The ratio that the largest of the permuted ones stays under in 95 of 100 arrangements: less would not pass.
+/// The ratio that the most extreme of the permuted ones keeps within in 95 of 100 arrangements, at the leading end: one nearer
+/// to 1 would not pass.
 pub(in crate::takeaway) fn least_that_passes(sheet: &Sheet) -> Option<f64> {
-    let mut largest = sheet.permutation.as_ref()?.largest.clone();
-    largest.retain(|r| r.is_finite());
-    largest.sort_by(f64::total_cmp);
-    let at = (largest.len() as f64 * (1.0 - LEVEL)).ceil() as usize;
-    largest.get(at.min(largest.len().checked_sub(1)?)).copied()
+    let test = sheet.permutation.as_ref()?;
+    let stronger = lead(sheet).is_none_or(|l| l.stronger);
+    let extremes = if stronger {
+        &test.largest
+    } else {
+        &test.smallest
+    };
+    let mut extremes: Vec<f64> = extremes.iter().copied().filter(|r| r.is_finite()).collect();
+    extremes.sort_by(f64::total_cmp);
+    if !stronger {
+        extremes.reverse();
+    }
+    let at = (extremes.len() as f64 * (1.0 - LEVEL)).ceil() as usize;
+    extremes
+        .get(at.min(extremes.len().checked_sub(1)?))
+        .copied()
 }
 
 /// "trial" in a paired contrast, "window" otherwise.

@@ -9,13 +9,13 @@ pub(super) fn components(sheet: &Sheet) -> Option<Said> {
     let text = match judge::state(sheet) {
         State::Nothing => return None,
         State::TooFew => Line::new("With ").strong(judge::repetitions(sheet)).then(
-            " the components are shown without ratios and p: they cannot be told from chance.",
+            " the components are shown without held-out ratios and p: they cannot be told from chance.",
         ),
         State::Fitted => found(sheet).then(" The held-out ratios are still being computed."),
-        State::HeldOut => found(sheet)
-            .join(leads(sheet))
-            .then(" p is still being computed."),
-        State::Untested => found(sheet).join(leads(sheet)),
+        State::HeldOut | State::Untested => on_their_side(sheet).join(leads(sheet)).then(format!(
+            " {}.",
+            words::capital_unless_p(&judge::without_p(sheet))
+        )),
         State::Tested => counts(sheet).join(leads(sheet)),
     };
     Some((text, components_doubt(sheet)))
@@ -30,6 +30,26 @@ fn found(sheet: &Sheet) -> Line {
         ))
         .strong(words::count(sheet.weaker.len()))
         .then(" weaker.")
+}
+
+/// What is shown, and how many keep to their side of 1 on held-out windows, where some do not.
+fn on_their_side(sheet: &Sheet) -> Line {
+    let measure = sheet.recipe.measure;
+    let keep = |components: &[Component], stronger: bool| {
+        components
+            .iter()
+            .filter(|c| held_out(c, measure).is_some_and(|r| (r > 1.0) == stronger && r != 1.0))
+            .count()
+    };
+    let (up, down) = (keep(&sheet.stronger, true), keep(&sheet.weaker, false));
+    if (up, down) == (sheet.stronger.len(), sheet.weaker.len()) {
+        return found(sheet);
+    }
+    Line::new("Held-out, ")
+        .strong(format!("{up} of {}", sheet.stronger.len()))
+        .then(" stronger and ")
+        .strong(format!("{down} of {}", sheet.weaker.len()))
+        .then(" weaker components keep to their side of 1.")
 }
 
 /// "**Two** components are stronger in signal and **one** is weaker at p ≤ 0.05."
@@ -68,25 +88,13 @@ fn counts(sheet: &Sheet) -> Line {
     }
 }
 
-/// The component that the sentence about measures is about: the first passing one, else the first.
-fn leader(sheet: &Sheet) -> Option<(&Component, String, bool)> {
-    let up = sheet.stronger.first();
-    let down = sheet.weaker.first();
-    match (up, down) {
-        (Some(c), Some(d)) if !judge::passes(c) && judge::passes(d) => {
-            Some((d, "Weaker component 1".into(), false))
-        }
-        (Some(c), _) => Some((c, "Component 1".into(), true)),
-        (None, Some(d)) => Some((d, "Weaker component 1".into(), false)),
-        (None, None) => None,
-    }
-}
-
 fn leads(sheet: &Sheet) -> Line {
-    let Some((component, name, stronger)) = leader(sheet) else {
+    let Some(told) = judge::told(sheet) else {
         return Line::default();
     };
-    match judge::parting(component, stronger) {
+    let component = told.component;
+    let name = words::capital(told.name());
+    match judge::parting(component, told.stronger) {
         Some(Parting::Agree { typical, total }) => Line::new(format!(" {name} has "))
             .strong(words::factor(typical))
             .then(" in a typical held-out trial and ")
@@ -128,7 +136,8 @@ fn components_doubt(sheet: &Sheet) -> Option<Line> {
             "filters always find a direction that fits; only windows they never saw can speak for it.",
         ));
     }
-    if let Some((component, _, stronger)) = leader(sheet) {
+    if let Some(told) = judge::told(sheet) {
+        let component = told.component;
         if let Some((fitted, held)) = judge::overfitted(component, sheet.recipe.measure) {
             return Some(Line::new(format!(
                 "fitted {}, held-out {}: the filters learnt these trials, not the difference. Keep fewer dimensions.",
@@ -136,7 +145,7 @@ fn components_doubt(sheet: &Sheet) -> Option<Line> {
                 words::factor(held)
             )));
         }
-        match judge::parting(component, stronger) {
+        match judge::parting(component, told.stronger) {
             Some(Parting::FewCarry { .. }) => {
                 return Some(Line::new(
                     "what a few large windows carry is an anecdote: look at those windows first, and at the other measure.",

@@ -2,7 +2,7 @@
 use super::judge;
 use super::{Line, Said, words};
 use crate::recipe::{Keep, KeepWord, Measure};
-use crate::sheet::{ChannelCard, ChannelState, Sheet, SideCard};
+use crate::sheet::{ChannelCard, ChannelState, End, Sheet, SideCard, WindowsCard};
 
 fn said(text: impl Into<String>) -> Option<Line> {
     Some(Line::new(text.into()))
@@ -88,11 +88,12 @@ fn recording_doubt(sheet: &Sheet) -> Option<Line> {
     }
     if let Some(first) = card.others.first() {
         let count = card.others.len();
+        let names: Vec<String> = card.others.iter().map(|o| words::name(&o.name)).collect();
         return said(format!(
-            "{} {} listed and not analysed: {}, {}.",
+            "{} {} listed and not analysed: {} ({}).",
             words::count(count),
             words::one(count, "channel is", "channels are"),
-            words::name(&first.name),
+            some(&names),
             words::plain(&first.reason, 100)
         ));
     }
@@ -138,12 +139,11 @@ fn named<'a>(cards: impl Iterator<Item = &'a ChannelCard>) -> Vec<String> {
     cards.map(|c| words::name(&c.name)).collect()
 }
 
-/// Up to three names and how many more.
+/// Up to four names and how many more.
 fn some(names: &[String]) -> String {
-    if names.len() <= 3 {
-        words::list(names)
-    } else {
-        format!("{}, {} and {} more", names[0], names[1], names.len() - 2)
+    match names.len() {
+        0..=4 => words::list(names),
+        n => format!("{} and {} more", names[..4].join(", "), n - 4),
     }
 }
 
@@ -182,6 +182,12 @@ pub(super) fn channels(sheet: &Sheet) -> Option<Said> {
     }
     if !replaced.is_empty() {
         text = text.then(format!("; from their neighbours: {}", some(&replaced)));
+    }
+    let others: Vec<String> = (sheet.recording.others.iter())
+        .map(|o| words::name(&o.name))
+        .collect();
+    if !others.is_empty() {
+        text = text.then(format!("; not analysed: {}", some(&others)));
     }
     text = text.then(".").join(spread(sheet)).join(mains(sheet));
     Some((text, channels_doubt(sheet)))
@@ -231,29 +237,27 @@ fn mains(sheet: &Sheet) -> Line {
     }
 }
 
-fn channels_doubt(sheet: &Sheet) -> Option<Line> {
-    let reason = |c: &ChannelCard| match &c.state {
-        ChannelState::Unusable(reason) => Some((
-            format!("{} is left out", words::name(&c.name)),
-            reason.clone(),
-        )),
-        ChannelState::NeedsALook(reason) => Some((
-            format!("{} needs a look", words::name(&c.name)),
-            reason.clone(),
-        )),
+/// "F8 is the same as F4", "T7 is left out (constant)".
+fn doubt_of(channel: &ChannelCard) -> Option<String> {
+    let name = words::name(&channel.name);
+    match &channel.state {
+        ChannelState::Unusable(why) => {
+            Some(format!("{name} is left out ({})", words::plain(why, 60)))
+        }
+        ChannelState::NeedsALook(why) if why.starts_with("the same as ") => {
+            Some(format!("{name} is {}", words::plain(why, 60)))
+        }
+        ChannelState::NeedsALook(why) => {
+            Some(format!("{name} needs a look ({})", words::plain(why, 60)))
+        }
         _ => None,
-    };
-    let doubts: Vec<(String, String)> = sheet.channels.iter().filter_map(reason).collect();
-    if let Some((what, why)) = doubts.first() {
-        let more = match doubts.len() - 1 {
-            0 => String::new(),
-            n => format!(
-                "; {} more {} like doubts",
-                words::count(n),
-                words::one(n, "has", "have")
-            ),
-        };
-        return said(format!("{what}: {}{more}.", words::plain(why, 90)));
+    }
+}
+
+fn channels_doubt(sheet: &Sheet) -> Option<Line> {
+    let doubts: Vec<String> = sheet.channels.iter().filter_map(doubt_of).collect();
+    if !doubts.is_empty() {
+        return said(format!("{}.", some(&doubts)));
     }
     let strong_mains = sheet
         .channels
@@ -299,15 +303,13 @@ fn channels_doubt(sheet: &Sheet) -> Option<Line> {
 }
 
 /// Reasons for dropped windows, as the cards name them, in words.
-fn dropped(side: &SideCard) -> Vec<String> {
+fn dropped(side: &SideCard, beyond: bool) -> Vec<String> {
     side.dropped
         .iter()
         .filter(|(_, n)| **n > 0)
         .map(|(reason, n)| {
             let verb = match reason.as_str() {
-                "outside" => {
-                    words::one(*n, "leaves the recording", "leave the recording").to_string()
-                }
+                "outside" => outside(*n, beyond).to_string(),
                 "gap" => words::one(*n, "crosses a gap", "cross a gap").to_string(),
                 "partner" => words::one(*n, "lost its partner", "lost their partner").to_string(),
                 "marked" => words::one(
@@ -369,15 +371,71 @@ pub(super) fn windows(sheet: &Sheet) -> Option<Said> {
     Some((text.join(rises(sheet)), windows_doubt(sheet)))
 }
 
-/// " Component 1 rises in **37 of 40** trials." on held-out scores.
+/// " Component 1, held-out, rises in **37 of 40** trials." on held-out scores.
 fn rises(sheet: &Sheet) -> Line {
-    let Some(first) = sheet.stronger.first().filter(|c| !c.trials.is_empty()) else {
+    let Some(lead) = judge::lead(sheet).filter(|l| !l.component.trials.is_empty()) else {
         return Line::default();
     };
-    let up = first.trials.iter().filter(|t| t.log_ratio > 0.0).count();
-    Line::new(" Component 1, held-out, rises in ")
-        .strong(format!("{up} of {}", first.trials.len()))
-        .then(" trials.")
+    let trials = &lead.component.trials;
+    let way = if lead.stronger { 1.0 } else { -1.0 };
+    let with = trials.iter().filter(|t| way * t.log_ratio > 0.0).count();
+    let verb = if lead.stronger { "rises" } else { "falls" };
+    Line::new(format!(
+        " {}, held-out, {verb} in ",
+        words::capital(lead.name())
+    ))
+    .strong(format!("{with} of {}", trials.len()))
+    .then(" trials.")
+}
+
+/// What became of the windows that are not used.
+fn lost(sheet: &Sheet, card: &WindowsCard) -> Option<String> {
+    let beyond = beyond_the_end(sheet, card);
+    let (left, right) = (
+        dropped(&card.signal, beyond),
+        dropped(&card.reference, beyond),
+    );
+    match (left.is_empty(), right.is_empty()) {
+        (true, true) => None,
+        (false, true) => Some(format!("of the signal windows {}", words::list(&left))),
+        (true, false) => Some(format!("of the reference windows {}", words::list(&right))),
+        (false, false) if card.signal.dropped == card.reference.dropped => {
+            let mut sides = card.signal.dropped.iter().filter(|(_, n)| **n > 0);
+            match (sides.next(), sides.next()) {
+                (Some((reason, n)), None) if reason == "outside" => Some(format!(
+                    "{n} {} a side {}",
+                    words::one(*n, "window", "windows"),
+                    outside(*n, beyond)
+                )),
+                _ => Some(format!(
+                    "of the windows on either side {}",
+                    words::list(&left)
+                )),
+            }
+        }
+        (false, false) => Some(format!(
+            "of the signal windows {}; of the reference windows {}",
+            words::list(&left),
+            words::list(&right)
+        )),
+    }
+}
+
+/// Whether every window that leaves the recording does so at its end, as in one whose whole part before a damage was opened.
+fn beyond_the_end(sheet: &Sheet, card: &WindowsCard) -> bool {
+    let mut outside = (card.trials.iter())
+        .filter(|t| t.dropped.as_deref() == Some("outside"))
+        .peekable();
+    let half = sheet.recording.duration_s / 2.0;
+    outside.peek().is_some() && outside.all(|t| t.onset_s > half)
+}
+
+fn outside(n: usize, beyond: bool) -> &'static str {
+    if beyond {
+        words::one(n, "lies beyond the end", "lie beyond the end")
+    } else {
+        words::one(n, "leaves the recording", "leave the recording")
+    }
 }
 
 fn windows_doubt(sheet: &Sheet) -> Option<Line> {
@@ -389,22 +447,15 @@ fn windows_doubt(sheet: &Sheet) -> Option<Line> {
             words::count(judge::LEAST)
         ));
     }
-    let (left, right) = (dropped(&card.signal), dropped(&card.reference));
-    match (left.is_empty(), right.is_empty()) {
-        (true, true) => {}
-        (false, true) => {
-            return said(format!("of the signal windows {}.", words::list(&left)));
+    let lost = lost(sheet, card);
+    match (judge::lengths(sheet), lost) {
+        (Some(lengths), Some(lost)) => {
+            let both = format!("{lengths}; {lost}.");
+            let fits = both.split_whitespace().count() <= 40;
+            return said(if fits { both } else { format!("{lengths}.") });
         }
-        (true, false) => {
-            return said(format!("of the reference windows {}.", words::list(&right)));
-        }
-        (false, false) => {
-            return said(format!(
-                "of the signal windows {}; of the reference windows {}.",
-                words::list(&left),
-                words::list(&right)
-            ));
-        }
+        (Some(one), None) | (None, Some(one)) => return said(format!("{one}.")),
+        (None, None) => {}
     }
     let shortest = card.signal.seconds.min(card.reference.seconds);
     said(format!(
@@ -436,23 +487,30 @@ fn curve(sheet: &Sheet) -> Line {
     }) else {
         return Line::new(".");
     };
+    let stronger = sheet.leading == End::Stronger;
+    let way = if stronger { 1.0 } else { -1.0 };
+    let (of_which, most) = if stronger {
+        ("the held-out ratio", "highest")
+    } else {
+        ("weaker component 1's held-out ratio", "lowest")
+    };
     let best = curve
         .keep
         .iter()
         .zip(&curve.held_out)
         .filter(|(_, r)| r.is_finite())
-        .max_by(|a, b| a.1.total_cmp(b.1));
+        .max_by(|a, b| (way * a.1).total_cmp(&(way * b.1)));
     match best {
         Some((keep, _)) if *keep == card.kept => {
-            Line::new(", and the held-out ratio is highest there: ")
+            Line::new(format!(", and {of_which} is {most} there: "))
                 .strong(words::factor(here))
                 .then(".")
                 .join(plateau(sheet))
         }
-        Some((keep, ratio)) => Line::new(", and the held-out ratio there is ")
+        Some((keep, ratio)) => Line::new(format!(", and {of_which} there is "))
             .strong(words::factor(here))
             .then(format!(
-                "; it is highest at {keep}, {}.",
+                "; it is {most} at {keep}, {}.",
                 words::factor(*ratio)
             ))
             .join(plateau(sheet)),

@@ -1,5 +1,5 @@
 //! The finding in one sentence, or the question while there is none.
-use super::judge::{self, Parting, State};
+use super::judge::{self, Lead, Parting, State};
 use super::{Line, Said, Tone, words};
 use crate::recipe::Measure;
 use crate::sheet::{Component, Sheet};
@@ -10,11 +10,7 @@ pub(super) fn so_far(sheet: &Sheet) -> Option<Said> {
         State::Nothing => question(sheet),
         State::TooFew => too_few(sheet),
         State::Fitted => fitted(sheet),
-        State::HeldOut => finding(sheet, Some("p is still being computed")),
-        State::Untested => finding(
-            sheet,
-            Some("no permutation was asked for, so there is no p"),
-        ),
+        State::HeldOut | State::Untested => finding(sheet, Some(&judge::without_p(sheet))),
         State::Tested => tested(sheet),
     })
 }
@@ -32,6 +28,20 @@ fn opening(sheet: &Sheet) -> Line {
             .then(words::side_of(reference))
             .then(" ")
             .strong(words::name(&reference.event))
+    }
+}
+
+/// "of **buoy**" or "of **buoy** and **swell**", in plain words.
+fn contrast(sheet: &Sheet) -> String {
+    let (signal, reference) = words::windows(&sheet.recipe.contrast);
+    if signal.event == reference.event {
+        format!("of {}", words::name(&signal.event))
+    } else {
+        format!(
+            "of {} and {}",
+            words::name(&signal.event),
+            words::name(&reference.event)
+        )
     }
 }
 
@@ -55,7 +65,10 @@ fn question(sheet: &Sheet) -> Said {
 fn too_few(sheet: &Sheet) -> Said {
     let text = Line::new("Only ")
         .strong(judge::repetitions(sheet))
-        .then(": too few for a held-out ratio or a p, so both are withheld. The maps are a first look, and no ratio is quoted.");
+        .then(format!(
+            " {}: too few for a held-out ratio or a p, so both are withheld. The maps are a first look; a ratio of the fit alone says nothing yet.",
+            contrast(sheet)
+        ));
     let but = Line::new(
         "filters fitted to so few windows always find something; mark at least ten, better forty.",
     );
@@ -73,10 +86,10 @@ fn fitted(sheet: &Sheet) -> Said {
     (text, Some(but))
 }
 
-/// The leading component: the first stronger one, or the first weaker one where there is none stronger.
+/// The leading component in words.
 fn lead(sheet: &Sheet) -> Option<(Line, &Component)> {
-    let component = sheet.stronger.first().or(sheet.weaker.first())?;
-    Some((describe("a component", component), component))
+    let lead = judge::lead(sheet)?;
+    Some((describe("a component", lead.component), lead.component))
 }
 
 /// "a component peaking at **21 Hz**, largest at CP1,".
@@ -101,43 +114,70 @@ pub(super) fn by_measure(measure: Measure) -> &'static str {
     }
 }
 
-/// Says what leads, whatever its p; the doubt falls back to `missing`.
+/// Says what leads, whatever its p, as long as it keeps to its side of 1; the doubt falls back to `missing`.
 fn finding(sheet: &Sheet, missing: Option<&str>) -> Said {
     let measure = sheet.recipe.measure;
-    let stronger = sheet.stronger.first();
-    let weaker = sheet.weaker.first();
-    let show = |c: &&Component| missing.is_some() || judge::passes(c);
-    let up = stronger
-        .filter(show)
-        .and_then(|c| held_out(c, measure).map(|r| (c, r)));
-    let down = weaker
-        .filter(show)
-        .and_then(|c| held_out(c, measure).map(|r| (c, r)));
-    let start = opening(sheet).then(", ");
-    let text = match (up, down) {
-        (Some((c, r)), Some((d, q))) => start
-            .join(describe("a component", c))
-            .then(" has ")
-            .tone(words::times(r), Tone::Signal)
-            .then(format!(" its reference variance {}; ", by_measure(measure)))
-            .join(second(d))
-            .then(if q < 1.0 { " falls to " } else { " reaches " })
-            .tone(words::times(q), Tone::Reference)
-            .then("."),
-        (Some((c, r)), None) => start
-            .join(describe("a component", c))
-            .then(" has ")
-            .tone(words::times(r), Tone::Signal)
-            .then(format!(" its reference variance {}.", by_measure(measure))),
-        (None, Some((d, q))) => start
-            .join(describe("a component", d))
-            .then(if q < 1.0 { " falls to " } else { " reaches " })
-            .tone(words::times(q), Tone::Reference)
-            .then(format!(" its reference variance {}.", by_measure(measure))),
-        (None, None) => return question(sheet),
+    let shown: Vec<(Lead, f64)> = judge::firsts(sheet)
+        .into_iter()
+        .filter_map(|lead| held_out(lead.component, measure).map(|ratio| (lead, ratio)))
+        .filter(|(lead, ratio)| {
+            if missing.is_some() {
+                lead.on_its_side(*ratio)
+            } else {
+                judge::passes(lead.component)
+            }
+        })
+        .collect();
+    let mut text = opening(sheet).then(", ");
+    if shown.is_empty() {
+        return nothing_leads(sheet, text, missing);
+    }
+    for (at, (lead, ratio)) in shown.iter().enumerate() {
+        let what = if at == 0 {
+            describe("a component", lead.component)
+        } else {
+            second(lead.component)
+        };
+        let (verb, tone) = match (lead.stronger, *ratio < 1.0) {
+            (true, _) => (" has ", Tone::Signal),
+            (false, true) => (" falls to ", Tone::Reference),
+            (false, false) => (" reaches ", Tone::Reference),
+        };
+        text = text
+            .then(if at == 0 { "" } else { "; " })
+            .join(what)
+            .then(verb)
+            .tone(words::times(*ratio), tone);
+        if at == 0 {
+            text = text.then(format!(" its reference variance {}", by_measure(measure)));
+        }
+    }
+    let components: Vec<&Component> = shown.iter().map(|(lead, _)| lead.component).collect();
+    (text.then("."), Some(doubt(sheet, &components, missing)))
+}
+
+/// Held-out ratios that all lie on the other side of 1 are no finding, whatever p will be.
+fn nothing_leads(sheet: &Sheet, start: Line, missing: Option<&str>) -> Said {
+    let Some((lead, ratio)) = judge::lead(sheet)
+        .and_then(|lead| held_out(lead.component, sheet.recipe.measure).map(|ratio| (lead, ratio)))
+    else {
+        return question(sheet);
     };
-    let shown: Vec<&Component> = [up, down].into_iter().flatten().map(|(c, _)| c).collect();
-    (text, Some(doubt(sheet, &shown, missing)))
+    let end = if lead.stronger { "stronger" } else { "weaker" };
+    let text = start
+        .then(format!(
+            "nothing stands out so far: what was fitted as {end} has "
+        ))
+        .strong(words::times(ratio))
+        .then(format!(
+            " its reference variance on windows it never saw, {}.",
+            by_measure(sheet.recipe.measure)
+        ));
+    let but = match missing {
+        Some(reason) => format!("{reason}, and that is no proof of sameness."),
+        None => "that is no proof of sameness.".into(),
+    };
+    (text, Some(Line::new(but)))
 }
 
 /// "one at **10.5 Hz**, largest at Oz,".
@@ -181,16 +221,38 @@ fn doubt(sheet: &Sheet, shown: &[&Component], missing: Option<&str>) -> Line {
         }
         _ => {}
     }
-    let intervals: Vec<String> = shown
-        .iter()
-        .filter_map(|c| c.typical.interval.map(words::interval))
-        .collect();
-    let reach = shown.iter().any(|c| judge::reaches_one(c));
     let ends = match (missing, p_values(shown)) {
         (Some(reason), _) => format!("; {reason}"),
         (None, Some(p)) => format!("; {p}"),
         (None, None) => String::new(),
     };
+    let lengths = judge::lengths(sheet);
+    if measure == Measure::Total {
+        return match lengths {
+            Some(lengths) => Line::new(format!("{lengths}{ends}.")),
+            None => total_doubt(sheet, shown, &ends),
+        };
+    }
+    let intervals: Vec<String> = shown
+        .iter()
+        .filter_map(|c| c.typical.interval.map(words::interval))
+        .collect();
+    let reach = shown.iter().any(|c| judge::reaches_one(c));
+    if let Some(lengths) = lengths.filter(|_| !reach) {
+        let long = format!(
+            "{lengths}; 95{}% {} {}, {}{ends}.",
+            words::NB,
+            words::one(intervals.len(), "interval", "intervals"),
+            words::list(&intervals),
+            judge::repetitions(sheet)
+        );
+        let fits = !intervals.is_empty() && long.split_whitespace().count() <= 40;
+        return Line::new(if fits {
+            long
+        } else {
+            format!("{lengths}{ends}.")
+        });
+    }
     if intervals.is_empty() {
         return Line::new(format!(
             "this is one recording with {}{ends}.",
@@ -212,6 +274,36 @@ fn doubt(sheet: &Sheet, shown: &[&Component], missing: Option<&str>) -> Line {
     ))
 }
 
+/// A total ratio has no interval over trials; what is known of its spread is its range over the folds.
+fn total_doubt(sheet: &Sheet, shown: &[&Component], ends: &str) -> Line {
+    let ranges: Vec<[f64; 2]> = shown
+        .iter()
+        .filter_map(|c| {
+            let folds = || c.total.folds.iter().copied().filter(|r| r.is_finite());
+            Some([
+                folds().min_by(f64::total_cmp)?,
+                folds().max_by(f64::total_cmp)?,
+            ])
+        })
+        .collect();
+    if ranges.is_empty() {
+        return Line::new(format!(
+            "this is one recording with {}{ends}.",
+            judge::repetitions(sheet)
+        ));
+    }
+    let reach = ranges.iter().any(|[low, high]| *low <= 1.0 && *high >= 1.0);
+    let said: Vec<String> = ranges.into_iter().map(words::interval).collect();
+    Line::new(format!(
+        "over the {} folds the held-out total {} {}{}, from {} of one recording{ends}.",
+        sheet.recipe.evidence.folds,
+        words::one(said.len(), "ratio ranges over", "ratios range over"),
+        words::list(&said),
+        if reach { ", which takes in 1" } else { "" },
+        judge::repetitions(sheet),
+    ))
+}
+
 fn p_values(shown: &[&Component]) -> Option<String> {
     let values: Vec<String> = shown
         .iter()
@@ -221,8 +313,10 @@ fn p_values(shown: &[&Component]) -> Option<String> {
 }
 
 fn tested(sheet: &Sheet) -> Said {
-    let leads = [sheet.stronger.first(), sheet.weaker.first()];
-    if leads.into_iter().flatten().any(judge::passes) {
+    if judge::firsts(sheet)
+        .iter()
+        .any(|lead| judge::passes(lead.component))
+    {
         return finding(sheet, None);
     }
     let smallest = judge::smallest_p(sheet).map_or(String::new(), words::p_value);
@@ -240,37 +334,37 @@ fn tested(sheet: &Sheet) -> Said {
             .then("), though it does not lead its end.");
         return (text, Some(no_proof(sheet)));
     }
-    if let Some((fitted, held)) = sheet
-        .stronger
-        .first()
-        .and_then(|c| judge::overfitted(c, sheet.recipe.measure))
+    if let Some((fitted, held)) =
+        judge::lead(sheet).and_then(|lead| judge::overfitted(lead.component, sheet.recipe.measure))
     {
-        let text = Line::new("Fitted ")
+        let text = opening(sheet)
+            .then(", nothing differs that new windows show (fitted ")
             .strong(words::times(fitted))
             .then(", held-out ")
             .strong(words::times(held))
-            .then(": the filters learnt these trials, not the difference. No component passes (smallest p = ")
-            .strong(smallest)
-            .then(").");
+            .then(format!(
+                "): the filters learnt these trials, not the difference. No component passes (smallest p = {smallest})."
+            ));
         let but = Line::new(
             "with fewer dimensions or longer windows less can be learnt by heart; that nothing passed is no proof of sameness.",
         );
         return (text, Some(but));
     }
     let text = opening(sheet)
-        .then(", no component passes (smallest p = ")
-        .strong(smallest)
-        .then("): nothing differs that ")
+        .then(", nothing differs that ")
         .strong(judge::repetitions(sheet))
-        .then(" could show.");
+        .then(" could show: no component passes (smallest p = ")
+        .strong(smallest)
+        .then(").");
     (text, Some(no_proof(sheet)))
 }
 
 fn no_proof(sheet: &Sheet) -> Line {
     match judge::least_that_passes(sheet) {
         Some(ratio) => Line::new(format!(
-            "that is no proof of sameness: with {}, a ratio under about {} would not have passed.",
+            "that is no proof of sameness: with {}, a ratio {} about {} would not have passed.",
             judge::repetitions(sheet),
+            if ratio < 1.0 { "above" } else { "under" },
             words::three(ratio)
         )),
         None => Line::new("that is no proof of sameness."),
