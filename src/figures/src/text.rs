@@ -178,12 +178,13 @@ pub(crate) fn decibels(value: f64) -> String {
 
 /// A contrast ratio as a factor: "2.83×", "12.4×", "310×".
 pub(crate) fn factor(ratio: f64) -> String {
-    let decimals = if ratio >= 99.5 {
-        0
-    } else if ratio >= 9.995 {
-        1
-    } else {
-        2
+    // The same digits as in the readings and the tables.
+    let decimals = match ratio {
+        r if r >= 99.95 => 0,
+        r if r >= 9.995 => 1,
+        r if r >= 0.0995 || r <= 0.0 => 2,
+        r if r >= 0.00995 => 3,
+        _ => 4,
     };
     format!("{}×", number(ratio, decimals))
 }

@@ -326,7 +326,7 @@ fn designs(filter: &Filter, rate_hz: f64) -> Result<Vec<Design>> {
             "the high-pass edge is not below the low-pass edge: nothing would pass",
             "lower the high-pass or raise the low-pass",
         )
-        .at("recipe, filter.high_pass_hz")
+        .at("recipe, filter")
         .expected_found(format!("a high-pass below {low} Hz"), format!("{high} Hz")));
     }
     let requests = (filter.high_pass_hz.map(Request::HighPass).into_iter())
