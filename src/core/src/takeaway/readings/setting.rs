@@ -391,6 +391,20 @@ fn rises(sheet: &Sheet) -> Line {
 /// What became of the windows that are not used.
 fn lost(sheet: &Sheet, card: &WindowsCard) -> Option<String> {
     let beyond = beyond_the_end(sheet, card);
+    let total = |side: &SideCard| side.dropped.values().sum::<usize>();
+    let partners = |side: &SideCard| {
+        (side.dropped.iter()).all(|(why, n)| *n == 0 || why == "outside" || why == "partner")
+    };
+    let n = total(&card.signal);
+    let alike = n == total(&card.reference) && partners(&card.signal) && partners(&card.reference);
+    if beyond && alike && card.signal.dropped != card.reference.dropped {
+        return Some(format!(
+            "{n} {} a side {}, or {} partner does",
+            words::one(n, "window", "windows"),
+            outside(n, true),
+            words::one(n, "its", "their")
+        ));
+    }
     let (left, right) = (
         dropped(&card.signal, beyond),
         dropped(&card.reference, beyond),
