@@ -1,7 +1,7 @@
 //! Readings: what they say in each case, how long they are, and that no name becomes markup.
 use super::sample;
 use teasel_core::recipe::{Contrast, Measure};
-use teasel_core::sheet::{End, FoldCard, Sheet};
+use teasel_core::sheet::{ChannelState, End, FoldCard, Sheet};
 use teasel_core::takeaway::{Reading, Section, Span, Tone, readings};
 
 fn text(spans: &[Span]) -> String {
@@ -445,4 +445,23 @@ fn readings_are_short_clean_and_end_in_a_full_stop() {
             }
         }
     }
+}
+
+#[test]
+fn doubtful_channels_are_named_with_their_twins_and_others_by_name() {
+    let mut sheet = sample::sheet();
+    sheet.channels[2].name = "F8".into();
+    sheet.channels[2].state = ChannelState::NeedsALook("the same as F4".into());
+    let other = sheet.recording.others[0].clone();
+    for k in 0..5 {
+        let mut more = other.clone();
+        more.name = format!("Aux {k}");
+        sheet.recording.others.push(more);
+    }
+    let said = said(&sheet, Section::Channels);
+    assert!(said.contains("F8 is the same as F4"), "{said}");
+    assert!(
+        said.contains("not analysed: Airflow, Aux 0, Aux 1, Aux 2 and 2 more"),
+        "{said}"
+    );
 }
