@@ -32,7 +32,7 @@ export function mountChoosing(app, compute) {
     const focused = document.activeElement?.getAttribute("data-event");
     place.replaceChildren(
       make("h3", {}, "Which event holds the activity of interest?"),
-      make("div", { class: "events" }, ...events.map(([name, many]) => card(app, name, many))),
+      make("div", { class: "events" }, ...events.map(([name, many]) => card(app, name, many, isSmall(summary) ? compute : null))),
       make("p", { class: "need" },
         make("button", { type: "button", class: "button main", id: "compute", click: compute }, "Compute"),
         make("span", { class: "quiet" }, `${count(values(summary) / 1e6)} million values: needs about ${size(values(summary) * BYTES_A_VALUE)} of memory. It can be stopped at any time.`)),
@@ -41,8 +41,8 @@ export function mountChoosing(app, compute) {
   });
 }
 
-/** @param {App} app @param {string} name @param {number} many */
-function card(app, name, many) {
+/** @param {App} app @param {string} name @param {number} many @param {(() => void) | null} then what follows the choice, where it costs little */
+function card(app, name, many, then) {
   const { recipe, summary } = now();
   const contrast = recipe?.contrast;
   const onsets = summary?.recording.event_onsets_s[name] ?? [];
@@ -51,10 +51,13 @@ function card(app, name, many) {
   const when = (/** @type {import("./types").EventWindow | undefined} */ w) => (w ? `${seconds(w.from_s)} to ${seconds(w.to_s)} s` : "");
   return make("button", {
     type: "button", class: "event", "data-event": name, "aria-pressed": String(contrast?.signal.event === name),
-    click: () => app.change((next) => {
-      next.contrast.signal.event = name;
-      next.contrast.reference.event = name;
-    }),
+    click: () => {
+      app.change((next) => {
+        next.contrast.signal.event = name;
+        next.contrast.reference.event = name;
+      });
+      then?.();
+    },
   }, make("b", {}, name), make("span", { class: "many" }, String(many)), make("span", { class: "quiet" }, `signal ${when(contrast?.signal)}, reference ${when(contrast?.reference)} from it`),
   makeSvg("svg", { viewBox: "0 0 400 24", preserveAspectRatio: "none", "aria-hidden": "true" }, makeSvg("path", { class: "base", d: "M2 20H398" }), makeSvg("path", { d: ticks })));
 }
