@@ -21,8 +21,9 @@ export function mountFinding(app) {
     find("#so-far").hidden = !sheet;
     for (const { end, words } of ends) {
       const leading = sheet?.[end][0];
+      // Rounded as the readings round: 11.25 to 11.2.
       const name = end === "stronger" ? make("span", { class: "of-signal" }, "component 1") : make("span", { class: "of-reference" }, "weaker 1");
-      words.replaceChildren(name, make("br"), leading?.peak_hz ? `${Number(leading.peak_hz.toPrecision(3))} Hz` : "");
+      words.replaceChildren(name, make("br"), leading?.peak_hz ? `${Number((leading.peak_hz - 1e-9).toFixed(1))} Hz` : "");
     }
     sayStale();
   });

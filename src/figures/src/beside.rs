@@ -29,6 +29,8 @@ pub struct Beside {
     pub rows: Vec<Rival>,
     /// Measure of the ratios: typical or total.
     pub measure: Measure,
+    /// The end that this contrast's own component belongs to.
+    pub end: End,
 }
 
 /// One row.
@@ -87,6 +89,7 @@ impl Beside {
             ],
             rows,
             measure,
+            end,
         })
     }
 
@@ -206,7 +209,7 @@ impl Plot for Beside {
             self.title(pen, &frame, row, y)?;
             let name = Word::new(LABEL, inks.ink);
             let name = if row.own { name.bold() } else { name };
-            let side = row.own.then_some(End::Stronger);
+            let side = row.own.then_some(self.end);
             row.estimate.draw(pen, &frame, y, side, !row.own)?;
             row.estimate.ticks(pen, &frame, y + 9.0)?;
             let at = pen.w - 2.0;
