@@ -84,12 +84,16 @@ export async function openPage(context, { fragment = "", url = pageUrl } = {}) {
  * @param {string[]} states
  */
 export async function reaches(page, states, timeout = 60_000) {
-  await page.waitForFunction(
-    (wanted) => wanted.includes(document.documentElement.dataset.state ?? ""),
+  // Seen and told in one look: read again, the state could be another.
+  const seen = await page.waitForFunction(
+    (wanted) => {
+      const state = document.documentElement.dataset.state ?? "";
+      return wanted.includes(state) ? state : null;
+    },
     states,
     { timeout, polling: 20 },
   );
-  return page.evaluate(() => document.documentElement.dataset.state);
+  return seen.jsonValue();
 }
 
 /**

@@ -107,8 +107,8 @@ test("the dial sets C, and C = 1 is out of reach", async () => {
   await page.keyboard.press("Home");
   assert.equal(await keep.inputValue(), "2");
   assert.equal(await keep.getAttribute("min"), "2");
-  assert.equal(await reaches(page, ["ready", "error"]), "ready");
   await page.waitForFunction(() => /^keep 2 of/.test(document.querySelector('li[data-step="compression"] .answer')?.textContent ?? ""));
+  assert.equal(await reaches(page, ["ready", "error"]), "ready");
   assert.equal((await recipeInLink(page)).keep, 2);
   await page.close();
 });
