@@ -2,7 +2,7 @@
 use teasel_core::recipe::Measure;
 use teasel_tests::calibration::{Noise, binomial_99, rejections};
 
-fn main() {
+fn main() -> std::process::ExitCode {
     let mut arguments = std::env::args().skip(1).map(|a| a.parse::<u64>());
     let count = arguments.next().and_then(Result::ok).unwrap_or(400);
     let permutations = arguments.next().and_then(Result::ok).unwrap_or(199) as usize;
@@ -30,7 +30,5 @@ fn main() {
             }
         }
     }
-    if outside > 0 {
-        std::process::exit(1);
-    }
+    std::process::ExitCode::from(u8::from(outside > 0))
 }

@@ -1119,7 +1119,7 @@ fn partial_series(
 ) -> Vec<f64> {
     let all = prepared.samples.first().map_or(0, Vec::len);
     let rate = prepared.rate_hz;
-    // The course smooths power over 0.2 s: half of that is needed beyond its ends.
+    // Power courses are smoothed over 0.2 s: half of that is needed beyond its ends.
     let beyond = 0.5 * course::SMOOTHING_S;
     let around = onsets.iter().map(|(at, _)| {
         let from = (*at as f64 + (span[0] - beyond) * rate).floor().max(0.0) as usize;

@@ -64,7 +64,7 @@ pub struct Course {
 }
 
 impl Course {
-    /// The course of a component, or, for the windows, only those where there is none yet.
+    /// A component around its event, or, for the windows, only those where there is none yet.
     pub(crate) fn of(
         sheet: &Sheet,
         component: Option<(&teasel_core::sheet::Component, End)>,
