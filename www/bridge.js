@@ -104,7 +104,8 @@ export class Bridge {
   }
 
   /**
-   * Opens a recording with its side files, in place of what is open. Rejects with a Problem.
+   * Opens a recording with its side files, in place of what is open. Rejects with a Problem; where the header already fails, what was open
+   * stays open, and otherwise `holds` says that it did not.
    * @param {File[]} files
    * @param {{ salvage?: boolean }} [options]
    * @returns {Promise<Summary>}
@@ -112,14 +113,34 @@ export class Bridge {
   async open(files, { salvage = false } = {}) {
     const { recording, sides } = sorted(files);
     const small = await Promise.all(sides.map(whole));
-    this.#kept = { ...this.#kept, open: () => this.open(files, { salvage }), recipe: null };
-    return this.#ask("open", recording, small, salvage);
+    return this.#opened(() => this.open(files, { salvage }), this.#ask("open", recording, small, salvage));
   }
 
   /** @param {string} which @returns {Promise<Summary>} */
   async openDemo(which) {
-    this.#kept = { ...this.#kept, open: () => this.openDemo(which), recipe: null };
-    return this.#ask("openDemo", which);
+    return this.#opened(() => this.openDemo(which), this.#ask("openDemo", which));
+  }
+
+  /**
+   * What comes back after a death: the recording that was opened, or the one that the worker died of.
+   * @param {() => Promise<Summary>} open
+   * @param {Promise<Summary>} asked
+   */
+  async #opened(open, asked) {
+    const keep = () => void (this.#kept = { ...this.#kept, open, recipe: null });
+    try {
+      const summary = await asked;
+      keep();
+      return summary;
+    } catch (thrown) {
+      if (/** @type {Problem} */ (thrown).kind === "died") keep();
+      throw thrown;
+    }
+  }
+
+  /** Whether the worker holds a whole recording. @returns {Promise<boolean>} */
+  holds() {
+    return this.#ask("holds");
   }
 
   /** The contrast that the recording suggests, or null. @returns {Promise<{ recipe: Recipe, why: string } | null>} */

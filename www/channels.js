@@ -1,6 +1,6 @@
 /** Channels: filters, reference, and which channels are left out. */
 import { find, make } from "./kit.js";
-import { numberField, select } from "./fields.js";
+import { numberField, select, textField } from "./fields.js";
 import { figureSlot } from "./figure.js";
 import { typed, written } from "./numbers.js";
 import { follow, now } from "./state.js";
@@ -12,9 +12,12 @@ import { follow, now } from "./state.js";
 export function mountChannels(app) {
   const body = find("#channels .body");
   const filter = () => now().recipe?.filter;
-  const hertz = (/** @type {string} */ label, /** @type {"high_pass_hz" | "low_pass_hz" | "resample_hz"} */ key) =>
-    numberField(label, { get: () => filter()?.[key], optional: true, range: [1e-3, 1e6], step: () => 1, empty: "all", set: (value) => app.change((recipe) => void (recipe.filter[key] = value)) });
-  const [high, low, rate] = [hertz("high-pass in hertz", "high_pass_hz"), hertz("low-pass in hertz", "low_pass_hz"), hertz("resample to, in hertz", "resample_hz")];
+  const hertz = (/** @type {string} */ label, /** @type {"high_pass_hz" | "low_pass_hz" | "resample_hz"} */ key, /** @type {(value: number) => string} */ refuses = () => "") =>
+    numberField(label, { get: () => filter()?.[key], optional: true, range: () => [0.001, top(key)], step: () => 1, empty: "all", refuses, set: (value) => app.change((recipe) => void (recipe.filter[key] = value)) });
+  const [high, low, rate] = [
+    hertz("high-pass in hertz", "high_pass_hz", (value) => (value >= (filter()?.low_pass_hz ?? Infinity) ? "must lie below the upper edge" : "")),
+    hertz("low-pass in hertz", "low_pass_hz", (value) => (value <= (filter()?.high_pass_hz ?? -Infinity) ? "must lie above the lower edge" : "")),
+    hertz("resample to, in hertz", "resample_hz")];
   rate.field.placeholder = "as it is";
   const notch = notchField(app);
   const reference = select("reference", (value) => app.change((recipe) => void (recipe.channels.reference = asReference(value))));
@@ -34,6 +37,7 @@ export function mountChannels(app) {
     for (const field of [high, low, rate, notch]) field.show();
     showReference(reference);
     showChips(app, chips);
+    for (const field of body.querySelectorAll(".choice :is(input, select)")) field.toggleAttribute("disabled", !state.recipe);
   });
 }
 
@@ -46,19 +50,21 @@ function pairOf(app) {
   return stems.root;
 }
 
-/** Stop bands, several with spaces between. @param {App} app */
+/** The largest frequency that can be asked for: half the rate, or the rate itself where it is what is asked for. @param {string} key */
+function top(key) {
+  const rate = now().summary?.recording.rate_hz ?? 1e6;
+  return key === "resample_hz" ? rate : rate / 2;
+}
+
+/** Stop bands: several with commas, semicolons or spaces between. @param {App} app */
 function notchField(app) {
-  const get = () => now().recipe?.filter.notch_hz ?? [];
-  const field = make("input", { class: "field", type: "text", autocomplete: "off", "aria-label": "mains and other lines to stop, in hertz", placeholder: "none" });
-  field.addEventListener("change", () => {
-    // A comma between whole numbers of two or three digits parts them ("50,60"); elsewhere it is a decimal mark ("16,7").
-    const parted = field.value.replace(/(?<=\b\d{2,3}),(?=\d{2,3}(?:[,\s;]|$))/g, " ");
-    const values = parted.split(/[\s;]+|, /).filter(Boolean).map(typed);
-    const good = values.every((value) => value !== null && value > 0);
-    field.setAttribute("aria-invalid", String(!good));
-    if (good) app.change((recipe) => void (recipe.filter.notch_hz = values.map(Number)));
+  // A comma between whole numbers of two or three digits parts them ("50,60"), and so does one before a space; elsewhere it is a decimal mark ("16,7").
+  const parts = (/** @type {string} */ text) => text.replace(/(?<=\b\d{2,3}),(?=\d{2,3}(?:[,\s;]|$))/g, " ").split(/,?[\s;]+/).filter(Boolean).map(typed);
+  return textField({ "aria-label": "mains and other lines to stop, in hertz", placeholder: "none" }, {
+    text: () => (now().recipe?.filter.notch_hz ?? []).map(written).join(" "),
+    refuses: (text) => (parts(text).every((value) => value !== null && value > 0 && value < top("notch")) ? "" : `must be numbers above 0 and below ${written(top("notch"))}, such as 50 100`),
+    take: (text) => app.change((recipe) => void (recipe.filter.notch_hz = parts(text).map(Number))),
   });
-  return { field, show: () => void (document.activeElement === field || (field.value = get().map(written).join(" "))) };
 }
 
 /** @param {string} value @returns {Recipe["channels"]["reference"]} */
@@ -89,7 +95,7 @@ function showChips(app, chips) {
     const chip = /** @type {HTMLButtonElement | undefined} */ (chips.children[i]);
     if (!chip) return;
     chip.setAttribute("aria-pressed", String(out.has(name) || state.state === "unusable"));
-    chip.disabled = state.state === "unusable";
+    chip.disabled = state.state === "unusable" || !recipe;
     chip.title = "reason" in state ? state.reason : "";
   });
 }

@@ -72,8 +72,7 @@ function build(app, table, wanted) {
   };
   table.replaceChildren(...ENDS.flatMap(group));
   if (!wanted.includes(open)) open = "";
-  const first = `${now().sheet?.leading ?? "stronger"}-1`;
-  const row = rows.get(open || (wanted.includes(first) ? first : (wanted[0] ?? "")));
+  const row = rows.get(open) ?? rows.get(`${now().sheet?.leading}-1`) ?? rows.get(wanted[0] ?? "");
   if (row) turn(app, row, true);
 }
 
@@ -91,14 +90,18 @@ function makeRow(app, id, table) {
   const row = make("tr", { "data-component": id }, make("th", { scope: "row" }, id.replace(/\D+/, "")), make("td", {}, map), make("td", {}, spectrum), make("td", { class: "axis-cell" }, ratio),
     cells.typical, cells.total, cells.p, cells.stability, make("td", { class: "right act" }, button));
   const made = { id, row, cells, button, slots };
-  button.addEventListener("click", () => {
-    // The row that was pressed stays where it is, though one above it closes.
-    const before = row.getBoundingClientRect().top;
-    turn(app, made, button.getAttribute("aria-expanded") !== "true");
-    scrollBy({ top: row.getBoundingClientRect().top - before, behavior: "instant" });
-  });
+  button.addEventListener("click", () => still(button, () => turn(app, made, button.getAttribute("aria-expanded") !== "true")));
   button.setAttribute("aria-label", `Open ${words}`);
   return made;
+}
+
+/** Keeps what was pressed where it is in the window while rows above it come or go. @param {HTMLElement} pressed @param {() => void} change */
+function still(pressed, change) {
+  const before = pressed.getBoundingClientRect().top;
+  change();
+  const back = () => scrollBy({ top: pressed.getBoundingClientRect().top - before, behavior: "instant" });
+  back();
+  requestAnimationFrame(back);
 }
 
 /** One row open at a time; the focus stays on its button. @param {App} app @param {Row} row @param {boolean} to */

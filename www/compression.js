@@ -18,7 +18,7 @@ export function mountCompression(app) {
   const guides = make("div", { class: "choice guides" });
   const eigenvalues = figureSlot(app, "eigenvalues", { section: "compression", title: "How many dimensions to keep", hint: "", label: "Variance of each dimension, in dB below the largest", adjust });
   const curve = figureSlot(app, "keep", {
-    section: "compression", label: "Fitted and held-out ratio of component 1 against the number of dimensions kept",
+    section: "compression", label: "Fitted and held-out ratio of the leading component against the number of dimensions kept",
     adjust,
     placed: (box) => box && under(keep, box),
   });

@@ -8,19 +8,22 @@ import { follow, now } from "./state.js";
 /** @typedef {import("./types").App} App */
 /** @typedef {import("./types").Recipe} Recipe */
 
-/** @param {App} app */
-export function mountEvidence(app) {
+/** @param {App} app @param {() => void} goOn */
+export function mountEvidence(app, goOn) {
   const body = find("#evidence .body");
-  const beside = figureSlot(app, "beside", { section: "evidence", title: "Beside it", hint: "the same held-out windows", label: "Held-out ratio of component 1 beside principal components and single channels" }).root;
+  const beside = figureSlot(app, "beside", { section: "evidence", title: "Beside it", hint: "the same held-out windows", label: "Held-out ratio of the leading component beside principal components and single channels" }).root;
   const alike = figureSlot(app, "alike", { section: "evidence", title: "If the sides were alike", hint: "", label: "Largest fitted ratio of every permuted arrangement, with the observed ones" }).root;
   const weaker = figureSlot(app, "alike-weaker", { section: "evidence", title: "The same, weaker end", hint: "", label: "Smallest fitted ratio of every permuted arrangement, with the observed ones" }).root;
   const choices = moreChoices(app);
   const nothing = make("p", { class: "quiet small null" });
   const pair = make("div", { class: "pair" }, make("div", {}, beside, nothing, choices.root), make("div", {}, alike, weaker));
   const trials = figureSlot(app, "trial-by-trial", { section: "evidence", title: "Trial by trial", hint: "held-out, in order of time; each trial scored by filters that never saw it", label: "Held-out ratio of every trial" }).root;
-  body.append(pair, trials);
+  const stopped = make("p", { class: "stopped", hidden: true }, "Stopped before the end; what was computed stays.", make("button", { type: "button", class: "button slim", id: "go-on", click: goOn }, "Go on"));
+  body.append(stopped, pair, trials);
   follow((state, before) => {
     if (state.recipe !== before.recipe) choices.show();
+    stopped.hidden = !state.stopped;
+    document.documentElement.toggleAttribute("data-stopped", state.stopped);
     if (state.sheet !== before.sheet) nothing.textContent = permuted(state.sheet);
   });
 }
@@ -36,12 +39,12 @@ function permuted(sheet) {
 /** @param {App} app */
 function moreChoices(app) {
   const whole = (/** @type {string} */ label, /** @type {keyof Recipe["evidence"]} */ key, /** @type {[number, number]} */ range) =>
-    numberField(label, { get: () => now().recipe?.evidence[key], range, step: () => 1, set: (value) => value !== null && app.change((recipe) => void (recipe.evidence[key] = Math.round(value))) });
+    numberField(label, { get: () => now().recipe?.evidence[key], range: () => range, step: () => 1, set: (value) => value !== null && app.change((recipe) => void (recipe.evidence[key] = Math.round(value))) });
   const fields = {
     folds: whole("folds", "folds", [2, 100]), permutations: whole("permutations", "permutations", [0, 1e6]),
     bootstrap: whole("bootstrap samples", "bootstrap", [0, 1e6]), seed: whole("seed", "seed", [0, 2 ** 53]),
-    components: numberField("components at each end", { get: () => now().recipe?.components, range: [1, 20], step: () => 1, set: (value) => value !== null && app.change((recipe) => void (recipe.components = Math.round(value))) }),
-    share: numberField("shrinkage", { get: () => (typeof now().recipe?.shrink === "number" ? Number(now().recipe?.shrink) : null), range: [0, 1], step: () => 0.01, optional: true, empty: "rule", set: (value) => app.change((recipe) => void (recipe.shrink = value ?? "auto")) }),
+    components: numberField("components at each end", { get: () => now().recipe?.components, range: () => [1, 20], step: () => 1, set: (value) => value !== null && app.change((recipe) => void (recipe.components = Math.round(value))) }),
+    share: numberField("shrinkage", { get: () => (typeof now().recipe?.shrink === "number" ? Number(now().recipe?.shrink) : null), range: () => [0, 1], step: () => 0.01, optional: true, empty: "rule", set: (value) => app.change((recipe) => void (recipe.shrink = value ?? "auto")) }),
   };
   const rule = select("rule of shrinkage", (value) => app.change((recipe) => void (recipe.shrink = asShrink(value, recipe.shrink))));
   const together = (/** @type {(Node | string)[]} */ ...parts) => make("span", { class: "together" }, ...parts);

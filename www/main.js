@@ -57,13 +57,15 @@ function join(bridge) {
   mountWindows(app);
   mountCompression(app);
   mountComponents(app);
-  mountEvidence(app);
+  mountEvidence(app, () => doors.goOn());
   mountFinding(app);
   mountTakeaway(app, doors.failed);
   mountChoosing(app, () => {
     unsay("#hint");
+    unsay("#problem");
     put({ phase: "working" });
     work.send();
+    find("#main").focus({ preventScroll: true });
   });
   mountProgress(() => void doors.stop());
   mountRecipeLink(bridge);

@@ -20,11 +20,11 @@ export function probability(p) {
   return p < 0.001 ? p.toPrecision(1) : p.toFixed(3);
 }
 
-/** Seconds with the digits that the sampling grid needs, at least two. @param {number} value */
+/** Seconds with two digits, or three where the sampling grid needs them. @param {number} value */
 export function seconds(value) {
-  const short = value.toFixed(2);
-  const long = value.toFixed(4).replace(/0+$/, "");
-  return minus(Math.abs(Number(short) - value) < 5e-5 ? short : long);
+  const near = Number(value.toFixed(3));
+  if (near === 0) return "0";
+  return minus(Number(near.toFixed(2)) === near ? near.toFixed(2) : near.toFixed(3));
 }
 
 /** Position in a recording: `4:00`. @param {number} value in seconds */

@@ -5,7 +5,7 @@ import { asProblem, unsay } from "./notices.js";
 import { count } from "./numbers.js";
 import { clearLink, recipeAtStart } from "./recipe-link.js";
 import { sayEnded, sayFewEvents, sayNoEvents, sayOpenEnds, sayProblem, sayStopped, sayWaiting, sayWeights } from "./sayings.js";
-import { fitted, forget, now, put } from "./state.js";
+import { now, put } from "./state.js";
 
 /** @typedef {import("./types").App} App */
 /** @typedef {import("./types").Recipe} Recipe */
@@ -13,11 +13,8 @@ import { fitted, forget, now, put } from "./state.js";
 /** @typedef {{ files: File[], salvage: boolean } | { demo: string }} Source */
 /** @typedef {{ recipe: Recipe, link: string | null }} Waiting */
 
-/** Whether two events are equally the most frequent: then the page asks instead of choosing by the alphabet. @param {Summary} summary */
-function tied(summary) {
-  const [first, second] = Object.values(summary.recording.events).sort((a, b) => b - a);
-  return first !== undefined && first === second;
-}
+/** Files that lie beside a recording and are none. */
+const BESIDE = /\.tsv$|_(events|channels|electrodes|coordsystem|eeg)\.(json|csv)$/i;
 
 /**
  * @param {App} app
@@ -30,88 +27,96 @@ export function door({ bridge, change: edit }, compute) {
   };
   /** A recipe, or a link that leaves names to the recording. @type {Waiting | null} */
   let waiting = null;
-  /** @type {Source | null} */
+  /** What was tried last, what is open, and what the worker died of. @type {Source | null} */
   let last = null;
-  /** What is open: a file that cannot be opened does not take its place. @type {Source | null} */
-  let standing = null;
+  /** @type {Source | null} */
+  let good = null;
+  /** @type {Source | null} */
+  let dying = null;
+  /** The phase before reading began. @type {import("./types").Phase} */
+  let before = "empty";
   /** Counts what was opened: an answer that was overtaken is dropped. */
   let turn = 0;
 
   const pick = () => find("#recording").click();
   const takeRecipe = () => download("recipe.json", bridge.recipeText(/** @type {Recipe} */ (now().recipe)), "application/json");
 
-  /** @param {Source} source */
+  /** @param {Source} source @returns {Promise<void>} */
   async function open(source) {
     last = source;
     turn += 1;
     const mine = turn;
     unsay("#problem");
     unsay("#hint");
-    const demo = "demo" in source ? source.demo : null;
-    put({ phase: "reading", progress: { stage: demo ? "making" : "reading", done: 0, of: 1 } });
-    /** @type {Summary} */
-    let summary;
-    try {
-      summary = "demo" in source ? await bridge.openDemo(source.demo) : await bridge.open(source.files, { salvage: source.salvage });
-    } catch (thrown) {
-      if (mine !== turn) return;
-      return standing ? await back(standing, thrown) : lost(thrown);
-    }
-    if (mine !== turn) return;
-    standing = source;
-    try {
-      const size = "files" in source ? (source.files.find(({ name }) => name === summary.recording.name)?.size ?? null) : null;
-      put({ summary, sheet: null, readings: [], figures: [], recipe: null, stale: false, taken: 0, source: { name: summary.recording.name, size, demo } });
-      document.documentElement.removeAttribute("data-sheet");
-      await ask(summary);
-    } catch (thrown) {
-      failed(thrown);
-    }
-  }
-
-  /** Nothing is open any more. @param {unknown} thrown */
-  function lost(thrown) {
-    standing = null;
-    forget();
-    document.documentElement.removeAttribute("data-sheet");
-    failed(thrown);
-  }
-
-  /** Opens again what was open before a file that cannot be, with its choices. @param {Source} source @param {unknown} thrown */
-  async function back(source, thrown) {
-    const { recipe } = now();
+    const { phase } = now();
+    if (phase !== "reading") before = phase;
+    put({ phase: "reading", progress: { stage: "demo" in source ? "making" : "reading", done: 0, of: 1 } });
     try {
       const summary = "demo" in source ? await bridge.openDemo(source.demo) : await bridge.open(source.files, { salvage: source.salvage });
-      put({ summary, phase: recipe ? "working" : "choosing", progress: null });
-      const problem = asProblem(thrown);
-      sayProblem(problem, waysOn(problem));
-      if (recipe) compute();
-    } catch {
-      lost(thrown);
+      if (mine === turn) await arrive(source, summary);
+    } catch (thrown) {
+      if (mine === turn) await keep(thrown, source).catch(failed);
     }
   }
 
-  /** A recipe that came along, or a proposal; then the work begins, at once where it is small. @param {Summary} summary */
+  /** Another recording is open: nothing of the one before holds. @param {Source} source @param {Summary} summary */
+  async function arrive(source, summary) {
+    good = source;
+    const size = "files" in source ? (source.files.find(({ name }) => name === summary.recording.name)?.size ?? null) : null;
+    put({ summary, sheet: null, readings: [], figures: [], recipe: null, stale: false, stopped: false, finished: null, taken: 0, source: { name: summary.recording.name, size, demo: "demo" in source ? source.demo : null } });
+    document.documentElement.removeAttribute("data-sheet");
+    await ask(summary).catch(failed);
+  }
+
+  /** A recording could not be opened, or its reading was stopped: what was open before stays, with its choices and its sheet. @param {unknown} thrown @param {Source} source */
+  async function keep(thrown, source) {
+    const problem = asProblem(thrown);
+    if (problem.kind === "died") return void (dying = source);
+    const { summary, recipe } = now();
+    if (problem.kind !== "stopped") failed(thrown);
+    if (!summary || !good) return void (problem.kind === "stopped" && put({ phase: "empty", progress: null }));
+    const mine = turn;
+    const holds = await bridge.holds();
+    if (!holds) await ("demo" in good ? bridge.openDemo(good.demo) : bridge.open(good.files, { salvage: good.salvage }));
+    if (mine !== turn) return;
+    if (before === "choosing") return put({ phase: "choosing", progress: null });
+    if (recipe && (!holds || before === "working")) compute();
+    else if (problem.kind === "stopped") put({ phase: before === "empty" ? "ready" : before, progress: null });
+  }
+
+  /**
+   * A recipe that came along, or a proposal; then the work begins, at once where it is small and no event had to be guessed.
+   * @param {Summary} summary
+   */
   async function ask(summary) {
+    const { events } = summary.recording;
     const proposal = await bridge.propose();
-    const brings = Boolean(standing && "demo" in standing);
-    const brought = waiting?.link ? bridge.linkComplete(waiting.link, summary.recording.events) : waiting;
-    const recipe = brought?.recipe ?? proposal?.recipe ?? unproposed(bridge, summary);
-    if (brought && "notes" in brought && brought.notes.length) sayOpenEnds(brought.notes);
+    const link = waiting?.link ? bridge.linkComplete(waiting.link, events) : null;
+    const guessed = waiting?.link ? bridge.linkDecode(waiting.link).events !== null && Object.keys(events).length > 1 : !waiting && !isDemo() && isTied(events);
+    const recipe = link?.recipe ?? waiting?.recipe ?? proposal?.recipe ?? unproposed(bridge, summary);
+    if (link?.notes.length) sayOpenEnds(link.notes);
     if (!recipe) {
       put({ phase: "choosing", progress: null });
       return sayNoEvents(pick);
     }
-    put({ recipe, why: waiting ? "" : (proposal?.why ?? ""), progress: null, phase: waiting || (proposal && isSmall(summary) && (brings || !tied(summary))) ? "working" : "choosing" });
+    const atOnce = !guessed && (waiting || (proposal && isSmall(summary)));
+    put({ recipe, why: waiting || guessed ? "" : (proposal?.why ?? ""), progress: null, phase: atOnce ? "working" : "choosing" });
     if (!waiting && !proposal) sayFewEvents();
     waiting = null;
     if (now().phase === "working") compute();
     find("#main").focus({ preventScroll: true });
   }
 
+  /** A demo brings its own question. */
+  function isDemo() {
+    return now().source?.demo !== null;
+  }
+
   /** @param {unknown} thrown */
   function failed(thrown) {
     const problem = asProblem(thrown);
+    // A death is said by who hears of it.
+    if (problem.kind === "died") return;
     if (problem.kind === "stopped") return put({ phase: now().summary ? "ready" : "empty", progress: null });
     put({ phase: "error", progress: null });
     sayProblem(problem, waysOn(problem));
@@ -120,17 +125,35 @@ export function door({ bridge, change: edit }, compute) {
   /** @param {import("./types").Problem} problem @returns {import("./notices.js").Way[]} */
   function waysOn({ kind, salvage }) {
     const files = last && "files" in last ? last.files : null;
-    const { sheet, summary } = now();
-    const before = fitted(sheet) && JSON.stringify(sheet?.recipe) !== JSON.stringify(now().recipe) ? sheet?.recipe : null;
+    const { finished, summary, source } = now();
     const ofChoices = kind === "contrast" || kind === "recipe";
     const ways = [
       salvage && files && { label: `Open the ${count(salvage.records)} whole records`, main: true, act: () => void open({ files, salvage: true }) },
-      ofChoices && before && { label: "Back to the choices before", main: true, act: () => change(before) },
-      kind === "recipe" && !before && { label: "Open another recipe…", act: () => find("#recipe-file").click() },
+      ofChoices && finished && { label: "Back to the choices before", main: true, act: () => back(finished) },
+      kind === "recipe" && !finished && { label: "Open another recipe…", act: () => find("#recipe-file").click() },
       ofChoices && summary && { label: "Propose afresh", act: () => void afresh() },
       !ofChoices && { label: "Choose another recording…", act: pick },
+      !ofChoices && summary && { label: `Stay with ${source?.name ?? "this one"}`, act: stay },
     ];
     return ways.flatMap((way) => way || []);
+  }
+
+  /** The last choices that came to their end; the focus goes where they differ from those that failed. @param {Recipe} finished */
+  function back(finished) {
+    const failed = now().recipe;
+    change(finished);
+    const differ = (/** @type {(keyof Recipe)[]} */ ...keys) => keys.some((key) => JSON.stringify(failed?.[key]) !== JSON.stringify(finished[key]));
+    const section = differ("contrast") ? "windows" : differ("channels", "filter") ? "channels" : differ("keep") ? "compression" : differ("evidence", "shrink", "components") ? "evidence" : "windows";
+    const fields = document.querySelectorAll(`#${section} .body :is(input, select, summary)`);
+    const first = [...fields].find((field) => field.getClientRects().length > 0);
+    if (first instanceof HTMLElement) first.focus();
+  }
+
+  /** Puts a file's problem aside. */
+  function stay() {
+    unsay("#problem");
+    if (now().phase === "error") put({ phase: now().recipe ? "ready" : "choosing" });
+    find("#main").focus({ preventScroll: true });
   }
 
   async function afresh() {
@@ -154,6 +177,9 @@ export function door({ bridge, change: edit }, compute) {
     const { recipe } = now();
     try {
       const summary = await bridge.revive();
+      const source = dying;
+      dying = null;
+      if (summary && source) return await arrive(source, summary);
       put({ phase: summary ? "working" : "empty", progress: null });
       if (summary && recipe) change(recipe);
     } catch (thrown) {
@@ -166,7 +192,7 @@ export function door({ bridge, change: edit }, compute) {
     /** @param {File[]} files */
     async files(files) {
       const own = files.length === 1 && files[0]?.name.endsWith(".json") ? files[0] : null;
-      await (own ? this.recipe(own) : open({ files, salvage: false }));
+      await (own ? this.recipe(own) : open({ files: withRecording(files), salvage: false }));
     },
     /** @param {string} which */
     demo: (which) => open({ demo: which }),
@@ -195,17 +221,28 @@ export function door({ bridge, change: edit }, compute) {
       }
     },
     async stop() {
-      const { summary, recipe } = now();
+      const { phase, recipe } = now();
       await bridge.stop();
-      put({ phase: !summary ? "empty" : recipe ? "ready" : "choosing", progress: null });
-      if (summary && recipe) sayStopped(goOn);
+      // Reading that is stopped is answered where it was asked for.
+      if (phase !== "working") return;
+      put({ phase: "ready", progress: null, stopped: true });
+      if (recipe) sayStopped(goOn);
     },
+    goOn,
     died() {
       put({ phase: "error", progress: null });
       const { recipe, summary } = now();
       sayEnded(() => void again(), summary && recipe ? takeRecipe : null);
     },
   };
+
+  /** Side files alone belong to the recording that is open. @param {File[]} files */
+  function withRecording(files) {
+    if (!good || !("files" in good) || !now().summary || !files.every(({ name }) => BESIDE.test(name))) return files;
+    const kind = (/** @type {File} */ { name }) => (BESIDE.test(name) ? (/_([a-z]+)\.\w+$/i.exec(name)?.[1] ?? "events").toLowerCase() : null);
+    const replaced = files.map(kind);
+    return [...good.files.filter((file) => kind(file) === null || !replaced.includes(kind(file))), ...files];
+  }
 
   /** @param {Waiting} recipe @param {string} title */
   function wait(recipe, title) {
@@ -216,6 +253,12 @@ export function door({ bridge, change: edit }, compute) {
       unsay("#hint");
     });
   }
+}
+
+/** Whether two events are equally the most frequent. @param {Record<string, number>} events */
+function isTied(events) {
+  const [most, next] = Object.values(events).sort((a, b) => b - a);
+  return most !== undefined && most === next;
 }
 
 /**

@@ -1,8 +1,9 @@
 /** Progress: what is at work, how far it is, and a way to stop it. Short work is never mentioned. */
 import { afterRest, find } from "./kit.js";
+import { hasResults } from "./leading.js";
 import { count } from "./numbers.js";
 import { speak } from "./readings.js";
-import { fitted, follow, now } from "./state.js";
+import { follow, now } from "./state.js";
 
 /** Work that ends sooner than this goes unmentioned. */
 const [PATIENCE_MS, READING_PATIENCE_MS] = [450, 180];
@@ -65,15 +66,16 @@ function rest(part) {
   const spent = (performance.now() - stageBegan) / 1000;
   const left = part > 3 && spent > 0.8 ? Math.ceil((spent * (100 - part)) / part) : 0;
   const time = left > 90 ? `About ${Math.ceil(left / 60)} min left.` : left ? `About ${left} s left.` : "";
-  const moving = /permut/i.test(stage) && fitted(now().sheet) ? " The ratios above are final; only p is still moving." : "";
+  const moving = /permut/i.test(stage) && hasResults(now().sheet) ? " The ratios above are final; only p is still moving." : "";
   return `${time}${moving}`.trim();
 }
 
 function atRest() {
-  const { phase, readings, stale } = now();
+  const { phase, readings, recipe, stale } = now();
   if (phase === "ready" && !stale) {
     const said = readings.find(({ section }) => section === "so-far");
     return said ? said.text.map(({ text }) => text).join("") : "Done.";
   }
-  return phase === "choosing" ? "The recording is open. Choose an event." : "";
+  if (phase !== "choosing") return "";
+  return recipe ? "The recording is open. Choose an event." : "The recording is open. It holds no events: choose its table of events.";
 }

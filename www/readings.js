@@ -1,5 +1,6 @@
 /** Readings beside the figures. A changed reading appears only after the dials have rested, and then it is spoken once. */
 import { afterRest, find } from "./kit.js";
+import { count, duration } from "./numbers.js";
 import { plainText, writeSpans } from "./spans.js";
 import { follow, now } from "./state.js";
 
@@ -10,8 +11,8 @@ const written = new Map();
 export function mountReadings() {
   const later = afterRest(writeAll, REST_MS);
   follow((state, before) => {
-    if (state.readings === before.readings) return;
-    if (state.readings.length === 0) clear();
+    if (state.readings === before.readings && state.summary === before.summary) return;
+    if (state.readings.length === 0) clear(), introduce();
     else if (before.readings.length === 0) writeAll();
     else later();
   });
@@ -31,6 +32,18 @@ function clear() {
     writeBut(place, null);
   }
   written.clear();
+}
+
+/** What is known of a recording before anything is computed. */
+function introduce() {
+  const { summary } = now();
+  if (!summary) return;
+  const { recording, channels } = summary;
+  const events = Object.entries(recording.events);
+  const doubt = channels.filter(({ state }) => state.state === "needs-a-look" || state.state === "unusable").map(({ name }) => name);
+  const labels = events.length ? `events: ${events.slice(0, 6).map(([name, many]) => `${name} ${count(many)}`).join(", ")}${events.length > 6 ? ", …" : ""}` : "no events";
+  find("#reading-recording").textContent = `${channels.length} channels at ${Number(recording.rate_hz.toFixed(3))} Hz over ${duration(recording.duration_s)}; ${labels}.`;
+  find("#reading-channels").textContent = doubt.length ? `Of ${channels.length} channels ${doubt.length} need a look: ${doubt.slice(0, 8).join(", ")}${doubt.length > 8 ? ", …" : ""}.` : `All ${channels.length} channels can be used.`;
 }
 
 function writeAll() {

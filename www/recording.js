@@ -33,10 +33,10 @@ export function mountRecording(app) {
     placed: (box) => ((below = box), lay(frame, leads)),
   });
   overview.place.append(frame);
-  overview.root.append(leads, traces.root);
+  overview.root.append(leads);
   const all = make("input", { type: "checkbox", change: () => ((every = all.checked), traces.refresh()) });
   const which = make("div", { class: "choice" }, make("label", { class: "tick" }, all, make("span", { class: "all-word" })));
-  body.append(overview.root, which);
+  body.append(overview.root, traces.root, which);
 
   const move = (/** @type {number} */ to) => {
     const next = Math.round(Math.max(0, Math.min(span() - SECONDS, to)) * 100) / 100;

@@ -13,8 +13,8 @@ export function sayNoEvents(pick) {
   const strong = (/** @type {string} */ text) => make("b", {}, text);
   say("#hint", {
     title: "This recording holds no events",
-    text: ["This version compares windows around events. Drop the recording again together with its table of events: a tab-separated file with the columns ", strong("onset"), ", ", strong("duration"), " and ", strong("trial_type"), ", named as the recording and ending in ", strong("events.tsv"), "."],
-    ways: [{ label: "Choose the recording and its events…", act: pick, main: true }],
+    text: ["This version compares windows around events. Drop its table of events here; the recording stays open. It is a tab-separated file with the columns ", strong("onset"), ", ", strong("duration"), " and ", strong("trial_type"), ", named as the recording and ending in ", strong("events.tsv"), "."],
+    ways: [{ label: "Choose the table of events…", act: pick, main: true }],
   });
 }
 
@@ -45,9 +45,15 @@ export function sayWaiting(title, aside) {
   });
 }
 
+/** The way on stays in the evidence. */
+function leave() {
+  unsay("#hint");
+  document.getElementById("go-on")?.focus({ preventScroll: true });
+}
+
 /** @param {() => void} goOn */
 export function sayStopped(goOn) {
-  say("#hint", { title: "Stopped", text: ["What was computed before stays on the sheet."], ways: [{ label: "Go on", main: true, act: goOn }, { ...CLOSE, label: "Leave it" }] });
+  say("#hint", { title: "Stopped", text: ["What was computed before stays on the sheet."], ways: [{ label: "Go on", main: true, act: goOn }, { label: "Leave it", act: leave }] });
 }
 
 /** The worker ended. @param {() => void} again @param {(() => void) | null} takeRecipe */

@@ -6,7 +6,7 @@
 /** @type {State} */
 const EMPTY = {
   phase: "empty", source: null, summary: null, recipe: null, why: "", sheet: null, readings: [], figures: [], drawn: {},
-  generation: 0, stale: false, progress: null, taken: 0,
+  generation: 0, stale: false, stopped: false, finished: null, progress: null, taken: 0,
 };
 
 /** @type {State} */
@@ -24,21 +24,6 @@ export function put(patch) {
   const before = state;
   state = { ...state, ...patch };
   for (const listener of listeners) listener(state, before);
-}
-
-/** Whether a sheet holds a result: the fit brings the compression with it, whichever ends it found. @param {import("./types").Sheet | null | undefined} sheet */
-export function fitted(sheet) {
-  return Boolean(sheet?.compression);
-}
-
-/** The first component of the end that leads, or undefined. @param {import("./types").Sheet | null | undefined} sheet */
-export function leadingComponent(sheet) {
-  return sheet ? sheet[sheet.leading ?? "stronger"][0] : undefined;
-}
-
-/** Forgets the recording and everything made from it. */
-export function forget() {
-  put({ ...EMPTY });
 }
 
 /** Calls `listener` after every change. @param {Listener} listener */

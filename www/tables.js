@@ -44,17 +44,18 @@ export function numbersOf(app, section, figures) {
 /** @param {Numbered} slot @param {Table} table */
 function block({ name, plan }, table) {
   const save = make("button", { type: "button", class: "button slim bare", click: () => download(`${name}.csv`, csv(table), "text/csv") }, "Save table");
-  const row = (/** @type {"th" | "td"} */ tag, /** @type {string[]} */ cells) => make("tr", {}, ...cells.map((text) => make(tag, tag === "th" ? { scope: "col" } : {}, short(text))));
+  const row = (/** @type {"th" | "td"} */ tag, /** @type {string[]} */ cells) => make("tr", {}, ...cells.map((text) => make(tag, tag === "th" ? { scope: "col" } : { class: /[a-z]{3}/i.test(text) ? "words" : "number" }, short(text))));
   const more = table.rows.length - ROWS_SHOWN;
   return [
     make("h4", {}, make("span", {}, plan.title ?? plan.label), save),
-    make("table", {}, make("thead", {}, row("th", table.columns.map((name) => name.replace(/_/g, " ")))), make("tbody", {}, ...table.rows.slice(0, ROWS_SHOWN).map((cells) => row("td", cells)))),
+    make("div", { class: "wide" }, make("table", {}, make("thead", {}, row("th", table.columns.map((name) => name.replace(/_/g, " ")))), make("tbody", {}, ...table.rows.slice(0, ROWS_SHOWN).map((cells) => row("td", cells))))),
     ...(more > 0 ? [make("p", { class: "quiet" }, `${more} more rows in the saved table.`)] : []),
   ];
 }
 
-/** Numbers in the margin with four digits; the saved table has them all. @param {string} text */
+/** Numbers in the margin with four digits; the saved table has them all. @param {string} text @returns {string} */
 function short(text) {
+  if (/^\S+([ ,;]+\S+)+$/.test(text) && text.split(/[ ,;]+/).every((part) => Number.isFinite(Number(part)))) return text.split(/[ ,;]+/).map(short).join(" ");
   const value = Number(text);
   if (text === "" || !Number.isFinite(value) || Number.isInteger(value)) return text.replace(/^-/, "−");
   return String(Number(value.toPrecision(4))).replace(/^-/, "−");

@@ -1,9 +1,10 @@
 /** Take-away: files, the link, the methods paragraph. */
 import { download, find } from "./kit.js";
 import { figuresOf } from "./figure.js";
+import { hasResults } from "./leading.js";
 import { size } from "./numbers.js";
 import { pngBytes } from "./save-figure.js";
-import { fitted, follow, now, put } from "./state.js";
+import { follow, now, put } from "./state.js";
 
 /** @typedef {import("./types").App} App */
 
@@ -27,7 +28,7 @@ export function mountTakeaway(app, failed) {
     if (state.recipe !== before.recipe) showLink(app);
     if (state.sheet !== before.sheet) for (const place of document.querySelectorAll("[data-size]")) place.textContent = "";
     if (state.phase !== before.phase && state.phase === "ready") void showMethods(app);
-    const whole = fitted(state.sheet) && !state.stale;
+    const whole = hasResults(state.sheet) && !state.stale;
     for (const button of document.querySelectorAll("button[data-takeaway]")) {
       const needs = button.getAttribute("data-takeaway") === "recipe" ? Boolean(state.recipe) : whole;
       /** @type {HTMLButtonElement} */ (button).disabled = !needs;

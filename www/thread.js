@@ -1,8 +1,9 @@
 /** The thread: seven knots, each with its step's answer, and between them the fibres as far as they are teased apart. */
 import { find, makeSvg } from "./kit.js";
 import { chance, smooth } from "./curve.js";
+import { hasResults, leadingOf } from "./leading.js";
 import { clock, factor } from "./numbers.js";
-import { fitted, follow, leadingComponent } from "./state.js";
+import { follow } from "./state.js";
 
 /** @typedef {import("./types").State} State */
 /** @typedef {import("./types").StepName} StepName */
@@ -28,12 +29,12 @@ export function mountThread() {
 const known = new Map();
 
 /** While the evidence is on its way again, a step keeps what it said before. @param {StepName} step @param {Answer} said @param {State} state */
-function remembered(step, said, { phase, sheet }) {
+function remembered(step, said, { phase, sheet, stopped }) {
   if (!sheet) known.clear();
   const open = said.answer === WITHHELD || (step === "components" && said.answer.includes("+"));
   const before = known.get(step);
   if (open && phase === "working" && before) return { ...said, knot: said.knot === "work" ? "work" : before.knot, answer: before.answer };
-  if (phase === "ready") known.set(step, said);
+  if (phase === "ready" && !stopped) known.set(step, said);
   return said;
 }
 
@@ -65,7 +66,7 @@ function answer(step, state) {
 }
 
 /** @param {StepName} step @param {State} state @returns {Answer} */
-function settled(step, { summary, sheet, phase, recipe, taken }) {
+function settled(step, { summary, sheet, phase, recipe, stopped, taken }) {
   /** @type {Answer} */
   const waiting = { knot: "wait", answer: "" };
   if (step === "recording") {
@@ -83,24 +84,26 @@ function settled(step, { summary, sheet, phase, recipe, taken }) {
   }
   if (step === "windows" && phase === "choosing" && !recipe) return { knot: "look", answer: "no events" };
   if (step === "windows" && phase === "choosing") return { knot: "now", answer: "pick an event" };
+  if (step === "evidence" && stopped) return { knot: "look", answer: "stopped" };
   if (!sheet) return waiting;
   if (step === "windows" && sheet.windows) {
     const { signal, reference } = sheet.windows;
     return { knot: Math.min(signal.used, reference.used) < 10 ? "look" : "done", answer: `${signal.used} + ${reference.used}` };
   }
   if (step === "compression" && sheet.compression) return { knot: "done", answer: `keep ${sheet.compression.kept} of ${sheet.compression.rank}` };
-  if (step === "components" && fitted(sheet)) {
+  if (step === "components" && hasResults(sheet)) {
+    if (!sheet.stronger.length && !sheet.weaker.length) return { knot: "look", answer: "none" };
     const { up, down, tested } = passing(sheet);
     return { knot: "done", answer: tested ? `${up} up, ${down} down` : `${sheet.stronger.length} + ${sheet.weaker.length}` };
   }
-  if (step === "evidence" && fitted(sheet)) return evidence(sheet);
-  if (step === "take-away" && fitted(sheet)) return taken ? { knot: "done", answer: taken === 1 ? "1 file taken" : `${taken} files taken` } : { knot: "wait", answer: "not taken yet" };
+  if (step === "evidence" && hasResults(sheet)) return evidence(sheet);
+  if (step === "take-away" && hasResults(sheet)) return taken ? { knot: "done", answer: taken === 1 ? "1 file taken" : `${taken} files taken` } : { knot: "wait", answer: "not taken yet" };
   return waiting;
 }
 
 /** @param {import("./types").Sheet} sheet @returns {Answer} */
 function evidence(sheet) {
-  const leading = leadingComponent(sheet);
+  const leading = leadingOf(sheet);
   const measure = sheet.recipe.measure === "total" ? leading?.total : leading?.typical;
   if (measure?.held_out === null || measure?.held_out === undefined) return { knot: sheet.windows ? "look" : "wait", answer: WITHHELD };
   return { knot: "done", answer: `held-out ${factor(measure.held_out)}` };
@@ -117,7 +120,7 @@ export function passing(sheet) {
 function strands(state) {
   const many = (/** @type {number} */ n) => Array.from({ length: n }, () => "fibre");
   const kept = state?.sheet?.compression ? Math.max(2, Math.min(6, Math.round(state.sheet.compression.kept / 3))) : 0;
-  const apart = state?.sheet && fitted(state.sheet) ? passing(state.sheet) : null;
+  const apart = state?.sheet && hasResults(state.sheet) ? passing(state.sheet) : null;
   const ends = apart ? [...Array(apart.up).fill("up"), ...Array(apart.down).fill("down")] : [];
   const out = ends.length ? ends : apart ? ["fibre"] : [];
   return [state?.summary ? many(11) : [], state?.sheet?.preparation ? many(9) : [], state?.sheet?.windows ? many(8) : [], many(kept), out, apart?.tested ? out : []];
@@ -129,7 +132,7 @@ let woven = "";
 function weave(state) {
   const plan = strands(state);
   const pattern = JSON.stringify(plan);
-  const open = state?.phase === "working" && state.sheet && !passing(state.sheet).tested && woven.includes("up");
+  const open = state?.phase === "working" && state.sheet && !passing(state.sheet).tested && /"(up|down)"/.test(woven);
   if (pattern === woven || open) return;
   woven = pattern;
   const random = chance(3);

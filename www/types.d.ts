@@ -81,6 +81,7 @@ export interface Sheet {
   compression: { kept: number; rank: number; share: number; guides: Record<string, number> } | null;
   curve: { keep: number[]; fitted: number[]; held_out: number[]; log_se: number[] } | null;
   shrinkage: number | null;
+  /** The end that departs farther from 1: curve, folds and comparators are about its first component. */
   leading: "stronger" | "weaker";
   stronger: Component[];
   weaker: Component[];
@@ -162,6 +163,10 @@ export interface State {
   generation: number;
   /** The sheet answers an older recipe than `recipe`. */
   stale: boolean;
+  /** The work was stopped before its end, and not gone on with. */
+  stopped: boolean;
+  /** The last choices of this recording whose work came to its end. */
+  finished: Recipe | null;
   /** The stage at work, null at rest. */
   progress: Progress | null;
   /** Counts everything that was taken away from this sheet. */
@@ -181,6 +186,8 @@ export interface Bridge {
   openDemo(which: string): Promise<Summary>;
   propose(): Promise<{ recipe: Recipe; why: string } | null>;
   setRecipe(recipe: Recipe): Promise<number | null>;
+  /** Whether the worker still holds a whole recording. */
+  holds(): Promise<boolean>;
   stop(): Promise<unknown>;
   resume(): Promise<unknown>;
   revive(): Promise<Summary | null>;

@@ -25,8 +25,23 @@ export function mountWindows(app) {
   const event = picks("Event of the signal windows", "signal-event", (value) => takeEvent(app, value));
   const events = select("event of the signal windows", (value) => takeEvent(app, value));
   const against = select("event of the reference windows", (value) => app.change(({ contrast }) => void (contrast.reference.event = value)));
+  /** @type {ReturnType<typeof numberField>[]} */
   const fields = /** @type {[Side, End][]} */ ([["signal", "from_s"], ["signal", "to_s"], ["reference", "from_s"], ["reference", "to_s"]]).map(([side, end]) =>
-    numberField(`${side} ${end === "from_s" ? "from" : "to"}, in seconds from the event`, { get: () => window(side)?.[end], step: sample, write: seconds, refuse: (value) => order(side, end, value), set: (value) => value !== null && app.change(({ contrast }) => void (contrast[side][end] = onGrid(value))) }));
+    numberField(`${side} ${end === "from_s" ? "from" : "to"}, in seconds from the event`, {
+      get: () => window(side)?.[end], step: sample, write: seconds,
+      refuses: (value) => unordered(side, end, value, partner(side, end)),
+      set: (value) => value !== null && fix(app, side, end, value, partner(side, end)),
+    }));
+  /** What is typed into the field of a window's other end, in force or not. @param {Side} side @param {End} end @returns {number} */
+  const partner = (side, end) => {
+    const other = fields[(side === "signal" ? 0 : 2) + (end === "from_s" ? 1 : 0)];
+    return other?.pending() ?? window(side)?.[end === "from_s" ? "to_s" : "from_s"] ?? 0;
+  };
+  // An end that was mended lets the other in, if that was refused only because of it.
+  fields.forEach(({ field, pending }, i) => field.addEventListener("change", () => {
+    const other = fields[i ^ 1];
+    if (pending() === null && other && other.pending() !== null) other.commit();
+  }));
   const why = make("span", { class: "quiet small" });
   body.append(
     make("div", { class: "choice" }, event.root, events.root,
@@ -104,15 +119,7 @@ function onGrid(t) {
   return Number((Math.round(t / sample()) * sample()).toFixed(6));
 }
 
-/** Why a typed end cannot be taken: unlike a dragged edge it pushes nothing along. @param {Side} side @param {End} end @param {number} to */
-function order(side, end, to) {
-  const other = window(side)?.[end === "from_s" ? "to_s" : "from_s"] ?? 0;
-  const length = end === "from_s" ? other - to : to - other;
-  if (length <= 0) return end === "from_s" ? `The window ends at ${seconds(other)} s: it must begin before. Change its end first.` : `The window begins at ${seconds(other)} s: it must end after. Change its beginning first.`;
-  return length < (LEAST - 0.5) * sample() ? "A window holds at least three samples." : "";
-}
-
-/** An edge that meets the other pushes it along. @param {App} app @param {Side} side @param {End} end @param {number} to */
+/** An edge that is dragged, or moved by the arrow keys, pushes the other along when they meet. @param {App} app @param {Side} side @param {End} end @param {number} to */
 function move(app, side, end, to) {
   const value = onGrid(to);
   if (value === window(side)?.[end]) return;
@@ -122,6 +129,19 @@ function move(app, side, end, to) {
     if (end === "from_s") contrast[side].to_s = Math.max(contrast[side].to_s, onGrid(value + least));
     else contrast[side].from_s = Math.min(contrast[side].from_s, onGrid(value - least));
   });
+}
+
+/** Why an end that was typed cannot be: a window that is typed is never pushed along. @param {Side} side @param {End} end @param {number} to @param {number} other */
+function unordered(side, end, to, other) {
+  const [from, until] = (end === "from_s" ? [to, other] : [other, to]).map(onGrid);
+  if (Number(from) >= Number(until)) return "must end after it begins";
+  return Number(until) - Number(from) < (LEAST - 0.5) * sample() ? `must last ${seconds(LEAST * sample())} s or longer` : "";
+}
+
+/** An end as it was typed, with the other end as it stands in its field. @param {App} app @param {Side} side @param {End} end @param {number} to @param {number} other */
+function fix(app, side, end, to, other) {
+  const next = end === "from_s" ? { from_s: onGrid(to), to_s: onGrid(other) } : { from_s: onGrid(other), to_s: onGrid(to) };
+  app.change(({ contrast }) => void Object.assign(contrast[side], next));
 }
 
 /** The reference stays with the event that the signal had, unless both had the same. @param {App} app @param {string} event */

@@ -1,8 +1,9 @@
 /** Sends the choices to the worker, and takes in the sheets that answer them. */
 import { refreshFigures, settleFigures } from "./figure.js";
 import { eachFrame } from "./kit.js";
+import { hasResults } from "./leading.js";
 import { unsay } from "./notices.js";
-import { fitted, now, put } from "./state.js";
+import { now, put } from "./state.js";
 
 /** @typedef {import("./types").Bridge} Bridge */
 /** @typedef {import("./types").Recipe} Recipe */
@@ -23,7 +24,7 @@ export function mountWork(bridge, trouble) {
   const send = eachFrame(() => {
     const { recipe, phase } = now();
     if (!recipe || phase === "choosing") return;
-    put({ phase: "working" });
+    put({ phase: "working", stopped: false });
     sent += 1;
     const mine = sent;
     bridge.setRecipe(recipe).then(
@@ -44,7 +45,7 @@ export function mountWork(bridge, trouble) {
       edit(next);
       expected = Infinity;
       const asProposed = JSON.stringify(next.contrast) === JSON.stringify(recipe.contrast);
-      put({ recipe: next, stale: fitted(sheet), taken: 0, why: asProposed ? now().why : "" });
+      put({ recipe: next, stale: hasResults(sheet), taken: 0, why: asProposed ? now().why : "" });
       unsay("#problem");
       send();
     },
@@ -57,7 +58,7 @@ function listen(bridge, trouble) {
   bridge.on("sheet", take);
   bridge.on("finished", ({ generation }) => {
     if (generation < expected) return;
-    put({ phase: "ready", progress: null, stale: false });
+    put({ phase: "ready", progress: null, stale: false, stopped: false, finished: now().recipe });
     refreshFigures();
     void settleFigures();
   });
@@ -67,10 +68,10 @@ function listen(bridge, trouble) {
 
 /** @param {SheetNews} news */
 function take({ sheet, readings, figures, drawn, generation }) {
-  const whole = fitted(sheet);
+  const whole = hasResults(sheet);
   const told = whole || !now().stale ? { readings } : {};
   put({ sheet: carriedOver(sheet, now().sheet), ...told, figures, drawn: drawn ?? {}, generation, stale: now().stale && !(whole && generation >= expected) });
-  document.documentElement.toggleAttribute("data-sheet", fitted(now().sheet));
+  document.documentElement.toggleAttribute("data-sheet", hasResults(now().sheet));
   refreshFigures();
 }
 
@@ -81,8 +82,7 @@ function take({ sheet, readings, figures, drawn, generation }) {
  * @returns {Sheet}
  */
 function carriedOver(sheet, before) {
-  if (!before || fitted(sheet) || !fitted(before)) return sheet;
-  // Whose numbers these are is said by their own recipe.
+  if (!before || hasResults(sheet) || !hasResults(before)) return sheet;
   const { recipe, leading, stronger, weaker, compare, permutation, folds, curve } = before;
   const { preparation, windows, compression } = sheet;
   return {

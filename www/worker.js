@@ -68,9 +68,16 @@ const LATER = Symbol("later");
 /** @type {Record<string, (id: number, ...args: any[]) => unknown>} */
 const calls = {
   open(id, /** @type {File} */ file, /** @type {{ name: string, bytes: Uint8Array }[]} */ sides, /** @type {boolean} */ salvage) {
+    const next = new Session();
+    try {
+      next.begin(file.name, file.size, reader(file), sides, salvage);
+    } catch (error) {
+      // What was open stays open.
+      next.free();
+      throw error;
+    }
     forget();
-    session = new Session();
-    session.begin(file.name, file.size, reader(file), sides, salvage);
+    session = next;
     opening = id;
     work("reading");
     return LATER;
@@ -98,6 +105,7 @@ const calls = {
     if (session?.sheet()) work("computing");
     return true;
   },
+  holds: () => session !== null && phase !== "reading",
   watch(_id, /** @type {string[]} */ names) {
     watched = names;
     return true;

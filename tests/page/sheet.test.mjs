@@ -2,6 +2,7 @@
 import assert from "node:assert/strict";
 import { after, before, test } from "node:test";
 import { launch, openPage, reaches } from "./harness.mjs";
+import { noise } from "./recordings.mjs";
 
 /** @type {Awaited<ReturnType<typeof launch>>} */
 let browser;
@@ -136,6 +137,130 @@ test("a broken file is a problem in words, and the page goes on", async () => {
   await page.click('button[data-demo="watch"]');
   assert.equal(await reaches(page, ["ready"], 120_000), "ready");
   assert.ok(await problem.isHidden());
+  await page.close();
+});
+
+test("a broken file leaves the sheet that is open in place", async () => {
+  const { page } = await demo();
+  const evidence = await page.locator('li[data-step="evidence"] .answer').textContent();
+  await page.setInputFiles("#recording", { name: "note.txt", mimeType: "", buffer: Buffer.from("no recording, but words that are long enough to be looked at") });
+  assert.equal(await reaches(page, ["error"]), "error");
+  assert.ok(await page.locator("#problem").isVisible());
+  assert.equal(await page.locator('li[data-step="evidence"] .answer').textContent(), evidence);
+  await page.getByRole("button", { name: /^Stay with / }).click();
+  assert.equal(await reaches(page, ["ready"]), "ready");
+  await page.locator("#keep").focus();
+  await page.keyboard.press("Home");
+  await page.waitForFunction(() => /^keep 2 of/.test(document.querySelector('li[data-step="compression"] .answer')?.textContent ?? ""));
+  assert.equal(await reaches(page, ["ready", "error"]), "ready");
+  await page.close();
+});
+
+test("an end of a window that is typed never pushes the other", async () => {
+  const { page } = await demo();
+  const from = page.getByRole("textbox", { name: /^signal from/ });
+  const to = page.getByRole("textbox", { name: /^signal to/ });
+  const [start, end] = [await from.inputValue(), await to.inputValue()];
+  await from.fill("3");
+  await from.press("Enter");
+  assert.equal(await from.getAttribute("aria-invalid"), "true");
+  assert.equal(await from.inputValue(), "3");
+  assert.equal(await to.inputValue(), end);
+  assert.ok(await page.getByText("must end after it begins").isVisible());
+  assert.equal(await page.evaluate(() => document.documentElement.dataset.state), "ready");
+  await to.fill("4");
+  await to.press("Enter");
+  assert.equal(await from.getAttribute("aria-invalid"), "false");
+  const { signal } = (await recipeInLink(page)).contrast;
+  assert.deepEqual([signal.from_s, signal.to_s], [3, 4]);
+  await from.fill("x");
+  await from.press("Enter");
+  await from.press("Escape");
+  assert.equal(await from.inputValue(), "3.00");
+  assert.notEqual(start, "3.00");
+  await page.close();
+});
+
+test("a sheet that arrives leaves alone what is being typed", async () => {
+  const { page } = await demo();
+  await page.locator("#keep").focus();
+  await page.keyboard.press("Home");
+  const field = page.getByRole("textbox", { name: /^signal to/ });
+  await field.fill("0.7");
+  await page.waitForFunction(() => /^keep 2 of/.test(document.querySelector('li[data-step="compression"] .answer')?.textContent ?? ""));
+  assert.equal(await reaches(page, ["ready", "error"]), "ready");
+  assert.equal(await field.inputValue(), "0.7");
+  await page.close();
+});
+
+test("several lines are stopped, and what is no number is refused", async () => {
+  const { page } = await demo();
+  const notch = page.getByRole("textbox", { name: /^mains/ });
+  await notch.fill("50; abc");
+  await notch.press("Enter");
+  assert.equal(await notch.getAttribute("aria-invalid"), "true");
+  await notch.fill("50,100");
+  await notch.press("Enter");
+  assert.deepEqual((await recipeInLink(page)).filter.notch_hz, [50, 100]);
+  await page.close();
+});
+
+test("work that was stopped can be gone on with from the evidence", async () => {
+  const { page } = await demo();
+  await page.locator("#evidence details.more summary").click();
+  const permutations = page.getByRole("textbox", { name: "permutations" });
+  await permutations.fill("60000");
+  await permutations.press("Enter");
+  await page.locator("#stop").click();
+  await page.getByRole("button", { name: "Leave it" }).click();
+  assert.equal(await page.locator('li[data-step="evidence"]').getAttribute("data-knot"), "look");
+  assert.equal(await page.locator('li[data-step="evidence"] .answer').textContent(), "stopped");
+  await page.locator("#go-on").click();
+  assert.equal(await reaches(page, ["working"]), "working");
+  await page.close();
+});
+
+test("a row that is opened stays where it was pressed", async () => {
+  const { page } = await demo();
+  const place = (/** @type {string} */ id) => page.locator(`tr[data-component="${id}"] button`);
+  await place("stronger-1").evaluate((button) => button.getAttribute("aria-expanded") === "true" || /** @type {HTMLElement} */ (button).click());
+  await place("weaker-1").evaluate((button) => button.scrollIntoView({ block: "center", behavior: "instant" }));
+  await page.waitForTimeout(1200);
+  const before = await place("weaker-1").boundingBox();
+  await page.keyboard.press("Tab");
+  await place("weaker-1").evaluate((button) => (/** @type {HTMLElement} */ (button).focus({ preventScroll: true }), /** @type {HTMLElement} */ (button).click()));
+  await page.waitForTimeout(500);
+  const after = await place("weaker-1").boundingBox();
+  assert.ok(before && after && Math.abs(after.y - before.y) < 2, `moved by ${(after?.y ?? 0) - (before?.y ?? 0)} px`);
+  assert.ok(await place("weaker-1").evaluate((button) => button === document.activeElement));
+  await page.close();
+});
+
+/** @param {string} name @param {string | Buffer} content */
+const file = (name, content) => ({ name, mimeType: "", buffer: Buffer.from(content) });
+const everyOther = Array.from({ length: 27 }, (_, i) => 2 * i + 2.5);
+
+test("a table of events alone joins the recording that is open", async () => {
+  const { page } = await openPage(browser.context);
+  await page.setInputFiles("#recording", file("quiet.edf", noise([])));
+  assert.equal(await reaches(page, ["choosing", "error"]), "choosing");
+  assert.match((await page.locator("#reading-recording").textContent()) ?? "", /^4 channels at 100 Hz .* no events\.$/);
+  assert.ok(await page.locator(".chips button").first().isDisabled());
+  await page.setInputFiles("#recording", file("quiet_events.tsv", `onset\tduration\ttrial_type\n${everyOther.map((onset) => `${onset}\t0\tbeep\n`).join("")}`));
+  assert.equal(await reaches(page, ["ready", "error"]), "ready");
+  assert.match((await page.locator('li[data-step="windows"] .answer').textContent()) ?? "", /^27 \+ 27$/);
+  await page.close();
+});
+
+test("events that are equally frequent are asked about", async () => {
+  const { page } = await openPage(browser.context);
+  const events = everyOther.flatMap((onset) => [{ onset, label: "left" }, { onset: onset + 1, label: "right" }]);
+  await page.setInputFiles("#recording", file("tied.edf", noise(events)));
+  assert.equal(await reaches(page, ["choosing", "ready", "error"]), "choosing");
+  await page.locator('[data-event="right"]').click();
+  assert.equal(await reaches(page, ["working", "ready"]).then(Boolean), true);
+  assert.equal(await reaches(page, ["ready", "error"]), "ready");
+  assert.match((await page.locator("#reading-so-far").textContent()) ?? "", /right/);
   await page.close();
 });
 

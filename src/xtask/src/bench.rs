@@ -9,7 +9,7 @@ const RECIPE: &str = "tests/bench/recipe.json";
 
 /// Prints the table.
 pub fn table() -> Result<()> {
-    let page = bundle::build()?;
+    let page = bundle::build(crate::wasm::Finish::Shipped)?;
     check::browser()?;
     let python = python::ready()?;
     let recording = house::target("bench")?.join("long.edf");

@@ -37,9 +37,9 @@ pub fn page_path() -> PathBuf {
 }
 
 /// Builds everything that is stale and writes `dist/teasel.html` and `dist/teasel.html.sha256`.
-pub fn build() -> Result<Page> {
+pub fn build(finish: wasm::Finish) -> Result<Page> {
     node::ready()?;
-    let module = wasm::build()?;
+    let module = wasm::build(finish)?;
     let www = house::root().join("www");
     let html = assemble(
         &house::read_text(house::root().join("index.html"))?,

@@ -1,4 +1,5 @@
 //! Everything that must hold before a change is kept: cheapest first, and the first failure ends it.
+use crate::wasm::Finish;
 use crate::{bundle, demo, house, node, packages, python, shell};
 use anyhow::{Context, Result};
 use std::ffi::OsString;
@@ -10,14 +11,14 @@ use std::{env, fs};
 const BROWSERS: &[&str] = &["chromium", "chromium-browser", "google-chrome"];
 
 /// Runs all checks, or the page's alone.
-pub fn test(page_only: bool) -> Result<()> {
+pub fn test(page_only: bool, finish: Finish) -> Result<()> {
     let started = Instant::now();
     if !page_only {
         step("formatting", format)?;
         step("lints", lint)?;
     }
     step("build of the page", || {
-        bundle::build().map(|page| bundle::say_size(&page))
+        bundle::build(finish).map(|page| bundle::say_size(&page))
     })?;
     step("types of the scripts", types)?;
     if !page_only {

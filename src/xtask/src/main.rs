@@ -30,6 +30,7 @@ mod wasm;
 use anyhow::Result;
 use clap::{Parser, Subcommand};
 use std::process::ExitCode;
+use wasm::Finish;
 
 /// Build, serve, test, bench and demo for Teasel.
 #[derive(Parser)]
@@ -42,18 +43,28 @@ struct Cli {
 #[derive(Subcommand)]
 enum Task {
     /// Write dist/teasel.html, the whole page in one file
-    Build,
+    Build {
+        /// Built in a fraction of the time, larger and slower
+        #[arg(long)]
+        draft: bool,
+    },
     /// Serve the page on 127.0.0.1, rebuilding when a source changes
     Serve {
         /// Port to listen on; 0 takes a free one
         #[arg(long, default_value_t = 8177)]
         port: u16,
+        /// Built in a fraction of the time, larger and slower
+        #[arg(long)]
+        draft: bool,
     },
     /// Formatting, lints, Rust tests, type check, page tests in headless Chromium
     Test {
         /// Only the page tests, on a fresh build
         #[arg(long)]
         page: bool,
+        /// On a page built in a fraction of the time, larger and slower
+        #[arg(long)]
+        draft: bool,
     },
     /// Print the budget table, beside the same steps in Python
     Bench {
@@ -72,9 +83,11 @@ enum Task {
 
 fn main() -> ExitCode {
     let done = match Cli::parse().task {
-        Task::Build => bundle::build().map(|page| bundle::say_size(&page)),
-        Task::Serve { port } => serve::serve(port),
-        Task::Test { page } => check::test(page),
+        Task::Build { draft } => {
+            bundle::build(Finish::draft(draft)).map(|page| bundle::say_size(&page))
+        }
+        Task::Serve { port, draft } => serve::serve(port, Finish::draft(draft)),
+        Task::Test { page, draft } => check::test(page, Finish::draft(draft)),
         Task::Bench { null, recordings } => {
             if null {
                 bench::null(recordings)

@@ -72,8 +72,8 @@ fn target_installed() -> bool {
 }
 
 impl Toolchain {
-    /// `cargo build --profile page` for the page's crate, without what the outer cargo left in the environment.
-    pub fn cargo_build(self) -> Result<Command> {
+    /// `cargo build --profile …` for the page's crate, without what the outer cargo left in the environment.
+    pub fn cargo_build(self, profile: &str) -> Result<Command> {
         let mut command = match self {
             Toolchain::Own => {
                 let mut command =
@@ -93,7 +93,7 @@ impl Toolchain {
             }
         };
         command
-            .args(["build", "--quiet", "--profile", "page", "--target", TARGET])
+            .args(["build", "--quiet", "--profile", profile, "--target", TARGET])
             .args(["--package", "teasel-page", "--target-dir"])
             .arg(house::target("wasm")?)
             .current_dir(house::root())

@@ -23,18 +23,59 @@ pub fn folder() -> Result<PathBuf> {
     house::target("page")
 }
 
+/// How much work goes into the module.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Finish {
+    /// As it is given away: small and fast.
+    Shipped,
+    /// While one works on it: built in a fraction of the time.
+    Draft,
+}
+
+impl Finish {
+    /// Draft or not.
+    pub fn draft(draft: bool) -> Self {
+        if draft {
+            Finish::Draft
+        } else {
+            Finish::Shipped
+        }
+    }
+
+    fn profile(self) -> &'static str {
+        match self {
+            Finish::Shipped => "page",
+            Finish::Draft => "draft",
+        }
+    }
+}
+
 /// Compiles, binds, shrinks and packs; gives the gzipped module that goes into the page.
-pub fn build() -> Result<Vec<u8>> {
+pub fn build(finish: Finish) -> Result<Vec<u8>> {
     let chosen = toolchain::choose()?;
     let started = Instant::now();
     println!("Compiling the page's module.");
-    shell::run("compiling the module", &mut chosen.cargo_build()?)?;
+    shell::run(
+        "compiling the module",
+        &mut chosen.cargo_build(finish.profile())?,
+    )?;
     let compiled = house::target("wasm")?
         .join(toolchain::TARGET)
-        .join("page/teasel_page.wasm");
+        .join(finish.profile())
+        .join("teasel_page.wasm");
     let bound = bind(&compiled)?;
-    let module = shrink(&bound)?;
-    let packed = pack(&module)?;
+    let (module, packed) = match finish {
+        Finish::Shipped => {
+            let module = shrink(&bound)?;
+            let packed = pack(&module)?;
+            (module, packed)
+        }
+        Finish::Draft => {
+            let module = house::read(&bound)?;
+            let packed = crate::bundle::gzip(&module);
+            (module, packed)
+        }
+    };
     println!(
         "Module: {} KB as compiled, {} KB as shipped, {} KB packed; {:.0} s.",
         bound.metadata()?.len() / 1000,
