@@ -104,15 +104,8 @@ pub fn null_recipe(measure: Measure, permutations: usize) -> Recipe {
         to_s,
     };
     Recipe {
-        teasel_recipe: 1,
-        channels: Default::default(),
-        filter: Default::default(),
         keep: Keep::Number(6),
         measure,
-        contrast: Contrast::Windows {
-            signal: window(0.0, 0.8),
-            reference: window(-0.8, 0.0),
-        },
         shrink: Shrink::Word(ShrinkWord::Auto),
         components: 1,
         evidence: Evidence {
@@ -121,6 +114,10 @@ pub fn null_recipe(measure: Measure, permutations: usize) -> Recipe {
             bootstrap: 0,
             seed: 1,
         },
+        ..Recipe::asking(Contrast::Windows {
+            signal: window(0.0, 0.8),
+            reference: window(-0.8, 0.0),
+        })
     }
 }
 

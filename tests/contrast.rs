@@ -201,15 +201,8 @@ fn pipeline_recipe(measure: Measure, permutations: usize) -> Recipe {
         to_s,
     };
     Recipe {
-        teasel_recipe: 1,
-        channels: Default::default(),
-        filter: Default::default(),
         keep: Keep::Number(7),
         measure,
-        contrast: Contrast::Windows {
-            signal: window(0.1, 0.8),
-            reference: window(-0.9, -0.2),
-        },
         shrink: Shrink::Number(if measure == Measure::Typical {
             0.1
         } else {
@@ -222,6 +215,10 @@ fn pipeline_recipe(measure: Measure, permutations: usize) -> Recipe {
             bootstrap: 200,
             seed: 1,
         },
+        ..Recipe::asking(Contrast::Windows {
+            signal: window(0.1, 0.8),
+            reference: window(-0.9, -0.2),
+        })
     }
 }
 

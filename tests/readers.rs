@@ -37,7 +37,14 @@ fn read(name: &str, bytes: &[u8]) -> Result<Recording> {
 
 fn read_with(name: &str, bytes: &[u8], sides: Vec<SideFile>, salvage: bool) -> Result<Recording> {
     let source = MemorySource::new(name, bytes.to_vec());
-    open(Box::new(source), sides, OpenOptions { salvage })
+    open(
+        Box::new(source),
+        sides,
+        OpenOptions {
+            salvage,
+            ..OpenOptions::default()
+        },
+    )
 }
 
 /// Opens bytes that must be a recording, under their name and under one that says nothing: the content decides.

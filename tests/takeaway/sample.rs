@@ -8,7 +8,6 @@ pub const CHANNELS: [&str; 8] = ["Fp1", "Fz", "C3", "CP1", "C4", "Pz", "Oz", "T7
 
 pub fn recipe() -> Recipe {
     Recipe {
-        teasel_recipe: 1,
         channels: Channels {
             leave_out: vec!["T7".into()],
             interpolate: vec![],
@@ -22,7 +21,10 @@ pub fn recipe() -> Recipe {
         },
         keep: Keep::Number(5),
         measure: Measure::Typical,
-        contrast: Contrast::Windows {
+        shrink: Shrink::Word(ShrinkWord::Auto),
+        components: 2,
+        evidence: Evidence::default(),
+        ..Recipe::asking(Contrast::Windows {
             signal: EventWindow {
                 event: "buoy".into(),
                 from_s: 0.2,
@@ -33,10 +35,7 @@ pub fn recipe() -> Recipe {
                 from_s: -1.0,
                 to_s: -0.2,
             },
-        },
-        shrink: Shrink::Word(ShrinkWord::Auto),
-        components: 2,
-        evidence: Evidence::default(),
+        })
     }
 }
 

@@ -115,6 +115,7 @@ pub fn recording(path: &Path, given: &Given, meter: &mut Meter) -> Result<Record
     };
     let options = OpenOptions {
         salvage: given.salvage,
+        ..OpenOptions::default()
     };
     let sides = sides(path, given)?;
     let hint = |mut problem: Problem| {

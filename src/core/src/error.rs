@@ -16,6 +16,8 @@ pub enum Kind {
     Unsupported,
     /// Opening it would take more memory than there is.
     TooLarge,
+    /// The file does not carry something that only the user knows: its sampling rate, its unit, which axis is time.
+    NeedsAnswer,
     /// A recipe or weights file that breaks its rules.
     Recipe,
     /// The recording and the choices do not fit together (no windows, C above the rank …).
@@ -47,6 +49,22 @@ pub struct Problem {
     pub advice: String,
     /// How many whole records before the damage can still be opened, and their seconds.
     pub salvage: Option<Salvage>,
+    /// What has to be told before the file can be opened.
+    #[serde(default)]
+    pub asks: Vec<Ask>,
+}
+
+/// A question that a file leaves open; the answer goes into the recipe's `recording` under `key`.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+pub struct Ask {
+    /// Key of [`crate::recipe::Given`]: `rate_hz`, `unit`, `axes`, `variable`.
+    pub key: String,
+    /// The question, with what the file shows: "The array holds 32 × 15000 values: which axis is time?".
+    pub question: String,
+    /// Answers to choose from; empty where it is a number or free text.
+    pub options: Vec<String>,
+    /// The likeliest answer, where there is one.
+    pub guess: Option<String>,
 }
 
 /// The part of a damaged file that can still be opened.
@@ -71,12 +89,19 @@ impl Problem {
             found: None,
             advice: advice.into(),
             salvage: None,
+            asks: Vec::new(),
         }
     }
     /// Names the file.
     #[must_use]
     pub fn in_file(mut self, file: impl Into<String>) -> Self {
         self.file.get_or_insert_with(|| file.into());
+        self
+    }
+    /// Adds what has to be told.
+    #[must_use]
+    pub fn asking(mut self, asks: Vec<Ask>) -> Self {
+        self.asks = asks;
         self
     }
     /// Names the place.

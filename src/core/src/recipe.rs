@@ -13,6 +13,9 @@ use serde::{Deserialize, Serialize};
 pub struct Recipe {
     /// Version of the schema: 1.
     pub teasel_recipe: u32,
+    /// What the recording's own file does not say.
+    #[serde(default, skip_serializing_if = "Given::is_empty")]
+    pub recording: Given,
     /// Which channels, against which reference.
     #[serde(default)]
     pub channels: Channels,
@@ -38,8 +41,65 @@ pub struct Recipe {
     pub evidence: Evidence,
 }
 
+impl Recipe {
+    /// Everything else at its default.
+    pub fn asking(contrast: Contrast) -> Self {
+        Recipe {
+            teasel_recipe: 1,
+            recording: Given::default(),
+            channels: Channels::default(),
+            filter: Filter::default(),
+            keep: Keep::default(),
+            measure: Measure::default(),
+            contrast,
+            shrink: Shrink::default(),
+            components: four(),
+            evidence: Evidence::default(),
+        }
+    }
+}
+
 fn four() -> usize {
     4
+}
+
+/// What a general format does not carry, told by the user.
+#[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields, default)]
+pub struct Given {
+    /// Sampling rate, or frames a second.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub rate_hz: Option<f64>,
+    /// Unit of the samples: `uV`, `mV`, `V`, `fT`, `counts`, …
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub unit: Option<String>,
+    /// What the axes of an array are, outermost first.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub axes: Option<Axes>,
+    /// Which of several named arrays holds the samples.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub variable: Option<String>,
+}
+
+impl Given {
+    /// Whether nothing is told.
+    pub fn is_empty(&self) -> bool {
+        *self == Given::default()
+    }
+}
+
+/// What the axes of an array are, outermost first.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+pub enum Axes {
+    /// One row a channel.
+    #[serde(rename = "channels,samples")]
+    ChannelsSamples,
+    /// One row a sample.
+    #[serde(rename = "samples,channels")]
+    SamplesChannels,
+    /// One picture after the other.
+    #[serde(rename = "frames,height,width")]
+    FramesHeightWidth,
 }
 
 /// Which channels, against which reference.

@@ -2,9 +2,7 @@
 use std::collections::BTreeMap;
 use std::f64::consts::{PI, TAU};
 use teasel_core::describe::positions::standard;
-use teasel_core::recipe::{
-    Channels, Contrast, EventWindow, Evidence, Filter, Keep, Measure, Recipe, Shrink,
-};
+use teasel_core::recipe::{Contrast, EventWindow, Evidence, Filter, Keep, Measure, Recipe, Shrink};
 use teasel_core::recording::{Channel, Event, Recording, Stretch};
 use teasel_core::sheet::*;
 
@@ -84,8 +82,6 @@ pub fn sheet(channels: usize, trials: usize) -> Sheet {
     Sheet {
         recording: recording_card(&onsets, &swell, &mut chance),
         recipe: Recipe {
-            teasel_recipe: 1,
-            channels: Channels::default(),
             filter: Filter {
                 high_pass_hz: Some(3.0),
                 low_pass_hz: Some(40.0),
@@ -94,13 +90,13 @@ pub fn sheet(channels: usize, trials: usize) -> Sheet {
             },
             keep: Keep::Number(12),
             measure: Measure::Typical,
-            contrast: Contrast::Windows {
-                signal: window(0.2, 1.0),
-                reference: window(-1.0, -0.2),
-            },
             shrink: Shrink::default(),
             components: 4,
             evidence: Evidence::default(),
+            ..Recipe::asking(Contrast::Windows {
+                signal: window(0.2, 1.0),
+                reference: window(-1.0, -0.2),
+            })
         },
         preparation: Some(PreparationCard {
             rate_hz: 250.0,

@@ -81,7 +81,14 @@ impl Session {
             })
             .collect();
         let source = JsSource::new(name, bytes, read);
-        let opening = Opening::begin(Box::new(source), sides, OpenOptions { salvage });
+        let opening = Opening::begin(
+            Box::new(source),
+            sides,
+            OpenOptions {
+                salvage,
+                ..OpenOptions::default()
+            },
+        );
         self.state = State::Opening(Box::new(opening.map_err(thrown)?));
         Ok(())
     }

@@ -1,7 +1,5 @@
 //! A first question for a recording that arrives without one.
-use crate::recipe::{
-    Channels, Contrast, EventWindow, Evidence, Filter, Keep, Measure, Recipe, Shrink,
-};
+use crate::recipe::{Contrast, EventWindow, Filter, Recipe};
 use crate::recording::Recording;
 use serde::{Deserialize, Serialize};
 use std::collections::BTreeMap;
@@ -72,21 +70,14 @@ pub fn propose(recording: &Recording) -> Option<Proposal> {
     };
     Some(Proposal {
         recipe: Recipe {
-            teasel_recipe: 1,
-            channels: Channels::default(),
             filter: Filter {
                 high_pass_hz: high_pass,
                 ..Filter::default()
             },
-            keep: Keep::default(),
-            measure: Measure::default(),
-            contrast: Contrast::Windows {
+            ..Recipe::asking(Contrast::Windows {
                 signal: window(0.0, d),
                 reference: window(-d, 0.0),
-            },
-            shrink: Shrink::default(),
-            components: 4,
-            evidence: Evidence::default(),
+            })
         },
         why: format!(
             "\u{201c}{label}\u{201d} is {most} ({} times{}); the windows after and before it last {length}.{filter}",

@@ -2,9 +2,7 @@
 use super::{cards, check_recipe};
 use crate::error::Result;
 use crate::prepare::inspect;
-use crate::recipe::{
-    Channels, Contrast, EventWindow, Evidence, Filter, Keep, Measure, Recipe, Shrink,
-};
+use crate::recipe::{Contrast, EventWindow, Recipe};
 use crate::recording::Recording;
 use crate::sheet::{ChannelCard, RecordingCard};
 use serde::Serialize;
@@ -41,18 +39,8 @@ fn no_contrast() -> Recipe {
         from_s: 0.0,
         to_s: 0.0,
     };
-    Recipe {
-        teasel_recipe: 1,
-        channels: Channels::default(),
-        filter: Filter::default(),
-        keep: Keep::default(),
-        measure: Measure::default(),
-        contrast: Contrast::Windows {
-            signal: none(),
-            reference: none(),
-        },
-        shrink: Shrink::default(),
-        components: 4,
-        evidence: Evidence::default(),
-    }
+    Recipe::asking(Contrast::Windows {
+        signal: none(),
+        reference: none(),
+    })
 }

@@ -7,9 +7,7 @@
 use super::head::{CHANNELS, Dipole, pattern, point};
 use super::process::{bump, normal, one_over_f, rhythm, smooth_step, stream};
 use super::{Demo, Pattern, Truth};
-use crate::recipe::{
-    Channels, Contrast, EventWindow, Evidence, Filter, Keep, Measure, Recipe, Shrink,
-};
+use crate::recipe::{Contrast, EventWindow, Filter, Recipe};
 use crate::recording::{Channel, Event, Recording, Stretch};
 use nalgebra::{DMatrix, DVector};
 use rand::RngExt;
@@ -114,22 +112,15 @@ fn recipe() -> Recipe {
         to_s,
     };
     Recipe {
-        teasel_recipe: 1,
-        channels: Channels::default(),
         filter: Filter {
             high_pass_hz: Some(1.0),
             low_pass_hz: Some(40.0),
             ..Filter::default()
         },
-        keep: Keep::default(),
-        measure: Measure::default(),
-        contrast: Contrast::Windows {
+        ..Recipe::asking(Contrast::Windows {
             signal: window(0.2, 1.0),
             reference: window(-1.0, -0.2),
-        },
-        shrink: Shrink::default(),
-        components: 4,
-        evidence: Evidence::default(),
+        })
     }
 }
 

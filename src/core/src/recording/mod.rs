@@ -38,6 +38,8 @@ pub struct Recording {
     pub others: Vec<OtherChannel>,
     /// `channels × samples`.
     pub samples: Vec<Vec<f32>>,
+    /// How the channels lie to each other.
+    pub layout: Layout,
     /// Unbroken runs of samples, in order; together they cover every sample.
     pub stretches: Vec<Stretch>,
     /// Events in order of onset.
@@ -46,6 +48,28 @@ pub struct Recording {
     pub side_files: Vec<String>,
     /// What a careful reader of this file should know, each a sentence.
     pub warnings: Vec<String>,
+}
+
+/// How the channels lie to each other, which decides what a map is drawn on and who is whose neighbour.
+#[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
+#[serde(tag = "kind", rename_all = "kebab-case")]
+pub enum Layout {
+    /// On a head, as far as positions are known.
+    #[default]
+    Head,
+    /// On a plane: positions are metres, x to the right, y up, z 0 (a grid of electrodes).
+    Plane,
+    /// On a shaft: the position's z is minus the depth in metres.
+    Line,
+    /// Pixels of a movie.
+    Frames {
+        /// Rows of a picture, after binning.
+        height: u32,
+        /// Columns of a picture, after binning.
+        width: u32,
+        /// Which pixel each channel is: row · width + column.
+        pixels: Vec<u32>,
+    },
 }
 
 /// One analysed channel.

@@ -5,10 +5,12 @@ use crate::error::{Kind, Problem, Result};
 use std::fmt;
 
 /// How to open a recording.
-#[derive(Debug, Clone, Copy, Default, PartialEq, Eq)]
+#[derive(Debug, Clone, Default, PartialEq)]
 pub struct OpenOptions {
     /// Open the whole records before a cut or other damage, with a warning, instead of refusing the file.
     pub salvage: bool,
+    /// What the file does not carry.
+    pub given: crate::recipe::Given,
 }
 
 /// What one format's reader does after its header is read.
@@ -19,7 +21,7 @@ pub(crate) trait Reader {
     fn finish(self: Box<Self>) -> Result<Recording>;
 }
 
-type Begin = fn(&mut dyn Source, OpenOptions, &mut Budget) -> Result<Box<dyn Reader>>;
+type Begin = fn(&mut dyn Source, &OpenOptions, &mut Budget) -> Result<Box<dyn Reader>>;
 
 /// One row of the probe table.
 pub(crate) struct Format {
@@ -103,7 +105,7 @@ impl Opening {
         let name = source.name().to_owned();
         let mut budget = Budget::new(source.len(), memory_bytes);
         let reader = probe(source.as_mut())
-            .and_then(|format| (format.begin)(source.as_mut(), options, &mut budget))
+            .and_then(|format| (format.begin)(source.as_mut(), &options, &mut budget))
             .map_err(|problem| problem.in_file(name))?;
         Ok(Opening {
             source,

@@ -8,7 +8,7 @@ use super::weights::{Weights, same};
 use crate::analysis::Series;
 use crate::error::{Kind, Problem, Result};
 use crate::prepare::Preparing;
-use crate::recipe::{Contrast, EventWindow, Evidence, Keep, Measure, Recipe, Shrink};
+use crate::recipe::{Contrast, EventWindow, Recipe};
 use crate::recording::{Channel, Recording};
 use crate::sheet::{ChannelCard, ChannelState};
 
@@ -223,18 +223,11 @@ fn filter_only(filter: crate::recipe::Filter) -> Recipe {
         to_s: 1.0,
     };
     Recipe {
-        teasel_recipe: 1,
-        channels: crate::recipe::Channels::default(),
         filter,
-        keep: Keep::default(),
-        measure: Measure::default(),
-        contrast: Contrast::Windows {
+        ..Recipe::asking(Contrast::Windows {
             signal: window.clone(),
             reference: window,
-        },
-        shrink: Shrink::default(),
-        components: 1,
-        evidence: Evidence::default(),
+        })
     }
 }
 

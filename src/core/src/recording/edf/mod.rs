@@ -68,7 +68,7 @@ pub(super) const FORMAT_24_BIT: Format = Format {
 
 fn refuse_24_bit(
     _source: &mut dyn Source,
-    _options: OpenOptions,
+    _options: &OpenOptions,
     _budget: &mut Budget,
 ) -> Result<Box<dyn Reader>> {
     Err(Problem::new(

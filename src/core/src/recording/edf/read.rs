@@ -55,7 +55,7 @@ fn note(slot: &mut (u64, String), place: impl FnOnce() -> String) {
 
 pub(super) fn begin(
     source: &mut dyn Source,
-    options: OpenOptions,
+    options: &OpenOptions,
     budget: &mut Budget,
 ) -> Result<Box<dyn Reader>> {
     let mut header = header::read(source, budget)?;
@@ -120,7 +120,7 @@ pub(super) fn begin(
         _ => Vec::new(),
     };
     Ok(Box::new(EdfReader {
-        options,
+        options: options.clone(),
         records,
         done: 0,
         slice,
@@ -240,6 +240,7 @@ impl Reader for EdfReader {
             channels: self.channels,
             others: self.others,
             samples: self.columns.into_iter().map(|c| c.samples).collect(),
+            layout: crate::recording::Layout::Head,
             stretches: self.stretches,
             events: self.events,
             side_files: Vec::new(),

@@ -7,7 +7,7 @@ use crate::recording::opening::OpenOptions;
 pub(super) fn count(
     header: &Header,
     file_bytes: u64,
-    options: OpenOptions,
+    options: &OpenOptions,
     warnings: &mut Vec<String>,
 ) -> Result<u64> {
     let body = file_bytes - header.bytes;
