@@ -7,6 +7,7 @@
 //! 4. rustup can add the target.
 //!
 //! What needs no download comes first.
+use crate::wasm::Finish;
 use crate::{house, packages, shell};
 use anyhow::{Result, bail};
 use std::env;
@@ -73,7 +74,7 @@ fn target_installed() -> bool {
 
 impl Toolchain {
     /// `cargo build --profile …` for the page's crate, without what the outer cargo left in the environment.
-    pub fn cargo_build(self, profile: &str) -> Result<Command> {
+    pub fn cargo_build(self, finish: Finish) -> Result<Command> {
         let mut command = match self {
             Toolchain::Own => {
                 let mut command =
@@ -93,11 +94,18 @@ impl Toolchain {
             }
         };
         command
-            .args(["build", "--quiet", "--profile", profile, "--target", TARGET])
+            .args([
+                "build",
+                "--quiet",
+                "--profile",
+                finish.profile(),
+                "--target",
+                TARGET,
+            ])
             .args(["--package", "teasel-page", "--target-dir"])
             .arg(house::target("wasm")?)
             .current_dir(house::root())
-            .env("CARGO_ENCODED_RUSTFLAGS", flags().join("\u{1f}"));
+            .env("CARGO_ENCODED_RUSTFLAGS", flags(finish).join("\u{1f}"));
         if self == Toolchain::Debian {
             command.args([
                 "-Zbuild-std=std,panic_abort",
@@ -108,9 +116,12 @@ impl Toolchain {
     }
 }
 
-/// Vector instructions, and no paths of this machine in the module's messages.
-fn flags() -> Vec<String> {
+/// Vector instructions, and no paths of this machine in the messages of a module that is given away.
+fn flags(finish: Finish) -> Vec<String> {
     let mut flags = vec!["-Ctarget-feature=+simd128,+bulk-memory".to_owned()];
+    if finish == Finish::Draft {
+        return flags;
+    }
     let home = env::var_os("HOME").map(PathBuf::from);
     let cargo_home = env::var_os("CARGO_HOME")
         .map(PathBuf::from)

@@ -42,7 +42,8 @@ impl Finish {
         }
     }
 
-    fn profile(self) -> &'static str {
+    /// The cargo profile.
+    pub fn profile(self) -> &'static str {
         match self {
             Finish::Shipped => "page",
             Finish::Draft => "draft",
@@ -55,10 +56,7 @@ pub fn build(finish: Finish) -> Result<Vec<u8>> {
     let chosen = toolchain::choose()?;
     let started = Instant::now();
     println!("Compiling the page's module.");
-    shell::run(
-        "compiling the module",
-        &mut chosen.cargo_build(finish.profile())?,
-    )?;
+    shell::run("compiling the module", &mut chosen.cargo_build(finish)?)?;
     let compiled = house::target("wasm")?
         .join(toolchain::TARGET)
         .join(finish.profile())
