@@ -3,6 +3,7 @@ use super::work::Work;
 use crate::contrast::fit::{Direction, Ends};
 use crate::contrast::linalg::{abs_cosine, packed_len, quadratic};
 use crate::contrast::space::Space;
+use crate::describe::placing::placed;
 use crate::evidence::heldout::{
     Design, Ground, Scores, best_of, diagonal, fill, log_total, log_typical, pair_log_ratios,
     score_into, total_ratio, typical_ratio, variances,
@@ -53,6 +54,8 @@ pub(super) fn begin(recording: &Recording, recipe: &Recipe) -> Sheet {
                 .map(|(label, times)| (label.clone(), times.len()))
                 .collect(),
             event_onsets_s: onsets,
+            layout: placed(recording, &recipe.channels).0,
+            about: recording.about.clone(),
             side_files: recording.side_files.clone(),
             warnings: recording.warnings.clone(),
             envelope: envelope(recording),

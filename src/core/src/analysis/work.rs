@@ -3,6 +3,7 @@ use super::{Progress, Series, Stage, cards};
 use crate::contrast::fit::{Ends, Labels, Method, extremes, fit};
 use crate::contrast::space::Covariances;
 use crate::contrast::windows::{Selection, check, sample_at, select};
+use crate::describe::placing::placed;
 use crate::describe::{course, spectra};
 use crate::error::{Kind, Problem, Result};
 use crate::evidence::FEWEST;
@@ -226,6 +227,7 @@ impl Work {
         );
         if preparation {
             self.sheet.channels = self.cards.clone().unwrap_or_default();
+            self.sheet.recording.layout = placed(recording, &new.channels).0;
         }
         Ok(())
     }

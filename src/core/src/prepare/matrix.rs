@@ -108,6 +108,7 @@ fn check_names(cards: &[ChannelCard], choices: &Channels) -> Result<()> {
     let lists = [
         ("leave_out", &choices.leave_out),
         ("interpolate", &choices.interpolate),
+        ("include", &choices.include),
         ("reference", named),
     ];
     for (place, names) in lists {

@@ -19,7 +19,8 @@ mod inspect;
 mod matrix;
 pub mod resample;
 
-pub use inspect::{inspect, to_unit_sphere};
+pub use crate::describe::positions::to_unit_sphere;
+pub use inspect::inspect;
 
 use crate::error::{Kind, Problem, Result};
 use crate::recipe::{Filter, Recipe};

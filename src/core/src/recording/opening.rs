@@ -1,6 +1,6 @@
 //! Opening a recording in steps: probe the content, read the header, decode slice after slice, add the side files.
 use super::budget::Budget;
-use super::{MEMORY_BYTES, Recording, SideFile, Source, edf, events_table};
+use super::{MEMORY_BYTES, Recording, SideFile, Source, edf, sides as side_files};
 use crate::error::{Kind, Problem, Result};
 use std::fmt;
 
@@ -67,6 +67,8 @@ const OTHER_CONTENT: &[(&[u8], &str)] = &[
 pub struct Opening {
     source: Box<dyn Source>,
     sides: Vec<SideFile>,
+    /// What the user told, without what side files add.
+    told: crate::recipe::Given,
     budget: Budget,
     reader: Box<dyn Reader>,
     finished: bool,
@@ -104,12 +106,18 @@ impl Opening {
     ) -> Result<Opening> {
         let name = source.name().to_owned();
         let mut budget = Budget::new(source.len(), memory_bytes);
+        let told = options.given.clone();
+        let options = OpenOptions {
+            given: side_files::complete(&told, &name, &sides)?,
+            ..options
+        };
         let reader = probe(source.as_mut())
             .and_then(|format| (format.begin)(source.as_mut(), &options, &mut budget))
             .map_err(|problem| problem.in_file(name))?;
         Ok(Opening {
             source,
             sides,
+            told,
             budget,
             reader,
             finished: false,
@@ -142,7 +150,7 @@ impl Opening {
             .finish()
             .map_err(|problem| problem.in_file(name.as_str()))?;
         recording.name = name;
-        events_table::apply(&mut recording, &self.sides)?;
+        side_files::apply(&mut recording, &self.sides, &self.told)?;
         recording
             .events
             .sort_by(|a, b| a.onset_s.total_cmp(&b.onset_s));

@@ -21,7 +21,7 @@ const ENGINE: GeneralPurpose = GeneralPurpose::new(
 );
 
 /// Names that a link without names can leave out.
-const LEFT_OUT: [(&str, &str); 3] = [
+const LEFT_OUT: [(&str, &str); 6] = [
     (
         "channels.leave_out",
         "The link names no channels: what its sender left out is not left out here.",
@@ -33,6 +33,18 @@ const LEFT_OUT: [(&str, &str); 3] = [
     (
         "channels.reference",
         "The link names no channels: its sender's reference channels are replaced by the reference as recorded.",
+    ),
+    (
+        "channels.include",
+        "The link names no channels: what its sender analysed although a side file sets it aside is not analysed here.",
+    ),
+    (
+        "channels.positions",
+        "The link names no channels: its sender's positions are not used here.",
+    ),
+    (
+        "recording.events",
+        "The link names no columns: the table of events has to be told anew.",
     ),
 ];
 
@@ -76,11 +88,14 @@ fn strip(recipe: &Recipe, mut value: Value) -> Value {
         !channels.leave_out.is_empty(),
         !channels.interpolate.is_empty(),
         matches!(channels.reference, Reference::Named(_)),
+        !channels.include.is_empty(),
+        channels.positions.is_some(),
+        recipe.recording.events.is_some(),
     ];
     for ((path, _), _) in LEFT_OUT.iter().zip(named).filter(|(_, named)| *named) {
         without.push(*path);
-        if let (Some(Value::Object(map)), Some(key)) =
-            (value.get_mut("channels"), path.split('.').nth(1))
+        if let Some((room, key)) = path.split_once('.')
+            && let Some(Value::Object(map)) = value.get_mut(room)
         {
             map.remove(key);
         }

@@ -23,6 +23,63 @@ pub(super) const CHANNELS: Shape = Shape::Object(&[
             "\"as recorded\", \"average\" or a list of channel names",
         ),
     ),
+    ("include", false, Shape::List(&Shape::Text)),
+    ("positions", false, POSITIONS),
+]);
+
+const POSITIONS: Shape = Shape::Object(&[
+    (
+        "grid",
+        false,
+        Shape::Object(&[
+            ("rows", true, Shape::Whole),
+            ("columns", true, Shape::Whole),
+            ("spacing_mm", false, Shape::Number),
+            (
+                "first",
+                false,
+                Shape::Word(&["top-left", "top-right", "bottom-left", "bottom-right"]),
+            ),
+            ("along", false, Shape::Word(&["rows", "columns"])),
+            ("prefix", false, Shape::Text),
+        ]),
+    ),
+    (
+        "probe",
+        false,
+        Shape::Object(&[
+            ("spacing_um", true, Shape::Number),
+            ("order", false, Shape::Word(&["top-down", "bottom-up"])),
+            ("prefix", false, Shape::Text),
+        ]),
+    ),
+    ("at", false, Shape::Named(&Shape::List(&Shape::Number))),
+]);
+
+/// What the recording's own file does not say.
+const GIVEN: Shape = Shape::Object(&[
+    ("rate_hz", false, Shape::Number),
+    ("unit", false, Shape::Text),
+    (
+        "axes",
+        false,
+        Shape::Word(&[
+            "channels,samples",
+            "samples,channels",
+            "frames,height,width",
+        ]),
+    ),
+    ("variable", false, Shape::Text),
+    (
+        "events",
+        false,
+        Shape::Object(&[
+            ("onset", true, Shape::Text),
+            ("unit", false, Shape::Word(&["s", "ms", "samples"])),
+            ("label", false, Shape::Text),
+            ("duration", false, Shape::Text),
+        ]),
+    ),
 ]);
 
 pub(super) const FILTER: Shape = Shape::Object(&[
@@ -34,6 +91,7 @@ pub(super) const FILTER: Shape = Shape::Object(&[
 
 const RECIPE: Shape = Shape::Object(&[
     ("teasel_recipe", true, Shape::Whole),
+    ("recording", false, GIVEN),
     ("channels", false, CHANNELS),
     ("filter", false, FILTER),
     (

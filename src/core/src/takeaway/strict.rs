@@ -16,6 +16,8 @@ type Keys = &'static [(&'static str, bool, Shape)];
 pub(crate) enum Shape {
     /// Exactly these keys; the flag says which must be there.
     Object(Keys),
+    /// An object with any keys, each of which holds this.
+    Named(&'static Shape),
     /// An object whose `kind` decides its keys, with kinds that this version knows and does not compute.
     Kinds(&'static [(&'static str, Keys)], &'static [&'static str]),
     /// Any finite number.
@@ -157,6 +159,7 @@ impl<'a> Walk<'a> {
                 Shape::Object(keys) => self.object(raw, keys, None, path),
                 Shape::Kinds(known, later) => self.kinds(raw, &value, known, later, path),
                 Shape::List(item) => self.list(raw, item, path),
+                Shape::Named(item) => self.named(raw, item, path),
                 Shape::Either(shapes, _) => shapes
                     .iter()
                     .find(|s| fits(&value, s))
@@ -235,6 +238,15 @@ impl<'a> Walk<'a> {
         }
     }
 
+    fn named(&self, raw: &'a RawValue, item: &Shape, path: &str) -> Result<()> {
+        let pairs: Pairs = serde_json::from_str(raw.get())
+            .map_err(|e| self.wrong(raw, path, "an object", cause(&e.to_string())))?;
+        pairs
+            .0
+            .iter()
+            .try_for_each(|(key, value)| self.value(value, item, &join(path, key)))
+    }
+
     fn list(&self, raw: &'a RawValue, item: &Shape, path: &str) -> Result<()> {
         let items: Vec<&RawValue> = serde_json::from_str(raw.get())
             .map_err(|e| self.wrong(raw, path, "a list", cause(&e.to_string())))?;
@@ -255,7 +267,7 @@ fn join(path: &str, key: &str) -> String {
 
 fn fits(value: &Value, shape: &Shape) -> bool {
     match shape {
-        Shape::Object(_) | Shape::Kinds(..) => value.is_object(),
+        Shape::Object(_) | Shape::Named(_) | Shape::Kinds(..) => value.is_object(),
         Shape::Number => value.as_f64().is_some_and(f64::is_finite),
         Shape::Whole => value
             .as_u64()
@@ -270,7 +282,7 @@ fn fits(value: &Value, shape: &Shape) -> bool {
 
 fn describe(shape: &Shape) -> String {
     match shape {
-        Shape::Object(_) | Shape::Kinds(..) => "an object".into(),
+        Shape::Object(_) | Shape::Named(_) | Shape::Kinds(..) => "an object".into(),
         Shape::Number => "a number".into(),
         Shape::Whole => "a whole number from 0 to 9007199254740991".into(),
         Shape::Text => "a text".into(),

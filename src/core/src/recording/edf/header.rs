@@ -79,6 +79,8 @@ pub(super) struct Header {
     /// `None` where the header says −1: not known when it was written.
     pub(super) records: Option<u64>,
     pub(super) record_s: f64,
+    /// Time of day of the start, `22:13:05`.
+    pub(super) start: Option<String>,
     pub(super) record_bytes: u64,
     pub(super) signals: Vec<Signal>,
     pub(super) warnings: Vec<String>,
@@ -171,6 +173,7 @@ pub(super) fn read(source: &mut dyn Source, budget: &mut Budget) -> Result<Heade
         bytes,
         records,
         record_s,
+        start: time_of_day(&fixed[176..184]),
         record_bytes: 0,
         signals: Vec::with_capacity(signals as usize),
         warnings,
@@ -183,6 +186,19 @@ pub(super) fn read(source: &mut dyn Source, budget: &mut Budget) -> Result<Heade
     }
     check_duration(&header)?;
     Ok(header)
+}
+
+/// `22.13.05` as `22:13:05`; `None` where it is no time.
+fn time_of_day(field: &[u8]) -> Option<String> {
+    let text = std::str::from_utf8(field).ok()?;
+    let parts: Vec<u8> = text
+        .split(['.', ':'])
+        .map(|part| part.trim().parse().ok())
+        .collect::<Option<_>>()?;
+    match parts[..] {
+        [h, m, s] if h < 24 && m < 60 && s < 60 => Some(format!("{h:02}:{m:02}:{s:02}")),
+        _ => None,
+    }
 }
 
 /// A field of a signal and its first byte in the file.
@@ -266,7 +282,7 @@ fn scale(physical: [f64; 2], digital: [i64; 2], factor: f64) -> std::result::Res
 }
 
 /// Factor to µV for a voltage, `None` for anything else. The sign for micro comes as `u`, as U+00B5 and as U+03BC.
-pub(super) fn to_microvolts(unit: &str) -> Option<f64> {
+pub(in crate::recording) fn to_microvolts(unit: &str) -> Option<f64> {
     match unit {
         "uV" | "µV" | "μV" | "uv" | "UV" | "microV" => Some(1.0),
         "V" | "v" => Some(1e6),

@@ -29,6 +29,8 @@ mod read;
 mod records;
 mod write;
 
+pub(super) use header::to_microvolts;
+
 pub use write::{Identity, write};
 
 use super::Source;
