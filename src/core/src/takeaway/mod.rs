@@ -4,6 +4,7 @@
 //! * [`weights_json`], [`weights_csv`], [`weights_npy`]: the filters; [`Weights`] reads them back and applies them to another recording.
 //! * [`results_json`]: every number in full precision.
 //! * [`series_csv`], [`series_npy`]: time courses; [`summary_csv`], [`summary_json`]: many recordings in one table.
+//! * [`facts`]: what is told of a recording.
 //! * [`readings`]: the sentences beside the figures; [`methods`], [`references`]: the paragraph for a paper.
 //! * [`report_html`]: one page to keep; [`archive`]: everything in one ZIP.
 //!
@@ -11,6 +12,7 @@
 mod apply;
 mod archive;
 mod cells;
+mod facts;
 mod link;
 mod methods;
 mod readings;
@@ -26,6 +28,7 @@ mod words;
 pub use crate::recipe::recipe_check;
 pub use apply::Applied;
 pub use archive::{archive, safe_name};
+pub use facts::{Fact, facts, timelines};
 pub use link::{RecipeLink, link_decode, link_encode};
 pub use methods::{methods, references};
 pub use readings::{Reading, Section, Span, Tone, readings};
