@@ -48,10 +48,10 @@ impl Map {
                 text::count(order.len(), "channel")
             );
             pen.word(&said, (4.0, 8.0), Word::new(TICK, pen.inks.slate))?;
-            let note = format!(
-                "no map: {} without a position",
-                text::count(self.missing(), "channel")
-            );
+            let note = match self.missing() {
+                0 => "no map: the positions span no surface".to_owned(),
+                n => format!("no map: {} without a position", text::count(n, "channel")),
+            };
             let word = Word::new(SMALL, pen.inks.slate).at(At::Middle);
             pen.word(
                 &text::fit(&note, SMALL, pen.w),
