@@ -5,7 +5,7 @@ use serde_json::{Value, json};
 use std::fmt::Write as _;
 use std::io::Write as _;
 use std::path::Path;
-use teasel_core::analysis::{Summary, propose, summary};
+use teasel_core::analysis::{Proposal, Summary, propose, summary};
 use teasel_core::error::{Kind, Problem, Result};
 use teasel_core::recording::Recording;
 use teasel_core::sheet::ChannelCard;
@@ -40,18 +40,26 @@ pub fn inspect(given: &Given, as_json: bool) -> bool {
 
 fn one(path: &Path, given: &Given, as_json: bool) -> Result<Value> {
     let mut meter = Meter::new(&source::file_name(path));
-    let recording = source::recording(path, given, &Default::default(), &mut meter)?;
+    let recording = source::recording(path, given, &given.told.given(), &mut meter)?;
     if as_json {
-        card(&recording)
+        card(&recording, given)
     } else {
-        text(&recording).map(Value::String)
+        text(&recording, given).map(Value::String)
     }
 }
 
 /// Columns of a timeline of events, and how many labels get one.
 const TIMELINE: (usize, usize) = (60, 8);
 
-fn card(recording: &Recording) -> Result<Value> {
+/// The core's proposal, with what was told on the command line.
+fn proposal(recording: &Recording, given: &Given) -> Option<Proposal> {
+    propose(recording).map(|mut proposal| {
+        proposal.recipe.recording = given.told.given();
+        proposal
+    })
+}
+
+fn card(recording: &Recording, given: &Given) -> Result<Value> {
     let summary = summary(recording);
     let failed = |e: serde_json::Error| {
         Problem::new(
@@ -80,7 +88,7 @@ fn card(recording: &Recording) -> Result<Value> {
         "events": card.events,
         "side_files": card.side_files,
         "warnings": card.warnings,
-        "proposal": value(&|| serde_json::to_value(propose(recording)))?,
+        "proposal": value(&|| serde_json::to_value(proposal(recording, given)))?,
     }))
 }
 
@@ -107,7 +115,7 @@ fn shown(text: &str) -> String {
         .collect()
 }
 
-fn text(recording: &Recording) -> Result<String> {
+fn text(recording: &Recording, given: &Given) -> Result<String> {
     let summary = summary(recording);
     let mut out = String::new();
     let mut put = |label: &str, value: String| {
@@ -126,7 +134,7 @@ fn text(recording: &Recording) -> Result<String> {
     for warning in &recording.warnings {
         put("note", shown(warning));
     }
-    match propose(recording) {
+    match proposal(recording, given) {
         Some(proposal) => {
             put("proposal", shown(&proposal.why));
             out.push_str(&recipe_json(&proposal.recipe)?);

@@ -23,6 +23,7 @@ pub fn run(recipe: &Path, given: &Given, out: &Path, seed: Option<u64>) -> bool 
     if let Some(seed) = seed {
         recipe.evidence.seed = seed;
     }
+    recipe.recording = given.told.given().or(recipe.recording);
     let mut rows = Vec::new();
     let mut fine = true;
     for (path, name) in given

@@ -106,13 +106,14 @@ pub fn text(path: &Path) -> Result<String> {
     })
 }
 
-/// Opens a recording with its side files; `told` is what a recipe says of it.
+/// Opens a recording with its side files; `told` is what its own file does not carry.
 pub fn recording(
     path: &Path,
     given: &Given,
     told: &recipe::Given,
     meter: &mut Meter,
 ) -> Result<Recording> {
+    recipe::given_check(told)?;
     let (file, length) = opened(path)?;
     let source = FileSource {
         name: file_name(path),
@@ -125,6 +126,13 @@ pub fn recording(
     };
     let sides = sides(path, given)?;
     let hint = |mut problem: Problem| {
+        let options: Vec<&str> = problem.asks.iter().map(|ask| option(&ask.key)).collect();
+        if !options.is_empty() {
+            problem.advice = format!(
+                "tell it with {}, or in the recipe's \"recording\"",
+                options.join(" ")
+            );
+        }
         if let (Some(part), false) = (problem.salvage, given.salvage) {
             let records = match part.records {
                 1 => "1 whole record".to_string(),
@@ -143,6 +151,16 @@ pub fn recording(
         meter.reading(done, of);
     }
     opening.finish().map_err(hint)
+}
+
+/// The option that answers a question.
+fn option(key: &str) -> &'static str {
+    match key {
+        "rate_hz" => "--rate HZ",
+        "unit" => "--unit UNIT",
+        "axes" => "--axes AXES",
+        _ => "--array NAME",
+    }
 }
 
 /// What a side file is about, as its name says: `events.tsv`, `eeg.json`.

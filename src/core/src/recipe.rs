@@ -4,7 +4,7 @@
 mod check;
 
 pub(crate) use check::WHOLE_MAX;
-pub use check::recipe_check;
+pub use check::{given_check, recipe_check};
 use serde::{Deserialize, Serialize};
 use std::collections::BTreeMap;
 
@@ -122,6 +122,17 @@ impl Given {
     pub fn is_empty(&self) -> bool {
         *self == Given::default()
     }
+    /// What is told here, and from `less_sure` what is not.
+    #[must_use]
+    pub fn or(self, less_sure: Given) -> Given {
+        Given {
+            rate_hz: self.rate_hz.or(less_sure.rate_hz),
+            unit: self.unit.or(less_sure.unit),
+            axes: self.axes.or(less_sure.axes),
+            variable: self.variable.or(less_sure.variable),
+            events: self.events.or(less_sure.events),
+        }
+    }
 }
 
 /// What the axes of an array are, outermost first.
@@ -136,6 +147,23 @@ pub enum Axes {
     /// One picture after the other.
     #[serde(rename = "frames,height,width")]
     FramesHeightWidth,
+}
+
+impl Axes {
+    /// All of them.
+    pub const ALL: [Axes; 3] = [
+        Axes::ChannelsSamples,
+        Axes::SamplesChannels,
+        Axes::FramesHeightWidth,
+    ];
+    /// As it is written in a recipe.
+    pub fn name(self) -> &'static str {
+        match self {
+            Axes::ChannelsSamples => "channels,samples",
+            Axes::SamplesChannels => "samples,channels",
+            Axes::FramesHeightWidth => "frames,height,width",
+        }
+    }
 }
 
 /// Which channels, against which reference.

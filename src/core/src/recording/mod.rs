@@ -15,10 +15,14 @@
 //! one line in the table of `opening.rs`. The content decides who reads a file, its name never does.
 mod budget;
 pub mod edf;
+mod given;
+mod names;
 mod opening;
 mod sides;
+mod units;
 
 pub use budget::MEMORY_BYTES;
+pub use given::UNITS;
 pub use opening::{MemorySource, OpenOptions, Opening, open};
 pub use sides::{EventsPreview, events_preview, lies_beside};
 

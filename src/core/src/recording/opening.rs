@@ -67,8 +67,8 @@ const OTHER_CONTENT: &[(&[u8], &str)] = &[
 pub struct Opening {
     source: Box<dyn Source>,
     sides: Vec<SideFile>,
-    /// What the user told, without what side files add.
-    told: crate::recipe::Given,
+    /// As the user gave them, without what side files add.
+    options: OpenOptions,
     budget: Budget,
     reader: Box<dyn Reader>,
     finished: bool,
@@ -106,18 +106,17 @@ impl Opening {
     ) -> Result<Opening> {
         let name = source.name().to_owned();
         let mut budget = Budget::new(source.len(), memory_bytes);
-        let told = options.given.clone();
-        let options = OpenOptions {
-            given: side_files::complete(&told, &name, &sides)?,
-            ..options
+        let completed = OpenOptions {
+            given: side_files::complete(&options.given, &name, &sides)?,
+            ..options.clone()
         };
         let reader = probe(source.as_mut())
-            .and_then(|format| (format.begin)(source.as_mut(), &options, &mut budget))
+            .and_then(|format| (format.begin)(source.as_mut(), &completed, &mut budget))
             .map_err(|problem| problem.in_file(name))?;
         Ok(Opening {
             source,
             sides,
-            told,
+            options,
             budget,
             reader,
             finished: false,
@@ -150,11 +149,22 @@ impl Opening {
             .finish()
             .map_err(|problem| problem.in_file(name.as_str()))?;
         recording.name = name;
-        side_files::apply(&mut recording, &self.sides, &self.told)?;
+        warn_of_rate(&mut recording, self.options.given.rate_hz);
+        side_files::apply(&mut recording, &self.sides, &self.options.given)?;
         recording
             .events
             .sort_by(|a, b| a.onset_s.total_cmp(&b.onset_s));
         Ok(recording)
+    }
+}
+
+/// A file's own rate comes before one that was told; that the two differ is said.
+fn warn_of_rate(recording: &mut Recording, told_hz: Option<f64>) {
+    if let Some(told) = told_hz.filter(|hz| (hz / recording.rate_hz - 1.0).abs() > 1e-9) {
+        recording.warnings.push(format!(
+            "The file says {} Hz, which was used, and not the {told} Hz that it was opened with.",
+            recording.rate_hz
+        ));
     }
 }
 

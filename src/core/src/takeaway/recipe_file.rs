@@ -9,6 +9,29 @@ const EVENT_WINDOW: Shape = Shape::Object(&[
     ("to_s", true, Shape::Number),
 ]);
 
+const RECORDING: Shape = Shape::Object(&[
+    ("rate_hz", false, Shape::Maybe(&Shape::Number)),
+    ("unit", false, Shape::Maybe(&Shape::Text)),
+    (
+        "axes",
+        false,
+        Shape::Maybe(&Shape::Word(&[
+            "channels,samples",
+            "samples,channels",
+            "frames,height,width",
+        ])),
+    ),
+    ("variable", false, Shape::Maybe(&Shape::Text)),
+    ("events", false, Shape::Maybe(&EVENTS)),
+]);
+
+const EVENTS: Shape = Shape::Object(&[
+    ("onset", true, Shape::Text),
+    ("unit", false, Shape::Word(&["s", "ms", "samples"])),
+    ("label", false, Shape::Maybe(&Shape::Text)),
+    ("duration", false, Shape::Maybe(&Shape::Text)),
+]);
+
 pub(super) const CHANNELS: Shape = Shape::Object(&[
     ("leave_out", false, Shape::List(&Shape::Text)),
     ("interpolate", false, Shape::List(&Shape::Text)),
@@ -56,32 +79,6 @@ const POSITIONS: Shape = Shape::Object(&[
     ("at", false, Shape::Named(&Shape::List(&Shape::Number))),
 ]);
 
-/// What the recording's own file does not say.
-const GIVEN: Shape = Shape::Object(&[
-    ("rate_hz", false, Shape::Number),
-    ("unit", false, Shape::Text),
-    (
-        "axes",
-        false,
-        Shape::Word(&[
-            "channels,samples",
-            "samples,channels",
-            "frames,height,width",
-        ]),
-    ),
-    ("variable", false, Shape::Text),
-    (
-        "events",
-        false,
-        Shape::Object(&[
-            ("onset", true, Shape::Text),
-            ("unit", false, Shape::Word(&["s", "ms", "samples"])),
-            ("label", false, Shape::Text),
-            ("duration", false, Shape::Text),
-        ]),
-    ),
-]);
-
 pub(super) const FILTER: Shape = Shape::Object(&[
     ("high_pass_hz", false, Shape::Maybe(&Shape::Number)),
     ("low_pass_hz", false, Shape::Maybe(&Shape::Number)),
@@ -91,7 +88,7 @@ pub(super) const FILTER: Shape = Shape::Object(&[
 
 const RECIPE: Shape = Shape::Object(&[
     ("teasel_recipe", true, Shape::Whole),
-    ("recording", false, GIVEN),
+    ("recording", false, RECORDING),
     ("channels", false, CHANNELS),
     ("filter", false, FILTER),
     (

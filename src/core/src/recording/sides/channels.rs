@@ -6,7 +6,7 @@
 //! recording is about.
 use super::table::{Header, Table};
 use crate::error::Result;
-use crate::recording::edf::to_microvolts;
+use crate::recording::units::Unit;
 use crate::recording::{Layout, Recording, SideFile};
 
 /// Kinds that are analysed (BIDS: EEG, iEEG and MEG channel types). Any kind that is not of this list is set aside.
@@ -105,17 +105,36 @@ fn read(recording: &mut Recording, side: &SideFile) -> Result<()> {
     Ok(())
 }
 
+/// The unit that all analysed channels of the table share, for a format that carries none.
+pub(super) fn unit(side: &SideFile) -> Option<String> {
+    let mut table = Table::open(side, Header::Named, WHAT).ok()?;
+    let [kind, unit] = ["type", "units"].map(|n| table.column(&[n]));
+    let mut shared: Option<String> = None;
+    while let Ok(Some(row)) = table.next() {
+        let kind = kind.and_then(|c| row.text(c)).map(|k| k.to_uppercase());
+        if kind.is_some_and(|k| !ANALYSED.contains(&k.as_str())) {
+            continue;
+        }
+        let here = row.text(unit?)?;
+        match &shared {
+            Some(unit) if *unit != here => return None,
+            _ => shared = Some(here),
+        }
+    }
+    shared
+}
+
 /// A file that carries no unit takes the table's; voltages are brought to µV.
 fn take_unit(recording: &mut Recording, at: usize, unit: &str) {
     let channel = &mut recording.channels[at];
     if !(channel.unit.is_empty() || channel.unit == "counts") {
         return;
     }
-    let Some(factor) = to_microvolts(unit) else {
-        unit.clone_into(&mut channel.unit);
+    let Unit { name, factor } = Unit::of(unit);
+    channel.unit = name;
+    if factor == 1.0 {
         return;
-    };
-    "µV".clone_into(&mut channel.unit);
+    }
     if let Some(samples) = recording.samples.get_mut(at) {
         for x in samples {
             *x = (f64::from(*x) * factor) as f32;

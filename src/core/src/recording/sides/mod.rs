@@ -36,11 +36,15 @@ enum About {
 /// What may be read of a table to know it by its columns.
 const LOOK_BYTES: usize = 4 << 20;
 
-/// What a recording's own reader is to be told: a rate that its format does not carry and a side file does.
+/// What a recording's own reader is to be told: a rate and a unit that its format does not carry and side files do.
 pub(super) fn complete(given: &Given, recording: &str, sides: &[SideFile]) -> Result<Given> {
     let mut given = given.clone();
     if given.rate_hz.is_none() {
-        given.rate_hz = facts::facts(&about_recording(recording, sides))?.rate_hz;
+        given.rate_hz = facts::facts(&about_recording(recording, sides, About::Facts))?.rate_hz;
+    }
+    if given.unit.is_none() {
+        let tables = about_recording(recording, sides, About::Channels);
+        given.unit = tables.last().and_then(|table| channels::unit(table));
     }
     Ok(given)
 }
@@ -154,12 +158,12 @@ fn apply_events(
     }
 }
 
-/// Files about the recording as a whole, the most general first.
-fn about_recording<'a>(recording: &str, sides: &'a [SideFile]) -> Vec<&'a SideFile> {
+/// Side files of one kind that belong to the recording, the most general first.
+fn about_recording<'a>(recording: &str, sides: &'a [SideFile], wanted: About) -> Vec<&'a SideFile> {
     let mine: Vec<&SideFile> = sides
         .iter()
         .filter(|side| names::kinship(recording, &side.name).is_some())
-        .filter(|side| about(side, &[]) == About::Facts)
+        .filter(|side| about(side, &[]) == wanted)
         .collect();
     general_first(&mine, recording)
 }
