@@ -26,7 +26,7 @@ import init, * as module from "teasel-module";
  */
 
 /** Side files by the names that the standards give them; everything else is a recording. */
-const SIDE_FILE = /\.(tsv|json|csv)$/i;
+const SIDE_FILE = /\.(tsv|json|csv|txt)$/i;
 /** A side file is a table of events or channels: none is this large. */
 const SIDE_BYTES = 64 * 1024 * 1024;
 
@@ -232,6 +232,18 @@ export class Bridge {
   /** @param {Figure} figure @returns {Table} */
   table(figure) {
     return module.figureTable(figure);
+  }
+  /**
+   * What a table of events would give; throws a Problem where it cannot be read.
+   * @param {string} name @param {Uint8Array} bytes @param {import("./types").EventColumns | null} columns
+   * @param {number} rateHz @param {number} spanS @returns {import("./types").EventsPreview}
+   */
+  eventsPreview(name, bytes, columns, rateHz, spanS) {
+    return module.eventsPreview(name, bytes, columns, rateHz, spanS);
+  }
+  /** Whether a table is about the recording rather than one itself. @param {string} name @param {Uint8Array} bytes @param {string[]} channels @returns {boolean} */
+  isSideTable(name, bytes, channels) {
+    return module.isSideTable(name, bytes, channels);
   }
   /** @param {string} text @returns {Recipe} */
   parseRecipe(text) {

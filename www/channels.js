@@ -44,7 +44,7 @@ export function mountChannels(app) {
 /** The head and the stems: two figures with one caption. @param {App} app */
 function pairOf(app) {
   const stems = figureSlot(app, "channels", { section: "channels", title: "Each channel as recorded", hint: "filled: used · ring: needs a look · cross: left out", label: "Standard deviation and mains excess of each channel, in recording order" });
-  const map = figureSlot(app, "channels-map", { section: "channels", label: "The channels on the head, seen from above" });
+  const map = figureSlot(app, "channels-map", { section: "channels", label: "Where the channels lie" });
   const row = make("div", { class: "head-and-stems" }, map.root, stems.place);
   stems.root.append(row);
   return stems.root;
@@ -94,16 +94,24 @@ function showChips(app, chips) {
   channels.forEach(({ name, state }, i) => {
     const chip = /** @type {HTMLButtonElement | undefined} */ (chips.children[i]);
     if (!chip) return;
-    chip.setAttribute("aria-pressed", String(out.has(name) || state.state === "unusable"));
+    const why = summary?.recording.about.aside[name];
+    const aside = why !== undefined && !recipe?.channels.include?.includes(name) && !recipe?.channels.interpolate.includes(name);
+    chip.setAttribute("aria-pressed", String(out.has(name) || aside || state.state === "unusable"));
     chip.disabled = state.state === "unusable" || !recipe;
-    chip.title = "reason" in state ? state.reason : "";
+    chip.title = "reason" in state ? state.reason : aside ? why : "";
   });
 }
 
 /** @param {App} app @param {string} name */
 function turn(app, name) {
+  const aside = name in (now().summary?.recording.about.aside ?? {});
   app.change((recipe) => {
     const out = recipe.channels.leave_out;
+    const include = recipe.channels.include ?? [];
+    if (aside && !out.includes(name)) {
+      recipe.channels.include = include.includes(name) ? include.filter((one) => one !== name) : [...include, name];
+      return;
+    }
     recipe.channels.leave_out = out.includes(name) ? out.filter((one) => one !== name) : [...out, name];
     recipe.channels.interpolate = recipe.channels.interpolate.filter((one) => one !== name);
   });

@@ -10,11 +10,16 @@ import { now, put } from "./state.js";
 /** @typedef {import("./types").App} App */
 /** @typedef {import("./types").Recipe} Recipe */
 /** @typedef {import("./types").Summary} Summary */
-/** @typedef {{ files: File[], salvage: boolean } | { demo: string }} Source */
+/** @typedef {import("./types").Given} Given */
+/** @typedef {{ files: File[], salvage: boolean, given?: Given } | { demo: string }} Source */
 /** @typedef {{ recipe: Recipe, link: string | null }} Waiting */
 
 /** Files that lie beside a recording and are none. */
-const BESIDE = /\.tsv$|_(events|channels|electrodes|coordsystem|eeg)\.(json|csv)$/i;
+const BESIDE = /\.tsv$|_(events|channels|electrodes|coordsystem|eeg|ieeg|meg|nirs)\.(json|csv)$/i;
+/** Tables that may lie beside a recording or be one: their content decides. */
+const TABLE = /\.(csv|txt)$/i;
+/** No table beside a recording is larger. */
+const TABLE_BYTES = 64 * 1024 * 1024;
 
 /**
  * @param {App} app
@@ -52,7 +57,7 @@ export function door({ bridge, change: edit }, compute) {
     if (phase !== "reading") before = phase;
     put({ phase: "reading", progress: { stage: "demo" in source ? "making" : "reading", done: 0, of: 1 } });
     try {
-      const summary = "demo" in source ? await bridge.openDemo(source.demo) : await bridge.open(source.files, { salvage: source.salvage });
+      const summary = "demo" in source ? await bridge.openDemo(source.demo) : await bridge.open(source.files, asked(source));
       if (mine === turn) await arrive(source, summary);
     } catch (thrown) {
       if (mine === turn) await keep(thrown, source).catch(failed);
@@ -77,7 +82,7 @@ export function door({ bridge, change: edit }, compute) {
     if (!summary || !good) return void (problem.kind === "stopped" && put({ phase: "empty", progress: null }));
     const mine = turn;
     const holds = await bridge.holds();
-    if (!holds) await ("demo" in good ? bridge.openDemo(good.demo) : bridge.open(good.files, { salvage: good.salvage }));
+    if (!holds) await ("demo" in good ? bridge.openDemo(good.demo) : bridge.open(good.files, asked(good)));
     if (mine !== turn) return;
     if (before === "choosing") return put({ phase: "choosing", progress: null });
     if (recipe && (!holds || before === "working")) compute();
@@ -97,7 +102,7 @@ export function door({ bridge, change: edit }, compute) {
     if (link?.notes.length) sayOpenEnds(link.notes);
     if (!recipe) {
       put({ phase: "choosing", progress: null });
-      return sayNoEvents(pick);
+      return summary.recording.about.untold ? undefined : sayNoEvents(pick);
     }
     const atOnce = !guessed && (waiting || (proposal && isSmall(summary)));
     put({ recipe, why: waiting || guessed ? "" : (proposal?.why ?? ""), progress: null, phase: atOnce ? "working" : "choosing" });
@@ -128,7 +133,7 @@ export function door({ bridge, change: edit }, compute) {
     const { finished, summary, source } = now();
     const ofChoices = kind === "contrast" || kind === "recipe";
     const ways = [
-      salvage && files && { label: `Open the ${count(salvage.records)} whole records`, main: true, act: () => void open({ files, salvage: true }) },
+      salvage && files && { label: `Open the ${count(salvage.records)} whole records`, main: true, act: () => void open({ files, salvage: true, given: last && "files" in last ? last.given : {} }) },
       ofChoices && finished && { label: "Back to the choices before", main: true, act: () => back(finished) },
       kind === "recipe" && !finished && { label: "Open another recipe…", act: () => find("#recipe-file").click() },
       ofChoices && summary && { label: "Propose afresh", act: () => void afresh() },
@@ -191,9 +196,32 @@ export function door({ bridge, change: edit }, compute) {
     failed,
     /** @param {File[]} files */
     async files(files) {
-      const own = files.length === 1 && files[0]?.name.endsWith(".json") ? files[0] : null;
-      await (own ? this.recipe(own) : open({ files: withRecording(files), salvage: false }));
+      const own = files.length === 1 && files[0]?.name.endsWith(".json") && !BESIDE.test(files[0].name) ? files[0] : null;
+      if (own) return this.recipe(own);
+      const [alone] = files;
+      if (files.length === 1 && alone && (await isBeside(alone).catch(() => false))) return this.beside(alone);
+      const joined = withRecording(files);
+      await open({ files: joined, salvage: false, given: joined === files ? {} : given() });
     },
+    /** A table that belongs to the open recording, in place of one of the same name. @param {File} file */
+    async beside(file) {
+      if (!good || !("files" in good)) return;
+      await open({ ...good, files: [...good.files.filter(({ name }) => name !== file.name), file] });
+    },
+    /** The open recording without one of its side files. @param {string} name */
+    async without(name) {
+      if (good && "files" in good) await open({ ...good, files: good.files.filter((file) => file.name !== name) });
+    },
+    /** Opens the recording again with what was told of it. @param {Given} told */
+    async tell(told) {
+      if (good && "files" in good) await open({ ...good, given: { ...given(), ...told } });
+    },
+    /** What was told of the open recording. */
+    told: () => given(),
+    /** A file of the open recording, by name; of a demo there is none. @param {string} name */
+    file: (name) => (good && "files" in good ? (good.files.find((file) => file.name === name) ?? null) : null),
+    /** Whether the open recording is a file, which others can join. */
+    isFile: () => good !== null && "files" in good,
     /** @param {string} which */
     demo: (which) => open({ demo: which }),
     /** @param {File} file */
@@ -235,6 +263,23 @@ export function door({ bridge, change: edit }, compute) {
       sayEnded(() => void again(), summary && recipe ? takeRecipe : null);
     },
   };
+
+  /** @returns {Given} */
+  function given() {
+    return good && "files" in good ? (good.given ?? {}) : {};
+  }
+
+  /** How a file is to be opened: a recipe that waits may tell what the file does not. @param {{ salvage: boolean, given?: Given }} source */
+  function asked({ salvage, given: told }) {
+    return { salvage, given: { ...waiting?.recipe.recording, ...told } };
+  }
+
+  /** Whether a table that was dropped alone is about the open recording. @param {File} file */
+  async function isBeside(file) {
+    const channels = (now().summary?.channels ?? []).map(({ name }) => name);
+    if (!good || !("files" in good) || !channels.length || !TABLE.test(file.name) || file.size > TABLE_BYTES) return false;
+    return bridge.isSideTable(file.name, new Uint8Array(await file.arrayBuffer()), channels);
+  }
 
   /** Side files alone belong to the recording that is open. @param {File[]} files */
   function withRecording(files) {

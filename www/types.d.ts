@@ -7,7 +7,7 @@ export interface EventWindow {
 export interface Recipe {
   teasel_recipe: number;
   recording?: Given;
-  channels: { leave_out: string[]; interpolate: string[]; reference: "as recorded" | "average" | string[] };
+  channels: { leave_out: string[]; interpolate: string[]; reference: "as recorded" | "average" | string[]; include?: string[]; positions?: Positions };
   filter: { high_pass_hz: number | null; low_pass_hz: number | null; notch_hz: number[]; resample_hz: number | null };
   keep: number | "auto" | "best";
   measure: "typical" | "total";
@@ -16,6 +16,10 @@ export interface Recipe {
   components: number;
   evidence: { folds: number; permutations: number; bootstrap: number; seed: number };
 }
+export type Positions =
+  | { grid: { rows: number; columns: number; spacing_mm: number; first: string; along: string; prefix?: string } }
+  | { probe: { spacing_um: number; order: string; prefix?: string } }
+  | { at: Record<string, number[]> };
 export interface RecordingCard {
   name: string;
   format: string;
@@ -25,9 +29,40 @@ export interface RecordingCard {
   others: { name: string; unit: string; rate_hz: number; reason: string }[];
   events: Record<string, number>;
   event_onsets_s: Record<string, number[]>;
+  layout: { kind: "head" | "plane" | "line" | "frames" };
+  about: About;
   side_files: string[];
   warnings: string[];
   envelope: number[];
+}
+/** What a header and side files tell beside samples and events. */
+export interface About {
+  start: string | null;
+  kinds: Record<string, string>;
+  /** Channels that a side file sets aside, with the reason. */
+  aside: Record<string, string>;
+  mains_hz: number | null;
+  reference: string | null;
+  positions: string | null;
+  /** A table of events whose columns have to be told. */
+  untold: string | null;
+}
+export interface EventColumns {
+  onset: string;
+  unit: "s" | "ms" | "samples";
+  label?: string | null;
+  duration?: string | null;
+}
+export interface EventsPreview {
+  columns: string[];
+  rows: string[][];
+  count: number;
+  mapping: EventColumns;
+  labels: [string, number][];
+  more_labels: number;
+  span_s: [number, number] | null;
+  late: number;
+  problem: Problem | null;
 }
 export type ChannelState =
   | { state: "used" | "interpolated" | "left-out" }
@@ -94,6 +129,8 @@ export interface Sheet {
 export interface Summary {
   recording: RecordingCard;
   channels: ChannelCard[];
+  /** What is told of the recording, in order. */
+  facts: { label: string; text: string }[];
 }
 export interface Span {
   text: string;
@@ -130,6 +167,7 @@ export interface Given {
   unit?: string;
   axes?: string;
   variable?: string;
+  events?: EventColumns;
 }
 export interface PlotBox {
   left: number;
@@ -219,6 +257,8 @@ export interface Bridge {
   plotBox(figure: Figure, width: number, height: number): PlotBox | null;
   svg(figure: Figure, width: number, height: number): string;
   table(figure: Figure): Table;
+  eventsPreview(name: string, bytes: Uint8Array, columns: EventColumns | null, rate_hz: number, span_s: number): EventsPreview;
+  isSideTable(name: string, bytes: Uint8Array, channels: string[]): boolean;
   parseRecipe(text: string): Recipe;
   linkEncode(recipe: Recipe, withNames: boolean): string;
   recipeText(recipe: Recipe): string;

@@ -5,13 +5,13 @@ use crate::take;
 use js_sys::Function;
 use serde::{Deserialize, Serialize};
 use std::mem;
-use teasel_core::analysis::{self, Analysis, Progress, Proposal, Stage};
+use teasel_core::analysis::{self, Analysis, Progress, Proposal, Stage, Summary};
 use teasel_core::demo;
 use teasel_core::error::{Kind, Problem};
 use teasel_core::recipe::{Given, Recipe, given_check};
 use teasel_core::recording::{OpenOptions, Opening, Recording, SideFile};
 use teasel_core::sheet::Sheet;
-use teasel_core::takeaway::readings;
+use teasel_core::takeaway::{Fact, facts, readings};
 use wasm_bindgen::JsValue;
 use wasm_bindgen::prelude::wasm_bindgen;
 
@@ -43,6 +43,14 @@ pub struct NamedBytes {
     /// Content.
     #[serde(with = "serde_bytes")]
     pub bytes: Vec<u8>,
+}
+
+/// A [`Summary`], and what is told of it.
+#[derive(Serialize)]
+struct Summed {
+    #[serde(flatten)]
+    summary: Summary,
+    facts: Vec<Fact>,
 }
 
 /// [`Progress`], and whether nothing is left.
@@ -113,9 +121,13 @@ impl Session {
         Ok(())
     }
 
-    /// `{recording, channels}` of what is open, before any recipe.
+    /// `{recording, channels, facts}` of what is open, before any recipe.
     pub fn summary(&self) -> Outcome<JsValue> {
-        to_js(&analysis::summary(self.recording()?))
+        let summary = analysis::summary(self.recording()?);
+        to_js(&Summed {
+            facts: facts(&summary.recording, &summary.channels),
+            summary,
+        })
     }
 
     /// `{recipe, why}`: a demo's own question, else one for the most frequent event; null where no event is frequent enough.

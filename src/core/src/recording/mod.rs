@@ -24,7 +24,7 @@ mod units;
 pub use budget::MEMORY_BYTES;
 pub use given::UNITS;
 pub use opening::{MemorySource, OpenOptions, Opening, open};
-pub use sides::{EventsPreview, events_preview, lies_beside};
+pub use sides::{EventsPreview, events_preview, is_side_table, lies_beside};
 
 use serde::{Deserialize, Serialize};
 use std::collections::BTreeMap;

@@ -281,6 +281,11 @@ impl EventsPreview {
     }
 }
 
+/// Whether a column holds words in most of its rows.
+pub(super) fn holds_words(side: &SideFile) -> bool {
+    Seen::look(side).is_ok_and(|seen| seen.cells.iter().any(|(numbers, words, _)| words > numbers))
+}
+
 /// The first rows of a table and what its columns hold.
 struct Seen {
     columns: Vec<String>,

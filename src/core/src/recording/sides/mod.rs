@@ -174,6 +174,16 @@ fn general_first<'a>(sides: &[&'a SideFile], recording: &str) -> Vec<&'a SideFil
     sides
 }
 
+/// Whether a table with this name and content is about a recording with these channels, rather than a recording itself: it places channels,
+/// names onsets, or holds words where a recording would hold numbers.
+pub fn is_side_table(side: &SideFile, channels: &[&str]) -> bool {
+    match about(side, channels) {
+        About::Events | About::Channels | About::Electrodes => true,
+        About::Table => events::holds_words(side),
+        _ => false,
+    }
+}
+
 /// By its name, else by what stands in it.
 fn about(side: &SideFile, channels: &[&str]) -> About {
     let name = side.name.to_lowercase();
