@@ -230,6 +230,10 @@ impl Reader for EdfReader {
         Ok((end(self.done), end(self.records)))
     }
 
+    fn start_s(&self) -> Option<f64> {
+        self.header.start_s
+    }
+
     fn finish(mut self: Box<Self>) -> Result<Recording> {
         self.warn_of_notes();
         Ok(Recording {
