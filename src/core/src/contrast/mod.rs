@@ -12,5 +12,6 @@
 //! Stronger components come by falling λ or δ, weaker ones by rising ratio.
 pub mod fit;
 pub mod linalg;
+pub mod reject;
 pub mod space;
 pub mod windows;
