@@ -418,7 +418,7 @@ pub struct KeepCurve {
 }
 
 /// One component: a spatial filter and everything known about it.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
 pub struct Component {
     /// Ratio in a typical trial.
     pub typical: TypicalRatio,
@@ -451,9 +451,10 @@ pub struct Component {
 }
 
 /// Ratio in a typical trial: exp of the mean log ratio.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
 pub struct TypicalRatio {
-    /// On the windows it was fitted to.
+    /// On the windows it was fitted to; not a number (null in JSON) where the kind of contrast has no ratio in a single trial.
+    #[serde(deserialize_with = "number_or_nan")]
     pub fitted: f64,
     /// On windows it never saw.
     pub held_out: Option<f64>,
@@ -461,8 +462,12 @@ pub struct TypicalRatio {
     pub interval: Option<[f64; 2]>,
 }
 
+fn number_or_nan<'de, D: serde::Deserializer<'de>>(from: D) -> Result<f64, D::Error> {
+    Ok(Option::deserialize(from)?.unwrap_or(f64::NAN))
+}
+
 /// Ratio of pooled variances.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
 pub struct TotalRatio {
     /// On the windows it was fitted to.
     pub fitted: f64,

@@ -16,12 +16,13 @@
 use super::bootstrap::{below, generator, quantile};
 use crate::contrast::linalg::{eigenvalues, gram, unpack};
 use crate::contrast::windows::Window;
+use crate::fourier::RealTransform;
 use crate::sheet::DimensionsCard;
-use realfft::RealFftPlanner;
+use rustfft::num_complex::Complex;
 use std::f64::consts::PI;
 
-/// Stream of the seed for surrogates.
-const STREAM_SURROGATES: u64 = 3;
+/// Surrogate i uses stream `STREAM_SURROGATES + i` of the seed.
+const STREAM_SURROGATES: u64 = 1 << 48;
 const MOST_SURROGATES: usize = 100;
 const FEWEST_SURROGATES: usize = 20;
 /// Multiplications that all surrogates together may take.
@@ -155,10 +156,7 @@ impl Counting {
         } else if self.observed.is_empty() {
             self.observed = self.spectrum(&vec![0; self.series.len()]);
         } else if self.surrogates.len() < self.count {
-            let mut rng = generator(
-                self.seed,
-                STREAM_SURROGATES + ((self.surrogates.len() as u64) << 8),
-            );
+            let mut rng = generator(self.seed, STREAM_SURROGATES + self.surrogates.len() as u64);
             let n = self.series.first().map_or(1, Vec::len).max(1);
             let shifts: Vec<usize> = self.series.iter().map(|_| below(&mut rng, n)).collect();
             let values = self.spectrum(&shifts);
@@ -197,12 +195,9 @@ impl Counting {
     fn take(&mut self, channel: &[f32]) {
         let longest = self.windows.iter().map(|w| w.count).max().unwrap_or(1);
         let size = (2 * longest).next_power_of_two();
-        let mut planner = RealFftPlanner::<f64>::new();
-        let (forward, backward) = (
-            planner.plan_fft_forward(size),
-            planner.plan_fft_inverse(size),
-        );
-        let (mut input, mut output) = (forward.make_input_vec(), forward.make_output_vec());
+        let mut transform = RealTransform::new(size);
+        let mut input = vec![0.0; size];
+        let mut output = vec![Complex::default(); transform.bins()];
         let mut power = vec![0.0; output.len()];
         let mut series = Vec::with_capacity(self.windows.iter().map(|w| w.count).sum());
         for window in &self.windows {
@@ -213,19 +208,16 @@ impl Counting {
                 *slot = f64::from(*x) - mean;
             }
             series.extend_from_slice(&input[..part.len()]);
-            // Cannot fail: the plan made the buffers.
-            let done = forward.process(&mut input, &mut output);
-            debug_assert!(done.is_ok());
+            transform.transform(&input, &mut output);
             power
                 .iter_mut()
                 .zip(&output)
                 .for_each(|(p, z)| *p += z.norm_sqr());
         }
         for (z, p) in output.iter_mut().zip(&power) {
-            *z = realfft::num_complex::Complex::new(*p, 0.0);
+            *z = Complex::new(*p, 0.0);
         }
-        let done = backward.process(&mut output, &mut input);
-        debug_assert!(done.is_ok());
+        transform.transform_back(&output, &mut input);
         let whole = input.first().copied().filter(|r| *r > 0.0).unwrap_or(1.0);
         let correlation = input[..longest].iter().map(|r| r / whole).collect();
         let square = series.iter().map(|x| x * x).sum::<f64>() / series.len().max(1) as f64;

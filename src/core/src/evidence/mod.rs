@@ -7,6 +7,7 @@ pub mod bootstrap;
 pub mod dimensions;
 pub mod heldout;
 pub mod permute;
+pub mod signflip;
 
 /// Under this many pairs (or windows a side) p and held-out ratios are withheld.
 pub const FEWEST: usize = 10;

@@ -27,12 +27,12 @@
 //! 1–40 Hz, or what the sampling rate leaves of it, by the discrete Fourier transform of single seconds (line removed, Hann window); at most
 //! 120 of them, spread evenly over the recording.
 use super::neighbours::Places;
+use crate::fourier::RealTransform;
 use crate::recording::{Recording, Stretch};
 use crate::sheet::{ChannelCard, ChannelQuality, Doubt, DoubtKind, QualityCard};
 use nalgebra::DMatrix;
-use realfft::{RealFftPlanner, RealToComplex, num_complex::Complex};
+use rustfft::num_complex::Complex;
 use std::f64::consts::PI;
-use std::sync::Arc;
 
 const MOST_SECONDS: usize = 120;
 /// Parts of the recording that likeness is the median over.
@@ -769,10 +769,9 @@ struct Second {
     length: usize,
     rate_hz: f64,
     taper: Vec<f64>,
-    fft: Arc<dyn RealToComplex<f64>>,
+    fft: RealTransform,
     input: Vec<f64>,
     output: Vec<Complex<f64>>,
-    scratch: Vec<Complex<f64>>,
     in_band: Vec<usize>,
     /// How many of these are looked at for likeness.
     likeness: usize,
@@ -782,7 +781,7 @@ struct Second {
 
 impl Second {
     fn new(length: usize, rate_hz: f64) -> Self {
-        let fft = RealFftPlanner::new().plan_fft_forward(length);
+        let fft = RealTransform::new(length);
         let taper: Vec<f64> = (0..length)
             .map(|i| 0.5 - 0.5 * (2.0 * PI * i as f64 / length as f64).cos())
             .collect();
@@ -806,9 +805,8 @@ impl Second {
         Second {
             length,
             rate_hz,
-            input: fft.make_input_vec(),
-            output: fft.make_output_vec(),
-            scratch: fft.make_scratch_vec(),
+            input: vec![0.0; length],
+            output: vec![Complex::default(); fft.bins()],
             fft,
             taper,
             likeness: in_band.iter().filter(|k| hz(**k) <= LIKENESS_HZ).count(),
@@ -833,11 +831,7 @@ impl Second {
         for (slot, weight) in self.input.iter_mut().zip(&self.taper) {
             *slot *= weight;
         }
-        // Cannot fail: all three buffers were made by the plan itself.
-        let done =
-            self.fft
-                .process_with_scratch(&mut self.input, &mut self.output, &mut self.scratch);
-        debug_assert!(done.is_ok());
+        self.fft.transform(&self.input, &mut self.output);
         let inside = self.in_band.iter().map(|k| self.output[*k] * self.scale);
         let enough = self.above.len() as f64 * self.rate_hz / self.length as f64 >= 10.0;
         let above = enough.then(|| {
