@@ -19,6 +19,7 @@ import { mountPositions } from "./positions.js";
 import { mountProgress } from "./progress.js";
 import { mountReadings } from "./readings.js";
 import { mountRecipeLink } from "./recipe-link.js";
+import { mountRejection } from "./rejection.js";
 import { mountRecording } from "./recording.js";
 import { follow, now, put } from "./state.js";
 import { numbersOf } from "./tables.js";
@@ -61,6 +62,7 @@ function join(bridge) {
   mountMapping(app, doors);
   mountPositions(app, doors);
   mountWindows(app);
+  mountRejection(app);
   mountCompression(app);
   mountComponents(app);
   mountEvidence(app, () => doors.goOn());

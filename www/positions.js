@@ -102,7 +102,7 @@ function lacks() {
   const aside = summary?.recording.about.aside ?? {};
   const names = (summary?.channels ?? []).map(({ name }) => name);
   const numbers = names.flatMap((name) => {
-    if (!typed.prefix) return name in aside && !recipe?.channels.include?.includes(name) ? [] : [0];
+    if (!typed.prefix) return name in aside && !recipe?.channels.keep?.includes(name) ? [] : [0];
     const rest = name.startsWith(typed.prefix) ? /^[ _-]*(\d+)$/.exec(name.slice(typed.prefix.length))?.[1] : undefined;
     return rest === undefined ? [] : [Number(rest)];
   });

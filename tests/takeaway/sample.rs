@@ -19,6 +19,7 @@ pub fn recipe() -> Recipe {
             low_pass_hz: Some(40.0),
             notch_hz: vec![50.0],
             resample_hz: None,
+            ..Filter::default()
         },
         keep: Keep::Number(5),
         measure: Measure::Typical,
@@ -26,16 +27,8 @@ pub fn recipe() -> Recipe {
         components: 2,
         evidence: Evidence::default(),
         ..Recipe::asking(Contrast::Windows {
-            signal: EventWindow {
-                event: "buoy".into(),
-                from_s: 0.2,
-                to_s: 1.0,
-            },
-            reference: EventWindow {
-                event: "buoy".into(),
-                from_s: -1.0,
-                to_s: -0.2,
-            },
+            signal: EventWindow::new("buoy", 0.2, 1.0),
+            reference: EventWindow::new("buoy", -1.0, -0.2),
         })
     }
 }
@@ -155,7 +148,14 @@ pub fn sheet() -> Sheet {
                 "high-pass 1 Hz, 1 Hz transition, 825 taps".into(),
                 "low-pass 40 Hz, 10 Hz transition, 83 taps".into(),
             ],
+            before_filters: Vec::new(),
+            ranks: Vec::new(),
+            response: None,
         }),
+        quality: None,
+        rejection: None,
+        dimensions: None,
+        principal: Vec::new(),
         windows: Some(WindowsCard {
             paired: true,
             signal: side(40, &[("outside", 1), ("partner", 1)]),
@@ -286,7 +286,9 @@ pub fn hostile() -> Sheet {
     sheet.recording.warnings = vec!["<svg onload=alert(1)>".into()];
     sheet.warnings = vec!["<svg onload=alert(1)>".into()];
     sheet.channels[5].state = ChannelState::NeedsALook("the same as <script>".into());
-    let Contrast::Windows { signal, reference } = &mut sheet.recipe.contrast;
+    let Contrast::Windows { signal, reference } = &mut sheet.recipe.contrast else {
+        panic!("a contrast of event windows")
+    };
     signal.event = HOSTILE[0].into();
     reference.event = HOSTILE[0].into();
     sheet.recipe.channels.leave_out = vec![names[7].clone()];

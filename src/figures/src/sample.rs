@@ -51,11 +51,7 @@ pub fn sheet(channels: usize, trials: usize) -> Sheet {
     let swell: Vec<f64> = (0..20)
         .map(|i| 8.0 + 225.0 * (i as f64 + 0.6 * chance.even()) / 20.0)
         .collect();
-    let window = |from_s, to_s| EventWindow {
-        event: "buoy".into(),
-        from_s,
-        to_s,
-    };
+    let window = |from_s, to_s| EventWindow::new("buoy", from_s, to_s);
     let mut stronger: Vec<Component> = [
         (2.83, 0.004, 21.0, "CP1"),
         (1.69, 0.034, 21.0, "C4"),
@@ -87,6 +83,7 @@ pub fn sheet(channels: usize, trials: usize) -> Sheet {
                 low_pass_hz: Some(40.0),
                 notch_hz: vec![50.0],
                 resample_hz: None,
+                ..Filter::default()
             },
             keep: Keep::Number(12),
             measure: Measure::Typical,
@@ -104,9 +101,16 @@ pub fn sheet(channels: usize, trials: usize) -> Sheet {
             rank: used.len() - 1,
             longest_filter_s: 1.0,
             filters: Vec::new(),
+            before_filters: Vec::new(),
+            ranks: Vec::new(),
+            response: None,
         }),
         channels: cards,
+        quality: None,
         windows: None,
+        rejection: None,
+        dimensions: None,
+        principal: Vec::new(),
         compression: Some(compression(used.len() - 1)),
         curve: Some(curve(used.len() - 1, &mut chance)),
         leading: teasel_core::sheet::End::Stronger,

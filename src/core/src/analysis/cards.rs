@@ -3,18 +3,21 @@ use super::work::Work;
 use crate::contrast::fit::{Direction, Ends};
 use crate::contrast::linalg::{abs_cosine, packed_len, quadratic};
 use crate::contrast::space::Space;
+use crate::contrast::windows::Exchange;
 use crate::describe::placing::placed;
+use crate::evidence::dimensions::outstanding;
 use crate::evidence::heldout::{
-    Design, Ground, Scores, best_of, diagonal, fill, log_total, log_typical, pair_log_ratios,
-    score_into, total_ratio, typical_ratio, variances,
+    Design, Ground, Scores, best_of, fill, log_total, log_typical, pair_log_ratios, score_into,
+    total_ratio, typical_ratio, variances,
 };
 use crate::evidence::permute::{null_hypothesis, p_value};
-use crate::prepare::Prepared;
-use crate::recipe::{Contrast, Keep, KeepWord, Recipe};
+use crate::prepare::{Prepared, Quality};
+use crate::recipe::{Keep, KeepWord, Measure, Recipe};
 use crate::recording::Recording;
 use crate::sheet::{
-    Comparator, ComparatorKind, Component, CompressionCard, End, FoldCard, Permutation,
-    RecordingCard, Sheet, TotalRatio, TrialScore, TypicalRatio,
+    ChannelCard, ChannelState, Comparator, ComparatorKind, Component, CompressionCard, End,
+    FoldCard, Permutation, PrincipalCard, RankStep, RecordingCard, Sheet, Step, TotalRatio,
+    TrialScore, TypicalRatio,
 };
 use std::collections::BTreeMap;
 
@@ -62,9 +65,13 @@ pub(super) fn begin(recording: &Recording, recipe: &Recipe) -> Sheet {
         },
         recipe: recipe.clone(),
         channels: Vec::new(),
+        quality: None,
         preparation: None,
         windows: None,
+        rejection: None,
         compression: None,
+        dimensions: None,
+        principal: Vec::new(),
         curve: None,
         shrinkage: None,
         leading: End::default(),
@@ -106,6 +113,78 @@ fn envelope(recording: &Recording) -> Vec<f64> {
     out
 }
 
+/// Marks used channels that the comparison doubts, unless the recipe says that they were looked at and kept.
+pub(super) fn doubt(cards: &mut [ChannelCard], quality: Option<&Quality>, recipe: &Recipe) {
+    let Some(quality) = quality else { return };
+    for (card, found) in cards.iter_mut().zip(&quality.card.channels) {
+        if let (ChannelState::Used, Some(first)) = (&card.state, found.doubts.first())
+            && !recipe.channels.keep.contains(&card.name)
+        {
+            card.state = ChannelState::NeedsALook(first.reason.clone());
+        }
+    }
+}
+
+/// Channels and rank after each step of the preparation.
+pub(super) fn ranks(work: &mut Work) {
+    let (Some(prepared), Some(quality), Some(ground)) =
+        (&work.prepared, &work.quality, &work.ground)
+    else {
+        return;
+    };
+    let steps = prepared.steps.iter().filter_map(|step| {
+        Some(RankStep {
+            step: step.step,
+            channels: step.matrix.nrows(),
+            rank: quality.rank(&step.matrix)?,
+            why: step.why.clone(),
+        })
+    });
+    let samples: f64 = work.covariances.weights.iter().sum();
+    let last = RankStep {
+        step: Step::Filter,
+        channels: prepared.channels.len(),
+        rank: ground.space.rank,
+        why: format!(
+            "Filters take no channel away; this is what the channels span inside the windows, over {samples} samples about their windows’ means. C can be no larger."
+        ),
+    };
+    let ranks: Vec<RankStep> = steps.chain(std::iter::once(last)).collect();
+    if let Some(card) = &mut work.sheet.preparation {
+        card.ranks = ranks;
+    }
+}
+
+/// A principal dimension: `row` of the whitening and its course over all prepared samples.
+pub(super) fn principal(space: &Space, at: usize, row: &[f64], course: &[f64]) -> PrincipalCard {
+    let value = space.eigenvalues[at];
+    let all: f64 = space.eigenvalues.iter().filter(|e| **e > 0.0).sum();
+    let largest = row
+        .iter()
+        .copied()
+        .fold(0.0_f64, |m, x| if x.abs() > m.abs() { x } else { m });
+    let sign = if largest < 0.0 { -1.0 } else { 1.0 };
+    let n = course.len();
+    let mean = course.iter().sum::<f64>() / n.max(1) as f64;
+    let bins = ENVELOPE_BINS.min(n);
+    let at = |b: usize| (b as u64 * n as u64 / bins as u64) as usize;
+    let bin = |b: usize| {
+        let part = &course[at(b)..at(b + 1)];
+        part.iter()
+            .fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), x| {
+                let x = sign * (x - mean);
+                (low.min(x), high.max(x))
+            })
+    };
+    let ends: Vec<(f64, f64)> = (0..bins).map(bin).collect();
+    PrincipalCard {
+        share: value / all,
+        pattern: row.iter().map(|w| sign * w * value).collect(),
+        low: ends.iter().map(|e| e.0 as f32).collect(),
+        high: ends.iter().map(|e| e.1 as f32).collect(),
+    }
+}
+
 /// Takes back what no longer holds.
 pub(super) fn forget(sheet: &mut Sheet, recipe: &Recipe, stale: &Stale) {
     sheet.recipe = recipe.clone();
@@ -115,6 +194,9 @@ pub(super) fn forget(sheet: &mut Sheet, recipe: &Recipe, stale: &Stale) {
     }
     if stale.windows {
         sheet.windows = None;
+        sheet.rejection = None;
+        sheet.dimensions = None;
+        sheet.principal.clear();
     }
     if stale.method {
         sheet.warnings = sheet.recording.warnings.clone();
@@ -206,7 +288,7 @@ pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
     let weights = &work.covariances.weights;
     let component = |d: &Direction| -> Component {
         let (filter, pattern) = filter_and_pattern(ground, d, weights, &design.signal);
-        let v = variances(&ground.space, &d.u);
+        let v = variances(&ground.space, &d.u, &design.signal);
         let largest = (0..pattern.len()).fold(0, |best, i| {
             if pattern[i].abs() > pattern[best].abs() {
                 i
@@ -216,7 +298,7 @@ pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
         });
         Component {
             typical: TypicalRatio {
-                fitted: log_typical(&v, design).exp(),
+                fitted: fitted_typical(&v, design),
                 held_out: None,
                 interval: None,
             },
@@ -256,9 +338,21 @@ pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
     });
     if let Some(card) = &mut work.sheet.preparation {
         card.rank = ground.space.rank;
+        if let Some(last) = card.ranks.last_mut() {
+            last.rank = ground.space.rank;
+        }
     }
     guides(&mut work.sheet);
     work.sheet.warnings = warnings(work, recipe);
+}
+
+/// The fitted ratio in a typical trial; not a number where the kind has none.
+fn fitted_typical(variances: &[f64], design: &Design) -> f64 {
+    if design.exchange == Exchange::Flip {
+        f64::NAN
+    } else {
+        log_typical(variances, design).exp()
+    }
 }
 
 /// Those directions of a fit that lie on their own side of 1.
@@ -313,6 +407,23 @@ pub(super) fn guides(sheet: &mut Sheet) {
     });
     let share_95 = share_95.count().max(2).min(card.rank);
     card.guides.insert("share_95".into(), share_95);
+    if let Some(found) = &sheet.dimensions {
+        let above = |limit: f64| {
+            let values = card.eigenvalues.iter().take(card.rank);
+            values.filter(|e| **e > limit).count()
+        };
+        let parallel = outstanding(&found.correlation, &found.surrogate_95);
+        card.guides.insert("parallel_analysis".into(), parallel);
+        let rules = [
+            ("noise_edge", found.noise_edge),
+            ("hard_threshold", found.hard_threshold),
+        ];
+        for (name, limit) in rules {
+            if let Some(limit) = limit {
+                card.guides.insert(name.into(), above(limit));
+            }
+        }
+    }
     let Some(curve) = &sheet.curve else { return };
     // Held-out log ratios in the direction of the leading end.
     let sign = if sheet.leading == End::Stronger {
@@ -405,7 +516,7 @@ pub(super) fn held_out(work: &mut Work, recipe: &Recipe) {
             }
         }
     }
-    work.sheet.folds = leading.map_or_else(Vec::new, |scores| fold_cards(&scores, design));
+    work.sheet.folds = leading.map_or_else(Vec::new, |scores| fold_cards(&scores, weights, design));
     work.sheet.compare = comparators(work_parts(ground, design, prepared, keep), work, recipe);
     work.sheet.warnings = warnings(work, recipe);
 }
@@ -415,7 +526,7 @@ fn trial_scores(
     design: &Design,
     selection: &crate::contrast::windows::Selection,
 ) -> Vec<TrialScore> {
-    if !design.paired {
+    if !design.paired || design.exchange == Exchange::Flip {
         return Vec::new();
     }
     let logs = pair_log_ratios(scores, design);
@@ -432,7 +543,13 @@ fn trial_scores(
         .collect()
 }
 
-fn fold_cards(scores: &Scores, design: &Design) -> Vec<FoldCard> {
+fn fold_cards(scores: &Scores, weights: &[f64], design: &Design) -> Vec<FoldCard> {
+    // What repeats has no typical ratio: its folds are told by the total one.
+    let repeated = if design.exchange == Exchange::Flip {
+        total_ratio(1.0, Some(scores), weights, design).folds
+    } else {
+        Vec::new()
+    };
     (0..design.folds)
         .map(|f| {
             let inside: Scores = scores
@@ -443,10 +560,11 @@ fn fold_cards(scores: &Scores, design: &Design) -> Vec<FoldCard> {
             let trials = (0..scores.len())
                 .filter(|k| design.fold[*k] == f && (design.signal[*k] || !design.paired))
                 .count();
-            FoldCard {
-                trials,
-                ratio: log_typical(&inside, design).exp(),
-            }
+            let ratio = repeated
+                .get(f)
+                .copied()
+                .unwrap_or_else(|| log_typical(&inside, design).exp());
+            FoldCard { trials, ratio }
         })
         .collect()
 }
@@ -485,12 +603,15 @@ fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator
     let weights = &all.weights;
     let everything = vec![true; weights.len()];
     let shares: f64 = ground.space.eigenvalues.iter().filter(|e| **e > 0.0).sum();
-    let pc_variance = |g: &Ground, i: usize, k: usize| diagonal(&g.space.covariances[k], i);
-    let channel_variance = |i: usize, k: usize| diagonal(&all.packed[k], i);
+    let signal = &design.signal;
+    let of_pc = |g: &Ground, i: usize, of: &dyn Fn(usize) -> bool| {
+        g.space.component_variances(i, signal, of)
+    };
+    let of_channel = |i: usize, of: &dyn Fn(usize) -> bool| all.channel_variances(i, signal, of);
     let best_pc = best_of(
         work.sheet.leading,
         keep,
-        |i, k| pc_variance(ground, i, k),
+        |i| of_pc(ground, i, &|_| true),
         weights,
         design,
         &everything,
@@ -499,48 +620,46 @@ fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator
     let best_channel = best_of(
         work.sheet.leading,
         all.channels,
-        channel_variance,
+        |i| of_channel(i, &|_| true),
         weights,
         design,
         &everything,
         recipe.measure,
     );
-    let make =
-        |kind: ComparatorKind, whole: &dyn Fn(usize) -> f64, chosen_in: &dyn Fn(usize) -> usize| {
-            let fitted: Vec<f64> = (0..weights.len()).map(whole).collect();
-            let mut scores = vec![f64::NAN; weights.len()];
-            for (f, g) in work.folds.iter().enumerate() {
-                let i = chosen_in(f);
-                match kind {
-                    ComparatorKind::BestChannel => {
-                        fill(&mut scores, weights, design, f, |k| channel_variance(i, k))
-                    }
-                    ComparatorKind::FirstPc | ComparatorKind::BestPc => {
-                        fill(&mut scores, weights, design, f, |k| pc_variance(g, i, k))
-                    }
+    let make = |kind: ComparatorKind, fitted: Vec<f64>, chosen_in: &dyn Fn(usize) -> usize| {
+        let mut scores = vec![f64::NAN; weights.len()];
+        for (f, g) in work.folds.iter().enumerate() {
+            let i = chosen_in(f);
+            match kind {
+                ComparatorKind::BestChannel => {
+                    fill(&mut scores, weights, design, f, |of| of_channel(i, of))
+                }
+                ComparatorKind::FirstPc | ComparatorKind::BestPc => {
+                    fill(&mut scores, weights, design, f, |of| of_pc(g, i, of))
                 }
             }
-            let (count, seed) = (recipe.evidence.bootstrap, recipe.evidence.seed);
-            Comparator {
-                kind,
-                chosen: None,
-                chosen_in_folds: None,
-                share: None,
-                typical: typical_ratio(
-                    log_typical(&fitted, design).exp(),
-                    Some(&scores),
-                    design,
-                    count,
-                    seed,
-                ),
-                total: total_ratio(
-                    log_total(&fitted, weights, design, |_| true).exp(),
-                    Some(&scores),
-                    weights,
-                    design,
-                ),
-            }
-        };
+        }
+        let (count, seed) = (recipe.evidence.bootstrap, recipe.evidence.seed);
+        Comparator {
+            kind,
+            chosen: None,
+            chosen_in_folds: None,
+            share: None,
+            typical: typical_ratio(
+                fitted_typical(&fitted, design),
+                Some(&scores),
+                design,
+                count,
+                seed,
+            ),
+            total: total_ratio(
+                log_total(&fitted, weights, design, |_| true).exp(),
+                Some(&scores),
+                weights,
+                design,
+            ),
+        }
+    };
     let share_of = |i: usize| Some(ground.space.eigenvalues[i] / shares);
     let (pc, pc_folds) = most_frequent(work.fits.iter().map(|f| f.best_pc));
     let (channel, channel_folds) = most_frequent(work.fits.iter().map(|f| f.best_channel));
@@ -551,7 +670,7 @@ fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator
             share: share_of(pc),
             ..make(
                 ComparatorKind::BestPc,
-                &|k| pc_variance(ground, best_pc, k),
+                of_pc(ground, best_pc, &|_| true),
                 &|f| work.fits[f].best_pc,
             )
         },
@@ -560,18 +679,14 @@ fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator
             chosen_in_folds: Some(channel_folds),
             ..make(
                 ComparatorKind::BestChannel,
-                &|k| channel_variance(best_channel, k),
+                of_channel(best_channel, &|_| true),
                 &|f| work.fits[f].best_channel,
             )
         },
         Comparator {
             chosen: Some("1".into()),
             share: share_of(0),
-            ..make(
-                ComparatorKind::FirstPc,
-                &|k| pc_variance(ground, 0, k),
-                &|_| 0,
-            )
+            ..make(ComparatorKind::FirstPc, of_pc(ground, 0, &|_| true), &|_| 0)
         },
     ]
 }
@@ -610,7 +725,7 @@ pub(super) fn permuted(work: &mut Work, recipe: &Recipe) {
         done: work.null.len(),
         distinct: plan.distinct,
         exact: plan.exact,
-        null: null_hypothesis(design),
+        null: null_hypothesis(design.exchange).into(),
         largest,
         smallest,
         observed_stronger,
@@ -663,6 +778,7 @@ fn warnings(work: &Work, recipe: &Recipe) -> Vec<String> {
     if let Some(prepared) = &work.prepared {
         out.extend(prepared.warnings.iter().cloned());
         out.extend(edge_warning(prepared, recipe));
+        out.extend(mirrored_warning(work, prepared));
     }
     out.extend(sheet.recording.warnings.iter().cloned());
     out
@@ -670,6 +786,9 @@ fn warnings(work: &Work, recipe: &Recipe) -> Vec<String> {
 
 /// Where a few large windows decide between the two measures, says how many.
 fn disagreement(work: &Work) -> Option<String> {
+    if !work.sheet.recipe.contrast.allows(Measure::Typical) {
+        return None;
+    }
     let component = work.sheet.first()?;
     let typical = component
         .typical
@@ -688,6 +807,7 @@ fn disagreement(work: &Work) -> Option<String> {
     let v = variances(
         &ground.space,
         &leading_direction(ends, work.sheet.leading)?.u,
+        &design.signal,
     );
     let side = factor > 1.0;
     let mut powers: Vec<f64> = v
@@ -714,10 +834,32 @@ fn disagreement(work: &Work) -> Option<String> {
 
 /// Says when a window is short against the longest filter.
 fn edge_warning(prepared: &Prepared, recipe: &Recipe) -> Option<String> {
-    let Contrast::Windows { signal, reference } = &recipe.contrast;
+    let (signal, reference) = recipe.contrast.event_windows()?;
     let shortest = (signal.to_s - signal.from_s).min(reference.to_s - reference.from_s);
     let filter = prepared.card.longest_filter_s;
     (filter > 5.0 * shortest).then(|| {
         format!("The longest filter spans {filter:.2} s, the shorter windows {shortest:.2} s: what happens beside a window reaches into it.")
+    })
+}
+
+/// Says how many windows lie where the filters see mirrored samples.
+fn mirrored_warning(work: &Work, prepared: &Prepared) -> Option<String> {
+    let reach_s = prepared.card.response.as_ref()?.reach_s;
+    let reach = (reach_s * prepared.rate_hz).round() as usize;
+    let windows = &work.selection.as_ref()?.windows;
+    let near = |w: &&crate::contrast::windows::Window| {
+        prepared.stretches.iter().any(|s| {
+            let (first, end) = (s.first, s.first + s.count);
+            w.first >= first
+                && w.first + w.count <= end
+                && (w.first - first < reach || end - w.first - w.count < reach)
+        })
+    };
+    let count = windows.iter().filter(near).count();
+    (count > 0).then(|| {
+        format!(
+            "{count} of {} windows lie within {reach_s:.2} s of the start, the end or a gap, where the filters reach into mirrored samples.",
+            windows.len()
+        )
     })
 }

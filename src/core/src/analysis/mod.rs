@@ -8,6 +8,7 @@
 //! The first result (ratio, map, spectra) is on the sheet after [`Stage::Fitting`]; held-out ratios, the permutation test and the
 //! ratio against C follow, in this order.
 mod cards;
+mod describing;
 mod propose;
 mod summary;
 mod work;
@@ -20,7 +21,7 @@ use crate::recording::Recording;
 use crate::sheet::Sheet;
 pub use propose::{Proposal, propose};
 use serde::{Deserialize, Serialize};
-pub use summary::{Summary, fits, summary};
+pub use summary::{Summary, blank, fits, summary};
 use work::Work;
 
 /// What a step is about.

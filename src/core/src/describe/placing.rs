@@ -117,7 +117,7 @@ fn numbered(recording: &Recording, choices: &Channels, prefix: Option<&str>) -> 
             digits.parse::<usize>().ok()?.checked_sub(1)
         }
         None => {
-            let aside = recording.about.aside.contains_key(name) && !choices.include.contains(name);
+            let aside = recording.about.aside.contains_key(name) && !choices.keep.contains(name);
             if aside {
                 return None;
             }

@@ -26,7 +26,7 @@ const NEIGHBOURS_HZ: std::ops::RangeInclusive<f64> = 3.0..=8.0;
 /// 3–8 Hz away on both sides; the frequency that a side file gives, else the larger of the two. `None` where half the rate is too low or the stretch shorter than 2 s.
 ///
 /// # State
-/// What the recipe says comes first: left out, interpolated, or set aside by a side file and not included. Then unusable: a value that is not a finite number, or every stretch constant.
+/// What the recipe says comes first: left out, interpolated, or set aside by a side file and not kept. Then unusable: a value that is not a finite number, or every stretch constant.
 /// Then a doubt: the same samples as an earlier channel in use.
 ///
 /// # Positions
@@ -70,7 +70,7 @@ fn state_by_recipe(name: &str, recording: &Recording, recipe: &Recipe) -> Option
         Some(ChannelState::LeftOut)
     } else if named(&recipe.channels.interpolate) {
         Some(ChannelState::Interpolated)
-    } else if aside && !named(&recipe.channels.include) {
+    } else if aside && !named(&recipe.channels.keep) {
         Some(ChannelState::LeftOut)
     } else {
         None

@@ -16,13 +16,17 @@
 mod budget;
 pub mod edf;
 mod given;
+mod gzip;
+mod joined;
 mod names;
 mod opening;
 mod sides;
+mod table;
 mod units;
 
 pub use budget::MEMORY_BYTES;
 pub use given::UNITS;
+pub use joined::natural_order;
 pub use opening::{MemorySource, OpenOptions, Opening, open};
 pub use sides::{EventsPreview, events_preview, is_side_table, lies_beside};
 
@@ -66,7 +70,7 @@ pub struct About {
     pub start: Option<String>,
     /// Kinds of channels by name, as the table of channels gives them: `EEG`, `EOG`, ….
     pub kinds: BTreeMap<String, String>,
-    /// Channels that a side file sets aside, by name, with the reason: they are not analysed unless the recipe includes them.
+    /// Channels that a side file sets aside, by name, with the reason: they are not analysed unless the recipe keeps them.
     pub aside: BTreeMap<String, String>,
     /// Frequency of the mains where it was recorded.
     pub mains_hz: Option<f64>,

@@ -2,7 +2,7 @@
 //!
 //! # What is set aside
 //! Channels of kinds that are no measurement of the brain (eyes, heart, muscle, triggers, …) and channels marked bad stay in the recording, but
-//! are not analysed unless the recipe includes them. Where that would leave fewer than two, kinds set nothing aside: then they are what the
+//! are not analysed unless the recipe keeps them. Where that would leave fewer than two, kinds set nothing aside: then they are what the
 //! recording is about.
 use super::table::{Header, Table};
 use crate::error::Result;

@@ -1,8 +1,9 @@
 //! Readings of what was given and chosen: recording, channels, windows, compression.
 use super::judge;
 use super::{Line, Said, words};
-use crate::recipe::{Keep, KeepWord, Measure};
+use crate::recipe::{Contrast, Keep, KeepWord, Measure};
 use crate::sheet::{ChannelCard, ChannelState, End, Sheet, SideCard, WindowsCard};
+use crate::takeaway::kinds;
 
 fn said(text: impl Into<String>) -> Option<Line> {
     Some(Line::new(text.into()))
@@ -318,6 +319,19 @@ fn dropped(side: &SideCard, beyond: bool) -> Vec<String> {
                     "touch a span marked not to be used",
                 )
                 .to_string(),
+                "amplitude" => words::one(*n, "is too large", "are too large").to_string(),
+                "step" => {
+                    words::one(*n, "holds too large a step", "hold too large a step").to_string()
+                }
+                "flat-window" => {
+                    words::one(*n, "has too flat a channel", "have too flat a channel").to_string()
+                }
+                "covariance" => words::one(
+                    *n,
+                    "has an outlying covariance",
+                    "have an outlying covariance",
+                )
+                .to_string(),
                 other => format!(
                     "{} out as {}",
                     words::one(*n, "is", "are"),
@@ -331,7 +345,10 @@ fn dropped(side: &SideCard, beyond: bool) -> Vec<String> {
 
 pub(super) fn windows(sheet: &Sheet) -> Option<Said> {
     let card = sheet.windows.as_ref()?;
-    let (signal, reference) = words::windows(&sheet.recipe.contrast);
+    let Some((signal, reference)) = words::windows(&sheet.recipe.contrast) else {
+        let text = pieces(sheet, card);
+        return Some((text.join(rises(sheet)), windows_doubt(sheet)));
+    };
     let text = if card.paired {
         let asked = card.trials.len().max(card.signal.used);
         let line = Line::default()
@@ -369,6 +386,35 @@ pub(super) fn windows(sheet: &Sheet) -> Option<Said> {
             .then(".")
     };
     Some((text.join(rises(sheet)), windows_doubt(sheet)))
+}
+
+/// "**118** pieces of the 3 marked spans stand against **86** of the rest, **1.00 s** each."
+fn pieces(sheet: &Sheet, card: &WindowsCard) -> Line {
+    let [first, second] = kinds::sides(&sheet.recipe.contrast);
+    let length = words::seconds(card.signal.seconds);
+    let (used, others) = (
+        words::grouped(card.signal.used),
+        words::grouped(card.reference.used),
+    );
+    match &sheet.recipe.contrast {
+        Contrast::Spans { .. } => Line::default()
+            .strong(used)
+            .then(format!(" pieces of {first} stand against "))
+            .strong(others)
+            .then(format!(" of {second}, "))
+            .strong(length)
+            .then(" each."),
+        Contrast::Repeatable(_) => Line::default()
+            .strong(used)
+            .then(" trials of ")
+            .strong(length)
+            .then(": their average stands against the single trials."),
+        _ => Line::new("In each of ")
+            .strong(used)
+            .then(" segments of ")
+            .strong(length)
+            .then(format!(", {first} stands against {second}.")),
+    }
 }
 
 /// " Component 1, held-out, rises in **37 of 40** trials." on held-out scores.
@@ -486,8 +532,34 @@ pub(super) fn compression(sheet: &Sheet) -> Option<Said> {
         .then(format!(" of {} dimensions hold ", card.rank))
         .strong(words::percent(card.share))
         .then(" of the variance")
-        .join(curve(sheet));
+        .join(curve(sheet))
+        .join(above_noise(sheet));
     Some((text, compression_doubt(sheet)))
+}
+
+/// " Rules blind to the labels count 8 to 12 above noise." where they are worked out.
+fn above_noise(sheet: &Sheet) -> Line {
+    let Some(card) = &sheet.compression else {
+        return Line::default();
+    };
+    let found: Vec<usize> = ["parallel_analysis", "noise_edge", "hard_threshold"]
+        .iter()
+        .filter_map(|rule| card.guides.get(*rule).copied())
+        .collect();
+    let (Some(low), Some(high)) = (found.iter().min(), found.iter().max()) else {
+        return Line::default();
+    };
+    let range = if low == high {
+        low.to_string()
+    } else {
+        format!("{low} to {high}")
+    };
+    let choose = if card.kept >= *low {
+        ""
+    } else {
+        "; keep as many"
+    };
+    Line::new(format!(" Noise rules count {range}{choose}."))
 }
 
 /// Where the held-out ratio stands at C, and where it is highest; ends the sentence.
