@@ -1,7 +1,7 @@
 //! A pattern along a shaft: a bar at the depth of each contact.
 use super::{KEY, Map};
 use crate::axis::Axis;
-use crate::inks::{Ramp, step};
+use crate::inks::Ramp;
 use crate::pen::{At, Drawn, Pen, SMALL, TICK, Word};
 use crate::text;
 use plotters_backend::DrawingBackend;
@@ -51,7 +51,7 @@ impl Map {
             pen.rect(
                 (zero, at - half),
                 (x, at + half),
-                ramp[step(self.values[*i], limit)],
+                self.bar_ink(pen, ramp, *i),
             )?;
         }
         pen.down(zero, top - half, bottom + half, pen.inks.line, 1.0)?;

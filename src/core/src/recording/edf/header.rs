@@ -239,7 +239,7 @@ pub(super) fn read(source: &mut dyn Source, width: Width, budget: &mut Budget) -
     Ok(header)
 }
 
-/// `22.13.05` as `22:13:05`; `None` where it is no time.
+/// `22.13.05` as `22:13:05`; `None` where it is no time, and at midnight, which stands for a time that was taken out.
 fn time_of_day(field: &[u8]) -> Option<String> {
     let text = std::str::from_utf8(field).ok()?;
     let parts: Vec<u8> = text
@@ -247,6 +247,7 @@ fn time_of_day(field: &[u8]) -> Option<String> {
         .map(|part| part.trim().parse().ok())
         .collect::<Option<_>>()?;
     match parts[..] {
+        [0, 0, 0] => None,
         [h, m, s] if h < 24 && m < 60 && s < 60 => Some(format!("{h:02}:{m:02}:{s:02}")),
         _ => None,
     }
