@@ -3,6 +3,7 @@
 mod contrast;
 mod describe;
 mod dimensions;
+mod places;
 mod prepare;
 mod quality;
 mod readers;

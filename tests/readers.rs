@@ -16,6 +16,7 @@
 //! | EDF+ 2.2.3: several annotation signals | `outside::committed_files` (words), `spec::several_annotation_signals` |
 //! | EDF+ 2.2.4: the record's own onset, a start that is a fraction late | `outside::committed_files` (late), `spec::gaps_make_stretches`, `outside::files_of_the_wheel` |
 //! | BIDS events: onset, duration, trial_type, value, `n/a` | `tables` |
+//! | BIDS channels, electrodes, coordinates, facts about the recording, inheritance | `sides` (with a table of its own) |
 //! | any bytes at all: an answer, no panic, little memory | `hostile` |
 //! | what is written is read again | `written`, `watch` |
 mod bdf;
@@ -24,6 +25,7 @@ mod hostile;
 mod outside;
 mod plan;
 mod refused;
+mod sides;
 mod spec;
 mod tables;
 mod watch;
