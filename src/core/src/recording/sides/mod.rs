@@ -148,7 +148,7 @@ fn apply_events(
         }
         recording.about.untold = Some(table.name.clone());
         recording.warnings.push(format!(
-            "{} is not used yet: say which of its columns holds the onsets of the events.",
+            "{} is not used yet: say which of its columns holds the onsets of the events (in a recipe: recording.events).",
             table.name
         ));
     }
