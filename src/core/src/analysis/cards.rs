@@ -599,13 +599,19 @@ fn most_frequent(values: impl Iterator<Item = usize>) -> (usize, usize) {
 
 /// The permutation test and every component's p.
 pub(super) fn permuted(work: &mut Work, recipe: &Recipe) {
-    let (Some(plan), Some(design), Some(ends)) = (work.plan, &work.design, &work.ends) else {
+    let (Some(plan), Some(design), Some((ends, level))) =
+        (work.plan, &work.design, work.observed(recipe))
+    else {
         return;
     };
-    let (largest, smallest): (Vec<f64>, Vec<f64>) = work.null.iter().copied().unzip();
-    let (stronger, weaker) = reported(ends);
-    let observed_stronger: Vec<f64> = stronger.iter().map(|d| d.statistic).collect();
-    let observed_weaker: Vec<f64> = weaker.iter().map(|d| d.statistic).collect();
+    // Where both sides were brought to one level the null is about the average direction: told as ratios of the recording.
+    let null = work.null.iter().map(|(l, s)| (l * level, s * level));
+    let (largest, smallest): (Vec<f64>, Vec<f64>) = null.unzip();
+    let told = |list: &[Direction]| list.iter().map(|d| d.statistic * level).collect();
+    let mut observed_stronger: Vec<f64> = told(&ends.stronger);
+    let mut observed_weaker: Vec<f64> = told(&ends.weaker);
+    observed_stronger.truncate(work.sheet.stronger.len());
+    observed_weaker.truncate(work.sheet.weaker.len());
     let test = |observed: f64, null: &[f64], larger| {
         (!null.is_empty()).then(|| p_value(observed, null, plan.exact, larger))
     };

@@ -1,7 +1,7 @@
 //! Ranges of a recipe's values, whatever the recording.
 use super::{
-    BandReference, Contrast, EventWindow, Given, Keep, KeepWord, Measure, Recipe, Reference, Shrink,
-    ShrinkWord, Spans, Within,
+    BandReference, Contrast, EventWindow, Given, Keep, KeepWord, Measure, Recipe, Reference,
+    Shrink, ShrinkWord, Spans, Within,
 };
 use crate::error::{Kind, Problem, Result};
 
@@ -419,11 +419,7 @@ fn check_within(within: Option<&Within>) -> Result<()> {
         None => Ok(()),
         Some(Within::Window(window)) => {
             check_window("contrast.within", window)?;
-            check_alone(
-                "contrast.within",
-                window,
-                "surrogates exchange windows of one length",
-            )
+            check_alone("contrast.within", window, "segments are of one length")
         }
         Some(Within::Spans(spans)) if spans.is_rest() => Err(out(
             "contrast.within",
