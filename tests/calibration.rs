@@ -19,7 +19,9 @@ pub enum Noise {
     White,
     /// Power falling as 1/f, mixed over channels: a sum of first-order processes an octave apart (Voss & Clarke 1978 sum such sources).
     Pink,
-    /// As `Pink`, with bursts in one direction that multiply its power by 400, at random times, six a minute, 0.5 s long.
+    /// As `Pink`, with one source, shared by all channels, that swells to twenty times its amplitude and falls again within 4 s (Hann),
+    /// at random times, six a minute. Its spectrum stays that of the others above 1 Hz: a shared artefact that is slower than the
+    /// rest, or lies in the band, is a difference and will be found.
     Artefact,
     /// As `White`, with a straight drift of random height in every channel over the whole recording: 20 standard deviations.
     Trend,
@@ -48,7 +50,7 @@ pub fn null_recording(seed: u64, noise: Noise, channels: usize, trials: usize) -
         .map(|_| source(&mut rng, noise, samples))
         .collect();
     if noise == Noise::Artefact {
-        bursts(&mut rng, &mut sources[0], RATE_HZ);
+        swells(&mut rng, &mut sources[0], RATE_HZ);
     }
     let mut mixed: Vec<Vec<f32>> = (0..channels)
         .map(|_| {
@@ -138,18 +140,19 @@ fn source(rng: &mut ChaCha8Rng, noise: Noise, samples: usize) -> Vec<f64> {
     }
 }
 
-/// Twenty times the amplitude in bursts of half a second at random times, six a minute.
-fn bursts(rng: &mut ChaCha8Rng, source: &mut [f64], rate_hz: f64) {
+/// Twenty times the amplitude at the top of swells of 4 s at random times, six a minute.
+fn swells(rng: &mut ChaCha8Rng, source: &mut [f64], rate_hz: f64) {
     let (length, count) = (
-        (0.5 * rate_hz) as usize,
+        (4.0 * rate_hz) as usize,
         source.len() as f64 / rate_hz / 10.0,
     );
     for _ in 0..count.ceil() as usize {
         let at: f64 = StandardUniform.sample(rng);
         let first = (at * (source.len() - length) as f64) as usize;
-        source[first..first + length]
-            .iter_mut()
-            .for_each(|x| *x *= 20.0);
+        for (i, x) in source[first..first + length].iter_mut().enumerate() {
+            let phase = 2.0 * std::f64::consts::PI * i as f64 / length as f64;
+            *x *= 1.0 + 19.0 * 0.5 * (1.0 - phase.cos());
+        }
     }
 }
 

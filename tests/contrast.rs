@@ -340,6 +340,8 @@ fn the_comparators_on_the_same_held_out_windows() {
             ComparatorKind::FirstPc => "first_pc",
             ComparatorKind::BestPc => "best_pc",
             ComparatorKind::BestChannel => "best_channel",
+            ComparatorKind::MeanOfChannels => "mean_of_channels",
+            ComparatorKind::RandomDirection => continue,
         };
         close(
             key,
@@ -348,7 +350,7 @@ fn the_comparators_on_the_same_held_out_windows() {
             1e-6,
         );
     }
-    assert_eq!(sheet.compare.len(), 3);
+    assert_eq!(sheet.compare.len(), 5);
 }
 
 #[test]

@@ -9,6 +9,7 @@
 //! ratio against C follow, in this order.
 mod cards;
 mod describing;
+mod opened;
 mod propose;
 mod summary;
 mod work;

@@ -50,6 +50,8 @@ pub(super) struct Work {
     pub(super) plan: Option<Plan>,
     pub(super) null: Vec<(f64, f64)>,
     level: Option<Level>,
+    /// The average channel's ratio, where the signal side was scaled to it.
+    pub(super) average_ratio: f64,
     curve: CurveWork,
 }
 
@@ -98,6 +100,7 @@ enum Task {
     FoldFit(usize),
     Summarise,
     Permute,
+    Open,
     Curve,
     Nothing,
 }
@@ -141,6 +144,7 @@ impl Work {
             plan: None,
             null: Vec::new(),
             level: None,
+            average_ratio: 1.0,
             curve: CurveWork::default(),
         }
     }
@@ -176,6 +180,9 @@ impl Work {
             self.covariances = Covariances::default();
             self.ground = None;
             self.folds.clear();
+        }
+        if old.hold_back != new.hold_back {
+            self.sheet.held_back = None;
         }
         let method = windows
             || old.measure != new.measure
@@ -252,6 +259,11 @@ impl Work {
             self.sheet.channels = self.cards.clone().unwrap_or_default();
         }
         Ok(())
+    }
+
+    /// What the windows are read from.
+    pub(super) fn reader<'a>(&'a self, prepared: &'a Prepared, recipe: &Recipe) -> Reader<'a> {
+        reader(prepared, self.bands.as_ref(), recipe)
     }
 
     fn enough(&self) -> bool {
@@ -331,6 +343,9 @@ impl Work {
         }
         if self.plan.is_none_or(|p| self.null.len() < p.count) {
             return Task::Permute;
+        }
+        if recipe.hold_back.is_some_and(|h| h.open) && self.sheet.held_back.is_none() {
+            return Task::Open;
         }
         if !self.curve.shown {
             Task::Curve
@@ -437,6 +452,10 @@ impl Work {
                 Ok(progress(Stage::HeldOut, 3 * folds, 3 * folds, true))
             }
             Task::Permute => self.permute(recipe),
+            Task::Open => {
+                self.sheet.held_back = Some(super::opened::open(self, recording, recipe)?);
+                Ok(progress(Stage::Permuting, 1, 1, true))
+            }
             Task::Curve => self.curve(recipe),
             Task::Nothing => Ok(progress(Stage::Done, 1, 1, false)),
         }
@@ -521,7 +540,7 @@ impl Work {
             self.design = None;
             self.drop_flat()?;
             if let (true, Some(selection)) = (levelled(recipe), &self.selection) {
-                self.covariances.level(&selection.sides());
+                self.average_ratio = self.covariances.level(&selection.sides());
             }
         }
         Ok(progress(Stage::Windows, done as u64, all as u64, false))
@@ -1068,7 +1087,7 @@ fn push_windows(into: &mut Covariances, reader: &Reader<'_>, windows: &[Window],
 }
 
 /// Whether the signal side is scaled to the average channel.
-fn levelled(recipe: &Recipe) -> bool {
+pub(super) fn levelled(recipe: &Recipe) -> bool {
     matches!(
         recipe.contrast,
         Contrast::Band {

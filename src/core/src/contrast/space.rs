@@ -114,6 +114,22 @@ impl Covariances {
         one_by_one(&self.packed, &self.courses, i, pick, signal, of)
     }
 
+    /// As [`Space::variances`] for the mean of all channels.
+    pub fn mean_variances(&self, signal: &[bool], of: impl Fn(usize) -> bool) -> Vec<f64> {
+        let m = self.channels;
+        let equal = vec![1.0 / m as f64; m];
+        let plain = |k: usize| quadratic(&self.packed[k], &equal);
+        if self.courses.is_empty() {
+            let one = |k: usize| if of(k) { plain(k) } else { f64::NAN };
+            return (0..self.packed.len()).map(one).collect();
+        }
+        let mean = |course: &Vec<f64>| {
+            let rows = course.chunks_exact(m);
+            rows.map(|row| row.iter().sum::<f64>() / m as f64).collect()
+        };
+        repeats(&self.courses, mean, signal, of, |t| plain(2 * t))
+    }
+
     /// Weighted mean over the windows that `include` names.
     pub fn pooled(&self, include: impl Fn(usize) -> bool) -> Packed {
         pooled(

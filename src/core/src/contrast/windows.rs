@@ -410,6 +410,29 @@ pub fn select(
     Ok(selection)
 }
 
+/// The windows of the share that is locked away, and of nothing else.
+///
+/// # Errors
+/// As [`select`]; also where nothing is locked away.
+pub fn locked_part(
+    recipe: &Recipe,
+    events: &[Event],
+    stretches: &[Stretch],
+    rate_hz: f64,
+) -> Result<Selection> {
+    let locked = locked(recipe.hold_back, stretches, rate_hz);
+    let from_s = locked
+        .first()
+        .map_or(f64::INFINITY, |run| run[0] as f64 / rate_hz);
+    let mut opened = recipe.clone();
+    opened.hold_back = None;
+    let start_s = stretches.first().map_or(0.0, |s| s.onset_s);
+    opened
+        .not_used
+        .push([start_s.min(from_s) - 1.0, from_s.min(1e12)]);
+    select(&opened, events, stretches, rate_hz)
+}
+
 fn span_runs(spans: &Spans, events: &[Event], rate_hz: f64) -> Runs {
     match spans {
         Spans::Times(times) => runs(times, rate_hz),

@@ -20,6 +20,8 @@ use rand_chacha::rand_core::Rng;
 pub const STREAM_BOOTSTRAP: u64 = 1;
 /// Stream of the bootstrap of spectra and courses.
 pub const STREAM_DESCRIBE: u64 = 2;
+/// Stream of the random direction beside the components (3 draws windows, in `contrast::windows`).
+pub const STREAM_DIRECTION: u64 = 4;
 /// Arrangement i uses stream `STREAM_ARRANGEMENTS + i`.
 const STREAM_ARRANGEMENTS: u64 = 1 << 32;
 /// Slack of the comparison "as large", relative: rounding must not break ties.
