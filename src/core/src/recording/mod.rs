@@ -17,12 +17,16 @@ mod budget;
 pub mod edf;
 mod events_table;
 mod given;
+mod gzip;
+mod joined;
 mod names;
 mod opening;
+mod table;
 mod units;
 
 pub use budget::MEMORY_BYTES;
 pub use given::UNITS;
+pub use joined::natural_order;
 pub use opening::{MemorySource, OpenOptions, Opening, open};
 
 use serde::{Deserialize, Serialize};
