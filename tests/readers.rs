@@ -22,6 +22,8 @@ mod bdf;
 mod delimited;
 mod hostile;
 mod outside;
+mod packed;
+mod parts;
 mod plan;
 mod refused;
 mod spec;
