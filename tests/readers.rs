@@ -25,6 +25,7 @@ mod outside;
 mod packed;
 mod parts;
 mod plan;
+mod read_back;
 mod refused;
 mod spec;
 mod tables;
