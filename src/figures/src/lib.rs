@@ -18,6 +18,7 @@ mod channels_map;
 mod course;
 mod eigenvalues;
 mod estimate;
+mod filters;
 mod fine;
 mod frame;
 mod group;
@@ -31,6 +32,7 @@ mod nan;
 mod overview;
 mod pen;
 mod places;
+mod principal;
 mod ratio;
 mod recorder;
 mod scores;
@@ -107,6 +109,10 @@ figures! {
     Course(course::Course),
     /// Variance of every dimension.
     Eigenvalues(eigenvalues::Eigenvalues),
+    /// What the filters let pass.
+    Filters(filters::Filters),
+    /// The first dimensions of the compression and their courses.
+    Principal(principal::Principal),
     /// Fitted and held-out ratio against C.
     Keep(keep::Keep),
     /// A pattern on the head.
