@@ -39,9 +39,10 @@ export function sayAsks({ file, what, asks }, given, open, ways) {
     event.preventDefault();
     answer();
   });
-  const about = file && !what.includes(file) ? `${file}: ` : "";
+  // "a table does not say its unit" is said of the file by its name.
+  const title = file ? what.replace(/^.*?(?= does not say )/, file) : what;
   say("#problem", {
-    title: sentence(about + what, file),
+    title: sentence(file && !title.includes(file) ? `${file}: ${title}` : title, file),
     text: ["Your answers are kept in the recipe."],
     ways: [{ label: "Open", main: true, act: answer }, ...ways],
   });
