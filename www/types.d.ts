@@ -254,6 +254,7 @@ export interface Bridge {
   plotBox(figure: Figure, width: number, height: number): PlotBox | null;
   svg(figure: Figure, width: number, height: number): string;
   table(figure: Figure): Table;
+  naturalOrder(names: string[]): number[];
   parseRecipe(text: string): Recipe;
   linkEncode(recipe: Recipe, withNames: boolean): string;
   recipeText(recipe: Recipe): string;

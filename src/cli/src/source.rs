@@ -114,12 +114,19 @@ pub fn recording(
     meter: &mut Meter,
 ) -> Result<Recording> {
     recipe::given_check(told)?;
-    let (file, length) = opened(path)?;
-    let source = FileSource {
-        name: file_name(path),
-        file,
-        length,
+    let paths = match given.joined {
+        true => &given.recordings[..],
+        false => &[path.to_owned()],
     };
+    let mut sources: Vec<Box<dyn Source>> = Vec::new();
+    for path in paths {
+        let (file, length) = opened(path)?;
+        sources.push(Box::new(FileSource {
+            name: file_name(path),
+            file,
+            length,
+        }));
+    }
     let options = OpenOptions {
         salvage: given.salvage,
         given: told.clone(),
@@ -145,7 +152,7 @@ pub fn recording(
         }
         problem
     };
-    let mut opening = Opening::begin(Box::new(source), sides, options).map_err(hint)?;
+    let mut opening = Opening::begin_joined(sources, sides, options).map_err(hint)?;
     while !opening.finished() {
         let (done, of) = opening.step().map_err(hint)?;
         meter.reading(done, of);
