@@ -186,6 +186,20 @@ export class Bridge {
     return this.#ask("traces", fromS, seconds, channels);
   }
 
+  /** The lines that can be drawn now. @returns {Promise<import("./types").Tracks>} */
+  tracks() {
+    return this.#ask("tracks");
+  }
+
+  /**
+   * For each of some lines the smallest and the largest value of `count` bins of `size` samples from bin `first` on.
+   * @param {import("./types").LineKind} kind @param {number[]} lines indexes @param {number} size a power of four @param {number} first @param {number} count
+   * @returns {Promise<Float32Array>}
+   */
+  bins(kind, lines, size, first, count) {
+    return this.#ask("bins", kind, lines, size, first, count);
+  }
+
   /**
    * The bytes of one of the files to take away.
    * @param {string} kind

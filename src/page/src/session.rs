@@ -5,6 +5,7 @@ use crate::take;
 use js_sys::Function;
 use serde::{Deserialize, Serialize};
 use std::mem;
+use teasel_core::analysis::lines::{Kind as LineKind, Lines, Track};
 use teasel_core::analysis::{self, Analysis, Progress, Proposal, Stage};
 use teasel_core::demo;
 use teasel_core::error::{Kind, Problem};
@@ -22,6 +23,8 @@ pub struct Session {
     state: State,
     /// The question that a demo brings along.
     brought: Option<Proposal>,
+    /// What was made to draw lines of what is open.
+    lines: Lines,
 }
 
 #[derive(Default)]
@@ -41,6 +44,14 @@ pub struct NamedBytes {
     /// Content.
     #[serde(with = "serde_bytes")]
     pub bytes: Vec<u8>,
+}
+
+/// The lines that can be drawn now.
+#[derive(Serialize)]
+struct Tracks {
+    recorded: Track,
+    prepared: Option<Track>,
+    components: Option<Track>,
 }
 
 /// [`Progress`], and whether nothing is left.
@@ -72,6 +83,7 @@ impl Session {
     ) -> Outcome<()> {
         self.state = State::Empty;
         self.brought = None;
+        self.lines = Lines::default();
         let sides: Vec<NamedBytes> = from_js(sides)?;
         let sides = sides
             .into_iter()
@@ -100,6 +112,7 @@ impl Session {
             return Err(thrown(unknown_demo(which)));
         }
         let made = demo::night_watch(demo::WATCH_SEED);
+        self.lines = Lines::default();
         self.brought = Some(Proposal {
             recipe: made.recipe,
             why: demo::WATCH_WHY.to_owned(),
@@ -206,6 +219,46 @@ impl Session {
             seconds,
             channels,
         ))
+    }
+
+    /// `{recorded, prepared, components}`: what lines there are now; the last two may be null.
+    pub fn tracks(&self) -> Outcome<JsValue> {
+        let analysis = match &self.state {
+            State::Analysing(analysis) => Some(analysis.as_ref()),
+            _ => None,
+        };
+        to_js(&Tracks {
+            recorded: Lines::recorded(self.recording()?),
+            prepared: analysis.and_then(Lines::prepared),
+            components: analysis.and_then(Lines::components),
+        })
+    }
+
+    /// Bins `first` to `first + count` of `size` samples of some lines of a kind (`recorded`, `prepared`, `components`): for each line
+    /// the smallest and the largest value of each bin.
+    pub fn bins(
+        &mut self,
+        kind: JsValue,
+        which: &[usize],
+        size: usize,
+        first: usize,
+        count: usize,
+    ) -> Outcome<Vec<f32>> {
+        let kind: LineKind = from_js(kind)?;
+        let lines = &mut self.lines;
+        match (&self.state, kind) {
+            (State::Open(recording), LineKind::Recorded) => {
+                Ok(lines.of_recorded(recording, which, size, first, count))
+            }
+            (State::Analysing(analysis), kind) => Ok(match kind {
+                LineKind::Recorded => {
+                    lines.of_recorded(analysis.recording(), which, size, first, count)
+                }
+                LineKind::Prepared => lines.of_prepared(analysis, which, size, first, count),
+                LineKind::Components => lines.of_components(analysis, which, size, first, count),
+            }),
+            _ => Err(thrown(nothing_open())),
+        }
     }
 
     /// A file to take away: `weights-json`, `weights-csv`, `results-json`, `recipe`, `report`, `everything`; `extras` is `[{name, bytes}]`.

@@ -17,6 +17,7 @@ mod budget;
 pub mod edf;
 mod events_table;
 mod opening;
+pub mod pyramid;
 
 pub use budget::MEMORY_BYTES;
 pub use opening::{MemorySource, OpenOptions, Opening, open};
