@@ -34,13 +34,8 @@ pub fn fits(recording: &Recording, recipe: &Recipe) -> Result<()> {
 }
 
 fn no_contrast() -> Recipe {
-    let none = || EventWindow {
-        event: String::new(),
-        from_s: 0.0,
-        to_s: 0.0,
-    };
     Recipe::asking(Contrast::Windows {
-        signal: none(),
-        reference: none(),
+        signal: EventWindow::default(),
+        reference: EventWindow::default(),
     })
 }
