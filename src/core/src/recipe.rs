@@ -5,7 +5,7 @@ mod check;
 mod contrast;
 
 pub(crate) use check::WHOLE_MAX;
-pub use check::recipe_check;
+pub use check::{given_check, recipe_check};
 pub use contrast::{
     BandReference, Contrast, ContrastKind, EventWindow, HoldBack, REST, Spans, Within,
 };
@@ -98,6 +98,16 @@ impl Given {
     pub fn is_empty(&self) -> bool {
         *self == Given::default()
     }
+    /// What is told here, and from `less_sure` what is not.
+    #[must_use]
+    pub fn or(self, less_sure: Given) -> Given {
+        Given {
+            rate_hz: self.rate_hz.or(less_sure.rate_hz),
+            unit: self.unit.or(less_sure.unit),
+            axes: self.axes.or(less_sure.axes),
+            variable: self.variable.or(less_sure.variable),
+        }
+    }
 }
 
 /// What the axes of an array are, outermost first.
@@ -112,6 +122,23 @@ pub enum Axes {
     /// One picture after the other.
     #[serde(rename = "frames,height,width")]
     FramesHeightWidth,
+}
+
+impl Axes {
+    /// All of them.
+    pub const ALL: [Axes; 3] = [
+        Axes::ChannelsSamples,
+        Axes::SamplesChannels,
+        Axes::FramesHeightWidth,
+    ];
+    /// As it is written in a recipe.
+    pub fn name(self) -> &'static str {
+        match self {
+            Axes::ChannelsSamples => "channels,samples",
+            Axes::SamplesChannels => "samples,channels",
+            Axes::FramesHeightWidth => "frames,height,width",
+        }
+    }
 }
 
 /// Which channels, against which reference.

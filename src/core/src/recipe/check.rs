@@ -1,16 +1,22 @@
 //! Ranges of a recipe's values, whatever the recording.
 use super::{
-    BandReference, Contrast, EventWindow, Keep, KeepWord, Measure, Recipe, Reference, Shrink,
-    ShrinkWord, Spans, Within,
+    BandReference, Contrast, EventWindow, Given, Keep, KeepWord, Measure, Recipe, Reference,
+    Shrink, ShrinkWord, Spans, Within,
 };
 use crate::error::{Kind, Problem, Result};
 
 /// The largest whole number that every reader of JSON keeps exactly: 2^53 − 1.
 pub(crate) const WHOLE_MAX: f64 = 9_007_199_254_740_991.0;
 
+/// The highest sampling rate that can be told.
+const HIGHEST_RATE_HZ: f64 = 1e7;
+
 /// A choice of the recipe as one speaks of it.
 fn in_words(path: &str) -> &'static str {
     match path {
+        "recording.rate_hz" => "the sampling rate of the recording",
+        "recording.unit" => "the unit of the recording",
+        "recording.variable" => "the name of the array",
         "channels.reference" => "the reference",
         "filter.high_pass_hz" => "the high-pass",
         "filter.low_pass_hz" => "the low-pass",
@@ -86,6 +92,7 @@ pub fn recipe_check(recipe: &Recipe) -> Result<()> {
         .at("teasel_recipe")
         .expected_found(1, recipe.teasel_recipe));
     }
+    given_check(&recipe.recording)?;
     check_keep(recipe.keep)?;
     check_best(recipe)?;
     check_filter(recipe)?;
@@ -120,6 +127,39 @@ pub fn recipe_check(recipe: &Recipe) -> Result<()> {
             "at least one channel name",
             "an empty list",
         ));
+    }
+    Ok(())
+}
+
+/// Checks what is told of a recording: a rate above 0 and up to 10 MHz; a unit of 1–20 characters and a name of 1–200, none of
+/// them a control character. The error's place is the path in a recipe: `recording.rate_hz`.
+pub fn given_check(given: &Given) -> Result<()> {
+    match given.rate_hz {
+        Some(hz) if !(hz > 0.0 && hz <= HIGHEST_RATE_HZ) => Err(out(
+            "recording.rate_hz",
+            format!("a number of Hz above 0, at most {HIGHEST_RATE_HZ}"),
+            hz,
+        )),
+        _ => Ok(()),
+    }?;
+    let texts = [
+        ("recording.unit", &given.unit, 20),
+        ("recording.variable", &given.variable, 200),
+    ];
+    for (path, text, most) in texts {
+        let Some(text) = text else { continue };
+        let count = text.chars().count();
+        let blank = text.trim().is_empty() || text.chars().any(char::is_control);
+        if blank || count > most {
+            return Err(out(
+                path,
+                format!("a text of 1 to {most} characters on one line"),
+                match blank {
+                    true => "none, or one with control characters".to_owned(),
+                    false => format!("{count} characters"),
+                },
+            ));
+        }
     }
     Ok(())
 }

@@ -21,7 +21,7 @@ const ENGINE: GeneralPurpose = GeneralPurpose::new(
 );
 
 /// Names that a link without names can leave out.
-const LEFT_OUT: [(&str, &str); 3] = [
+const LEFT_OUT: [(&str, &str); 4] = [
     (
         "channels.leave_out",
         "The link names no channels: what its sender left out is not left out here.",
@@ -33,6 +33,10 @@ const LEFT_OUT: [(&str, &str); 3] = [
     (
         "channels.reference",
         "The link names no channels: its sender's reference channels are replaced by the reference as recorded.",
+    ),
+    (
+        "recording.variable",
+        "The link does not name the array that its sender opened.",
     ),
 ];
 
@@ -132,11 +136,12 @@ fn strip(recipe: &Recipe, mut value: Value) -> Value {
         !channels.leave_out.is_empty(),
         !channels.interpolate.is_empty(),
         matches!(channels.reference, Reference::Named(_)),
+        recipe.recording.variable.is_some(),
     ];
     for ((path, _), _) in LEFT_OUT.iter().zip(named).filter(|(_, named)| *named) {
         without.push(*path);
-        if let (Some(Value::Object(map)), Some(key)) =
-            (value.get_mut("channels"), path.split('.').nth(1))
+        if let Some((part, key)) = path.split_once('.')
+            && let Some(Value::Object(map)) = value.get_mut(part)
         {
             map.remove(key);
         }

@@ -66,6 +66,21 @@ const CONTRAST: Shape = Shape::Kinds(&[
     ),
 ]);
 
+const RECORDING: Shape = Shape::Object(&[
+    ("rate_hz", false, Shape::Maybe(&Shape::Number)),
+    ("unit", false, Shape::Maybe(&Shape::Text)),
+    (
+        "axes",
+        false,
+        Shape::Maybe(&Shape::Word(&[
+            "channels,samples",
+            "samples,channels",
+            "frames,height,width",
+        ])),
+    ),
+    ("variable", false, Shape::Maybe(&Shape::Text)),
+]);
+
 pub(super) const CHANNELS: Shape = Shape::Object(&[
     ("leave_out", false, Shape::List(&Shape::Text)),
     ("interpolate", false, Shape::List(&Shape::Text)),
@@ -91,6 +106,7 @@ pub(super) const FILTER: Shape = Shape::Object(&[
 
 const RECIPE: Shape = Shape::Object(&[
     ("teasel_recipe", true, Shape::Whole),
+    ("recording", false, RECORDING),
     ("channels", false, CHANNELS),
     ("filter", false, FILTER),
     (
