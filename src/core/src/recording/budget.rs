@@ -21,6 +21,8 @@ pub(crate) struct Budget {
     all: u64,
     /// The machine, not the size of the file, sets the limit.
     by_memory: bool,
+    /// What is too large may be handed through instead.
+    streaming: bool,
 }
 
 impl Budget {
@@ -34,7 +36,21 @@ impl Budget {
             left: all,
             all,
             by_memory: memory_bytes < by_file,
+            streaming: false,
         }
+    }
+
+    /// The same where a reader may hand through what does not fit.
+    pub(crate) fn streaming(self) -> Self {
+        Budget {
+            streaming: true,
+            ..self
+        }
+    }
+
+    /// Whether samples of so many bytes are to be handed through instead of kept.
+    pub(crate) fn flows(&self, bytes: u64) -> bool {
+        self.streaming && self.by_memory && bytes > self.left
     }
 
     /// Takes `bytes` for `what` (as in "its samples").

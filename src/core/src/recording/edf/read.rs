@@ -1,9 +1,12 @@
 //! From an EDF file's header to a recording: which signals, how many records, decoding slice after slice.
+mod flow;
+
 use super::annotations;
 use super::header::{self, Header, Scale, Signal, Variant, damaged};
 use super::records;
 use crate::error::Result;
 use crate::recording::budget::Budget;
+use crate::recording::large::Flowing;
 use crate::recording::names::{counted, name_apart};
 use crate::recording::opening::{OpenOptions, Reader};
 use crate::recording::units::Unit;
@@ -38,6 +41,8 @@ struct EdfReader {
     stretches: Vec<Stretch>,
     notes: Notes,
     warnings: Vec<String>,
+    /// The samples are handed on instead of kept.
+    flows: bool,
 }
 
 /// What is said once however often it happens: how many, and where first.
@@ -67,13 +72,20 @@ pub(super) fn begin(
     if header.variant != Variant::Plain && !header.signals.iter().any(|s| s.is_text) {
         warnings.push(without_text(&header)?);
     }
+    let slice_records = (SLICE_BYTES / header.record_bytes).clamp(1, records);
+    let analysed = |s: &&Signal| s.scale.is_ok() && s.samples == samples;
+    let many = header.signals.iter().filter(analysed).count() as u64;
+    let whole = (records.saturating_mul(samples)).saturating_mul(many * size_of::<f32>() as u64);
+    let flows = budget.flows(whole);
+    // Samples that flow are handed on after every slice.
+    let kept = if flows { slice_records } else { records };
     let rate = |samples: u64| samples as f64 / header.record_s;
     let rate_hz = rate(samples);
     let (mut columns, mut channels, mut others) = (Vec::new(), Vec::new(), Vec::new());
     for (index, signal) in header.signals.iter().enumerate() {
         match (&signal.scale, signal.samples == samples) {
             (Ok(scale), true) => {
-                let count = records.saturating_mul(samples);
+                let count = kept.saturating_mul(samples);
                 columns.push(Column {
                     offset: signal.offset as usize,
                     bytes: 2 * signal.samples as usize,
@@ -109,7 +121,6 @@ pub(super) fn begin(
         }
     }
     name_apart(&mut channels, &mut warnings);
-    let slice_records = (SLICE_BYTES / header.record_bytes).clamp(1, records);
     let mut slice = budget.vec(slice_records * header.record_bytes, "a slice of it")?;
     slice.resize((slice_records * header.record_bytes) as usize, 0);
     let start = Stretch {
@@ -136,6 +147,7 @@ pub(super) fn begin(
         notes: Notes::default(),
         warnings,
         header,
+        flows,
     }))
 }
 
@@ -211,8 +223,15 @@ impl Reader for EdfReader {
         Ok((end(self.done), end(self.records)))
     }
 
+    fn flowing(&mut self) -> Option<&mut dyn Flowing> {
+        if self.flows { Some(self) } else { None }
+    }
+
     fn finish(mut self: Box<Self>) -> Result<Recording> {
         self.warn_of_notes();
+        if self.flows {
+            self.columns.clear();
+        }
         Ok(Recording {
             name: String::new(),
             format: self.header.variant.name().to_owned(),
