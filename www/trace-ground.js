@@ -99,7 +99,8 @@ export const KIND_WORDS = { signal: "signal", reference: "reference", not_used: 
 function marks(pen, scene) {
   const { box, inks: ink } = scene;
   let used = -Infinity;
-  for (const { kind, from, to } of marksNow()) {
+  // What is not used lies over everything else.
+  for (const { kind, from, to } of marksNow().reverse().sort((a, b) => Number(a.kind === "not_used") - Number(b.kind === "not_used"))) {
     const at = inside(scene, from, to);
     if (!at) continue;
     const [a, b] = at;
@@ -126,7 +127,7 @@ function marks(pen, scene) {
 
 /** @param {CanvasRenderingContext2D} pen @param {Scene} scene */
 function gaps(pen, scene) {
-  const { stretches, rate_hz } = scene.track;
+  const { stretches, rate_hz } = now().summary?.recording ?? scene.track;
   for (let i = 1; i < stretches.length; i += 1) {
     const [before, after] = [stretches[i - 1], stretches[i]];
     if (!before || !after) continue;

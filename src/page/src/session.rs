@@ -10,7 +10,9 @@ use teasel_core::analysis::{self, Analysis, Progress, Proposal, Stage};
 use teasel_core::demo;
 use teasel_core::error::{Kind, Problem};
 use teasel_core::recipe::{Given, Recipe, given_check};
-use teasel_core::recording::{OpenOptions, Opening, Recording, SideFile};
+use teasel_core::recording::{
+    Large, MEMORY_BYTES, OpenOptions, Opened, Opening, Recording, SideFile,
+};
 use teasel_core::sheet::Sheet;
 use teasel_core::takeaway::readings;
 use wasm_bindgen::JsValue;
@@ -35,6 +37,8 @@ enum State {
     Empty,
     Opening(Box<Opening>),
     Open(Box<Recording>),
+    /// Open, with its samples left in the file.
+    Large(Box<Large>),
     Analysing(Box<Analysis>),
 }
 
@@ -98,13 +102,14 @@ impl Session {
         self.given = from_js(given)?;
         given_check(&self.given).map_err(thrown)?;
         let source = JsSource::new(name, bytes, read);
-        let opening = Opening::begin(
+        let opening = Opening::begin_streaming(
             Box::new(source),
             sides,
             OpenOptions {
                 salvage,
                 given: self.given.clone(),
             },
+            MEMORY_BYTES,
         );
         self.state = State::Opening(Box::new(opening.map_err(thrown)?));
         Ok(())
@@ -128,7 +133,10 @@ impl Session {
 
     /// `{recording, channels}` of what is open, before any recipe.
     pub fn summary(&self) -> Outcome<JsValue> {
-        to_js(&analysis::summary(self.recording()?))
+        match &self.state {
+            State::Large(large) => to_js(&analysis::summary_of_large(large)),
+            _ => to_js(&analysis::summary(self.recording()?)),
+        }
     }
 
     /// `{recipe, why}`: a demo's own question, else one for the most frequent event; null where no event is frequent enough.
@@ -153,6 +161,15 @@ impl Session {
                     return Err(thrown(problem));
                 }
                 let analysis = Analysis::new(*recording, recipe).map_err(thrown)?;
+                self.state = State::Analysing(Box::new(analysis));
+                Ok(())
+            }
+            State::Large(large) => {
+                if let Err(problem) = analysis::fits_large(&large, &recipe) {
+                    self.state = State::Large(large);
+                    return Err(thrown(problem));
+                }
+                let analysis = Analysis::of_large(*large, recipe).map_err(thrown)?;
                 self.state = State::Analysing(Box::new(analysis));
                 Ok(())
             }
@@ -185,7 +202,7 @@ impl Session {
                 let progress = analysis.step().map_err(thrown)?;
                 (progress, analysis.finished())
             }
-            State::Open(_) | State::Empty => return Err(thrown(nothing_open())),
+            State::Open(_) | State::Large(_) | State::Empty => return Err(thrown(nothing_open())),
         };
         if finished {
             self.finish_reading()?;
@@ -220,24 +237,33 @@ impl Session {
         )
     }
 
-    /// Channels as recorded over a span of time.
-    pub fn traces(&self, from_s: f64, seconds: f64, channels: &[usize]) -> Outcome<JsValue> {
-        to_js(&teasel_figures::traces(
-            self.recording()?,
-            from_s,
-            seconds,
-            channels,
-        ))
+    /// Channels as recorded over a span of time; null where so much of a large recording would have to be read again.
+    pub fn traces(&mut self, from_s: f64, seconds: f64, channels: &[usize]) -> Outcome<JsValue> {
+        let Some(large) = self.large() else {
+            let recording = self.recording()?;
+            return to_js(&teasel_figures::traces(
+                recording, from_s, seconds, channels,
+            ));
+        };
+        if !large.reads_soon(seconds) {
+            return Ok(JsValue::NULL);
+        }
+        let part = large.span(from_s, from_s + seconds).map_err(thrown)?;
+        to_js(&teasel_figures::traces(&part, from_s, seconds, channels))
     }
 
     /// `{recorded, prepared, components}`: what lines there are now; the last two may be null.
-    pub fn tracks(&self) -> Outcome<JsValue> {
+    pub fn tracks(&mut self) -> Outcome<JsValue> {
+        let recorded = match self.large() {
+            Some(large) => Lines::recorded_large(large),
+            None => Lines::recorded(self.recording()?),
+        };
         let analysis = match &self.state {
             State::Analysing(analysis) => Some(analysis.as_ref()),
             _ => None,
         };
         to_js(&Tracks {
-            recorded: Lines::recorded(self.recording()?),
+            recorded,
             prepared: analysis.and_then(Lines::prepared),
             components: analysis.and_then(Lines::components),
         })
@@ -254,6 +280,11 @@ impl Session {
         count: usize,
     ) -> Outcome<Vec<f32>> {
         let kind: LineKind = from_js(kind)?;
+        if kind == LineKind::Recorded
+            && let Some(large) = self.large()
+        {
+            return Lines::of_large(large, which, size, first, count).map_err(thrown);
+        }
         let lines = &mut self.lines;
         match (&self.state, kind) {
             (State::Open(recording), LineKind::Recorded) => {
@@ -283,7 +314,10 @@ impl Session {
 impl Session {
     fn finish_reading(&mut self) -> Outcome<()> {
         self.state = match mem::take(&mut self.state) {
-            State::Opening(opening) => State::Open(Box::new(opening.finish().map_err(thrown)?)),
+            State::Opening(opening) => match opening.opened().map_err(thrown)? {
+                Opened::Whole(recording) => State::Open(Box::new(recording)),
+                Opened::Large(large) => State::Large(large),
+            },
             other => other,
         };
         Ok(())
@@ -292,8 +326,17 @@ impl Session {
     fn recording(&self) -> Outcome<&Recording> {
         match &self.state {
             State::Open(recording) => Ok(recording),
+            State::Large(large) => Ok(large.outline()),
             State::Analysing(analysis) => Ok(analysis.recording()),
             State::Opening(_) | State::Empty => Err(thrown(nothing_open())),
+        }
+    }
+
+    fn large(&mut self) -> Option<&mut Large> {
+        match &mut self.state {
+            State::Large(large) => Some(large),
+            State::Analysing(analysis) => analysis.large(),
+            _ => None,
         }
     }
 

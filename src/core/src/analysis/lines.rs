@@ -4,10 +4,11 @@
 //! As in [`crate::recording::pyramid`]: sizes are powers of four. Bins of fewer than [`BASE`] samples are read from the samples,
 //! larger ones from a pyramid that is made when a line is first looked at from afar, and forgotten when the line changes.
 use super::Analysis;
+use crate::error::Result;
 use crate::prepare::Prepared;
 use crate::recipe::{Channels, Filter};
 use crate::recording::pyramid::{BASE, Ends, Pyramid, ends};
-use crate::recording::{Recording, Stretch};
+use crate::recording::{Large, Recording, Stretch};
 use serde::{Deserialize, Serialize};
 
 /// Which lines.
@@ -73,6 +74,30 @@ impl Lines {
                 .map(line)
                 .collect(),
         }
+    }
+
+    /// The lines of a recording whose samples stay in the file; how they swing is taken from its middle.
+    pub fn recorded_large(large: &Large) -> Track {
+        let middle = Lines::recorded(large.middle());
+        Track {
+            stretches: large.outline().stretches.clone(),
+            ..middle
+        }
+    }
+
+    /// See [`Lines::of_recorded`]; small bins are read from the file.
+    pub fn of_large(
+        large: &mut Large,
+        which: &[usize],
+        size: usize,
+        first: usize,
+        count: usize,
+    ) -> Result<Vec<f32>> {
+        let mut out = Vec::with_capacity(2 * count * which.len());
+        for bins in large.bins(which, size.max(1), first, count)? {
+            append(&mut out, &bins, count);
+        }
+        Ok(out)
     }
 
     /// The prepared channels, once there are any.

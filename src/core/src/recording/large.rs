@@ -19,6 +19,8 @@ const PYRAMID_BYTES: u64 = 32 << 20;
 const ENVELOPE_BINS: usize = 444;
 /// Samples of all channels that one step of a gathering reads.
 const STEP_SAMPLES: usize = 4 << 20;
+/// Samples that are read within a moment.
+const SOON: f64 = 32e6;
 /// Seconds from the middle of the longest stretch that stand for the recording where a look at all samples would take long.
 const SAMPLE_SECONDS: f64 = 60.0;
 
@@ -309,6 +311,11 @@ impl Large {
         let mut gathering = self.gathering(islands.to_vec(), all);
         while !self.gather(&mut gathering)? {}
         Ok(self.gathered(gathering))
+    }
+
+    /// Whether a span of so many seconds can be read within a moment.
+    pub fn reads_soon(&self, seconds: f64) -> bool {
+        seconds * self.outline.rate_hz * self.outline.channels.len() as f64 <= SOON
     }
 
     /// The samples of a span of time at once, cut where gaps are.
