@@ -302,6 +302,7 @@ export class Bridge {
   /** @param {any} data @param {(problem: Problem) => void} failed */
   #heard(data, failed) {
     if (data.event === "died") return failed(this.#died(data));
+    if (data.event === "progress" && data.stage === "reading" && data.done === data.of) performance.mark("teasel:read");
     if (data.event) return this.#say(data.event, data.problem ?? data);
     const waiting = this.#waiting.get(data.id);
     this.#waiting.delete(data.id);

@@ -90,6 +90,9 @@ struct Given {
     /// Open the whole records before a cut or other damage.
     #[arg(long)]
     salvage: bool,
+    /// Memory that an open recording may take, in MiB; of a larger one only what the windows need is kept, and no series is written.
+    #[arg(long, value_name = "MIB", value_parser = clap::value_parser!(u64).range(1..=1_048_576))]
+    memory: Option<u64>,
     #[command(flatten)]
     told: Told,
 }

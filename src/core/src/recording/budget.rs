@@ -53,6 +53,11 @@ impl Budget {
         self.streaming && self.by_memory && bytes > self.left
     }
 
+    /// One part in `parts` of what is left.
+    pub(crate) fn share(&self, parts: u64) -> u64 {
+        self.left / parts
+    }
+
     /// Takes `bytes` for `what` (as in "its samples").
     pub(crate) fn draw(&mut self, bytes: u64, what: &str) -> Result<()> {
         match self.left.checked_sub(bytes) {

@@ -72,11 +72,16 @@ pub(super) fn begin(
     if header.variant != Variant::Plain && !header.signals.iter().any(|s| s.is_text) {
         warnings.push(without_text(&header)?);
     }
-    let slice_records = (SLICE_BYTES / header.record_bytes).clamp(1, records);
     let analysed = |s: &&Signal| s.scale.is_ok() && s.samples == samples;
     let many = header.signals.iter().filter(analysed).count() as u64;
     let whole = (records.saturating_mul(samples)).saturating_mul(many * size_of::<f32>() as u64);
     let flows = budget.flows(whole);
+    let slice_bytes = if flows {
+        SLICE_BYTES.min(budget.share(8))
+    } else {
+        SLICE_BYTES
+    };
+    let slice_records = (slice_bytes / header.record_bytes).clamp(1, records);
     // Samples that flow are handed on after every slice.
     let kept = if flows { slice_records } else { records };
     let rate = |samples: u64| samples as f64 / header.record_s;
