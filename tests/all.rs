@@ -2,7 +2,11 @@
 
 mod contrast;
 mod describe;
+mod dimensions;
 mod large;
 mod prepare;
+mod quality;
 mod readers;
+mod rejection;
+mod steady;
 mod takeaway;

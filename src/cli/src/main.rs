@@ -1,7 +1,7 @@
 //! Teasel from a terminal: the page's pipeline for many recordings, and for checking.
 //!
 //! * `source`: recordings and side files on disk.
-//! * `run`, `apply`, `inspect`: the three commands.
+//! * `run`, `gather`, `apply`, `inspect`: the commands.
 //! * `folder`: files written beside their place and renamed, so that none is ever seen half written.
 //! * `say`: lines and progress on standard error.
 //!
@@ -9,6 +9,7 @@
 mod apply;
 mod figures;
 mod folder;
+mod gather;
 mod inspect;
 mod run;
 mod say;
@@ -23,6 +24,8 @@ const EXAMPLE: &str = "\
 Example:
   teasel inspect night-watch.edf
   teasel run recipe.json night-watch.edf --out results
+  teasel run recipe.json monday.edf tuesday.edf wednesday.edf --out results
+  teasel gather results
   teasel apply results/night-watch/weights.json another-night.edf --out carried
 
 A recipe that suffices:
@@ -57,6 +60,11 @@ enum Command {
         /// Seed of everything drawn, in place of the recipe's.
         #[arg(long, value_name = "N", value_parser = clap::value_parser!(u64).range(..=9_007_199_254_740_991))]
         seed: Option<u64>,
+    },
+    /// Make the table and the group of recordings that were run one process each.
+    Gather {
+        /// The folder that the runs wrote to (their --out).
+        folder: PathBuf,
     },
     /// Apply the filters of a weights file to each recording.
     Apply {
@@ -145,6 +153,7 @@ fn main() -> ExitCode {
             given,
             out,
         } => apply::apply(&weights, &given, &out),
+        Command::Gather { folder } => gather::gather(&folder),
         Command::Inspect { given, json } => inspect::inspect(&given, json),
     };
     if fine {

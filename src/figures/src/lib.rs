@@ -18,8 +18,10 @@ mod channels_map;
 mod course;
 mod eigenvalues;
 mod estimate;
+mod filters;
 mod fine;
 mod frame;
+mod group;
 mod head;
 mod inks;
 mod keep;
@@ -30,6 +32,7 @@ mod nan;
 mod overview;
 mod pen;
 mod places;
+mod principal;
 mod ratio;
 mod recorder;
 mod scores;
@@ -51,11 +54,12 @@ mod tests;
 pub use catalogue::{from_sheet, names};
 pub use fine::Fine;
 pub use frame::PlotBox;
+pub use group::group_figures;
 pub use look::{FACE, Look, Scheme};
 pub use pen::Drawn;
 pub use sizes::{report_width, stands_alone};
 pub use svg::svg;
-pub use table::Table;
+pub use table::{Table, csv};
 pub use traces::traces;
 
 use plotters::coord::Shift;
@@ -105,6 +109,10 @@ figures! {
     Course(course::Course),
     /// Variance of every dimension.
     Eigenvalues(eigenvalues::Eigenvalues),
+    /// What the filters let pass.
+    Filters(filters::Filters),
+    /// The first dimensions of the compression and their courses.
+    Principal(principal::Principal),
     /// Fitted and held-out ratio against C.
     Keep(keep::Keep),
     /// A pattern on the head.

@@ -6,7 +6,7 @@
 use crate::contrast::windows::{Selection, select};
 use crate::error::{Kind, Problem, Result};
 use crate::prepare::{Reach, inspect, reach};
-use crate::recipe::{Contrast, Recipe};
+use crate::recipe::{Contrast, Recipe, Reference};
 use crate::recording::large::{Gathering, Large, inside, stretch_of};
 use crate::recording::{Recording, Stretch};
 use crate::sheet::{ChannelCard, ChannelState, RecordingCard};
@@ -170,6 +170,14 @@ pub(super) fn islands(outline: &Recording, recipe: &Recipe) -> Result<Islands> {
         .at("contrast"));
     }
     let reach = reach(&outline.stretches, recipe, outline.rate_hz)?;
+    if reach.whole {
+        return Err(Problem::new(
+            Kind::TooLarge,
+            "a trend and fitted mains are taken off whole stretches, and these do not fit into the memory",
+            "use a high-pass and a notch instead",
+        )
+        .at("filter"));
+    }
     let selection = select(recipe, &outline.events, &reach.stretches, reach.rate_hz)?;
     let mut spans: Vec<(f64, f64)> = Vec::with_capacity(selection.windows.len());
     for window in &selection.windows {
@@ -208,12 +216,13 @@ pub(super) fn islands(outline: &Recording, recipe: &Recipe) -> Result<Islands> {
     ranges.sort_unstable_by_key(|r| r.start);
     let ranges = joined(ranges, &outline.stretches);
     let left_out = &recipe.channels.leave_out;
-    let reference: &[String] = match &recipe.channels.reference {
-        crate::recipe::Reference::Named(names) => names,
-        crate::recipe::Reference::Word(_) => &[],
+    let in_reference = |name: &String| match &recipe.channels.reference {
+        Reference::Named(names) => names.contains(name),
+        Reference::Bipolar(_) => true,
+        Reference::Word(_) => false,
     };
     let wanted: Vec<bool> = (outline.channels.iter())
-        .map(|c| !left_out.contains(&c.name) || reference.contains(&c.name))
+        .map(|c| !left_out.contains(&c.name) || in_reference(&c.name))
         .collect();
     let islands = Islands {
         ranges,

@@ -23,7 +23,7 @@ use crate::sheet::Sheet;
 use islands::Ashore;
 pub use propose::{Proposal, propose};
 use serde::{Deserialize, Serialize};
-pub use summary::{Summary, fits, fits_large, summary, summary_of_large};
+pub use summary::{Summary, blank, fits, fits_large, summary, summary_of_large};
 use work::Work;
 
 /// What a step is about.

@@ -4,7 +4,7 @@ use crate::error::Result;
 use crate::prepare::inspect;
 use crate::recipe::{Contrast, EventWindow, Recipe};
 use crate::recording::{Large, Recording};
-use crate::sheet::{ChannelCard, RecordingCard};
+use crate::sheet::{ChannelCard, RecordingCard, Sheet};
 use serde::Serialize;
 
 /// The recording and its channels.
@@ -51,6 +51,11 @@ pub fn fits_large(large: &Large, recipe: &Recipe) -> Result<()> {
 /// Those of [`super::Analysis::new`].
 pub fn fits(recording: &Recording, recipe: &Recipe) -> Result<()> {
     check_recipe(recipe, recording)
+}
+
+/// A sheet that knows a recording and a recipe, and no result.
+pub fn blank(recording: &Recording, recipe: &Recipe) -> Sheet {
+    cards::begin(recording, recipe)
 }
 
 fn no_contrast() -> Recipe {

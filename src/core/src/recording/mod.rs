@@ -17,14 +17,18 @@ mod budget;
 pub mod edf;
 mod events_table;
 mod given;
+mod gzip;
+mod joined;
 pub mod large;
 mod names;
 mod opening;
 pub mod pyramid;
+mod table;
 mod units;
 
 pub use budget::MEMORY_BYTES;
 pub use given::UNITS;
+pub use joined::natural_order;
 pub use large::Large;
 pub use opening::{MemorySource, OpenOptions, Opened, Opening, open};
 

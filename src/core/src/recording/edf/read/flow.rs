@@ -1,7 +1,7 @@
 //! A file whose samples are handed through, and read again in pieces.
 use super::{EdfReader, SLICE_BYTES, decode};
 use crate::error::Result;
-use crate::recording::edf::header::Scale;
+use crate::recording::edf::header::{Scale, Width};
 use crate::recording::large::{Flowing, Pieces};
 use crate::recording::{Source, Stretch};
 
@@ -23,6 +23,7 @@ impl Flowing for EdfReader {
     }
     fn pieces(&self) -> Box<dyn Pieces> {
         Box::new(EdfPieces {
+            width: self.header.width,
             first_byte: self.header.bytes,
             record_bytes: self.header.record_bytes as usize,
             samples: self.samples as usize,
@@ -35,6 +36,7 @@ impl Flowing for EdfReader {
 
 /// Where every sample lies.
 struct EdfPieces {
+    width: Width,
     first_byte: u64,
     record_bytes: usize,
     /// Samples a record of each channel.
@@ -76,7 +78,7 @@ impl Pieces for EdfPieces {
                     let to = end.saturating_sub(begins).min(self.samples);
                     if from < to {
                         let part = &data[offset + from * each..offset + to * each];
-                        decode(part, *scale, samples);
+                        decode(self.width, part, *scale, samples);
                     }
                 }
             }
