@@ -88,7 +88,8 @@ export function fill(out, tiles, kind, line, track, look, size, most) {
   for (const { stretch, first, end } of pieces(track, look)) {
     const each = look.columns / look.seconds / track.rate_hz;
     const left = (stretch.onset_s - look.from) * (look.columns / look.seconds) - stretch.first * each;
-    if (size === 1) joined(out, source, Math.max(stretch.first, first - 1), Math.min(stretch.first + stretch.count, end + 1), left, each);
+    // Where a column has several samples, their ends tell all.
+    if (size === 1 && each > 0.5) joined(out, source, Math.max(stretch.first, first - 1), Math.min(stretch.first + stretch.count, end + 1), left, each);
     else binned(out, source, first, end, left, each);
   }
 }
@@ -171,7 +172,7 @@ function joined({ low, high }, source, first, end, left, each) {
   const columns = low.length;
   let [x0, y0] = [NaN, NaN];
   for (let sample = first; sample < end; sample += 1) {
-    source.at(sample);
+    if (sample >= source.to || sample < source.from) source.at(sample);
     const { data, size } = source;
     const bin = data ? 2 * (Math.floor(sample / size) - Math.floor(source.from / (size * BINS)) * BINS) : 0;
     const y1 = data ? (/** @type {number} */ (data[bin]) + /** @type {number} */ (data[bin + 1])) / 2 : NaN;

@@ -56,7 +56,10 @@ export function mountTraces(app) {
   followView(changed);
   followMarks(draw);
   new ResizeObserver(draw).observe(place);
-  matchMedia("(prefers-color-scheme: dark)").addEventListener("change", () => requestAnimationFrame(draw));
+  matchMedia("(prefers-color-scheme: dark)").addEventListener("change", () => {
+    colours = null;
+    draw();
+  });
 
   const reload = keyed(async () => {
     const asked = now().summary;
@@ -157,6 +160,8 @@ function heights(channels, components) {
 const columns = new Columns();
 /** @type {ImageData | null} */
 let image = null;
+/** The page's colours, until the scheme changes. @type {import("./trace-ground.js").Inks | null} */
+let colours = null;
 
 /** @param {HTMLElement} place @param {HTMLCanvasElement} ground @param {HTMLCanvasElement} lines @param {Tiles} tiles */
 function frame(place, ground, lines, tiles) {
@@ -169,8 +174,9 @@ function frame(place, ground, lines, tiles) {
   const wide = place.clientWidth;
   const density = Math.max(1, devicePixelRatio);
   const box = { left: LEFT, right: wide - RIGHT, top: TOP, bottom: Math.round(size.all - FOOT) };
-  place.style.height = `${Math.round(size.all)}px`;
-  const ink = inks();
+  const high = Math.round(size.all);
+  if (place.style.height !== `${high}px`) place.style.height = `${high}px`;
+  const ink = (colours ??= inks());
   const leftOut = new Set(now().recipe?.channels.leave_out ?? []);
   const room = rooms(shown.track);
   /** @type {(Row & { room: number, rowHeight: number })[]} */
@@ -201,8 +207,10 @@ function frame(place, ground, lines, tiles) {
   }
   lines.getContext("2d")?.putImageData(image, 0, 0);
 
-  [ground.width, ground.height] = [Math.round(wide * density), Math.round(size.all * density)];
-  Object.assign(ground.style, { width: `${wide}px`, height: `${Math.round(size.all)}px` });
+  if (ground.width !== Math.round(wide * density) || ground.height !== Math.round(high * density)) {
+    [ground.width, ground.height] = [Math.round(wide * density), Math.round(high * density)];
+    Object.assign(ground.style, { width: `${wide}px`, height: `${high}px` });
+  }
   const pen = ground.getContext("2d");
   if (!pen) return;
   pen.setTransform(density, 0, 0, density, 0, 0);
