@@ -187,6 +187,20 @@ export class Bridge {
     return this.#ask("traces", fromS, seconds, channels);
   }
 
+  /** The lines that can be drawn now. @returns {Promise<import("./types").Tracks>} */
+  tracks() {
+    return this.#ask("tracks");
+  }
+
+  /**
+   * For each of some lines the smallest and the largest value of `count` bins of `size` samples from bin `first` on.
+   * @param {import("./types").LineKind} kind @param {number[]} lines indexes @param {number} size a power of four @param {number} first @param {number} count
+   * @returns {Promise<Float32Array>}
+   */
+  bins(kind, lines, size, first, count) {
+    return this.#ask("bins", kind, lines, size, first, count);
+  }
+
   /**
    * The bytes of one of the files to take away.
    * @param {string} kind
@@ -292,6 +306,7 @@ export class Bridge {
   /** @param {any} data @param {(problem: Problem) => void} failed */
   #heard(data, failed) {
     if (data.event === "died") return failed(this.#died(data));
+    if (data.event === "progress" && data.stage === "reading" && data.done === data.of) performance.mark("teasel:read");
     if (data.event) return this.#say(data.event, data.problem ?? data);
     const waiting = this.#waiting.get(data.id);
     this.#waiting.delete(data.id);

@@ -182,6 +182,23 @@ export interface Table {
   columns: string[];
   rows: string[][];
 }
+/** Lines to look at: channels as recorded, channels as prepared, components. */
+export type LineKind = "recorded" | "prepared" | "components";
+export interface Stretch {
+  first: number;
+  count: number;
+  onset_s: number;
+}
+export interface Track {
+  rate_hz: number;
+  stretches: Stretch[];
+  lines: { name: string; unit: string; swing: number }[];
+}
+export interface Tracks {
+  recorded: Track;
+  prepared: Track | null;
+  components: Track | null;
+}
 export interface Progress {
   stage: string;
   done: number;
@@ -248,6 +265,8 @@ export interface Bridge {
   on(name: string, listener: (news: any) => void): void;
   figure(name: string): Promise<Figure | null>;
   traces(from_s: number, seconds: number, channels: number[]): Promise<Figure>;
+  tracks(): Promise<Tracks>;
+  bins(kind: LineKind, lines: number[], size: number, first: number, count: number): Promise<Float32Array>;
   takeaway(kind: string, extras?: { name: string; bytes: Uint8Array<ArrayBuffer> }[]): Promise<Uint8Array<ArrayBuffer>>;
   draw(canvas: HTMLCanvasElement, figure: Figure, options: DrawOptions): void;
   figureHeight(figure: Figure, width: number): number;

@@ -8,7 +8,7 @@ use std::io::Write as _;
 use std::path::Path;
 use teasel_core::analysis::{Proposal, propose};
 use teasel_core::error::{Kind, Problem, Result};
-use teasel_core::recording::Recording;
+use teasel_core::recording::{Opened, Recording};
 use teasel_core::takeaway::recipe_json;
 
 /// Inspects all recordings; false where one was bad.
@@ -41,7 +41,10 @@ pub fn inspect(given: &Given, as_json: bool) -> bool {
 
 fn one(path: &Path, given: &Given, as_json: bool) -> Result<Value> {
     let mut meter = Meter::new(&source::file_name(path));
-    let recording = source::recording(path, given, &given.told.given(), &mut meter)?;
+    let recording = match source::open(path, given, &given.told.given(), &mut meter)? {
+        Opened::Whole(recording) => recording,
+        Opened::Large(large) => large.outline().clone(),
+    };
     if as_json {
         card(&recording, given)
     } else {

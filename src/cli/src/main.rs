@@ -102,6 +102,9 @@ struct Given {
     /// The recordings are files of one: join them in the natural order of their names.
     #[arg(long)]
     joined: bool,
+    /// Memory that an open recording may take, in MiB; of a larger one only what the windows need is kept, and no series is written.
+    #[arg(long, value_name = "MIB", value_parser = clap::value_parser!(u64).range(1..=1_048_576))]
+    memory: Option<u64>,
     #[command(flatten)]
     told: Told,
 }

@@ -1,4 +1,5 @@
 //! What is computed, in which order, and what a change of the recipe makes stale.
+use super::islands::{Standing, moved};
 use super::{Progress, Series, Stage, cards};
 use crate::contrast::band::Banding;
 use crate::contrast::fit::{Ends, Labels, Method, centre, extremes, fit};
@@ -34,6 +35,8 @@ const BEST_LIMIT: usize = 64;
 pub(super) struct Work {
     pub(super) sheet: Sheet,
     cards: Option<Vec<ChannelCard>>,
+    /// What is known of the whole where only islands of it are in memory.
+    standing: Option<Standing>,
     /// The comparison of the recorded channels while it is at work; what it gave holds for every recipe.
     comparing: Option<Comparing>,
     pub(super) quality: Option<Quality>,
@@ -151,10 +154,22 @@ fn log_cost(n: usize) -> f64 {
 }
 
 impl Work {
+    /// On islands of a recording whose samples stay in the file.
+    pub(super) fn on_islands(recording: &Recording, recipe: &Recipe, standing: Standing) -> Self {
+        let mut work = Work::new(recording, recipe);
+        work.sheet.warnings = standing.card.warnings.clone();
+        work.sheet.recording = standing.card.clone();
+        work.sheet.channels = standing.cards.clone();
+        work.cards = Some(standing.cards.clone());
+        work.standing = Some(standing);
+        work
+    }
+
     pub(super) fn new(recording: &Recording, recipe: &Recipe) -> Self {
         Work {
             sheet: cards::begin(recording, recipe),
             cards: None,
+            standing: None,
             comparing: None,
             quality: None,
             preparing: None,
@@ -379,7 +394,8 @@ impl Work {
         if self.sketched < up.min(1) + down.min(1) {
             return Task::Sketch;
         }
-        if self.quality.is_none() {
+        // Channels are compared over all samples.
+        if self.quality.is_none() && self.standing.is_none() {
             return Task::Compare;
         }
         if self
@@ -479,12 +495,17 @@ impl Work {
                 let Some(prepared) = &self.prepared else {
                     return Err(lost());
                 };
+                let standing = self.standing.as_ref();
                 let selection = select(
                     recipe,
                     &recording.events,
-                    &prepared.stretches,
+                    standing.map_or(&prepared.stretches, |s| &s.whole),
                     prepared.rate_hz,
                 )?;
+                let selection = match standing {
+                    Some(s) => moved(selection, &s.islands).ok_or_else(lost)?,
+                    None => selection,
+                };
                 self.sheet.windows = Some(selection.card.clone());
                 afford(prepared.samples.len(), selection.windows.len(), recipe)?;
                 let all = selection.windows.len() as u64;
