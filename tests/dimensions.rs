@@ -3,6 +3,7 @@
 //! Gavish & Donoho 2014: λ(1) = 4/√3, ω(1) = 2.858. Closed forms to 1e-10, medians of the Marchenko–Pastur law to 1e-8.
 use nalgebra::DMatrix;
 use teasel_core::contrast::linalg::eigenvalues;
+use teasel_core::contrast::read::Reader;
 use teasel_core::contrast::space::{Covariances, Space};
 use teasel_core::contrast::windows::Window;
 use teasel_core::evidence::dimensions::{
@@ -196,7 +197,14 @@ fn white_noise_makes_the_rank_full_and_hardly_changes_what_stands_out() {
     let of = |x: &DMatrix<f64>| {
         let samples = channels(x);
         let mut all = Covariances::default();
-        windows.iter().for_each(|w| all.push(&samples, w));
+        let reader = Reader {
+            signal: &samples,
+            reference: &samples,
+            lag: 0,
+        };
+        windows
+            .iter()
+            .for_each(|w| all.push(&reader, w, None, false));
         let space = Space::new(&all, 150, |_| true);
         let card = counted(&samples, &windows, &space.eigenvalues[..space.rank]);
         let stands_out = outstanding(&card.correlation, &card.surrogate_95);
