@@ -1,4 +1,6 @@
 /** The one door: drop, picker, demo and link meet here, and what goes wrong is said in the error's own words. */
+import { sayAsks, sayParts } from "./asking.js";
+import { sorted } from "./files.js";
 import { download, find } from "./kit.js";
 import { isSmall } from "./choosing.js";
 import { asProblem, unsay } from "./notices.js";
@@ -98,7 +100,7 @@ export function door({ bridge, change: edit }, compute) {
     const proposal = await bridge.propose();
     const link = waiting?.link ? bridge.linkComplete(waiting.link, events) : null;
     const guessed = waiting?.link ? bridge.linkDecode(waiting.link).events !== null && Object.keys(events).length > 1 : !waiting && !isDemo() && isTied(events);
-    const recipe = link?.recipe ?? waiting?.recipe ?? proposal?.recipe ?? unproposed(bridge, summary);
+    const recipe = withTold(link?.recipe ?? waiting?.recipe ?? proposal?.recipe ?? unproposed(bridge, summary));
     if (link?.notes.length) sayOpenEnds(link.notes);
     if (!recipe) {
       put({ phase: "choosing", progress: null });
@@ -117,6 +119,20 @@ export function door({ bridge, change: edit }, compute) {
     return now().source?.demo !== null;
   }
 
+  /** Files as they were dropped or chosen; several recordings are opened as one only when that is said. @param {File[]} files */
+  async function gather(files) {
+    const all = withRecording(files);
+    const told = all === files ? {} : given();
+    const { recordings } = await sorted(all).catch(() => ({ recordings: [] }));
+    const join = () => void open({ files: all, salvage: false, given: told });
+    if (recordings.length < 2) return join();
+    const names = recordings.map(({ name }) => name);
+    const order = bridge.naturalOrder(names).map((at) => names[at] ?? "");
+    unsay("#hint");
+    sayParts(order, [{ label: "Open them as one recording", main: true, act: join }, { label: "Choose another recording…", act: pick }, ...(now().summary ? [{ label: `Stay with ${now().source?.name ?? "this one"}`, act: stay }] : [])]);
+    put({ phase: "error", progress: null });
+  }
+
   /** @param {unknown} thrown */
   function failed(thrown) {
     const problem = asProblem(thrown);
@@ -124,6 +140,8 @@ export function door({ bridge, change: edit }, compute) {
     if (problem.kind === "died") return;
     if (problem.kind === "stopped") return put({ phase: now().summary ? "ready" : "empty", progress: null });
     put({ phase: "error", progress: null });
+    const asking = last && "files" in last ? last : null;
+    if (problem.asks?.length && asking) return sayAsks(problem, asked(asking).given, (told) => void open({ ...asking, given: { ...asking.given, ...told } }), waysOn(problem));
     sayProblem(problem, waysOn(problem));
   }
 
@@ -200,8 +218,7 @@ export function door({ bridge, change: edit }, compute) {
       if (own) return this.recipe(own);
       const [alone] = files;
       if (files.length === 1 && alone && (await isBeside(alone).catch(() => false))) return this.beside(alone);
-      const joined = withRecording(files);
-      await open({ files: joined, salvage: false, given: joined === files ? {} : given() });
+      await gather(files);
     },
     /** A table that belongs to the open recording, in place of one of the same name. @param {File} file */
     async beside(file) {
@@ -233,7 +250,10 @@ export function door({ bridge, change: edit }, compute) {
         const recipe = bridge.parseRecipe(text);
         if (!now().summary) return wait({ recipe, link: null }, `${file.name} is open`);
         unsay("#hint");
-        change(recipe);
+        if (!good || !("files" in good) || tellsNothingNew(recipe)) return change(/** @type {Recipe} */ (withTold(recipe)));
+        // The recipe reads the file in another way than it is open: it is opened again, with the recipe waiting for it.
+        waiting = { recipe, link: null };
+        await open({ ...good, given: { ...good.given, ...recipe.recording } });
       } catch (thrown) {
         const problem = asProblem(thrown);
         failed({ ...problem, file: problem.file ?? file.name });
@@ -267,6 +287,18 @@ export function door({ bridge, change: edit }, compute) {
   /** @returns {Given} */
   function given() {
     return good && "files" in good ? (good.given ?? {}) : {};
+  }
+
+  /** A recipe with what the open recording was opened with. @param {Recipe | null} recipe */
+  function withTold(recipe) {
+    if (!recipe || !good || !("files" in good)) return recipe;
+    return { ...recipe, recording: asked(good).given };
+  }
+
+  /** Whether a recipe tells of the recording what it was opened with, or nothing. @param {Recipe} recipe */
+  function tellsNothingNew(recipe) {
+    const old = /** @type {Record<string, unknown>} */ (given());
+    return Object.entries(recipe.recording ?? {}).every(([key, value]) => value === null || value === undefined || JSON.stringify(value) === JSON.stringify(old[key]));
   }
 
   /** How a file is to be opened: a recipe that waits may tell what the file does not. @param {{ salvage: boolean, given?: Given }} source */
