@@ -129,6 +129,8 @@ export interface Sheet {
 export interface Summary {
   recording: RecordingCard;
   channels: ChannelCard[];
+  /** The samples stay in the file; bytes that the part of them may take which the windows need. */
+  part_bytes?: number;
 }
 export interface Span {
   text: string;
