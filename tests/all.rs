@@ -3,6 +3,7 @@
 mod contrast;
 mod describe;
 mod dimensions;
+mod kinds;
 mod large;
 mod prepare;
 mod quality;

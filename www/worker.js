@@ -67,10 +67,10 @@ const LATER = Symbol("later");
 
 /** @type {Record<string, (id: number, ...args: any[]) => unknown>} */
 const calls = {
-  open(id, /** @type {File} */ file, /** @type {{ name: string, bytes: Uint8Array }[]} */ sides, /** @type {boolean} */ salvage, /** @type {object} */ given) {
+  open(id, /** @type {File[]} */ files, /** @type {{ name: string, bytes: Uint8Array }[]} */ sides, /** @type {boolean} */ salvage, /** @type {object} */ given) {
     const next = new Session();
     try {
-      next.begin(file.name, file.size, reader(file), sides, salvage, given);
+      next.begin(files.map((file) => ({ name: file.name, bytes: file.size, read: reader(file) })), sides, salvage, given);
     } catch (error) {
       // What was open stays open.
       next.free();

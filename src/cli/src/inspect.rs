@@ -15,7 +15,8 @@ use teasel_core::takeaway::recipe_json;
 pub fn inspect(given: &Given, as_json: bool) -> bool {
     let mut fine = true;
     let mut cards = Vec::new();
-    for path in &given.recordings {
+    let recordings = given.each();
+    for path in &recordings {
         match one(path, given, as_json) {
             Ok(card) => cards.push(card),
             Err(problem) => {
@@ -26,7 +27,7 @@ pub fn inspect(given: &Given, as_json: bool) -> bool {
     }
     let text = if !as_json {
         cards.iter().filter_map(Value::as_str).collect()
-    } else if let ([card], 1) = (&cards[..], given.recordings.len()) {
+    } else if let ([card], 1) = (&cards[..], recordings.len()) {
         format!("{card:#}\n")
     } else if cards.is_empty() {
         String::new()

@@ -27,11 +27,8 @@ pub fn run(recipe: &Path, given: &Given, out: &Path, seed: Option<u64>) -> bool 
     recipe.recording = given.told.given().or(recipe.recording);
     let mut rows = Vec::new();
     let mut fine = true;
-    for (path, name) in given
-        .recordings
-        .iter()
-        .zip(folder::names(&given.recordings))
-    {
+    let recordings = given.each();
+    for (path, name) in recordings.iter().zip(folder::names(&recordings)) {
         let shown = name.display().to_string();
         match one(&recipe, path, given, &out.join(&name), &shown) {
             Ok(row) => rows.push(row),
@@ -47,7 +44,7 @@ pub fn run(recipe: &Path, given: &Given, out: &Path, seed: Option<u64>) -> bool 
             }
         }
     }
-    if given.recordings.len() > 1
+    if recordings.len() > 1
         && let Err(problem) = gather::write(out, rows)
     {
         say::problem(&problem);

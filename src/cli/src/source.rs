@@ -129,12 +129,19 @@ pub fn recording(
 /// Opens a recording with its side files; where it does not fit into the memory, its samples stay in the file.
 pub fn open(path: &Path, given: &Given, told: &recipe::Given, meter: &mut Meter) -> Result<Opened> {
     recipe::given_check(told)?;
-    let (file, length) = opened(path)?;
-    let source = FileSource {
-        name: file_name(path),
-        file,
-        length,
+    let paths = match given.joined {
+        true => &given.recordings[..],
+        false => &[path.to_owned()],
     };
+    let mut sources: Vec<Box<dyn Source>> = Vec::new();
+    for path in paths {
+        let (file, length) = opened(path)?;
+        sources.push(Box::new(FileSource {
+            name: file_name(path),
+            file,
+            length,
+        }));
+    }
     let options = OpenOptions {
         salvage: given.salvage,
         given: told.clone(),
@@ -161,8 +168,7 @@ pub fn open(path: &Path, given: &Given, told: &recipe::Given, meter: &mut Meter)
         problem
     };
     let memory = given.memory.map_or(MEMORY_BYTES, |mb| mb << 20);
-    let mut opening =
-        Opening::begin_streaming(Box::new(source), sides, options, memory).map_err(hint)?;
+    let mut opening = Opening::begin_joined(sources, sides, options, memory).map_err(hint)?;
     while !opening.finished() {
         let (done, of) = opening.step().map_err(hint)?;
         meter.reading(done, of);

@@ -2,7 +2,6 @@
 use crate::convert::{Outcome, from_js, thrown, to_js};
 use crate::source::JsSource;
 use crate::take;
-use js_sys::Function;
 use serde::{Deserialize, Serialize};
 use std::mem;
 use teasel_core::analysis::lines::{Kind as LineKind, Lines, Track};
@@ -77,13 +76,12 @@ impl Session {
         Session::default()
     }
 
-    /// Reads a recording's header; `step` reads the rest. `read` is `(offset, length) => Uint8Array`, synchronous; `sides` is
+    /// Reads a recording's header; `step` reads the rest. `files` is `[{name, bytes, read}]`, the files of one recording in any order, `bytes` their
+    /// lengths and `read` `(offset, length) => Uint8Array`, synchronous; `sides` is
     /// `[{name, bytes}]`; `salvage` opens the whole records before a cut; `given` is a recipe's `recording`.
     pub fn begin(
         &mut self,
-        name: String,
-        bytes: f64,
-        read: Function,
+        files: Vec<JsValue>,
         sides: JsValue,
         salvage: bool,
         given: JsValue,
@@ -101,9 +99,9 @@ impl Session {
             .collect();
         self.given = from_js(given)?;
         given_check(&self.given).map_err(thrown)?;
-        let source = JsSource::new(name, bytes, read);
-        let opening = Opening::begin_streaming(
-            Box::new(source),
+        let sources: Outcome<Vec<_>> = files.iter().map(JsSource::of).collect();
+        let opening = Opening::begin_joined(
+            sources?,
             sides,
             OpenOptions {
                 salvage,

@@ -11,6 +11,7 @@ mod cards;
 mod describing;
 mod islands;
 pub mod lines;
+mod opened;
 mod propose;
 mod summary;
 mod work;

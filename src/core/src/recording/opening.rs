@@ -162,7 +162,8 @@ impl Opening {
         })
     }
 
-    /// Opens several files of one recording, in the natural order of their names; the recording is called after the first.
+    /// Opens several files of one recording, in the natural order of their names; the recording is called after the first. A single file is
+    /// opened as by [`Opening::begin_streaming`].
     ///
     /// # Errors
     /// Those of [`Opening::begin`]; `Unsupported` for a file with other channels or another rate, named.
@@ -170,11 +171,12 @@ impl Opening {
         mut sources: Vec<Box<dyn Source>>,
         sides: Vec<SideFile>,
         options: OpenOptions,
+        memory_bytes: u64,
     ) -> Result<Opening> {
         if sources.len() == 1
             && let Some(source) = sources.pop()
         {
-            return Opening::begin(source, sides, options);
+            return Opening::begin_streaming(source, sides, options, memory_bytes);
         }
         let first = sources.iter().map(|s| s.name());
         let name = first.min_by(|a, b| joined::natural_order(a, b));
@@ -182,7 +184,7 @@ impl Opening {
             name: name.unwrap_or_default().to_owned(),
             bytes: sources.iter().map(|source| source.len()).sum(),
         };
-        let mut budget = Budget::new(together.bytes, MEMORY_BYTES);
+        let mut budget = Budget::new(together.bytes, memory_bytes);
         let reader = joined::begin(sources, &options, &mut budget)?;
         Ok(Opening {
             source: Box::new(together),
