@@ -7,6 +7,7 @@ use crate::contrast::read::Reader;
 use crate::contrast::reject::{judge, measure, relative_size};
 use crate::contrast::space::Covariances;
 use crate::contrast::windows::{Exchange, Selection, Window, check, lag_samples, select};
+use crate::describe::placing::placed;
 use crate::error::{Kind, Problem, Result};
 use crate::evidence::FEWEST;
 use crate::evidence::dimensions::Counting;
@@ -319,6 +320,7 @@ impl Work {
         );
         if preparation {
             self.sheet.channels = self.cards.clone().unwrap_or_default();
+            self.sheet.recording.layout = placed(recording, &new.channels).0;
         }
         Ok(())
     }
