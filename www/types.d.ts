@@ -164,6 +164,8 @@ export interface Sheet {
 export interface Summary {
   recording: RecordingCard;
   channels: ChannelCard[];
+  /** The samples stay in the file; bytes that the part of them may take which the windows need. */
+  part_bytes?: number;
   /** What is told of the recording, in order. */
   facts: { label: string; text: string }[];
 }
