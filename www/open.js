@@ -48,8 +48,10 @@ export function door({ bridge, change: edit }, compute) {
   const pick = () => find("#recording").click();
   const takeRecipe = () => download("recipe.json", bridge.recipeText(/** @type {Recipe} */ (now().recipe)), "application/json");
 
-  /** @param {Source} source @returns {Promise<void>} */
-  async function open(source) {
+  /** @param {Source} wanted @returns {Promise<void>} */
+  async function open(wanted) {
+    // What a waiting recipe tells of the file is the file's from now on.
+    const source = "files" in wanted ? { ...wanted, ...asked(wanted) } : wanted;
     last = source;
     turn += 1;
     const mine = turn;
