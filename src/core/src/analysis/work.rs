@@ -667,7 +667,9 @@ impl Work {
             self.design = None;
             self.drop_flat()?;
             if let (true, Some(selection)) = (levelled(recipe), &self.selection) {
-                self.average_ratio = self.covariances.level(&selection.sides());
+                let sides = selection.sides();
+                self.average_ratio = self.covariances.total_level(&sides);
+                self.covariances.scale_signal(&sides, self.average_ratio);
             }
         }
         Ok(progress(Stage::Windows, done as u64, all as u64, false))
@@ -1141,7 +1143,12 @@ impl Work {
         let all = selection.windows.len();
         let level = self.level.get_or_insert_with(|| {
             let mut covariances = self.covariances.clone();
-            let ratio = covariances.level(&selection.sides());
+            let sides = selection.sides();
+            let ratio = match recipe.measure {
+                Measure::Typical => covariances.typical_level(&sides),
+                Measure::Total => covariances.total_level(&sides),
+            };
+            covariances.scale_signal(&sides, ratio);
             let ground = Ground::new(&covariances, limit(recipe), vec![true; all]);
             Level {
                 covariances,
