@@ -11,6 +11,7 @@ import { mountFinding } from "./finding.js";
 import { mountFirst } from "./first.js";
 import { mountLedger } from "./ledger.js";
 import { duration, size } from "./numbers.js";
+import { mountMany } from "./many.js";
 import { unsay } from "./notices.js";
 import { door } from "./open.js";
 import { mountProgress } from "./progress.js";
@@ -51,7 +52,8 @@ function join(bridge) {
   const work = mountWork(bridge, { failed: (thrown) => doors.failed(thrown), died: () => doors.died() });
   /** @type {import("./types").App} */
   const app = { bridge, change: work.change };
-  const doors = door(app, work.send);
+  const many = mountMany(app, { first: (files) => void doors.files(files) });
+  const doors = door(app, work.send, (files) => many.offer(files).catch(doors.failed));
   mountRecording(app);
   mountChannels(app);
   mountWindows(app);

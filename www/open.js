@@ -1,6 +1,7 @@
 /** The one door: drop, picker, demo and link meet here, and what goes wrong is said in the error's own words. */
 import { download, find } from "./kit.js";
 import { isSmall } from "./choosing.js";
+import { isSet } from "./many.js";
 import { asProblem, unsay } from "./notices.js";
 import { count } from "./numbers.js";
 import { clearLink, recipeAtStart } from "./recipe-link.js";
@@ -19,8 +20,9 @@ const BESIDE = /\.tsv$|_(events|channels|electrodes|coordsystem|eeg)\.(json|csv)
 /**
  * @param {App} app
  * @param {() => void} compute
+ * @param {(files: File[]) => Promise<void>} [set] takes several recordings at once
  */
-export function door({ bridge, change: edit }, compute) {
+export function door({ bridge, change: edit }, compute, set) {
   const change = (/** @type {Recipe} */ recipe) => {
     if (!now().recipe) put({ recipe });
     edit((old) => void Object.assign(old, structuredClone(recipe)));
@@ -191,6 +193,7 @@ export function door({ bridge, change: edit }, compute) {
     failed,
     /** @param {File[]} files */
     async files(files) {
+      if (set && isSet(files)) return set(files);
       const own = files.length === 1 && files[0]?.name.endsWith(".json") ? files[0] : null;
       await (own ? this.recipe(own) : open({ files: withRecording(files), salvage: false }));
     },

@@ -192,7 +192,7 @@ export interface Bridge {
   resume(): Promise<unknown>;
   revive(): Promise<Summary | null>;
   watch(names: string[]): Promise<unknown>;
-  on(name: string, listener: (news: any) => void): void;
+  on(name: string, listener: (news: any) => void): () => void;
   figure(name: string): Promise<Figure | null>;
   traces(from_s: number, seconds: number, channels: number[]): Promise<Figure>;
   takeaway(kind: string, extras?: { name: string; bytes: Uint8Array<ArrayBuffer> }[]): Promise<Uint8Array<ArrayBuffer>>;
@@ -206,6 +206,45 @@ export interface Bridge {
   recipeText(recipe: Recipe): string;
   linkDecode(text: string): { recipe: Recipe; events: [number, number] | null; without: string[] };
   linkComplete(text: string, events: Record<string, number>): { recipe: Recipe; notes: string[] };
+  row(folder: string): Promise<string>;
+  another(): Promise<Bridge>;
+  end(): void;
+  folderNames(files: string[]): string[];
+  failedRow(recording: string, folder: string, why: Problem): string;
+  many(rows: string[]): Many;
+}
+/** The first component of an end, in the table of a set. */
+export interface Leader {
+  fitted: number;
+  typical_held_out: number | null;
+  typical_low: number | null;
+  typical_high: number | null;
+  total_held_out: number | null;
+  p: number | null;
+  peak_hz: number | null;
+  largest_at: string;
+  likeness: number | null;
+}
+export interface ManyRow {
+  recording: string;
+  folder: string;
+  problem: string | null;
+  signal_windows: number | null;
+  reference_windows: number | null;
+  measure: "typical" | "total" | null;
+  stronger_1: Leader | null;
+  weaker_1: Leader | null;
+  warnings: string[];
+}
+/** A set of recordings, one recipe: the table, what they say together, and its files. */
+export interface Many {
+  recordings: ManyRow[];
+  said: string[];
+  but: string[];
+  csv: string;
+  json: string;
+  group_csv: string;
+  figures: { name: string; caption: string; figure: Figure }[];
 }
 /** What every part of the sheet works with. */
 export interface App {

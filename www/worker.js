@@ -116,6 +116,7 @@ const calls = {
   traces: (_id, /** @type {number} */ from, /** @type {number} */ seconds, /** @type {number[]} */ channels) =>
     open().traces(from, seconds, new Uint32Array(channels)),
   takeaway: (_id, /** @type {string} */ kind, /** @type {unknown} */ extras) => open().takeaway(kind, extras),
+  row: (_id, /** @type {string} */ folder) => open().row(folder),
   memory: () => memory.buffer.byteLength,
 };
 

@@ -11,7 +11,7 @@ use teasel_core::error::{Kind, Problem};
 use teasel_core::recipe::Recipe;
 use teasel_core::recording::{OpenOptions, Opening, Recording, SideFile};
 use teasel_core::sheet::Sheet;
-use teasel_core::takeaway::readings;
+use teasel_core::takeaway::{Row, readings};
 use wasm_bindgen::JsValue;
 use wasm_bindgen::prelude::wasm_bindgen;
 
@@ -206,6 +206,12 @@ impl Session {
             seconds,
             channels,
         ))
+    }
+
+    /// What this recording gives to the table and the group of a set, as the text of `row.json`.
+    pub fn row(&self, folder: &str) -> Outcome<String> {
+        let sheet = self.known().ok_or_else(|| thrown(nothing_open()))?;
+        Row::of(sheet, folder).json().map_err(thrown)
     }
 
     /// A file to take away: `weights-json`, `weights-csv`, `results-json`, `recipe`, `report`, `everything`; `extras` is `[{name, bytes}]`.

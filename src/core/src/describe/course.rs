@@ -232,6 +232,9 @@ impl<'a> Trials<'a> {
         TrialImage {
             t_s: bins.times(self.rate_hz),
             db: (0..self.rows.len()).map(row).collect(),
+            onsets_s: self.rows.iter().map(|r| r.onset_s).collect(),
+            lags_s: Vec::new(),
+            lag_to: String::new(),
         }
     }
 

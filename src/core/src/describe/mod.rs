@@ -2,7 +2,8 @@
 //!
 //! * [`positions`]: electrode positions by name; sphere and plane.
 //! * [`spline`], [`map`]: spherical splines, and patterns spread over the head.
-//! * [`welch`], [`spectra`]: power spectral densities of both sides.
+//! * [`welch`], [`multitaper`], [`spectra`]: power spectral densities of both sides.
+//! * [`time_frequency`]: power and phase consistency by wavelets.
 //! * [`course`]: power and average around an event, single trials.
 //!
 //! Intervals are percentile bootstrap intervals over windows or trials (Efron & Tibshirani 1993, *An Introduction to the Bootstrap*,
@@ -10,7 +11,9 @@
 pub(crate) mod bootstrap;
 pub mod course;
 pub mod map;
+pub mod multitaper;
 pub mod positions;
 pub mod spectra;
 pub mod spline;
+pub mod time_frequency;
 pub mod welch;

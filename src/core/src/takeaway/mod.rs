@@ -28,7 +28,7 @@ pub use crate::recipe::recipe_check;
 pub use apply::Applied;
 pub use archive::{archive, safe_name};
 pub use link::{RecipeLink, link_decode, link_encode};
-pub use many::{Group, GroupEnd, Many, Portrait, Row};
+pub use many::{Group, GroupEnd, Many, Portrait, Row, folder_names};
 pub use methods::{methods, references};
 pub use readings::{Reading, Section, Span, Tone, readings};
 pub use recipe_file::{recipe_from_json, recipe_json};
