@@ -18,6 +18,7 @@ mod source;
 use clap::{Args, Parser, Subcommand};
 use std::path::PathBuf;
 use std::process::ExitCode;
+use teasel_core::recipe::{self, Axes};
 
 const EXAMPLE: &str = "\
 Example:
@@ -97,6 +98,43 @@ struct Given {
     /// Open the whole records before a cut or other damage.
     #[arg(long)]
     salvage: bool,
+    #[command(flatten)]
+    told: Told,
+}
+
+/// What a file of a general format does not carry; each comes before the recipe's `recording` and before side files.
+#[derive(Args)]
+struct Told {
+    /// Samples a second, or frames.
+    #[arg(long, value_name = "HZ")]
+    rate: Option<f64>,
+    /// Unit of the samples: uV, mV, V, nV, fT, counts, or any other.
+    #[arg(long, value_name = "UNIT")]
+    unit: Option<String>,
+    /// What the axes of an array are, outermost first: channels,samples or samples,channels or frames,height,width.
+    #[arg(long, value_name = "AXES", value_parser = axes)]
+    axes: Option<Axes>,
+    /// Which of several named arrays holds the samples.
+    #[arg(long, value_name = "NAME")]
+    array: Option<String>,
+}
+
+impl Told {
+    /// As a recipe has it.
+    fn given(&self) -> recipe::Given {
+        recipe::Given {
+            rate_hz: self.rate,
+            unit: self.unit.clone(),
+            axes: self.axes,
+            variable: self.array.clone(),
+        }
+    }
+}
+
+fn axes(text: &str) -> Result<Axes, String> {
+    let names = Axes::ALL.map(Axes::name);
+    let found = Axes::ALL.into_iter().find(|axes| axes.name() == text);
+    found.ok_or_else(|| format!("one of {} is expected", names.join(" or ")))
 }
 
 fn main() -> ExitCode {

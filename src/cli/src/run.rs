@@ -23,6 +23,7 @@ pub fn run(recipe: &Path, given: &Given, out: &Path, seed: Option<u64>) -> bool 
     if let Some(seed) = seed {
         recipe.evidence.seed = seed;
     }
+    recipe.recording = given.told.given().or(recipe.recording);
     let mut rows = Vec::new();
     let mut fine = true;
     for (path, name) in given
@@ -56,7 +57,7 @@ pub fn run(recipe: &Path, given: &Given, out: &Path, seed: Option<u64>) -> bool 
 
 fn one(recipe: &Recipe, path: &Path, given: &Given, folder: &Path, shown: &str) -> Result<Row> {
     let mut meter = Meter::new(&source::file_name(path));
-    let recording = source::recording(path, given, &mut meter)?;
+    let recording = source::recording(path, given, &recipe.recording, &mut meter)?;
     let mut analysis = Analysis::new(recording, recipe.clone())?;
     analysis.run(|progress| meter.analysis(progress))?;
     let row = Row::of(analysis.sheet(), shown).json()?;

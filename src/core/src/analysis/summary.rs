@@ -39,13 +39,8 @@ pub fn blank(recording: &Recording, recipe: &Recipe) -> Sheet {
 }
 
 fn no_contrast() -> Recipe {
-    let none = || EventWindow {
-        event: String::new(),
-        from_s: 0.0,
-        to_s: 0.0,
-    };
     Recipe::asking(Contrast::Windows {
-        signal: none(),
-        reference: none(),
+        signal: EventWindow::default(),
+        reference: EventWindow::default(),
     })
 }

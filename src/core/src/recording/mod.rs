@@ -16,9 +16,13 @@
 mod budget;
 pub mod edf;
 mod events_table;
+mod given;
+mod names;
 mod opening;
+mod units;
 
 pub use budget::MEMORY_BYTES;
+pub use given::UNITS;
 pub use opening::{MemorySource, OpenOptions, Opening, open};
 
 use serde::{Deserialize, Serialize};

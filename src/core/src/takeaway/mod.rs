@@ -11,6 +11,7 @@
 mod apply;
 mod archive;
 mod cells;
+mod kinds;
 mod link;
 mod many;
 mod methods;
