@@ -8,6 +8,8 @@
 mod carried;
 #[path = "takeaway/files.rs"]
 mod files;
+#[path = "takeaway/pictures.rs"]
+mod pictures;
 #[path = "takeaway/recipes.rs"]
 mod recipes;
 #[path = "takeaway/reports.rs"]

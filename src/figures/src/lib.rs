@@ -31,6 +31,7 @@ mod nan;
 mod overview;
 mod pen;
 mod places;
+mod powers;
 mod ratio;
 mod recorder;
 mod scores;
@@ -39,6 +40,7 @@ mod spectrum;
 mod svg;
 mod table;
 mod text;
+mod time_frequency;
 mod topography;
 mod traces;
 mod trials;
@@ -117,6 +119,10 @@ figures! {
     Spectrum(spectrum::Spectrum),
     /// Single trials around the event.
     Trials(trials::Trials),
+    /// Power or phase consistency over time and frequency.
+    TimeFrequency(time_frequency::TimeFrequency),
+    /// Power in every window of both sides.
+    Powers(powers::Powers),
     /// One ratio on the shared axis, or the axis itself.
     Ratio(ratio::Row),
     /// The same held-out measure for what one would have used otherwise.

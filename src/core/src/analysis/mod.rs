@@ -5,9 +5,10 @@
 //! set_recipe(changed)                step() …                                sheet()
 //! ```
 //!
-//! The first result (ratio, map, spectra) is on the sheet after [`Stage::Fitting`]; held-out ratios, the permutation test and the
-//! ratio against C follow, in this order.
+//! The first result (ratio, map, spectra) is on the sheet after [`Stage::Fitting`]; held-out ratios, the permutation test, the
+//! ratio against C and pictures over time and frequency follow, in this order.
 mod cards;
+mod portrait;
 mod propose;
 mod summary;
 mod work;
@@ -40,6 +41,8 @@ pub enum Stage {
     Permuting,
     /// Ratio against C.
     Curve,
+    /// Power over time and frequency of every component.
+    Picturing,
     /// Nothing left to do.
     Done,
 }
@@ -135,6 +138,11 @@ impl Analysis {
     /// The choices in force.
     pub fn recipe(&self) -> &Recipe {
         &self.recipe
+    }
+
+    /// The prepared channels, once they are there.
+    pub fn prepared(&self) -> Option<&crate::prepare::Prepared> {
+        self.work.prepared.as_ref()
     }
 
     /// Time courses of the reported components, once there are any.

@@ -1,4 +1,5 @@
 //! What is computed, in which order, and what a change of the recipe makes stale.
+use super::portrait::Portraits;
 use super::{Progress, Series, Stage, cards};
 use crate::contrast::fit::{Ends, Labels, Method, extremes, fit};
 use crate::contrast::space::Covariances;
@@ -47,6 +48,7 @@ pub(super) struct Work {
     pub(super) plan: Option<Plan>,
     pub(super) null: Vec<(f64, f64)>,
     curve: CurveWork,
+    pub(super) portraits: Portraits,
 }
 
 /// The ratio against C as far as it is.
@@ -85,6 +87,7 @@ enum Task {
     Summarise,
     Permute,
     Curve,
+    Portrait,
     Nothing,
 }
 
@@ -126,6 +129,7 @@ impl Work {
             plan: None,
             null: Vec::new(),
             curve: CurveWork::default(),
+            portraits: Portraits::default(),
         }
     }
 
@@ -196,6 +200,9 @@ impl Work {
             self.summarised = false;
             self.plan = None;
             self.null.clear();
+        }
+        if old.spectrum != new.spectrum {
+            self.described = 0;
         }
         if evidence && old.evidence.bootstrap != new.evidence.bootstrap
             || old.evidence.seed != new.evidence.seed
@@ -279,7 +286,7 @@ impl Work {
             return Task::Describe;
         }
         if !self.enough() {
-            return Task::Nothing;
+            return self.last(recipe);
         }
         let folds = self.design.as_ref().map_or(0, |d| d.folds);
         if self.fits.len() < folds {
@@ -305,6 +312,16 @@ impl Work {
         }
         if !self.curve.shown {
             Task::Curve
+        } else {
+            self.last(recipe)
+        }
+    }
+
+    /// Pictures that nothing else waits for.
+    fn last(&self, recipe: &Recipe) -> Task {
+        let all = self.sheet.stronger.len() + self.sheet.weaker.len();
+        if self.portraits.done < all && recipe.contrast.event_windows().is_some() {
+            Task::Portrait
         } else {
             Task::Nothing
         }
@@ -402,6 +419,12 @@ impl Work {
             }
             Task::Permute => self.permute(recipe),
             Task::Curve => self.curve(recipe),
+            Task::Portrait => {
+                let before = self.portraits.done;
+                let (done, of) = self.portrait(recording, recipe, BITE);
+                let news = self.portraits.done > before;
+                Ok(progress(Stage::Picturing, done, of, news))
+            }
             Task::Nothing => Ok(progress(Stage::Done, 1, 1, false)),
         }
     }
@@ -572,6 +595,7 @@ impl Work {
             )
         })?;
         self.ends = Some(ends);
+        self.portraits = Portraits::default();
         cards::solved(self, recipe);
         let all = self.covariances.packed.len() as u64;
         Ok(progress(Stage::Fitting, all, all, false))
@@ -602,6 +626,15 @@ impl Work {
         } else {
             &mut self.sheet.weaker[index]
         };
+        if let Some(design) = &self.design {
+            component.pattern_interval = cards::pattern_interval(
+                &self.covariances,
+                design,
+                &component.filter,
+                count,
+                recipe.evidence.seed,
+            );
+        }
         let Some((signal, reference)) = recipe.contrast.event_windows() else {
             return Ok(());
         };
@@ -655,7 +688,15 @@ impl Work {
             span,
         );
         let seed = recipe.evidence.seed ^ STREAM_DESCRIBE << 32;
-        let found = spectra::of_component(&series, &signals, &references, rate, count, seed);
+        let found = spectra::by(
+            recipe.spectrum,
+            &series,
+            &signals,
+            &references,
+            rate,
+            count,
+            seed,
+        );
         component.peak_hz = spectra::peak_hz(
             &found,
             if stronger {
@@ -674,7 +715,7 @@ impl Work {
             from_s: span[0],
             to_s: span[1],
         };
-        if let Some((c, image)) = course::of_component(
+        if let Some((c, mut image)) = course::of_component(
             &series,
             &prepared.stretches,
             &signal.event,
@@ -685,6 +726,7 @@ impl Work {
             count,
             seed,
         ) {
+            course::lags(&mut image, &recording.events, &signal.event, span[1]);
             component.course = Some(c);
             component.image = Some(image);
         }
@@ -1010,7 +1052,7 @@ fn describing(at: usize, up: usize, down: usize) -> (bool, usize) {
 
 /// Seconds around the event that are drawn: both windows and a quarter of their reach beyond, at least 0.3 s (paired); the
 /// signal window and as much before it (unpaired).
-fn course_span(paired: bool, signal: [f64; 2], reference: [f64; 2]) -> [f64; 2] {
+pub(super) fn course_span(paired: bool, signal: [f64; 2], reference: [f64; 2]) -> [f64; 2] {
     let (from, to) = if paired {
         (signal[0].min(reference[0]), signal[1].max(reference[1]))
     } else {
@@ -1148,7 +1190,13 @@ fn partial_series(
 }
 
 /// out[from..to] += wᵀX[from..to], in blocks that stay in the cache, four channels at a time.
-fn add_projection(out: &mut [f64], prepared: &Prepared, filter: &[f64], from: usize, to: usize) {
+pub(super) fn add_projection(
+    out: &mut [f64],
+    prepared: &Prepared,
+    filter: &[f64],
+    from: usize,
+    to: usize,
+) {
     const BLOCK: usize = 4096;
     let mut start = from;
     while start < to {

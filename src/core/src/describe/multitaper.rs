@@ -11,9 +11,9 @@
 //!
 //! # Order and sign
 //! Tapers from the most concentrated to the least; even ones have a positive sum, odd ones a positive first lobe.
-use realfft::{RealFftPlanner, RealToComplex, num_complex::Complex};
+use crate::fourier::RealTransform;
+use rustfft::num_complex::Complex;
 use std::f64::consts::PI;
-use std::sync::Arc;
 
 /// Time–half-bandwidth product: 2NW − 1 = 5 tapers.
 pub const NW: f64 = 3.0;
@@ -52,7 +52,11 @@ fn above(diagonal: &[f64], off: &[f64], x: f64) -> usize {
     let mut count = 0;
     let mut pivot = 1.0_f64;
     for (k, d) in diagonal.iter().enumerate() {
-        let coupled = if k == 0 { 0.0 } else { off[k - 1].powi(2) / pivot };
+        let coupled = if k == 0 {
+            0.0
+        } else {
+            off[k - 1].powi(2) / pivot
+        };
         pivot = d - x - coupled;
         if pivot == 0.0 {
             pivot = -f64::MIN_POSITIVE.sqrt();
@@ -69,7 +73,10 @@ fn eigenvalue(diagonal: &[f64], off: &[f64], k: usize) -> f64 {
         let left = if t == 0 { 0.0 } else { off[t - 1] };
         left + off.get(t).copied().unwrap_or(0.0)
     };
-    let ends = diagonal.iter().enumerate().map(|(t, d)| (d - reach(t), d + reach(t)));
+    let ends = diagonal
+        .iter()
+        .enumerate()
+        .map(|(t, d)| (d - reach(t), d + reach(t)));
     let (mut low, mut high) = ends.fold((f64::INFINITY, f64::NEG_INFINITY), |(l, h), (a, b)| {
         (l.min(a), h.max(b))
     });
@@ -146,24 +153,22 @@ pub struct Multitaper {
     length: usize,
     rate_hz: f64,
     tapers: Vec<Vec<f64>>,
-    fft: Arc<dyn RealToComplex<f64>>,
+    fft: RealTransform,
     input: Vec<f64>,
     output: Vec<Complex<f64>>,
-    scratch: Vec<Complex<f64>>,
 }
 
 impl Multitaper {
     /// Plans for segments of `length` samples (at least 8 are used): five tapers of NW = 3.
     pub fn new(length: usize, rate_hz: f64) -> Self {
         let length = length.max(8);
-        let fft = RealFftPlanner::new().plan_fft_forward(length);
+        let fft = RealTransform::new(length);
         Multitaper {
             length,
             rate_hz,
             tapers: dpss(length, NW, 2 * NW as usize - 1),
-            input: fft.make_input_vec(),
-            output: fft.make_output_vec(),
-            scratch: fft.make_scratch_vec(),
+            input: vec![0.0; length],
+            output: vec![Complex::default(); fft.bins()],
             fft,
         }
     }
@@ -193,13 +198,7 @@ impl Multitaper {
                 for ((slot, x), w) in self.input.iter_mut().zip(part).zip(weights) {
                     *slot = (x - mean) * w;
                 }
-                // Cannot fail: all three buffers were made by the plan itself.
-                let done = self.fft.process_with_scratch(
-                    &mut self.input,
-                    &mut self.output,
-                    &mut self.scratch,
-                );
-                debug_assert!(done.is_ok());
+                self.fft.transform(&self.input, &mut self.output);
                 for (total, value) in sum.iter_mut().zip(&self.output) {
                     *total += value.norm_sqr();
                 }

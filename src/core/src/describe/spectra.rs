@@ -57,7 +57,10 @@ pub fn by(
         }
         Spectrum::Multitaper => {
             let segment = shortest.clamp(8, (10.0 * rate_hz).max(8.0) as usize);
-            (segment, Estimate::Multitaper(Multitaper::new(segment, rate_hz)))
+            (
+                segment,
+                Estimate::Multitaper(Multitaper::new(segment, rate_hz)),
+            )
         }
     };
     let [signal, signal_low, signal_high] = side(series, signal, &mut estimate, bootstrap, seed);

@@ -195,8 +195,9 @@ impl Picture {
             let seen = cell[3] >= enough && count > 0.0 && reference > 0.0 && cell[0] > 0.0;
             seen.then(|| (10.0 * (cell[0] / cell[3] / reference).log10()) as f32)
         });
-        let consistency =
-            cells(&|_, cell| (cell[3] >= enough).then(|| (cell[1].hypot(cell[2]) / cell[3]) as f32));
+        let consistency = cells(&|_, cell| {
+            (cell[3] >= enough).then(|| (cell[1].hypot(cell[2]) / cell[3]) as f32)
+        });
         Some(TimeFrequency {
             hz: self.hz.clone(),
             t_s: self

@@ -1,7 +1,7 @@
 //! Ranges of a recipe's values, whatever the recording.
 use super::{
-    BandReference, Contrast, EventWindow, Given, Keep, KeepWord, Measure, Recipe, Reference, Shrink,
-    ShrinkWord, Spans, Within,
+    BandReference, Contrast, EventWindow, Given, Keep, KeepWord, Measure, Recipe, Reference,
+    Shrink, ShrinkWord, Spans, Within,
 };
 use crate::error::{Kind, Problem, Result};
 

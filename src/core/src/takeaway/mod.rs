@@ -4,6 +4,7 @@
 //! * [`weights_json`], [`weights_csv`], [`weights_npy`]: the filters; [`Weights`] reads them back and applies them to another recording.
 //! * [`results_json`]: every number in full precision.
 //! * [`series_csv`], [`series_npy`]: time courses; [`Row`], [`Many`]: many recordings in one table, and what they say together.
+//! * [`clean()`]: the recording without some components, or with nothing but them; [`trials_csv`]: power in every window.
 //! * [`readings`]: the sentences beside the figures; [`methods`], [`references`]: the paragraph for a paper.
 //! * [`report_html`]: one page to keep; [`archive`]: everything in one ZIP.
 //!
@@ -11,6 +12,7 @@
 mod apply;
 mod archive;
 mod cells;
+mod clean;
 mod kinds;
 mod link;
 mod many;
@@ -22,12 +24,14 @@ mod results;
 mod series;
 mod strict;
 mod summary;
+mod trials;
 mod weights;
 mod words;
 
 pub use crate::recipe::recipe_check;
 pub use apply::Applied;
 pub use archive::{archive, safe_name};
+pub use clean::{Cleaned, Cleaning, Form, Shares, clean, series_edf, series_recording};
 pub use link::{RecipeLink, link_decode, link_encode};
 pub use many::{Group, GroupEnd, Many, Portrait, Row, folder_names};
 pub use methods::{methods, references};
@@ -37,6 +41,7 @@ pub use report::report_html;
 pub use results::results_json;
 pub use series::{series_csv, series_npy};
 pub use summary::{Leader, SummaryRow};
+pub use trials::trials_csv;
 pub use weights::{Weights, weights_csv, weights_json, weights_npy};
 
 use crate::error::{Kind, Problem, Result};

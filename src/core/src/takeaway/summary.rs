@@ -13,7 +13,7 @@ pub struct SummaryRow {
     pub recording: String,
     /// Folder that holds its files.
     pub folder: String,
-    /// What went wrong, in one line; the rest is empty then.
+    /// What went wrong, in one line without advice; the rest is empty then.
     pub problem: Option<String>,
     /// Channels analysed.
     pub channels: Option<usize>,
@@ -107,10 +107,16 @@ impl SummaryRow {
 
     /// The row of a recording that could not be analysed.
     pub fn failed(recording: &str, folder: &str, problem: &Problem) -> Self {
+        // What to do now depends on where one stands, page or terminal; what is wrong does not.
+        let told = Problem {
+            advice: String::new(),
+            ..problem.clone()
+        };
+        let told = told.to_string().trim_end_matches("; ").to_owned();
         SummaryRow {
             recording: recording.into(),
             folder: folder.into(),
-            problem: Some(problem.to_string()),
+            problem: Some(told),
             ..SummaryRow::default()
         }
     }

@@ -2,6 +2,7 @@
 mod bars;
 mod make;
 mod on_head;
+mod veil;
 
 use crate::head::NOSE;
 use crate::pen::{At, Drawn, Pen, SMALL, Word};
@@ -38,6 +39,9 @@ pub struct Map {
     pub grid: Vec<f64>,
     /// Radius at which the map ends.
     pub radius: f64,
+    /// 95 % interval of each value over trials; empty where it is not known.
+    #[serde(default)]
+    pub interval: Vec<[f64; 2]>,
 }
 
 impl Map {
@@ -81,6 +85,7 @@ impl Plot for Map {
                 .max(10.0);
             let centre = (pen.w / 2.0, 2.0 + r * (1.0 + NOSE));
             self.head(pen, centre, r, &ramp)?;
+            self.veil(pen, centre, r)?;
             self.dots(pen, centre, r, &ramp)?;
             if note > 0 {
                 let said = format!(
@@ -109,12 +114,13 @@ impl Plot for Map {
 
     fn table(&self) -> Table {
         let unit = format!("pattern_{}_per_unit", self.unit);
-        let mut table = Table::new(&["channel", &unit, "right", "front"]);
+        let mut table = Table::new(&["channel", &unit, "low_95", "high_95", "right", "front"]);
         for (i, name) in self.names.iter().enumerate() {
             let place = self.places.get(i).copied().flatten();
             let at = |k: usize| place.map_or(String::new(), |p| cell(p[k]));
             let value = self.values.get(i).map_or(String::new(), |v| cell(*v));
-            table.row([text::clean(name), value, at(0), at(1)]);
+            let bound = |k: usize| self.interval.get(i).map_or(String::new(), |b| cell(b[k]));
+            table.row([text::clean(name), value, bound(0), bound(1), at(0), at(1)]);
         }
         table
     }
@@ -133,6 +139,15 @@ impl Plot for Map {
         } else {
             "on the head"
         };
-        format!("Pattern of the component {how}{largest}.")
+        let doubt = self.doubtful().iter().filter(|d| **d).count();
+        let told = if self.interval.is_empty() {
+            String::new()
+        } else {
+            format!(
+                "; at {doubt} of {} its 95 % interval over trials includes zero, which is striped",
+                text::count(self.values.len(), "channel")
+            )
+        };
+        format!("Pattern of the component {how}{largest}{told}.")
     }
 }
