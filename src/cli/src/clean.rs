@@ -70,7 +70,7 @@ pub fn clean(
 fn one(asked: &Asked<'_>, path: &Path, given: &Given, folder: &Path) -> Result<()> {
     let name = source::file_name(path);
     let mut meter = Meter::new(&name);
-    let recording = source::recording(path, given, &mut meter)?;
+    let recording = source::recording(path, given, &asked.recipe.recording, &mut meter)?;
     let mut analysis = Analysis::new(recording, asked.recipe.clone())?;
     // The filters are there after the fit; how sure they are is `run`'s to say.
     while !analysis.finished() {

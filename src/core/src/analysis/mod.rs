@@ -8,6 +8,7 @@
 //! The first result (ratio, map, spectra) is on the sheet after [`Stage::Fitting`]; held-out ratios, the permutation test, the
 //! ratio against C and pictures over time and frequency follow, in this order.
 mod cards;
+mod describing;
 mod portrait;
 mod propose;
 mod summary;

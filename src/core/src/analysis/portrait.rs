@@ -1,6 +1,7 @@
 //! Power over time and frequency of every reported component, trial by trial, after everything else is known.
-use super::work::{Work, add_projection, course_span};
-use crate::contrast::windows::{Selection, sample_at};
+use super::describing::{add_projection, around};
+use super::work::Work;
+use crate::contrast::windows::Selection;
 use crate::describe::time_frequency::{Picture, frequencies};
 use crate::prepare::Prepared;
 use crate::recipe::Recipe;
@@ -90,11 +91,8 @@ impl Now {
     ) -> Option<Now> {
         let (signal, reference) = recipe.contrast.event_windows()?;
         let rate = prepared.rate_hz;
-        let span = course_span(
-            signal.event == reference.event,
-            [signal.from_s, signal.to_s],
-            [reference.from_s, reference.to_s],
-        );
+        let around = around(recording, recipe, prepared, selection)?;
+        let span = around.span;
         let shortest = (signal.to_s - signal.from_s).min(reference.to_s - reference.from_s);
         // A wavelet should see little beyond a window: two periods fit into the shorter one.
         let low = (2.0 / shortest)
@@ -107,15 +105,7 @@ impl Now {
         if hz.is_empty() {
             return None;
         }
-        let used = |t: f64| {
-            !selection.paired || selection.windows.iter().any(|w| w.signal && w.onset_s == t)
-        };
-        let onsets = recording
-            .events
-            .iter()
-            .filter(|e| e.label == signal.event && used(e.onset_s))
-            .filter_map(|e| sample_at(&prepared.stretches, rate, e.onset_s))
-            .collect();
+        let onsets = around.onsets.iter().map(|o| o.0).collect();
         let references = selection
             .windows
             .iter()

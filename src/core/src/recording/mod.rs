@@ -19,6 +19,7 @@ mod events_table;
 mod given;
 mod names;
 mod opening;
+mod table;
 mod units;
 
 pub use budget::MEMORY_BYTES;

@@ -1,6 +1,6 @@
 //! Opening a recording in steps: probe the content, read the header, decode slice after slice, add the side files.
 use super::budget::Budget;
-use super::{MEMORY_BYTES, Recording, SideFile, Source, edf, events_table};
+use super::{MEMORY_BYTES, Recording, SideFile, Source, edf, events_table, table};
 use crate::error::{Kind, Problem, Result};
 use std::fmt;
 
@@ -34,7 +34,7 @@ pub(crate) struct Format {
 }
 
 /// Every format, one row each. The highest score reads the file; a tie goes to the earlier row.
-const FORMATS: &[Format] = &[edf::FORMAT, edf::FORMAT_24_BIT];
+const FORMATS: &[Format] = &[edf::FORMAT, edf::FORMAT_24_BIT, table::FORMAT];
 
 /// First bytes that a probe sees.
 const PROBE_BYTES: u64 = 4096;

@@ -4,7 +4,7 @@ use super::header::{self, Header, Scale, Signal, Variant, damaged};
 use super::records;
 use crate::error::Result;
 use crate::recording::budget::Budget;
-use crate::recording::names::{counted, name_apart};
+use crate::recording::names::{counted, name_apart, opened_before};
 use crate::recording::opening::{OpenOptions, Reader};
 use crate::recording::units::Unit;
 use crate::recording::{Channel, Event, OtherChannel, Recording, Source, Stretch};
@@ -251,7 +251,7 @@ impl EdfReader {
                 if !(problem.salvage.is_some() && self.options.salvage) {
                     return Err(problem);
                 }
-                let warning = records::opened_before(&problem, index);
+                let warning = opened_before(&problem, index, "whole record");
                 self.warnings.push(warning);
                 self.records = index;
                 break;
