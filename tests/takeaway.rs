@@ -6,6 +6,8 @@
 )]
 #[path = "takeaway/carried.rs"]
 mod carried;
+#[path = "takeaway/cleaned.rs"]
+mod cleaned;
 #[path = "takeaway/files.rs"]
 mod files;
 #[path = "takeaway/pictures.rs"]
@@ -16,5 +18,7 @@ mod recipes;
 mod reports;
 #[path = "takeaway/sample.rs"]
 mod sample;
+#[path = "takeaway/saved.rs"]
+mod saved;
 #[path = "takeaway/sentences.rs"]
 mod sentences;

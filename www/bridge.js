@@ -197,6 +197,26 @@ export class Bridge {
     return this.#ask("takeaway", kind, extras);
   }
 
+  /** A few seconds of the channels where a component is largest, its series beneath. @param {string} component @param {number} fromS @param {number} seconds @returns {Promise<Figure | null>} */
+  excerpt(component, fromS, seconds) {
+    return this.#ask("excerpt", component, fromS, seconds);
+  }
+
+  /** What cleaning would do. @param {string[]} components @param {"remove" | "keep-only"} how @param {number} fromS @param {number} seconds @returns {Promise<import("./types").CleanLook>} */
+  cleanLook(components, how, fromS, seconds) {
+    return this.#ask("cleanLook", components, how, fromS, seconds);
+  }
+
+  /** A cleaned recording. @param {string[]} components @param {"remove" | "keep-only"} how @param {"edf" | "npy" | "csv"} form @returns {Promise<Uint8Array<ArrayBuffer>>} */
+  cleaned(components, how, form) {
+    return this.#ask("cleaned", components, how, form);
+  }
+
+  /** Saved filters on the open recording, around the recipe's windows. @param {string} weights @param {Recipe} recipe @returns {Promise<import("./types").CarriedTold>} */
+  carry(weights, recipe) {
+    return this.#ask("carry", weights, recipe);
+  }
+
   /** What the recording gives to the table of a set: the text of row.json. @param {string} folder @returns {Promise<string>} */
   row(folder) {
     return this.#ask("row", folder);

@@ -11,6 +11,9 @@ import { mountFinding } from "./finding.js";
 import { mountFirst } from "./first.js";
 import { mountLedger } from "./ledger.js";
 import { duration, size } from "./numbers.js";
+import { mountCarried } from "./carried.js";
+import { mountCleaning } from "./cleaning.js";
+import { mountGuide } from "./guide.js";
 import { mountMany } from "./many.js";
 import { unsay } from "./notices.js";
 import { door } from "./open.js";
@@ -31,6 +34,7 @@ mountLedger();
 mountThread();
 mountReadings();
 mountFigures();
+mountGuide();
 
 /** The first screen answers at once; what it asks for waits for the bridge. */
 const ready = /** @type {Promise<Bridge>} */ (start());
@@ -53,7 +57,8 @@ function join(bridge) {
   /** @type {import("./types").App} */
   const app = { bridge, change: work.change };
   const many = mountMany(app, { first: (files) => void doors.files(files) });
-  const doors = door(app, work.send, (files) => many.offer(files).catch(doors.failed));
+  const carried = mountCarried(app);
+  const doors = door(app, work.send, { set: (files) => many.offer(files).catch(doors.failed), weights: carried.take });
   mountRecording(app);
   mountChannels(app);
   mountWindows(app);
@@ -62,6 +67,7 @@ function join(bridge) {
   mountEvidence(app, () => doors.goOn());
   mountFinding(app);
   mountTakeaway(app, doors.failed);
+  mountCleaning(app);
   mountChoosing(app, () => {
     unsay("#hint");
     unsay("#problem");

@@ -14,6 +14,8 @@ export interface Recipe {
   contrast: { kind: "windows"; signal: EventWindow; reference: EventWindow };
   shrink: number | "auto" | "ledoit-wolf" | "oas";
   components: number;
+  /** Welch unless told otherwise. */
+  spectrum?: "welch" | "multitaper";
   evidence: { folds: number; permutations: number; bootstrap: number; seed: number };
 }
 export interface RecordingCard {
@@ -224,12 +226,31 @@ export interface Bridge {
   recipeText(recipe: Recipe): string;
   linkDecode(text: string): { recipe: Recipe; events: [number, number] | null; without: string[] };
   linkComplete(text: string, events: Record<string, number>): { recipe: Recipe; notes: string[] };
+  excerpt(component: string, from_s: number, seconds: number): Promise<Figure | null>;
+  cleanLook(components: string[], how: "remove" | "keep-only", from_s: number, seconds: number): Promise<CleanLook>;
+  cleaned(components: string[], how: "remove" | "keep-only", form: "edf" | "npy" | "csv"): Promise<Uint8Array<ArrayBuffer>>;
+  carry(weights: string, recipe: Recipe): Promise<CarriedTold>;
   row(folder: string): Promise<string>;
   another(): Promise<Bridge>;
   end(): void;
   folderNames(files: string[]): string[];
   failedRow(recording: string, folder: string, why: Problem): string;
   many(rows: string[]): Many;
+}
+/** What cleaning would do, and a few seconds before and after. */
+export interface CleanLook {
+  note: string;
+  others: number;
+  shares: { channels: string[]; before: number[]; after: number[]; removed: number[]; unit: string };
+  before: Figure;
+  after: Figure;
+}
+/** Saved filters on the open recording. */
+export interface CarriedTold {
+  rows: { name: string; before: number; before_held_out: boolean; typical: number; interval: [number, number] | null; total: number; windows: [number, number]; reading: string }[];
+  notes: string[];
+  csv: string;
+  figures: [string, string, Figure][];
 }
 /** The first component of an end, in the table of a set. */
 export interface Leader {

@@ -116,6 +116,10 @@ const calls = {
   traces: (_id, /** @type {number} */ from, /** @type {number} */ seconds, /** @type {number[]} */ channels) =>
     open().traces(from, seconds, new Uint32Array(channels)),
   takeaway: (_id, /** @type {string} */ kind, /** @type {unknown} */ extras) => open().takeaway(kind, extras),
+  excerpt: (_id, /** @type {string} */ component, /** @type {number} */ from, /** @type {number} */ seconds) => open().excerpt(component, from, seconds),
+  cleanLook: (_id, /** @type {string[]} */ components, /** @type {string} */ how, /** @type {number} */ from, /** @type {number} */ seconds) => open().cleanLook(components, how, from, seconds),
+  cleaned: (_id, /** @type {string[]} */ components, /** @type {string} */ how, /** @type {string} */ form) => open().cleaned(components, how, form),
+  carry: (_id, /** @type {string} */ weights, /** @type {unknown} */ recipe) => open().carry(weights, recipe),
   row: (_id, /** @type {string} */ folder) => open().row(folder),
   memory: () => memory.buffer.byteLength,
 };
