@@ -2,6 +2,10 @@
 
 mod contrast;
 mod describe;
+mod dimensions;
 mod prepare;
+mod quality;
 mod readers;
+mod rejection;
+mod steady;
 mod takeaway;

@@ -18,6 +18,7 @@
 //! | BIDS events: onset, duration, trial_type, value, `n/a` | `tables` |
 //! | any bytes at all: an answer, no panic, little memory | `hostile` |
 //! | what is written is read again | `written`, `watch` |
+mod bdf;
 mod delimited;
 mod hostile;
 mod outside;

@@ -61,11 +61,11 @@ fn wavelets_are_direct_convolution() {
         }
         let found = picture.finish().unwrap();
         assert_eq!(found.t_s, [at]);
-        for f in 0..hz.len() {
+        for (f, hz) in hz.iter().enumerate() {
             // Cells are f32.
             let ours = f64::from(found.consistency[f][0].unwrap());
             close(
-                &format!("consistency at {} Hz", hz[f]),
+                &format!("consistency at {hz} Hz"),
                 ours,
                 consistency[f][k],
                 1e-6,
@@ -83,14 +83,9 @@ fn wavelets_are_direct_convolution() {
             db.collect()
         };
         let against_15 = own(15);
-        for f in 0..hz.len() {
+        for (f, hz) in hz.iter().enumerate() {
             let theirs = 10.0 * (power[f][k] / power[f][2]).log10();
-            close(
-                &format!("power at {} Hz", hz[f]),
-                against_15[f],
-                theirs,
-                1e-4,
-            );
+            close(&format!("power at {hz} Hz"), against_15[f], theirs, 1e-4);
         }
     }
 }

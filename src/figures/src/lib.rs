@@ -18,6 +18,7 @@ mod channels_map;
 mod course;
 mod eigenvalues;
 mod estimate;
+mod filters;
 mod fine;
 mod frame;
 mod group;
@@ -32,6 +33,7 @@ mod overview;
 mod pen;
 mod places;
 mod powers;
+mod principal;
 mod ratio;
 mod recorder;
 mod scores;
@@ -109,6 +111,10 @@ figures! {
     Course(course::Course),
     /// Variance of every dimension.
     Eigenvalues(eigenvalues::Eigenvalues),
+    /// What the filters let pass.
+    Filters(filters::Filters),
+    /// The first dimensions of the compression and their courses.
+    Principal(principal::Principal),
     /// Fitted and held-out ratio against C.
     Keep(keep::Keep),
     /// A pattern on the head.

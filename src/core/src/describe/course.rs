@@ -71,10 +71,9 @@ pub fn lags(image: &mut TrialImage, events: &[Event], own: &str, to_s: f64) {
     let follow = |onset: f64, label: Option<&str>| -> Option<&Event> {
         // Events are in order of time.
         let after = events.partition_point(|e| e.onset_s <= onset);
-        let near = events[after..]
+        events[after..]
             .iter()
-            .take_while(|e| e.onset_s < onset + to_s);
-        near.into_iter()
+            .take_while(|e| e.onset_s < onset + to_s)
             .find(|e| e.label != own && label.is_none_or(|l| e.label == l))
     };
     for onset in &image.onsets_s {

@@ -117,8 +117,8 @@ fn solve(diagonal: &[f64], off: &[f64], x: f64, b: &[f64]) -> Vec<f64> {
         .map(|t| [diagonal[t] - x, off.get(t).copied().unwrap_or(0.0), 0.0])
         .collect();
     let mut right = b.to_vec();
-    for t in 0..n.saturating_sub(1) {
-        let mut below = [off[t], rows[t + 1][0], rows[t + 1][1]];
+    for (t, coupled) in off.iter().enumerate() {
+        let mut below = [*coupled, rows[t + 1][0], rows[t + 1][1]];
         if below[0].abs() > rows[t][0].abs() {
             std::mem::swap(&mut below, &mut rows[t]);
             right.swap(t, t + 1);

@@ -17,6 +17,8 @@ mod budget;
 pub mod edf;
 mod events_table;
 mod given;
+mod gzip;
+mod joined;
 mod names;
 mod opening;
 mod table;
@@ -24,6 +26,7 @@ mod units;
 
 pub use budget::MEMORY_BYTES;
 pub use given::UNITS;
+pub use joined::natural_order;
 pub use opening::{MemorySource, OpenOptions, Opening, open};
 
 use serde::{Deserialize, Serialize};

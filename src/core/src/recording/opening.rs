@@ -1,6 +1,6 @@
 //! Opening a recording in steps: probe the content, read the header, decode slice after slice, add the side files.
 use super::budget::Budget;
-use super::{MEMORY_BYTES, Recording, SideFile, Source, edf, events_table, table};
+use super::{MEMORY_BYTES, Recording, SideFile, Source, edf, events_table, gzip, joined, table};
 use crate::error::{Kind, Problem, Result};
 use std::fmt;
 
@@ -19,6 +19,10 @@ pub(crate) trait Reader {
     fn step(&mut self, source: &mut dyn Source, budget: &mut Budget) -> Result<(u64, u64)>;
     /// The recording, once nothing is left.
     fn finish(self: Box<Self>) -> Result<Recording>;
+    /// Date and time at which the file's clock starts, in seconds from any one moment; `None` where the file does not say.
+    fn start_s(&self) -> Option<f64> {
+        None
+    }
 }
 
 type Begin = fn(&mut dyn Source, &OpenOptions, &mut Budget) -> Result<Box<dyn Reader>>;
@@ -34,7 +38,7 @@ pub(crate) struct Format {
 }
 
 /// Every format, one row each. The highest score reads the file; a tie goes to the earlier row.
-const FORMATS: &[Format] = &[edf::FORMAT, edf::FORMAT_24_BIT, table::FORMAT];
+const FORMATS: &[Format] = &[edf::FORMAT, edf::FORMAT_24_BIT, gzip::FORMAT, table::FORMAT];
 
 /// First bytes that a probe sees.
 const PROBE_BYTES: u64 = 4096;
@@ -42,7 +46,6 @@ const PROBE_BYTES: u64 = 4096;
 /// Content that is often dropped by mistake: its first bytes and what to call it.
 const OTHER_CONTENT: &[(&[u8], &str)] = &[
     (b"PK\x03\x04", "a ZIP archive"),
-    (b"\x1f\x8b", "gzip-compressed data"),
     (b"%PDF", "a PDF document"),
     (b"\x89PNG", "a PNG picture"),
     (b"\x89HDF", "an HDF5 file"),
@@ -105,12 +108,44 @@ impl Opening {
     ) -> Result<Opening> {
         let name = source.name().to_owned();
         let mut budget = Budget::new(source.len(), memory_bytes);
-        let reader = probe(source.as_mut())
-            .and_then(|format| (format.begin)(source.as_mut(), &options, &mut budget))
+        let reader = begin_reader(source.as_mut(), &options, &mut budget)
             .map_err(|problem| problem.in_file(name))?;
+        let sides = unpacked(sides)?;
         Ok(Opening {
             source,
             sides,
+            options,
+            budget,
+            reader,
+            finished: false,
+        })
+    }
+
+    /// Opens several files of one recording, in the natural order of their names; the recording is called after the first.
+    ///
+    /// # Errors
+    /// Those of [`Opening::begin`]; `Unsupported` for a file with other channels or another rate, named.
+    pub fn begin_joined(
+        mut sources: Vec<Box<dyn Source>>,
+        sides: Vec<SideFile>,
+        options: OpenOptions,
+    ) -> Result<Opening> {
+        if sources.len() == 1
+            && let Some(source) = sources.pop()
+        {
+            return Opening::begin(source, sides, options);
+        }
+        let first = sources.iter().map(|s| s.name());
+        let name = first.min_by(|a, b| joined::natural_order(a, b));
+        let together = joined::Together {
+            name: name.unwrap_or_default().to_owned(),
+            bytes: sources.iter().map(|source| source.len()).sum(),
+        };
+        let mut budget = Budget::new(together.bytes, MEMORY_BYTES);
+        let reader = joined::begin(sources, &options, &mut budget)?;
+        Ok(Opening {
+            source: Box::new(together),
+            sides: unpacked(sides)?,
             options,
             budget,
             reader,
@@ -172,6 +207,20 @@ pub fn open(
     Opening::begin(source, sides, options)?.finish()
 }
 
+/// Probes the content and lets its reader begin.
+pub(super) fn begin_reader(
+    source: &mut dyn Source,
+    options: &OpenOptions,
+    budget: &mut Budget,
+) -> Result<Box<dyn Reader>> {
+    let format = probe(source)?;
+    (format.begin)(source, options, budget)
+}
+
+fn unpacked(sides: Vec<SideFile>) -> Result<Vec<SideFile>> {
+    sides.into_iter().map(gzip::side).collect()
+}
+
 fn probe(source: &mut dyn Source) -> Result<&'static Format> {
     if source.is_empty() {
         return Err(Problem::new(
@@ -205,7 +254,7 @@ fn unknown(head: &[u8]) -> Problem {
     Problem::new(
         Kind::Unknown,
         "the content is not a recording that Teasel knows, whatever the file's name says",
-        "open an EDF or EDF+ file",
+        "open a recording in one of these formats",
     )
     .at("byte 0")
     .expected_found(format!("the mark of {}", names.join(" or ")), found)

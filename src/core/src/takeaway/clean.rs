@@ -323,9 +323,10 @@ fn changed(
         }
         let [mut away, mut own] = [0.0; 2];
         for s in &prepared.stretches {
-            for k in s.first..s.first + s.count {
-                away += (now[k] - series.samples[i][k]).powi(2);
-                own += series.samples[i][k].powi(2);
+            let part = s.first..s.first + s.count;
+            for (n, x) in now[part.clone()].iter().zip(&series.samples[i][part]) {
+                away += (n - x).powi(2);
+                own += x.powi(2);
             }
         }
         if own > 0.0 {

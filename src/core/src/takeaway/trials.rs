@@ -2,7 +2,7 @@
 use super::cells::{Cell, table};
 use super::weights::ordered;
 use crate::error::Result;
-use crate::sheet::Sheet;
+use crate::sheet::{Sheet, TrialScore};
 
 /// One row a window and component: `component`, `side`, `trial` (from 1), `onset_s`, `power` (its mean over reference windows is 1),
 /// `log_power` (natural), and for paired contrasts the fold and the held-out log ratio of the trial, on its signal row.
@@ -23,11 +23,8 @@ pub fn trials_csv(sheet: &Sheet) -> Result<String> {
     let mut rows = vec![Vec::from(header.map(Cell::Text))];
     for (name, component) in ordered(sheet) {
         for window in &component.powers {
-            let scored = window.signal.then(|| {
-                let trials = component.trials.iter();
-                trials.into_iter().find(|t| t.onset_s == window.onset_s)
-            });
-            let scored = scored.flatten();
+            let own = |t: &&TrialScore| window.signal && t.onset_s == window.onset_s;
+            let scored = component.trials.iter().find(own);
             rows.push(vec![
                 Cell::Owned(super::series::column(&name)),
                 Cell::Text(if window.signal { "signal" } else { "reference" }),
