@@ -211,6 +211,46 @@ export class Bridge {
     return this.#ask("takeaway", kind, extras);
   }
 
+  /** A few seconds of the channels where a component is largest, its series beneath. @param {string} component @param {number} fromS @param {number} seconds @returns {Promise<Figure | null>} */
+  excerpt(component, fromS, seconds) {
+    return this.#ask("excerpt", component, fromS, seconds);
+  }
+
+  /** What cleaning would do. @param {string[]} components @param {"remove" | "keep-only"} how @param {number} fromS @param {number} seconds @returns {Promise<import("./types").CleanLook>} */
+  cleanLook(components, how, fromS, seconds) {
+    return this.#ask("cleanLook", components, how, fromS, seconds);
+  }
+
+  /** A cleaned recording. @param {string[]} components @param {"remove" | "keep-only"} how @param {"edf" | "npy" | "csv"} form @returns {Promise<Uint8Array<ArrayBuffer>>} */
+  cleaned(components, how, form) {
+    return this.#ask("cleaned", components, how, form);
+  }
+
+  /** Saved filters on the open recording, around the recipe's windows. @param {string} weights @param {Recipe} recipe @returns {Promise<import("./types").CarriedTold>} */
+  carry(weights, recipe) {
+    return this.#ask("carry", weights, recipe);
+  }
+
+  /** What the recording gives to the table of a set: the text of row.json. @param {string} folder @returns {Promise<string>} */
+  row(folder) {
+    return this.#ask("row", folder);
+  }
+
+  /** A bridge to a worker of its own, for work that must not touch what is open here. @returns {Promise<Bridge>} */
+  async another() {
+    const other = new Bridge(this.#compiled);
+    await other.started;
+    return other;
+  }
+
+  /** Ends the worker; what waits for it is told that it was stopped. */
+  end() {
+    this.#worker?.terminate();
+    this.#worker = null;
+    for (const { failed } of this.#waiting.values()) failed(problem("stopped", "the work was stopped", "Begin it again."));
+    this.#waiting.clear();
+  }
+
   /** Bytes that the worker's module has taken; they are never given back. @returns {Promise<number>} */
   memory() {
     return this.#ask("memory");
@@ -282,6 +322,19 @@ export class Bridge {
   /** Fills a link's events in from a recording. @param {string} text @param {Record<string, number>} events label → count @returns {{ recipe: Recipe, notes: string[] }} */
   linkComplete(text, events) {
     return module.linkComplete(text, events);
+  }
+
+  /** A folder's name for each recording of a set. @param {string[]} files @returns {string[]} */
+  folderNames(files) {
+    return module.folderNames(files);
+  }
+  /** @param {string} recording @param {string} folder @param {Problem} why @returns {string} the text of row.json */
+  failedRow(recording, folder, why) {
+    return module.failedRow(recording, folder, why);
+  }
+  /** The table, the group and its figures, from the texts of row.json. @param {string[]} rows @returns {import("./types").Many} */
+  many(rows) {
+    return module.many(rows);
   }
 
   /** Starts a worker and waits until it listens. @returns {Promise<void>} */

@@ -13,6 +13,10 @@ import { mountFirst } from "./first.js";
 import { mountHistory } from "./history.js";
 import { mountLedger } from "./ledger.js";
 import { duration, size } from "./numbers.js";
+import { mountCarried } from "./carried.js";
+import { mountCleaning } from "./cleaning.js";
+import { mountGuide } from "./guide.js";
+import { mountMany } from "./many.js";
 import { unsay } from "./notices.js";
 import { door } from "./open.js";
 import { mountMapping } from "./mapping.js";
@@ -35,6 +39,7 @@ mountLedger();
 mountThread();
 mountReadings();
 mountFigures();
+mountGuide();
 
 /** The first screen answers at once; what it asks for waits for the bridge. */
 const ready = /** @type {Promise<Bridge>} */ (start());
@@ -56,7 +61,9 @@ function join(bridge) {
   const work = mountWork(bridge, { failed: (thrown) => doors.failed(thrown), died: () => doors.died() });
   /** @type {import("./types").App} */
   const app = { bridge, change: work.change };
-  const doors = door(app, work.send);
+  const many = mountMany(app, { first: (files) => void doors.files(files) });
+  const carried = mountCarried(app);
+  const doors = door(app, work.send, { set: (files) => many.offer(files).catch(doors.failed), weights: carried.take });
   mountRecording(app);
   mountAbout();
   mountChannels(app);
@@ -69,6 +76,7 @@ function join(bridge) {
   mountEvidence(app, () => doors.goOn());
   mountFinding(app);
   mountTakeaway(app, doors.failed);
+  mountCleaning(app);
   mountChoosing(app, () => {
     unsay("#hint");
     unsay("#problem");

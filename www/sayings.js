@@ -31,16 +31,13 @@ export function sayOpenEnds(notes) {
   say("#hint", { title: "The link left some things open", text: [notes.join(" ")], ways: [CLOSE] });
 }
 
-/** @param {string} file */
-export function sayWeights(file) {
-  say("#hint", { title: `${file} holds weights`, text: ["This version applies weights in the terminal: ", make("code", {}, `teasel apply ${file} RECORDING --out DIR`), "."], ways: [CLOSE] });
-}
-
-/** Choices that wait for a recording. @param {string} title @param {() => void} aside */
-export function sayWaiting(title, aside) {
+/** Choices that wait for a recording. @param {string} title @param {string[]} labels events that they ask for @param {() => void} aside */
+export function sayWaiting(title, labels, aside) {
+  const each = labels.flatMap((label, k) => [k ? ", " : "", make("bdi", {}, make("b", {}, label))]);
+  const expects = labels.length ? [" They expect events labelled ", ...each, "."] : [" They leave the events to the recording: its most frequent ones are filled in, and it is said which."];
   say("#hint", {
     title,
-    text: ["They are used for the next recording that is opened. A link holds no data: drop the recording it belongs to, or take a demo."],
+    text: ["They are used for the next recording that is opened. A link holds no data: drop the recording it belongs to, or take a demo.", ...expects],
     ways: [{ label: "Set them aside", act: aside }],
   });
 }

@@ -37,6 +37,8 @@ export interface Recipe {
   hold_back?: { last: number; open: boolean };
   shrink: number | "auto" | "ledoit-wolf" | "oas";
   components: number;
+  /** Welch unless told otherwise. */
+  spectrum?: "welch" | "multitaper";
   evidence: { folds: number; permutations: number; bootstrap: number; seed: number };
 }
 export type Positions =
@@ -302,7 +304,7 @@ export interface Bridge {
   resume(): Promise<unknown>;
   revive(): Promise<Summary | null>;
   watch(names: string[]): Promise<unknown>;
-  on(name: string, listener: (news: any) => void): void;
+  on(name: string, listener: (news: any) => void): () => void;
   figure(name: string): Promise<Figure | null>;
   traces(from_s: number, seconds: number, channels: number[]): Promise<Figure>;
   tracks(): Promise<Tracks>;
@@ -321,6 +323,64 @@ export interface Bridge {
   recipeText(recipe: Recipe): string;
   linkDecode(text: string): { recipe: Recipe; events: [number, number] | null; without: string[] };
   linkComplete(text: string, events: Record<string, number>): { recipe: Recipe; notes: string[] };
+  excerpt(component: string, from_s: number, seconds: number): Promise<Figure | null>;
+  cleanLook(components: string[], how: "remove" | "keep-only", from_s: number, seconds: number): Promise<CleanLook>;
+  cleaned(components: string[], how: "remove" | "keep-only", form: "edf" | "npy" | "csv"): Promise<Uint8Array<ArrayBuffer>>;
+  carry(weights: string, recipe: Recipe): Promise<CarriedTold>;
+  row(folder: string): Promise<string>;
+  another(): Promise<Bridge>;
+  end(): void;
+  folderNames(files: string[]): string[];
+  failedRow(recording: string, folder: string, why: Problem): string;
+  many(rows: string[]): Many;
+}
+/** What cleaning would do, and a few seconds before and after. */
+export interface CleanLook {
+  note: string;
+  others: number;
+  shares: { channels: string[]; before: number[]; after: number[]; removed: number[]; unit: string };
+  before: Figure;
+  after: Figure;
+}
+/** Saved filters on the open recording. */
+export interface CarriedTold {
+  rows: { name: string; before: number; before_held_out: boolean; typical: number; interval: [number, number] | null; total: number; windows: [number, number]; reading: string }[];
+  notes: string[];
+  csv: string;
+  figures: [string, string, Figure][];
+}
+/** The first component of an end, in the table of a set. */
+export interface Leader {
+  fitted: number;
+  typical_held_out: number | null;
+  typical_low: number | null;
+  typical_high: number | null;
+  total_held_out: number | null;
+  p: number | null;
+  peak_hz: number | null;
+  largest_at: string;
+  likeness: number | null;
+}
+export interface ManyRow {
+  recording: string;
+  folder: string;
+  problem: string | null;
+  signal_windows: number | null;
+  reference_windows: number | null;
+  measure: "typical" | "total" | null;
+  stronger_1: Leader | null;
+  weaker_1: Leader | null;
+  warnings: string[];
+}
+/** A set of recordings, one recipe: the table, what they say together, and its files. */
+export interface Many {
+  recordings: ManyRow[];
+  said: string[];
+  but: string[];
+  csv: string;
+  json: string;
+  group_csv: string;
+  figures: { name: string; caption: string; figure: Figure }[];
 }
 /** What every part of the sheet works with. */
 export interface App {

@@ -119,6 +119,11 @@ const calls = {
   bins: (_id, /** @type {string} */ kind, /** @type {number[]} */ lines, /** @type {number} */ size, /** @type {number} */ first, /** @type {number} */ count) =>
     open().bins(kind, new Uint32Array(lines), size, first, count),
   takeaway: (_id, /** @type {string} */ kind, /** @type {unknown} */ extras) => open().takeaway(kind, extras),
+  excerpt: (_id, /** @type {string} */ component, /** @type {number} */ from, /** @type {number} */ seconds) => open().excerpt(component, from, seconds),
+  cleanLook: (_id, /** @type {string[]} */ components, /** @type {string} */ how, /** @type {number} */ from, /** @type {number} */ seconds) => open().cleanLook(components, how, from, seconds),
+  cleaned: (_id, /** @type {string[]} */ components, /** @type {string} */ how, /** @type {string} */ form) => open().cleaned(components, how, form),
+  carry: (_id, /** @type {string} */ weights, /** @type {unknown} */ recipe) => open().carry(weights, recipe),
+  row: (_id, /** @type {string} */ folder) => open().row(folder),
   memory: () => memory.buffer.byteLength,
 };
 

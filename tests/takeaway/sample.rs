@@ -67,9 +67,7 @@ fn component(k: usize, typical: f64, total: f64, interval: [f64; 2], p: f64) -> 
                 log_ratio: typical.ln() + 1.2 * (t as f64 * 1.7).sin(),
             })
             .collect(),
-        spectra: None,
-        course: None,
-        image: None,
+        ..Component::default()
     }
 }
 

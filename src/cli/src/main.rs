@@ -1,12 +1,13 @@
 //! Teasel from a terminal: the page's pipeline for many recordings, and for checking.
 //!
 //! * `source`: recordings and side files on disk.
-//! * `run`, `gather`, `apply`, `inspect`: the commands.
+//! * `run`, `gather`, `apply`, `clean`, `inspect`: the commands.
 //! * `folder`: files written beside their place and renamed, so that none is ever seen half written.
 //! * `say`: lines and progress on standard error.
 //!
 //! Exit codes: 0 done, 1 bad input (one line each on standard error; the other recordings of the call still run), 2 usage.
 mod apply;
+mod clean;
 mod figures;
 mod folder;
 mod gather;
@@ -27,6 +28,7 @@ Example:
   teasel run recipe.json night-watch.edf --out results
   teasel run recipe.json monday.edf tuesday.edf wednesday.edf --out results
   teasel gather results
+  teasel clean recipe.json night-watch.edf --remove 'stronger 1' --out cleaned
   teasel apply results/night-watch/weights.json another-night.edf --out carried
 
 A recipe that suffices:
@@ -74,6 +76,30 @@ enum Command {
         #[command(flatten)]
         given: Given,
         /// Folder for the time courses; each recording gets a folder of its name in it.
+        #[arg(long, value_name = "DIR")]
+        out: PathBuf,
+    },
+    /// Take components out of each recording (or keep nothing but them): X − A WᵀX in the prepared channels.
+    Clean {
+        /// The recipe that finds the components (JSON).
+        recipe: PathBuf,
+        #[command(flatten)]
+        given: Given,
+        /// A component to take out: 'stronger 1', 'weaker 2' (repeatable).
+        #[arg(
+            long,
+            value_name = "COMPONENT",
+            required_unless_present = "only",
+            conflicts_with = "only"
+        )]
+        remove: Vec<String>,
+        /// A component to keep while all else is taken out (repeatable).
+        #[arg(long, value_name = "COMPONENT")]
+        only: Vec<String>,
+        /// What is written: EDF+ with events, or a NumPy array of channels × samples in f32.
+        #[arg(long = "as", value_enum, default_value = "edf")]
+        form: clean::Written,
+        /// Folder for the results; each recording gets a folder of its name in it.
         #[arg(long, value_name = "DIR")]
         out: PathBuf,
     },
@@ -170,6 +196,14 @@ fn main() -> ExitCode {
             given,
             out,
         } => apply::apply(&weights, &given, &out),
+        Command::Clean {
+            recipe,
+            given,
+            remove,
+            only,
+            form,
+            out,
+        } => clean::clean(&recipe, &given, &remove, &only, form, &out),
         Command::Gather { folder } => gather::gather(&folder),
         Command::Inspect { given, json } => inspect::inspect(&given, json),
     };

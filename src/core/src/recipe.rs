@@ -50,9 +50,30 @@ pub struct Recipe {
     /// How many components are reported at each end.
     #[serde(default = "four")]
     pub components: usize,
+    /// How spectra are estimated; it changes pictures, not components.
+    #[serde(default, skip_serializing_if = "Spectrum::is_welch")]
+    pub spectrum: Spectrum,
     /// Folds, permutations, bootstrap, seed.
     #[serde(default)]
     pub evidence: Evidence,
+}
+
+/// How the spectra of components are estimated.
+#[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum Spectrum {
+    /// Averaged periodograms (Welch 1967).
+    #[default]
+    Welch,
+    /// Five orthogonal tapers, NW = 3 (Thomson 1982).
+    Multitaper,
+}
+
+impl Spectrum {
+    /// Whether it is the default.
+    pub fn is_welch(&self) -> bool {
+        *self == Spectrum::Welch
+    }
 }
 
 impl Recipe {
@@ -71,6 +92,7 @@ impl Recipe {
             hold_back: None,
             shrink: Shrink::default(),
             components: four(),
+            spectrum: Spectrum::default(),
             evidence: Evidence::default(),
         }
     }

@@ -457,6 +457,45 @@ pub struct Component {
     pub course: Option<Course>,
     /// Single trials around the event.
     pub image: Option<TrialImage>,
+    /// 95 % bootstrap interval over trials of each entry of `pattern`, the filter held fixed; empty where it is not known.
+    #[serde(default)]
+    pub pattern_interval: Vec<[f64; 2]>,
+    /// Power in every used window, in order of time.
+    #[serde(default)]
+    pub powers: Vec<WindowPower>,
+    /// Power over time and frequency around the event.
+    #[serde(default)]
+    pub time_frequency: Option<TimeFrequency>,
+}
+
+/// Variance of a component in one window; its mean over reference windows (weighed by their samples) is 1.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+pub struct WindowPower {
+    /// A signal window, or a reference window.
+    pub signal: bool,
+    /// Index of its pair, or of itself among its side's windows.
+    pub trial: usize,
+    /// Onset of its event.
+    pub onset_s: f64,
+    /// The variance.
+    pub power: f64,
+}
+
+/// Power and phase consistency of a component by complex Morlet wavelets; cells that fewer than half of the trials reach are `None`.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct TimeFrequency {
+    /// Frequencies, by equal factors.
+    pub hz: Vec<f64>,
+    /// Times relative to the event.
+    pub t_s: Vec<f64>,
+    /// `frequencies × times`: mean power in dB of the mean power at that frequency in the reference windows.
+    pub db: Vec<Vec<Option<f32>>>,
+    /// `frequencies × times`: |mean unit phasor| over trials, 0…1.
+    pub consistency: Vec<Vec<Option<f32>>>,
+    /// Cycles of the wavelets: σ = cycles/(2πf).
+    pub cycles: f64,
+    /// Trials.
+    pub trials: usize,
 }
 
 /// Ratio in a typical trial: exp of the mean log ratio.
@@ -550,6 +589,15 @@ pub struct TrialImage {
     pub t_s: Vec<f64>,
     /// `trials × times`.
     pub db: Vec<Vec<f32>>,
+    /// Onset of each trial's event on the file's clock.
+    #[serde(default)]
+    pub onsets_s: Vec<f64>,
+    /// Seconds from each trial's event to the next event of another label, where one follows within the span.
+    #[serde(default)]
+    pub lags_s: Vec<Option<f64>>,
+    /// The label that most of `lags_s` are about; empty where there are none.
+    #[serde(default)]
+    pub lag_to: String,
 }
 
 /// What one would have used otherwise, on the same held-out windows.

@@ -33,6 +33,7 @@ mod nan;
 mod overview;
 mod pen;
 mod places;
+mod powers;
 mod principal;
 mod ratio;
 mod recorder;
@@ -42,6 +43,7 @@ mod spectrum;
 mod svg;
 mod table;
 mod text;
+mod time_frequency;
 mod topography;
 mod traces;
 mod trials;
@@ -125,6 +127,10 @@ figures! {
     Spectrum(spectrum::Spectrum),
     /// Single trials around the event.
     Trials(trials::Trials),
+    /// Power or phase consistency over time and frequency.
+    TimeFrequency(time_frequency::TimeFrequency),
+    /// Power in every window of both sides.
+    Powers(powers::Powers),
     /// One ratio on the shared axis, or the axis itself.
     Ratio(ratio::Row),
     /// The same held-out measure for what one would have used otherwise.

@@ -299,6 +299,7 @@ fn component(
         spectra: Some(spectra(hz, ratio, chance)),
         course: Some(course(held, sign, onsets.len(), chance)),
         image: Some(image(held, onsets.len(), chance)),
+        ..Component::default()
     }
 }
 
@@ -366,7 +367,13 @@ fn image(height: f64, trials: usize, chance: &mut Chance) -> TrialImage {
         t_s.iter().map(|t| at(t) as f32).collect()
     };
     let db = (0..trials).map(row).collect();
-    TrialImage { t_s, db }
+    TrialImage {
+        t_s,
+        db,
+        onsets_s: Vec::new(),
+        lags_s: Vec::new(),
+        lag_to: String::new(),
+    }
 }
 
 fn folds(stronger: &[Component]) -> Vec<FoldCard> {

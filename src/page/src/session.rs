@@ -13,7 +13,7 @@ use teasel_core::recording::{
     Large, MEMORY_BYTES, OpenOptions, Opened, Opening, Recording, SideFile,
 };
 use teasel_core::sheet::Sheet;
-use teasel_core::takeaway::{Fact, facts, readings};
+use teasel_core::takeaway::{Fact, Form, Row, Weights, clean, excerpt, facts, readings};
 use wasm_bindgen::JsValue;
 use wasm_bindgen::prelude::wasm_bindgen;
 
@@ -311,6 +311,57 @@ impl Session {
         }
     }
 
+    /// A few seconds of the channels at which a component (`stronger 1`) is largest, its series beneath them.
+    pub fn excerpt(&self, component: &str, from_s: f64, seconds: f64) -> Outcome<JsValue> {
+        let found = excerpt(self.analysing()?, component, 5, from_s, seconds);
+        let drawn = found.map(|recording| {
+            let rows: Vec<usize> = (0..recording.channels.len()).collect();
+            teasel_figures::traces(&recording, from_s, seconds, &rows)
+        });
+        to_js(&drawn)
+    }
+
+    /// What cleaning would do: `{note, others, shares, before, after}`, two figures of a few seconds; `components` are names, `how` is
+    /// `remove` or `keep-only`.
+    #[wasm_bindgen(js_name = cleanLook)]
+    pub fn clean_look(
+        &self,
+        components: Vec<String>,
+        how: JsValue,
+        from_s: f64,
+        seconds: f64,
+    ) -> Outcome<JsValue> {
+        let analysis = self.analysing()?;
+        let cleaned = clean(analysis, &components, from_js(how)?).map_err(thrown)?;
+        to_js(&take::Look::of(analysis, &cleaned, from_s, seconds))
+    }
+
+    /// A cleaned recording: `form` is `edf`, `npy` or `csv` (what it did to every channel).
+    pub fn cleaned(&self, components: Vec<String>, how: JsValue, form: &str) -> Outcome<Vec<u8>> {
+        let cleaned = clean(self.analysing()?, &components, from_js(how)?).map_err(thrown)?;
+        let bytes = match form {
+            "csv" => cleaned.csv().map(String::into_bytes),
+            "npy" => cleaned.bytes(Form::Npy),
+            _ => cleaned.bytes(Form::Edf),
+        };
+        bytes.map_err(thrown)
+    }
+
+    /// Saved filters on the recording that is open, around the windows of a recipe, without fitting anything:
+    /// `{rows, notes, csv, figures}`.
+    pub fn carry(&self, weights: &str, recipe: JsValue) -> Outcome<JsValue> {
+        let weights = Weights::from_json(weights).map_err(thrown)?;
+        let recipe: Recipe = from_js(recipe)?;
+        let carried = weights.carry(self.recording()?, &recipe).map_err(thrown)?;
+        to_js(&take::Told::of(&carried).map_err(thrown)?)
+    }
+
+    /// What this recording gives to the table and the group of a set, as the text of `row.json`.
+    pub fn row(&self, folder: &str) -> Outcome<String> {
+        let sheet = self.known().ok_or_else(|| thrown(nothing_open()))?;
+        Row::of(sheet, folder).json().map_err(thrown)
+    }
+
     /// A file to take away: `weights-json`, `weights-csv`, `results-json`, `recipe`, `report`, `everything`; `extras` is `[{name, bytes}]`.
     pub fn takeaway(&self, kind: &str, extras: JsValue) -> Outcome<Vec<u8>> {
         let State::Analysing(analysis) = &self.state else {
@@ -347,6 +398,13 @@ impl Session {
             State::Large(large) => Some(large),
             State::Analysing(analysis) => analysis.large(),
             _ => None,
+        }
+    }
+
+    fn analysing(&self) -> Outcome<&Analysis> {
+        match &self.state {
+            State::Analysing(analysis) => Ok(analysis),
+            _ => Err(thrown(nothing_open())),
         }
     }
 

@@ -18,8 +18,9 @@ use crate::recording::Recording;
 use crate::sheet::{
     ChannelCard, ChannelState, Comparator, ComparatorKind, Component, CompressionCard, End,
     FoldCard, Permutation, PrincipalCard, RankStep, RecordingCard, Sheet, Step, TotalRatio,
-    TrialScore, TypicalRatio,
+    TrialScore, TypicalRatio, WindowPower,
 };
+use nalgebra::DMatrix;
 use rand_chacha::rand_core::Rng;
 use std::collections::BTreeMap;
 
@@ -264,17 +265,7 @@ fn filter_and_pattern(
 
 /// a = P w / (wᵀPw).
 fn pattern(space: &Space, filter: &[f64]) -> Vec<f64> {
-    let m = filter.len();
-    let mut product = vec![0.0; m];
-    for i in 0..m {
-        for j in 0..=i {
-            let x = space.pooled[packed_len(i) + j];
-            product[i] += x * filter[j];
-            if i != j {
-                product[j] += x * filter[i];
-            }
-        }
-    }
+    let mut product = times(&space.pooled, filter);
     let power: f64 = product.iter().zip(filter).map(|(a, b)| a * b).sum();
     product.iter_mut().for_each(|x| *x /= power);
     product
@@ -282,12 +273,13 @@ fn pattern(space: &Space, filter: &[f64]) -> Vec<f64> {
 
 /// Compression and fitted components, right after the fit.
 pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
-    let (Some(ground), Some(design), Some(ends), Some(prepared), Some(keep)) = (
+    let (Some(ground), Some(design), Some(ends), Some(prepared), Some(keep), Some(selection)) = (
         &work.ground,
         &work.design,
         &work.ends,
         &work.prepared,
         work.keep,
+        &work.selection,
     ) else {
         return;
     };
@@ -319,12 +311,8 @@ pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
             filter,
             pattern,
             peak_hz: None,
-            stability: None,
-            places_changed: None,
-            trials: Vec::new(),
-            spectra: None,
-            course: None,
-            image: None,
+            powers: window_powers(&v, weights, design, selection),
+            ..Component::default()
         }
     };
     let (stronger, weaker) = reported(ends);
@@ -350,6 +338,82 @@ pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
     }
     guides(&mut work.sheet);
     work.sheet.warnings = warnings(work, recipe);
+}
+
+/// Variances of a component in every used window, scaled so that their mean over reference windows is 1.
+fn window_powers(
+    variances: &[f64],
+    weights: &[f64],
+    design: &Design,
+    selection: &crate::contrast::windows::Selection,
+) -> Vec<WindowPower> {
+    let reference = (0..variances.len()).filter(|k| !design.signal[*k]);
+    let (sum, total) = reference.fold((0.0, 0.0), |(s, t), k| {
+        (s + weights[k] * variances[k], t + weights[k])
+    });
+    let windows = selection.windows.iter().zip(variances);
+    windows
+        .map(|(window, variance)| WindowPower {
+            signal: window.signal,
+            trial: window.trial,
+            onset_s: window.onset_s,
+            power: variance * total / sum,
+        })
+        .collect()
+}
+
+/// 95 % intervals of a component's pattern over trials, its filter held fixed: a* = Σ nₖ Cₖ w / Σ nₖ wᵀCₖw over trials drawn with
+/// replacement, both windows of a pair together (Efron & Tibshirani 1993). Empty without bootstrap samples.
+pub(super) fn pattern_interval(
+    covariances: &crate::contrast::space::Covariances,
+    design: &Design,
+    filter: &[f64],
+    samples: usize,
+    seed: u64,
+) -> Vec<[f64; 2]> {
+    let m = filter.len();
+    let windows = covariances.packed.len();
+    let whole = covariances.packed.iter().all(|c| c.len() == packed_len(m));
+    if samples == 0 || windows < 2 || !whole {
+        return Vec::new();
+    }
+    let unit = |k: usize| if design.paired { design.trial[k] } else { k };
+    let units = (0..windows).map(unit).max().map_or(0, |last| last + 1);
+    // One row a unit: Σ n C w, and in the last column Σ n wᵀCw.
+    let mut rows = DMatrix::zeros(units, m + 1);
+    for k in 0..windows {
+        let weight = covariances.weights[k];
+        let product = times(&covariances.packed[k], filter);
+        let power: f64 = product.iter().zip(filter).map(|(a, b)| a * b).sum();
+        let mut row = rows.row_mut(unit(k));
+        for (into, x) in row.iter_mut().zip(product.iter().chain([&power])) {
+            *into += weight * x;
+        }
+    }
+    let mut drawn = crate::describe::bootstrap::counts(units, samples, seed) * rows;
+    for mut row in drawn.row_iter_mut() {
+        let power = row[m];
+        row.iter_mut().for_each(|x| *x /= power);
+    }
+    let mut drawn = drawn.columns(0, m).into_owned();
+    let [low, high] = crate::describe::bootstrap::intervals(&mut drawn);
+    low.into_iter().zip(high).map(|(l, h)| [l, h]).collect()
+}
+
+/// A packed symmetric matrix times a vector.
+fn times(packed: &[f64], vector: &[f64]) -> Vec<f64> {
+    let m = vector.len();
+    let mut product = vec![0.0; m];
+    for i in 0..m {
+        for j in 0..=i {
+            let x = packed[packed_len(i) + j];
+            product[i] += x * vector[j];
+            if i != j {
+                product[j] += x * vector[i];
+            }
+        }
+    }
+    product
 }
 
 /// The fitted ratio in a typical trial; not a number where the kind has none.

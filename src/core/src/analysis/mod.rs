@@ -5,13 +5,14 @@
 //! set_recipe(changed)                step() …                                sheet()
 //! ```
 //!
-//! The first result (ratio, map, spectra) is on the sheet after [`Stage::Fitting`]; held-out ratios, the permutation test and the
-//! ratio against C follow, in this order.
+//! The first result (ratio, map, spectra) is on the sheet after [`Stage::Fitting`]; held-out ratios, the permutation test, the
+//! ratio against C and pictures over time and frequency follow, in this order.
 mod cards;
 mod describing;
 mod islands;
 pub mod lines;
 mod opened;
+mod portrait;
 mod propose;
 mod summary;
 mod work;
@@ -46,6 +47,8 @@ pub enum Stage {
     Permuting,
     /// Ratio against C.
     Curve,
+    /// Power over time and frequency of every component.
+    Picturing,
     /// Nothing left to do.
     Done,
 }
@@ -226,6 +229,11 @@ impl Analysis {
     /// The choices in force.
     pub fn recipe(&self) -> &Recipe {
         &self.recipe
+    }
+
+    /// The prepared channels, once they are there.
+    pub fn prepared(&self) -> Option<&crate::prepare::Prepared> {
+        self.work.prepared.as_ref()
     }
 
     /// Time courses of the reported components over the whole recording, once there are any; never where the samples stay in the file.

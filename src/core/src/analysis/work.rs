@@ -1,5 +1,6 @@
 //! What is computed, in which order, and what a change of the recipe makes stale.
 use super::islands::{Standing, moved};
+use super::portrait::Portraits;
 use super::{Progress, Series, Stage, cards};
 use crate::contrast::band::Banding;
 use crate::contrast::fit::{Ends, Labels, Method, centre, extremes, fit};
@@ -64,6 +65,7 @@ pub(super) struct Work {
     /// The average channel's ratio, where the signal side was scaled to it.
     pub(super) average_ratio: f64,
     curve: CurveWork,
+    pub(super) portraits: Portraits,
     /// The criteria of `drop_windows` have been looked at.
     rejected: bool,
     effect: Option<EffectWork>,
@@ -131,6 +133,7 @@ enum Task {
     Permute,
     Open,
     Curve,
+    Portrait,
     Effect,
     Principal,
     Dimensions,
@@ -192,6 +195,7 @@ impl Work {
             level: None,
             average_ratio: 1.0,
             curve: CurveWork::default(),
+            portraits: Portraits::default(),
             rejected: false,
             effect: None,
             counting: None,
@@ -290,6 +294,9 @@ impl Work {
             self.plan = None;
             self.null.clear();
             self.level = None;
+        }
+        if old.spectrum != new.spectrum {
+            self.described = 0;
         }
         if evidence && old.evidence.bootstrap != new.evidence.bootstrap
             || old.evidence.seed != new.evidence.seed
@@ -412,7 +419,7 @@ impl Work {
             return Task::Describe;
         }
         if !self.enough() {
-            return self.last(ground);
+            return self.last(ground, recipe);
         }
         let folds = self.design.as_ref().map_or(0, |d| d.folds);
         if self.fits.len() < folds {
@@ -442,12 +449,13 @@ impl Work {
         if !self.curve.shown {
             Task::Curve
         } else {
-            self.last(ground)
+            self.last(ground, recipe)
         }
     }
 
     /// What nothing else waits for.
-    fn last(&self, ground: &Ground) -> Task {
+    fn last(&self, ground: &Ground, recipe: &Recipe) -> Task {
+        let all = self.sheet.stronger.len() + self.sheet.weaker.len();
         let wanted = PRINCIPAL.min(ground.space.dimensions());
         let effect = self.sheet.rejection.as_ref().and_then(|r| r.effect);
         if self.effect.is_some() && effect.is_none() {
@@ -456,6 +464,8 @@ impl Work {
             Task::Principal
         } else if self.sheet.dimensions.is_none() && self.counts_samples() {
             Task::Dimensions
+        } else if self.portraits.done < all && recipe.contrast.event_windows().is_some() {
+            Task::Portrait
         } else {
             Task::Nothing
         }
@@ -581,6 +591,12 @@ impl Work {
                 Ok(progress(Stage::Permuting, 1, 1, true))
             }
             Task::Curve => self.curve(recipe),
+            Task::Portrait => {
+                let before = self.portraits.done;
+                let (done, of) = self.portrait(recording, recipe, BITE);
+                let news = self.portraits.done > before;
+                Ok(progress(Stage::Picturing, done, of, news))
+            }
             Task::Effect => self.rejection_effect(recipe),
             Task::Principal => self.principal(),
             Task::Dimensions => self.count_dimensions(recipe),
@@ -970,6 +986,7 @@ impl Work {
             )
         })?;
         self.ends = Some(ends);
+        self.portraits = Portraits::default();
         cards::solved(self, recipe);
         let all = self.covariances.packed.len() as u64;
         Ok(progress(Stage::Fitting, all, all, false))

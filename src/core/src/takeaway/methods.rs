@@ -112,6 +112,24 @@ pub fn references(sheet: &Sheet) -> Vec<String> {
         .collect()
 }
 
+/// The same works as BibTeX.
+pub fn bibtex(sheet: &Sheet) -> String {
+    let entries: Vec<String> = references(sheet)
+        .iter()
+        .map(|line| super::bibliography::entry(line))
+        .collect();
+    entries.join("\n")
+}
+
+/// The paragraph with the list of its references below, as plain text.
+pub fn methods_text(sheet: &Sheet) -> String {
+    let cited = references(sheet);
+    if cited.is_empty() {
+        return methods(sheet);
+    }
+    format!("{}\n\n{}", methods(sheet), cited.join("\n"))
+}
+
 /// Up to a dozen names, and how many more.
 fn names(names: &[String]) -> String {
     let shown: Vec<String> = names.iter().take(12).map(|n| words::name(n)).collect();

@@ -219,6 +219,7 @@ const RECIPE: Shape = Shape::Object(&[
         ),
     ),
     ("components", false, Shape::Whole),
+    ("spectrum", false, Shape::Word(&["welch", "multitaper"])),
     (
         "evidence",
         false,

@@ -337,6 +337,9 @@ impl Page<'_> {
                     (self.figure(&name("course")))
                     (self.figure(&name("average")))
                     (self.figure(&name("trials")))
+                    (self.figure(&name("powers")))
+                    (self.figure(&name("time-frequency")))
+                    (self.figure(&name("consistency")))
                 }
             }
         }

@@ -128,6 +128,11 @@ impl Map {
             unit: card(&names[0]).map_or(String::new(), |c| c.unit.clone()),
             grid,
             radius,
+            interval: if small {
+                Vec::new()
+            } else {
+                component.pattern_interval.clone()
+            },
         })
     }
 }

@@ -5,6 +5,7 @@ mod on_head;
 mod on_plane;
 mod on_shaft;
 mod surface;
+mod veil;
 
 use crate::ground::Ground;
 use crate::head::NOSE;
@@ -45,6 +46,9 @@ pub struct Map {
     pub grid: Vec<f64>,
     /// Radius at which the map ends.
     pub radius: f64,
+    /// 95 % interval of each value over trials; empty where it is not known.
+    #[serde(default)]
+    pub interval: Vec<[f64; 2]>,
 }
 
 impl Map {
@@ -146,12 +150,13 @@ impl Plot for Map {
     fn table(&self) -> Table {
         let unit = format!("pattern_{}_per_unit", self.unit);
         let [across, up] = self.ground.axes();
-        let mut table = Table::new(&["channel", &unit, across, up]);
+        let mut table = Table::new(&["channel", &unit, "low_95", "high_95", across, up]);
         for (i, name) in self.names.iter().enumerate() {
             let place = self.places.get(i).copied().flatten();
             let at = |k: usize| place.map_or(String::new(), |p| cell(p[k]));
             let value = self.values.get(i).map_or(String::new(), |v| cell(*v));
-            table.row([text::clean(name), value, at(0), at(1)]);
+            let bound = |k: usize| self.interval.get(i).map_or(String::new(), |b| cell(b[k]));
+            table.row([text::clean(name), value, bound(0), bound(1), at(0), at(1)]);
         }
         table
     }
@@ -170,6 +175,15 @@ impl Plot for Map {
         } else {
             "in order of size"
         };
-        format!("Pattern of the component {how}{largest}.")
+        let doubt = self.doubtful().iter().filter(|d| **d).count();
+        let told = if self.interval.is_empty() {
+            String::new()
+        } else {
+            format!(
+                "; at {doubt} of {} its 95 % interval over trials includes zero, which is striped",
+                text::count(self.values.len(), "channel")
+            )
+        };
+        format!("Pattern of the component {how}{largest}{told}.")
     }
 }

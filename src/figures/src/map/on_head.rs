@@ -32,6 +32,7 @@ impl Map {
         if self.small {
             return Ok(());
         }
+        self.veil(pen, view.centre, r)?;
         let fits = |area: &_| within(area, view.centre, r - 2.0);
         self.dots(pen, view, ramp, r * 0.9, fits, |p| self.grid_at(p, EXTENT))?;
         self.say_note(pen)
