@@ -17,11 +17,6 @@ const SIDE = /\.(tsv|json)$|_(events|channels|electrodes|coordsystem)\.csv$/i;
 /** Everything before the last underscore is shared by a recording and its side files (BIDS). @param {File} file */
 const entity = ({ name }) => name.replace(/\.[^.]*$/, "").replace(/_[^_]*$/, "");
 
-/** Whether these files are several recordings. @param {File[]} files */
-export function isSet(files) {
-  return files.filter(({ name }) => !SIDE.test(name)).length > 1;
-}
-
 /**
  * @param {App} app
  * @param {{ first: (files: File[]) => void }} doors `first` opens one recording with its side files on the sheet
@@ -166,7 +161,6 @@ export function mountMany(app, doors) {
   }
 
   return {
-    isSet,
     /** Several recordings were given at once. @param {File[]} files */
     async offer(files) {
       halt("");
