@@ -16,8 +16,10 @@
 //! | EDF+ 2.2.3: several annotation signals | `outside::committed_files` (words), `spec::several_annotation_signals` |
 //! | EDF+ 2.2.4: the record's own onset, a start that is a fraction late | `outside::committed_files` (late), `spec::gaps_make_stretches`, `outside::files_of_the_wheel` |
 //! | BIDS events: onset, duration, trial_type, value, `n/a` | `tables` |
+//! | NPY 1.0–3.0, NPZ, MAT level 5, TIFF 6.0 and BigTIFF: types, byte orders, axis orders, compressions | `arrays` |
 //! | any bytes at all: an answer, no panic, little memory | `hostile` |
 //! | what is written is read again | `written`, `watch` |
+mod arrays;
 mod hostile;
 mod outside;
 mod plan;

@@ -73,7 +73,7 @@ pub struct Given {
     /// Unit of the samples: `uV`, `mV`, `V`, `fT`, `counts`, …
     #[serde(skip_serializing_if = "Option::is_none")]
     pub unit: Option<String>,
-    /// What the axes of an array are, outermost first.
+    /// What the axes of an array are, in the order of its sizes.
     #[serde(skip_serializing_if = "Option::is_none")]
     pub axes: Option<Axes>,
     /// Which of several named arrays holds the samples.
@@ -88,7 +88,7 @@ impl Given {
     }
 }
 
-/// What the axes of an array are, outermost first.
+/// What the axes of an array are, in the order of its sizes as the file writes them.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
 pub enum Axes {
     /// One row a channel.
@@ -100,6 +100,9 @@ pub enum Axes {
     /// One picture after the other.
     #[serde(rename = "frames,height,width")]
     FramesHeightWidth,
+    /// Time along the last axis of a movie.
+    #[serde(rename = "height,width,frames")]
+    HeightWidthFrames,
 }
 
 /// Which channels, against which reference.

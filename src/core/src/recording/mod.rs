@@ -13,10 +13,16 @@
 //! # Adding a format
 //! One file with a `FORMAT` row (name, score of the first bytes, begin) and a type that implements the crate's `Reader`;
 //! one line in the table of `opening.rs`. The content decides who reads a file, its name never does.
+mod array;
 mod budget;
 pub mod edf;
 mod events_table;
+mod mat;
+mod npy;
+mod npz;
 mod opening;
+mod seek;
+mod tiff;
 
 pub use budget::MEMORY_BYTES;
 pub use opening::{MemorySource, OpenOptions, Opening, open};
@@ -139,6 +145,11 @@ pub trait Source {
     }
     /// Fills `out` with the bytes from `offset` on; asking beyond the end is an error.
     fn read_at(&mut self, offset: u64, out: &mut [u8]) -> crate::error::Result<()>;
+}
+
+/// Name of a pixel, counted from 1: row 12, column 40 is `r12c40`.
+pub(crate) fn pixel_name(row: u32, column: u32) -> String {
+    format!("r{}c{}", row + 1, column + 1)
 }
 
 impl Recording {

@@ -1,6 +1,6 @@
 //! Opening a recording in steps: probe the content, read the header, decode slice after slice, add the side files.
 use super::budget::Budget;
-use super::{MEMORY_BYTES, Recording, SideFile, Source, edf, events_table};
+use super::{MEMORY_BYTES, Recording, SideFile, Source, edf, events_table, mat, npy, npz, tiff};
 use crate::error::{Kind, Problem, Result};
 use std::fmt;
 
@@ -34,19 +34,24 @@ pub(crate) struct Format {
 }
 
 /// Every format, one row each. The highest score reads the file; a tie goes to the earlier row.
-const FORMATS: &[Format] = &[edf::FORMAT, edf::FORMAT_24_BIT];
+const FORMATS: &[Format] = &[
+    edf::FORMAT,
+    edf::FORMAT_24_BIT,
+    npy::FORMAT,
+    npz::FORMAT,
+    mat::FORMAT,
+    tiff::FORMAT,
+];
 
 /// First bytes that a probe sees.
 const PROBE_BYTES: u64 = 4096;
 
 /// Content that is often dropped by mistake: its first bytes and what to call it.
 const OTHER_CONTENT: &[(&[u8], &str)] = &[
-    (b"PK\x03\x04", "a ZIP archive"),
     (b"\x1f\x8b", "gzip-compressed data"),
     (b"%PDF", "a PDF document"),
     (b"\x89PNG", "a PNG picture"),
     (b"\x89HDF", "an HDF5 file"),
-    (b"\x93NUMPY", "a NumPy array"),
     (b"<", "markup text"),
     (b"{", "JSON text"),
 ];
@@ -192,10 +197,10 @@ fn unknown(head: &[u8]) -> Problem {
     Problem::new(
         Kind::Unknown,
         "the content is not a recording that Teasel knows, whatever the file's name says",
-        "open an EDF or EDF+ file",
+        "open a recording in one of these formats",
     )
     .at("byte 0")
-    .expected_found(format!("the mark of {}", names.join(" or ")), found)
+    .expected_found(format!("the mark of one of {}", names.join(", ")), found)
 }
 
 /// A recording's bytes in memory.

@@ -266,7 +266,7 @@ fn scale(physical: [f64; 2], digital: [i64; 2], factor: f64) -> std::result::Res
 }
 
 /// Factor to µV for a voltage, `None` for anything else. The sign for micro comes as `u`, as U+00B5 and as U+03BC.
-pub(super) fn to_microvolts(unit: &str) -> Option<f64> {
+pub(in crate::recording) fn to_microvolts(unit: &str) -> Option<f64> {
     match unit {
         "uV" | "µV" | "μV" | "uv" | "UV" | "microV" => Some(1.0),
         "V" | "v" => Some(1e6),

@@ -29,6 +29,7 @@ mod read;
 mod records;
 mod write;
 
+pub(super) use header::to_microvolts;
 pub use write::{Identity, write};
 
 use super::Source;
