@@ -98,11 +98,7 @@ fn source(rng: &mut ChaCha8Rng, noise: Noise, samples: usize) -> Vec<f64> {
 
 /// The question put to every null recording.
 pub fn null_recipe(measure: Measure, permutations: usize) -> Recipe {
-    let window = |from_s, to_s| EventWindow {
-        event: "tick".into(),
-        from_s,
-        to_s,
-    };
+    let window = |from_s, to_s| EventWindow::new("tick", from_s, to_s);
     Recipe {
         keep: Keep::Number(6),
         measure,

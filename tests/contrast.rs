@@ -195,11 +195,7 @@ fn pipeline_recording() -> Recording {
 }
 
 fn pipeline_recipe(measure: Measure, permutations: usize) -> Recipe {
-    let window = |from_s, to_s| EventWindow {
-        event: "bell".into(),
-        from_s,
-        to_s,
-    };
+    let window = |from_s, to_s| EventWindow::new("bell", from_s, to_s);
     Recipe {
         keep: Keep::Number(7),
         measure,
@@ -404,16 +400,8 @@ fn the_same_recipe_gives_the_same_sheet_and_a_detour_leaves_no_trace() {
             1 => other.measure = Measure::Total,
             2 => {
                 other.contrast = Contrast::Windows {
-                    signal: EventWindow {
-                        event: "bell".into(),
-                        from_s: 0.0,
-                        to_s: 0.5,
-                    },
-                    reference: EventWindow {
-                        event: "bell".into(),
-                        from_s: -0.5,
-                        to_s: 0.0,
-                    },
+                    signal: EventWindow::new("bell", 0.0, 0.5),
+                    reference: EventWindow::new("bell", -0.5, 0.0),
                 }
             }
             3 => other.evidence.folds = 3,
@@ -559,16 +547,8 @@ fn a_side_with_fewer_windows_than_folds_still_tests_both_sides_in_every_fold() {
     let mut recipe = null_recipe(Measure::Total, 20);
     recipe.evidence.folds = 20;
     recipe.contrast = Contrast::Windows {
-        signal: EventWindow {
-            event: "tick".into(),
-            from_s: 0.0,
-            to_s: 0.8,
-        },
-        reference: EventWindow {
-            event: "tock".into(),
-            from_s: 0.0,
-            to_s: 0.8,
-        },
+        signal: EventWindow::new("tick", 0.0, 0.8),
+        reference: EventWindow::new("tock", 0.0, 0.8),
     };
     let sheet = sheet(recording, recipe);
     assert_eq!(sheet.folds.len(), 12);

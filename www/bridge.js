@@ -8,6 +8,7 @@ import init, * as module from "teasel-module";
 
 /** @typedef {import("./types").Problem} Problem */
 /** @typedef {import("./types").Recipe} Recipe */
+/** @typedef {import("./types").Given} Given */
 /** @typedef {import("./types").Summary} Summary */
 /** @typedef {import("./types").SheetNews} SheetNews */
 /** @typedef {import("./types").Figure} Figure */
@@ -36,7 +37,7 @@ const SIDE_BYTES = 64 * 1024 * 1024;
  * @returns {Problem}
  */
 export function problem(kind, what, advice) {
-  return { kind, file: null, what, place: null, expected: null, found: null, advice, salvage: null };
+  return { kind, file: null, what, place: null, expected: null, found: null, advice, salvage: null, asks: [] };
 }
 
 /** Starts the worker and the page's instance. Throws a Problem where the browser cannot run them. */
@@ -107,13 +108,13 @@ export class Bridge {
    * Opens a recording with its side files, in place of what is open. Rejects with a Problem; where the header already fails, what was open
    * stays open, and otherwise `holds` says that it did not.
    * @param {File[]} files
-   * @param {{ salvage?: boolean }} [options]
+   * @param {{ salvage?: boolean, given?: Given }} [options] `given` is what the file does not carry
    * @returns {Promise<Summary>}
    */
-  async open(files, { salvage = false } = {}) {
+  async open(files, { salvage = false, given = {} } = {}) {
     const { recording, sides } = sorted(files);
     const small = await Promise.all(sides.map(whole));
-    return this.#opened(() => this.open(files, { salvage }), this.#ask("open", recording, small, salvage));
+    return this.#opened(() => this.open(files, { salvage, given }), this.#ask("open", recording, small, salvage, given));
   }
 
   /** @param {string} which @returns {Promise<Summary>} */

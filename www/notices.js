@@ -35,7 +35,7 @@ export function asProblem(thrown) {
   if (thrown && typeof thrown === "object" && "what" in thrown) return /** @type {Problem} */ (thrown);
   const what = (thrown instanceof Error ? thrown.message : String(thrown)) || "Something failed that should not have";
   const advice = "Reload the page and try again; the choices are kept.";
-  return { kind: "storage", file: null, what, place: null, expected: null, found: null, advice, salvage: null };
+  return { kind: "storage", file: null, what, place: null, expected: null, found: null, advice, salvage: null, asks: [] };
 }
 
 /** Place, expected and found in one line, as far as they are known. @param {Problem} problem */

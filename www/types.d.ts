@@ -6,6 +6,7 @@ export interface EventWindow {
 }
 export interface Recipe {
   teasel_recipe: number;
+  recording?: Given;
   channels: { leave_out: string[]; interpolate: string[]; reference: "as recorded" | "average" | string[] };
   filter: { high_pass_hz: number | null; low_pass_hz: number | null; notch_hz: number[]; resample_hz: number | null };
   keep: number | "auto" | "best";
@@ -112,6 +113,23 @@ export interface Problem {
   found: string | null;
   advice: string;
   salvage: { records: number; seconds: number } | null;
+  /** What has to be told before the file can be opened. */
+  asks: Ask[];
+}
+/** A question that a file leaves open; the answer goes into the recipe's `recording` under `key`. */
+export interface Ask {
+  key: "rate_hz" | "unit" | "axes" | "variable";
+  question: string;
+  /** Answers to choose from; empty where it is a number or free text. */
+  options: string[];
+  guess: string | null;
+}
+/** What a file does not carry and the user told. */
+export interface Given {
+  rate_hz?: number;
+  unit?: string;
+  axes?: string;
+  variable?: string;
 }
 export interface PlotBox {
   left: number;
@@ -182,7 +200,7 @@ export interface DrawOptions {
 }
 /** What www/bridge.js gives: one queue to the worker, and the drawing of the page's own instance. */
 export interface Bridge {
-  open(files: File[], options: { salvage: boolean }): Promise<Summary>;
+  open(files: File[], options: { salvage: boolean; given?: Given }): Promise<Summary>;
   openDemo(which: string): Promise<Summary>;
   propose(): Promise<{ recipe: Recipe; why: string } | null>;
   setRecipe(recipe: Recipe): Promise<number | null>;

@@ -67,10 +67,10 @@ const LATER = Symbol("later");
 
 /** @type {Record<string, (id: number, ...args: any[]) => unknown>} */
 const calls = {
-  open(id, /** @type {File} */ file, /** @type {{ name: string, bytes: Uint8Array }[]} */ sides, /** @type {boolean} */ salvage) {
+  open(id, /** @type {File} */ file, /** @type {{ name: string, bytes: Uint8Array }[]} */ sides, /** @type {boolean} */ salvage, /** @type {object} */ given) {
     const next = new Session();
     try {
-      next.begin(file.name, file.size, reader(file), sides, salvage);
+      next.begin(file.name, file.size, reader(file), sides, salvage, given);
     } catch (error) {
       // What was open stays open.
       next.free();
@@ -269,7 +269,7 @@ function isProblem(error) {
 
 /** @param {string} kind @param {string} what @param {string} advice */
 function problem(kind, what, advice) {
-  return { kind, file: null, what, place: null, expected: null, found: null, advice, salvage: null };
+  return { kind, file: null, what, place: null, expected: null, found: null, advice, salvage: null, asks: [] };
 }
 const stopped = () => problem("stopped", "reading was stopped", "Open the recording again to go on.");
 const notYet = () => problem("contrast", "the recording is still being read", "Wait until it is read.");

@@ -50,6 +50,53 @@ fn what_is_written_reads_back_the_same() {
     }
 }
 
+/// A recipe with this contrast.
+fn asking(contrast: &str) -> String {
+    format!(r#"{{"teasel_recipe": 1, "contrast": {contrast}}}"#)
+}
+
+#[test]
+fn every_kind_of_contrast_is_read_and_written() {
+    let total = r#"{"kind": "repeatable", "event": "buoy", "from_s": 0, "to_s": 0.5, "first": 20, "leave_out": [3, 4]}"#;
+    let kinds = [
+        r#"{"kind": "windows", "signal": {"event": "buoy*", "also": ["gull"], "from_s": 0, "to_s": 0, "until": "press"},
+            "reference": {"event": "swell", "from_s": 0, "to_s": 1, "last": 5, "equal": true}}"#,
+        r#"{"kind": "spans", "signal": [[0, 10], [20.5, 30]], "reference": "rest"}"#,
+        r#"{"kind": "spans", "signal": "drowsy", "reference": "awake", "piece_s": 2}"#,
+        r#"{"kind": "band", "centre_hz": 10, "half_width_hz": 2, "reference": "broadband"}"#,
+        r#"{"kind": "band", "centre_hz": 10, "half_width_hz": 2, "within": {"event": "buoy", "from_s": 0, "to_s": 1}}"#,
+        r#"{"kind": "band", "centre_hz": 10, "half_width_hz": 2, "within": [[0, 60]]}"#,
+        total,
+        r#"{"kind": "slow", "lag_s": 0.02, "within": "calm"}"#,
+    ];
+    for kind in kinds {
+        let more = format!(r#"{kind}, "not_used": [[1, 2.5]], "hold_back": {{"last": 0.25}}"#);
+        let recipe = recipe_from_json(&asking(&more)).unwrap();
+        let text = recipe_json(&recipe).unwrap();
+        assert_eq!(recipe_from_json(&text).unwrap(), recipe, "{kind}");
+        assert_eq!(recipe.not_used, [[1.0, 2.5]]);
+        let expected = if kind == total {
+            Measure::Total
+        } else {
+            Measure::Typical
+        };
+        assert_eq!(recipe.measure, expected, "{kind}");
+        // A link without names holds none of them, and takes the most frequent event in their place.
+        use base64::Engine;
+        let link = link_encode(&recipe, false);
+        let inside = base64::engine::general_purpose::URL_SAFE_NO_PAD
+            .decode(&link)
+            .unwrap();
+        let inside = String::from_utf8(inside).unwrap();
+        for name in ["buoy", "gull", "press", "swell", "drowsy", "awake", "calm"] {
+            assert!(!inside.contains(name), "{inside}");
+        }
+        let events = BTreeMap::from([("a".to_string(), 30), ("b".to_string(), 12)]);
+        let (completed, _) = link_decode(&link).unwrap().complete(&events).unwrap();
+        assert_eq!(completed.contrast.kind(), recipe.contrast.kind());
+    }
+}
+
 #[test]
 fn the_least_recipe_takes_every_default() {
     let recipe = recipe_from_json(LEAST).unwrap();
@@ -268,33 +315,79 @@ fn each_refusal_says_where_what_was_expected_and_what_was_found() {
         ),
         (
             LEAST.replace("\"windows\"", "\"band\""),
-            "this version computes the kind windows",
-            "\"contrast.kind\"",
-            "\"windows\"",
-        ),
-        (
-            LEAST.replace("\"windows\"", "\"spans\""),
-            "this version computes the kind windows",
-            "\"contrast.kind\"",
-            "\"windows\"",
+            "breaks its rules",
+            "\"contrast\"",
+            "one of the keys kind, centre_hz, half_width_hz, reference, within, piece_s",
         ),
         (
             LEAST.replace("\"windows\"", "\"repeatable\""),
-            "this version computes the kind windows",
-            "\"contrast.kind\"",
-            "\"windows\"",
+            "breaks its rules",
+            "\"contrast\"",
+            "one of the keys kind, event",
         ),
         (
-            LEAST.replace("\"windows\"", "\"slow\""),
-            "this version computes the kind windows",
-            "\"contrast.kind\"",
-            "\"windows\"",
+            asking(r#"{"kind": "spans", "signal": [[1, 2, 3]], "reference": "rest"}"#),
+            "breaks its rules",
+            "\"contrast.signal.1\"",
+            "two numbers [from, to]",
+        ),
+        (
+            asking(r#"{"kind": "spans", "signal": "rest", "reference": [[0, 1]]}"#),
+            "the signal spans is out of range",
+            "\"contrast.signal\"",
+            "everything that is not signal",
+        ),
+        (
+            asking(r#"{"kind": "spans", "signal": [[2, 1]], "reference": "rest"}"#),
+            "out of range",
+            "\"contrast.signal\"",
+            "end after they begin",
+        ),
+        (
+            asking(r#"{"kind": "band", "centre_hz": 6, "half_width_hz": 2}"#),
+            "the half width of the band",
+            "\"contrast.half_width_hz\"",
+            "less than 1.714 Hz",
+        ),
+        (
+            asking(r#"{"kind": "slow", "lag_s": 0}"#),
+            "the lag",
+            "\"contrast.lag_s\"",
+            "above 0",
+        ),
+        (
+            asking(
+                r#"{"kind": "repeatable", "event": "a", "from_s": 0, "to_s": 1, "equal": true}"#,
+            ),
+            "has no meaning here",
+            "\"contrast.equal\"",
+            "",
+        ),
+        (
+            asking(
+                r#"{"kind": "repeatable", "event": "a", "from_s": 0, "to_s": 1}, "measure": "typical""#,
+            ),
+            "has no ratio in a single trial",
+            "\"measure\"",
+            "total",
+        ),
+        (
+            asking(r#"{"kind": "slow", "lag_s": 0.1}, "hold_back": {"last": 0.9}"#),
+            "locked away",
+            "\"hold_back.last\"",
+            "from 0.05 to 0.5",
+        ),
+        (
+            asking(r#"{"kind": "slow", "lag_s": 0.1}, "not_used": [[5, 5]]"#),
+            "not to be used",
+            "\"not_used\"",
+            "end after they begin",
         ),
         (
             LEAST.replace("\"windows\"", "\"door\""),
             "breaks its rules",
             "\"contrast\"",
-            "the kind \"windows\"",
+            "one of the kinds \"windows\"",
         ),
         (
             LEAST.replace("\"kind\": \"windows\",", ""),
@@ -359,7 +452,9 @@ fn recipe_check_refuses_numbers_that_json_cannot_hold() {
     recipe.filter.resample_hz = Some(f64::NAN);
     assert!(recipe_check(&recipe).is_err());
     let mut recipe = sample::recipe();
-    let Contrast::Windows { signal, .. } = &mut recipe.contrast;
+    let Contrast::Windows { signal, .. } = &mut recipe.contrast else {
+        panic!("a contrast of event windows")
+    };
     signal.to_s = f64::INFINITY;
     assert!(recipe_check(&recipe).is_err());
     assert!(recipe_check(&sample::recipe()).is_ok());
@@ -405,7 +500,9 @@ fn a_link_without_names_holds_none_and_takes_the_events_of_the_recording() {
     let mut recipe = sample::recipe();
     recipe.channels.leave_out = vec!["Zelda-1".into()];
     recipe.channels.reference = Reference::Named(vec!["Zelda-2".into()]);
-    let Contrast::Windows { signal, reference } = &mut recipe.contrast;
+    let Contrast::Windows { signal, reference } = &mut recipe.contrast else {
+        panic!("a contrast of event windows")
+    };
     signal.event = "Zelda-3".into();
     reference.event = "Zelda-4".into();
     let link = link_encode(&recipe, false);
@@ -422,7 +519,7 @@ fn a_link_without_names_holds_none_and_takes_the_events_of_the_recording() {
     ]);
     let open = link_decode(&link).unwrap();
     let (completed, notes) = open.complete(&events).unwrap();
-    let Contrast::Windows { signal, reference } = &completed.contrast;
+    let (signal, reference) = completed.contrast.event_windows().unwrap();
     assert_eq!(
         (signal.event.as_str(), reference.event.as_str()),
         ("b", "c")
@@ -439,7 +536,7 @@ fn a_link_without_names_holds_none_and_takes_the_events_of_the_recording() {
     // One event on both sides stays one event.
     let open = link_decode(&link_encode(&sample::recipe(), false)).unwrap();
     let (completed, _) = open.complete(&events).unwrap();
-    let Contrast::Windows { signal, reference } = &completed.contrast;
+    let (signal, reference) = completed.contrast.event_windows().unwrap();
     assert_eq!(
         (signal.event.as_str(), reference.event.as_str()),
         ("b", "b")

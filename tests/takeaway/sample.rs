@@ -25,16 +25,8 @@ pub fn recipe() -> Recipe {
         components: 2,
         evidence: Evidence::default(),
         ..Recipe::asking(Contrast::Windows {
-            signal: EventWindow {
-                event: "buoy".into(),
-                from_s: 0.2,
-                to_s: 1.0,
-            },
-            reference: EventWindow {
-                event: "buoy".into(),
-                from_s: -1.0,
-                to_s: -0.2,
-            },
+            signal: EventWindow::new("buoy", 0.2, 1.0),
+            reference: EventWindow::new("buoy", -1.0, -0.2),
         })
     }
 }
@@ -283,7 +275,9 @@ pub fn hostile() -> Sheet {
     sheet.recording.warnings = vec!["<svg onload=alert(1)>".into()];
     sheet.warnings = vec!["<svg onload=alert(1)>".into()];
     sheet.channels[5].state = ChannelState::NeedsALook("the same as <script>".into());
-    let Contrast::Windows { signal, reference } = &mut sheet.recipe.contrast;
+    let Contrast::Windows { signal, reference } = &mut sheet.recipe.contrast else {
+        panic!("a contrast of event windows")
+    };
     signal.event = HOSTILE[0].into();
     reference.event = HOSTILE[0].into();
     sheet.recipe.channels.leave_out = vec![names[7].clone()];

@@ -165,7 +165,9 @@ fn hidden(sheet: &mut Sheet) {
 }
 
 fn unpaired(sheet: &mut Sheet) {
-    let Contrast::Windows { reference, .. } = &mut sheet.recipe.contrast;
+    let Contrast::Windows { reference, .. } = &mut sheet.recipe.contrast else {
+        panic!("a contrast of event windows")
+    };
     reference.event = "swell".into();
     let windows = sheet.windows.as_mut().unwrap();
     windows.paired = false;

@@ -35,7 +35,7 @@ fn one(weights: &Weights, path: &Path, given: &Given, folder: &Path) -> Result<(
     let name = source::file_name(path);
     let recording = {
         let mut meter = Meter::new(&name);
-        source::recording(path, given, &mut meter)?
+        source::recording(path, given, &given.told.given(), &mut meter)?
     };
     let applied = weights.apply(&recording)?;
     for note in &applied.notes {

@@ -6,7 +6,7 @@ use std::collections::BTreeMap;
 use std::fmt::Write as _;
 use std::io::Write as _;
 use std::path::Path;
-use teasel_core::analysis::propose;
+use teasel_core::analysis::{Proposal, propose};
 use teasel_core::error::{Kind, Problem, Result};
 use teasel_core::recording::Recording;
 use teasel_core::takeaway::recipe_json;
@@ -40,12 +40,20 @@ pub fn inspect(given: &Given, as_json: bool) -> bool {
 
 fn one(path: &Path, given: &Given, as_json: bool) -> Result<Value> {
     let mut meter = Meter::new(&source::file_name(path));
-    let recording = source::recording(path, given, &mut meter)?;
+    let recording = source::recording(path, given, &given.told.given(), &mut meter)?;
     if as_json {
-        card(&recording)
+        card(&recording, given)
     } else {
-        text(&recording).map(Value::String)
+        text(&recording, given).map(Value::String)
     }
+}
+
+/// The core's proposal, with what was told on the command line.
+fn proposal(recording: &Recording, given: &Given) -> Option<Proposal> {
+    propose(recording).map(|mut proposal| {
+        proposal.recipe.recording = given.told.given();
+        proposal
+    })
 }
 
 fn counts(recording: &Recording) -> BTreeMap<&str, usize> {
@@ -56,7 +64,7 @@ fn counts(recording: &Recording) -> BTreeMap<&str, usize> {
     counts
 }
 
-fn card(recording: &Recording) -> Result<Value> {
+fn card(recording: &Recording, given: &Given) -> Result<Value> {
     let failed = |e: serde_json::Error| {
         Problem::new(
             Kind::Storage,
@@ -77,7 +85,7 @@ fn card(recording: &Recording) -> Result<Value> {
         "events": counts(recording),
         "side_files": recording.side_files,
         "warnings": recording.warnings,
-        "proposal": value(&|| serde_json::to_value(propose(recording)))?,
+        "proposal": value(&|| serde_json::to_value(proposal(recording, given)))?,
     }))
 }
 
@@ -97,7 +105,7 @@ fn shown(text: &str) -> String {
         .collect()
 }
 
-fn text(recording: &Recording) -> Result<String> {
+fn text(recording: &Recording, given: &Given) -> Result<String> {
     let mut out = String::new();
     let mut put = |label: &str, value: String| {
         // Writing to a String cannot fail.
@@ -153,7 +161,7 @@ fn text(recording: &Recording) -> Result<String> {
     for warning in &recording.warnings {
         put("note", shown(warning));
     }
-    match propose(recording) {
+    match proposal(recording, given) {
         Some(proposal) => {
             put("proposal", shown(&proposal.why));
             out.push_str(&recipe_json(&proposal.recipe)?);

@@ -1,7 +1,7 @@
 //! Teasel from a terminal: the page's pipeline for many recordings, and for checking.
 //!
 //! * `source`: recordings and side files on disk.
-//! * `run`, `apply`, `inspect`: the three commands.
+//! * `run`, `gather`, `apply`, `inspect`: the commands.
 //! * `folder`: files written beside their place and renamed, so that none is ever seen half written.
 //! * `say`: lines and progress on standard error.
 //!
@@ -9,6 +9,7 @@
 mod apply;
 mod figures;
 mod folder;
+mod gather;
 mod inspect;
 mod run;
 mod say;
@@ -17,11 +18,14 @@ mod source;
 use clap::{Args, Parser, Subcommand};
 use std::path::PathBuf;
 use std::process::ExitCode;
+use teasel_core::recipe::{self, Axes};
 
 const EXAMPLE: &str = "\
 Example:
   teasel inspect night-watch.edf
   teasel run recipe.json night-watch.edf --out results
+  teasel run recipe.json monday.edf tuesday.edf wednesday.edf --out results
+  teasel gather results
   teasel apply results/night-watch/weights.json another-night.edf --out carried
 
 A recipe that suffices:
@@ -57,6 +61,11 @@ enum Command {
         #[arg(long, value_name = "N", value_parser = clap::value_parser!(u64).range(..=9_007_199_254_740_991))]
         seed: Option<u64>,
     },
+    /// Make the table and the group of recordings that were run one process each.
+    Gather {
+        /// The folder that the runs wrote to (their --out).
+        folder: PathBuf,
+    },
     /// Apply the filters of a weights file to each recording.
     Apply {
         /// The weights (weights.json of a run).
@@ -89,6 +98,43 @@ struct Given {
     /// Open the whole records before a cut or other damage.
     #[arg(long)]
     salvage: bool,
+    #[command(flatten)]
+    told: Told,
+}
+
+/// What a file of a general format does not carry; each comes before the recipe's `recording` and before side files.
+#[derive(Args)]
+struct Told {
+    /// Samples a second, or frames.
+    #[arg(long, value_name = "HZ")]
+    rate: Option<f64>,
+    /// Unit of the samples: uV, mV, V, nV, fT, counts, or any other.
+    #[arg(long, value_name = "UNIT")]
+    unit: Option<String>,
+    /// What the axes of an array are, in the order of its sizes: channels,samples or samples,channels, frames,height,width or height,width,frames.
+    #[arg(long, value_name = "AXES", value_parser = axes)]
+    axes: Option<Axes>,
+    /// Which of several named arrays holds the samples.
+    #[arg(long, value_name = "NAME")]
+    array: Option<String>,
+}
+
+impl Told {
+    /// As a recipe has it.
+    fn given(&self) -> recipe::Given {
+        recipe::Given {
+            rate_hz: self.rate,
+            unit: self.unit.clone(),
+            axes: self.axes,
+            variable: self.array.clone(),
+        }
+    }
+}
+
+fn axes(text: &str) -> Result<Axes, String> {
+    let names = Axes::ALL.map(Axes::name);
+    let found = Axes::ALL.into_iter().find(|axes| axes.name() == text);
+    found.ok_or_else(|| format!("one of {} is expected", names.join(" or ")))
 }
 
 fn main() -> ExitCode {
@@ -104,6 +150,7 @@ fn main() -> ExitCode {
             given,
             out,
         } => apply::apply(&weights, &given, &out),
+        Command::Gather { folder } => gather::gather(&folder),
         Command::Inspect { given, json } => inspect::inspect(&given, json),
     };
     if fine {

@@ -1,12 +1,12 @@
 //! `teasel run`: everything a recipe asks of each recording.
 use crate::say::{self, Meter};
-use crate::{Given, figures, folder, source};
+use crate::{Given, figures, folder, gather, source};
 use std::path::Path;
 use teasel_core::analysis::{Analysis, Series};
 use teasel_core::error::Result;
 use teasel_core::recipe::Recipe;
 use teasel_core::sheet::Sheet;
-use teasel_core::takeaway::{self as take, SummaryRow};
+use teasel_core::takeaway::{self as take, Row};
 
 /// Runs all recordings; false where the recipe or a recording was bad.
 pub fn run(recipe: &Path, given: &Given, out: &Path, seed: Option<u64>) -> bool {
@@ -23,6 +23,7 @@ pub fn run(recipe: &Path, given: &Given, out: &Path, seed: Option<u64>) -> bool 
     if let Some(seed) = seed {
         recipe.evidence.seed = seed;
     }
+    recipe.recording = given.told.given().or(recipe.recording);
     let mut rows = Vec::new();
     let mut fine = true;
     for (path, name) in given
@@ -31,22 +32,22 @@ pub fn run(recipe: &Path, given: &Given, out: &Path, seed: Option<u64>) -> bool 
         .zip(folder::names(&given.recordings))
     {
         let shown = name.display().to_string();
-        match one(&recipe, path, given, &out.join(&name)) {
-            Ok(sheet) => rows.push(SummaryRow::of(&sheet, &shown)),
+        match one(&recipe, path, given, &out.join(&name), &shown) {
+            Ok(row) => rows.push(row),
             Err(problem) => {
                 let problem = problem.in_file(source::file_name(path));
                 say::problem(&problem);
-                rows.push(SummaryRow::failed(
-                    &source::file_name(path),
-                    &shown,
-                    &problem,
-                ));
                 fine = false;
+                let row = Row::failed(&source::file_name(path), &shown, &problem);
+                match write_failed(&row, &out.join(&name)) {
+                    Ok(row) => rows.push(row),
+                    Err(problem) => say::problem(&problem),
+                }
             }
         }
     }
     if given.recordings.len() > 1
-        && let Err(problem) = write_table(out, &rows)
+        && let Err(problem) = gather::write(out, rows)
     {
         say::problem(&problem);
         fine = false;
@@ -54,18 +55,28 @@ pub fn run(recipe: &Path, given: &Given, out: &Path, seed: Option<u64>) -> bool 
     fine
 }
 
-fn one(recipe: &Recipe, path: &Path, given: &Given, folder: &Path) -> Result<Sheet> {
+fn one(recipe: &Recipe, path: &Path, given: &Given, folder: &Path, shown: &str) -> Result<Row> {
     let mut meter = Meter::new(&source::file_name(path));
-    let recording = source::recording(path, given, &mut meter)?;
+    let recording = source::recording(path, given, &recipe.recording, &mut meter)?;
     let mut analysis = Analysis::new(recording, recipe.clone())?;
     analysis.run(|progress| meter.analysis(progress))?;
-    let files = files(analysis.sheet(), analysis.series())?;
+    let row = Row::of(analysis.sheet(), shown).json()?;
+    let mut files = files(analysis.sheet(), analysis.series())?;
+    files.push(("row.json".into(), row.clone().into()));
     folder::write(folder, &files)?;
     drop(meter);
     for warning in &analysis.sheet().warnings {
         say::note(&format!("{}: note: {warning}", source::file_name(path)));
     }
-    Ok(analysis.sheet().clone())
+    // As it is read again: the table is the same whether one process made all rows or each a process of its own.
+    Row::from_json(&row)
+}
+
+/// The row of a recording that could not be analysed stands where its results would, so that `gather` knows of it.
+fn write_failed(row: &Row, folder: &Path) -> Result<Row> {
+    let text = row.json()?;
+    folder::write(folder, &[("row.json".into(), text.clone().into())])?;
+    Row::from_json(&text)
 }
 
 /// Every file of one recording's folder.
@@ -98,14 +109,4 @@ fn files(sheet: &Sheet, series: Option<Series>) -> Result<Vec<(String, Vec<u8>)>
         }
     }
     Ok(files)
-}
-
-fn write_table(out: &Path, rows: &[SummaryRow]) -> Result<()> {
-    folder::write(
-        out,
-        &[
-            ("table.csv".into(), take::summary_csv(rows)?.into()),
-            ("table.json".into(), take::summary_json(rows)?.into()),
-        ],
-    )
 }

@@ -5,6 +5,7 @@ use std::fs::File;
 use std::io::{ErrorKind, Read, Seek, SeekFrom};
 use std::path::Path;
 use teasel_core::error::{Kind, Problem, Result};
+use teasel_core::recipe;
 use teasel_core::recording::{OpenOptions, Opening, Recording, SideFile, Source};
 
 /// The largest text file (recipe, weights) that is read whole, in bytes; the parsers have their own, smaller caps.
@@ -105,8 +106,14 @@ pub fn text(path: &Path) -> Result<String> {
     })
 }
 
-/// Opens a recording with its side files.
-pub fn recording(path: &Path, given: &Given, meter: &mut Meter) -> Result<Recording> {
+/// Opens a recording with its side files; `told` is what its own file does not carry.
+pub fn recording(
+    path: &Path,
+    given: &Given,
+    told: &recipe::Given,
+    meter: &mut Meter,
+) -> Result<Recording> {
+    recipe::given_check(told)?;
     let (file, length) = opened(path)?;
     let source = FileSource {
         name: file_name(path),
@@ -115,10 +122,17 @@ pub fn recording(path: &Path, given: &Given, meter: &mut Meter) -> Result<Record
     };
     let options = OpenOptions {
         salvage: given.salvage,
-        ..OpenOptions::default()
+        given: told.clone(),
     };
     let sides = sides(path, given)?;
     let hint = |mut problem: Problem| {
+        let options: Vec<&str> = problem.asks.iter().map(|ask| option(&ask.key)).collect();
+        if !options.is_empty() {
+            problem.advice = format!(
+                "tell it with {}, or in the recipe's \"recording\"",
+                options.join(" ")
+            );
+        }
         if let (Some(part), false) = (problem.salvage, given.salvage) {
             let records = match part.records {
                 1 => "1 whole record".to_string(),
@@ -137,6 +151,16 @@ pub fn recording(path: &Path, given: &Given, meter: &mut Meter) -> Result<Record
         meter.reading(done, of);
     }
     opening.finish().map_err(hint)
+}
+
+/// The option that answers a question.
+fn option(key: &str) -> &'static str {
+    match key {
+        "rate_hz" => "--rate HZ",
+        "unit" => "--unit UNIT",
+        "axes" => "--axes AXES",
+        _ => "--array NAME",
+    }
 }
 
 /// The recording's table of events under its BIDS name: `sub-01_task-watch_eeg.edf` → `sub-01_task-watch_events.tsv`.

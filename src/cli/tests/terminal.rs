@@ -319,6 +319,7 @@ fn bad_recordings_are_one_line_each_and_the_others_still_run() {
                 .path()
                 .join("out")
                 .join(file.trim_end_matches(".edf"))
+                .join("results.json")
                 .exists(),
             "{file}"
         );

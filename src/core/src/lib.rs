@@ -22,6 +22,7 @@ pub mod demo;
 pub mod describe;
 pub mod error;
 pub mod evidence;
+mod fourier;
 pub mod prepare;
 pub mod recipe;
 pub mod recording;

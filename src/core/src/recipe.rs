@@ -2,9 +2,13 @@
 //!
 //! Unknown keys are errors, every key is optional but `teasel_recipe` and `contrast`.
 mod check;
+mod contrast;
 
 pub(crate) use check::WHOLE_MAX;
-pub use check::recipe_check;
+pub use check::{given_check, recipe_check};
+pub use contrast::{
+    BandReference, Contrast, ContrastKind, EventWindow, HoldBack, REST, Spans, Within,
+};
 use serde::{Deserialize, Serialize};
 
 /// All choices.
@@ -30,6 +34,12 @@ pub struct Recipe {
     pub measure: Measure,
     /// The question.
     pub contrast: Contrast,
+    /// Stretches of time in seconds on the recording's clock that no window may touch.
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    pub not_used: Vec<[f64; 2]>,
+    /// What is locked away at the end.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub hold_back: Option<HoldBack>,
     /// γ for total, ρ for typical.
     #[serde(default)]
     pub shrink: Shrink,
@@ -42,7 +52,7 @@ pub struct Recipe {
 }
 
 impl Recipe {
-    /// Everything else at its default.
+    /// Everything else at its default, which for `measure` is that of the kind ([`Contrast::usual_measure`]).
     pub fn asking(contrast: Contrast) -> Self {
         Recipe {
             teasel_recipe: 1,
@@ -50,8 +60,10 @@ impl Recipe {
             channels: Channels::default(),
             filter: Filter::default(),
             keep: Keep::default(),
-            measure: Measure::default(),
+            measure: contrast.usual_measure(),
             contrast,
+            not_used: Vec::new(),
+            hold_back: None,
             shrink: Shrink::default(),
             components: four(),
             evidence: Evidence::default(),
@@ -86,6 +98,16 @@ impl Given {
     pub fn is_empty(&self) -> bool {
         *self == Given::default()
     }
+    /// What is told here, and from `less_sure` what is not.
+    #[must_use]
+    pub fn or(self, less_sure: Given) -> Given {
+        Given {
+            rate_hz: self.rate_hz.or(less_sure.rate_hz),
+            unit: self.unit.or(less_sure.unit),
+            axes: self.axes.or(less_sure.axes),
+            variable: self.variable.or(less_sure.variable),
+        }
+    }
 }
 
 /// What the axes of an array are, in the order of its sizes as the file writes them.
@@ -103,6 +125,25 @@ pub enum Axes {
     /// Time along the last axis of a movie.
     #[serde(rename = "height,width,frames")]
     HeightWidthFrames,
+}
+
+impl Axes {
+    /// All of them.
+    pub const ALL: [Axes; 4] = [
+        Axes::ChannelsSamples,
+        Axes::SamplesChannels,
+        Axes::FramesHeightWidth,
+        Axes::HeightWidthFrames,
+    ];
+    /// As it is written in a recipe.
+    pub fn name(self) -> &'static str {
+        match self {
+            Axes::ChannelsSamples => "channels,samples",
+            Axes::SamplesChannels => "samples,channels",
+            Axes::FramesHeightWidth => "frames,height,width",
+            Axes::HeightWidthFrames => "height,width,frames",
+        }
+    }
 }
 
 /// Which channels, against which reference.
@@ -221,31 +262,6 @@ pub enum ShrinkWord {
     LedoitWolf,
     /// Chen et al. 2010 as scikit-learn has it (total only).
     Oas,
-}
-
-/// The question. Only `windows` is computed by this version; the other kinds are reserved.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
-#[serde(tag = "kind", rename_all = "kebab-case", deny_unknown_fields)]
-pub enum Contrast {
-    /// Event windows against event windows.
-    Windows {
-        /// Windows of interest (S).
-        signal: EventWindow,
-        /// Windows they are compared with (R).
-        reference: EventWindow,
-    },
-}
-
-/// `[onset + from, onset + to)` around every event of one label.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
-#[serde(deny_unknown_fields)]
-pub struct EventWindow {
-    /// Label of the event.
-    pub event: String,
-    /// Start, relative to the onset.
-    pub from_s: f64,
-    /// End, relative to the onset.
-    pub to_s: f64,
 }
 
 /// Folds, permutations, bootstrap, seed.

@@ -197,7 +197,7 @@ pub struct KeepCurve {
 }
 
 /// One component: a spatial filter and everything known about it.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
 pub struct Component {
     /// Ratio in a typical trial.
     pub typical: TypicalRatio,
@@ -230,7 +230,7 @@ pub struct Component {
 }
 
 /// Ratio in a typical trial: exp of the mean log ratio.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
 pub struct TypicalRatio {
     /// On the windows it was fitted to.
     pub fitted: f64,
@@ -241,7 +241,7 @@ pub struct TypicalRatio {
 }
 
 /// Ratio of pooled variances.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
 pub struct TotalRatio {
     /// On the windows it was fitted to.
     pub fitted: f64,

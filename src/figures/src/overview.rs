@@ -83,8 +83,8 @@ impl Overview {
                 onsets_s: onsets.iter().copied().filter(|t| t.is_finite()).collect(),
             })
             .collect();
-        let teasel_core::recipe::Contrast::Windows { signal, reference } = &sheet.recipe.contrast;
-        let asked = |lane: &Lane| lane.label == signal.event || lane.label == reference.event;
+        let named = sheet.recipe.contrast.around();
+        let asked = |lane: &Lane| named.iter().any(|w| w.labels().any(|l| l == lane.label));
         lanes.sort_by_key(|lane| (!asked(lane), std::cmp::Reverse(lane.onsets_s.len())));
         let more = lanes.len().saturating_sub(LANES);
         lanes.truncate(LANES);

@@ -51,11 +51,7 @@ pub fn sheet(channels: usize, trials: usize) -> Sheet {
     let swell: Vec<f64> = (0..20)
         .map(|i| 8.0 + 225.0 * (i as f64 + 0.6 * chance.even()) / 20.0)
         .collect();
-    let window = |from_s, to_s| EventWindow {
-        event: "buoy".into(),
-        from_s,
-        to_s,
-    };
+    let window = |from_s, to_s| EventWindow::new("buoy", from_s, to_s);
     let mut stronger: Vec<Component> = [
         (2.83, 0.004, 21.0, "CP1"),
         (1.69, 0.034, 21.0, "C4"),

@@ -36,6 +36,34 @@ impl Table {
     }
 }
 
+/// The numbers behind a figure as a CSV file; a text that a spreadsheet would take for a formula is kept as text.
+pub fn csv(figure: &crate::Figure) -> String {
+    let table = crate::table(figure);
+    let line = |cells: &[String]| cells.iter().map(|c| field(c)).collect::<Vec<_>>().join(",");
+    let rows = table.rows.iter().map(|row| line(row));
+    let mut text: String = std::iter::once(line(&table.columns))
+        .chain(rows)
+        .collect::<Vec<_>>()
+        .join("\n");
+    text.push('\n');
+    text
+}
+
+/// One cell (RFC 4180); numbers stay numbers.
+fn field(cell: &str) -> String {
+    let risky = cell.starts_with(['=', '+', '-', '@', '\t', '\r', '\0']);
+    let cell = if risky && cell.parse::<f64>().is_err() {
+        format!("'{cell}")
+    } else {
+        cell.to_owned()
+    };
+    if cell.contains(['"', ',', '\n', '\r']) {
+        format!("\"{}\"", cell.replace('"', "\"\""))
+    } else {
+        cell
+    }
+}
+
 /// A number, or nothing where it is not one.
 pub(crate) fn cell(value: f64) -> String {
     if value.is_finite() {

@@ -120,7 +120,9 @@ fn names_from_a_file_cannot_leave_their_place() {
     for comparator in &mut sheet.compare {
         comparator.chosen = Some(hostile[4].into());
     }
-    let Contrast::Windows { signal, reference } = &mut sheet.recipe.contrast;
+    let Contrast::Windows { signal, reference } = &mut sheet.recipe.contrast else {
+        panic!("a contrast of event windows")
+    };
     (signal.event, reference.event) = (hostile[2].into(), hostile[0].into());
     for (i, name) in hostile.iter().enumerate() {
         sheet
@@ -248,7 +250,9 @@ fn plot_boxes_say_where_the_axes_were_drawn() {
 #[test]
 fn the_times_of_windows_that_touch_stand_side_by_side() {
     let mut sheet = sample::sheet(32, 40);
-    let Contrast::Windows { signal, reference } = &mut sheet.recipe.contrast;
+    let Contrast::Windows { signal, reference } = &mut sheet.recipe.contrast else {
+        panic!("a contrast of event windows")
+    };
     (signal.from_s, reference.to_s) = (0.0, 0.0);
     let text = drawn(&from_sheet(&sheet, "windows").unwrap(), 888);
     let document = roxmltree::Document::parse(&text).unwrap();
@@ -269,7 +273,9 @@ fn the_times_of_windows_that_touch_stand_side_by_side() {
 #[test]
 fn windows_of_two_events_stand_one_above_the_other() {
     let mut sheet = sample::sheet(32, 40);
-    let Contrast::Windows { reference, .. } = &mut sheet.recipe.contrast;
+    let Contrast::Windows { reference, .. } = &mut sheet.recipe.contrast else {
+        panic!("a contrast of event windows")
+    };
     (reference.event, reference.from_s, reference.to_s) = ("swell".into(), 0.2, 1.0);
     let figure = from_sheet(&sheet, "windows").unwrap();
     let text = drawn(&figure, 888);

@@ -7,7 +7,6 @@ use crate::table::Table;
 use crate::{Plot, text};
 use plotters_backend::DrawingBackend;
 use serde::{Deserialize, Serialize};
-use teasel_core::recipe::Contrast;
 use teasel_core::sheet::{Component, Sheet};
 
 const LEFT: f64 = 42.0;
@@ -36,11 +35,17 @@ impl Trials {
         if image.t_s.len() < 2 || image.db.is_empty() {
             return None;
         }
-        let Contrast::Windows { signal, reference } = &sheet.recipe.contrast;
-        let windows = (signal.event == reference.event).then_some([
-            [reference.from_s, reference.to_s],
-            [signal.from_s, signal.to_s],
-        ]);
+        let windows = sheet
+            .recipe
+            .contrast
+            .event_windows()
+            .filter(|(signal, reference)| signal.event == reference.event)
+            .map(|(signal, reference)| {
+                [
+                    [reference.from_s, reference.to_s],
+                    [signal.from_s, signal.to_s],
+                ]
+            });
         let mut sizes: Vec<f32> = image
             .db
             .iter()

@@ -8,7 +8,7 @@ use std::mem;
 use teasel_core::analysis::{self, Analysis, Progress, Proposal, Stage};
 use teasel_core::demo;
 use teasel_core::error::{Kind, Problem};
-use teasel_core::recipe::Recipe;
+use teasel_core::recipe::{Given, Recipe, given_check};
 use teasel_core::recording::{OpenOptions, Opening, Recording, SideFile};
 use teasel_core::sheet::Sheet;
 use teasel_core::takeaway::readings;
@@ -22,6 +22,8 @@ pub struct Session {
     state: State,
     /// The question that a demo brings along.
     brought: Option<Proposal>,
+    /// What was told of the recording.
+    given: Given,
 }
 
 #[derive(Default)]
@@ -61,7 +63,7 @@ impl Session {
     }
 
     /// Reads a recording's header; `step` reads the rest. `read` is `(offset, length) => Uint8Array`, synchronous; `sides` is
-    /// `[{name, bytes}]`; `salvage` opens the whole records before a cut.
+    /// `[{name, bytes}]`; `salvage` opens the whole records before a cut; `given` is a recipe's `recording`.
     pub fn begin(
         &mut self,
         name: String,
@@ -69,6 +71,7 @@ impl Session {
         read: Function,
         sides: JsValue,
         salvage: bool,
+        given: JsValue,
     ) -> Outcome<()> {
         self.state = State::Empty;
         self.brought = None;
@@ -80,13 +83,15 @@ impl Session {
                 bytes: side.bytes,
             })
             .collect();
+        self.given = from_js(given)?;
+        given_check(&self.given).map_err(thrown)?;
         let source = JsSource::new(name, bytes, read);
         let opening = Opening::begin(
             Box::new(source),
             sides,
             OpenOptions {
                 salvage,
-                ..OpenOptions::default()
+                given: self.given.clone(),
             },
         );
         self.state = State::Opening(Box::new(opening.map_err(thrown)?));
@@ -117,7 +122,11 @@ impl Session {
     pub fn propose(&self) -> Outcome<JsValue> {
         let recording = self.recording()?;
         let proposal = self.brought.clone();
-        to_js(&proposal.or_else(|| analysis::propose(recording)))
+        let mut proposal = proposal.or_else(|| analysis::propose(recording));
+        if let Some(proposal) = &mut proposal {
+            proposal.recipe.recording = self.given.clone();
+        }
+        to_js(&proposal)
     }
 
     /// Takes a recipe; what it makes stale is computed by the steps that follow. On a problem nothing changes.

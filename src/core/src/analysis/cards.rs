@@ -9,7 +9,7 @@ use crate::evidence::heldout::{
 };
 use crate::evidence::permute::{null_hypothesis, p_value};
 use crate::prepare::Prepared;
-use crate::recipe::{Contrast, Keep, KeepWord, Recipe};
+use crate::recipe::{Keep, KeepWord, Recipe};
 use crate::recording::Recording;
 use crate::sheet::{
     Comparator, ComparatorKind, Component, CompressionCard, End, FoldCard, Permutation,
@@ -711,7 +711,7 @@ fn disagreement(work: &Work) -> Option<String> {
 
 /// Says when a window is short against the longest filter.
 fn edge_warning(prepared: &Prepared, recipe: &Recipe) -> Option<String> {
-    let Contrast::Windows { signal, reference } = &recipe.contrast;
+    let (signal, reference) = recipe.contrast.event_windows()?;
     let shortest = (signal.to_s - signal.from_s).min(reference.to_s - reference.from_s);
     let filter = prepared.card.longest_filter_s;
     (filter > 5.0 * shortest).then(|| {

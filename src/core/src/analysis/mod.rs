@@ -19,7 +19,7 @@ use crate::recording::Recording;
 use crate::sheet::Sheet;
 pub use propose::{Proposal, propose};
 use serde::{Deserialize, Serialize};
-pub use summary::{Summary, fits, summary};
+pub use summary::{Summary, blank, fits, summary};
 use work::Work;
 
 /// What a step is about.

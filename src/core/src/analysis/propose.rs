@@ -52,11 +52,7 @@ pub fn propose(recording: &Recording) -> Option<Proposal> {
     if !fits {
         return None;
     }
-    let window = |from_s: f64, to_s: f64| EventWindow {
-        event: (*label).to_owned(),
-        from_s,
-        to_s,
-    };
+    let window = |from_s: f64, to_s: f64| EventWindow::new(*label, from_s, to_s);
     let high_pass = (recording.rate_hz >= HIGH_PASS_FROM_RATE_HZ).then_some(1.0);
     let length = if d >= 1.0 {
         "1 s, as the gaps between them allow".to_owned()
@@ -113,7 +109,7 @@ mod tests {
     fn half_the_shortest_gap_bounds_the_windows() {
         let onsets: Vec<f64> = (0..12).map(|i| f64::from(i) * 1.5).collect();
         let proposal = propose(&recording(&onsets)).unwrap();
-        let Contrast::Windows { signal, reference } = proposal.recipe.contrast;
+        let (signal, reference) = proposal.recipe.contrast.event_windows().unwrap();
         assert_eq!(
             (signal.from_s, signal.to_s, reference.from_s, reference.to_s),
             (0.0, 0.75, -0.75, 0.0)

@@ -4,7 +4,7 @@ use crate::error::Result;
 use crate::prepare::inspect;
 use crate::recipe::{Contrast, EventWindow, Recipe};
 use crate::recording::Recording;
-use crate::sheet::{ChannelCard, RecordingCard};
+use crate::sheet::{ChannelCard, RecordingCard, Sheet};
 use serde::Serialize;
 
 /// The recording and its channels.
@@ -33,14 +33,14 @@ pub fn fits(recording: &Recording, recipe: &Recipe) -> Result<()> {
     check_recipe(recipe, recording)
 }
 
+/// A sheet that knows a recording and a recipe, and no result.
+pub fn blank(recording: &Recording, recipe: &Recipe) -> Sheet {
+    cards::begin(recording, recipe)
+}
+
 fn no_contrast() -> Recipe {
-    let none = || EventWindow {
-        event: String::new(),
-        from_s: 0.0,
-        to_s: 0.0,
-    };
     Recipe::asking(Contrast::Windows {
-        signal: none(),
-        reference: none(),
+        signal: EventWindow::default(),
+        reference: EventWindow::default(),
     })
 }

@@ -12,7 +12,7 @@ use crate::evidence::heldout::{
 };
 use crate::evidence::permute::{Plan, STREAM_DESCRIBE, arrangement, plan};
 use crate::prepare::{Prepared, Preparing, inspect};
-use crate::recipe::{Contrast, Keep, KeepWord, Measure, Recipe, Shrink, ShrinkWord};
+use crate::recipe::{Keep, KeepWord, Measure, Recipe, Shrink, ShrinkWord};
 use crate::recording::Recording;
 use crate::sheet::{ChannelCard, End, KeepCurve, Sheet};
 use std::collections::BTreeMap;
@@ -602,7 +602,9 @@ impl Work {
         } else {
             &mut self.sheet.weaker[index]
         };
-        let Contrast::Windows { signal, reference } = &recipe.contrast;
+        let Some((signal, reference)) = recipe.contrast.event_windows() else {
+            return Ok(());
+        };
         let rate = prepared.rate_hz;
         let span = course_span(
             signal.event == reference.event,

@@ -84,7 +84,9 @@ pub fn sample_at(stretches: &[Stretch], rate_hz: f64, at_s: f64) -> Option<usize
 
 /// Refuses labels that the recording does not hold and windows without length.
 pub fn check(contrast: &Contrast, events: &[Event], rate_hz: f64) -> Result<()> {
-    let Contrast::Windows { signal, reference } = contrast;
+    let Contrast::Windows { signal, reference } = contrast else {
+        return Err(not_yet());
+    };
     for (side, window) in [("signal", signal), ("reference", reference)] {
         if !events.iter().any(|e| e.label == window.event) {
             let mut known: BTreeMap<&str, usize> = BTreeMap::new();
@@ -134,7 +136,9 @@ pub fn select(
     rate_hz: f64,
 ) -> Result<Selection> {
     check(contrast, events, rate_hz)?;
-    let Contrast::Windows { signal, reference } = contrast;
+    let Contrast::Windows { signal, reference } = contrast else {
+        return Err(not_yet());
+    };
     let selection = if signal.event == reference.event {
         paired(signal, reference, events, stretches, rate_hz)
     } else {
@@ -142,6 +146,14 @@ pub fn select(
     };
     selection.enough()?;
     Ok(selection)
+}
+
+fn not_yet() -> Problem {
+    Problem::new(
+        Kind::Contrast,
+        "this kind of contrast is read, and not computed yet",
+        "choose windows around events",
+    )
 }
 
 fn side_card(count: usize, rate_hz: f64) -> SideCard {
@@ -453,16 +465,8 @@ mod tests {
     }
     fn contrast(s: &str, from: f64, to: f64, r: &str, from_r: f64, to_r: f64) -> Contrast {
         Contrast::Windows {
-            signal: EventWindow {
-                event: s.into(),
-                from_s: from,
-                to_s: to,
-            },
-            reference: EventWindow {
-                event: r.into(),
-                from_s: from_r,
-                to_s: to_r,
-            },
+            signal: EventWindow::new(s, from, to),
+            reference: EventWindow::new(r, from_r, to_r),
         }
     }
 

@@ -106,11 +106,7 @@ fn recording(names: Vec<String>, samples: Vec<Vec<f32>>, events: Vec<Event>) -> 
 }
 
 fn recipe() -> Recipe {
-    let window = |from_s, to_s| EventWindow {
-        event: "buoy".to_owned(),
-        from_s,
-        to_s,
-    };
+    let window = |from_s, to_s| EventWindow::new("buoy", from_s, to_s);
     Recipe {
         filter: Filter {
             high_pass_hz: Some(1.0),

@@ -19,7 +19,7 @@ pub(super) fn counts(repetitions: usize, samples: usize, seed: u64) -> DMatrix<f
 
 /// Means of the columns of `values` (`repetitions × columns`) and their 95 % percentile intervals: mean, low, high.
 /// Without samples, or with fewer than two repetitions, the interval is the mean itself.
-pub(super) fn means(values: &DMatrix<f64>, samples: usize, seed: u64) -> [Vec<f64>; 3] {
+pub(crate) fn means(values: &DMatrix<f64>, samples: usize, seed: u64) -> [Vec<f64>; 3] {
     let n = values.nrows() as f64;
     let mean: Vec<f64> = values.column_iter().map(|c| c.sum() / n).collect();
     if samples == 0 || values.nrows() < 2 {

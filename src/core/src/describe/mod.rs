@@ -7,7 +7,7 @@
 //!
 //! Intervals are percentile bootstrap intervals over windows or trials (Efron & Tibshirani 1993, *An Introduction to the Bootstrap*,
 //! section 13.3), seeded: the same seed gives the same bytes.
-mod bootstrap;
+pub(crate) mod bootstrap;
 pub mod course;
 pub mod map;
 pub mod positions;

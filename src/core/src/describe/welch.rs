@@ -3,19 +3,18 @@
 //! # Normalisation
 //! One-sided density, unit² / Hz: Σ density · bin width is the variance about the segments' means. Periodic Hann window, half overlap, each
 //! segment's mean removed, segments averaged; an incomplete last segment is dropped.
-use realfft::{RealFftPlanner, RealToComplex, num_complex::Complex};
+use crate::fourier::RealTransform;
+use rustfft::num_complex::Complex;
 use std::f64::consts::PI;
-use std::sync::Arc;
 
 /// A planned estimate: periodic Hann window, half overlap, constant detrend a segment, one-sided density (unit²/Hz).
 pub struct Welch {
     segment: usize,
     rate_hz: f64,
     taper: Vec<f64>,
-    fft: Arc<dyn RealToComplex<f64>>,
+    fft: RealTransform,
     input: Vec<f64>,
     output: Vec<Complex<f64>>,
-    scratch: Vec<Complex<f64>>,
 }
 
 impl std::fmt::Debug for Welch {
@@ -41,14 +40,13 @@ impl Welch {
     /// Plans for segments of `segment` samples (at least 2 are used) at `rate_hz`.
     pub fn new(segment: usize, rate_hz: f64) -> Self {
         let segment = segment.max(2);
-        let fft = RealFftPlanner::new().plan_fft_forward(segment);
+        let fft = RealTransform::new(segment);
         Welch {
             segment,
             rate_hz,
             taper: hann(segment),
-            input: fft.make_input_vec(),
-            output: fft.make_output_vec(),
-            scratch: fft.make_scratch_vec(),
+            input: vec![0.0; segment],
+            output: vec![Complex::default(); fft.bins()],
             fft,
         }
     }
@@ -100,10 +98,6 @@ impl Welch {
             *slot = (value - mean) * weight;
         }
         self.input[part.len()..].fill(0.0);
-        // Cannot fail: all three buffers were made by the plan itself.
-        let done =
-            self.fft
-                .process_with_scratch(&mut self.input, &mut self.output, &mut self.scratch);
-        debug_assert!(done.is_ok());
+        self.fft.transform(&self.input, &mut self.output);
     }
 }

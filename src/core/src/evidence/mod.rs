@@ -6,6 +6,7 @@
 pub mod bootstrap;
 pub mod heldout;
 pub mod permute;
+pub mod signflip;
 
 /// Under this many pairs (or windows a side) p and held-out ratios are withheld.
 pub const FEWEST: usize = 10;

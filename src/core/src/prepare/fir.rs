@@ -10,9 +10,9 @@
 //! # Edges
 //! A signal is continued by its mirror image, the edge sample not repeated (`x₂ x₁ | x₀ x₁ x₂`); one shorter than the continuation is
 //! mirrored again and again.
-use realfft::{ComplexToReal, RealFftPlanner, RealToComplex, num_complex::Complex};
+use crate::fourier::RealTransform;
+use rustfft::num_complex::Complex;
 use std::f64::consts::PI;
-use std::sync::Arc;
 
 /// Where a window or a mirrored signal of `length` samples is read for any index: mirrored at both ends, ends not repeated.
 pub(super) fn mirrored(index: isize, length: usize) -> usize {
@@ -188,14 +188,12 @@ pub fn in_a_row(filters: &[Vec<f64>]) -> Option<Vec<f64>> {
 pub struct ZeroPhase {
     taps: usize,
     block: usize,
-    forward: Arc<dyn RealToComplex<f64>>,
-    backward: Arc<dyn ComplexToReal<f64>>,
+    fft: RealTransform,
     /// Spectrum of the taps, divided by the block length.
     response: Vec<Complex<f64>>,
     padded: Vec<f64>,
     time: Vec<f64>,
     spectrum: Vec<Complex<f64>>,
-    scratch: [Vec<Complex<f64>>; 2],
 }
 
 impl std::fmt::Debug for ZeroPhase {
@@ -208,26 +206,21 @@ impl ZeroPhase {
     /// Plans for these taps and signals of about `samples`.
     pub fn new(taps: &[f64], samples: usize) -> Self {
         let block = block_for(taps.len(), samples);
-        let mut planner = RealFftPlanner::new();
-        let (forward, backward) = (
-            planner.plan_fft_forward(block),
-            planner.plan_fft_inverse(block),
-        );
+        let fft = RealTransform::new(block);
+        let none = vec![Complex::default(); fft.bins()];
         let mut plan = ZeroPhase {
             taps: taps.len(),
             block,
-            response: forward.make_output_vec(),
+            response: none.clone(),
             padded: Vec::new(),
-            time: forward.make_input_vec(),
-            spectrum: forward.make_output_vec(),
-            scratch: [forward.make_scratch_vec(), backward.make_scratch_vec()],
-            forward,
-            backward,
+            time: vec![0.0; block],
+            spectrum: none,
+            fft,
         };
         for (slot, tap) in plan.time.iter_mut().zip(taps) {
             *slot = tap / block as f64;
         }
-        plan.transform();
+        plan.fft.transform(&plan.time, &mut plan.spectrum);
         plan.response.copy_from_slice(&plan.spectrum);
         plan
     }
@@ -255,36 +248,14 @@ impl ZeroPhase {
             let filled = rest.len().min(self.block);
             self.time[..filled].copy_from_slice(&rest[..filled]);
             self.time[filled..].fill(0.0);
-            self.transform();
+            self.fft.transform(&self.time, &mut self.spectrum);
             for (value, gain) in self.spectrum.iter_mut().zip(&self.response) {
                 *value *= gain;
             }
-            self.transform_back();
+            self.fft.transform_back(&self.spectrum, &mut self.time);
             let fresh = step.min(count - out.len());
             out.extend_from_slice(&self.time[self.taps - 1..self.taps - 1 + fresh]);
         }
-    }
-    fn transform(&mut self) {
-        // Cannot fail: all buffers were made by the plan itself.
-        let done = self.forward.process_with_scratch(
-            &mut self.time,
-            &mut self.spectrum,
-            &mut self.scratch[0],
-        );
-        debug_assert!(done.is_ok());
-    }
-    fn transform_back(&mut self) {
-        // A real signal's spectrum is real at 0 and Nyquist; rounding in the product may leave a trace that the plan refuses.
-        if let [first, .., last] = self.spectrum.as_mut_slice() {
-            first.im = 0.0;
-            last.im = 0.0;
-        }
-        let done = self.backward.process_with_scratch(
-            &mut self.spectrum,
-            &mut self.time,
-            &mut self.scratch[1],
-        );
-        debug_assert!(done.is_ok());
     }
 }
 

@@ -1,13 +1,22 @@
 //! Ranges of a recipe's values, whatever the recording.
-use super::{Contrast, Keep, KeepWord, Measure, Recipe, Reference, Shrink, ShrinkWord};
+use super::{
+    BandReference, Contrast, EventWindow, Given, Keep, KeepWord, Measure, Recipe, Reference,
+    Shrink, ShrinkWord, Spans, Within,
+};
 use crate::error::{Kind, Problem, Result};
 
 /// The largest whole number that every reader of JSON keeps exactly: 2^53 − 1.
 pub(crate) const WHOLE_MAX: f64 = 9_007_199_254_740_991.0;
 
+/// The highest sampling rate that can be told.
+const HIGHEST_RATE_HZ: f64 = 1e7;
+
 /// A choice of the recipe as one speaks of it.
 fn in_words(path: &str) -> &'static str {
     match path {
+        "recording.rate_hz" => "the sampling rate of the recording",
+        "recording.unit" => "the unit of the recording",
+        "recording.variable" => "the name of the array",
         "channels.reference" => "the reference",
         "filter.high_pass_hz" => "the high-pass",
         "filter.low_pass_hz" => "the low-pass",
@@ -17,6 +26,18 @@ fn in_words(path: &str) -> &'static str {
         "shrink" => "the shrinkage",
         "components" => "the number of components",
         "contrast.signal.event" => "the event of the signal windows",
+        "contrast.event" | "contrast.within.event" => "the event of the windows",
+        "contrast.from_s" | "contrast.within.from_s" => "the start of the windows",
+        "contrast.to_s" | "contrast.within.to_s" => "the end of the windows",
+        "contrast.signal" => "the signal spans",
+        "contrast.reference" => "the reference spans",
+        "contrast.within" => "the spans looked into",
+        "contrast.piece_s" => "the length of the pieces",
+        "contrast.lag_s" => "the lag",
+        "contrast.centre_hz" => "the centre of the band",
+        "contrast.half_width_hz" => "the half width of the band",
+        "not_used" => "what is marked as not to be used",
+        "hold_back.last" => "the share that is locked away",
         "contrast.reference.event" => "the event of the reference windows",
         "contrast.signal.from_s" => "the start of the signal windows",
         "contrast.signal.to_s" => "the end of the signal windows",
@@ -71,10 +92,22 @@ pub fn recipe_check(recipe: &Recipe) -> Result<()> {
         .at("teasel_recipe")
         .expected_found(1, recipe.teasel_recipe));
     }
+    given_check(&recipe.recording)?;
     check_keep(recipe.keep)?;
     check_best(recipe)?;
     check_filter(recipe)?;
     check_contrast(&recipe.contrast)?;
+    check_measure(recipe)?;
+    check_spans("not_used", &recipe.not_used)?;
+    if let Some(hold) = recipe.hold_back
+        && !(0.05..=0.5).contains(&hold.last)
+    {
+        return Err(out(
+            "hold_back.last",
+            "a share from 0.05 to 0.5 of the recording",
+            hold.last,
+        ));
+    }
     check_shrink(recipe.shrink, recipe.measure)?;
     within("components", recipe.components, 1, 20)?;
     let evidence = &recipe.evidence;
@@ -94,6 +127,39 @@ pub fn recipe_check(recipe: &Recipe) -> Result<()> {
             "at least one channel name",
             "an empty list",
         ));
+    }
+    Ok(())
+}
+
+/// Checks what is told of a recording: a rate above 0 and up to 10 MHz; a unit of 1–20 characters and a name of 1–200, none of
+/// them a control character. The error's place is the path in a recipe: `recording.rate_hz`.
+pub fn given_check(given: &Given) -> Result<()> {
+    match given.rate_hz {
+        Some(hz) if !(hz > 0.0 && hz <= HIGHEST_RATE_HZ) => Err(out(
+            "recording.rate_hz",
+            format!("a number of Hz above 0, at most {HIGHEST_RATE_HZ}"),
+            hz,
+        )),
+        _ => Ok(()),
+    }?;
+    let texts = [
+        ("recording.unit", &given.unit, 20),
+        ("recording.variable", &given.variable, 200),
+    ];
+    for (path, text, most) in texts {
+        let Some(text) = text else { continue };
+        let count = text.chars().count();
+        let blank = text.trim().is_empty() || text.chars().any(char::is_control);
+        if blank || count > most {
+            return Err(out(
+                path,
+                format!("a text of 1 to {most} characters on one line"),
+                match blank {
+                    true => "none, or one with control characters".to_owned(),
+                    false => format!("{count} characters"),
+                },
+            ));
+        }
     }
     Ok(())
 }
@@ -156,34 +222,229 @@ fn check_filter(recipe: &Recipe) -> Result<()> {
     }
 }
 
+/// Longest piece, lag and window, either way, in seconds.
+const LONGEST_S: f64 = 1e6;
+/// Most spans of one list.
+const MOST_SPANS: usize = 100_000;
+
 fn check_contrast(contrast: &Contrast) -> Result<()> {
-    let Contrast::Windows { signal, reference } = contrast;
-    for (side, window) in [("signal", signal), ("reference", reference)] {
-        for (key, value) in [("from_s", window.from_s), ("to_s", window.to_s)] {
-            if !value.is_finite() || value.abs() > 1e6 {
+    match contrast {
+        Contrast::Windows { signal, reference } => {
+            check_window("contrast.signal", signal)?;
+            check_window("contrast.reference", reference)
+        }
+        Contrast::Spans {
+            signal,
+            reference,
+            piece_s,
+        } => {
+            if signal.is_rest() {
                 return Err(out(
-                    &format!("contrast.{side}.{key}"),
-                    "a number of seconds from −1000000 to 1000000",
-                    value,
+                    "contrast.signal",
+                    "spans or the label of annotations (\"rest\" is everything that is not signal; the pattern \"rest*\" reaches annotations of that name)",
+                    "the word rest",
                 ));
             }
+            check_spans_of("contrast.signal", signal)?;
+            check_spans_of("contrast.reference", reference)?;
+            check_piece(*piece_s)
         }
-        if window.from_s >= window.to_s {
-            return Err(out(
-                &format!("contrast.{side}.to_s"),
-                format!("a time after their start, {} s", window.from_s),
-                window.to_s,
-            ));
+        Contrast::Band {
+            centre_hz,
+            half_width_hz,
+            reference,
+            within,
+            piece_s,
+        } => {
+            check_band(*centre_hz, *half_width_hz, *reference)?;
+            check_within(within.as_ref())?;
+            check_piece(*piece_s)
         }
-        if window.event.is_empty() {
+        Contrast::Repeatable(window) => {
+            check_window("contrast", window)?;
+            check_alone(
+                "contrast",
+                window,
+                "what repeats is averaged over windows of one length",
+            )
+        }
+        Contrast::Slow {
+            lag_s,
+            within,
+            piece_s,
+        } => {
+            let fits = *lag_s > 0.0 && *lag_s <= 3600.0;
+            if !fits {
+                return Err(out(
+                    "contrast.lag_s",
+                    "a number of seconds above 0 and up to 3600",
+                    lag_s,
+                ));
+            }
+            check_within(within.as_ref())?;
+            check_piece(*piece_s)
+        }
+    }
+}
+
+fn check_window(path: &str, window: &EventWindow) -> Result<()> {
+    for (key, value) in [("from_s", window.from_s), ("to_s", window.to_s)] {
+        if !value.is_finite() || value.abs() > LONGEST_S {
             return Err(out(
-                &format!("contrast.{side}.event"),
-                "the label of an event",
-                "an empty text",
+                &format!("{path}.{key}"),
+                "a number of seconds from −1000000 to 1000000",
+                value,
             ));
         }
     }
-    Ok(())
+    // With `until` the two ends belong to different events, so that their order is known only trial by trial.
+    if window.from_s >= window.to_s && window.until.is_none() {
+        return Err(out(
+            &format!("{path}.to_s"),
+            format!("a time after their start, {} s", window.from_s),
+            window.to_s,
+        ));
+    }
+    let mut labels = window.labels().chain(window.until.as_deref());
+    if labels.any(str::is_empty) {
+        return Err(out(
+            &format!("{path}.event"),
+            "the label of an event",
+            "an empty text",
+        ));
+    }
+    within(&format!("{path}.also"), window.also.len(), 0, 1000)?;
+    within(
+        &format!("{path}.leave_out"),
+        window.leave_out.len(),
+        0,
+        MOST_SPANS,
+    )?;
+    let counted = [("first", window.first), ("last", window.last)];
+    for (key, value) in counted {
+        within(&format!("{path}.{key}"), value.unwrap_or(1), 1, MOST_SPANS)?;
+    }
+    match window.leave_out.iter().find(|n| **n == 0) {
+        Some(_) => Err(out(
+            &format!("{path}.leave_out"),
+            "numbers of events, from 1",
+            0,
+        )),
+        None => Ok(()),
+    }
+}
+
+/// Keys of a window that make sense only beside another side.
+fn check_alone(path: &str, window: &EventWindow, why: &str) -> Result<()> {
+    let key = match (&window.until, window.equal) {
+        (Some(_), _) => "until",
+        (None, true) => "equal",
+        (None, false) => return Ok(()),
+    };
+    Err(Problem::new(
+        Kind::Recipe,
+        format!("the key \"{key}\" has no meaning here: {why}"),
+        "take it out of the recipe",
+    )
+    .at(format!("{path}.{key}")))
+}
+
+fn check_spans_of(path: &str, spans: &Spans) -> Result<()> {
+    match spans {
+        Spans::Times(times) if times.is_empty() => {
+            Err(out(path, "at least one span, or a label", "an empty list"))
+        }
+        Spans::Times(times) => check_spans(path, times),
+        Spans::Label(label) if label.is_empty() => {
+            Err(out(path, "the label of annotations", "an empty text"))
+        }
+        Spans::Label(_) => Ok(()),
+    }
+}
+
+fn check_spans(path: &str, spans: &[[f64; 2]]) -> Result<()> {
+    within(path, spans.len(), 0, MOST_SPANS)?;
+    let wrong = spans
+        .iter()
+        .find(|[from, to]| !(from.is_finite() && to.is_finite() && from < to));
+    match wrong {
+        Some([from, to]) => Err(out(
+            path,
+            "spans that end after they begin",
+            format!("[{from}, {to}]"),
+        )),
+        None => Ok(()),
+    }
+}
+
+fn check_piece(piece_s: Option<f64>) -> Result<()> {
+    match piece_s {
+        Some(s) if !(s > 0.0 && s <= 3600.0) => Err(out(
+            "contrast.piece_s",
+            "a number of seconds above 0 and up to 3600",
+            s,
+        )),
+        _ => Ok(()),
+    }
+}
+
+/// The lower flank, with its skirt of half a half width, must lie above 0 Hz.
+fn check_band(centre_hz: f64, half_width_hz: f64, reference: BandReference) -> Result<()> {
+    positive("contrast.centre_hz", Some(centre_hz))?;
+    positive("contrast.half_width_hz", Some(half_width_hz))?;
+    let reach = match reference {
+        BandReference::Flanks => 3.5,
+        BandReference::Broadband => 1.5,
+    };
+    if centre_hz > reach * half_width_hz {
+        return Ok(());
+    }
+    Err(out(
+        "contrast.half_width_hz",
+        format!(
+            "less than {:.3} Hz, so that the {} above 0 Hz",
+            centre_hz / reach,
+            if reference == BandReference::Flanks {
+                "lower neighbour lies"
+            } else {
+                "band lies"
+            }
+        ),
+        half_width_hz,
+    ))
+}
+
+fn check_within(within: Option<&Within>) -> Result<()> {
+    match within {
+        None => Ok(()),
+        Some(Within::Window(window)) => {
+            check_window("contrast.within", window)?;
+            check_alone(
+                "contrast.within",
+                window,
+                "surrogates exchange windows of one length",
+            )
+        }
+        Some(Within::Spans(spans)) if spans.is_rest() => Err(out(
+            "contrast.within",
+            "spans, the label of annotations, or a window around events",
+            "the word rest",
+        )),
+        Some(Within::Spans(spans)) => check_spans_of("contrast.within", spans),
+    }
+}
+
+fn check_measure(recipe: &Recipe) -> Result<()> {
+    if recipe.contrast.allows(recipe.measure) {
+        return Ok(());
+    }
+    Err(Problem::new(
+        Kind::Recipe,
+        "what repeats has no ratio in a single trial: the average over trials is one for all of them",
+        "set measure to total",
+    )
+    .at("measure")
+    .expected_found("\"total\"", "\"typical\""))
 }
 
 fn check_shrink(shrink: Shrink, measure: Measure) -> Result<()> {

@@ -17,14 +17,18 @@ mod array;
 mod budget;
 pub mod edf;
 mod events_table;
+mod given;
 mod mat;
+mod names;
 mod npy;
 mod npz;
 mod opening;
 mod seek;
 mod tiff;
+mod units;
 
 pub use budget::MEMORY_BYTES;
+pub use given::UNITS;
 pub use opening::{MemorySource, OpenOptions, Opening, open};
 
 use serde::{Deserialize, Serialize};

@@ -29,7 +29,7 @@ fn begin(
         return Err(not_fitting(&array));
     }
     feed.holds(array.bytes().unwrap_or(u64::MAX))?;
-    let meaning = meaning(&array, &options.given, None, Vec::new())?;
+    let meaning = meaning(&array, &options.given, None)?;
     ArrayReader::begin("NPY", array, meaning, feed, budget)
 }
 

@@ -1,14 +1,15 @@
 //! NPZ: named NPY arrays in a ZIP archive, stored or deflated.
 //!
-//! The archive's directory is read by the `zip` crate; the one array that is wanted is then read straight from the file.
+//! The archive's directory is read by the `rawzip` crate; the one array that is wanted is then read straight from the file.
 use super::Source;
-use super::array::{Array, ArrayReader, Feed, meaning, unanswered};
+use super::array::{Array, ArrayReader, Feed, ask, meaning};
 use super::budget::Budget;
+use super::given::Asking;
 use super::npy;
 use super::opening::{Format, OpenOptions, Reader};
 use super::seek::Seeking;
-use crate::error::{Ask, Kind, Problem, Result};
-use zip::{CompressionMethod, ZipArchive};
+use crate::error::{Kind, Problem, Result};
+use rawzip::{CompressionMethod, ZipArchive};
 
 /// Names that a single number is taken for the sampling rate by.
 pub(super) const RATE_NAMES: &[&str] = &[
@@ -19,6 +20,9 @@ pub(super) const RATE_NAMES: &[&str] = &[
     "sample_rate",
     "frame_rate",
 ];
+
+/// Bytes of the archive's directory looked at at a time.
+const BUFFER_BYTES: usize = 1 << 16;
 
 pub(super) const FORMAT: Format = Format {
     name: "NPZ",
@@ -58,7 +62,7 @@ fn begin(
 /// Every entry `NAME.npy`, with its bytes.
 fn entries(source: &mut dyn Source) -> Result<Vec<(String, Feed)>> {
     let length = source.len();
-    let broken = |e: zip::result::ZipError| {
+    let broken = |e: rawzip::Error| {
         Problem::new(
             Kind::Damaged,
             "the archive's directory cannot be read",
@@ -67,22 +71,23 @@ fn entries(source: &mut dyn Source) -> Result<Vec<(String, Feed)>> {
         .at("ZIP directory")
         .expected_found("the directory of a ZIP archive", e)
     };
-    let mut archive = ZipArchive::new(Seeking::new(source)).map_err(broken)?;
-    let mut found = Vec::new();
-    for index in 0..archive.len() {
-        let entry = archive.by_index_raw(index).map_err(broken)?;
-        let name = entry.name().map_err(broken)?;
-        let Some(name) = name.strip_suffix(".npy").map(str::to_owned) else {
+    let (mut end, mut part) = (vec![0; BUFFER_BYTES], vec![0; BUFFER_BYTES]);
+    let archive = ZipArchive::from_seekable(Seeking::new(source), &mut end).map_err(broken)?;
+    let mut entries = archive.entries(&mut part);
+    let (mut found, mut others) = (Vec::new(), 0);
+    while let Some(entry) = entries.next_entry().map_err(broken)? {
+        let path = String::from_utf8_lossy(entry.file_path().as_ref()).into_owned();
+        let Some(name) = path.strip_suffix(".npy") else {
+            others += 1;
             continue;
         };
-        let (Some(at), bytes) = (entry.data_start(), entry.compressed_size()) else {
-            continue;
-        };
-        let end = at.saturating_add(bytes).min(length);
-        let feed = match entry.compression() {
-            _ if entry.encrypted() => None,
-            CompressionMethod::Stored => Some(Feed::plain(at, end)),
-            CompressionMethod::Deflated => Some(Feed::inflated(at, end, false)),
+        let place = archive.get_entry(entry.wayfinder()).map_err(broken)?;
+        let (at, end) = place.compressed_data_range();
+        let (at, end) = (at.min(length), end.min(length));
+        let feed = match entry.compression_method() {
+            _ if entry.flags().is_encrypted() => None,
+            CompressionMethod::STORE => Some(Feed::plain(at, end)),
+            CompressionMethod::DEFLATE => Some(Feed::inflated(at, end, false)),
             _ => None,
         };
         let feed = feed.ok_or_else(|| {
@@ -93,7 +98,7 @@ fn entries(source: &mut dyn Source) -> Result<Vec<(String, Feed)>> {
             )
             .at(format!("\"{name}\""))
         })?;
-        found.push((name, feed));
+        found.push((name.to_owned(), feed));
     }
     if found.is_empty() {
         return Err(Problem::new(
@@ -102,10 +107,7 @@ fn entries(source: &mut dyn Source) -> Result<Vec<(String, Feed)>> {
             "open the recording itself, or an NPZ archive",
         )
         .at("ZIP directory")
-        .expected_found(
-            "an entry that ends in .npy",
-            format!("{} others", archive.len()),
-        ));
+        .expected_found("an entry that ends in .npy", format!("{others} others")));
     }
     Ok(found)
 }
@@ -146,41 +148,32 @@ pub(super) fn choose(
         .collect();
     all.retain(|n| n.array.fits());
     if all.is_empty() {
-        return Err(Problem::new(
-            Kind::Unsupported,
-            "no array of the file is channels × samples or frames × height × width",
-            "save the recording as an array with two or three axes",
-        )
-        .at("arrays")
-        .expected_found("2 or 3 axes", listed.join(", ")));
+        return Err(no_array(&listed));
     }
-    let wanted = options.given.variable.as_deref();
-    let at = match wanted {
-        Some(name) => all.iter().position(|n| n.name == name),
-        None => (all.len() == 1).then_some(0),
-    };
-    let Some(at) = at else {
-        let largest = all.iter().max_by_key(|n| n.array.count());
-        let ask = Ask {
-            key: "variable".to_owned(),
-            question: format!("Which array holds the samples? {}.", listed.join(", ")),
-            options: all.iter().map(|n| n.name.clone()).collect(),
-            guess: largest.map(|n| n.name.clone()),
-        };
-        let what = match wanted {
-            Some(name) => format!("the file holds no array called {name}"),
-            None => "the file holds several arrays".to_owned(),
-        };
+    let names: Vec<String> = all.iter().map(|n| n.name.clone()).collect();
+    let largest = all.iter().max_by_key(|n| n.array.count());
+    let mut asking = Asking::new(&options.given);
+    let name = asking.variable(&names, largest.map(|n| n.name.as_str()));
+    let Some(at) = names.iter().position(|n| Some(n) == name.as_ref()) else {
         // The other questions are about the array that is chosen; they are asked with the likeliest one in mind.
-        let rest = largest.map(|n| meaning(&n.array, &options.given, rate_hz, Vec::new()));
-        let mut asks = vec![ask];
-        if let Some(Err(problem)) = rest {
-            asks.extend(problem.asks);
+        if let Some(largest) = largest {
+            ask(&largest.array, rate_hz, &mut asking);
         }
-        return Err(unanswered(&what, asks));
+        asking.settle(&format!("the file with the arrays {}", listed.join(", ")))?;
+        return Err(no_array(&listed));
     };
     let Named { array, feed, .. } = all.swap_remove(at);
     feed.holds(array.bytes().unwrap_or(u64::MAX))?;
-    let meaning = meaning(&array, &options.given, rate_hz, Vec::new())?;
+    let meaning = meaning(&array, &options.given, rate_hz)?;
     ArrayReader::begin(format, array, meaning, feed, budget)
+}
+
+fn no_array(listed: &[String]) -> Problem {
+    Problem::new(
+        Kind::Unsupported,
+        "no array of the file is channels × samples or frames × height × width",
+        "save the recording as an array with two or three axes",
+    )
+    .at("arrays")
+    .expected_found("2 or 3 axes", listed.join(", "))
 }

@@ -72,6 +72,7 @@ const OTHER_CONTENT: &[(&[u8], &str)] = &[
 pub struct Opening {
     source: Box<dyn Source>,
     sides: Vec<SideFile>,
+    options: OpenOptions,
     budget: Budget,
     reader: Box<dyn Reader>,
     finished: bool,
@@ -115,6 +116,7 @@ impl Opening {
         Ok(Opening {
             source,
             sides,
+            options,
             budget,
             reader,
             finished: false,
@@ -147,11 +149,22 @@ impl Opening {
             .finish()
             .map_err(|problem| problem.in_file(name.as_str()))?;
         recording.name = name;
+        warn_of_rate(&mut recording, self.options.given.rate_hz);
         events_table::apply(&mut recording, &self.sides)?;
         recording
             .events
             .sort_by(|a, b| a.onset_s.total_cmp(&b.onset_s));
         Ok(recording)
+    }
+}
+
+/// A file's own rate comes before one that was told; that the two differ is said.
+fn warn_of_rate(recording: &mut Recording, told_hz: Option<f64>) {
+    if let Some(told) = told_hz.filter(|hz| (hz / recording.rate_hz - 1.0).abs() > 1e-9) {
+        recording.warnings.push(format!(
+            "The file says {} Hz, which was used, and not the {told} Hz that it was opened with.",
+            recording.rate_hz
+        ));
     }
 }
 

@@ -4,10 +4,12 @@
 //! or PackBits, with or without a predictor; grey values of 8, 16 or 32 bits or floating point. The chain of pages is walked here, so that a
 //! page can be decoded by itself: the decoder is shown a file whose first page is the wanted one.
 use super::Source;
-use super::array::{CHANNEL_BYTES, columns, pixels, rate_and_unit, unanswered};
+use super::array::{CHANNEL_BYTES, columns, pixels};
 use super::budget::Budget;
+use super::given::Asking;
 use super::opening::{Format, OpenOptions, Reader};
 use super::seek::Seeking;
+use super::units::Unit;
 use super::{Layout, Recording, Stretch};
 use crate::error::{Kind, Problem, Result};
 use tiff::ColorType;
@@ -118,7 +120,7 @@ struct TiffReader {
     done: usize,
     samples: Vec<Vec<f32>>,
     rate_hz: f64,
-    unit: String,
+    unit: Unit,
 }
 
 fn begin(
@@ -167,13 +169,13 @@ fn begin(
     }
     // One frame, in its widest form, and the pixels' names: refuses claimed sizes before anything is read.
     budget.draw(count.saturating_mul(8 + CHANNEL_BYTES), "its pictures")?;
-    let mut asks = Vec::new();
-    let (rate_hz, unit, _) = rate_and_unit(&options.given, None, true, whole_numbers, &mut asks);
-    if !asks.is_empty() {
-        let what =
-            format!("a stack of {height} × {width} pixels does not say everything about itself");
-        return Err(unanswered(&what, asks));
-    }
+    let mut asking = Asking::new(&options.given);
+    let rate_hz = asking.rate("frames");
+    let unit = asking.unit(whole_numbers.then_some("counts"));
+    asking.settle(&format!("a stack of {height} × {width} pixels"))?;
+    let (Some(rate_hz), Some(unit)) = (rate_hz, unit) else {
+        return Err(outside(first));
+    };
     Ok(Box::new(TiffReader {
         layer,
         height,
@@ -298,8 +300,9 @@ impl TiffReader {
                 .expected_found(pixels, rows.len() - (page - self.done) * pixels));
             }
         }
+        let factor = self.unit.factor as f32;
         for (pixel, out) in self.samples.iter_mut().enumerate() {
-            out.extend(rows.iter().skip(pixel).step_by(pixels));
+            out.extend(rows.iter().skip(pixel).step_by(pixels).map(|x| factor * x));
         }
         self.done += frames;
         Ok(())
@@ -348,7 +351,7 @@ impl Reader for TiffReader {
             name: String::new(),
             format: if self.layer.big { "BigTIFF" } else { "TIFF" }.to_owned(),
             rate_hz: self.rate_hz,
-            channels: pixels(height, width, &self.unit),
+            channels: pixels(height, width, &self.unit.name),
             others: Vec::new(),
             samples: self.samples,
             layout: Layout::Frames {

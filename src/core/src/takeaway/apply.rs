@@ -217,11 +217,7 @@ fn refuse(recording: &Recording, what: &str) -> Problem {
 
 /// A recipe that filters and does nothing else; its contrast is never looked at.
 fn filter_only(filter: crate::recipe::Filter) -> Recipe {
-    let window = EventWindow {
-        event: String::new(),
-        from_s: 0.0,
-        to_s: 1.0,
-    };
+    let window = EventWindow::new("", 0.0, 1.0);
     Recipe {
         filter,
         ..Recipe::asking(Contrast::Windows {

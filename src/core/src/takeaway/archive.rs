@@ -1,11 +1,12 @@
 //! Everything in one ZIP, with a page of plain words and the sums that prove it whole.
 use super::written;
 use crate::error::Result;
+use flate2::{Compression, write::DeflateEncoder};
+use rawzip::time::UtcDateTime;
+use rawzip::{CompressionMethod, ZipArchiveWriter};
 use sha2::{Digest, Sha256};
 use std::fmt::Write as _;
-use std::io::{Cursor, Write};
-use zip::write::SimpleFileOptions;
-use zip::{CompressionMethod, DateTime, ZipWriter};
+use std::io::Write;
 
 /// What each file is, by its name or its ending, for README.txt.
 const KINDS: [(&str, &str); 13] = [
@@ -181,11 +182,8 @@ pub fn archive(files: &[(String, Vec<u8>)]) -> Result<Vec<u8>> {
     for (name, (_, bytes)) in names.iter().zip(files) {
         let _ = writeln!(manifest, "{}  {name}", sum(bytes));
     }
-    let options = SimpleFileOptions::default()
-        .compression_method(CompressionMethod::Deflated)
-        .last_modified_time(DateTime::default())
-        .unix_permissions(0o644);
-    let mut zip = ZipWriter::new(Cursor::new(Vec::new()));
+    let first_day = UtcDateTime::from_components(1980, 1, 1, 0, 0, 0, 0);
+    let mut zip = ZipArchiveWriter::new(Vec::new());
     let own = [
         ("README.txt", readme.as_bytes()),
         ("manifest.txt", manifest.as_bytes()),
@@ -197,8 +195,20 @@ pub fn archive(files: &[(String, Vec<u8>)]) -> Result<Vec<u8>> {
             .zip(files.iter().map(|(_, bytes)| bytes.as_slice())),
     );
     for (name, bytes) in all {
-        zip.start_file(name, options).map_err(written)?;
-        zip.write_all(bytes).map_err(written)?;
+        let file = zip
+            .new_file(name)
+            .compression_method(CompressionMethod::DEFLATE)
+            .unix_permissions(0o100_644);
+        let file = match first_day {
+            Some(day) => file.last_modified(day),
+            None => file,
+        };
+        let (mut entry, plan) = file.start().map_err(written)?;
+        let mut packed = plan.wrap(DeflateEncoder::new(&mut entry, Compression::default()));
+        packed.write_all(bytes).map_err(written)?;
+        let (deflate, sums) = packed.finish().map_err(written)?;
+        deflate.finish().map_err(written)?;
+        entry.finish(sums).map_err(written)?;
     }
-    Ok(zip.finish().map_err(written)?.into_inner())
+    zip.finish().map_err(written)
 }

@@ -6,6 +6,8 @@ use crate::error::Result;
 pub(super) enum Cell<'a> {
     /// Text from a file or of ours.
     Text(&'a str),
+    /// The same, put together for the table.
+    Owned(String),
     /// A number in its shortest form that reads back to the same bits; empty where there is none.
     Number(Option<f64>),
 }
@@ -37,6 +39,7 @@ pub(super) fn table<'a>(rows: impl IntoIterator<Item = Vec<Cell<'a>>>) -> Result
     for row in rows {
         let cells = row.into_iter().map(|cell| match cell {
             Cell::Text(text) => safe_text(text),
+            Cell::Owned(text) => safe_text(&text),
             Cell::Number(value) => value.map(number).unwrap_or_default(),
         });
         writer.write_record(cells).map_err(written)?;

@@ -4,7 +4,7 @@
 //! user ticks them in; otherwise an event is written as its rank (1, 2) and is filled in from the recording that the link is
 //! opened with: rank k is its k-th most frequent event. What else was left out is listed under `without`.
 use crate::error::{Kind, Problem, Result};
-use crate::recipe::{Contrast, Recipe, Reference};
+use crate::recipe::{Contrast, Recipe, Reference, Spans, Within};
 use base64::Engine;
 use base64::alphabet::URL_SAFE;
 use base64::engine::{DecodePaddingMode, GeneralPurpose, GeneralPurposeConfig};
@@ -21,7 +21,7 @@ const ENGINE: GeneralPurpose = GeneralPurpose::new(
 );
 
 /// Names that a link without names can leave out.
-const LEFT_OUT: [(&str, &str); 3] = [
+const LEFT_OUT: [(&str, &str); 4] = [
     (
         "channels.leave_out",
         "The link names no channels: what its sender left out is not left out here.",
@@ -34,7 +34,47 @@ const LEFT_OUT: [(&str, &str); 3] = [
         "channels.reference",
         "The link names no channels: its sender's reference channels are replaced by the reference as recorded.",
     ),
+    (
+        "recording.variable",
+        "The link does not name the array that its sender opened.",
+    ),
 ];
+
+/// Further labels of a window.
+const MORE_LABELS: (&str, &str) = (
+    "contrast.also",
+    "The link names no events: further labels that its sender counted in, or waited for, are not used here.",
+);
+
+/// Where a recipe can name an event.
+const SLOTS: [&str; 7] = [
+    "/contrast/signal/event",
+    "/contrast/reference/event",
+    "/contrast/within/event",
+    "/contrast/event",
+    "/contrast/signal",
+    "/contrast/reference",
+    "/contrast/within",
+];
+
+/// The names of events in a question, each with its place as a JSON pointer (RFC 6901): two at most.
+fn slots(contrast: &Contrast) -> Vec<(&'static str, &str)> {
+    let windows = contrast.around();
+    let places: &[&str] = match contrast {
+        Contrast::Windows { .. } => &SLOTS[..2],
+        Contrast::Repeatable(_) => &SLOTS[3..4],
+        _ => &SLOTS[2..3],
+    };
+    let named = (places.iter().copied()).zip(windows.into_iter().map(|w| w.event.as_str()));
+    let spans = contrast.spans().into_iter().filter_map(|(side, spans)| {
+        let place = SLOTS[4..].iter().find(|p| p.ends_with(side))?;
+        match spans {
+            Spans::Label(label) if !spans.is_rest() => Some((*place, label.as_str())),
+            _ => None,
+        }
+    });
+    named.chain(spans).collect()
+}
 
 /// What a link holds: a recipe, whole or with its events left to the recording.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
@@ -60,27 +100,48 @@ pub fn link_encode(recipe: &Recipe, with_names: bool) -> String {
 
 fn strip(recipe: &Recipe, mut value: Value) -> Value {
     let mut without = Vec::new();
-    let Contrast::Windows { signal, reference } = &recipe.contrast;
-    let second = if signal.event == reference.event {
-        1
-    } else {
-        2
-    };
-    for (side, rank) in [("signal", 1), ("reference", second)] {
-        if let Some(event) = value.pointer_mut(&format!("/contrast/{side}/event")) {
+    let slots = slots(&recipe.contrast);
+    for (pointer, label) in &slots {
+        let rank = if slots.first().is_some_and(|(_, first)| first == label) {
+            1
+        } else {
+            2
+        };
+        if let Some(event) = value.pointer_mut(pointer) {
             *event = json!(rank);
         }
+    }
+    let mut more = false;
+    for at in [
+        "/contrast/signal",
+        "/contrast/reference",
+        "/contrast/within",
+        "/contrast",
+    ] {
+        if let Some(Value::Object(window)) = value.pointer_mut(at) {
+            more |= window.remove("also").is_some();
+            if window.remove("until").is_some() {
+                more = true;
+                // Without the event that ends it a window needs a length of its own.
+                let end = window.get("from_s").and_then(Value::as_f64).unwrap_or(0.0) + 1.0;
+                window.insert("to_s".into(), json!(end));
+            }
+        }
+    }
+    if more {
+        without.push(MORE_LABELS.0);
     }
     let channels = &recipe.channels;
     let named = [
         !channels.leave_out.is_empty(),
         !channels.interpolate.is_empty(),
         matches!(channels.reference, Reference::Named(_)),
+        recipe.recording.variable.is_some(),
     ];
     for ((path, _), _) in LEFT_OUT.iter().zip(named).filter(|(_, named)| *named) {
         without.push(*path);
-        if let (Some(Value::Object(map)), Some(key)) =
-            (value.get_mut("channels"), path.split('.').nth(1))
+        if let Some((part, key)) = path.split_once('.')
+            && let Some(Value::Object(map)) = value.get_mut(part)
         {
             map.remove(key);
         }
@@ -135,33 +196,38 @@ impl RecipeLink {
 
     /// The outer error names a part of the link's own; the inner one is the recipe's.
     fn open(mut value: Value, without: Value) -> std::result::Result<Result<Self>, &'static str> {
-        let mut ranks = [0; 2];
-        for (side, rank) in ["signal", "reference"].iter().zip(&mut ranks) {
-            let event = value
-                .pointer_mut(&format!("/contrast/{side}/event"))
-                .ok_or("no event")?;
-            *rank = event
-                .as_u64()
-                .filter(|k| (1..=2).contains(k))
-                .ok_or("an event that is neither 1 nor 2")? as usize;
+        let mut ranks = Vec::new();
+        for pointer in SLOTS {
+            let Some(event) = value.pointer_mut(pointer) else {
+                continue;
+            };
+            let place_of_label = pointer.ends_with("/event") || event.is_number();
+            if !place_of_label {
+                continue;
+            }
+            let rank = event.as_u64().filter(|k| (1..=2).contains(k));
+            ranks.push(rank.ok_or("an event that is neither 1 nor 2")? as usize);
             *event = json!("event");
         }
         let without: Vec<String> =
             serde_json::from_value(without).map_err(|_| "a list of paths that is none")?;
-        if without
-            .iter()
-            .any(|w| !LEFT_OUT.iter().any(|(path, _)| path == w))
-        {
+        if without.iter().any(|w| {
+            !LEFT_OUT
+                .iter()
+                .chain([&MORE_LABELS])
+                .any(|(path, _)| path == w)
+        }) {
             return Err("an unknown path in without");
         }
         Ok(
             super::recipe_from_json(&value.to_string()).map(|mut recipe| {
-                let Contrast::Windows { signal, reference } = &mut recipe.contrast;
-                signal.event.clear();
-                reference.event.clear();
+                for name in names_mut(&mut recipe.contrast) {
+                    name.clear();
+                }
+                let events = (ranks.first()).map(|first| [*first, *ranks.get(1).unwrap_or(first)]);
                 RecipeLink {
                     recipe,
-                    events: Some(ranks),
+                    events,
                     without,
                 }
             }),
@@ -174,6 +240,7 @@ impl RecipeLink {
         let mut recipe = self.recipe.clone();
         let mut notes: Vec<String> = LEFT_OUT
             .iter()
+            .chain([&MORE_LABELS])
             .filter(|(path, _)| self.without.iter().any(|w| w == path))
             .map(|(_, note)| (*note).to_string())
             .collect();
@@ -192,13 +259,49 @@ impl RecipeLink {
                 .expected_found(format!("at least {rank}"), labels.len())
             })
         };
-        let Contrast::Windows { signal, reference } = &mut recipe.contrast;
-        signal.event = pick(ranks[0])?;
-        reference.event = pick(ranks[1])?;
+        for (name, rank) in names_mut(&mut recipe.contrast).into_iter().zip(ranks) {
+            *name = pick(rank)?;
+        }
         notes.push(format!(
             "The link names no events: {} was taken, the most frequent here.",
-            super::strict::quote(&signal.event)
+            super::strict::quote(&pick(ranks[0])?)
         ));
         Ok((recipe, notes))
+    }
+}
+
+/// The names of events in a question, in the order of [`slots`].
+fn names_mut(contrast: &mut Contrast) -> Vec<&mut String> {
+    match contrast {
+        Contrast::Windows { signal, reference } => vec![&mut signal.event, &mut reference.event],
+        Contrast::Repeatable(window) => vec![&mut window.event],
+        Contrast::Spans {
+            signal, reference, ..
+        } => [signal, reference]
+            .into_iter()
+            .filter_map(label_mut)
+            .collect(),
+        Contrast::Band {
+            within: Some(within),
+            ..
+        }
+        | Contrast::Slow {
+            within: Some(within),
+            ..
+        } => match within {
+            Within::Window(window) => vec![&mut window.event],
+            Within::Spans(spans) => label_mut(spans).into_iter().collect(),
+        },
+        Contrast::Band { within: None, .. } | Contrast::Slow { within: None, .. } => Vec::new(),
+    }
+}
+
+fn label_mut(spans: &mut Spans) -> Option<&mut String> {
+    if spans.is_rest() {
+        return None;
+    }
+    match spans {
+        Spans::Label(label) => Some(label),
+        Spans::Times(_) => None,
     }
 }

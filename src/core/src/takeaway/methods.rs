@@ -1,4 +1,5 @@
 //! The methods paragraph: what was done, with every parameter, ready to be pasted into a paper and edited; and its references.
+use super::kinds;
 use super::words::{self, NB};
 use crate::recipe::{Keep, KeepWord, Measure, Reference, ReferenceWord, Shrink, ShrinkWord};
 use crate::sheet::{ChannelState, Component, Sheet, SideCard};
@@ -9,7 +10,7 @@ struct Work {
     entry: &'static str,
 }
 
-const WORKS: [Work; 12] = [
+const WORKS: [Work; 15] = [
     Work {
         cited: "Arsigny et al., 2006",
         entry: "Arsigny, V., Fillard, P., Pennec, X. & Ayache, N. (2006). Log-Euclidean metrics for fast and simple calculus on diffusion tensors. Magnetic Resonance in Medicine 56, 411–421.",
@@ -21,6 +22,14 @@ const WORKS: [Work; 12] = [
     Work {
         cited: "Chen et al., 2010",
         entry: "Chen, Y., Wiesel, A., Eldar, Y. C. & Hero, A. O. (2010). Shrinkage algorithms for MMSE covariance estimation. IEEE Transactions on Signal Processing 58, 5016–5029.",
+    },
+    Work {
+        cited: "de Cheveigné & Arzounian, 2015",
+        entry: "de Cheveigné, A. & Arzounian, D. (2015). Scanning for oscillations. Journal of Neural Engineering 12, 066020.",
+    },
+    Work {
+        cited: "de Cheveigné & Simon, 2008",
+        entry: "de Cheveigné, A. & Simon, J. Z. (2008). Denoising based on spatial filtering. Journal of Neuroscience Methods 171, 331–339.",
     },
     Work {
         cited: "Efron & Tibshirani, 1993",
@@ -41,6 +50,10 @@ const WORKS: [Work; 12] = [
     Work {
         cited: "Nichols & Holmes, 2002",
         entry: "Nichols, T. E. & Holmes, A. P. (2002). Nonparametric permutation tests for functional neuroimaging: a primer with examples. Human Brain Mapping 15, 1–25.",
+    },
+    Work {
+        cited: "Nikulin et al., 2011",
+        entry: "Nikulin, V. V., Nolte, G. & Curio, G. (2011). A novel method for reliable and fast extraction of neuronal EEG/MEG oscillations on the basis of spatio-spectral decomposition. NeuroImage 55, 1528–1535.",
     },
     Work {
         cited: "Perrin et al., 1989",
@@ -176,7 +189,9 @@ fn dropped(side: &SideCard) -> String {
 
 fn windows(sheet: &Sheet) -> Option<String> {
     let card = sheet.windows.as_ref()?;
-    let (signal, reference) = words::windows(&sheet.recipe.contrast);
+    let Some((signal, reference)) = words::windows(&sheet.recipe.contrast) else {
+        return kinds::method(sheet);
+    };
     let same = signal.event == reference.event;
     let counts = if card.paired {
         format!(

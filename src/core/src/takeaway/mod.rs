@@ -3,7 +3,7 @@
 //! * [`recipe_json`], [`recipe_from_json`], [`recipe_check`]: the recipe file; [`link_encode`], [`link_decode`]: the same inside an address.
 //! * [`weights_json`], [`weights_csv`], [`weights_npy`]: the filters; [`Weights`] reads them back and applies them to another recording.
 //! * [`results_json`]: every number in full precision.
-//! * [`series_csv`], [`series_npy`]: time courses; [`summary_csv`], [`summary_json`]: many recordings in one table.
+//! * [`series_csv`], [`series_npy`]: time courses; [`Row`], [`Many`]: many recordings in one table, and what they say together.
 //! * [`readings`]: the sentences beside the figures; [`methods`], [`references`]: the paragraph for a paper.
 //! * [`report_html`]: one page to keep; [`archive`]: everything in one ZIP.
 //!
@@ -11,7 +11,9 @@
 mod apply;
 mod archive;
 mod cells;
+mod kinds;
 mod link;
+mod many;
 mod methods;
 mod readings;
 mod recipe_file;
@@ -27,13 +29,14 @@ pub use crate::recipe::recipe_check;
 pub use apply::Applied;
 pub use archive::{archive, safe_name};
 pub use link::{RecipeLink, link_decode, link_encode};
+pub use many::{Group, GroupEnd, Many, Portrait, Row};
 pub use methods::{methods, references};
 pub use readings::{Reading, Section, Span, Tone, readings};
 pub use recipe_file::{recipe_from_json, recipe_json};
 pub use report::report_html;
 pub use results::results_json;
 pub use series::{series_csv, series_npy};
-pub use summary::{SummaryRow, summary_csv, summary_json};
+pub use summary::{Leader, SummaryRow};
 pub use weights::{Weights, weights_csv, weights_json, weights_npy};
 
 use crate::error::{Kind, Problem, Result};

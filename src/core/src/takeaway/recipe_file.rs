@@ -3,10 +3,83 @@ use super::strict::{self, Shape};
 use crate::error::{Kind, Problem, Result};
 use crate::recipe::{Recipe, recipe_check};
 
-const EVENT_WINDOW: Shape = Shape::Object(&[
+type Keys = &'static [(&'static str, bool, Shape)];
+
+const EVENT_WINDOW_KEYS: Keys = &[
     ("event", true, Shape::Text),
+    ("also", false, Shape::List(&Shape::Text)),
     ("from_s", true, Shape::Number),
     ("to_s", true, Shape::Number),
+    ("until", false, Shape::Maybe(&Shape::Text)),
+    ("first", false, Shape::Maybe(&Shape::Whole)),
+    ("last", false, Shape::Maybe(&Shape::Whole)),
+    ("leave_out", false, Shape::List(&Shape::Whole)),
+    ("equal", false, Shape::Flag),
+];
+const EVENT_WINDOW: Shape = Shape::Object(EVENT_WINDOW_KEYS);
+
+const SPAN_LIST: Shape = Shape::List(&Shape::Pair);
+const SPANS: Shape = Shape::Either(
+    &[SPAN_LIST, Shape::Text],
+    "a list of spans [[from, to], …] in seconds, or the label of annotations",
+);
+const WITHIN: Shape = Shape::Maybe(&Shape::Either(
+    &[SPAN_LIST, Shape::Text, EVENT_WINDOW],
+    "a window around events, a list of spans [[from, to], …] in seconds, or the label of annotations",
+));
+const PIECE: Shape = Shape::Maybe(&Shape::Number);
+
+const CONTRAST: Shape = Shape::Kinds(&[
+    (
+        "windows",
+        &[
+            ("signal", true, EVENT_WINDOW),
+            ("reference", true, EVENT_WINDOW),
+        ],
+    ),
+    (
+        "spans",
+        &[
+            ("signal", true, SPANS),
+            ("reference", true, SPANS),
+            ("piece_s", false, PIECE),
+        ],
+    ),
+    (
+        "band",
+        &[
+            ("centre_hz", true, Shape::Number),
+            ("half_width_hz", true, Shape::Number),
+            ("reference", false, Shape::Word(&["flanks", "broadband"])),
+            ("within", false, WITHIN),
+            ("piece_s", false, PIECE),
+        ],
+    ),
+    ("repeatable", EVENT_WINDOW_KEYS),
+    (
+        "slow",
+        &[
+            ("lag_s", true, Shape::Number),
+            ("within", false, WITHIN),
+            ("piece_s", false, PIECE),
+        ],
+    ),
+]);
+
+const RECORDING: Shape = Shape::Object(&[
+    ("rate_hz", false, Shape::Maybe(&Shape::Number)),
+    ("unit", false, Shape::Maybe(&Shape::Text)),
+    (
+        "axes",
+        false,
+        Shape::Maybe(&Shape::Word(&[
+            "channels,samples",
+            "samples,channels",
+            "frames,height,width",
+            "height,width,frames",
+        ])),
+    ),
+    ("variable", false, Shape::Maybe(&Shape::Text)),
 ]);
 
 pub(super) const CHANNELS: Shape = Shape::Object(&[
@@ -34,6 +107,7 @@ pub(super) const FILTER: Shape = Shape::Object(&[
 
 const RECIPE: Shape = Shape::Object(&[
     ("teasel_recipe", true, Shape::Whole),
+    ("recording", false, RECORDING),
     ("channels", false, CHANNELS),
     ("filter", false, FILTER),
     (
@@ -45,19 +119,15 @@ const RECIPE: Shape = Shape::Object(&[
         ),
     ),
     ("measure", false, Shape::Word(&["typical", "total"])),
+    ("contrast", true, CONTRAST),
+    ("not_used", false, SPAN_LIST),
     (
-        "contrast",
-        true,
-        Shape::Kinds(
-            &[(
-                "windows",
-                &[
-                    ("signal", true, EVENT_WINDOW),
-                    ("reference", true, EVENT_WINDOW),
-                ],
-            )],
-            &["spans", "band", "repeatable", "slow"],
-        ),
+        "hold_back",
+        false,
+        Shape::Maybe(&Shape::Object(&[
+            ("last", true, Shape::Number),
+            ("open", false, Shape::Flag),
+        ])),
     ),
     (
         "shrink",
@@ -89,7 +159,7 @@ pub fn recipe_json(recipe: &Recipe) -> Result<String> {
 /// column, what was expected and what was found; ranges as in [`recipe_check`].
 pub fn recipe_from_json(text: &str) -> Result<Recipe> {
     strict::check(text, &RECIPE, "the recipe", strict::RECIPE_BYTES)?;
-    let recipe: Recipe = serde_json::from_str(text).map_err(|e| {
+    let mut recipe: Recipe = serde_json::from_str(text).map_err(|e| {
         Problem::new(
             Kind::Recipe,
             "the recipe breaks its rules",
@@ -98,6 +168,9 @@ pub fn recipe_from_json(text: &str) -> Result<Recipe> {
         .at(format!("line {}, column {}", e.line(), e.column()))
         .expected_found("a recipe", e)
     })?;
+    if !strict::holds(text, "measure") {
+        recipe.measure = recipe.contrast.usual_measure();
+    }
     recipe_check(&recipe).map_err(|mut problem| {
         problem.place = problem.place.map(|path| strict::place_of(text, &path));
         problem

@@ -99,7 +99,12 @@ impl Page<'_> {
     }
 
     fn question(&self) -> Markup {
-        let (signal, reference) = words::windows(&self.sheet.recipe.contrast);
+        let Some((signal, reference)) = words::windows(&self.sheet.recipe.contrast) else {
+            let [first, second] = super::kinds::sides(&self.sheet.recipe.contrast);
+            return html! {
+                "what differs between " span.s { (first) } " and " span.r { (second) } "?"
+            };
+        };
         html! {
             "what differs between " span.s { (words::window(signal)) }
             " from " (named(&signal.event)) " and " span.r { (words::window(reference)) }

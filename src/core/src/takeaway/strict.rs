@@ -16,14 +16,18 @@ type Keys = &'static [(&'static str, bool, Shape)];
 pub(crate) enum Shape {
     /// Exactly these keys; the flag says which must be there.
     Object(Keys),
-    /// An object whose `kind` decides its keys, with kinds that this version knows and does not compute.
-    Kinds(&'static [(&'static str, Keys)], &'static [&'static str]),
+    /// An object whose `kind` decides its keys.
+    Kinds(&'static [(&'static str, Keys)]),
     /// Any finite number.
     Number,
     /// A whole number from 0 to 2^53.
     Whole,
     /// A text.
     Text,
+    /// true or false.
+    Flag,
+    /// A list of two numbers.
+    Pair,
     /// A list.
     List(&'static Shape),
     /// One of these texts.
@@ -72,6 +76,11 @@ pub(crate) fn check(text: &str, shape: &Shape, name: &str, most: usize) -> Resul
     serde_json::from_str::<Value>(text).map_err(broken)?;
     let raw: &RawValue = serde_json::from_str(text).map_err(broken)?;
     Walk { text, name }.value(raw, shape, "")
+}
+
+/// Whether the text, a checked object, has this key.
+pub(crate) fn holds(text: &str, key: &str) -> bool {
+    serde_json::from_str::<Pairs>(text).is_ok_and(|pairs| pairs.0.iter().any(|(k, _)| k == key))
 }
 
 /// The place of `path` ("contrast.signal.from_s") in `text`, as words; the path alone where it stands nowhere.
@@ -155,7 +164,7 @@ impl<'a> Walk<'a> {
         if fits(&value, shape) {
             return match shape {
                 Shape::Object(keys) => self.object(raw, keys, None, path),
-                Shape::Kinds(known, later) => self.kinds(raw, &value, known, later, path),
+                Shape::Kinds(known) => self.kinds(raw, &value, known, path),
                 Shape::List(item) => self.list(raw, item, path),
                 Shape::Either(shapes, _) => shapes
                     .iter()
@@ -213,21 +222,13 @@ impl<'a> Walk<'a> {
         raw: &'a RawValue,
         value: &Value,
         known: &[(&str, Keys)],
-        later: &[&str],
         path: &str,
     ) -> Result<()> {
         let all: Vec<String> = known.iter().map(|k| quote(k.0)).collect();
-        let expected = format!("the kind {}", all.join(" or "));
+        let expected = format!("one of the kinds {}", all.join(", "));
         match value.get("kind") {
             Some(Value::String(kind)) => match known.iter().find(|k| k.0 == kind) {
                 Some((_, keys)) => self.object(raw, keys, Some("kind"), path),
-                None if later.contains(&kind.as_str()) => Err(Problem::new(
-                    Kind::Recipe,
-                    "this version computes the kind windows",
-                    "write the contrast as windows around events, or use a later version",
-                )
-                .at(place_of(self.text, &join(path, "kind")))
-                .expected_found(expected, quote(kind))),
                 None => Err(self.wrong(raw, path, expected, quote(kind))),
             },
             Some(other) => Err(self.wrong(raw, path, expected, found(other))),
@@ -255,7 +256,11 @@ fn join(path: &str, key: &str) -> String {
 
 fn fits(value: &Value, shape: &Shape) -> bool {
     match shape {
-        Shape::Object(_) | Shape::Kinds(..) => value.is_object(),
+        Shape::Object(_) | Shape::Kinds(_) => value.is_object(),
+        Shape::Flag => value.is_boolean(),
+        Shape::Pair => value
+            .as_array()
+            .is_some_and(|pair| pair.len() == 2 && pair.iter().all(|v| fits(v, &Shape::Number))),
         Shape::Number => value.as_f64().is_some_and(f64::is_finite),
         Shape::Whole => value
             .as_u64()
@@ -270,7 +275,9 @@ fn fits(value: &Value, shape: &Shape) -> bool {
 
 fn describe(shape: &Shape) -> String {
     match shape {
-        Shape::Object(_) | Shape::Kinds(..) => "an object".into(),
+        Shape::Object(_) | Shape::Kinds(_) => "an object".into(),
+        Shape::Flag => "true or false".into(),
+        Shape::Pair => "two numbers [from, to]".into(),
         Shape::Number => "a number".into(),
         Shape::Whole => "a whole number from 0 to 9007199254740991".into(),
         Shape::Text => "a text".into(),

@@ -4,10 +4,10 @@ use super::weights::fitted;
 use crate::error::{Problem, Result};
 use crate::recipe::Measure;
 use crate::sheet::{Component, Sheet};
-use serde::Serialize;
+use serde::{Deserialize, Serialize};
 
 /// One recording's row.
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
 pub struct SummaryRow {
     /// File name of the recording.
     pub recording: String,
@@ -35,10 +35,12 @@ pub struct SummaryRow {
     pub stronger_1: Option<Leader>,
     /// The first weaker component.
     pub weaker_1: Option<Leader>,
+    /// What a careful reader should know of it, each a sentence.
+    pub warnings: Vec<String>,
 }
 
 /// The first component of an end.
-#[derive(Debug, Clone, PartialEq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct Leader {
     /// Fitted ratio in the measure.
     pub fitted: f64,
@@ -56,6 +58,8 @@ pub struct Leader {
     pub peak_hz: Option<f64>,
     /// Channel where its pattern is largest.
     pub largest_at: String,
+    /// |cosine| between its pattern and the mean pattern of the other recordings, over the channels that all share.
+    pub likeness: Option<f64>,
 }
 
 impl SummaryRow {
@@ -80,6 +84,7 @@ impl SummaryRow {
                 p: c.p,
                 peak_hz: c.peak_hz,
                 largest_at: c.largest_at.clone(),
+                likeness: None,
             })
         };
         SummaryRow {
@@ -96,6 +101,7 @@ impl SummaryRow {
             weaker_passing: passing(&sheet.weaker),
             stronger_1: leader(&sheet.stronger),
             weaker_1: leader(&sheet.weaker),
+            warnings: sheet.warnings.clone(),
         }
     }
 
@@ -105,21 +111,12 @@ impl SummaryRow {
             recording: recording.into(),
             folder: folder.into(),
             problem: Some(problem.to_string()),
-            channels: None,
-            rate_hz: None,
-            signal_windows: None,
-            reference_windows: None,
-            kept: None,
-            measure: None,
-            stronger_passing: None,
-            weaker_passing: None,
-            stronger_1: None,
-            weaker_1: None,
+            ..SummaryRow::default()
         }
     }
 }
 
-const LEADER: [&str; 8] = [
+const LEADER: [&str; 9] = [
     "fitted",
     "typical_held_out",
     "typical_low",
@@ -128,10 +125,11 @@ const LEADER: [&str; 8] = [
     "p",
     "peak_hz",
     "largest_at",
+    "likeness",
 ];
 
 /// `table.csv`: one row a recording.
-pub fn summary_csv(rows: &[SummaryRow]) -> Result<String> {
+pub(super) fn summary_csv(rows: &[SummaryRow]) -> Result<String> {
     let leaders: Vec<String> = ["stronger_1", "weaker_1"]
         .iter()
         .flat_map(|end| LEADER.iter().map(move |part| format!("{end}_{part}")))
@@ -151,6 +149,7 @@ pub fn summary_csv(rows: &[SummaryRow]) -> Result<String> {
     ]
     .into_iter()
     .chain(leaders.iter().map(String::as_str))
+    .chain(["warnings"])
     .map(Cell::Text)
     .collect();
     table(std::iter::once(header).chain(rows.iter().map(cells)))
@@ -186,22 +185,9 @@ fn cells(row: &SummaryRow) -> Vec<Cell<'_>> {
             number(|l| l.p),
             number(|l| l.peak_hz),
             Cell::Text(leader.as_ref().map_or("", |l| l.largest_at.as_str())),
+            number(|l| l.likeness),
         ]);
     }
+    cells.push(Cell::Owned(row.warnings.join(" | ")));
     cells
-}
-
-/// `table.json`: the same rows.
-pub fn summary_json(rows: &[SummaryRow]) -> Result<String> {
-    #[derive(Serialize)]
-    struct Table<'a> {
-        teasel_table: u32,
-        made: super::results::Made,
-        recordings: &'a [SummaryRow],
-    }
-    super::to_json(&Table {
-        teasel_table: 1,
-        made: super::results::MADE,
-        recordings: rows,
-    })
 }

@@ -303,10 +303,9 @@ pub(super) fn side_of(window: &EventWindow) -> &'static str {
     }
 }
 
-/// The two windows of a contrast.
-pub(super) fn windows(contrast: &Contrast) -> (&EventWindow, &EventWindow) {
-    let Contrast::Windows { signal, reference } = contrast;
-    (signal, reference)
+/// The two windows of a contrast of event windows.
+pub(super) fn windows(contrast: &Contrast) -> Option<(&EventWindow, &EventWindow)> {
+    contrast.event_windows()
 }
 
 #[cfg(test)]

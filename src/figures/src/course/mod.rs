@@ -10,7 +10,6 @@ use crate::weights::End;
 use crate::{Plot, nan, text};
 use plotters_backend::DrawingBackend;
 use serde::{Deserialize, Serialize};
-use teasel_core::recipe::Contrast;
 use teasel_core::sheet::Sheet;
 
 const TOP: f64 = 44.0;
@@ -70,7 +69,9 @@ impl Course {
         component: Option<(&teasel_core::sheet::Component, End)>,
         of: Of,
     ) -> Option<Self> {
-        let Contrast::Windows { signal, reference } = &sheet.recipe.contrast;
+        // What is made of one window has it on both sides; what has none has no course.
+        let around = sheet.recipe.contrast.around();
+        let (signal, reference) = (around.first()?, around.last()?);
         let course = component.and_then(|(c, _)| c.course.as_ref());
         let course = course.filter(|c| !c.t_s.is_empty());
         if course.is_none() && of != Of::Windows {

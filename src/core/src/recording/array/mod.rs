@@ -13,10 +13,11 @@ pub(super) use feed::Feed;
 pub(super) use number::Number;
 
 use super::budget::Budget;
-use super::edf::to_microvolts;
+use super::given::Asking;
 use super::opening::Reader;
+use super::units::Unit;
 use super::{Channel, Layout, Recording, Source, Stretch};
-use crate::error::{Ask, Kind, Problem, Result};
+use crate::error::{Kind, Problem, Result};
 use crate::recipe::{Axes, Given};
 
 /// Bytes read a step: whole rows, and at least one.
@@ -116,85 +117,43 @@ impl Plan {
 pub(super) struct Meaning {
     plan: Plan,
     rate_hz: f64,
-    unit: String,
-    factor: f64,
+    unit: Unit,
 }
 
-/// Rate and unit from what is given, found in the file or told by a side; what is missing becomes questions in `asks`.
-pub(super) fn rate_and_unit(
-    given: &Given,
-    found_hz: Option<f64>,
-    movie: bool,
-    whole_numbers: bool,
-    asks: &mut Vec<Ask>,
-) -> (f64, String, f64) {
-    let rate_hz = given.rate_hz.or(found_hz);
-    let usable = rate_hz.filter(|hz| hz.is_finite() && *hz > 0.0);
-    if usable.is_none() {
-        let (things, why) = match (movie, rate_hz) {
-            (_, Some(wrong)) => ("samples", format!("{wrong} a second cannot be.")),
-            (true, None) => ("frames", "The file does not say.".to_owned()),
-            (false, None) => ("samples", "The file does not say.".to_owned()),
-        };
-        asks.push(Ask {
-            key: "rate_hz".to_owned(),
-            question: format!("How many {things} a second? {why}"),
-            options: Vec::new(),
-            guess: None,
-        });
-    }
-    let unit = given.unit.as_deref().map(str::trim).unwrap_or_default();
-    if unit.is_empty() {
-        let options: &[&str] = if movie {
-            &["counts", "V", "1"]
-        } else {
-            &["uV", "mV", "V", "fT", "counts"]
-        };
-        asks.push(Ask {
-            key: "unit".to_owned(),
-            question: "In which unit are the values? The file does not say.".to_owned(),
-            options: options.iter().map(|o| (*o).to_owned()).collect(),
-            guess: (movie || whole_numbers).then(|| "counts".to_owned()),
-        });
-    }
-    let (unit, factor) = match to_microvolts(unit) {
-        Some(factor) if !movie => ("µV".to_owned(), factor),
-        _ => (unit.to_owned(), 1.0),
+/// What a movie's unit is likely to be, and a whole number's.
+const LIKELY_UNIT: &str = "counts";
+
+/// Asks what an array does not carry: its axes, its rate unless `found_hz` tells it, its unit.
+pub(super) fn ask(array: &Array, found_hz: Option<f64>, asking: &mut Asking) -> Option<Meaning> {
+    let movie = array.sizes.len() == 3;
+    let possible: &[Axes] = if movie {
+        &[Axes::FramesHeightWidth, Axes::HeightWidthFrames]
+    } else {
+        &[Axes::ChannelsSamples, Axes::SamplesChannels]
     };
-    (usable.unwrap_or(1.0), unit, factor)
-}
-
-/// The refusal that carries the questions.
-pub(super) fn unanswered(what: &str, asks: Vec<Ask>) -> Problem {
-    Problem::new(
-        Kind::NeedsAnswer,
-        what,
-        "answer, or write the answers into the recipe as \"recording\"",
-    )
-    .asking(asks)
+    let guess = match array.sizes[..] {
+        [rows, columns] => usize::from(rows > columns),
+        _ => usize::from(array.first_fastest),
+    };
+    let axes = asking.axes(&array.sizes, possible, possible.get(guess).copied());
+    let rate_hz = match found_hz {
+        Some(hz) if hz.is_finite() && hz > 0.0 && asking.told_rate().is_none() => Some(hz),
+        _ => asking.rate(if movie { "frames" } else { "samples" }),
+    };
+    let likely = movie || array.number.is_whole();
+    let unit = asking.unit(likely.then_some(LIKELY_UNIT));
+    Some(Meaning {
+        plan: Plan::of(array, axes?)?,
+        rate_hz: rate_hz?,
+        unit: unit?,
+    })
 }
 
 /// What the array means, from `given` and what the file tells beside it; asks for the rest.
 ///
 /// # Errors
-/// `NeedsAnswer` with every open question, `Unsupported` where no pair of axes fits.
-pub(super) fn meaning(
-    array: &Array,
-    given: &Given,
-    found_hz: Option<f64>,
-    mut asks: Vec<Ask>,
-) -> Result<Meaning> {
-    let (options, guess): (&[&str], usize) = match array.sizes[..] {
-        [rows, columns] => (
-            &["channels,samples", "samples,channels"],
-            usize::from(rows > columns),
-        ),
-        [_, _, _] => (
-            &["frames,height,width", "height,width,frames"],
-            usize::from(array.first_fastest),
-        ),
-        _ => return Err(not_fitting(array)),
-    };
+/// `NeedsAnswer` with every open question, `TooLarge` where its values cannot be counted.
+pub(super) fn meaning(array: &Array, given: &Given, found_hz: Option<f64>) -> Result<Meaning> {
     if array.bytes().is_none() {
         return Err(Problem::new(
             Kind::TooLarge,
@@ -204,45 +163,10 @@ pub(super) fn meaning(
         .at("shape of the array")
         .expected_found("fewer than 2^64 bytes", array.shape()));
     }
-    let plan = given.axes.and_then(|axes| Plan::of(array, axes));
-    if plan.is_none() {
-        let axis = if array.sizes.len() == 2 {
-            "time"
-        } else {
-            "frames"
-        };
-        let wrong = match given.axes {
-            Some(_) => ", and the answer so far does not fit them",
-            None => "",
-        };
-        asks.push(Ask {
-            key: "axes".to_owned(),
-            question: format!(
-                "The array holds {} values{wrong}: which axis is {axis}?",
-                array.shape()
-            ),
-            options: options.iter().map(|o| (*o).to_owned()).collect(),
-            guess: Some(options[guess].to_owned()),
-        });
-    }
-    let movie = array.sizes.len() == 3;
-    let (rate_hz, unit, factor) =
-        rate_and_unit(given, found_hz, movie, array.number.is_whole(), &mut asks);
-    match plan {
-        Some(plan) if asks.is_empty() => Ok(Meaning {
-            plan,
-            rate_hz,
-            unit,
-            factor,
-        }),
-        _ => {
-            let what = format!(
-                "the array of {} values does not say everything about itself",
-                array.shape()
-            );
-            Err(unanswered(&what, asks))
-        }
-    }
+    let mut asking = Asking::new(given);
+    let meaning = ask(array, found_hz, &mut asking);
+    asking.settle(&format!("the array of {} values", array.shape()))?;
+    meaning.ok_or_else(|| not_fitting(array))
 }
 
 pub(super) fn not_fitting(array: &Array) -> Problem {
@@ -314,7 +238,7 @@ impl ArrayReader {
             by_channel,
             ..
         } = self.meaning.plan;
-        let (size, factor) = (self.array.number.bytes(), self.meaning.factor);
+        let (size, factor) = (self.array.number.bytes(), self.meaning.unit.factor);
         let slice = &self.slice[..bytes];
         let decode = |from: usize, step: usize, count: usize, out: &mut Vec<f32>| {
             self.array.number.decode(
@@ -419,7 +343,7 @@ impl Reader for ArrayReader {
                 let (height, width) = (height as u32, width as u32);
                 let pixels_of = (0..height * width).collect();
                 (
-                    pixels(height, width, &unit),
+                    pixels(height, width, &unit.name),
                     Layout::Frames {
                         height,
                         width,
@@ -427,7 +351,7 @@ impl Reader for ArrayReader {
                     },
                 )
             }
-            None => (numbered(plan.channels, &unit), Layout::Head),
+            None => (numbered(plan.channels, &unit.name), Layout::Head),
         };
         Ok(Recording {
             name: String::new(),

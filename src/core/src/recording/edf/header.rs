@@ -2,6 +2,8 @@
 use crate::error::{Kind, Problem, Result};
 use crate::recording::Source;
 use crate::recording::budget::Budget;
+use crate::recording::names::counted;
+use crate::recording::units::to_microvolts;
 use std::ops::RangeInclusive;
 
 /// Bytes of the fixed part, and of each signal's part.
@@ -265,17 +267,6 @@ fn scale(physical: [f64; 2], digital: [i64; 2], factor: f64) -> std::result::Res
     Ok(scale)
 }
 
-/// Factor to µV for a voltage, `None` for anything else. The sign for micro comes as `u`, as U+00B5 and as U+03BC.
-pub(in crate::recording) fn to_microvolts(unit: &str) -> Option<f64> {
-    match unit {
-        "uV" | "µV" | "μV" | "uv" | "UV" | "microV" => Some(1.0),
-        "V" | "v" => Some(1e6),
-        "mV" | "mv" => Some(1e3),
-        "nV" | "nv" => Some(1e-3),
-        _ => None,
-    }
-}
-
 fn check_duration(header: &Header) -> Result<()> {
     let ordinary = header.signals.iter().any(|s| !s.is_text);
     if !ordinary {
@@ -366,11 +357,6 @@ fn real(field: &[u8], place: &str, warnings: &mut Vec<String>) -> Result<f64> {
 
 fn quoted(field: &[u8]) -> String {
     format!("\"{}\"", field.trim_ascii().escape_ascii())
-}
-
-/// `1 signal`, `2 signals`.
-pub(super) fn counted(n: u64, noun: &str) -> String {
-    format!("{n} {noun}{}", if n == 1 { "" } else { "s" })
 }
 
 pub(super) fn damaged(what: &str) -> Problem {

@@ -29,7 +29,6 @@ mod read;
 mod records;
 mod write;
 
-pub(super) use header::to_microvolts;
 pub use write::{Identity, write};
 
 use super::Source;

@@ -1,10 +1,12 @@
 //! From an EDF file's header to a recording: which signals, how many records, decoding slice after slice.
 use super::annotations;
-use super::header::{self, Header, Scale, Signal, Variant, counted, damaged, to_microvolts};
+use super::header::{self, Header, Scale, Signal, Variant, damaged};
 use super::records;
 use crate::error::Result;
 use crate::recording::budget::Budget;
+use crate::recording::names::{counted, name_apart};
 use crate::recording::opening::{OpenOptions, Reader};
+use crate::recording::units::Unit;
 use crate::recording::{Channel, Event, OtherChannel, Recording, Source, Stretch};
 use std::collections::BTreeMap;
 
@@ -185,30 +187,8 @@ fn channel(signal: &Signal, index: usize) -> Channel {
             "" => format!("channel {}", index + 1),
             label => label.to_owned(),
         },
-        unit: match to_microvolts(&signal.unit) {
-            Some(_) => "µV".to_owned(),
-            None => signal.unit.clone(),
-        },
+        unit: Unit::of(&signal.unit).name,
         position: None,
-    }
-}
-
-/// A recipe speaks of channels by name, so no two may share one.
-fn name_apart(channels: &mut [Channel], warnings: &mut Vec<String>) {
-    let mut seen = BTreeMap::<String, usize>::new();
-    for channel in channels {
-        let wanted = channel.name.clone();
-        while let Some(times) = seen.get_mut(&channel.name) {
-            *times += 1;
-            channel.name = format!("{wanted} ({times})");
-        }
-        seen.insert(channel.name.clone(), 1);
-        if channel.name != wanted {
-            warnings.push(format!(
-                "Two channels are called \"{wanted}\"; the later one is called \"{}\" here.",
-                channel.name
-            ));
-        }
     }
 }
 

@@ -1,6 +1,7 @@
 //! How many records there are, and what is said when the file and its header disagree.
-use super::header::{Header, counted, damaged};
+use super::header::{Header, damaged};
 use crate::error::{Kind, Problem, Result, Salvage};
+use crate::recording::names::counted;
 use crate::recording::opening::OpenOptions;
 
 /// Whole records to read, with what does not fit said in warnings or as the problem.

@@ -1,6 +1,7 @@
 //! Writing a recording as EDF+ with 16 bits and its events as annotations.
-use super::header::{Scale, to_microvolts};
+use super::header::Scale;
 use crate::error::{Kind, Problem, Result};
+use crate::recording::units::to_microvolts;
 use crate::recording::{Event, Recording};
 
 /// Steps that a channel's samples may be multiples of; such a channel is written without loss.

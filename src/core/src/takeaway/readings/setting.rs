@@ -1,8 +1,9 @@
 //! Readings of what was given and chosen: recording, channels, windows, compression.
 use super::judge;
 use super::{Line, Said, words};
-use crate::recipe::{Keep, KeepWord, Measure};
+use crate::recipe::{Contrast, Keep, KeepWord, Measure};
 use crate::sheet::{ChannelCard, ChannelState, End, Sheet, SideCard, WindowsCard};
+use crate::takeaway::kinds;
 
 fn said(text: impl Into<String>) -> Option<Line> {
     Some(Line::new(text.into()))
@@ -331,7 +332,10 @@ fn dropped(side: &SideCard, beyond: bool) -> Vec<String> {
 
 pub(super) fn windows(sheet: &Sheet) -> Option<Said> {
     let card = sheet.windows.as_ref()?;
-    let (signal, reference) = words::windows(&sheet.recipe.contrast);
+    let Some((signal, reference)) = words::windows(&sheet.recipe.contrast) else {
+        let text = pieces(sheet, card);
+        return Some((text.join(rises(sheet)), windows_doubt(sheet)));
+    };
     let text = if card.paired {
         let asked = card.trials.len().max(card.signal.used);
         let line = Line::default()
@@ -369,6 +373,35 @@ pub(super) fn windows(sheet: &Sheet) -> Option<Said> {
             .then(".")
     };
     Some((text.join(rises(sheet)), windows_doubt(sheet)))
+}
+
+/// "**118** pieces of the 3 marked spans stand against **86** of the rest, **1.00 s** each."
+fn pieces(sheet: &Sheet, card: &WindowsCard) -> Line {
+    let [first, second] = kinds::sides(&sheet.recipe.contrast);
+    let length = words::seconds(card.signal.seconds);
+    let (used, others) = (
+        words::grouped(card.signal.used),
+        words::grouped(card.reference.used),
+    );
+    match &sheet.recipe.contrast {
+        Contrast::Spans { .. } => Line::default()
+            .strong(used)
+            .then(format!(" pieces of {first} stand against "))
+            .strong(others)
+            .then(format!(" of {second}, "))
+            .strong(length)
+            .then(" each."),
+        Contrast::Repeatable(_) => Line::default()
+            .strong(used)
+            .then(" trials of ")
+            .strong(length)
+            .then(": their average stands against the single trials."),
+        _ => Line::new("In each of ")
+            .strong(used)
+            .then(" segments of ")
+            .strong(length)
+            .then(format!(", {first} stands against {second}.")),
+    }
 }
 
 /// " Component 1, held-out, rises in **37 of 40** trials." on held-out scores.

@@ -3,6 +3,7 @@ use super::judge::{self, Lead, Parting, State};
 use super::{Line, Said, Tone, words};
 use crate::recipe::Measure;
 use crate::sheet::{Component, Sheet};
+use crate::takeaway::kinds;
 use crate::takeaway::weights::held_out;
 
 pub(super) fn so_far(sheet: &Sheet) -> Option<Said> {
@@ -17,7 +18,9 @@ pub(super) fn so_far(sheet: &Sheet) -> Option<Said> {
 
 /// "After **buoy**" or "After **buoy**, compared with **swell**".
 fn opening(sheet: &Sheet) -> Line {
-    let (signal, reference) = words::windows(&sheet.recipe.contrast);
+    let Some((signal, reference)) = words::windows(&sheet.recipe.contrast) else {
+        return Line::default().strong(kinds::opening(&sheet.recipe.contrast));
+    };
     let line = Line::new(words::capital(words::side_of(signal)))
         .then(" ")
         .strong(words::name(&signal.event));
@@ -33,7 +36,9 @@ fn opening(sheet: &Sheet) -> Line {
 
 /// "of **buoy**" or "of **buoy** and **swell**", in plain words.
 fn contrast(sheet: &Sheet) -> String {
-    let (signal, reference) = words::windows(&sheet.recipe.contrast);
+    let Some((signal, reference)) = words::windows(&sheet.recipe.contrast) else {
+        return kinds::of(&sheet.recipe.contrast);
+    };
     if signal.event == reference.event {
         format!("of {}", words::name(&signal.event))
     } else {
@@ -46,7 +51,15 @@ fn contrast(sheet: &Sheet) -> String {
 }
 
 fn question(sheet: &Sheet) -> Said {
-    let (signal, reference) = words::windows(&sheet.recipe.contrast);
+    let Some((signal, reference)) = words::windows(&sheet.recipe.contrast) else {
+        let [first, second] = kinds::sides(&sheet.recipe.contrast);
+        let text = Line::new("What differs between ")
+            .tone(first, Tone::Signal)
+            .then(" (signal) and ")
+            .tone(second, Tone::Reference)
+            .then(" (reference)?");
+        return (text, None);
+    };
     let text = Line::new("What differs between ")
         .tone(words::window(signal), Tone::Signal)
         .then(format!(
