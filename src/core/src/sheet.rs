@@ -232,12 +232,17 @@ pub struct Component {
 /// Ratio in a typical trial: exp of the mean log ratio.
 #[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
 pub struct TypicalRatio {
-    /// On the windows it was fitted to.
+    /// On the windows it was fitted to; not a number (null in JSON) where the kind of contrast has no ratio in a single trial.
+    #[serde(deserialize_with = "number_or_nan")]
     pub fitted: f64,
     /// On windows it never saw.
     pub held_out: Option<f64>,
     /// 95 % bootstrap interval of `held_out` over trials.
     pub interval: Option<[f64; 2]>,
+}
+
+fn number_or_nan<'de, D: serde::Deserializer<'de>>(from: D) -> Result<f64, D::Error> {
+    Ok(Option::deserialize(from)?.unwrap_or(f64::NAN))
 }
 
 /// Ratio of pooled variances.

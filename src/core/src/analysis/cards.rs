@@ -3,13 +3,14 @@ use super::work::Work;
 use crate::contrast::fit::{Direction, Ends};
 use crate::contrast::linalg::{abs_cosine, packed_len, quadratic};
 use crate::contrast::space::Space;
+use crate::contrast::windows::Exchange;
 use crate::evidence::heldout::{
-    Design, Ground, Scores, best_of, diagonal, fill, log_total, log_typical, pair_log_ratios,
-    score_into, total_ratio, typical_ratio, variances,
+    Design, Ground, Scores, best_of, fill, log_total, log_typical, pair_log_ratios, score_into,
+    total_ratio, typical_ratio, variances,
 };
 use crate::evidence::permute::{null_hypothesis, p_value};
 use crate::prepare::Prepared;
-use crate::recipe::{Keep, KeepWord, Recipe};
+use crate::recipe::{Keep, KeepWord, Measure, Recipe};
 use crate::recording::Recording;
 use crate::sheet::{
     Comparator, ComparatorKind, Component, CompressionCard, End, FoldCard, Permutation,
@@ -203,7 +204,7 @@ pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
     let weights = &work.covariances.weights;
     let component = |d: &Direction| -> Component {
         let (filter, pattern) = filter_and_pattern(ground, d, weights, &design.signal);
-        let v = variances(&ground.space, &d.u);
+        let v = variances(&ground.space, &d.u, &design.signal);
         let largest = (0..pattern.len()).fold(0, |best, i| {
             if pattern[i].abs() > pattern[best].abs() {
                 i
@@ -213,7 +214,7 @@ pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
         });
         Component {
             typical: TypicalRatio {
-                fitted: log_typical(&v, design).exp(),
+                fitted: fitted_typical(&v, design),
                 held_out: None,
                 interval: None,
             },
@@ -256,6 +257,15 @@ pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
     }
     guides(&mut work.sheet);
     work.sheet.warnings = warnings(work, recipe);
+}
+
+/// The fitted ratio in a typical trial; not a number where the kind has none.
+fn fitted_typical(variances: &[f64], design: &Design) -> f64 {
+    if design.exchange == Exchange::Flip {
+        f64::NAN
+    } else {
+        log_typical(variances, design).exp()
+    }
 }
 
 /// Those directions of a fit that lie on their own side of 1.
@@ -402,7 +412,7 @@ pub(super) fn held_out(work: &mut Work, recipe: &Recipe) {
             }
         }
     }
-    work.sheet.folds = leading.map_or_else(Vec::new, |scores| fold_cards(&scores, design));
+    work.sheet.folds = leading.map_or_else(Vec::new, |scores| fold_cards(&scores, weights, design));
     work.sheet.compare = comparators(work_parts(ground, design, prepared, keep), work, recipe);
     work.sheet.warnings = warnings(work, recipe);
 }
@@ -412,7 +422,7 @@ fn trial_scores(
     design: &Design,
     selection: &crate::contrast::windows::Selection,
 ) -> Vec<TrialScore> {
-    if !design.paired {
+    if !design.paired || design.exchange == Exchange::Flip {
         return Vec::new();
     }
     let logs = pair_log_ratios(scores, design);
@@ -429,7 +439,13 @@ fn trial_scores(
         .collect()
 }
 
-fn fold_cards(scores: &Scores, design: &Design) -> Vec<FoldCard> {
+fn fold_cards(scores: &Scores, weights: &[f64], design: &Design) -> Vec<FoldCard> {
+    // What repeats has no typical ratio: its folds are told by the total one.
+    let repeated = if design.exchange == Exchange::Flip {
+        total_ratio(1.0, Some(scores), weights, design).folds
+    } else {
+        Vec::new()
+    };
     (0..design.folds)
         .map(|f| {
             let inside: Scores = scores
@@ -440,10 +456,11 @@ fn fold_cards(scores: &Scores, design: &Design) -> Vec<FoldCard> {
             let trials = (0..scores.len())
                 .filter(|k| design.fold[*k] == f && (design.signal[*k] || !design.paired))
                 .count();
-            FoldCard {
-                trials,
-                ratio: log_typical(&inside, design).exp(),
-            }
+            let ratio = repeated
+                .get(f)
+                .copied()
+                .unwrap_or_else(|| log_typical(&inside, design).exp());
+            FoldCard { trials, ratio }
         })
         .collect()
 }
@@ -482,12 +499,15 @@ fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator
     let weights = &all.weights;
     let everything = vec![true; weights.len()];
     let shares: f64 = ground.space.eigenvalues.iter().filter(|e| **e > 0.0).sum();
-    let pc_variance = |g: &Ground, i: usize, k: usize| diagonal(&g.space.covariances[k], i);
-    let channel_variance = |i: usize, k: usize| diagonal(&all.packed[k], i);
+    let signal = &design.signal;
+    let of_pc = |g: &Ground, i: usize, of: &dyn Fn(usize) -> bool| {
+        g.space.component_variances(i, signal, of)
+    };
+    let of_channel = |i: usize, of: &dyn Fn(usize) -> bool| all.channel_variances(i, signal, of);
     let best_pc = best_of(
         work.sheet.leading,
         keep,
-        |i, k| pc_variance(ground, i, k),
+        |i| of_pc(ground, i, &|_| true),
         weights,
         design,
         &everything,
@@ -496,48 +516,46 @@ fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator
     let best_channel = best_of(
         work.sheet.leading,
         all.channels,
-        channel_variance,
+        |i| of_channel(i, &|_| true),
         weights,
         design,
         &everything,
         recipe.measure,
     );
-    let make =
-        |kind: ComparatorKind, whole: &dyn Fn(usize) -> f64, chosen_in: &dyn Fn(usize) -> usize| {
-            let fitted: Vec<f64> = (0..weights.len()).map(whole).collect();
-            let mut scores = vec![f64::NAN; weights.len()];
-            for (f, g) in work.folds.iter().enumerate() {
-                let i = chosen_in(f);
-                match kind {
-                    ComparatorKind::BestChannel => {
-                        fill(&mut scores, weights, design, f, |k| channel_variance(i, k))
-                    }
-                    ComparatorKind::FirstPc | ComparatorKind::BestPc => {
-                        fill(&mut scores, weights, design, f, |k| pc_variance(g, i, k))
-                    }
+    let make = |kind: ComparatorKind, fitted: Vec<f64>, chosen_in: &dyn Fn(usize) -> usize| {
+        let mut scores = vec![f64::NAN; weights.len()];
+        for (f, g) in work.folds.iter().enumerate() {
+            let i = chosen_in(f);
+            match kind {
+                ComparatorKind::BestChannel => {
+                    fill(&mut scores, weights, design, f, |of| of_channel(i, of))
+                }
+                ComparatorKind::FirstPc | ComparatorKind::BestPc => {
+                    fill(&mut scores, weights, design, f, |of| of_pc(g, i, of))
                 }
             }
-            let (count, seed) = (recipe.evidence.bootstrap, recipe.evidence.seed);
-            Comparator {
-                kind,
-                chosen: None,
-                chosen_in_folds: None,
-                share: None,
-                typical: typical_ratio(
-                    log_typical(&fitted, design).exp(),
-                    Some(&scores),
-                    design,
-                    count,
-                    seed,
-                ),
-                total: total_ratio(
-                    log_total(&fitted, weights, design, |_| true).exp(),
-                    Some(&scores),
-                    weights,
-                    design,
-                ),
-            }
-        };
+        }
+        let (count, seed) = (recipe.evidence.bootstrap, recipe.evidence.seed);
+        Comparator {
+            kind,
+            chosen: None,
+            chosen_in_folds: None,
+            share: None,
+            typical: typical_ratio(
+                fitted_typical(&fitted, design),
+                Some(&scores),
+                design,
+                count,
+                seed,
+            ),
+            total: total_ratio(
+                log_total(&fitted, weights, design, |_| true).exp(),
+                Some(&scores),
+                weights,
+                design,
+            ),
+        }
+    };
     let share_of = |i: usize| Some(ground.space.eigenvalues[i] / shares);
     let (pc, pc_folds) = most_frequent(work.fits.iter().map(|f| f.best_pc));
     let (channel, channel_folds) = most_frequent(work.fits.iter().map(|f| f.best_channel));
@@ -548,7 +566,7 @@ fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator
             share: share_of(pc),
             ..make(
                 ComparatorKind::BestPc,
-                &|k| pc_variance(ground, best_pc, k),
+                of_pc(ground, best_pc, &|_| true),
                 &|f| work.fits[f].best_pc,
             )
         },
@@ -557,18 +575,14 @@ fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator
             chosen_in_folds: Some(channel_folds),
             ..make(
                 ComparatorKind::BestChannel,
-                &|k| channel_variance(best_channel, k),
+                of_channel(best_channel, &|_| true),
                 &|f| work.fits[f].best_channel,
             )
         },
         Comparator {
             chosen: Some("1".into()),
             share: share_of(0),
-            ..make(
-                ComparatorKind::FirstPc,
-                &|k| pc_variance(ground, 0, k),
-                &|_| 0,
-            )
+            ..make(ComparatorKind::FirstPc, of_pc(ground, 0, &|_| true), &|_| 0)
         },
     ]
 }
@@ -607,7 +621,7 @@ pub(super) fn permuted(work: &mut Work, recipe: &Recipe) {
         done: work.null.len(),
         distinct: plan.distinct,
         exact: plan.exact,
-        null: null_hypothesis(design),
+        null: null_hypothesis(design.exchange).into(),
         largest,
         smallest,
         observed_stronger,
@@ -667,6 +681,9 @@ fn warnings(work: &Work, recipe: &Recipe) -> Vec<String> {
 
 /// Where a few large windows decide between the two measures, says how many.
 fn disagreement(work: &Work) -> Option<String> {
+    if !work.sheet.recipe.contrast.allows(Measure::Typical) {
+        return None;
+    }
     let component = work.sheet.first()?;
     let typical = component
         .typical
@@ -685,6 +702,7 @@ fn disagreement(work: &Work) -> Option<String> {
     let v = variances(
         &ground.space,
         &leading_direction(ends, work.sheet.leading)?.u,
+        &design.signal,
     );
     let side = factor > 1.0;
     let mut powers: Vec<f64> = v

@@ -8,6 +8,7 @@
 //! The first result (ratio, map, spectra) is on the sheet after [`Stage::Fitting`]; held-out ratios, the permutation test and the
 //! ratio against C follow, in this order.
 mod cards;
+mod describing;
 mod propose;
 mod summary;
 mod work;

@@ -1,18 +1,19 @@
 //! What is computed, in which order, and what a change of the recipe makes stale.
 use super::{Progress, Series, Stage, cards};
+use crate::contrast::band::Banding;
 use crate::contrast::fit::{Ends, Labels, Method, extremes, fit};
+use crate::contrast::read::{Reader, Row};
 use crate::contrast::space::Covariances;
-use crate::contrast::windows::{Selection, check, sample_at, select};
-use crate::describe::{course, spectra};
+use crate::contrast::windows::{Exchange, Selection, Window, check, lag_samples, select};
 use crate::error::{Kind, Problem, Result};
 use crate::evidence::FEWEST;
 use crate::evidence::heldout::{
     Design, FoldFit, Ground, Scores, choose_keep, fit_ground, log_total, log_typical,
     mean_and_error, score_into, variances,
 };
-use crate::evidence::permute::{Plan, STREAM_DESCRIBE, arrangement, plan};
+use crate::evidence::permute::{Plan, arrangement, plan, slides};
 use crate::prepare::{Prepared, Preparing, inspect};
-use crate::recipe::{Keep, KeepWord, Measure, Recipe, Shrink, ShrinkWord};
+use crate::recipe::{BandReference, Contrast, Keep, KeepWord, Measure, Recipe, Shrink, ShrinkWord};
 use crate::recording::Recording;
 use crate::sheet::{ChannelCard, End, KeepCurve, Sheet};
 use std::collections::BTreeMap;
@@ -32,6 +33,8 @@ pub(super) struct Work {
     preparing: Option<Preparing>,
     pub(super) prepared: Option<Prepared>,
     pub(super) selection: Option<Selection>,
+    /// The filtered recording of a band contrast.
+    bands: Option<Banding>,
     pub(super) covariances: Covariances,
     pub(super) ground: Option<Ground>,
     /// C in force, once known.
@@ -46,7 +49,18 @@ pub(super) struct Work {
     summarised: bool,
     pub(super) plan: Option<Plan>,
     pub(super) null: Vec<(f64, f64)>,
+    surrogate: Option<Surrogate>,
     curve: CurveWork,
+}
+
+/// One surrogate as far as it is.
+#[derive(Debug)]
+struct Surrogate {
+    row: Row,
+    /// By how many samples each channel is moved along the row.
+    by: Vec<usize>,
+    covariances: Covariances,
+    ground: Option<Ground>,
 }
 
 /// The ratio against C as far as it is.
@@ -72,6 +86,7 @@ enum Task {
     Inspect,
     Prepare,
     Select,
+    Band,
     Covariances,
     Ground,
     Keep,
@@ -113,6 +128,7 @@ impl Work {
             preparing: None,
             prepared: None,
             selection: None,
+            bands: None,
             covariances: Covariances::default(),
             ground: None,
             keep: None,
@@ -125,6 +141,7 @@ impl Work {
             summarised: false,
             plan: None,
             null: Vec::new(),
+            surrogate: None,
             curve: CurveWork::default(),
         }
     }
@@ -147,9 +164,16 @@ impl Work {
         } else if let Some(prepared) = &self.prepared {
             check(&new.contrast, &recording.events, prepared.rate_hz)?;
         }
-        let windows = preparation || old.contrast != new.contrast;
+        let drawn =
+            old.evidence.seed != new.evidence.seed && new.contrast.around().iter().any(|w| w.equal);
+        let windows = preparation
+            || drawn
+            || old.contrast != new.contrast
+            || old.not_used != new.not_used
+            || locked_share(old) != locked_share(new);
         if windows {
             self.selection = None;
+            self.bands = None;
             self.covariances = Covariances::default();
             self.ground = None;
             self.folds.clear();
@@ -196,6 +220,7 @@ impl Work {
             self.summarised = false;
             self.plan = None;
             self.null.clear();
+            self.surrogate = None;
         }
         if evidence && old.evidence.bootstrap != new.evidence.bootstrap
             || old.evidence.seed != new.evidence.seed
@@ -256,6 +281,11 @@ impl Work {
             return Task::Select;
         };
         let windows = selection.windows.len();
+        if let Contrast::Band { .. } = recipe.contrast
+            && (self.bands.as_ref()).is_none_or(|b| b.signal.len() < prepared_channels(self))
+        {
+            return Task::Band;
+        }
         if self.covariances.packed.len() < windows {
             return Task::Covariances;
         }
@@ -341,7 +371,7 @@ impl Work {
                     return Err(lost());
                 };
                 let selection = select(
-                    &recipe.contrast,
+                    recipe,
                     &recording.events,
                     &prepared.stretches,
                     prepared.rate_hz,
@@ -352,7 +382,8 @@ impl Work {
                 self.selection = Some(selection);
                 Ok(progress(Stage::Windows, 0, all, true))
             }
-            Task::Covariances => self.push_covariances(),
+            Task::Band => self.push_band(recipe),
+            Task::Covariances => self.push_covariances(recipe),
             Task::Ground => self.push_ground(recipe),
             Task::Keep => self.choose_keep(recipe),
             Task::Logs => {
@@ -371,13 +402,19 @@ impl Work {
             }
             Task::Solve => self.solve(recipe),
             Task::Sketch => {
-                self.describe(recording, recipe, self.sketched, 0)?;
+                super::describing::describe(self, recording, recipe, self.sketched, 0)?;
                 self.sketched += 1;
                 let firsts = self.sheet.stronger.len().min(1) + self.sheet.weaker.len().min(1);
                 Ok(self.fitted(self.sketched == firsts))
             }
             Task::Describe => {
-                self.describe(recording, recipe, self.described, recipe.evidence.bootstrap)?;
+                super::describing::describe(
+                    self,
+                    recording,
+                    recipe,
+                    self.described,
+                    recipe.evidence.bootstrap,
+                )?;
                 self.described += 1;
                 let all = self.sheet.stronger.len() + self.sheet.weaker.len();
                 Ok(self.fitted(self.described == all))
@@ -427,17 +464,54 @@ impl Work {
         Ok(progress(Stage::Preparing, of as u64, of as u64, true))
     }
 
-    fn push_covariances(&mut self) -> Result<Progress> {
+    /// Filters the next channel of a band contrast.
+    fn push_band(&mut self, recipe: &Recipe) -> Result<Progress> {
+        let (
+            Some(prepared),
+            Contrast::Band {
+                centre_hz,
+                half_width_hz,
+                reference,
+                ..
+            },
+        ) = (&self.prepared, &recipe.contrast)
+        else {
+            return Err(lost());
+        };
+        let mut bands = match self.bands.take() {
+            Some(bands) => bands,
+            None => Banding::new(prepared, *centre_hz, *half_width_hz, *reference)?,
+        };
+        bands.step(prepared);
+        let done = bands.signal.len() as u64;
+        self.bands = Some(bands);
+        Ok(progress(
+            Stage::Windows,
+            done,
+            prepared.samples.len() as u64,
+            false,
+        ))
+    }
+
+    fn push_covariances(&mut self, recipe: &Recipe) -> Result<Progress> {
         let (Some(prepared), Some(selection)) = (&self.prepared, &self.selection) else {
             return Err(lost());
         };
-        let m = prepared.samples.len() as f64;
+        let reader = reader(prepared, self.bands.as_ref(), recipe);
         let first = self.covariances.packed.len();
         let all = selection.windows.len();
-        let bite = bites(m * m * selection.windows[first].count as f64);
-        for window in selection.windows.iter().skip(first).take(bite) {
-            self.covariances.push(&prepared.samples, window);
+        if first == 0 && !selection.exchange.labels_alone() {
+            // Rounding noise is that of the samples before they are filtered or subtracted.
+            self.covariances.largest_mean_square = largest_mean_square(&prepared.samples);
         }
+        let courses = selection.exchange == Exchange::Flip;
+        push_windows(
+            &mut self.covariances,
+            &reader,
+            &selection.windows,
+            None,
+            courses,
+        );
         if self.covariances.packed[first..]
             .iter()
             .flatten()
@@ -453,6 +527,9 @@ impl Work {
         if done == all {
             self.design = None;
             self.drop_flat()?;
+            if let (true, Some(selection)) = (levelled(recipe), &self.selection) {
+                self.covariances.level(&selection.sides());
+            }
         }
         Ok(progress(Stage::Windows, done as u64, all as u64, false))
     }
@@ -493,10 +570,12 @@ impl Work {
         else {
             return Err(lost());
         };
+        let reader = reader(prepared, self.bands.as_ref(), recipe);
         let done = push_space(
             ground,
             &self.covariances,
-            wants_fourth(recipe).then_some((&prepared.samples[..], &selection.windows[..])),
+            wants_fourth(recipe).then_some((&reader, &selection.windows[..])),
+            None,
         );
         Ok(progress(Stage::Fitting, done as u64 / 2, all as u64, false))
     }
@@ -513,6 +592,7 @@ impl Work {
             let folds = fold.iter().max().map_or(0, |f| f + 1);
             self.design = Some(Design {
                 paired: selection.paired,
+                exchange: selection.exchange,
                 signal: selection.sides(),
                 trial: selection.windows.iter().map(|w| w.trial).collect(),
                 fold,
@@ -583,114 +663,6 @@ impl Work {
         progress(Stage::Fitting, all, all, news)
     }
 
-    /// Spectra, course and single trials of component number `at` (the first of each end, then the others), with intervals from
-    /// `count` bootstrap samples.
-    fn describe(
-        &mut self,
-        recording: &Recording,
-        recipe: &Recipe,
-        at: usize,
-        count: usize,
-    ) -> Result<()> {
-        let (Some(prepared), Some(selection)) = (&self.prepared, &self.selection) else {
-            return Err(lost());
-        };
-        let (up, down) = (self.sheet.stronger.len(), self.sheet.weaker.len());
-        let (stronger, index) = describing(at, up, down);
-        let component = if stronger {
-            &mut self.sheet.stronger[index]
-        } else {
-            &mut self.sheet.weaker[index]
-        };
-        let Some((signal, reference)) = recipe.contrast.event_windows() else {
-            return Ok(());
-        };
-        let rate = prepared.rate_hz;
-        let span = course_span(
-            signal.event == reference.event,
-            [signal.from_s, signal.to_s],
-            [reference.from_s, reference.to_s],
-        );
-        let onsets: Vec<(usize, f64)> = recording
-            .events
-            .iter()
-            .filter(|e| e.label == signal.event)
-            .filter_map(|e| Some((sample_at(&prepared.stretches, rate, e.onset_s)?, e.onset_s)))
-            .collect();
-        let side = |wanted: bool| -> Vec<(usize, usize)> {
-            selection
-                .windows
-                .iter()
-                .filter(|w| w.signal == wanted)
-                .map(|w| (w.first, w.count))
-                .collect()
-        };
-        let (signals, references) = (side(true), side(false));
-        let kept: Vec<(usize, f64)> = if selection.paired {
-            let used: Vec<f64> = selection
-                .windows
-                .iter()
-                .filter(|w| w.signal)
-                .map(|w| w.onset_s)
-                .collect();
-            // Both lists are in order of time.
-            let mut at = used.iter().peekable();
-            onsets
-                .iter()
-                .copied()
-                .filter(|o| {
-                    while at.next_if(|t| **t < o.1).is_some() {}
-                    at.next_if(|t| **t == o.1).is_some()
-                })
-                .collect()
-        } else {
-            onsets
-        };
-        let series = partial_series(
-            prepared,
-            &component.filter,
-            &signals,
-            &references,
-            &kept,
-            span,
-        );
-        let seed = recipe.evidence.seed ^ STREAM_DESCRIBE << 32;
-        let found = spectra::of_component(&series, &signals, &references, rate, count, seed);
-        component.peak_hz = spectra::peak_hz(
-            &found,
-            if stronger {
-                spectra::End::Stronger
-            } else {
-                spectra::End::Weaker
-            },
-        );
-        component.spectra = Some(found);
-        let baseline = if selection.paired && kept.len() == references.len() {
-            course::Baseline::Paired(&references)
-        } else {
-            course::Baseline::Pooled(&references)
-        };
-        let looked = course::Span {
-            from_s: span[0],
-            to_s: span[1],
-        };
-        if let Some((c, image)) = course::of_component(
-            &series,
-            &prepared.stretches,
-            &signal.event,
-            &kept,
-            baseline,
-            looked,
-            rate,
-            count,
-            seed,
-        ) {
-            component.course = Some(c);
-            component.image = Some(image);
-        }
-        Ok(())
-    }
-
     fn fold_progress(&self, f: usize, part: u64) -> Progress {
         let folds = self.design.as_ref().map_or(0, |d| d.folds) as u64;
         progress(Stage::HeldOut, 3 * f as u64 + part, 3 * folds, false)
@@ -710,10 +682,12 @@ impl Work {
             }
             self.folds.push(ground);
         }
+        let reader = reader(prepared, self.bands.as_ref(), recipe);
         push_space(
             &mut self.folds[f],
             &self.covariances,
-            wants_fourth(recipe).then_some((&prepared.samples[..], &selection.windows[..])),
+            wants_fourth(recipe).then_some((&reader, &selection.windows[..])),
+            None,
         );
         Ok(self.fold_progress(f, 1))
     }
@@ -764,18 +738,20 @@ impl Work {
         let plan = *self
             .plan
             .get_or_insert_with(|| plan(design, recipe.evidence.permutations));
+        if design.exchange.of_channels() {
+            return self.push_surrogate(plan, recipe);
+        }
         let best = recipe.keep == Keep::Word(KeepWord::Best);
         let grid = if best {
             best_grid(ground.space.dimensions())
         } else {
             Vec::new()
         };
-        let bite = bites(permutation_cost(
-            keep,
-            self.covariances.packed.len(),
-            &grid,
-            &method,
-        ));
+        let averaged = ground.space.courses.iter().map(Vec::len).sum::<usize>();
+        let bite = bites(
+            permutation_cost(keep, self.covariances.packed.len(), &grid, &method)
+                + averaged as f64 * (1.0 + method.folds as f64),
+        );
         let first = self.null.len();
         for i in first..plan.count.min(first + bite) {
             let signal = arrangement(design, plan, best, recipe.evidence.seed, i);
@@ -803,6 +779,99 @@ impl Work {
             plan.count as u64,
             finished,
         ))
+    }
+
+    /// A bite of the next surrogate: everything from the channels' samples on is repeated, the compression too.
+    fn push_surrogate(&mut self, plan: Plan, recipe: &Recipe) -> Result<Progress> {
+        let method = self.method(recipe);
+        let (Some(prepared), Some(selection), Some(keep)) =
+            (&self.prepared, &self.selection, self.keep)
+        else {
+            return Err(lost());
+        };
+        let done = self.null.len();
+        let news = |null: &[(f64, f64)]| {
+            let finished = null.len() >= plan.count;
+            progress(
+                Stage::Permuting,
+                null.len() as u64,
+                plan.count as u64,
+                finished,
+            )
+        };
+        if done >= plan.count {
+            cards::permuted(self, recipe);
+            return Ok(news(&self.null));
+        }
+        let windows = &selection.windows;
+        let now = self.surrogate.get_or_insert_with(|| {
+            let row = Row::of(windows);
+            let by = slides(
+                selection.exchange,
+                &row,
+                prepared.samples.len(),
+                recipe.evidence.seed,
+                done,
+            );
+            Surrogate {
+                row,
+                by,
+                covariances: Covariances {
+                    largest_mean_square: self.covariances.largest_mean_square,
+                    ..Covariances::default()
+                },
+                ground: None,
+            }
+        });
+        let reader = reader(prepared, self.bands.as_ref(), recipe);
+        let moved = Some((&now.row, &now.by[..]));
+        if now.covariances.packed.len() < windows.len() {
+            push_windows(&mut now.covariances, &reader, windows, moved, false);
+            if levelled(recipe) && now.covariances.packed.len() == windows.len() {
+                now.covariances.level(&selection.sides());
+            }
+            return Ok(news(&self.null));
+        }
+        let all = windows.len();
+        let ground = now
+            .ground
+            .get_or_insert_with(|| Ground::new(&now.covariances, limit(recipe), vec![true; all]));
+        let fourth = wants_fourth(recipe).then_some((&reader, &windows[..]));
+        let whole = ground.space.covariances.len() == all
+            && (fourth.is_none() || ground.fourth.len() == all);
+        if !whole {
+            push_space(ground, &now.covariances, fourth, moved);
+            return Ok(news(&self.null));
+        }
+        let best = recipe.keep == Keep::Word(KeepWord::Best);
+        let dimensions = ground.space.dimensions();
+        let grid = if best {
+            best_grid(dimensions)
+        } else {
+            vec![keep.min(dimensions)]
+        };
+        if let Some(c) = grid.iter().find(|c| !logs_ready(ground, **c, recipe)) {
+            push_logs(ground, *c, method.rho());
+            return Ok(news(&self.null));
+        }
+        let signal = selection.sides();
+        let weights = &now.covariances.weights;
+        let c = if best {
+            choose_keep(ground, &grid, weights, &signal, &method)
+        } else {
+            keep.min(dimensions)
+        };
+        let labels = Labels {
+            signal: &signal,
+            train: &ground.train,
+        };
+        let found = extremes(ground.view(weights, c), labels, &method);
+        self.null.push(found.unwrap_or((f64::INFINITY, 0.0)));
+        self.surrogate = None;
+        if self.null.len() >= plan.count {
+            cards::permuted(self, recipe);
+        }
+        Ok(news(&self.null))
     }
 
     /// One part (the whole, or one fold) at one value of C, in bites.
@@ -859,7 +928,7 @@ impl Work {
             return Ok(progress(Stage::Curve, step + 1, of, false));
         };
         if part == 0 {
-            let v = variances(&target.space, u);
+            let v = variances(&target.space, u, &design.signal);
             let log = match recipe.measure {
                 Measure::Typical => log_typical(&v, design),
                 Measure::Total => log_total(&v, &self.covariances.weights, design, |_| true),
@@ -904,7 +973,7 @@ impl Work {
         let samples: Vec<Vec<f64>> = components
             .map(|c| {
                 let mut out = vec![0.0; all];
-                add_projection(&mut out, prepared, &c.filter, 0, all);
+                super::describing::add_projection(&mut out, prepared, &c.filter, 0, all);
                 out
             })
             .collect();
@@ -934,7 +1003,7 @@ fn progress(stage: Stage, done: u64, of: u64, news: bool) -> Progress {
 }
 
 /// A state that the order of tasks rules out; said rather than panicked about.
-fn lost() -> Problem {
+pub(super) fn lost() -> Problem {
     Problem::new(
         Kind::Contrast,
         "a step began before what it needs",
@@ -991,33 +1060,73 @@ fn singular_fold(f: usize) -> Problem {
     .expected_found("a positive definite covariance", "a singular one")
 }
 
-/// Component number `at` of the describing order: first stronger, first weaker, other stronger, other weaker.
-fn describing(at: usize, up: usize, down: usize) -> (bool, usize) {
-    let firsts: Vec<(bool, usize)> = [(true, up), (false, down)]
-        .into_iter()
-        .filter(|x| x.1 > 0)
-        .map(|x| (x.0, 0))
-        .collect();
-    let others = (1..up)
-        .map(|i| (true, i))
-        .chain((1..down).map(|i| (false, i)));
-    firsts
-        .into_iter()
-        .chain(others)
-        .nth(at)
-        .unwrap_or((up > 0, 0))
+/// What the windows of both sides are read from.
+fn reader<'a>(prepared: &'a Prepared, bands: Option<&'a Banding>, recipe: &Recipe) -> Reader<'a> {
+    let plain = &prepared.samples[..];
+    let lag = lag_samples(&recipe.contrast, prepared.rate_hz);
+    match bands {
+        None => Reader {
+            signal: plain,
+            reference: plain,
+            lag,
+        },
+        Some(bands) => Reader {
+            signal: &bands.signal,
+            reference: if bands.reference.is_empty() {
+                plain
+            } else {
+                &bands.reference
+            },
+            lag,
+        },
+    }
 }
 
-/// Seconds around the event that are drawn: both windows and a quarter of their reach beyond, at least 0.3 s (paired); the
-/// signal window and as much before it (unpaired).
-fn course_span(paired: bool, signal: [f64; 2], reference: [f64; 2]) -> [f64; 2] {
-    let (from, to) = if paired {
-        (signal[0].min(reference[0]), signal[1].max(reference[1]))
-    } else {
-        (signal[0].min(-(signal[1] - signal[0])), signal[1])
+/// A bite of covariances.
+fn push_windows(
+    into: &mut Covariances,
+    reader: &Reader<'_>,
+    windows: &[Window],
+    moved: Option<(&Row, &[usize])>,
+    courses: bool,
+) {
+    let m = reader.channels() as f64;
+    let first = into.packed.len();
+    let Some(next) = windows.get(first) else {
+        return;
     };
-    let more = (0.25 * (to - from)).clamp(0.1, 0.5);
-    [from - more, to + more]
+    let bite = bites(m * m * next.count as f64);
+    for window in windows.iter().skip(first).take(bite) {
+        into.push(reader, window, moved, courses);
+    }
+}
+
+/// Whether the signal side is scaled to the average channel.
+fn levelled(recipe: &Recipe) -> bool {
+    matches!(
+        recipe.contrast,
+        Contrast::Band {
+            reference: BandReference::Broadband,
+            ..
+        }
+    )
+}
+
+/// Largest mean square of a channel.
+fn largest_mean_square(samples: &[Vec<f32>]) -> f64 {
+    let of = |channel: &Vec<f32>| {
+        let sum: f64 = channel.iter().map(|x| f64::from(*x) * f64::from(*x)).sum();
+        sum / channel.len().max(1) as f64
+    };
+    samples.iter().map(of).fold(0.0, f64::max)
+}
+
+fn prepared_channels(work: &Work) -> usize {
+    work.prepared.as_ref().map_or(0, |p| p.samples.len())
+}
+
+fn locked_share(recipe: &Recipe) -> Option<f64> {
+    recipe.hold_back.map(|h| h.last)
 }
 
 fn wants_fourth(recipe: &Recipe) -> bool {
@@ -1047,12 +1156,14 @@ fn push_logs(ground: &mut Ground, keep: usize, rho: f64) -> u64 {
 fn push_space(
     ground: &mut Ground,
     all: &Covariances,
-    fourth: Option<(&[Vec<f32>], &[crate::contrast::windows::Window])>,
+    fourth: Option<(&Reader<'_>, &[Window])>,
+    moved: Option<(&Row, &[usize])>,
 ) -> usize {
     let (m, r) = (all.channels as f64, ground.space.dimensions() as f64);
     for _ in 0..bites(2.0 * m * r * (m + r)) {
         let more = ground.space.push_next(all);
-        let also = fourth.is_some_and(|(samples, windows)| ground.push_fourth(samples, windows));
+        let also =
+            fourth.is_some_and(|(reader, windows)| ground.push_fourth(reader, windows, moved));
         if !more && !also {
             break;
         }
@@ -1108,66 +1219,4 @@ fn best_grid(most: usize) -> Vec<usize> {
         .collect();
     grid.dedup();
     grid
-}
-
-/// The component where windows and courses need it, 0 elsewhere.
-fn partial_series(
-    prepared: &Prepared,
-    filter: &[f64],
-    signals: &[(usize, usize)],
-    references: &[(usize, usize)],
-    onsets: &[(usize, f64)],
-    span: [f64; 2],
-) -> Vec<f64> {
-    let all = prepared.samples.first().map_or(0, Vec::len);
-    let rate = prepared.rate_hz;
-    // Power courses are smoothed over 0.2 s: half of that is needed beyond its ends.
-    let beyond = 0.5 * course::SMOOTHING_S;
-    let around = onsets.iter().map(|(at, _)| {
-        let from = (*at as f64 + (span[0] - beyond) * rate).floor().max(0.0) as usize;
-        let to = (*at as f64 + (span[1] + beyond) * rate).ceil().max(0.0) as usize + 2;
-        (from.min(all), to.min(all))
-    });
-    let mut ranges: Vec<(usize, usize)> = signals
-        .iter()
-        .chain(references)
-        .map(|(first, count)| (*first, first + count))
-        .chain(around)
-        .collect();
-    ranges.sort_unstable();
-    let mut out = vec![0.0; all];
-    let mut done = 0;
-    for (from, to) in ranges {
-        let from = from.max(done);
-        if from < to {
-            add_projection(&mut out, prepared, filter, from, to);
-            done = to;
-        }
-    }
-    out
-}
-
-/// out[from..to] += wᵀX[from..to], in blocks that stay in the cache, four channels at a time.
-fn add_projection(out: &mut [f64], prepared: &Prepared, filter: &[f64], from: usize, to: usize) {
-    const BLOCK: usize = 4096;
-    let mut start = from;
-    while start < to {
-        let end = (start + BLOCK).min(to);
-        let into = &mut out[start..end];
-        let (weights, samples) = (filter.chunks_exact(4), prepared.samples.chunks_exact(4));
-        let rest = weights.remainder().iter().zip(samples.remainder());
-        for (w, x) in weights.zip(samples) {
-            let [a, b, c, d] = [0, 1, 2, 3].map(|i| &x[i][start..end]);
-            for (i, y) in into.iter_mut().enumerate() {
-                *y += (w[0] * f64::from(a[i]) + w[1] * f64::from(b[i]))
-                    + (w[2] * f64::from(c[i]) + w[3] * f64::from(d[i]));
-            }
-        }
-        for (w, channel) in rest {
-            for (y, x) in into.iter_mut().zip(&channel[start..end]) {
-                *y += w * f64::from(*x);
-            }
-        }
-        start = end;
-    }
 }

@@ -3,7 +3,7 @@
 //! A [`Direction`] u lives in the whitened space; its filter is w = V diag(e)^(−1/2) u ([`Space::filter`]) and its variance in
 //! window k is uᵀ C_k u. That holds for both measures: a generalised eigenvector w_V in V_C coordinates is u = diag(e)^(1/2) w_V.
 use super::linalg::{
-    Packed, add_scaled, eigenvalues, eigh, generalised_eigh, packed_len, quadratic, unpack,
+    Packed, add_scaled, eigenvalues, eigh, generalised_eigh, gram, packed_len, unpack,
 };
 use super::space::{Space, pooled};
 use crate::recipe::{Measure, Shrink, ShrinkWord};
@@ -108,9 +108,13 @@ pub fn mean_log_difference(logs: &[Packed], labels: Labels<'_>, keep: usize) -> 
 fn sides(view: View<'_>, labels: Labels<'_>) -> (DMatrix<f64>, DMatrix<f64>) {
     let len = packed_len(view.keep);
     let side = |signal: bool| {
-        let packed = pooled(&view.space.covariances, view.weights, len, |k| {
-            labels.train[k] && labels.signal[k] == signal
-        });
+        let packed = if signal && !view.space.courses.is_empty() {
+            repeated(view, labels)
+        } else {
+            pooled(&view.space.covariances, view.weights, len, |k| {
+                labels.train[k] && labels.signal[k] == signal
+            })
+        };
         let mut full = unpack(&packed, view.keep);
         for i in 0..view.keep {
             for j in 0..view.keep {
@@ -120,6 +124,29 @@ fn sides(view: View<'_>, labels: Labels<'_>) -> (DMatrix<f64>, DMatrix<f64>) {
         full
     };
     (side(true), side(false))
+}
+
+/// Number of trials times the covariance of their signed average, whitened and packed: the average's power in units of what is
+/// left of as many trials that share nothing (de Cheveigné & Simon 2008).
+fn repeated(view: View<'_>, labels: Labels<'_>) -> Packed {
+    let (n, c) = (view.space.dimensions(), view.keep);
+    let stride = c.next_multiple_of(4);
+    let trials: Vec<usize> = (0..view.space.courses.len())
+        .filter(|t| labels.train[2 * t])
+        .collect();
+    let samples = view.space.courses.first().map_or(0, |z| z.len() / n);
+    let mut sum = vec![0.0; stride * samples];
+    for t in &trials {
+        let sign = if labels.signal[2 * t] { 1.0 } else { -1.0 };
+        let rows = view.space.courses[*t].chunks_exact(n);
+        for (into, row) in sum.chunks_exact_mut(stride).zip(rows) {
+            add_scaled(into, &row[..c], sign);
+        }
+    }
+    let scale = 1.0 / (trials.len().max(1) as f64 * (samples.max(2) - 1) as f64);
+    let mut packed = gram(&sum, c, stride);
+    packed.iter_mut().for_each(|x| *x *= scale);
+    packed
 }
 
 fn shrunk(a: &DMatrix<f64>, gamma: f64) -> DMatrix<f64> {
@@ -270,9 +297,10 @@ pub fn inner_folds(labels: Labels<'_>, folds: usize) -> Vec<Option<usize>> {
 pub fn log_total(view: View<'_>, signal: &[bool], of: &[bool], u: &[f64]) -> f64 {
     let mut sums = [0.0; 2];
     let mut weights = [0.0; 2];
+    let variances = view.space.variances(u, signal, |k| of[k]);
     for k in (0..of.len()).filter(|k| of[*k]) {
         let side = usize::from(signal[k]);
-        sums[side] += view.weights[k] * quadratic(&view.space.covariances[k], u);
+        sums[side] += view.weights[k] * variances[k];
         weights[side] += view.weights[k];
     }
     (sums[1] / weights[1]).ln() - (sums[0] / weights[0]).ln()

@@ -7,7 +7,8 @@
 //! # Rank
 //! Samples are stored as f32, so every channel carries rounding noise of variance about 2^(−48)/12 of its mean square. A dimension
 //! is counted when its eigenvalue exceeds ten times that noise and M·ε of the largest eigenvalue.
-use super::linalg::{Packed, add_scaled, eigh, gram, packed_len, unpack};
+use super::linalg::{Packed, add_scaled, eigh, gram, packed_len, quadratic, unpack};
+use super::read::{Reader, Row};
 use super::windows::Window;
 use nalgebra::DMatrix;
 
@@ -22,19 +23,31 @@ pub struct Covariances {
     pub weights: Vec<f64>,
     /// Largest mean square of a channel in a window, its mean included.
     pub largest_mean_square: f64,
+    /// What repeats: the samples of each trial about its mean, sample-major (`samples × channels`); empty for other kinds.
+    pub courses: Vec<Vec<f64>>,
 }
 
 impl Covariances {
-    /// Adds the covariance of the next window of `samples` (`channels × samples`).
-    pub fn push(&mut self, samples: &[Vec<f32>], window: &Window) {
-        let (m, n) = (samples.len(), window.count);
+    /// Adds the covariance of the next window.
+    ///
+    /// `moved`: the row of segments, and by how many samples each channel is moved along it (surrogates). `courses`: the window's
+    /// samples are kept as well, if it is a signal window.
+    pub fn push(
+        &mut self,
+        reader: &Reader<'_>,
+        window: &Window,
+        moved: Option<(&Row, &[usize])>,
+        courses: bool,
+    ) {
+        let (m, n) = (reader.channels(), reader.values(window));
         self.channels = m;
         let stride = m.next_multiple_of(4);
         let mut panel = vec![0.0; stride * n];
-        for (c, channel) in samples.iter().enumerate() {
-            let part = &channel[window.first..window.first + n];
+        let mut part = Vec::with_capacity(window.count);
+        for c in 0..m {
+            reader.channel(window, c, moved.map(|(row, by)| (row, by[c])), &mut part);
             let (mut sum, mut square) = (0.0, 0.0);
-            for x in part {
+            for x in &part {
                 let x = f64::from(*x);
                 sum += x;
                 square += x * x;
@@ -50,6 +63,27 @@ impl Covariances {
         packed.iter_mut().for_each(|x| *x /= weight);
         self.packed.push(packed);
         self.weights.push(weight);
+        if courses && window.signal {
+            let rows = panel.chunks_exact(stride).flat_map(|row| &row[..m]);
+            self.courses.push(rows.copied().collect());
+        }
+    }
+
+    /// Scales the signal covariances so that the average channel has a ratio of 1.
+    pub fn level(&mut self, signal: &[bool]) {
+        let side = |wanted: bool| self.pooled(|k| signal[k] == wanted);
+        let (s, r) = (side(true), side(false));
+        let shares = (0..self.channels).map(|i| {
+            let at = packed_len(i) + i;
+            s[at] / r[at]
+        });
+        let usable: Vec<f64> = shares.filter(|x| x.is_finite() && *x > 0.0).collect();
+        let mean = usable.iter().sum::<f64>() / usable.len().max(1) as f64;
+        if mean > 0.0 {
+            for (packed, _) in self.packed.iter_mut().zip(signal).filter(|(_, s)| **s) {
+                packed.iter_mut().for_each(|x| *x /= mean);
+            }
+        }
     }
 
     /// Windows whose whole variance is below 1e-8 of the median window's: an amplifier that was blanked, a lead that was off.
@@ -68,8 +102,23 @@ impl Covariances {
     pub fn keep_only(&mut self, kept: &[bool]) {
         let mut at = kept.iter();
         self.packed.retain(|_| at.next().copied().unwrap_or(true));
+        // A trial's two windows hold the same samples, so they are kept or dropped together.
+        let mut at = kept.iter().step_by(2);
+        self.courses.retain(|_| at.next().copied().unwrap_or(true));
         let mut at = kept.iter();
         self.weights.retain(|_| at.next().copied().unwrap_or(true));
+    }
+
+    /// As [`Space::variances`] for a channel.
+    pub fn channel_variances(
+        &self,
+        i: usize,
+        signal: &[bool],
+        of: impl Fn(usize) -> bool,
+    ) -> Vec<f64> {
+        let m = self.channels;
+        let pick = |course: &Vec<f64>| course.iter().skip(i).step_by(m).copied().collect();
+        one_by_one(&self.packed, &self.courses, i, pick, signal, of)
     }
 
     /// Weighted mean over the windows that `include` names.
@@ -115,6 +164,8 @@ pub struct Space {
     pub whitening: DMatrix<f64>,
     /// Whitened covariances of the windows done so far, packed.
     pub covariances: Vec<Packed>,
+    /// What repeats: whitened samples of each trial (`samples × dimensions`, row by row); empty for other kinds.
+    pub courses: Vec<Vec<f64>>,
 }
 
 impl Space {
@@ -137,6 +188,7 @@ impl Space {
             rank,
             whitening,
             covariances: Vec::new(),
+            courses: Vec::new(),
         }
     }
 
@@ -161,7 +213,51 @@ impl Space {
             }
         }
         self.covariances.push(out);
+        // The signal window of a trial comes first of its two.
+        if let Some(course) = all.courses.get(k / 2).filter(|_| k % 2 == 0) {
+            self.courses.push(self.whiten(course));
+        }
         true
+    }
+
+    /// As [`Self::variances`] for principal component `i`, scaled to a pooled variance of 1.
+    pub fn component_variances(
+        &self,
+        i: usize,
+        signal: &[bool],
+        of: impl Fn(usize) -> bool,
+    ) -> Vec<f64> {
+        let n = self.dimensions();
+        let pick = |course: &Vec<f64>| course.iter().skip(i).step_by(n).copied().collect();
+        one_by_one(&self.covariances, &self.courses, i, pick, signal, of)
+    }
+
+    fn whiten(&self, course: &[f64]) -> Vec<f64> {
+        let (n, m) = (self.dimensions(), self.whitening.ncols());
+        let samples = DMatrix::from_column_slice(m, course.len() / m, course);
+        let out = &self.whitening * samples;
+        debug_assert_eq!(out.nrows(), n);
+        out.as_slice().to_vec()
+    }
+
+    /// Variance of each window under direction `u`, NaN for windows that `of` does not name.
+    ///
+    /// What repeats has no variance of its own in a trial: there the signal window of trial k holds the covariance of y_k = uᵀZ_k
+    /// with the sum over the trials named (signed by their label), so that the mean over them is their number times the variance
+    /// of their average.
+    pub fn variances(&self, u: &[f64], signal: &[bool], of: impl Fn(usize) -> bool) -> Vec<f64> {
+        let plain = |k: usize| quadratic(&self.covariances[k], u);
+        if self.courses.is_empty() {
+            let one = |k: usize| if of(k) { plain(k) } else { f64::NAN };
+            return (0..self.covariances.len()).map(one).collect();
+        }
+        let n = self.dimensions();
+        let project = |course: &Vec<f64>| -> Vec<f64> {
+            let rows = course.chunks_exact(n);
+            rows.map(|row| row.iter().zip(u).map(|(x, u)| x * u).sum())
+                .collect()
+        };
+        repeats(&self.courses, project, signal, of, |t| plain(2 * t))
     }
 
     /// w = V diag(e)^(−1/2) u in channel space, for u of the leading dimensions.
@@ -175,6 +271,63 @@ impl Space {
             })
             .collect()
     }
+}
+
+/// Variances of one coordinate: diagonal entries, or, where trials repeat, their courses.
+fn one_by_one(
+    packed: &[Packed],
+    courses: &[Vec<f64>],
+    i: usize,
+    pick: impl Fn(&Vec<f64>) -> Vec<f64>,
+    signal: &[bool],
+    of: impl Fn(usize) -> bool,
+) -> Vec<f64> {
+    let plain = |k: usize| packed[k][packed_len(i) + i];
+    if courses.is_empty() {
+        let one = |k: usize| if of(k) { plain(k) } else { f64::NAN };
+        return (0..packed.len()).map(one).collect();
+    }
+    repeats(courses, pick, signal, of, |t| plain(2 * t))
+}
+
+/// Both windows of each trial as [`Space::variances`] has them, from any projection of the trials' samples.
+pub fn repeats(
+    courses: &[Vec<f64>],
+    project: impl Fn(&Vec<f64>) -> Vec<f64>,
+    signal: &[bool],
+    of: impl Fn(usize) -> bool,
+    plain: impl Fn(usize) -> f64,
+) -> Vec<f64> {
+    let mut out = vec![f64::NAN; 2 * courses.len()];
+    let trials: Vec<(usize, Vec<f64>)> = courses
+        .iter()
+        .enumerate()
+        .filter(|(t, _)| of(2 * t))
+        .map(|(t, course)| {
+            let mut y = project(course);
+            if !signal[2 * t] {
+                y.iter_mut().for_each(|x| *x = -*x);
+            }
+            (t, y)
+        })
+        .collect();
+    let length = trials.first().map_or(0, |(_, y)| y.len());
+    let mut sum = vec![0.0; length];
+    for (_, y) in &trials {
+        add_scaled(&mut sum, y, 1.0);
+    }
+    for (t, y) in &trials {
+        let shared: f64 = y.iter().zip(&sum).map(|(a, b)| a * b).sum();
+        // A flipped trial has its labels exchanged: its signal window stands second.
+        let (own, other) = if signal[2 * t] {
+            (2 * t, 2 * t + 1)
+        } else {
+            (2 * t + 1, 2 * t)
+        };
+        out[own] = shared / (length as f64 - 1.0);
+        out[other] = plain(*t);
+    }
+    out
 }
 
 #[cfg(test)]
@@ -196,16 +349,19 @@ mod tests {
         samples.push(samples[0].clone());
         let mut all = Covariances::default();
         for k in 0..8 {
-            all.push(
-                &samples,
-                &Window {
-                    first: 50 * k,
-                    count: 50,
-                    signal: k % 2 == 0,
-                    trial: k / 2,
-                    onset_s: 0.0,
-                },
-            );
+            let reader = Reader {
+                signal: &samples,
+                reference: &samples,
+                lag: 0,
+            };
+            let window = Window {
+                first: 50 * k,
+                count: 50,
+                signal: k % 2 == 0,
+                trial: k / 2,
+                onset_s: 0.0,
+            };
+            all.push(&reader, &window, None, false);
         }
         let mut space = Space::new(&all, 150, |_| true);
         assert_eq!(space.rank, 5);

@@ -3,12 +3,27 @@
 //! # Time
 //! An event window is [onset+from, onset+to): its first sample is round((onset+from)·f) on the file's clock and it holds
 //! round((to−from)·f) samples, halves away from zero. It is dropped, with its reason counted, where it leaves the recording
-//! (`outside`), crosses a gap (`gap`), or, in a paired contrast, where its partner is dropped (`partner`).
+//! (`outside`), crosses a gap (`gap`), touches a span that is not to be used (`marked`) or the share that is locked away (`locked`),
+//! or, in a paired contrast, where its partner is dropped (`partner`). A window that lasts until another event is dropped where
+//! none follows before the next of its own kind (`unanswered`) or where it comes too soon (`short`); one of too many where counts
+//! are made equal is `drawn out`.
+//!
+//! # Pieces
+//! Spans, and the whole recording for contrasts without windows, are cut into pieces of one length ([`super::pieces`]), so that a
+//! typical piece can be spoken of.
+use super::pieces::{Runs, both, cut, labelled, merged, runs, without};
 use crate::error::{Kind, Problem, Result};
-use crate::recipe::{Contrast, EventWindow};
+use crate::recipe::{Contrast, EventWindow, HoldBack, Recipe, Spans, Within};
 use crate::recording::{Event, Stretch};
 use crate::sheet::{SideCard, Trial, WindowsCard};
+use rand_chacha::ChaCha8Rng;
+use rand_chacha::rand_core::{Rng, SeedableRng};
 use std::collections::{BTreeMap, BTreeSet};
+
+/// Fewest samples a window may have: a variance needs several.
+const LEAST_SAMPLES: usize = 3;
+/// Stream of the draw that makes counts equal.
+const STREAM_EQUAL: u64 = 3;
 
 /// One used window.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -21,15 +36,45 @@ pub struct Window {
     pub signal: bool,
     /// Index of its pair, or of itself among its side's windows when unpaired.
     pub trial: usize,
-    /// Onset of its event.
+    /// Onset of its event, or its own start.
     pub onset_s: f64,
+}
+
+/// What is exchanged under the null hypothesis of a contrast.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Exchange {
+    /// The two sides of a pair.
+    Swap,
+    /// The labels of all windows.
+    Shuffle,
+    /// The labels of pieces in a row, all together along the row.
+    Shift,
+    /// The sign of a trial.
+    Flip,
+    /// Each channel's samples along the row of segments, by any number of samples: surrogates with the channels' own spectra.
+    Slide,
+    /// Each channel's windows among the trials, whole: surrogates with the channels' own spectra.
+    SlideWindows,
+}
+
+impl Exchange {
+    /// Whether both sides read the prepared samples as they are, each in windows of its own.
+    pub fn labels_alone(self) -> bool {
+        matches!(self, Exchange::Swap | Exchange::Shuffle | Exchange::Shift)
+    }
+    /// Whether arrangements are made of the channels' samples instead of the labels.
+    pub fn of_channels(self) -> bool {
+        matches!(self, Exchange::Slide | Exchange::SlideWindows)
+    }
 }
 
 /// The windows of a contrast.
 #[derive(Debug, Clone)]
 pub struct Selection {
-    /// Both sides tied to the same event.
+    /// Both sides tied to the same event, or to the same segment.
     pub paired: bool,
+    /// What the null hypothesis exchanges.
+    pub exchange: Exchange,
     /// Used windows; paired: signal then reference of trial 0, of trial 1 …; unpaired: in order of time.
     pub windows: Vec<Window>,
     /// For the sheet.
@@ -38,35 +83,91 @@ pub struct Selection {
     pub warnings: Vec<String>,
 }
 
+/// Where windows may lie.
+#[derive(Debug, Clone)]
+struct Room<'a> {
+    stretches: &'a [Stretch],
+    rate_hz: f64,
+    /// Not to be used.
+    marked: Runs,
+    /// Locked away.
+    locked: Runs,
+}
+
 /// Where a stretch of time lies in the samples.
 enum Placed {
     At(usize),
-    Outside,
-    Gap,
+    Dropped(&'static str),
 }
 
-fn place(stretches: &[Stretch], rate_hz: f64, from_s: f64, count: usize) -> Placed {
-    let first = (from_s * rate_hz).round();
-    if first.abs() > 1e15 || count as u64 > 1 << 50 {
-        return Placed::Outside;
-    }
-    let first = first as i64;
-    let end = first + count as i64;
-    let clock = |s: &Stretch| (s.onset_s * rate_hz).round() as i64;
-    for s in stretches {
-        let start = clock(s);
-        if first >= start && end <= start + s.count as i64 {
-            return Placed::At(s.first + (first - start) as usize);
+fn clock(stretch: &Stretch, rate_hz: f64) -> i64 {
+    (stretch.onset_s * rate_hz).round() as i64
+}
+
+impl<'a> Room<'a> {
+    fn new(recipe: &Recipe, stretches: &'a [Stretch], rate_hz: f64) -> Self {
+        Room {
+            stretches,
+            rate_hz,
+            marked: runs(&recipe.not_used, rate_hz),
+            locked: locked(recipe.hold_back, stretches, rate_hz),
         }
     }
-    let whole = stretches
-        .first()
-        .map(clock)
-        .zip(stretches.last().map(|s| clock(s) + s.count as i64));
-    match whole {
-        Some((start, stop)) if first >= start && end <= stop => Placed::Gap,
-        _ => Placed::Outside,
+
+    /// All runs that windows may lie in.
+    fn open(&self) -> Runs {
+        let all = merged(
+            self.stretches
+                .iter()
+                .map(|s| {
+                    let start = clock(s, self.rate_hz);
+                    [start, start + s.count as i64]
+                })
+                .collect(),
+        );
+        without(&without(&all, &self.marked), &self.locked)
     }
+
+    fn place(&self, from_s: f64, count: usize) -> Placed {
+        let first = (from_s * self.rate_hz).round();
+        if first.abs() > 1e15 || count as u64 > 1 << 50 {
+            return Placed::Dropped("outside");
+        }
+        let run = [first as i64, first as i64 + count as i64];
+        let touches = |list: &Runs| !both(&[run], list).is_empty();
+        let inside = self.stretches.iter().find_map(|s| {
+            let start = clock(s, self.rate_hz);
+            (run[0] >= start && run[1] <= start + s.count as i64)
+                .then(|| s.first + (run[0] - start) as usize)
+        });
+        let whole = self.stretches.first().map(|s| clock(s, self.rate_hz)).zip(
+            self.stretches
+                .last()
+                .map(|s| clock(s, self.rate_hz) + s.count as i64),
+        );
+        match (inside, whole) {
+            (Some(_), _) if touches(&self.locked) => Placed::Dropped("locked"),
+            (Some(_), _) if touches(&self.marked) => Placed::Dropped("marked"),
+            (Some(at), _) => Placed::At(at),
+            (None, Some((start, stop))) if run[0] >= start && run[1] <= stop => {
+                Placed::Dropped("gap")
+            }
+            _ => Placed::Dropped("outside"),
+        }
+    }
+}
+
+/// The share of the recording's duration that is locked away at its end, by its clock.
+fn locked(hold: Option<HoldBack>, stretches: &[Stretch], rate_hz: f64) -> Runs {
+    let (Some(hold), Some(first), Some(last)) = (hold, stretches.first(), stretches.last()) else {
+        return Runs::new();
+    };
+    let (start, end) = (
+        clock(first, rate_hz),
+        clock(last, rate_hz) + last.count as i64,
+    );
+    let from = end - (hold.last * (end - start) as f64).round() as i64;
+    vec![[from, end]]
 }
 
 /// Samples a window of this length holds.
@@ -76,84 +177,250 @@ pub fn sample_count(window: &EventWindow, rate_hz: f64) -> usize {
 
 /// The sample nearest to a time, if the recording holds it.
 pub fn sample_at(stretches: &[Stretch], rate_hz: f64, at_s: f64) -> Option<usize> {
-    match place(stretches, rate_hz, at_s, 1) {
+    let room = Room {
+        stretches,
+        rate_hz,
+        marked: Runs::new(),
+        locked: Runs::new(),
+    };
+    match room.place(at_s, 1) {
         Placed::At(sample) => Some(sample),
-        _ => None,
+        Placed::Dropped(_) => None,
     }
+}
+
+/// Events of exactly this label; where there are none, those that fit the pattern, in which `*` stands for any text.
+pub fn named<'a>(label: &str, events: &'a [Event]) -> impl Iterator<Item = &'a Event> {
+    let exact = events.iter().any(|e| e.label == label);
+    let parts: Vec<String> = label.split('*').map(str::to_owned).collect();
+    events.iter().filter(move |e| {
+        if exact || parts.len() == 1 {
+            e.label == parts.join("*")
+        } else {
+            fits(&e.label, &parts)
+        }
+    })
+}
+
+/// Whether a text is made of these parts in this order, with anything between them.
+fn fits(text: &str, parts: &[String]) -> bool {
+    let (Some(head), Some(tail)) = (parts.first(), parts.last()) else {
+        return false;
+    };
+    let Some(mut rest) = text.strip_prefix(head.as_str()) else {
+        return false;
+    };
+    for part in &parts[1..parts.len() - 1] {
+        match rest.find(part.as_str()) {
+            Some(at) => rest = &rest[at + part.len()..],
+            None => return false,
+        }
+    }
+    rest.ends_with(tail.as_str())
+}
+
+/// The events of a window, in order of time: those of its labels, less what it leaves out.
+pub fn events_of<'a>(window: &EventWindow, events: &'a [Event]) -> Vec<&'a Event> {
+    let mut all: Vec<&Event> = window.labels().flat_map(|l| named(l, events)).collect();
+    all.sort_by(|a, b| a.onset_s.total_cmp(&b.onset_s));
+    all.dedup_by(|a, b| std::ptr::eq(*a, *b));
+    let count = all.len();
+    let first = window.first.unwrap_or(count);
+    let from = count - window.last.unwrap_or(count).min(count);
+    all.into_iter()
+        .enumerate()
+        .filter(|(i, _)| *i < first && *i >= from && !window.leave_out.contains(&(i + 1)))
+        .map(|(_, event)| event)
+        .collect()
 }
 
 /// Refuses labels that the recording does not hold and windows without length.
 pub fn check(contrast: &Contrast, events: &[Event], rate_hz: f64) -> Result<()> {
-    let Contrast::Windows { signal, reference } = contrast else {
-        return Err(not_yet());
+    let sides: &[&str] = match contrast {
+        Contrast::Windows { .. } => &["signal windows", "reference windows"],
+        _ => &["windows"],
     };
-    for (side, window) in [("signal", signal), ("reference", reference)] {
-        if !events.iter().any(|e| e.label == window.event) {
-            let mut known: BTreeMap<&str, usize> = BTreeMap::new();
-            events
-                .iter()
-                .for_each(|e| *known.entry(&e.label).or_default() += 1);
-            let list: Vec<String> = known
-                .iter()
-                .take(12)
-                .map(|(label, n)| format!("{label} ({n})"))
-                .collect();
-            let found = if list.is_empty() {
-                "no events at all".to_owned()
-            } else {
-                list.join(", ")
-            };
-            return Err(Problem::new(
-                Kind::Contrast,
-                format!("the recording holds no event \"{}\"", window.event),
-                "choose one of the events that it holds, or add an events table",
-            )
-            .at(format!("{side} windows"))
-            .expected_found(format!("events labelled \"{}\"", window.event), found));
+    for (side, window) in sides.iter().zip(contrast.around()) {
+        for label in window.labels().chain(window.until.as_deref()) {
+            if named(label, events).next().is_none() {
+                return Err(unknown(label, events, side));
+            }
         }
         let count = sample_count(window, rate_hz);
-        if count < 3 {
+        if count < LEAST_SAMPLES && window.until.is_none() {
             return Err(Problem::new(
                 Kind::Contrast,
-                format!("the {side} windows are too short"),
+                format!("the {side} are too short"),
                 "make the windows longer: a variance needs several samples",
             )
-            .at(format!(
-                "{side} windows, {} to {} s",
-                window.from_s, window.to_s
-            ))
+            .at(format!("{side}, {} to {} s", window.from_s, window.to_s))
             .expected_found("at least 3 samples", format!("{count} at {rate_hz} Hz")));
         }
     }
-    Ok(())
+    for (side, spans) in contrast.spans() {
+        if let Spans::Label(label) = spans
+            && !spans.is_rest()
+            && labelled(label, events).is_empty()
+        {
+            return Err(match named(label, events).next() {
+                None => unknown(label, events, side),
+                Some(_) => Problem::new(
+                    Kind::Contrast,
+                    format!("the events \"{label}\" have no duration"),
+                    "choose annotations that last, mark spans, or use windows around these events",
+                )
+                .at(format!("spans, {side}"))
+                .expected_found("annotations with a duration above 0 s", "moments"),
+            });
+        }
+    }
+    check_band_at(contrast, rate_hz)?;
+    check_pieces(contrast, rate_hz)
+}
+
+fn unknown(label: &str, events: &[Event], side: &str) -> Problem {
+    let mut known: BTreeMap<&str, usize> = BTreeMap::new();
+    events
+        .iter()
+        .for_each(|e| *known.entry(&e.label).or_default() += 1);
+    let list: Vec<String> = known
+        .iter()
+        .take(12)
+        .map(|(label, n)| format!("{label} ({n})"))
+        .collect();
+    let found = if list.is_empty() {
+        "no events at all".to_owned()
+    } else {
+        list.join(", ")
+    };
+    Problem::new(
+        Kind::Contrast,
+        format!("the recording holds no event \"{label}\""),
+        "choose one of the events that it holds, or add an events table",
+    )
+    .at(side.to_owned())
+    .expected_found(format!("events labelled \"{label}\""), found)
+}
+
+/// Refuses a band that reaches half the sampling rate.
+fn check_band_at(contrast: &Contrast, rate_hz: f64) -> Result<()> {
+    let Contrast::Band {
+        centre_hz,
+        half_width_hz,
+        reference,
+        ..
+    } = contrast
+    else {
+        return Ok(());
+    };
+    let reach = super::band::reach(*reference) * half_width_hz;
+    if centre_hz + reach < rate_hz / 2.0 {
+        return Ok(());
+    }
+    Err(Problem::new(
+        Kind::Contrast,
+        "the band, with what it is compared with, reaches beyond half the sampling rate",
+        "lower the centre or narrow the band",
+    )
+    .at("contrast.centre_hz")
+    .expected_found(
+        format!("a centre below {:.2} Hz", rate_hz / 2.0 - reach),
+        format!("{centre_hz} Hz"),
+    ))
+}
+
+/// Length of the pieces in seconds: as the recipe says, or by the kind's rule.
+pub fn piece_s(contrast: &Contrast) -> Option<f64> {
+    match contrast {
+        Contrast::Spans { piece_s, .. } => Some(piece_s.unwrap_or(1.0)),
+        Contrast::Band {
+            piece_s,
+            half_width_hz,
+            ..
+        } => Some(piece_s.unwrap_or((4.0 / half_width_hz).clamp(1.0, 10.0))),
+        Contrast::Slow { piece_s, lag_s, .. } => Some(piece_s.unwrap_or((10.0 * lag_s).max(1.0))),
+        Contrast::Windows { .. } | Contrast::Repeatable(_) => None,
+    }
+}
+
+/// Samples that a lag takes off each window, 0 for other kinds.
+pub fn lag_samples(contrast: &Contrast, rate_hz: f64) -> usize {
+    match contrast {
+        Contrast::Slow { lag_s, .. } => (lag_s * rate_hz).round().max(1.0) as usize,
+        _ => 0,
+    }
+}
+
+fn check_pieces(contrast: &Contrast, rate_hz: f64) -> Result<()> {
+    let Some(piece_s) = piece_s(contrast) else {
+        return Ok(());
+    };
+    let lag = lag_samples(contrast, rate_hz);
+    let length = match contrast.around().first() {
+        Some(window) => sample_count(window, rate_hz),
+        None => (piece_s * rate_hz).round() as usize,
+    };
+    if length >= lag + LEAST_SAMPLES {
+        return Ok(());
+    }
+    Err(Problem::new(
+        Kind::Contrast,
+        "the pieces are too short",
+        "make them longer, or the lag shorter: a variance needs several samples",
+    )
+    .at("contrast.piece_s")
+    .expected_found(
+        format!("at least {} samples", lag + LEAST_SAMPLES),
+        format!("{length} at {rate_hz} Hz"),
+    ))
 }
 
 /// Finds the windows of both sides. `events` in order of time.
 pub fn select(
-    contrast: &Contrast,
+    recipe: &Recipe,
     events: &[Event],
     stretches: &[Stretch],
     rate_hz: f64,
 ) -> Result<Selection> {
+    let contrast = &recipe.contrast;
     check(contrast, events, rate_hz)?;
-    let Contrast::Windows { signal, reference } = contrast else {
-        return Err(not_yet());
-    };
-    let selection = if signal.event == reference.event {
-        paired(signal, reference, events, stretches, rate_hz)
-    } else {
-        unpaired(signal, reference, events, stretches, rate_hz)
+    let room = Room::new(recipe, stretches, rate_hz);
+    let selection = match contrast {
+        Contrast::Windows { signal, reference } if signal.same_events(reference) => {
+            let of = events_of(signal, events);
+            paired([signal, reference], &of, events, &room, Exchange::Swap)
+        }
+        Contrast::Windows { signal, reference } => {
+            unpaired(signal, reference, events, &room, recipe.evidence.seed)
+        }
+        Contrast::Repeatable(window) => {
+            let of = events_of(window, events);
+            paired([window, window], &of, events, &room, Exchange::Flip)
+        }
+        Contrast::Spans {
+            signal, reference, ..
+        } => spans(contrast, [signal, reference], events, &room)?,
+        Contrast::Band { within, .. } | Contrast::Slow { within, .. } => match within {
+            Some(Within::Window(window)) => {
+                let of = events_of(window, events);
+                paired([window, window], &of, events, &room, Exchange::SlideWindows)
+            }
+            Some(Within::Spans(list)) => {
+                let inside = both(&span_runs(list, events, rate_hz), &room.open());
+                segments(contrast, &inside, &room)
+            }
+            None => segments(contrast, &room.open(), &room),
+        },
     };
     selection.enough()?;
     Ok(selection)
 }
 
-fn not_yet() -> Problem {
-    Problem::new(
-        Kind::Contrast,
-        "this kind of contrast is read, and not computed yet",
-        "choose windows around events",
-    )
+fn span_runs(spans: &Spans, events: &[Event], rate_hz: f64) -> Runs {
+    match spans {
+        Spans::Times(times) => runs(times, rate_hz),
+        Spans::Label(label) => runs(&labelled(label, events), rate_hz),
+    }
 }
 
 fn side_card(count: usize, rate_hz: f64) -> SideCard {
@@ -169,58 +436,89 @@ fn drop_one(card: &mut SideCard, reason: &str) {
     *card.dropped.entry(reason.to_owned()).or_default() += 1;
 }
 
-fn reason(placed: &Placed) -> Option<&'static str> {
-    match placed {
-        Placed::At(_) => None,
-        Placed::Outside => Some("outside"),
-        Placed::Gap => Some("gap"),
+/// Where the window of one event lies, and how many samples it holds.
+fn window_at(
+    window: &EventWindow,
+    event: &Event,
+    events: &[Event],
+    room: &Room<'_>,
+) -> (Placed, usize) {
+    let from_s = event.onset_s + window.from_s;
+    let Some(until) = &window.until else {
+        let count = sample_count(window, room.rate_hz);
+        return (room.place(from_s, count), count);
+    };
+    let after = |e: &&Event| e.onset_s > event.onset_s;
+    let answer = named(until, events).find(after);
+    let own = window
+        .labels()
+        .filter_map(|l| named(l, events).find(after))
+        .map(|e| e.onset_s)
+        .fold(f64::INFINITY, f64::min);
+    let Some(answer) = answer.filter(|a| a.onset_s <= own) else {
+        return (Placed::Dropped("unanswered"), 0);
+    };
+    let count = ((answer.onset_s + window.to_s - from_s) * room.rate_hz)
+        .round()
+        .max(0.0) as usize;
+    if count < LEAST_SAMPLES {
+        return (Placed::Dropped("short"), count);
     }
+    (room.place(from_s, count), count)
+}
+
+/// The middle of the lengths that were used, for the cards.
+fn middle(windows: &[Window], signal: bool, otherwise: usize) -> usize {
+    let mut counts: Vec<usize> = windows
+        .iter()
+        .filter(|w| w.signal == signal)
+        .map(|w| w.count)
+        .collect();
+    counts.sort_unstable();
+    counts.get(counts.len() / 2).copied().unwrap_or(otherwise)
 }
 
 fn paired(
-    signal: &EventWindow,
-    reference: &EventWindow,
+    sides: [&EventWindow; 2],
+    of: &[&Event],
     events: &[Event],
-    stretches: &[Stretch],
-    rate_hz: f64,
+    room: &Room<'_>,
+    exchange: Exchange,
 ) -> Selection {
-    let (ns, nr) = (
-        sample_count(signal, rate_hz),
-        sample_count(reference, rate_hz),
-    );
     let mut card = WindowsCard {
         paired: true,
-        signal: side_card(ns, rate_hz),
-        reference: side_card(nr, rate_hz),
+        signal: side_card(0, room.rate_hz),
+        reference: side_card(0, room.rate_hz),
         trials: Vec::new(),
     };
     let mut windows = Vec::new();
-    for event in events.iter().filter(|e| e.label == signal.event) {
-        let s = place(stretches, rate_hz, event.onset_s + signal.from_s, ns);
-        let r = place(stretches, rate_hz, event.onset_s + reference.from_s, nr);
+    for event in of {
+        let [(s, ns), (r, nr)] = sides.map(|w| window_at(w, event, events, room));
         let mut dropped = None;
-        if let (Placed::At(s), Placed::At(r)) = (&s, &r) {
-            let trial = card.signal.used;
-            windows.push(Window {
-                first: *s,
-                count: ns,
-                signal: true,
-                trial,
-                onset_s: event.onset_s,
-            });
-            windows.push(Window {
-                first: *r,
-                count: nr,
-                signal: false,
-                trial,
-                onset_s: event.onset_s,
-            });
-            card.signal.used += 1;
-            card.reference.used += 1;
-        } else {
-            drop_one(&mut card.signal, reason(&s).unwrap_or("partner"));
-            drop_one(&mut card.reference, reason(&r).unwrap_or("partner"));
-            dropped = reason(&s).or(reason(&r)).map(str::to_owned);
+        match (s, r) {
+            (Placed::At(s), Placed::At(r)) => {
+                let window = |first, count, signal| Window {
+                    first,
+                    count,
+                    signal,
+                    trial: card.signal.used,
+                    onset_s: event.onset_s,
+                };
+                windows.push(window(s, ns, true));
+                windows.push(window(r, nr, false));
+                card.signal.used += 1;
+                card.reference.used += 1;
+            }
+            (s, r) => {
+                let reason = |placed: &Placed| match placed {
+                    Placed::At(_) => None,
+                    Placed::Dropped(reason) => Some(*reason),
+                };
+                let (s, r) = (reason(&s), reason(&r));
+                drop_one(&mut card.signal, s.unwrap_or("partner"));
+                drop_one(&mut card.reference, r.unwrap_or("partner"));
+                dropped = s.or(r).map(str::to_owned);
+            }
         }
         card.trials.push(Trial {
             onset_s: event.onset_s,
@@ -228,9 +526,21 @@ fn paired(
             dropped,
         });
     }
-    let warnings = overlap_warning(&windows);
+    for (side, card, signal) in [
+        (sides[0], &mut card.signal, true),
+        (sides[1], &mut card.reference, false),
+    ] {
+        card.samples = middle(&windows, signal, sample_count(side, room.rate_hz));
+        card.seconds = card.samples as f64 / room.rate_hz;
+    }
+    let warnings = if exchange == Exchange::Swap {
+        overlap_warning(&windows)
+    } else {
+        Vec::new()
+    };
     Selection {
         paired: true,
+        exchange,
         windows,
         card,
         warnings,
@@ -241,56 +551,220 @@ fn unpaired(
     signal: &EventWindow,
     reference: &EventWindow,
     events: &[Event],
-    stretches: &[Stretch],
-    rate_hz: f64,
+    room: &Room<'_>,
+    seed: u64,
 ) -> Selection {
-    let (ns, nr) = (
-        sample_count(signal, rate_hz),
-        sample_count(reference, rate_hz),
-    );
+    // Windows of both sides in order of time; at the same time signal comes first.
+    let mut asked: Vec<(&Event, bool)> = events_of(signal, events)
+        .into_iter()
+        .map(|e| (e, true))
+        .chain(events_of(reference, events).into_iter().map(|e| (e, false)))
+        .collect();
+    asked.sort_by(|a, b| a.0.onset_s.total_cmp(&b.0.onset_s).then(b.1.cmp(&a.1)));
+    let mut placed: Vec<(Placed, usize)> = asked
+        .iter()
+        .map(|(event, is_signal)| {
+            let window = if *is_signal { signal } else { reference };
+            window_at(window, event, events, room)
+        })
+        .collect();
+    make_equal([signal, reference], &asked, &mut placed, seed);
     let mut card = WindowsCard {
         paired: false,
-        signal: side_card(ns, rate_hz),
-        reference: side_card(nr, rate_hz),
+        signal: side_card(0, room.rate_hz),
+        reference: side_card(0, room.rate_hz),
         trials: Vec::new(),
     };
     let mut windows = Vec::new();
-    for event in events {
-        let is_signal = event.label == signal.event;
-        if !is_signal && event.label != reference.event {
-            continue;
-        }
-        let (window, count, side) = if is_signal {
-            (signal, ns, &mut card.signal)
+    for ((event, is_signal), (place, count)) in asked.iter().zip(placed) {
+        let side = if *is_signal {
+            &mut card.signal
         } else {
-            (reference, nr, &mut card.reference)
+            &mut card.reference
         };
-        let placed = place(stretches, rate_hz, event.onset_s + window.from_s, count);
-        let dropped = reason(&placed).map(str::to_owned);
-        if let Placed::At(first) = placed {
-            windows.push(Window {
-                first,
-                count,
-                signal: is_signal,
-                trial: side.used,
-                onset_s: event.onset_s,
-            });
-            side.used += 1;
-        } else if let Some(reason) = &dropped {
-            drop_one(side, reason);
-        }
+        let dropped = match place {
+            Placed::At(first) => {
+                windows.push(Window {
+                    first,
+                    count,
+                    signal: *is_signal,
+                    trial: side.used,
+                    onset_s: event.onset_s,
+                });
+                side.used += 1;
+                None
+            }
+            Placed::Dropped(reason) => {
+                drop_one(side, reason);
+                Some(reason.to_owned())
+            }
+        };
         card.trials.push(Trial {
             onset_s: event.onset_s,
             event: event.label.clone(),
             dropped,
         });
     }
+    for (side, card, is_signal) in [
+        (signal, &mut card.signal, true),
+        (reference, &mut card.reference, false),
+    ] {
+        card.samples = middle(&windows, is_signal, sample_count(side, room.rate_hz));
+        card.seconds = card.samples as f64 / room.rate_hz;
+    }
     let warnings = overlap_warning(&windows);
     Selection {
         paired: false,
+        exchange: Exchange::Shuffle,
         windows,
         card,
         warnings,
+    }
+}
+
+/// Draws out windows of a side that asked to be no larger than the other (Fisher & Yates shuffle, seeded).
+fn make_equal(
+    sides: [&EventWindow; 2],
+    asked: &[(&Event, bool)],
+    placed: &mut [(Placed, usize)],
+    seed: u64,
+) {
+    let members = |placed: &[(Placed, usize)], signal: bool| -> Vec<usize> {
+        (0..placed.len())
+            .filter(|k| asked[*k].1 == signal && matches!(placed[*k].0, Placed::At(_)))
+            .collect()
+    };
+    for (window, signal) in [(sides[0], true), (sides[1], false)] {
+        let mut own = members(placed, signal);
+        let most = members(placed, !signal).len();
+        if !window.equal || own.len() <= most {
+            continue;
+        }
+        let mut rng = ChaCha8Rng::seed_from_u64(seed);
+        rng.set_stream(STREAM_EQUAL);
+        for a in (1..own.len()).rev() {
+            let b = ((u128::from(rng.next_u64()) * (a as u128 + 1)) >> 64) as usize;
+            own.swap(a, b);
+        }
+        for k in own.drain(most..) {
+            placed[k].0 = Placed::Dropped("drawn out");
+        }
+    }
+}
+
+/// Pieces of signal and reference spans, in order of time.
+fn spans(
+    contrast: &Contrast,
+    sides: [&Spans; 2],
+    events: &[Event],
+    room: &Room<'_>,
+) -> Result<Selection> {
+    let count = piece_samples(contrast, room.rate_hz);
+    let signal = span_runs(sides[0], events, room.rate_hz);
+    let open = room.open();
+    let reference = if sides[1].is_rest() {
+        without(&open, &signal)
+    } else {
+        span_runs(sides[1], events, room.rate_hz)
+    };
+    if let Some(shared) = both(&signal, &reference).first() {
+        let at = shared.map(|s| s as f64 / room.rate_hz);
+        return Err(Problem::new(
+            Kind::Contrast,
+            "signal and reference spans overlap",
+            "end one where the other begins",
+        )
+        .at(format!("{:.2} to {:.2} s", at[0], at[1]))
+        .expected_found("spans of different times", "the same samples on both sides"));
+    }
+    let mut card = WindowsCard {
+        paired: false,
+        signal: side_card(count, room.rate_hz),
+        reference: side_card(count, room.rate_hz),
+        trials: Vec::new(),
+    };
+    let pieces = |runs: &Runs| cut(&both(runs, &open), room.stretches, room.rate_hz, count);
+    let mut all: Vec<(usize, f64, bool)> = pieces(&signal)
+        .into_iter()
+        .map(|(first, at)| (first, at, true))
+        .chain(
+            pieces(&reference)
+                .into_iter()
+                .map(|(first, at)| (first, at, false)),
+        )
+        .collect();
+    all.sort_by_key(|p| p.0);
+    let mut windows = Vec::with_capacity(all.len());
+    for (first, onset_s, signal) in all {
+        let side = if signal {
+            &mut card.signal
+        } else {
+            &mut card.reference
+        };
+        windows.push(Window {
+            first,
+            count,
+            signal,
+            trial: side.used,
+            onset_s,
+        });
+        side.used += 1;
+    }
+    let mut warnings = Vec::new();
+    if sides[1].is_rest() && events.iter().any(|e| e.label == crate::recipe::REST) {
+        warnings.push("The reference is everything that is not signal; the annotations labelled rest are not it: the pattern rest* reaches them.".to_owned());
+    }
+    let changes = windows
+        .windows(2)
+        .filter(|w| w[0].signal != w[1].signal)
+        .count();
+    if changes <= 2 {
+        warnings.push("The sides lie in one stretch each: whatever drifts over the recording differs between them as well, and a shift of the labels cannot tell the two apart.".to_owned());
+    }
+    Ok(Selection {
+        paired: false,
+        exchange: Exchange::Shift,
+        windows,
+        card,
+        warnings,
+    })
+}
+
+fn piece_samples(contrast: &Contrast, rate_hz: f64) -> usize {
+    (piece_s(contrast).unwrap_or(1.0) * rate_hz)
+        .round()
+        .max(1.0) as usize
+}
+
+/// Segments that both sides are measured in.
+fn segments(contrast: &Contrast, inside: &Runs, room: &Room<'_>) -> Selection {
+    let count = piece_samples(contrast, room.rate_hz);
+    let mut card = WindowsCard {
+        paired: true,
+        signal: side_card(count, room.rate_hz),
+        reference: side_card(count, room.rate_hz),
+        trials: Vec::new(),
+    };
+    let mut windows = Vec::new();
+    for (first, onset_s) in cut(inside, room.stretches, room.rate_hz, count) {
+        for signal in [true, false] {
+            windows.push(Window {
+                first,
+                count,
+                signal,
+                trial: card.signal.used,
+                onset_s,
+            });
+        }
+        card.signal.used += 1;
+        card.reference.used += 1;
+    }
+    Selection {
+        paired: true,
+        exchange: Exchange::Slide,
+        windows,
+        card,
+        warnings: Vec::new(),
     }
 }
 
@@ -468,6 +942,20 @@ mod tests {
             signal: EventWindow::new(s, from, to),
             reference: EventWindow::new(r, from_r, to_r),
         }
+    }
+
+    fn select(
+        contrast: &Contrast,
+        events: &[Event],
+        stretches: &[Stretch],
+        rate_hz: f64,
+    ) -> Result<Selection> {
+        super::select(
+            &Recipe::asking(contrast.clone()),
+            events,
+            stretches,
+            rate_hz,
+        )
     }
 
     #[test]

@@ -3,9 +3,10 @@ use super::bootstrap::{generator, mean_interval};
 use crate::contrast::fit::{
     Ends, Labels, Method, View, fit, inner_folds, log_total as fit_log_total,
 };
-use crate::contrast::linalg::{Packed, log_shrunk, packed_len, quadratic};
+use crate::contrast::linalg::{Packed, log_shrunk, quadratic};
+use crate::contrast::read::{Reader, Row};
 use crate::contrast::space::{Covariances, Space};
-use crate::contrast::windows::Window;
+use crate::contrast::windows::{Exchange, Window};
 use crate::recipe::Measure;
 use crate::sheet::{End, TotalRatio, TypicalRatio};
 use std::collections::BTreeMap;
@@ -15,6 +16,8 @@ use std::collections::BTreeMap;
 pub struct Design {
     /// Both sides tied to the same event.
     pub paired: bool,
+    /// What the null hypothesis exchanges.
+    pub exchange: Exchange,
     /// Signal (or reference) of every window.
     pub signal: Vec<bool>,
     /// Pair of every window, or its index within its side.
@@ -91,12 +94,17 @@ impl Ground {
         true
     }
     /// Adds Σ‖y‖⁴ of the next window's samples; false when all are there.
-    pub fn push_fourth(&mut self, samples: &[Vec<f32>], windows: &[Window]) -> bool {
+    pub fn push_fourth(
+        &mut self,
+        reader: &Reader<'_>,
+        windows: &[Window],
+        moved: Option<(&Row, &[usize])>,
+    ) -> bool {
         let Some(window) = windows.get(self.fourth.len()) else {
             return false;
         };
         let dimensions = self.space.dimensions();
-        let mut square = vec![0.0; window.count];
+        let mut square = vec![0.0; reader.values(window)];
         let mut out = Vec::with_capacity(dimensions);
         for i in 0..dimensions {
             // One row of Vᵀ x: the whitening row times the root of its eigenvalue.
@@ -108,7 +116,7 @@ impl Ground {
                 .iter()
                 .map(|w| w * scale)
                 .collect();
-            let y = project(&weights, samples, window);
+            let y = project(&weights, reader, window, moved);
             for (s, y) in square.iter_mut().zip(&y) {
                 *s += y * y;
             }
@@ -120,13 +128,17 @@ impl Ground {
 }
 
 /// wᵀX over one window about its own mean.
-pub fn project(weights: &[f64], samples: &[Vec<f32>], window: &Window) -> Vec<f64> {
-    let mut out = vec![0.0; window.count];
-    for (w, channel) in weights.iter().zip(samples) {
-        for (y, x) in out
-            .iter_mut()
-            .zip(&channel[window.first..window.first + window.count])
-        {
+pub fn project(
+    weights: &[f64],
+    reader: &Reader<'_>,
+    window: &Window,
+    moved: Option<(&Row, &[usize])>,
+) -> Vec<f64> {
+    let mut out = vec![0.0; reader.values(window)];
+    let mut part = Vec::with_capacity(window.count);
+    for (c, w) in weights.iter().enumerate() {
+        reader.channel(window, c, moved.map(|(row, by)| (row, by[c])), &mut part);
+        for (y, x) in out.iter_mut().zip(&part) {
             *y += w * f64::from(*x);
         }
     }
@@ -166,10 +178,11 @@ pub fn fit_ground(
     };
     let view = ground.view(&all.weights, keep);
     let ends = fit(view, labels, method)?;
+    let train = |k: usize| ground.train[k];
     let best_pc = best_of(
         end,
         view.keep,
-        |i, k| diagonal(&ground.space.covariances[k], i),
+        |i| ground.space.component_variances(i, &design.signal, train),
         &all.weights,
         design,
         &ground.train,
@@ -178,7 +191,7 @@ pub fn fit_ground(
     let best_channel = best_of(
         end,
         all.channels,
-        |i, k| diagonal(&all.packed[k], i),
+        |i| all.channel_variances(i, &design.signal, train),
         &all.weights,
         design,
         &ground.train,
@@ -272,17 +285,12 @@ fn mean_and_error_of(values: &[f64]) -> (f64, f64) {
     )
 }
 
-/// Entry (i, i) of a packed matrix.
-pub fn diagonal(packed: &[f64], i: usize) -> f64 {
-    packed[packed_len(i) + i]
-}
-
 /// Index of the candidate with the largest ratio by `measure` on the windows in `of` (the smallest, at the weaker end); the
-/// first of equals.
+/// first of equals. `variances` gives a candidate's variance in every window, NaN outside `of`.
 pub fn best_of(
     end: End,
     candidates: usize,
-    variance: impl Fn(usize, usize) -> f64,
+    variances: impl Fn(usize) -> Vec<f64>,
     weights: &[f64],
     design: &Design,
     of: &[bool],
@@ -290,9 +298,7 @@ pub fn best_of(
 ) -> usize {
     let mut best = (f64::NEG_INFINITY, 0);
     for i in 0..candidates {
-        let variances: Vec<f64> = (0..weights.len())
-            .map(|k| if of[k] { variance(i, k) } else { f64::NAN })
-            .collect();
+        let variances = variances(i);
         let ratio = match measure {
             Measure::Typical => log_typical(&variances, design),
             Measure::Total => log_total(&variances, weights, design, |k| of[k]),
@@ -339,8 +345,8 @@ pub fn log_total(
 }
 
 /// Variances of all windows under a direction of a space.
-pub fn variances(space: &Space, u: &[f64]) -> Vec<f64> {
-    space.covariances.iter().map(|c| quadratic(c, u)).collect()
+pub fn variances(space: &Space, u: &[f64], signal: &[bool]) -> Vec<f64> {
+    space.variances(u, signal, |_| true)
 }
 
 /// Variances of the tested windows of fold `f` under `u`, written into `into`; u is first scaled so that the training reference
@@ -353,27 +359,29 @@ pub fn score_into(
     f: usize,
     u: &[f64],
 ) {
-    fill(into, weights, design, f, |k| {
-        quadratic(&fold.space.covariances[k], u)
+    fill(into, weights, design, f, |of| {
+        fold.space.variances(u, &design.signal, of)
     });
 }
 
-/// As [`score_into`] for any variance of window k.
+/// As [`score_into`] for any variances: of the windows that a test names, NaN elsewhere.
 pub fn fill(
     into: &mut Scores,
     weights: &[f64],
     design: &Design,
     f: usize,
-    variance: impl Fn(usize) -> f64,
+    variances: impl Fn(&dyn Fn(usize) -> bool) -> Vec<f64>,
 ) {
+    let train = variances(&|k| design.fold[k] != f);
     let (mut sum, mut total) = (0.0, 0.0);
     for k in (0..weights.len()).filter(|k| design.fold[*k] != f && !design.signal[*k]) {
-        sum += weights[k] * variance(k);
+        sum += weights[k] * train[k];
         total += weights[k];
     }
     let scale = sum / total;
+    let test = variances(&|k| design.fold[k] == f);
     for k in (0..weights.len()).filter(|k| design.fold[*k] == f) {
-        into[k] = variance(k) / scale;
+        into[k] = test[k] / scale;
     }
 }
 
@@ -403,7 +411,7 @@ pub fn typical_ratio(
     bootstrap: usize,
     seed: u64,
 ) -> TypicalRatio {
-    let Some(scores) = scores else {
+    let Some(scores) = scores.filter(|_| design.exchange != Exchange::Flip) else {
         return TypicalRatio {
             fitted,
             held_out: None,
@@ -431,6 +439,28 @@ pub fn typical_ratio(
     }
 }
 
+/// What is left where less than nothing repeats: a held-out ratio has to stay above 0 to have a logarithm.
+const LEAST_REPEATED: f64 = 1e-3;
+
+/// What repeats: a fold of K_f trials with ratio λ_f has ρ_f = (λ_f − 1)/(K_f − 1), the mean correlation of two trials in units of a
+/// trial's power; over all K trials that is a ratio of 1 + (K − 1)ρ, which can be compared with the fitted one. Gives each fold's,
+/// and that of the mean ρ with its standard error over folds.
+fn repeated_folds(scores: &Scores, weights: &[f64], design: &Design) -> (Vec<f64>, f64, f64) {
+    let all = design.count(true) as f64;
+    let shares: Vec<f64> = (0..design.folds)
+        .map(|f| {
+            let trials = (0..weights.len()).filter(|k| design.fold[*k] == f && design.signal[*k]);
+            let trials = trials.count().max(2) as f64;
+            let ratio = log_total(scores, weights, design, |k| design.fold[k] == f).exp();
+            (ratio - 1.0) / (trials - 1.0)
+        })
+        .collect();
+    let (mean, error) = mean_and_error_of(&shares);
+    let ratio = |share: f64| (1.0 + (all - 1.0) * share).max(LEAST_REPEATED);
+    let folds = shares.iter().map(|s| ratio(*s)).collect();
+    (folds, ratio(mean), (all - 1.0) * error)
+}
+
 /// Total ratio from held-out variances: geometric mean over folds.
 pub fn total_ratio(
     fitted: f64,
@@ -445,6 +475,14 @@ pub fn total_ratio(
             folds: Vec::new(),
         };
     };
+    if design.exchange == Exchange::Flip {
+        let (folds, held_out, _) = repeated_folds(scores, weights, design);
+        return TotalRatio {
+            fitted,
+            held_out: Some(held_out),
+            folds,
+        };
+    }
     let logs: Vec<f64> = (0..design.folds)
         .map(|f| log_total(scores, weights, design, |k| design.fold[k] == f))
         .collect();
@@ -474,6 +512,10 @@ pub fn mean_and_error(
                 log_typical(scores, design),
                 error(&side(true)).hypot(error(&side(false))),
             )
+        }
+        Measure::Total if design.exchange == Exchange::Flip => {
+            let (_, ratio, error) = repeated_folds(scores, weights, design);
+            (ratio.ln(), error / ratio)
         }
         Measure::Total => {
             let logs: Vec<f64> = (0..design.folds)

@@ -2,12 +2,18 @@
 //!
 //! * Paired: the two sides of a trial are swapped or not, each with probability ½; where there are no more arrangements than
 //!   asked for, every one is taken once and p = b/2ⁿ (the observed one is among them).
+//! * What repeats: the sign of each trial is turned or not, likewise.
+//! * Spans: the labels of all pieces move along the row of pieces together; there are as many arrangements as pieces (fewer where
+//!   the labels repeat themselves), and all are taken once where no more were asked for.
+//! * Bands and slow changes: surrogates, made of the channels' samples ([`slides`]).
 //! * Unpaired: the labels are shuffled over all windows of both sides; for `keep: "best"` within each fold, so that the folds keep
 //!   their make-up.
 //!
 //! Arrangement number i depends on the seed and i alone, so any division of the work gives the same numbers.
 use super::bootstrap::{below, generator};
 use super::heldout::Design;
+use crate::contrast::read::Row;
+use crate::contrast::windows::Exchange;
 use rand_chacha::rand_core::Rng;
 
 /// Stream of the bootstrap of held-out ratios.
@@ -33,17 +39,45 @@ pub struct Plan {
 /// Plans `asked` arrangements.
 pub fn plan(design: &Design, asked: usize) -> Plan {
     let n = design.count(true);
-    let distinct = if design.paired {
-        2f64.powi(n.min(2000) as i32)
-    } else {
-        binomial(design.signal.len(), n)
+    let distinct = match design.exchange {
+        Exchange::Swap => 2f64.powi(n.min(2000) as i32),
+        // Turning every trial changes nothing.
+        Exchange::Flip => 2f64.powi(n.clamp(1, 2000) as i32 - 1),
+        Exchange::Shift => period(&design.signal) as f64,
+        Exchange::Shuffle => binomial(design.signal.len(), n),
+        Exchange::Slide | Exchange::SlideWindows => f64::INFINITY,
     };
-    let exact = design.paired && asked > 0 && distinct <= asked as f64;
+    let enumerable = !matches!(design.exchange, Exchange::Shuffle);
+    let exact = enumerable && asked > 0 && distinct <= asked as f64;
     Plan {
         count: if exact { distinct as usize } else { asked },
         exact,
         distinct: (distinct <= 2f64.powi(53)).then_some(distinct),
     }
+}
+
+/// After how many steps along the row the labels look the same again.
+fn period(labels: &[bool]) -> usize {
+    let n = labels.len();
+    let same = |p: usize| (0..n).all(|k| labels[k] == labels[(k + p) % n]);
+    (1..=n)
+        .find(|p| n.is_multiple_of(*p) && same(*p))
+        .unwrap_or(n)
+        .max(1)
+}
+
+/// By how many samples surrogate `i` moves each channel along the row of segments: any number, or, for windows around events,
+/// whole windows. Both sides of a contrast move together.
+pub fn slides(exchange: Exchange, row: &Row, channels: usize, seed: u64, i: usize) -> Vec<usize> {
+    let mut rng = generator(seed, STREAM_ARRANGEMENTS + i as u64);
+    let samples = row.samples();
+    let step = match exchange {
+        Exchange::SlideWindows => samples / row.segments().max(1),
+        _ => 1,
+    };
+    (0..channels)
+        .map(|_| step * below(&mut rng, samples / step.max(1)))
+        .collect()
 }
 
 fn binomial(n: usize, k: usize) -> f64 {
@@ -62,6 +96,15 @@ pub fn arrangement(
     seed: u64,
     i: usize,
 ) -> Vec<bool> {
+    if design.exchange == Exchange::Shift {
+        let n = design.signal.len();
+        let by = if plan.exact {
+            i
+        } else {
+            below(&mut generator(seed, STREAM_ARRANGEMENTS + i as u64), n)
+        };
+        return (0..n).map(|k| design.signal[(k + by) % n]).collect();
+    }
     if design.paired {
         let swap: Vec<bool> = if plan.exact {
             (0..design.count(true)).map(|t| i >> t & 1 == 1).collect()
@@ -119,11 +162,26 @@ pub fn p_value(observed: f64, null: &[f64], exact: bool, larger: bool) -> f64 {
 }
 
 /// The null hypothesis in a sentence.
-pub fn null_hypothesis(design: &Design) -> String {
-    if design.paired {
-        "Within a trial the signal and the reference window are exchangeable: swapping them changes nothing but chance.".into()
-    } else {
-        "The two kinds of events are exchangeable: which window carries which label is a matter of chance.".into()
+pub fn null_hypothesis(exchange: Exchange) -> &'static str {
+    match exchange {
+        Exchange::Swap => {
+            "Within a trial the signal and the reference window are exchangeable: swapping them changes nothing but chance."
+        }
+        Exchange::Shuffle => {
+            "The two kinds of events are exchangeable: which window carries which label is a matter of chance."
+        }
+        Exchange::Shift => {
+            "What the recording does has nothing to do with when the spans lie: moving all labels along it together changes nothing but chance."
+        }
+        Exchange::Flip => {
+            "Nothing repeats: what a trial holds has nothing to do with the other trials, so turning the sign of any of them changes nothing but chance."
+        }
+        Exchange::Slide => {
+            "Every channel has its own spectrum and shares nothing with the others: moving each along the recording by itself changes nothing but chance."
+        }
+        Exchange::SlideWindows => {
+            "Every channel has its own spectrum in these windows and shares nothing with the others: exchanging each channel's windows among the trials changes nothing but chance."
+        }
     }
 }
 
@@ -134,6 +192,7 @@ mod tests {
     fn paired(n: usize) -> Design {
         Design {
             paired: true,
+            exchange: Exchange::Swap,
             signal: [true, false].repeat(n),
             trial: (0..2 * n).map(|k| k / 2).collect(),
             fold: vec![0; 2 * n],
@@ -163,6 +222,27 @@ mod tests {
     }
 
     #[test]
+    fn labels_of_spans_move_along_the_row_together() {
+        let signal = vec![true, true, false, false, false, true];
+        let design = Design {
+            paired: false,
+            exchange: Exchange::Shift,
+            signal: signal.clone(),
+            trial: vec![0, 1, 0, 1, 2, 2],
+            fold: vec![0; 6],
+            folds: 1,
+        };
+        let plan = plan(&design, 50);
+        assert_eq!((plan.count, plan.exact), (6, true));
+        let all: Vec<Vec<bool>> = (0..6)
+            .map(|i| arrangement(&design, plan, false, 1, i))
+            .collect();
+        assert_eq!(all[0], signal);
+        assert_eq!(all[2], [false, false, false, true, true, true]);
+        assert_eq!(period(&[true, false, true, false]), 2);
+    }
+
+    #[test]
     fn p_counts_ties_and_the_observed_arrangement() {
         // Phipson & Smyth 2010: b of m as large gives (b+1)/(m+1).
         assert_eq!(p_value(3.0, &[1.0, 3.0, 5.0, 2.0], false, true), 3.0 / 5.0);
@@ -174,6 +254,7 @@ mod tests {
     fn shuffles_keep_the_counts_and_within_folds_each_folds_counts() {
         let design = Design {
             paired: false,
+            exchange: Exchange::Shuffle,
             signal: vec![true, true, false, true, false, false, true, false],
             trial: vec![0, 1, 0, 2, 1, 2, 3, 3],
             fold: vec![0, 0, 0, 0, 1, 1, 1, 1],
