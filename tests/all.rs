@@ -2,6 +2,7 @@
 
 mod contrast;
 mod describe;
+mod many;
 mod prepare;
 mod readers;
 mod takeaway;

@@ -158,6 +158,7 @@ pub fn sheet() -> Sheet {
                 .collect(),
         }),
         compression: Some(CompressionCard {
+            basis: None,
             kept: 5,
             rank: 6,
             eigenvalues: vec![400.0, 120.0, 33.0, 12.0, 6.0, 1.5, 1e-13],

@@ -179,8 +179,27 @@ pub struct CompressionCard {
     pub eigenvalues: Vec<f64>,
     /// Share of the variance in the kept dimensions, 0…1.
     pub share: f64,
+    /// Where there are too many channels for their covariance: the basis that stands between.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub basis: Option<BasisCard>,
     /// Numbers of dimensions other rules would keep: `share_95`, `one_standard_error`, `held_out_peak`.
     pub guides: BTreeMap<String, usize>,
+}
+
+/// A basis between many channels (the pixels of a movie) and the kept dimensions.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+pub struct BasisCard {
+    /// Its dimensions; `eigenvalues` and `rank` of the compression are those inside it.
+    pub dimensions: usize,
+    /// Variance of all channels together in the windows.
+    pub total: f64,
+    /// Share of it that lies outside the basis, 0…1.
+    pub left_out: f64,
+    /// Most variance that any single direction outside the basis can have.
+    pub outside: f64,
+    /// Exact but for rounding (from the frames' Gram matrix); otherwise a randomised range finder, and `outside` is a bound that
+    /// fails with a probability of 1e-10.
+    pub exact: bool,
 }
 
 /// Fitted and held-out ratio of the leading component against C, in the chosen measure.

@@ -209,6 +209,7 @@ fn compression(rank: usize) -> CompressionCard {
     let kept = 12.min(rank);
     let share = eigenvalues[..kept].iter().sum::<f64>() / eigenvalues.iter().sum::<f64>();
     CompressionCard {
+        basis: None,
         kept,
         rank,
         eigenvalues,

@@ -1,5 +1,6 @@
 //! From what was computed to what the sheet says.
 use super::work::Work;
+use crate::contrast::basis::Basis;
 use crate::contrast::fit::{Direction, Ends};
 use crate::contrast::linalg::{abs_cosine, packed_len, quadratic};
 use crate::contrast::space::Space;
@@ -13,7 +14,7 @@ use crate::prepare::Prepared;
 use crate::recipe::{Keep, KeepWord, Measure, Recipe};
 use crate::recording::Recording;
 use crate::sheet::{
-    Comparator, ComparatorKind, Component, CompressionCard, End, FoldCard, Permutation,
+    BasisCard, Comparator, ComparatorKind, Component, CompressionCard, End, FoldCard, Permutation,
     RecordingCard, Sheet, TotalRatio, TrialScore, TypicalRatio,
 };
 use std::collections::BTreeMap;
@@ -148,6 +149,7 @@ fn filter_and_pattern(
     direction: &Direction,
     weights: &[f64],
     signal: &[bool],
+    basis: Option<&Basis>,
 ) -> (Vec<f64>, Vec<f64>) {
     let space = &ground.space;
     let reference = {
@@ -162,6 +164,10 @@ fn filter_and_pattern(
     let u: Vec<f64> = direction.u.iter().map(|x| x * scale).collect();
     let mut filter = space.filter(&u);
     let mut pattern = pattern(space, &filter);
+    if let Some(basis) = basis {
+        filter = basis.lift(&filter);
+        pattern = basis.lift(&pattern);
+    }
     let largest = pattern
         .iter()
         .copied()
@@ -203,7 +209,8 @@ pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
     };
     let weights = &work.covariances.weights;
     let component = |d: &Direction| -> Component {
-        let (filter, pattern) = filter_and_pattern(ground, d, weights, &design.signal);
+        let (filter, pattern) =
+            filter_and_pattern(ground, d, weights, &design.signal, work.basis.as_ref());
         let v = variances(&ground.space, &d.u, &design.signal);
         let largest = (0..pattern.len()).fold(0, |best, i| {
             if pattern[i].abs() > pattern[best].abs() {
@@ -224,7 +231,7 @@ pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
                 folds: Vec::new(),
             },
             p: None,
-            filter_raw: raw_filter(prepared, &filter),
+            filter_raw: prepared.raw(&filter, work.sheet.channels.len()),
             largest_at: prepared.channels[largest].clone(),
             filter,
             pattern,
@@ -243,13 +250,22 @@ pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
     work.sheet.leading = leading(ends);
     work.sheet.shrinkage = Some(ends.shrinkage);
     let eigenvalues = ground.space.eigenvalues.clone();
-    let all: f64 = eigenvalues.iter().filter(|e| **e > 0.0).sum();
+    let inside: f64 = eigenvalues.iter().filter(|e| **e > 0.0).sum();
+    let all = work.basis.as_ref().map_or(inside, |b| b.total);
     let share = eigenvalues[..keep].iter().sum::<f64>() / all;
+    let basis = work.basis.as_ref().map(|b| BasisCard {
+        dimensions: b.rows.nrows(),
+        total: b.total,
+        left_out: (1.0 - inside / b.total).max(0.0),
+        outside: b.outside,
+        exact: b.exact,
+    });
     work.sheet.compression = Some(CompressionCard {
         kept: keep,
         rank: ground.space.rank,
         eigenvalues,
         share,
+        basis,
         guides: BTreeMap::new(),
     });
     if let Some(card) = &mut work.sheet.preparation {
@@ -298,20 +314,13 @@ pub(super) fn leading_direction(ends: &Ends, leading: End) -> Option<&Direction>
     }
 }
 
-/// w_raw = Tᵀw.
-fn raw_filter(prepared: &Prepared, filter: &[f64]) -> Vec<f64> {
-    let t = &prepared.matrix;
-    (0..t.ncols())
-        .map(|c| filter.iter().enumerate().map(|(r, w)| w * t[(r, c)]).sum())
-        .collect()
-}
-
 /// Numbers of dimensions other rules would keep.
 pub(super) fn guides(sheet: &mut Sheet) {
     let Some(card) = &mut sheet.compression else {
         return;
     };
-    let all: f64 = card.eigenvalues.iter().filter(|e| **e > 0.0).sum();
+    let inside: f64 = card.eigenvalues.iter().filter(|e| **e > 0.0).sum();
+    let all = card.basis.map_or(inside, |b| b.total);
     let mut sum = 0.0;
     let share_95 = card.eigenvalues.iter().take_while(|e| {
         let before = sum < 0.95 * all;
@@ -319,7 +328,10 @@ pub(super) fn guides(sheet: &mut Sheet) {
         before
     });
     let share_95 = share_95.count().max(2).min(card.rank);
-    card.guides.insert("share_95".into(), share_95);
+    // A basis may end before.
+    if inside >= 0.95 * all {
+        card.guides.insert("share_95".into(), share_95);
+    }
     let Some(curve) = &sheet.curve else { return };
     // Held-out log ratios in the direction of the leading end.
     let sign = if sheet.leading == End::Stronger {
@@ -359,7 +371,9 @@ pub(super) fn held_out(work: &mut Work, recipe: &Recipe) {
         .map(|(g, f)| {
             [&f.ends.stronger, &f.ends.weaker].map(|end| {
                 end.iter()
-                    .map(|d| filter_and_pattern(g, d, weights, &design.signal).1)
+                    .map(|d| {
+                        filter_and_pattern(g, d, weights, &design.signal, work.basis.as_ref()).1
+                    })
                     .collect()
             })
         })
@@ -515,13 +529,15 @@ fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator
     );
     let best_channel = best_of(
         work.sheet.leading,
-        all.channels,
+        all.candidates(),
         |i| of_channel(i, &|_| true),
         weights,
         design,
         &everything,
         recipe.measure,
     );
+    // Dimensions of a basis are no channels.
+    let single = work.basis.is_none() || !all.singles.is_empty();
     let make = |kind: ComparatorKind, fitted: Vec<f64>, chosen_in: &dyn Fn(usize) -> usize| {
         let mut scores = vec![f64::NAN; weights.len()];
         for (f, g) in work.folds.iter().enumerate() {
@@ -559,7 +575,7 @@ fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator
     let share_of = |i: usize| Some(ground.space.eigenvalues[i] / shares);
     let (pc, pc_folds) = most_frequent(work.fits.iter().map(|f| f.best_pc));
     let (channel, channel_folds) = most_frequent(work.fits.iter().map(|f| f.best_channel));
-    vec![
+    let mut found = vec![
         Comparator {
             chosen: Some((pc + 1).to_string()),
             chosen_in_folds: Some(pc_folds),
@@ -584,7 +600,9 @@ fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator
             share: share_of(0),
             ..make(ComparatorKind::FirstPc, of_pc(ground, 0, &|_| true), &|_| 0)
         },
-    ]
+    ];
+    found.retain(|c| single || c.kind != ComparatorKind::BestChannel);
+    found
 }
 
 /// The value met most often (the smallest of equals), and how often.
@@ -659,6 +677,7 @@ fn warnings(work: &Work, recipe: &Recipe) -> Vec<String> {
         out.push(format!("C = {keep} was chosen by the labels; the choice is repeated in every fold and every permutation."));
     }
     if let (Some(prepared), Some(ground)) = (&work.prepared, &work.ground)
+        && work.basis.is_none()
         && ground.space.rank < prepared.channels.len()
     {
         out.push(format!(

@@ -3,7 +3,7 @@
 //! Which spectra stand side by side depends on the kind: windows and spans compare those of both sides; a rhythm and what changes
 //! slowly are measured on the same segments, so there the component stands beside the average channel at equal power outside the
 //! band (or over all); what repeats compares the average over trials, times their number, with the single trials.
-use super::work::{Work, lost};
+use super::work::{Work, inner, lost};
 use crate::contrast::windows::{Exchange, Selection, events_of, sample_at};
 use crate::describe::welch::{Welch, segment_for};
 use crate::describe::{course, spectra};
@@ -36,6 +36,7 @@ pub(super) fn describe(
     } else {
         &mut work.sheet.weaker[index]
     };
+    let filter = inner(&work.basis, &component.filter);
     let rate = prepared.rate_hz;
     let side = |wanted: bool| -> Vec<(usize, usize)> {
         let windows = selection.windows.iter().filter(|w| w.signal == wanted);
@@ -46,14 +47,7 @@ pub(super) fn describe(
     let (onsets, span) = around
         .as_ref()
         .map_or((&[][..], [0.0; 2]), |a| (&a.onsets[..], a.span));
-    let series = partial_series(
-        prepared,
-        &component.filter,
-        &signals,
-        &references,
-        onsets,
-        span,
-    );
+    let series = partial_series(prepared, &filter, &signals, &references, onsets, span);
     let seed = recipe.evidence.seed ^ STREAM_DESCRIBE << 32;
     let of_windows = || spectra::of_component(&series, &signals, &references, rate, count, seed);
     let found = match &recipe.contrast {

@@ -8,13 +8,13 @@ use crate::sheet::{ChannelCard, ChannelState};
 use nalgebra::DMatrix;
 
 /// A weighted sum of recorded channels: index and weight, weights of 0 left out.
-pub(super) type Sum = Vec<(usize, f64)>;
+pub(crate) type Sum = Vec<(usize, f64)>;
 
 /// T in its two parts, so that a reference over all channels is summed once and not once a channel.
-#[derive(Debug)]
-pub(super) struct ChannelMatrix {
+#[derive(Debug, Clone)]
+pub(crate) struct ChannelMatrix {
     /// Indexes of the prepared channels among the recorded ones, ascending.
-    pub(super) channels: Vec<usize>,
+    pub(crate) channels: Vec<usize>,
     /// Rows of A.
     pub(super) rows: Vec<Sum>,
     /// r; empty for the reference as recorded.
@@ -60,6 +60,20 @@ impl ChannelMatrix {
             channels,
             warnings,
         })
+    }
+    /// Tᵀw.
+    pub(super) fn back(&self, filter: &[f64], recorded: usize) -> Vec<f64> {
+        let mut out = vec![0.0; recorded];
+        for (row, w) in self.rows.iter().zip(filter) {
+            for &(channel, weight) in row {
+                out[channel] += w * weight;
+            }
+        }
+        let sum: f64 = filter.iter().sum();
+        for &(channel, weight) in &self.reference {
+            out[channel] -= sum * weight;
+        }
+        out
     }
     /// T itself, `prepared × recorded`.
     pub(super) fn dense(&self, recorded: usize) -> DMatrix<f64> {

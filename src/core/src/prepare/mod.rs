@@ -39,11 +39,13 @@ pub struct Prepared {
     pub unit: String,
     /// Unit-sphere positions, where known.
     pub positions: Vec<Option<[f64; 3]>>,
-    /// `prepared × recorded` channel matrix T: w_raw = Tᵀw.
+    /// `prepared × recorded` channel matrix T: w_raw = Tᵀw. Empty beyond [`MOST_CHANNELS`]; [`Self::raw`] needs it not.
     pub matrix: DMatrix<f64>,
+    /// T by its entries that are not zero.
+    pub(crate) mixing: ChannelMatrix,
     /// Sampling rate.
     pub rate_hz: f64,
-    /// `channels × samples`.
+    /// `channels × samples`. Beyond [`MOST_CHANNELS`] a channel that stays as it was recorded is left empty here, to save a copy.
     pub samples: Vec<Vec<f32>>,
     /// Unbroken runs.
     pub stretches: Vec<Stretch>,
@@ -70,7 +72,25 @@ pub struct Preparing {
 }
 
 /// A matrix of channels by channels is never made beyond this.
-const MOST_CHANNELS: usize = 2000;
+pub const MOST_CHANNELS: usize = 2000;
+
+impl Prepared {
+    /// Whether there are so many channels that they are compressed before anything else.
+    pub fn many(&self) -> bool {
+        self.channels.len() > MOST_CHANNELS
+    }
+    /// w_raw = Tᵀw for `recorded` channels.
+    pub fn raw(&self, filter: &[f64], recorded: usize) -> Vec<f64> {
+        self.mixing.back(filter, recorded)
+    }
+    /// The samples of prepared channel `index`, from `recording` where they are as recorded.
+    pub fn of_channel<'a>(&'a self, recording: &'a Recording, index: usize) -> &'a [f32] {
+        match self.samples.get(index) {
+            Some(samples) if !samples.is_empty() => samples,
+            _ => &recording.samples[self.mixing.channels[index]],
+        }
+    }
+}
 
 impl Preparing {
     /// Checks the recipe's channels and filter against the recording and builds T and the filters.
@@ -85,15 +105,6 @@ impl Preparing {
     /// than every stretch.
     pub fn new(recording: &Recording, channels: &[ChannelCard], recipe: &Recipe) -> Result<Self> {
         let rate_hz = recording.rate_hz;
-        if recording.channels.len() > MOST_CHANNELS {
-            return Err(Problem::new(
-                Kind::TooLarge,
-                "more channels than a covariance can be made of",
-                "split the recording into parts with fewer channels",
-            )
-            .at("channels")
-            .expected_found(format!("at most {MOST_CHANNELS}"), recording.channels.len()));
-        }
         let matrix = ChannelMatrix::new(channels, &recipe.channels)?;
         let designs = designs(&recipe.filter, rate_hz)?;
         let resampler = resampler(&recipe.filter, rate_hz)?;
@@ -135,7 +146,12 @@ impl Preparing {
                 .iter()
                 .map(|&c| channels[c].position)
                 .collect(),
-            matrix: matrix.dense(channels.len()),
+            matrix: if names.len() > MOST_CHANNELS {
+                DMatrix::zeros(0, 0)
+            } else {
+                matrix.dense(channels.len())
+            },
+            mixing: matrix.clone(),
             rate_hz: new_rate_hz,
             samples: Vec::with_capacity(names.len()),
             stretches: after(&recording.stretches, resampler.as_ref()),
@@ -190,7 +206,11 @@ impl Preparing {
             [(channel, 1.0)]
                 if self.filter.is_none() && self.resampler.is_none() && self.common.is_empty() =>
             {
-                recording.samples[channel].clone()
+                if self.result.many() {
+                    Vec::new()
+                } else {
+                    recording.samples[channel].clone()
+                }
             }
             _ => self.prepare(next, recording),
         };
