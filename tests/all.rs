@@ -3,6 +3,7 @@
 mod contrast;
 mod describe;
 mod many;
+mod movies;
 mod prepare;
 mod readers;
 mod takeaway;

@@ -135,6 +135,7 @@ pub fn sheet() -> Sheet {
                 position: Some([0.0, 0.0, 1.0]),
             })
             .collect(),
+        movie: None,
         preparation: Some(PreparationCard {
             rate_hz: 250.0,
             channels: CHANNELS[..7].iter().map(|n| (*n).into()).collect(),

@@ -3,12 +3,14 @@
 //! Unknown keys are errors, every key is optional but `teasel_recipe` and `contrast`.
 mod check;
 mod contrast;
+mod movie;
 
 pub(crate) use check::WHOLE_MAX;
 pub use check::{given_check, recipe_check};
 pub use contrast::{
     BandReference, Contrast, ContrastKind, EventWindow, HoldBack, REST, Spans, Within,
 };
+pub use movie::{Above, Dff, Mask, Movie, Quantile};
 use serde::{Deserialize, Serialize};
 
 /// All choices.
@@ -20,6 +22,9 @@ pub struct Recipe {
     /// What the recording's own file does not say.
     #[serde(default, skip_serializing_if = "Given::is_empty")]
     pub recording: Given,
+    /// What becomes of a movie's pixels before they are channels.
+    #[serde(default, skip_serializing_if = "Movie::is_plain")]
+    pub movie: Movie,
     /// Which channels, against which reference.
     #[serde(default)]
     pub channels: Channels,
@@ -57,6 +62,7 @@ impl Recipe {
         Recipe {
             teasel_recipe: 1,
             recording: Given::default(),
+            movie: Movie::default(),
             channels: Channels::default(),
             filter: Filter::default(),
             keep: Keep::default(),

@@ -16,6 +16,9 @@ pub struct Sheet {
     pub recipe: Recipe,
     /// Every analysed channel of the recording, in file order.
     pub channels: Vec<ChannelCard>,
+    /// The picture of a movie and which of its pixels are channels.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub movie: Option<MovieCard>,
     /// What the preparation did.
     pub preparation: Option<PreparationCard>,
     /// The windows of both sides.
@@ -98,6 +101,31 @@ pub struct ChannelCard {
     pub state: ChannelState,
     /// Position on the unit sphere: x right, y front, z up.
     pub position: Option<[f64; 3]>,
+}
+
+/// The picture of a movie.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct MovieCard {
+    /// Rows of the movie as recorded.
+    pub height: u32,
+    /// Columns of the movie as recorded.
+    pub width: u32,
+    /// Rows after binning.
+    pub rows: u32,
+    /// Columns after binning.
+    pub columns: u32,
+    /// Mean over all frames, `rows × columns`, row by row; not a number (null in JSON) where there is no pixel.
+    #[serde(deserialize_with = "numbers_or_nan")]
+    pub mean: Vec<f32>,
+    /// Pixels after binning that are channels: row · columns + column.
+    pub used: Vec<u32>,
+    /// The value that used pixels lie above, where a threshold decides.
+    pub threshold: Option<f64>,
+}
+
+fn numbers_or_nan<'de, D: serde::Deserializer<'de>>(from: D) -> Result<Vec<f32>, D::Error> {
+    let list: Vec<Option<f32>> = Vec::deserialize(from)?;
+    Ok(list.into_iter().map(|x| x.unwrap_or(f32::NAN)).collect())
 }
 
 /// What became of a channel.

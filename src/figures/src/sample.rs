@@ -94,6 +94,7 @@ pub fn sheet(channels: usize, trials: usize) -> Sheet {
                 reference: window(-1.0, -0.2),
             })
         },
+        movie: None,
         preparation: Some(PreparationCard {
             rate_hz: 250.0,
             channels: used.clone(),

@@ -61,6 +61,7 @@ pub(super) fn begin(recording: &Recording, recipe: &Recipe) -> Sheet {
         },
         recipe: recipe.clone(),
         channels: Vec::new(),
+        movie: None,
         preparation: None,
         windows: None,
         compression: None,

@@ -15,6 +15,7 @@ mod work;
 
 use crate::contrast::windows::check;
 use crate::error::Result;
+use crate::prepare::movie::{Viewing, as_recorded};
 use crate::recipe::{Recipe, recipe_check};
 use crate::recording::Recording;
 use crate::sheet::Sheet;
@@ -63,6 +64,9 @@ pub struct Progress {
 pub struct Analysis {
     recording: Recording,
     recipe: Recipe,
+    /// A movie's pixels being made into channels, and made: everything after works on them.
+    viewing: Option<Viewing>,
+    viewed: Option<Recording>,
     work: Work,
 }
 
@@ -84,10 +88,14 @@ impl Analysis {
     /// Unknown channels and impossible filters are refused by the first step.
     pub fn new(recording: Recording, recipe: Recipe) -> Result<Self> {
         check_recipe(&recipe, &recording)?;
-        let work = Work::new(&recording, &recipe);
+        let viewing = Viewing::new(&recording, &recipe.movie)?;
+        let mut work = Work::new(&recording, &recipe);
+        work.sheet.movie = as_recorded(&recording);
         Ok(Analysis {
             recording,
             recipe,
+            viewing,
+            viewed: None,
             work,
         })
     }
@@ -95,19 +103,63 @@ impl Analysis {
     /// Takes a changed recipe and drops only what it made stale. On an error nothing changes.
     pub fn set_recipe(&mut self, recipe: Recipe) -> Result<()> {
         check_recipe(&recipe, &self.recording)?;
-        self.work.change(&self.recording, &self.recipe, &recipe)?;
+        if recipe.movie != self.recipe.movie {
+            // Other pixels are other channels: nothing that was computed holds.
+            self.viewing = Viewing::new(&self.recording, &recipe.movie)?;
+            self.viewed = None;
+            let known = self.work.sheet.movie.take();
+            self.work = Work::new(&self.recording, &recipe);
+            self.work.sheet.movie = match &self.viewing {
+                Some(_) => known,
+                None => as_recorded(&self.recording),
+            };
+        } else if self.viewing.is_some() {
+            self.work.sheet.recipe = recipe.clone();
+        } else {
+            let recording = self.viewed.as_ref().unwrap_or(&self.recording);
+            self.work.change(recording, &self.recipe, &recipe)?;
+        }
         self.recipe = recipe;
         Ok(())
     }
 
     /// Does the next bite of work, about 20 ms of it. After an error the same step fails again until the recipe changes.
     pub fn step(&mut self) -> Result<Progress> {
-        self.work.step(&self.recording, &self.recipe)
+        if self.viewing.is_some() {
+            return self.view();
+        }
+        let recording = self.viewed.as_ref().unwrap_or(&self.recording);
+        self.work.step(recording, &self.recipe)
+    }
+
+    /// A bite of making a movie's pixels into channels.
+    fn view(&mut self) -> Result<Progress> {
+        let (done, of) = match &mut self.viewing {
+            Some(viewing) => {
+                viewing.step(&self.recording)?;
+                viewing.progress()
+            }
+            None => (1, 1),
+        };
+        let finished = self.viewing.take_if(|viewing| viewing.finished());
+        let news = finished.is_some();
+        if let Some(viewing) = finished {
+            let (viewed, card) = viewing.finish(&self.recording);
+            self.work = Work::new(&viewed, &self.recipe);
+            self.work.sheet.movie = Some(card);
+            self.viewed = Some(viewed);
+        }
+        Ok(Progress {
+            stage: Stage::Preparing,
+            done,
+            of,
+            news,
+        })
     }
 
     /// Whether all work is done.
     pub fn finished(&self) -> bool {
-        self.work.finished(&self.recipe)
+        self.viewing.is_none() && self.work.finished(&self.recipe)
     }
 
     /// Runs every step.
@@ -123,9 +175,9 @@ impl Analysis {
         &self.work.sheet
     }
 
-    /// The recording.
+    /// The recording that is contrasted: of a movie, the one whose channels are the pixels in use, once they are made.
     pub fn recording(&self) -> &Recording {
-        &self.recording
+        self.viewed.as_ref().unwrap_or(&self.recording)
     }
 
     /// Gives the recording back, to be analysed with something else.

@@ -6,6 +6,7 @@
 //! * `matrix`: T from what is left out, interpolated, re-referenced.
 //! * [`fir`]: design and zero-phase application; several filters are convolved into one kernel first, so that edges are mirrored once.
 //! * [`resample`]: rational change of rate, with its own anti-alias filter.
+//! * [`movie`]: a movie's pixels before they are channels.
 //! * [`inspect()`]: what is known of every channel before.
 //!
 //! # Precision
@@ -17,6 +18,7 @@
 pub mod fir;
 mod inspect;
 mod matrix;
+pub mod movie;
 pub mod resample;
 
 pub use inspect::{inspect, to_unit_sphere};

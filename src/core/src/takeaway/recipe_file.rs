@@ -82,6 +82,32 @@ const RECORDING: Shape = Shape::Object(&[
     ("variable", false, Shape::Maybe(&Shape::Text)),
 ]);
 
+pub(super) const MOVIE: Shape = Shape::Object(&[
+    ("bin", false, Shape::Maybe(&Shape::Whole)),
+    (
+        "mask",
+        false,
+        Shape::Maybe(&Shape::Either(
+            &[
+                Shape::Object(&[
+                    ("above", false, Shape::Number),
+                    ("quantile", false, Shape::Number),
+                ]),
+                Shape::List(&Shape::List(&Shape::Whole)),
+            ],
+            "{\"above\": …}, {\"quantile\": …} or a list of painted runs [row, first, last]",
+        )),
+    ),
+    (
+        "dff",
+        false,
+        Shape::Maybe(&Shape::Object(&[
+            ("percentile", false, Shape::Number),
+            ("window_s", false, Shape::Number),
+        ])),
+    ),
+]);
+
 pub(super) const CHANNELS: Shape = Shape::Object(&[
     ("leave_out", false, Shape::List(&Shape::Text)),
     ("interpolate", false, Shape::List(&Shape::Text)),
@@ -108,6 +134,7 @@ pub(super) const FILTER: Shape = Shape::Object(&[
 const RECIPE: Shape = Shape::Object(&[
     ("teasel_recipe", true, Shape::Whole),
     ("recording", false, RECORDING),
+    ("movie", false, MOVIE),
     ("channels", false, CHANNELS),
     ("filter", false, FILTER),
     (
