@@ -2,8 +2,12 @@
 
 mod contrast;
 mod describe;
+mod dimensions;
 mod many;
 mod movies;
 mod prepare;
+mod quality;
 mod readers;
+mod rejection;
+mod steady;
 mod takeaway;

@@ -20,6 +20,8 @@
 //! | any bytes at all: an answer, no panic, little memory | `hostile` |
 //! | what is written is read again | `written`, `watch` |
 mod arrays;
+mod bdf;
+mod delimited;
 mod hostile;
 mod outside;
 mod plan;
@@ -30,6 +32,7 @@ mod watch;
 mod written;
 
 use teasel_core::error::Result;
+use teasel_core::recipe::Given;
 use teasel_core::recording::{MemorySource, OpenOptions, Recording, SideFile, open};
 
 /// Opens bytes under a name.
@@ -47,6 +50,15 @@ fn read_with(name: &str, bytes: &[u8], sides: Vec<SideFile>, salvage: bool) -> R
             ..OpenOptions::default()
         },
     )
+}
+
+/// A rate and a unit for files that carry none.
+fn told(rate_hz: f64, unit: &str) -> Given {
+    Given {
+        rate_hz: Some(rate_hz),
+        unit: Some(unit.to_owned()),
+        ..Given::default()
+    }
 }
 
 /// Opens bytes that must be a recording, under their name and under one that says nothing: the content decides.

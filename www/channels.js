@@ -1,12 +1,18 @@
-/** Channels: filters, reference, and which channels are left out. */
+/** Channels: filters, reference, and which channels are left out or interpolated. */
 import { find, make } from "./kit.js";
-import { numberField, select, textField } from "./fields.js";
+import { numberField, picks, select, textField } from "./fields.js";
 import { figureSlot } from "./figure.js";
+import { moreFilters } from "./filters.js";
 import { typed, written } from "./numbers.js";
+import { fateOf, proposals, settle } from "./proposals.js";
+import { ranks } from "./ranks.js";
 import { follow, now } from "./state.js";
 
 /** @typedef {import("./types").App} App */
 /** @typedef {import("./types").Recipe} Recipe */
+
+/** What pressing a channel's name does. @type {"leave_out" | "interpolate"} */
+let pressing = "leave_out";
 
 /** @param {App} app */
 export function mountChannels(app) {
@@ -21,7 +27,10 @@ export function mountChannels(app) {
   rate.field.placeholder = "as it is";
   const notch = notchField(app);
   const reference = select("reference", (value) => app.change((recipe) => void (recipe.channels.reference = asReference(value))));
-  const chips = make("div", { class: "chips", role: "group", "aria-label": "Channels; a pressed one is left out" });
+  const chips = make("div", { class: "chips", role: "group", "aria-label": "Channels; a pressed one is left out or interpolated" });
+  const mode = picks("What pressing a name does", "pressing", (value) => (pressing = value === "interpolate" ? "interpolate" : "leave_out", showMode()));
+  const showMode = () => mode.show([{ value: "leave_out", label: "leaves it out" }, { value: "interpolate", label: "interpolates it" }], pressing);
+  showMode();
 
   body.append(
     make("div", { class: "choice" },
@@ -30,7 +39,11 @@ export function mountChannels(app) {
       make("span", { class: "together" }, "refer to ", reference.root),
       make("span", { class: "together" }, "resample to ", rate.field, " Hz")),
     pairOf(app),
-    make("div", { class: "more leave-out" }, make("p", { class: "quiet small" }, "Leave out a channel by pressing its name:"), chips),
+    proposals(app),
+    make("details", { class: "more leave-out" }, make("summary", {}, "Leave out or interpolate any channel"),
+      make("p", { class: "choice" }, "Pressing a name ", mode.root, make("span", { class: "quiet small" }, "An interpolated channel adds no dimension: it helps maps and averages, not the separation.")), chips),
+    moreFilters(app),
+    ranks(),
   );
   follow((state, before) => {
     if (state.recipe === before.recipe && state.sheet === before.sheet && state.summary === before.summary) return;
@@ -69,6 +82,7 @@ function notchField(app) {
 
 /** @param {string} value @returns {Recipe["channels"]["reference"]} */
 function asReference(value) {
+  if (value === "neighbours") return { bipolar: "neighbours" };
   return value === "as recorded" || value === "average" ? value : [value.replace(/^channel:/, "")];
 }
 
@@ -78,9 +92,11 @@ function showReference(reference) {
   const current = recipe?.channels.reference ?? "as recorded";
   const names = (summary?.channels ?? []).map(({ name }) => name);
   const several = Array.isArray(current) && current.length > 1 ? [{ value: "several", label: `the mean of ${current.join(" and ")}` }] : [];
+  const bipolar = typeof current === "object" && !Array.isArray(current) ? current.bipolar : null;
+  const listed = Array.isArray(bipolar) ? [{ value: "listed", label: `${bipolar.length} pairs of the recipe` }] : [];
   reference.show(
-    [{ value: "as recorded", label: "as recorded" }, { value: "average", label: "the average of used" }, ...several, ...names.map((name) => ({ value: `channel:${name}`, label: name }))],
-    Array.isArray(current) ? (several.length ? "several" : `channel:${current[0]}`) : current,
+    [{ value: "as recorded", label: "as recorded" }, { value: "average", label: "the average of used" }, { value: "neighbours", label: "its neighbour (bipolar)" }, ...several, ...listed, ...names.map((name) => ({ value: `channel:${name}`, label: name }))],
+    Array.isArray(current) ? (several.length ? "several" : `channel:${current[0]}`) : bipolar ? (listed.length ? "listed" : "neighbours") : String(current),
   );
 }
 
@@ -88,23 +104,22 @@ function showReference(reference) {
 function showChips(app, chips) {
   const { recipe, summary, sheet } = now();
   const channels = (sheet ?? summary)?.channels ?? [];
-  const out = new Set(recipe?.channels.leave_out ?? []);
-  if (chips.children.length !== channels.length || channels.some(({ name }, i) => chips.children[i]?.textContent !== name))
-    chips.replaceChildren(...channels.map(({ name }) => make("button", { type: "button", click: () => turn(app, name) }, name)));
+  if (chips.children.length !== channels.length || channels.some(({ name }, i) => chips.children[i]?.getAttribute("data-name") !== name))
+    chips.replaceChildren(...channels.map(({ name }) => make("button", { type: "button", "data-name": name, click: () => turn(app, name) }, name)));
   channels.forEach(({ name, state }, i) => {
     const chip = /** @type {HTMLButtonElement | undefined} */ (chips.children[i]);
     if (!chip) return;
-    chip.setAttribute("aria-pressed", String(out.has(name) || state.state === "unusable"));
-    chip.disabled = state.state === "unusable" || !recipe;
+    const fate = recipe ? fateOf(recipe, name) : undefined;
+    const away = fate === "leave_out" || fate === "interpolate" ? fate : null;
+    chip.setAttribute("aria-pressed", String(away !== null || state.state === "unusable"));
+    chip.dataset.fate = away ?? "";
+    chip.setAttribute("aria-label", `${name}${away === "leave_out" ? ", left out" : away ? ", interpolated" : ""}`);
+    chip.disabled = !recipe;
     chip.title = "reason" in state ? state.reason : "";
   });
 }
 
-/** @param {App} app @param {string} name */
+/** Another press takes a choice back. @param {App} app @param {string} name */
 function turn(app, name) {
-  app.change((recipe) => {
-    const out = recipe.channels.leave_out;
-    recipe.channels.leave_out = out.includes(name) ? out.filter((one) => one !== name) : [...out, name];
-    recipe.channels.interpolate = recipe.channels.interpolate.filter((one) => one !== name);
-  });
+  app.change((recipe) => settle(recipe, name, fateOf(recipe, name) === pressing ? null : pressing));
 }

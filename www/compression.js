@@ -1,6 +1,7 @@
 /** Compression: how many dimensions to keep, on a dial under the plot's own axis. */
 import { find, make } from "./kit.js";
 import { figureSlot } from "./figure.js";
+import { count } from "./numbers.js";
 import { follow, now } from "./state.js";
 
 /** @typedef {import("./types").App} App */
@@ -8,7 +9,10 @@ import { follow, now } from "./state.js";
 
 const THUMB = 24;
 /** @type {Record<string, string>} */
-const GUIDES = { share_95: "95 % of variance", one_standard_error: "one standard error", held_out_peak: "held-out peak" };
+const GUIDES = {
+  share_95: "95 % of variance", parallel_analysis: "parallel analysis", noise_edge: "noise edge", hard_threshold: "hard threshold",
+  one_standard_error: "one standard error", held_out_peak: "held-out peak",
+};
 
 /** @param {App} app */
 export function mountCompression(app) {
@@ -23,7 +27,12 @@ export function mountCompression(app) {
     placed: (box) => box && under(keep, box),
   });
   eigenvalues.root.append(curve.root, dial);
-  body.append(eigenvalues.root, guides);
+  const rules = make("p", { class: "quiet small" });
+  const principal = figureSlot(app, "principal", { section: "compression", title: "The largest dimensions, not the most relevant", hint: "", label: "The first dimensions of the compression: pattern and course over the recording" });
+  body.append(eigenvalues.root, guides,
+    make("details", { class: "more", id: "noise-rules" }, make("summary", {}, "What the rules count"), rules),
+    make("details", { class: "more", id: "principal" }, make("summary", {}, "The first dimensions: the largest, not the most relevant"),
+      make("p", { class: "quiet small" }, "What is largest is often a blink, muscle, mains or drift. Use these to see what the compression keeps; what differs between the windows stands under Components."), principal.root));
 
   keep.addEventListener("input", () => app.change((recipe) => void (recipe.keep = Number(keep.value))));
   follow((state, before) => {
@@ -36,7 +45,17 @@ export function mountCompression(app) {
     keep.value = String(kept());
     keep.setAttribute("aria-valuetext", `keep ${kept()} of ${compression.rank}`);
     showGuides(app, guides);
+    rules.textContent = told();
   });
+}
+
+/** What the noise rules rest on. */
+function told() {
+  const found = now().sheet?.dimensions;
+  const general = "The share of variance knows nothing of noise. Parallel analysis counts dimensions of the correlation matrix above those of surrogates whose channels are shifted in time against each other, each keeping its own rhythm. Noise edge and hard threshold take the median eigenvalue for noise alike in all channels. All of these are blind to the labels; the two held-out rules are not.";
+  if (!found) return general;
+  const withheld = found.noise_edge === null ? " There are fewer effective samples than dimensions, so noise edge and hard threshold are withheld." : "";
+  return `${general} Here ${count(found.samples)} samples in windows are worth ${count(found.effective_samples)} independent ones (by the channels’ autocorrelation); ${found.surrogates} surrogates of ${count(found.surrogate_samples)} samples.${withheld}`;
 }
 
 /** C as chosen, or as it came out where a rule chooses. */
@@ -78,11 +97,21 @@ function showGuides(app, place) {
   const most = Math.min(compression.rank, 150);
   const buttons = [
     button(`${most} · all, blind to the labels`, "auto"),
-    ...Object.entries(GUIDES).filter(([name]) => compression.guides[name] !== undefined && Number(compression.guides[name]) > 1)
-      .map(([name, words]) => button(`${compression.guides[name]} · ${words}`, Number(compression.guides[name]))),
+    ...agreeing(compression.guides).map(([keep, words]) => button(`${keep} · ${words.join(", ")}`, keep)),
     button("best · chosen anew in every fold and permutation", "best"),
   ];
   const focused = document.activeElement?.getAttribute("data-guide");
   place.replaceChildren(make("span", { class: "quiet" }, "Set to"), ...buttons, make("span", { class: "quiet small" }, "C = 1 is not on offer: one direction, chosen by size alone."));
   if (focused) /** @type {HTMLElement | null} */ (place.querySelector(`[data-guide="${focused}"]`))?.focus();
+}
+
+/** What the rules would keep, those that agree together, smallest first. @param {Record<string, number>} guides @returns {[number, string[]][]} */
+function agreeing(guides) {
+  /** @type {Map<number, string[]>} */
+  const found = new Map();
+  for (const [name, words] of Object.entries(GUIDES)) {
+    const keep = Number(guides[name] ?? 0);
+    if (keep > 1) found.set(keep, [...(found.get(keep) ?? []), words]);
+  }
+  return [...found].sort((a, b) => a[0] - b[0]);
 }

@@ -16,6 +16,7 @@ import { door } from "./open.js";
 import { mountProgress } from "./progress.js";
 import { mountReadings } from "./readings.js";
 import { mountRecipeLink } from "./recipe-link.js";
+import { mountRejection } from "./rejection.js";
 import { mountRecording } from "./recording.js";
 import { follow, now, put } from "./state.js";
 import { numbersOf } from "./tables.js";
@@ -55,6 +56,7 @@ function join(bridge) {
   mountRecording(app);
   mountChannels(app);
   mountWindows(app);
+  mountRejection(app);
   mountCompression(app);
   mountComponents(app);
   mountEvidence(app, () => doors.goOn());

@@ -7,8 +7,13 @@ export interface EventWindow {
 export interface Recipe {
   teasel_recipe: number;
   recording?: Given;
-  channels: { leave_out: string[]; interpolate: string[]; reference: "as recorded" | "average" | string[] };
-  filter: { high_pass_hz: number | null; low_pass_hz: number | null; notch_hz: number[]; resample_hz: number | null };
+  channels: { leave_out: string[]; interpolate: string[]; keep?: string[]; reference: "as recorded" | "average" | string[] | { bipolar: "neighbours" | [string, string][] } };
+  filter: {
+    high_pass_hz: number | null; low_pass_hz: number | null; notch_hz: number[]; resample_hz: number | null;
+    detrend?: "mean" | "linear" | { linear_every_s: number } | null;
+    mains?: { hz: number; harmonics: number; how: "fit" | "notch"; window_s: number } | null;
+  };
+  drop_windows?: Partial<Record<"amplitude" | "step" | "flat" | "covariance", { z: number } | { uv: number }>>;
   keep: number | "auto" | "best";
   measure: "typical" | "total";
   contrast: { kind: "windows"; signal: EventWindow; reference: EventWindow };
@@ -72,7 +77,17 @@ export interface Sheet {
   recording: RecordingCard;
   recipe: Recipe;
   channels: ChannelCard[];
-  preparation: { rate_hz: number; channels: string[]; rank: number; longest_filter_s: number; filters: string[] } | null;
+  quality: { channels: { name: string; doubts: { kind: string; reason: string }[] }[]; compared_s: number; estimate: string | null } | null;
+  preparation: {
+    rate_hz: number; channels: string[]; rank: number; longest_filter_s: number; filters: string[];
+    ranks: { step: string; channels: number; rank: number; why: string }[]; response: { reach_s: number } | null;
+  } | null;
+  rejection: {
+    criteria: { name: string; limit: number; median: number; unit: string; beyond: [number, number] }[];
+    windows: [number, number]; effect: { typical: [number, number]; total: [number, number] } | null;
+  } | null;
+  principal: { share: number }[];
+  dimensions: { samples: number; effective_samples: number; surrogates: number; surrogate_samples: number; noise_edge: number | null } | null;
   windows: {
     paired: boolean;
     signal: SideCard;

@@ -12,12 +12,14 @@ pub fn recipe() -> Recipe {
             leave_out: vec!["T7".into()],
             interpolate: vec![],
             reference: Reference::Word(ReferenceWord::Average),
+            ..Channels::default()
         },
         filter: Filter {
             high_pass_hz: Some(1.0),
             low_pass_hz: Some(40.0),
             notch_hz: vec![50.0],
             resample_hz: None,
+            ..Filter::default()
         },
         keep: Keep::Number(5),
         measure: Measure::Typical,
@@ -145,7 +147,14 @@ pub fn sheet() -> Sheet {
                 "high-pass 1 Hz, 1 Hz transition, 825 taps".into(),
                 "low-pass 40 Hz, 10 Hz transition, 83 taps".into(),
             ],
+            before_filters: Vec::new(),
+            ranks: Vec::new(),
+            response: None,
         }),
+        quality: None,
+        rejection: None,
+        dimensions: None,
+        principal: Vec::new(),
         windows: Some(WindowsCard {
             paired: true,
             signal: side(40, &[("outside", 1), ("partner", 1)]),

@@ -31,6 +31,9 @@ pub struct Recipe {
     /// Filters and resampling.
     #[serde(default)]
     pub filter: Filter,
+    /// Which windows are dropped for what is in them; none by default.
+    #[serde(default, skip_serializing_if = "DropWindows::is_empty")]
+    pub drop_windows: DropWindows,
     /// The compression dimension C.
     #[serde(default)]
     pub keep: Keep,
@@ -65,6 +68,7 @@ impl Recipe {
             movie: Movie::default(),
             channels: Channels::default(),
             filter: Filter::default(),
+            drop_windows: DropWindows::default(),
             keep: Keep::default(),
             measure: contrast.usual_measure(),
             contrast,
@@ -158,13 +162,16 @@ impl Axes {
 pub struct Channels {
     /// Channels not analysed.
     pub leave_out: Vec<String>,
-    /// Channels replaced by their spherical-spline estimate from the others.
+    /// Channels replaced by their estimate from the others, by where they lie.
     pub interpolate: Vec<String>,
+    /// Doubtful channels that were looked at and are used as they are.
+    #[serde(skip_serializing_if = "Vec::is_empty")]
+    pub keep: Vec<String>,
     /// Reference.
     pub reference: Reference,
 }
 
-/// `"as recorded"`, `"average"`, or a list of channel names.
+/// `"as recorded"`, `"average"`, a list of channel names, or `{"bipolar": "neighbours"}`.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 #[serde(untagged)]
 pub enum Reference {
@@ -172,6 +179,34 @@ pub enum Reference {
     Word(ReferenceWord),
     /// The mean of these channels.
     Named(Vec<String>),
+    /// Differences of two channels each.
+    Bipolar(BipolarReference),
+}
+
+/// Differences of two channels each: `{"bipolar": "neighbours"}` or `{"bipolar": [["F3", "F4"], …]}`.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct BipolarReference {
+    /// Which pairs.
+    pub bipolar: Pairs,
+}
+
+/// Which channels are subtracted from which.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(untagged)]
+pub enum Pairs {
+    /// Chosen by where the channels lie.
+    Word(PairsWord),
+    /// First less second of each.
+    List(Vec<[String; 2]>),
+}
+
+/// The words that pairs may be.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum PairsWord {
+    /// The pairs of the shortest tree that joins all channels: one fewer than the channels, and every difference of two channels is a sum of them.
+    Neighbours,
 }
 
 impl Default for Reference {
@@ -203,6 +238,127 @@ pub struct Filter {
     pub notch_hz: Vec<f64>,
     /// New sampling rate.
     pub resample_hz: Option<f64>,
+    /// What is taken off each unbroken stretch before anything else.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub detrend: Option<Detrend>,
+    /// Mains and its harmonics.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub mains: Option<Mains>,
+}
+
+/// `"mean"`, `"linear"`, or `{"linear_every_s": 20}`.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[serde(untagged)]
+pub enum Detrend {
+    /// Over the whole stretch.
+    Word(DetrendWord),
+    /// A straight line over each piece of the stretch on its own.
+    Pieces(DetrendPieces),
+}
+
+/// A straight line over each piece.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct DetrendPieces {
+    /// Length of a piece; the last one takes the rest.
+    pub linear_every_s: f64,
+}
+
+/// What is taken off a whole stretch.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum DetrendWord {
+    /// Its mean.
+    Mean,
+    /// Its least-squares line.
+    Linear,
+}
+
+/// Mains and its harmonics: `{"hz": 50, "harmonics": 3, "how": "fit", "window_s": 4}`.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Mains {
+    /// Its frequency.
+    pub hz: f64,
+    /// Multiples of it that are removed, itself the first; those at or above half the rate are passed over.
+    #[serde(default = "three")]
+    pub harmonics: usize,
+    /// By what.
+    #[serde(default)]
+    pub how: MainsHow,
+    /// Length of the windows of a fit.
+    #[serde(default = "four_seconds")]
+    pub window_s: f64,
+}
+
+fn three() -> usize {
+    3
+}
+
+fn four_seconds() -> f64 {
+    4.0
+}
+
+/// How mains is removed.
+#[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum MainsHow {
+    /// Sinusoids fitted by least squares in half-overlapping windows are subtracted.
+    #[default]
+    Fit,
+    /// Stop bands 2 Hz wide.
+    Notch,
+}
+
+/// Which windows are dropped for what is in them. Thresholds are set over the windows of both sides together, blind to the labels.
+#[derive(Debug, Clone, Copy, Default, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields, default)]
+pub struct DropWindows {
+    /// The largest peak-to-peak amplitude of a channel.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub amplitude: Option<Limit>,
+    /// The largest step between two samples of a channel.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub step: Option<Limit>,
+    /// The smallest peak-to-peak amplitude of a channel.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub flat: Option<Limit>,
+    /// The window's variance summed over the whitened dimensions.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub covariance: Option<RobustLimit>,
+}
+
+impl DropWindows {
+    /// Whether nothing is dropped.
+    pub fn is_empty(&self) -> bool {
+        *self == DropWindows::default()
+    }
+}
+
+/// `{"z": 5}` or `{"uv": 150}`.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[serde(untagged)]
+pub enum Limit {
+    /// So many robust standard deviations of the logarithm beyond its median.
+    Robust(RobustLimit),
+    /// A value.
+    Absolute(AbsoluteLimit),
+}
+
+/// So many robust standard deviations (1.4826 times the median absolute deviation) of the logarithm beyond its median.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct RobustLimit {
+    /// How many.
+    pub z: f64,
+}
+
+/// A value in the unit of the channels.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct AbsoluteLimit {
+    /// In µV where the channels are voltages, else in their own unit.
+    pub uv: f64,
 }
 
 /// An integer above 1, `"auto"` or `"best"`.

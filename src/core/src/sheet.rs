@@ -19,12 +19,24 @@ pub struct Sheet {
     /// The picture of a movie and which of its pixels are channels.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub movie: Option<MovieCard>,
+    /// How good the channels are as recorded, with proposals; it does not depend on the recipe.
+    #[serde(default)]
+    pub quality: Option<QualityCard>,
     /// What the preparation did.
     pub preparation: Option<PreparationCard>,
     /// The windows of both sides.
     pub windows: Option<WindowsCard>,
+    /// Windows that the recipe's criteria dropped, and what that did to the ratio; `None` where it has no criteria.
+    #[serde(default)]
+    pub rejection: Option<RejectionCard>,
     /// The compression to C dimensions.
     pub compression: Option<CompressionCard>,
+    /// How many dimensions stand out of noise, by several rules.
+    #[serde(default)]
+    pub dimensions: Option<DimensionsCard>,
+    /// The first dimensions of the compression: the largest, not the most relevant.
+    #[serde(default)]
+    pub principal: Vec<PrincipalCard>,
     /// Fitted and held-out ratio against C.
     pub curve: Option<KeepCurve>,
     /// The shrinkage in force: ρ (typical) or γ (total).
@@ -157,6 +169,214 @@ pub struct PreparationCard {
     pub longest_filter_s: f64,
     /// One sentence for each filter: "high-pass 1 Hz, 0.75 Hz transition, 1101 taps".
     pub filters: Vec<String>,
+    /// What was taken off before the filters, a phrase each: "the mean of each unbroken stretch taken off".
+    #[serde(default)]
+    pub before_filters: Vec<String>,
+    /// Channels and rank after each step, in order.
+    #[serde(default)]
+    pub ranks: Vec<RankStep>,
+    /// What the FIR filters let pass; `None` without one.
+    #[serde(default)]
+    pub response: Option<Response>,
+}
+
+/// Channels and rank after one step of the preparation.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct RankStep {
+    /// Which step.
+    pub step: Step,
+    /// Channels after it.
+    pub channels: usize,
+    /// Numerical rank after it: of the recording's covariance; after the filters, of the windows' pooled covariance.
+    pub rank: usize,
+    /// What the step did to the rank, in a sentence.
+    pub why: String,
+}
+
+/// Steps of the preparation.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum Step {
+    /// As recorded.
+    Recorded,
+    /// Channels left out.
+    LeaveOut,
+    /// Channels interpolated.
+    Interpolate,
+    /// Channels referred to others.
+    Reference,
+    /// Filters, resampling, and only the samples inside windows.
+    Filter,
+}
+
+/// Magnitude response of all FIR filters in a row; passed once, with zero phase.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Response {
+    /// Frequencies, ascending, to half the recorded rate.
+    pub hz: Vec<f64>,
+    /// Gain in dB at each, not below −120.
+    pub db: Vec<f64>,
+    /// Where it begins to fall and where it has fallen by 6 dB.
+    pub edges: Vec<ResponseEdge>,
+    /// Reach of the filters to either side of a sample.
+    pub reach_s: f64,
+}
+
+/// One edge of a pass band.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+pub struct ResponseEdge {
+    /// Edge of the pass band.
+    pub pass_hz: f64,
+    /// Where the gain is one half (−6 dB), by design.
+    pub half_hz: f64,
+    /// Width of the transition, centred on `half_hz`.
+    pub transition_hz: f64,
+}
+
+/// How good every channel is, as recorded.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct QualityCard {
+    /// Every channel, in file order.
+    pub channels: Vec<ChannelQuality>,
+    /// Seconds spread over the recording on which spectra and neighbours were compared.
+    pub compared_s: f64,
+    /// The band of that comparison.
+    pub band_hz: [f64; 2],
+    /// How a channel was estimated from the others: "spherical splines", "inverse squared distance"; `None` where positions are not known.
+    pub estimate: Option<String>,
+}
+
+/// The measures of one channel; `None` where one cannot be taken.
+#[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
+pub struct ChannelQuality {
+    /// Label.
+    pub name: String,
+    /// Samples that are not finite numbers.
+    pub not_numbers: usize,
+    /// Share of seconds in which it stands still, 0…1.
+    pub flat: f64,
+    /// Share of samples in runs at its own largest or smallest value, 0…1.
+    pub clipped: f64,
+    /// Standard deviation in the band over the median channel's.
+    pub size: Option<f64>,
+    /// Robust z of the log variance in the band.
+    pub size_z: Option<f64>,
+    /// Share of power above 40 Hz, mains left out.
+    pub high: Option<f64>,
+    /// Mains over its surroundings in dB, less the median channel's.
+    pub mains_above_db: Option<f64>,
+    /// Median correlation with its estimate from the other channels.
+    pub predicted: Option<f64>,
+    /// The channel from which it differs least, and the variance of that difference over what is usual between nearest channels.
+    pub nearest: Option<(String, f64)>,
+    /// Spread of its slow course over its spread in the band.
+    pub drift: Option<f64>,
+    /// What speaks against it; empty for a good channel. A proposal, never done by itself.
+    pub doubts: Vec<Doubt>,
+}
+
+/// One thing that speaks against a channel.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Doubt {
+    /// Which criterion.
+    pub kind: DoubtKind,
+    /// With its number, to follow the channel's name: "stands still in 34 % of its seconds".
+    pub reason: String,
+}
+
+/// Criteria of channel quality.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum DoubtKind {
+    /// Holds values that are not numbers.
+    NotNumbers,
+    /// Stands still.
+    Flat,
+    /// Cut off at its extremes.
+    Clipped,
+    /// Much larger than the others.
+    Large,
+    /// Much power above 40 Hz.
+    Noisy,
+    /// Much mains.
+    Mains,
+    /// Unlike what its neighbours say.
+    Unlike,
+    /// Nearly the same as another.
+    Bridged,
+    /// Wanders slowly.
+    Drifting,
+}
+
+/// What the criteria of `drop_windows` did.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct RejectionCard {
+    /// Every criterion of the recipe.
+    pub criteria: Vec<CriterionCard>,
+    /// Windows before and after, both sides together.
+    pub windows: [usize; 2],
+    /// Fitted ratios of the leading component with every window and without the dropped ones; `None` until they are computed.
+    pub effect: Option<RejectionEffect>,
+}
+
+/// One criterion and what it dropped.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct CriterionCard {
+    /// `amplitude`, `step`, `flat`, `covariance`.
+    pub name: String,
+    /// Windows beyond this are dropped (below it, for `flat`), in `unit`.
+    pub limit: f64,
+    /// Median over windows.
+    pub median: f64,
+    /// Unit of `limit` and `median`.
+    pub unit: String,
+    /// Windows beyond it on the signal and on the reference side, whatever other criteria say.
+    pub beyond: [usize; 2],
+}
+
+/// Fitted ratios of the leading component with every window, then without the dropped ones.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+pub struct RejectionEffect {
+    /// In a typical trial.
+    pub typical: [f64; 2],
+    /// Over all power: the generalised eigenvalue λ where the measure is total.
+    pub total: [f64; 2],
+}
+
+/// How many dimensions stand out of noise.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct DimensionsCard {
+    /// Samples in windows.
+    pub samples: usize,
+    /// As many independent samples would estimate the covariances as well.
+    pub effective_samples: f64,
+    /// Variance of the noise, from the median eigenvalue.
+    pub noise_variance: Option<f64>,
+    /// Upper edge of the eigenvalues of noise alone (Marchenko & Pastur 1967).
+    pub noise_edge: Option<f64>,
+    /// Eigenvalues below are better dropped (Gavish & Donoho 2014).
+    pub hard_threshold: Option<f64>,
+    /// Eigenvalues of the correlation matrix of the windows that the surrogates were made from.
+    pub correlation: Vec<f64>,
+    /// 95th percentile of the surrogates' eigenvalues, in order of size.
+    pub surrogate_95: Vec<f64>,
+    /// Surrogates done.
+    pub surrogates: usize,
+    /// Samples that the surrogates were made from.
+    pub surrogate_samples: usize,
+}
+
+/// One dimension of the compression.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct PrincipalCard {
+    /// Share of the variance, 0…1.
+    pub share: f64,
+    /// Its standard deviation's pattern over the prepared channels, the largest entry positive.
+    pub pattern: Vec<f64>,
+    /// Smallest value in each equal bin of the prepared recording's samples, in units of its own standard deviation.
+    pub low: Vec<f32>,
+    /// Largest value in each bin.
+    pub high: Vec<f32>,
 }
 
 /// The windows of both sides.
@@ -177,7 +397,7 @@ pub struct WindowsCard {
 pub struct SideCard {
     /// Windows used.
     pub used: usize,
-    /// Windows dropped, by reason: `outside`, `gap`, `partner`.
+    /// Windows dropped, by reason: `outside`, `gap`, `partner`, and by criterion: `amplitude`, `step`, `flat-window`, `covariance`.
     pub dropped: BTreeMap<String, usize>,
     /// Samples a window.
     pub samples: usize,
@@ -210,7 +430,8 @@ pub struct CompressionCard {
     /// Where there are too many channels for their covariance: the basis that stands between.
     #[serde(default, skip_serializing_if = "Option::is_none")]
     pub basis: Option<BasisCard>,
-    /// Numbers of dimensions other rules would keep: `share_95`, `one_standard_error`, `held_out_peak`.
+    /// Numbers of dimensions other rules would keep: `share_95`, `one_standard_error`, `held_out_peak`, `parallel_analysis`,
+    /// `noise_edge`, `hard_threshold`.
     pub guides: BTreeMap<String, usize>,
 }
 

@@ -5,9 +5,12 @@ use crate::channels::Channels;
 use crate::channels_map::ChannelsMap;
 use crate::course::{Course, Of};
 use crate::eigenvalues::Eigenvalues;
+use crate::filters::Filters;
 use crate::keep::Keep;
 use crate::map::Map;
 use crate::overview::Overview;
+use crate::picture::{Pictures, PixelMap};
+use crate::principal::Principal;
 use crate::ratio::Row;
 use crate::scores::Scores;
 use crate::spectrum::Spectrum;
@@ -17,12 +20,14 @@ use crate::{Figure, text};
 use teasel_core::sheet::{Component, Sheet};
 
 /// Figures of the whole sheet: name and caption.
-const WHOLE: [(&str, &str); 10] = [
+const WHOLE: [(&str, &str); 12] = [
     ("overview", "The whole recording"),
     ("channels-map", "Where the channels lie"),
     ("channels", "Each channel as recorded"),
+    ("filters", "What the filters let pass"),
     ("windows", "Average time course and the two windows"),
     ("eigenvalues", "Variance of each dimension"),
+    ("principal", "The largest dimensions, not the most relevant"),
     ("keep", "How many dimensions to keep"),
     ("ratio-axis", "Axis of the ratios"),
     ("beside", "Beside it: what one would have used otherwise"),
@@ -53,7 +58,7 @@ const LAST: (&str, &str) = (
 pub fn names(sheet: &Sheet) -> Vec<(String, String)> {
     let mut all: Vec<(String, String)> = Vec::new();
     let owned = |(name, caption): (&str, &str)| (name.to_owned(), caption.to_owned());
-    all.extend(WHOLE[..7].iter().copied().map(owned));
+    all.extend(WHOLE[..9].iter().copied().map(owned));
     for (end, components) in ends(sheet) {
         for (i, _) in components.iter().enumerate() {
             let mut said = end.word().to_owned();
@@ -66,7 +71,7 @@ pub fn names(sheet: &Sheet) -> Vec<(String, String)> {
             }));
         }
     }
-    all.extend(WHOLE[7..].iter().copied().map(owned));
+    all.extend(WHOLE[9..].iter().copied().map(owned));
     all.push(owned(LAST));
     all.retain(|(name, _)| from_sheet(sheet, name).is_some());
     all.into_iter()
@@ -85,13 +90,18 @@ fn ends(sheet: &Sheet) -> [(End, &[Component]); 2] {
 pub fn from_sheet(sheet: &Sheet, name: &str) -> Option<Figure> {
     match name {
         "overview" => Overview::of(sheet).map(Figure::Overview),
+        "channels-map" if sheet.movie.is_some() => Pictures::of(sheet).map(Figure::Pictures),
         "channels-map" => ChannelsMap::of(sheet).map(Figure::ChannelsMap),
+        // A row for each of thousands of pixels tells nothing: their pictures do.
+        "channels" if sheet.movie.is_some() => None,
         "channels" => Channels::of(sheet).map(Figure::Channels),
         "windows" => {
             let first = sheet.first().map(|c| (c, End::from(sheet.leading)));
             Course::of(sheet, first, Of::Windows).map(Figure::Course)
         }
         "eigenvalues" => Eigenvalues::of(sheet).map(Figure::Eigenvalues),
+        "filters" => Filters::of(sheet).map(Figure::Filters),
+        "principal" => Principal::of(sheet).map(Figure::Principal),
         "keep" => Keep::of(sheet).map(Figure::Keep),
         "ratio-axis" => Row::head(sheet).map(Figure::Ratio),
         "beside" => Beside::of(sheet).map(Figure::Beside),
@@ -110,6 +120,12 @@ fn of_component(sheet: &Sheet, name: &str) -> Option<Figure> {
     let (end, components) = ends(sheet).into_iter().find(|(e, _)| e.word() == end)?;
     let component = components.get(index)?;
     match part {
+        "map" if sheet.movie.is_some() => {
+            PixelMap::of(sheet, component, end, false).map(Figure::PixelMap)
+        }
+        "map-small" if sheet.movie.is_some() => {
+            PixelMap::of(sheet, component, end, true).map(Figure::PixelMap)
+        }
         "map" => Map::of(sheet, component, end, false).map(Figure::Map),
         "map-small" => Map::of(sheet, component, end, true).map(Figure::Map),
         "filter" => Weights::of(sheet, component, end).map(Figure::Weights),

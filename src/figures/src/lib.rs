@@ -18,6 +18,7 @@ mod channels_map;
 mod course;
 mod eigenvalues;
 mod estimate;
+mod filters;
 mod fine;
 mod frame;
 mod group;
@@ -30,7 +31,9 @@ mod map;
 mod nan;
 mod overview;
 mod pen;
+mod picture;
 mod places;
+mod principal;
 mod ratio;
 mod recorder;
 mod scores;
@@ -107,8 +110,16 @@ figures! {
     Course(course::Course),
     /// Variance of every dimension.
     Eigenvalues(eigenvalues::Eigenvalues),
+    /// What the filters let pass.
+    Filters(filters::Filters),
+    /// The first dimensions of the compression and their courses.
+    Principal(principal::Principal),
     /// Fitted and held-out ratio against C.
     Keep(keep::Keep),
+    /// Mean and spread of every pixel of a movie.
+    Pictures(picture::Pictures),
+    /// A pattern on the mean frame of a movie.
+    PixelMap(picture::PixelMap),
     /// A pattern on the head.
     Map(map::Map),
     /// The largest weights of a filter.

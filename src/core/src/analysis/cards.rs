@@ -5,17 +5,19 @@ use crate::contrast::fit::{Direction, Ends};
 use crate::contrast::linalg::{abs_cosine, packed_len, quadratic};
 use crate::contrast::space::Space;
 use crate::contrast::windows::Exchange;
+use crate::evidence::dimensions::outstanding;
 use crate::evidence::heldout::{
     Design, Ground, Scores, best_of, fill, log_total, log_typical, pair_log_ratios, score_into,
     total_ratio, typical_ratio, variances,
 };
 use crate::evidence::permute::{null_hypothesis, p_value};
-use crate::prepare::Prepared;
+use crate::prepare::{Prepared, Quality};
 use crate::recipe::{Keep, KeepWord, Measure, Recipe};
 use crate::recording::Recording;
 use crate::sheet::{
-    BasisCard, Comparator, ComparatorKind, Component, CompressionCard, End, FoldCard, Permutation,
-    RecordingCard, Sheet, TotalRatio, TrialScore, TypicalRatio,
+    BasisCard, ChannelCard, ChannelState, Comparator, ComparatorKind, Component, CompressionCard,
+    End, FoldCard, Permutation, PrincipalCard, RankStep, RecordingCard, Sheet, Step, TotalRatio,
+    TrialScore, TypicalRatio,
 };
 use std::collections::BTreeMap;
 
@@ -62,9 +64,13 @@ pub(super) fn begin(recording: &Recording, recipe: &Recipe) -> Sheet {
         recipe: recipe.clone(),
         channels: Vec::new(),
         movie: None,
+        quality: None,
         preparation: None,
         windows: None,
+        rejection: None,
         compression: None,
+        dimensions: None,
+        principal: Vec::new(),
         curve: None,
         shrinkage: None,
         leading: End::default(),
@@ -106,6 +112,86 @@ fn envelope(recording: &Recording) -> Vec<f64> {
     out
 }
 
+/// Marks used channels that the comparison doubts, unless the recipe says that they were looked at and kept.
+pub(super) fn doubt(cards: &mut [ChannelCard], quality: Option<&Quality>, recipe: &Recipe) {
+    let Some(quality) = quality else { return };
+    for (card, found) in cards.iter_mut().zip(&quality.card.channels) {
+        if let (ChannelState::Used, Some(first)) = (&card.state, found.doubts.first())
+            && !recipe.channels.keep.contains(&card.name)
+        {
+            card.state = ChannelState::NeedsALook(first.reason.clone());
+        }
+    }
+}
+
+/// Channels and rank after each step of the preparation.
+pub(super) fn ranks(work: &mut Work) {
+    let (Some(prepared), Some(quality), Some(ground)) =
+        (&work.prepared, &work.quality, &work.ground)
+    else {
+        return;
+    };
+    let steps = prepared.steps.iter().filter_map(|step| {
+        Some(RankStep {
+            step: step.step,
+            channels: step.matrix.nrows(),
+            rank: quality.rank(&step.matrix)?,
+            why: step.why.clone(),
+        })
+    });
+    let samples: f64 = work.covariances.weights.iter().sum();
+    let last = RankStep {
+        step: Step::Filter,
+        channels: prepared.channels.len(),
+        rank: ground.space.rank,
+        why: format!(
+            "Filters take no channel away; this is what the channels span inside the windows, over {samples} samples about their windows’ means. C can be no larger."
+        ),
+    };
+    let ranks: Vec<RankStep> = steps.chain(std::iter::once(last)).collect();
+    if let Some(card) = &mut work.sheet.preparation {
+        card.ranks = ranks;
+    }
+}
+
+/// A principal dimension: `row` of the whitening and its course over all prepared samples.
+pub(super) fn principal(
+    space: &Space,
+    basis: Option<&Basis>,
+    at: usize,
+    row: &[f64],
+    course: &[f64],
+) -> PrincipalCard {
+    let value = space.eigenvalues[at];
+    let inside: f64 = space.eigenvalues.iter().filter(|e| **e > 0.0).sum();
+    let all = basis.map_or(inside, |b| b.total);
+    let row = basis.map_or_else(|| row.to_vec(), |b| b.lift(row));
+    let largest = row
+        .iter()
+        .copied()
+        .fold(0.0_f64, |m, x| if x.abs() > m.abs() { x } else { m });
+    let sign = if largest < 0.0 { -1.0 } else { 1.0 };
+    let n = course.len();
+    let mean = course.iter().sum::<f64>() / n.max(1) as f64;
+    let bins = ENVELOPE_BINS.min(n);
+    let at = |b: usize| (b as u64 * n as u64 / bins as u64) as usize;
+    let bin = |b: usize| {
+        let part = &course[at(b)..at(b + 1)];
+        part.iter()
+            .fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), x| {
+                let x = sign * (x - mean);
+                (low.min(x), high.max(x))
+            })
+    };
+    let ends: Vec<(f64, f64)> = (0..bins).map(bin).collect();
+    PrincipalCard {
+        share: value / all,
+        pattern: row.iter().map(|w| sign * w * value).collect(),
+        low: ends.iter().map(|e| e.0 as f32).collect(),
+        high: ends.iter().map(|e| e.1 as f32).collect(),
+    }
+}
+
 /// Takes back what no longer holds.
 pub(super) fn forget(sheet: &mut Sheet, recipe: &Recipe, stale: &Stale) {
     sheet.recipe = recipe.clone();
@@ -115,6 +201,9 @@ pub(super) fn forget(sheet: &mut Sheet, recipe: &Recipe, stale: &Stale) {
     }
     if stale.windows {
         sheet.windows = None;
+        sheet.rejection = None;
+        sheet.dimensions = None;
+        sheet.principal.clear();
     }
     if stale.method {
         sheet.warnings = sheet.recording.warnings.clone();
@@ -271,6 +360,9 @@ pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
     });
     if let Some(card) = &mut work.sheet.preparation {
         card.rank = ground.space.rank;
+        if let Some(last) = card.ranks.last_mut() {
+            last.rank = ground.space.rank;
+        }
     }
     guides(&mut work.sheet);
     work.sheet.warnings = warnings(work, recipe);
@@ -332,6 +424,23 @@ pub(super) fn guides(sheet: &mut Sheet) {
     // A basis may end before.
     if inside >= 0.95 * all {
         card.guides.insert("share_95".into(), share_95);
+    }
+    if let Some(found) = &sheet.dimensions {
+        let above = |limit: f64| {
+            let values = card.eigenvalues.iter().take(card.rank);
+            values.filter(|e| **e > limit).count()
+        };
+        let parallel = outstanding(&found.correlation, &found.surrogate_95);
+        card.guides.insert("parallel_analysis".into(), parallel);
+        let rules = [
+            ("noise_edge", found.noise_edge),
+            ("hard_threshold", found.hard_threshold),
+        ];
+        for (name, limit) in rules {
+            if let Some(limit) = limit {
+                card.guides.insert(name.into(), above(limit));
+            }
+        }
     }
     let Some(curve) = &sheet.curve else { return };
     // Held-out log ratios in the direction of the leading end.
@@ -694,6 +803,7 @@ fn warnings(work: &Work, recipe: &Recipe) -> Vec<String> {
     if let Some(prepared) = &work.prepared {
         out.extend(prepared.warnings.iter().cloned());
         out.extend(edge_warning(prepared, recipe));
+        out.extend(mirrored_warning(work, prepared));
     }
     out.extend(sheet.recording.warnings.iter().cloned());
     out
@@ -754,5 +864,27 @@ fn edge_warning(prepared: &Prepared, recipe: &Recipe) -> Option<String> {
     let filter = prepared.card.longest_filter_s;
     (filter > 5.0 * shortest).then(|| {
         format!("The longest filter spans {filter:.2} s, the shorter windows {shortest:.2} s: what happens beside a window reaches into it.")
+    })
+}
+
+/// Says how many windows lie where the filters see mirrored samples.
+fn mirrored_warning(work: &Work, prepared: &Prepared) -> Option<String> {
+    let reach_s = prepared.card.response.as_ref()?.reach_s;
+    let reach = (reach_s * prepared.rate_hz).round() as usize;
+    let windows = &work.selection.as_ref()?.windows;
+    let near = |w: &&crate::contrast::windows::Window| {
+        prepared.stretches.iter().any(|s| {
+            let (first, end) = (s.first, s.first + s.count);
+            w.first >= first
+                && w.first + w.count <= end
+                && (w.first - first < reach || end - w.first - w.count < reach)
+        })
+    };
+    let count = windows.iter().filter(near).count();
+    (count > 0).then(|| {
+        format!(
+            "{count} of {} windows lie within {reach_s:.2} s of the start, the end or a gap, where the filters reach into mirrored samples.",
+            windows.len()
+        )
     })
 }

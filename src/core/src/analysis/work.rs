@@ -4,24 +4,28 @@ use crate::contrast::band::Banding;
 use crate::contrast::basis::{Basis, Channels, Finding, SPARE};
 use crate::contrast::fit::{Ends, Labels, Method, extremes, fit};
 use crate::contrast::read::{Reader, Row};
+use crate::contrast::reject::{judge, measure, relative_size};
 use crate::contrast::space::Covariances;
 use crate::contrast::windows::{Exchange, Selection, Window, check, lag_samples, select};
 use crate::error::{Kind, Problem, Result};
 use crate::evidence::FEWEST;
+use crate::evidence::dimensions::Counting;
 use crate::evidence::heldout::{
     Design, FoldFit, Ground, Scores, choose_keep, fit_ground, log_total, log_typical,
     mean_and_error, score_into, variances,
 };
 use crate::evidence::permute::{Plan, arrangement, plan, slides};
-use crate::prepare::{Prepared, Preparing, inspect};
+use crate::prepare::{Comparing, Prepared, Preparing, Quality, inspect};
 use crate::recipe::{BandReference, Contrast, Keep, KeepWord, Measure, Recipe, Shrink, ShrinkWord};
 use crate::recording::Recording;
-use crate::sheet::{ChannelCard, End, KeepCurve, Sheet};
+use crate::sheet::{ChannelCard, End, KeepCurve, RejectionEffect, Sheet};
 use std::borrow::Cow;
 use std::collections::BTreeMap;
 
 /// Largest C of `keep: "auto"`.
 const AUTO_LIMIT: usize = 150;
+/// Dimensions of the compression that are shown.
+const PRINCIPAL: usize = 6;
 /// Floating-point operations of one bite: about 20 ms in a browser.
 const BITE: f64 = 2e7;
 /// Values of C that `keep: "best"` chooses from go no further.
@@ -32,6 +36,9 @@ const BEST_LIMIT: usize = 64;
 pub(super) struct Work {
     pub(super) sheet: Sheet,
     cards: Option<Vec<ChannelCard>>,
+    /// The comparison of the recorded channels while it is at work; what it gave holds for every recipe.
+    comparing: Option<Comparing>,
+    pub(super) quality: Option<Quality>,
     preparing: Option<Preparing>,
     pub(super) prepared: Option<Prepared>,
     pub(super) selection: Option<Selection>,
@@ -57,6 +64,21 @@ pub(super) struct Work {
     pub(super) null: Vec<(f64, f64)>,
     surrogate: Option<Surrogate>,
     curve: CurveWork,
+    /// The criteria of `drop_windows` have been looked at.
+    rejected: bool,
+    effect: Option<EffectWork>,
+    counting: Option<Counting>,
+    /// The principal course at work, as far as it is.
+    course: Vec<f64>,
+    course_done: usize,
+}
+
+/// Every window as it was before some were dropped, to say what that did to the ratio.
+#[derive(Debug)]
+struct EffectWork {
+    covariances: Covariances,
+    windows: Vec<Window>,
+    ground: Option<Ground>,
 }
 
 /// One surrogate as far as it is.
@@ -95,11 +117,14 @@ enum Task {
     Compress,
     Band,
     Covariances,
+    Reject,
     Ground,
     Keep,
     Logs,
     Solve,
     Sketch,
+    Compare,
+    Ranks,
     Describe,
     FoldGround(usize),
     FoldLogs(usize),
@@ -107,6 +132,9 @@ enum Task {
     Summarise,
     Permute,
     Curve,
+    Effect,
+    Principal,
+    Dimensions,
     Nothing,
 }
 
@@ -132,6 +160,8 @@ impl Work {
         Work {
             sheet: cards::begin(recording, recipe),
             cards: None,
+            comparing: None,
+            quality: None,
             preparing: None,
             prepared: None,
             selection: None,
@@ -153,6 +183,11 @@ impl Work {
             null: Vec::new(),
             surrogate: None,
             curve: CurveWork::default(),
+            rejected: false,
+            effect: None,
+            counting: None,
+            course: Vec::new(),
+            course_done: 0,
         }
     }
 
@@ -166,7 +201,8 @@ impl Work {
         let preparation = old.channels != new.channels || old.filter != new.filter;
         if preparation {
             // Refuse before anything is dropped.
-            let cards = inspect(recording, new);
+            let mut cards = inspect(recording, new);
+            cards::doubt(&mut cards, self.quality.as_ref(), new);
             let preparing = Preparing::new(recording, &cards, new)?;
             self.cards = Some(cards);
             self.preparing = Some(preparing);
@@ -179,6 +215,7 @@ impl Work {
         let windows = preparation
             || drawn
             || old.contrast != new.contrast
+            || old.drop_windows != new.drop_windows
             || old.not_used != new.not_used
             || locked_share(old) != locked_share(new);
         let spaces = limit(old) != limit(new);
@@ -187,8 +224,15 @@ impl Work {
             self.selection = None;
             self.bands = None;
             self.covariances = Covariances::default();
+            self.rejected = false;
+            self.counting = None;
+            self.course.clear();
             self.ground = None;
             self.folds.clear();
+        }
+        if old.evidence.seed != new.evidence.seed {
+            self.counting = None;
+            self.sheet.dimensions = None;
         }
         let method = windows
             || old.measure != new.measure
@@ -196,6 +240,9 @@ impl Work {
             || old.keep != new.keep
             || old.components != new.components;
         let folds = old.evidence.folds != new.evidence.folds;
+        if method {
+            self.effect_stale();
+        }
         if method || folds {
             let logs_hold = !windows && old.shrink == new.shrink && old.measure == new.measure;
             if !logs_hold {
@@ -266,6 +313,19 @@ impl Work {
         Ok(())
     }
 
+    /// What was dropped stays dropped; the ratio with every window has to be worked out again.
+    fn effect_stale(&mut self) {
+        if !self.rejected {
+            self.effect = None;
+        }
+        if let Some(effect) = &mut self.effect {
+            effect.ground = None;
+        }
+        if let Some(card) = &mut self.sheet.rejection {
+            card.effect = None;
+        }
+    }
+
     fn enough(&self) -> bool {
         self.selection
             .as_ref()
@@ -303,6 +363,9 @@ impl Work {
         if self.covariances.packed.len() < windows {
             return Task::Covariances;
         }
+        if !self.rejected && !recipe.drop_windows.is_empty() {
+            return Task::Reject;
+        }
         let Some(ground) = self.ground.as_ref().filter(|g| self.whole(g, recipe)) else {
             return Task::Ground;
         };
@@ -319,11 +382,20 @@ impl Work {
         if self.sketched < up.min(1) + down.min(1) {
             return Task::Sketch;
         }
+        // Pixels have no contacts that could be bad, and too many neighbours to be compared.
+        let judged = self.sheet.movie.is_none();
+        if judged && self.quality.is_none() {
+            return Task::Compare;
+        }
+        let preparation = self.sheet.preparation.as_ref();
+        if judged && preparation.is_some_and(|p| p.ranks.is_empty()) {
+            return Task::Ranks;
+        }
         if self.described < up + down {
             return Task::Describe;
         }
         if !self.enough() {
-            return Task::Nothing;
+            return self.last(ground);
         }
         let folds = self.design.as_ref().map_or(0, |d| d.folds);
         if self.fits.len() < folds {
@@ -350,8 +422,28 @@ impl Work {
         if !self.curve.shown {
             Task::Curve
         } else {
+            self.last(ground)
+        }
+    }
+
+    /// What nothing else waits for.
+    fn last(&self, ground: &Ground) -> Task {
+        let wanted = PRINCIPAL.min(ground.space.dimensions());
+        let effect = self.sheet.rejection.as_ref().and_then(|r| r.effect);
+        if self.effect.is_some() && effect.is_none() {
+            Task::Effect
+        } else if self.sheet.principal.len() < wanted {
+            Task::Principal
+        } else if self.sheet.dimensions.is_none() && self.basis.is_none() && self.counts_samples() {
+            Task::Dimensions
+        } else {
             Task::Nothing
         }
+    }
+
+    /// Whether the covariances are those of the prepared samples, so that rules about samples speak of them.
+    fn counts_samples(&self) -> bool {
+        (self.selection.as_ref()).is_some_and(|s| s.exchange.labels_alone())
     }
 
     /// Whether a ground holds all its windows.
@@ -369,7 +461,8 @@ impl Work {
         let task = self.next(recipe);
         match task {
             Task::Inspect => {
-                let found = inspect(recording, recipe);
+                let mut found = inspect(recording, recipe);
+                cards::doubt(&mut found, self.quality.as_ref(), recipe);
                 self.sheet.channels = found.clone();
                 self.cards = Some(found);
                 Ok(progress(
@@ -403,6 +496,7 @@ impl Work {
             Task::Compress => self.compress(recording, recipe),
             Task::Band => self.push_band(recipe),
             Task::Covariances => self.push_covariances(recipe),
+            Task::Reject => self.reject(recipe),
             Task::Ground => self.push_ground(recipe),
             Task::Keep => self.choose_keep(recipe),
             Task::Logs => {
@@ -425,6 +519,11 @@ impl Work {
                 self.sketched += 1;
                 let firsts = self.sheet.stronger.len().min(1) + self.sheet.weaker.len().min(1);
                 Ok(self.fitted(self.sketched == firsts))
+            }
+            Task::Compare => Ok(self.compare(recording, recipe)),
+            Task::Ranks => {
+                cards::ranks(self);
+                Ok(self.fitted(true))
             }
             Task::Describe => {
                 super::describing::describe(
@@ -458,6 +557,9 @@ impl Work {
             }
             Task::Permute => self.permute(recipe),
             Task::Curve => self.curve(recipe),
+            Task::Effect => self.rejection_effect(recipe),
+            Task::Principal => self.principal(),
+            Task::Dimensions => self.count_dimensions(recipe),
             Task::Nothing => Ok(progress(Stage::Done, 1, 1, false)),
         }
     }
@@ -605,6 +707,184 @@ impl Work {
             selection.enough()?;
         }
         Ok(())
+    }
+
+    /// Leaves out the windows that the recipe's criteria name, and keeps what is needed to say what that did.
+    fn reject(&mut self, recipe: &Recipe) -> Result<Progress> {
+        let (Some(prepared), Some(selection)) = (&self.prepared, &mut self.selection) else {
+            return Err(lost());
+        };
+        let windows = selection.windows.clone();
+        let measures: Vec<[f64; 3]> = windows
+            .iter()
+            .map(|w| measure(&prepared.samples, w))
+            .collect();
+        let sizes = match recipe.drop_windows.covariance {
+            Some(_) => relative_size(&self.covariances),
+            None => Vec::new(),
+        };
+        let (mut card, why) = judge(
+            &recipe.drop_windows,
+            &measures,
+            &sizes,
+            &windows,
+            &prepared.unit,
+        );
+        self.effect = None;
+        if why.iter().any(Option::is_some) {
+            let mut smaller = selection.clone();
+            let kept = smaller.drop_for(&why);
+            smaller.enough()?;
+            self.effect = Some(EffectWork {
+                covariances: self.covariances.clone(),
+                windows,
+                ground: None,
+            });
+            *selection = smaller;
+            self.covariances.keep_only(&kept);
+            self.sheet.windows = Some(selection.card.clone());
+            self.design = None;
+        }
+        card.windows[1] = selection.windows.len();
+        self.sheet.rejection = Some(card);
+        self.rejected = true;
+        let all = self.covariances.packed.len() as u64;
+        Ok(progress(Stage::Windows, all, all, true))
+    }
+
+    /// The fitted ratio with every window, beside the one without the dropped windows.
+    fn rejection_effect(&mut self, recipe: &Recipe) -> Result<Progress> {
+        let limit = limit(recipe);
+        let method = Method {
+            components: 1,
+            ..self.method(recipe)
+        };
+        let (Some(effect), Some(prepared), Some(selection), Some(keep)) =
+            (&mut self.effect, &self.prepared, &self.selection, self.keep)
+        else {
+            return Err(lost());
+        };
+        let all = effect.windows.len();
+        let ground = effect
+            .ground
+            .get_or_insert_with(|| Ground::new(&effect.covariances, limit, vec![true; all]));
+        let fourth = wants_fourth(recipe);
+        if ground.space.covariances.len() < all || (fourth && ground.fourth.len() < all) {
+            let reader = reader(prepared, self.bands.as_ref(), recipe);
+            let also = fourth.then_some((&reader, &effect.windows[..]));
+            let done = push_space(ground, &effect.covariances, also, None);
+            return Ok(progress(Stage::Curve, done as u64, 2 * all as u64, false));
+        }
+        if !logs_ready(ground, keep, recipe) {
+            let done = push_logs(ground, keep, method.rho());
+            return Ok(progress(
+                Stage::Curve,
+                all as u64 + done,
+                2 * all as u64,
+                false,
+            ));
+        }
+        let design = Design {
+            paired: selection.paired,
+            exchange: selection.exchange,
+            signal: effect.windows.iter().map(|w| w.signal).collect(),
+            trial: effect.windows.iter().map(|w| w.trial).collect(),
+            fold: vec![0; all],
+            folds: 1,
+        };
+        let labels = Labels {
+            signal: &design.signal,
+            train: &ground.train,
+        };
+        let weights = &effect.covariances.weights;
+        let ends = fit(ground.view(weights, keep), labels, &method);
+        let u = ends
+            .as_ref()
+            .and_then(|e| cards::leading_direction(e, self.sheet.leading))
+            .map(|d| &d.u);
+        let before = u.map_or([f64::NAN; 2], |u| {
+            let v = variances(&ground.space, u, &design.signal);
+            let total = log_total(&v, weights, &design, |_| true);
+            [log_typical(&v, &design).exp(), total.exp()]
+        });
+        let after = self
+            .sheet
+            .first()
+            .map_or([f64::NAN; 2], |c| [c.typical.fitted, c.total.fitted]);
+        if let Some(card) = &mut self.sheet.rejection {
+            card.effect = Some(RejectionEffect {
+                typical: [before[0], after[0]],
+                total: [before[1], after[1]],
+            });
+        }
+        effect.ground = None;
+        Ok(progress(Stage::Curve, 2 * all as u64, 2 * all as u64, true))
+    }
+
+    /// The next bite of the comparison of the recorded channels.
+    fn compare(&mut self, recording: &Recording, recipe: &Recipe) -> Progress {
+        let cards = self.cards.get_or_insert_default();
+        let comparing = self
+            .comparing
+            .get_or_insert_with(|| Comparing::new(recording, cards));
+        if comparing.step(recording) {
+            return self.fitted(false);
+        }
+        self.quality = self.comparing.take().and_then(Comparing::finish);
+        cards::doubt(cards, self.quality.as_ref(), recipe);
+        self.sheet.channels = cards.clone();
+        self.sheet.quality = self.quality.as_ref().map(|q| q.card.clone());
+        self.fitted(true)
+    }
+
+    /// The next bite of the next principal course.
+    fn principal(&mut self) -> Result<Progress> {
+        let (Some(ground), Some(prepared)) = (&self.ground, &self.prepared) else {
+            return Err(lost());
+        };
+        let at = self.sheet.principal.len();
+        let of = PRINCIPAL.min(ground.space.dimensions()) as u64;
+        let all = prepared.samples.first().map_or(0, Vec::len);
+        if self.course.len() != all {
+            self.course = vec![0.0; all];
+            self.course_done = 0;
+        }
+        let row: Vec<f64> = ground.space.whitening.row(at).iter().copied().collect();
+        let end = all.min(self.course_done + (BITE / prepared.samples.len() as f64) as usize + 1);
+        super::describing::add_projection(&mut self.course, prepared, &row, self.course_done, end);
+        self.course_done = end;
+        if end == all {
+            let course = std::mem::take(&mut self.course);
+            let card = cards::principal(&ground.space, self.basis.as_ref(), at, &row, &course);
+            self.sheet.principal.push(card);
+        }
+        Ok(progress(
+            Stage::Curve,
+            at as u64,
+            of,
+            end == all && at as u64 + 1 == of,
+        ))
+    }
+
+    /// The next surrogate of the parallel analysis.
+    fn count_dimensions(&mut self, recipe: &Recipe) -> Result<Progress> {
+        let (Some(prepared), Some(selection), Some(ground)) =
+            (&self.prepared, &self.selection, &self.ground)
+        else {
+            return Err(lost());
+        };
+        let counting = self.counting.get_or_insert_with(|| {
+            Counting::new(&prepared.samples, &selection.windows, recipe.evidence.seed)
+        });
+        let more = counting.step(&prepared.samples);
+        let (done, of) = counting.progress(prepared.samples.len());
+        if !more {
+            let values = &ground.space.eigenvalues[..ground.space.rank];
+            self.sheet.dimensions = Some(counting.card(values));
+            self.counting = None;
+            cards::guides(&mut self.sheet);
+        }
+        Ok(progress(Stage::Curve, done as u64, of as u64, !more))
     }
 
     fn push_ground(&mut self, recipe: &Recipe) -> Result<Progress> {

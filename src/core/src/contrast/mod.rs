@@ -16,5 +16,6 @@ pub mod fit;
 pub mod linalg;
 pub mod pieces;
 pub mod read;
+pub mod reject;
 pub mod space;
 pub mod windows;

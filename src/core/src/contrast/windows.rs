@@ -18,7 +18,7 @@ use crate::recording::{Event, Stretch};
 use crate::sheet::{SideCard, Trial, WindowsCard};
 use rand_chacha::ChaCha8Rng;
 use rand_chacha::rand_core::{Rng, SeedableRng};
-use std::collections::{BTreeMap, BTreeSet};
+use std::collections::BTreeMap;
 
 /// Fewest samples a window may have: a variance needs several.
 const LEAST_SAMPLES: usize = 3;
@@ -849,37 +849,8 @@ impl Selection {
 
     /// Drops the flat windows and their partners, counted as `flat` and `partner`; gives which windows are kept.
     pub fn drop_flat(&mut self, flat: &[bool]) -> Vec<bool> {
-        let paired = self.paired;
-        let lost: BTreeSet<usize> = (0..flat.len())
-            .filter(|k| paired && flat[*k])
-            .map(|k| self.windows[k].trial)
-            .collect();
-        let gone = |k: usize, w: &Window| {
-            if paired {
-                lost.contains(&w.trial)
-            } else {
-                flat[k]
-            }
-        };
-        let kept: Vec<bool> = self
-            .windows
-            .iter()
-            .enumerate()
-            .map(|(k, w)| !gone(k, w))
-            .collect();
-        for (k, w) in self.windows.iter().enumerate().filter(|(k, _)| !kept[*k]) {
-            let side = if w.signal {
-                &mut self.card.signal
-            } else {
-                &mut self.card.reference
-            };
-            side.used -= 1;
-            drop_one(side, if flat[k] { "flat" } else { "partner" });
-            let known = |t: &&mut Trial| t.onset_s == w.onset_s && t.dropped.is_none();
-            if let Some(trial) = self.card.trials.iter_mut().find(known) {
-                trial.dropped = Some("flat".to_owned());
-            }
-        }
+        let why: Vec<Option<&'static str>> = flat.iter().map(|f| f.then_some("flat")).collect();
+        let kept = self.drop_for(&why);
         let dropped = kept.iter().filter(|k| !**k).count();
         let (windows, hold) = if dropped == 1 {
             ("window was", "it holds")
@@ -887,15 +858,49 @@ impl Selection {
             ("windows were", "they or their partners hold")
         };
         self.warnings.push(format!("{dropped} {windows} left out because {hold} no variance: a blanked amplifier or a lead that was off."));
-        let mut at = kept.iter();
-        self.windows.retain(|_| at.next().copied().unwrap_or(true));
+        kept
+    }
+
+    /// Drops every window with a reason, counted under it, and its partner, counted as `partner`; gives which windows are kept.
+    pub fn drop_for(&mut self, why: &[Option<&'static str>]) -> Vec<bool> {
+        let paired = self.paired;
+        let mut lost: BTreeMap<usize, &'static str> = BTreeMap::new();
+        for (window, reason) in self.windows.iter().zip(why) {
+            if let (true, Some(reason)) = (paired, reason) {
+                lost.entry(window.trial).or_insert(reason);
+            }
+        }
+        let gone = |k: usize, w: &Window| why[k].or(lost.get(&w.trial).copied());
+        let reasons: Vec<Option<&'static str>> = self
+            .windows
+            .iter()
+            .enumerate()
+            .map(|(k, w)| gone(k, w))
+            .collect();
+        for ((w, reason), own) in self.windows.iter().zip(&reasons).zip(why) {
+            let Some(reason) = reason else { continue };
+            let side = if w.signal {
+                &mut self.card.signal
+            } else {
+                &mut self.card.reference
+            };
+            side.used -= 1;
+            drop_one(side, own.unwrap_or("partner"));
+            let known = |t: &&mut Trial| t.onset_s == w.onset_s && t.dropped.is_none();
+            if let Some(trial) = self.card.trials.iter_mut().find(known) {
+                trial.dropped = Some((*reason).to_owned());
+            }
+        }
+        let mut at = reasons.iter();
+        self.windows
+            .retain(|_| at.next().is_none_or(|r| r.is_none()));
         let mut next = [0usize; 2];
         for w in &mut self.windows {
             let count = &mut next[usize::from(w.signal)];
             w.trial = *count;
             *count += 1;
         }
-        kept
+        reasons.iter().map(Option::is_none).collect()
     }
 
     /// The fold of every window: trials (paired) or each side's windows (unpaired) in contiguous folds.

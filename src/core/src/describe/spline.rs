@@ -117,6 +117,17 @@ impl Spline {
             |i, j| if j < n { self.g(at[i], j) } else { 1.0 },
         ) * &self.solve
     }
+    /// The weights with which every fitted position is estimated from all others: `positions × positions`, zero diagonal, rows sum to 1.
+    ///
+    /// With A the system's matrix, xᵢ less its estimate from the others is (A⁻¹x)ᵢ / (A⁻¹)ᵢᵢ (Rippa 1999, *Adv. Comput. Math.*
+    /// 11:193–210): one inverse serves all.
+    pub fn leave_one_out(&self) -> DMatrix<f64> {
+        let n = self.positions.len();
+        DMatrix::from_fn(n, n, |i, j| match i == j {
+            true => 0.0,
+            false => -self.solve[(i, j)] / self.solve[(i, i)],
+        })
+    }
     fn g(&self, q: [f64; 3], i: usize) -> f64 {
         self.weights.sum(dot(q, self.positions[i]))
     }

@@ -4,6 +4,8 @@
 //! prepared channels is w_raw = Tᵀw for the recorded ones.
 //!
 //! * `matrix`: T from what is left out, interpolated, re-referenced.
+//! * `neighbours`: estimates by geometry; `quality`: proposals about doubtful channels; `reject`: what is in a window.
+//! * [`steady`]: trend and fitted mains, taken off before the filters; `response`: what the filters let pass.
 //! * [`fir`]: design and zero-phase application; several filters are convolved into one kernel first, so that edges are mirrored once.
 //! * [`resample`]: rational change of rate, with its own anti-alias filter.
 //! * [`movie`]: a movie's pixels before they are channels.
@@ -19,18 +21,26 @@ pub mod fir;
 mod inspect;
 mod matrix;
 pub mod movie;
+mod neighbours;
+mod quality;
 pub mod resample;
+mod response;
+pub mod steady;
 
 pub use inspect::{inspect, to_unit_sphere};
+pub use matrix::StepMatrix;
+pub use quality::{Comparing, Quality};
 
 use crate::error::{Kind, Problem, Result};
-use crate::recipe::{Filter, Recipe};
+use crate::recipe::{Detrend, DetrendWord, Filter, Mains, MainsHow, Recipe};
 use crate::recording::{Recording, Stretch};
 use crate::sheet::{ChannelCard, PreparationCard};
 use fir::{Design, Request, ZeroPhase};
 use matrix::{ChannelMatrix, Sum};
 use nalgebra::DMatrix;
+use neighbours::Places;
 use resample::Resampler;
+use steady::MainsFit;
 
 /// What the preparation gives.
 #[derive(Debug, Clone)]
@@ -51,7 +61,9 @@ pub struct Prepared {
     pub samples: Vec<Vec<f32>>,
     /// Unbroken runs.
     pub stretches: Vec<Stretch>,
-    /// For the sheet (its rank is filled in later).
+    /// T after each of its steps, for the rank; empty beyond 512 channels.
+    pub steps: Vec<StepMatrix>,
+    /// For the sheet (its ranks are filled in later).
     pub card: PreparationCard,
     /// Warnings, each a sentence.
     pub warnings: Vec<String>,
@@ -65,6 +77,9 @@ pub struct Preparing {
     common: Vec<f64>,
     /// Recorded channels already in `common`.
     summed: usize,
+    trend: Option<Detrend>,
+    mains: Option<MainsFit>,
+    rate_hz: f64,
     filter: Option<ZeroPhase>,
     resampler: Option<Resampler>,
     recorded: Vec<Stretch>,
@@ -107,8 +122,10 @@ impl Preparing {
     /// than every stretch.
     pub fn new(recording: &Recording, channels: &[ChannelCard], recipe: &Recipe) -> Result<Self> {
         let rate_hz = recording.rate_hz;
-        let matrix = ChannelMatrix::new(channels, &recipe.channels)?;
+        let places = Places::of(recording, channels);
+        let matrix = ChannelMatrix::new(channels, &places, &recipe.channels)?;
         let designs = designs(&recipe.filter, rate_hz)?;
+        let mains = mains_fit(&recipe.filter, rate_hz)?;
         let resampler = resampler(&recipe.filter, rate_hz)?;
         let longest = recording
             .stretches
@@ -133,27 +150,20 @@ impl Preparing {
                 r.up, r.down
             ));
         }
-        let names: Vec<String> = matrix
-            .channels
-            .iter()
-            .map(|&c| channels[c].name.clone())
-            .collect();
+        let names = matrix.names.clone();
         let longest_filter = designs.iter().map(|d| d.length).max().unwrap_or(0);
         let result = Prepared {
             unit: shared_unit(&matrix, channels)
                 .unwrap_or_default()
                 .to_owned(),
-            positions: matrix
-                .channels
-                .iter()
-                .map(|&c| channels[c].position)
-                .collect(),
+            positions: matrix.positions.clone(),
             matrix: if names.len() > MOST_CHANNELS {
                 DMatrix::zeros(0, 0)
             } else {
                 matrix.dense(channels.len())
             },
             mixing: matrix.clone(),
+            steps: matrix.steps.clone(),
             rate_hz: new_rate_hz,
             samples: Vec::with_capacity(names.len()),
             stretches: after(&recording.stretches, resampler.as_ref()),
@@ -163,6 +173,11 @@ impl Preparing {
                 rank: 0,
                 longest_filter_s: longest_filter as f64 / rate_hz,
                 filters,
+                before_filters: before_filters(&recipe.filter, rate_hz),
+                ranks: Vec::new(),
+                response: taps
+                    .as_ref()
+                    .and_then(|t| response::response(t, &designs, rate_hz)),
             },
             channels: names,
             warnings,
@@ -178,6 +193,9 @@ impl Preparing {
             ],
             matrix,
             summed: 0,
+            trend: recipe.filter.detrend,
+            mains,
+            rate_hz,
             filter: taps.map(|t| ZeroPhase::new(&t, longest)),
             resampler,
             recorded: recording.stretches.clone(),
@@ -205,15 +223,8 @@ impl Preparing {
             return false;
         };
         let samples = match row[..] {
-            [(channel, 1.0)]
-                if self.filter.is_none() && self.resampler.is_none() && self.common.is_empty() =>
-            {
-                if self.result.many() {
-                    Vec::new()
-                } else {
-                    recording.samples[channel].clone()
-                }
-            }
+            [(_, 1.0)] if self.untouched() && self.result.many() => Vec::new(),
+            [(channel, 1.0)] if self.untouched() => recording.samples[channel].clone(),
             _ => self.prepare(next, recording),
         };
         self.result.samples.push(samples);
@@ -222,6 +233,15 @@ impl Preparing {
     /// The result, once every channel is done.
     pub fn finish(self) -> Option<Prepared> {
         (self.result.samples.len() == self.matrix.rows.len()).then_some(self.result)
+    }
+
+    /// Whether a channel that stands alone in its row passes as it is.
+    fn untouched(&self) -> bool {
+        self.trend.is_none()
+            && self.mains.is_none()
+            && self.filter.is_none()
+            && self.resampler.is_none()
+            && self.common.is_empty()
     }
 
     fn prepare(&mut self, row: usize, recording: &Recording) -> Vec<f32> {
@@ -236,6 +256,12 @@ impl Preparing {
                 range,
                 &mut self.mixed,
             );
+            if let Some(trend) = self.trend {
+                steady::detrend(&mut self.mixed, trend, self.rate_hz);
+            }
+            if let Some(mains) = &mut self.mains {
+                mains.remove(&mut self.mixed);
+            }
             if let Some(filter) = &mut self.filter {
                 filter.filter(&self.mixed, &mut self.filtered);
                 std::mem::swap(&mut self.mixed, &mut self.filtered);
@@ -326,6 +352,56 @@ fn mixed_units(matrix: &ChannelMatrix, channels: &[ChannelCard]) -> Option<Strin
     })
 }
 
+/// The fit of mains that a recipe asks for.
+fn mains_fit(filter: &Filter, rate_hz: f64) -> Result<Option<MainsFit>> {
+    let Some(mains) = filter.mains.filter(|m| m.how == MainsHow::Fit) else {
+        return Ok(None);
+    };
+    match MainsFit::new(&mains, rate_hz) {
+        Some(fit) => Ok(Some(fit)),
+        None => Err(mains_refused(&mains, rate_hz)),
+    }
+}
+
+fn mains_refused(mains: &Mains, rate_hz: f64) -> Problem {
+    Problem::new(
+        Kind::Recipe,
+        "mains cannot be removed from this recording",
+        "choose a frequency below half the sampling rate, and windows of several of its periods",
+    )
+    .at("recipe, filter.mains")
+    .expected_found(
+        format!("below {} Hz", rate_hz / 2.0),
+        format!("{} Hz in windows of {} s", mains.hz, mains.window_s),
+    )
+}
+
+/// A phrase for everything that is taken off before the filters.
+fn before_filters(filter: &Filter, rate_hz: f64) -> Vec<String> {
+    let trend = filter.detrend.map(|how| match how {
+        Detrend::Word(DetrendWord::Mean) => {
+            "the mean of each unbroken stretch taken off".to_owned()
+        }
+        Detrend::Word(DetrendWord::Linear) => {
+            "the least-squares line of each unbroken stretch taken off".to_owned()
+        }
+        Detrend::Pieces(pieces) => format!(
+            "a least-squares line taken off every {} s",
+            pieces.linear_every_s
+        ),
+    });
+    let mains = filter.mains.filter(|m| m.how == MainsHow::Fit).map(|m| {
+        let hz = steady::harmonics(&m, rate_hz);
+        let list: Vec<String> = hz.iter().map(f64::to_string).collect();
+        format!(
+            "sinusoids at {} Hz fitted by least squares in half-overlapping windows of {} s and subtracted",
+            list.join(", "),
+            m.window_s
+        )
+    });
+    trend.into_iter().chain(mains).collect()
+}
+
 /// The filters a recipe asks for, checked against the rate.
 fn designs(filter: &Filter, rate_hz: f64) -> Result<Vec<Design>> {
     let nyquist = rate_hz / 2.0;
@@ -351,9 +427,20 @@ fn designs(filter: &Filter, rate_hz: f64) -> Result<Vec<Design>> {
         .at("recipe, filter")
         .expected_found(format!("a high-pass below {low} Hz"), format!("{high} Hz")));
     }
+    let stopped = filter.mains.filter(|m| m.how == MainsHow::Notch);
+    if let Some(mains) = stopped {
+        in_range("mains", mains.hz, 1.0, nyquist - 1.0)?;
+    }
+    let multiples = stopped.map_or_else(Vec::new, |m| steady::harmonics(&m, rate_hz));
     let requests = (filter.high_pass_hz.map(Request::HighPass).into_iter())
         .chain(filter.low_pass_hz.map(Request::LowPass))
-        .chain(filter.notch_hz.iter().copied().map(Request::Notch));
+        .chain(filter.notch_hz.iter().copied().map(Request::Notch))
+        .chain(
+            multiples
+                .into_iter()
+                .filter(|hz| *hz > 1.0 && *hz < nyquist - 1.0)
+                .map(Request::Notch),
+        );
     Ok(requests
         .map(|request| Design::new(request, rate_hz))
         .collect())
@@ -363,6 +450,7 @@ fn filter_in_words(key: &str) -> &'static str {
     match key {
         "high_pass_hz" => "the high-pass",
         "low_pass_hz" => "the low-pass",
+        "mains" => "mains",
         _ => "the notch",
     }
 }

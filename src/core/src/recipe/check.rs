@@ -1,7 +1,7 @@
 //! Ranges of a recipe's values, whatever the recording.
 use super::{
-    BandReference, Contrast, EventWindow, Given, Keep, KeepWord, Measure, Recipe, Reference,
-    Shrink, ShrinkWord, Spans, Within,
+    BandReference, Contrast, Detrend, EventWindow, Given, Keep, KeepWord, Limit, Measure, Pairs,
+    Recipe, Reference, Shrink, ShrinkWord, Spans, Within,
 };
 use crate::error::{Kind, Problem, Result};
 
@@ -26,6 +26,9 @@ fn in_words(path: &str) -> &'static str {
         "movie.mask" | "movie.mask.above" | "movie.mask.quantile" => "the mask",
         "movie.dff.percentile" => "the percentile of the baseline",
         "movie.dff.window_s" => "the window of the baseline",
+        "filter.detrend" => "the length of a piece of the trend",
+        "filter.mains" => "the removal of mains",
+        "drop_windows" => "a limit for dropping windows",
         "keep" => "the number of dimensions kept",
         "shrink" => "the shrinkage",
         "components" => "the number of components",
@@ -105,6 +108,8 @@ pub fn recipe_check(recipe: &Recipe) -> Result<()> {
     check_keep(recipe.keep)?;
     check_best(recipe)?;
     check_filter(recipe)?;
+    check_mains_and_trend(recipe)?;
+    check_drop_windows(recipe)?;
     check_contrast(&recipe.contrast)?;
     check_measure(recipe)?;
     check_spans("not_used", &recipe.not_used)?;
@@ -128,6 +133,14 @@ pub fn recipe_check(recipe: &Recipe) -> Result<()> {
             "evidence.seed",
             "a whole number from 0 to 9007199254740991",
             evidence.seed,
+        ));
+    }
+    if matches!(&recipe.channels.reference, Reference::Bipolar(b) if matches!(&b.bipolar, Pairs::List(list) if list.len() < 2))
+    {
+        return Err(out(
+            "channels.reference",
+            "at least two pairs of channel names",
+            "fewer",
         ));
     }
     if matches!(&recipe.channels.reference, Reference::Named(names) if names.is_empty()) {
@@ -231,6 +244,44 @@ fn check_filter(recipe: &Recipe) -> Result<()> {
     }
 }
 
+fn check_mains_and_trend(recipe: &Recipe) -> Result<()> {
+    let filter = &recipe.filter;
+    let number = |path: &str, value: f64, from: f64, to: f64| {
+        if (from..=to).contains(&value) {
+            return Ok(());
+        }
+        Err(out(path, format!("a number from {from} to {to}"), value))
+    };
+    if let Some(Detrend::Pieces(pieces)) = filter.detrend {
+        number("filter.detrend", pieces.linear_every_s, 0.1, 1e6)?;
+    }
+    if let Some(mains) = filter.mains {
+        positive("filter.mains", Some(mains.hz))?;
+        within("filter.mains", mains.harmonics, 1, 20)?;
+        number("filter.mains", mains.window_s, 0.5, 60.0)?;
+    }
+    Ok(())
+}
+
+fn check_drop_windows(recipe: &Recipe) -> Result<()> {
+    let drop = &recipe.drop_windows;
+    let robust = drop.covariance.map(Limit::Robust);
+    let limits = [drop.amplitude, drop.step, drop.flat, robust];
+    for limit in limits.into_iter().flatten() {
+        let (value, from) = match limit {
+            Limit::Robust(robust) => (robust.z, 1.0),
+            Limit::Absolute(absolute) => (absolute.uv, 0.0),
+        };
+        if !value.is_finite() || value < from || value > 1e9 {
+            return Err(out(
+                "drop_windows",
+                format!("a number of at least {from}"),
+                value,
+            ));
+        }
+    }
+    Ok(())
+}
 /// Longest piece, lag and window, either way, in seconds.
 const LONGEST_S: f64 = 1e6;
 /// Most spans of one list.

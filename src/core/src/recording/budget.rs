@@ -19,6 +19,7 @@ const FLOOR_BYTES: u64 = 8 << 20;
 pub(crate) struct Budget {
     left: u64,
     all: u64,
+    memory: u64,
     /// The machine, not the size of the file, sets the limit.
     by_memory: bool,
 }
@@ -33,8 +34,20 @@ impl Budget {
         Budget {
             left: all,
             all,
+            memory: memory_bytes,
             by_memory: memory_bytes < by_file,
         }
+    }
+
+    /// The file turned out to hold this many bytes once unpacked: what they can need may be taken, as far as the machine gives it.
+    pub(crate) fn unpacked(&mut self, bytes: u64) {
+        let by_file = bytes
+            .saturating_mul(BYTES_A_FILE_BYTE)
+            .saturating_add(FLOOR_BYTES);
+        let all = by_file.min(self.memory).max(self.all);
+        self.left += all - self.all;
+        self.all = all;
+        self.by_memory = self.memory < by_file;
     }
 
     /// Takes `bytes` for `what` (as in "its samples").

@@ -62,6 +62,7 @@ impl<'a> Asking<'a> {
         }
     }
 
+    #[allow(dead_code, reason = "asked by formats that hold arrays")]
     /// What the axes are, of the ones that a file of this shape can have; of one possibility nothing is asked.
     pub(crate) fn axes(
         &mut self,
@@ -85,6 +86,7 @@ impl<'a> Asking<'a> {
         None
     }
 
+    #[allow(dead_code, reason = "asked by formats that hold arrays")]
     /// Which of several named arrays holds the samples; of one array nothing is asked.
     pub(crate) fn variable(&mut self, names: &[String], guess: Option<&str>) -> Option<String> {
         match (&self.given.variable, names) {

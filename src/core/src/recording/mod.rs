@@ -18,17 +18,21 @@ mod budget;
 pub mod edf;
 mod events_table;
 mod given;
+mod gzip;
+mod joined;
 mod mat;
 mod names;
 mod npy;
 mod npz;
 mod opening;
 mod seek;
+mod table;
 mod tiff;
 mod units;
 
 pub use budget::MEMORY_BYTES;
 pub use given::UNITS;
+pub use joined::natural_order;
 pub use opening::{MemorySource, OpenOptions, Opening, open};
 
 use serde::{Deserialize, Serialize};

@@ -1,6 +1,9 @@
 //! Opening a recording in steps: probe the content, read the header, decode slice after slice, add the side files.
 use super::budget::Budget;
-use super::{MEMORY_BYTES, Recording, SideFile, Source, edf, events_table, mat, npy, npz, tiff};
+use super::{
+    MEMORY_BYTES, Recording, SideFile, Source, edf, events_table, gzip, joined, mat, npy, npz,
+    table, tiff,
+};
 use crate::error::{Kind, Problem, Result};
 use std::fmt;
 
@@ -19,6 +22,10 @@ pub(crate) trait Reader {
     fn step(&mut self, source: &mut dyn Source, budget: &mut Budget) -> Result<(u64, u64)>;
     /// The recording, once nothing is left.
     fn finish(self: Box<Self>) -> Result<Recording>;
+    /// Date and time at which the file's clock starts, in seconds from any one moment; `None` where the file does not say.
+    fn start_s(&self) -> Option<f64> {
+        None
+    }
 }
 
 type Begin = fn(&mut dyn Source, &OpenOptions, &mut Budget) -> Result<Box<dyn Reader>>;
@@ -41,6 +48,8 @@ const FORMATS: &[Format] = &[
     npz::FORMAT,
     mat::FORMAT,
     tiff::FORMAT,
+    gzip::FORMAT,
+    table::FORMAT,
 ];
 
 /// First bytes that a probe sees.
@@ -48,7 +57,6 @@ const PROBE_BYTES: u64 = 4096;
 
 /// Content that is often dropped by mistake: its first bytes and what to call it.
 const OTHER_CONTENT: &[(&[u8], &str)] = &[
-    (b"\x1f\x8b", "gzip-compressed data"),
     (b"%PDF", "a PDF document"),
     (b"\x89PNG", "a PNG picture"),
     (b"\x89HDF", "an HDF5 file"),
@@ -110,12 +118,44 @@ impl Opening {
     ) -> Result<Opening> {
         let name = source.name().to_owned();
         let mut budget = Budget::new(source.len(), memory_bytes);
-        let reader = probe(source.as_mut())
-            .and_then(|format| (format.begin)(source.as_mut(), &options, &mut budget))
+        let reader = begin_reader(source.as_mut(), &options, &mut budget)
             .map_err(|problem| problem.in_file(name))?;
+        let sides = unpacked(sides)?;
         Ok(Opening {
             source,
             sides,
+            options,
+            budget,
+            reader,
+            finished: false,
+        })
+    }
+
+    /// Opens several files of one recording, in the natural order of their names; the recording is called after the first.
+    ///
+    /// # Errors
+    /// Those of [`Opening::begin`]; `Unsupported` for a file with other channels or another rate, named.
+    pub fn begin_joined(
+        mut sources: Vec<Box<dyn Source>>,
+        sides: Vec<SideFile>,
+        options: OpenOptions,
+    ) -> Result<Opening> {
+        if sources.len() == 1
+            && let Some(source) = sources.pop()
+        {
+            return Opening::begin(source, sides, options);
+        }
+        let first = sources.iter().map(|s| s.name());
+        let name = first.min_by(|a, b| joined::natural_order(a, b));
+        let together = joined::Together {
+            name: name.unwrap_or_default().to_owned(),
+            bytes: sources.iter().map(|source| source.len()).sum(),
+        };
+        let mut budget = Budget::new(together.bytes, MEMORY_BYTES);
+        let reader = joined::begin(sources, &options, &mut budget)?;
+        Ok(Opening {
+            source: Box::new(together),
+            sides: unpacked(sides)?,
             options,
             budget,
             reader,
@@ -175,6 +215,20 @@ pub fn open(
     options: OpenOptions,
 ) -> Result<Recording> {
     Opening::begin(source, sides, options)?.finish()
+}
+
+/// Probes the content and lets its reader begin.
+pub(super) fn begin_reader(
+    source: &mut dyn Source,
+    options: &OpenOptions,
+    budget: &mut Budget,
+) -> Result<Box<dyn Reader>> {
+    let format = probe(source)?;
+    (format.begin)(source, options, budget)
+}
+
+fn unpacked(sides: Vec<SideFile>) -> Result<Vec<SideFile>> {
+    sides.into_iter().map(gzip::side).collect()
 }
 
 fn probe(source: &mut dyn Source) -> Result<&'static Format> {

@@ -4,7 +4,7 @@
 //! user ticks them in; otherwise an event is written as its rank (1, 2) and is filled in from the recording that the link is
 //! opened with: rank k is its k-th most frequent event. What else was left out is listed under `without`.
 use crate::error::{Kind, Problem, Result};
-use crate::recipe::{Contrast, Recipe, Reference, Spans, Within};
+use crate::recipe::{Contrast, Pairs, Recipe, Reference, Spans, Within};
 use base64::Engine;
 use base64::alphabet::URL_SAFE;
 use base64::engine::{DecodePaddingMode, GeneralPurpose, GeneralPurposeConfig};
@@ -21,7 +21,7 @@ const ENGINE: GeneralPurpose = GeneralPurpose::new(
 );
 
 /// Names that a link without names can leave out.
-const LEFT_OUT: [(&str, &str); 4] = [
+const LEFT_OUT: [(&str, &str); 5] = [
     (
         "channels.leave_out",
         "The link names no channels: what its sender left out is not left out here.",
@@ -33,6 +33,10 @@ const LEFT_OUT: [(&str, &str); 4] = [
     (
         "channels.reference",
         "The link names no channels: its sender's reference channels are replaced by the reference as recorded.",
+    ),
+    (
+        "channels.keep",
+        "The link names no channels: which doubtful ones its sender looked at and kept is not told here.",
     ),
     (
         "recording.variable",
@@ -135,7 +139,9 @@ fn strip(recipe: &Recipe, mut value: Value) -> Value {
     let named = [
         !channels.leave_out.is_empty(),
         !channels.interpolate.is_empty(),
-        matches!(channels.reference, Reference::Named(_)),
+        matches!(&channels.reference, Reference::Named(_))
+            || matches!(&channels.reference, Reference::Bipolar(b) if matches!(b.bipolar, Pairs::List(_))),
+        !channels.keep.is_empty(),
         recipe.recording.variable.is_some(),
     ];
     for ((path, _), _) in LEFT_OUT.iter().zip(named).filter(|(_, named)| *named) {

@@ -1,7 +1,10 @@
 //! The methods paragraph: what was done, with every parameter, ready to be pasted into a paper and edited; and its references.
 use super::kinds;
 use super::words::{self, NB};
-use crate::recipe::{Keep, KeepWord, Measure, Reference, ReferenceWord, Shrink, ShrinkWord};
+use crate::recipe::{
+    BipolarReference, Keep, KeepWord, Measure, Pairs, PairsWord, Reference, ReferenceWord, Shrink,
+    ShrinkWord,
+};
 use crate::sheet::{ChannelState, Component, Sheet, SideCard};
 
 /// A source: how the text cites it, and its entry in the list.
@@ -10,7 +13,7 @@ struct Work {
     entry: &'static str,
 }
 
-const WORKS: [Work; 15] = [
+const WORKS: [Work; 16] = [
     Work {
         cited: "Arsigny et al., 2006",
         entry: "Arsigny, V., Fillard, P., Pennec, X. & Ayache, N. (2006). Log-Euclidean metrics for fast and simple calculus on diffusion tensors. Magnetic Resonance in Medicine 56, 411–421.",
@@ -64,6 +67,10 @@ const WORKS: [Work; 15] = [
         entry: "Phipson, B. & Smyth, G. K. (2010). Permutation P-values should never be zero: calculating exact P-values when permutations are randomly drawn. Statistical Applications in Genetics and Molecular Biology 9, article 39.",
     },
     Work {
+        cited: "Prim, 1957",
+        entry: "Prim, R. C. (1957). Shortest connection networks and some generalizations. Bell System Technical Journal 36, 1389–1401.",
+    },
+    Work {
         cited: "Welch, 1967",
         entry: "Welch, P. D. (1967). The use of fast Fourier transform for the estimation of power spectra: a method based on time averaging over short, modified periodograms. IEEE Transactions on Audio and Electroacoustics 15, 70–73.",
     },
@@ -79,6 +86,7 @@ pub fn methods(sheet: &Sheet) -> String {
         channels(sheet),
         filters(sheet),
         windows(sheet),
+        rejection(sheet),
         compression(sheet),
         filters_in_space(sheet),
         held_out(sheet),
@@ -165,17 +173,30 @@ fn channels(sheet: &Sheet) -> Option<String> {
         Reference::Word(ReferenceWord::Average) => ", referred to their average.".into(),
         Reference::Named(list) if list.len() == 1 => format!(", referred to {}.", names(list)),
         Reference::Named(list) => format!(", referred to the mean of {}.", names(list)),
+        Reference::Bipolar(BipolarReference {
+            bipolar: Pairs::Word(PairsWord::Neighbours),
+        }) => ", as differences of neighbouring channels (the edges of the shortest tree that joins all; Prim, 1957).".into(),
+        Reference::Bipolar(BipolarReference {
+            bipolar: Pairs::List(pairs),
+        }) => {
+            let pairs: Vec<String> = pairs.iter().map(|[a, b]| format!("{a}–{b}")).collect();
+            format!(", as the differences {}.", names(&pairs))
+        }
     });
     Some(text)
 }
 
 fn filters(sheet: &Sheet) -> Option<String> {
     let card = sheet.preparation.as_ref()?;
+    let before = match card.before_filters.as_slice() {
+        [] => String::new(),
+        list => format!("First, {}. ", words::list(list)),
+    };
     if card.filters.is_empty() {
-        return Some("No filter was applied.".into());
+        return Some(format!("{before}No filter was applied."));
     }
     Some(format!(
-        "They were filtered with zero phase by linear-phase FIR filters (windowed sinc, Hamming window; {}; the named edges are those of the pass band; Widmann et al., 2015).",
+        "{before}They were filtered with zero phase by linear-phase FIR filters (windowed sinc, Hamming window; {}; the named edges are those of the pass band; Widmann et al., 2015).",
         card.filters.join("; ")
     ))
 }
@@ -218,6 +239,33 @@ fn windows(sheet: &Sheet) -> Option<String> {
         } else {
             format!("the onset of “{}”", words::name(&reference.event))
         }
+    ))
+}
+
+/// Windows dropped for what is in them.
+fn rejection(sheet: &Sheet) -> Option<String> {
+    let card = sheet.rejection.as_ref()?;
+    let criteria: Vec<String> = card
+        .criteria
+        .iter()
+        .map(|c| {
+            let limit = match c.unit.as_str() {
+                "" => words::three(c.limit),
+                unit => format!("{}{NB}{}", words::three(c.limit), words::plain(unit, 8)),
+            };
+            match c.name.as_str() {
+                "amplitude" => format!("a channel’s peak-to-peak amplitude exceeded {limit}"),
+                "step" => format!("a step between two samples exceeded {limit}"),
+                "flat" => format!("a channel’s peak-to-peak amplitude was below {limit}"),
+                _ => format!("the variance relative to the pooled covariance exceeded {limit}"),
+            }
+        })
+        .collect();
+    Some(format!(
+        "Windows were dropped where {} ({} of {}); the limits were set over the windows of both sides together, blind to the labels.",
+        criteria.join(" or where "),
+        words::grouped(card.windows[0] - card.windows[1]),
+        words::grouped(card.windows[0])
     ))
 }
 

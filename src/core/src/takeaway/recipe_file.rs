@@ -107,10 +107,18 @@ pub(super) const MOVIE: Shape = Shape::Object(&[
         ])),
     ),
 ]);
+const PAIRS: Shape = Shape::Either(
+    &[
+        Shape::Word(&["neighbours"]),
+        Shape::List(&Shape::List(&Shape::Text)),
+    ],
+    "\"neighbours\" or a list of pairs of channel names",
+);
 
 pub(super) const CHANNELS: Shape = Shape::Object(&[
     ("leave_out", false, Shape::List(&Shape::Text)),
     ("interpolate", false, Shape::List(&Shape::Text)),
+    ("keep", false, Shape::List(&Shape::Text)),
     (
         "reference",
         false,
@@ -118,8 +126,9 @@ pub(super) const CHANNELS: Shape = Shape::Object(&[
             &[
                 Shape::Word(&["as recorded", "average"]),
                 Shape::List(&Shape::Text),
+                Shape::Object(&[("bipolar", true, PAIRS)]),
             ],
-            "\"as recorded\", \"average\" or a list of channel names",
+            "\"as recorded\", \"average\", a list of channel names or {\"bipolar\": …}",
         ),
     ),
 ]);
@@ -129,6 +138,39 @@ pub(super) const FILTER: Shape = Shape::Object(&[
     ("low_pass_hz", false, Shape::Maybe(&Shape::Number)),
     ("notch_hz", false, Shape::List(&Shape::Number)),
     ("resample_hz", false, Shape::Maybe(&Shape::Number)),
+    (
+        "detrend",
+        false,
+        Shape::Maybe(&Shape::Either(
+            &[
+                Shape::Word(&["mean", "linear"]),
+                Shape::Object(&[("linear_every_s", true, Shape::Number)]),
+            ],
+            "\"mean\", \"linear\" or {\"linear_every_s\": …}",
+        )),
+    ),
+    (
+        "mains",
+        false,
+        Shape::Maybe(&Shape::Object(&[
+            ("hz", true, Shape::Number),
+            ("harmonics", false, Shape::Whole),
+            ("how", false, Shape::Word(&["fit", "notch"])),
+            ("window_s", false, Shape::Number),
+        ])),
+    ),
+]);
+
+const ROBUST: Shape = Shape::Object(&[("z", true, Shape::Number)]);
+
+/// The keys are looked at again by serde: one of `z` and `uv`.
+const LIMIT: Shape = Shape::Object(&[("z", false, Shape::Number), ("uv", false, Shape::Number)]);
+
+const DROP_WINDOWS: Shape = Shape::Object(&[
+    ("amplitude", false, LIMIT),
+    ("step", false, LIMIT),
+    ("flat", false, LIMIT),
+    ("covariance", false, ROBUST),
 ]);
 
 const RECIPE: Shape = Shape::Object(&[
@@ -137,6 +179,7 @@ const RECIPE: Shape = Shape::Object(&[
     ("movie", false, MOVIE),
     ("channels", false, CHANNELS),
     ("filter", false, FILTER),
+    ("drop_windows", false, DROP_WINDOWS),
     (
         "keep",
         false,

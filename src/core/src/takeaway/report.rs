@@ -225,6 +225,7 @@ impl Page<'_> {
                         Reference::Named(names) => {
                             (list(&names.iter().map(String::as_str).collect::<Vec<_>>()))
                         }
+                        Reference::Bipolar(_) => { "differences of two channels each" }
                     }
                 }
                 @if let Some(card) = &self.sheet.preparation {

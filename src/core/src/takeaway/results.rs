@@ -15,6 +15,12 @@ struct Results<'a> {
     recipe: &'a Recipe,
     recording: RecordingPart<'a>,
     windows: Option<WindowsPart<'a>>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    rejection: &'a Option<crate::sheet::RejectionCard>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    quality: &'a Option<crate::sheet::QualityCard>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    dimensions: &'a Option<crate::sheet::DimensionsCard>,
     rank: Option<usize>,
     compression: Option<CompressionPart<'a>>,
     measure: crate::recipe::Measure,
@@ -60,6 +66,7 @@ pub(super) struct ChannelPart<'a> {
 struct PreparedPart<'a> {
     rate_hz: f64,
     channels: &'a [String],
+    ranks: &'a [crate::sheet::RankStep],
 }
 
 #[derive(Serialize)]
@@ -160,6 +167,7 @@ pub fn results_json(sheet: &Sheet) -> Result<String> {
             prepared: sheet.preparation.as_ref().map(|p| PreparedPart {
                 rate_hz: p.rate_hz,
                 channels: &p.channels,
+                ranks: &p.ranks,
             }),
         },
         windows: sheet.windows.as_ref().map(|w| WindowsPart {
@@ -167,6 +175,9 @@ pub fn results_json(sheet: &Sheet) -> Result<String> {
             signal: side(&w.signal),
             reference: side(&w.reference),
         }),
+        rejection: &sheet.rejection,
+        quality: &sheet.quality,
+        dimensions: &sheet.dimensions,
         rank: sheet
             .compression
             .as_ref()

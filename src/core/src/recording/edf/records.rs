@@ -1,7 +1,7 @@
 //! How many records there are, and what is said when the file and its header disagree.
 use super::header::{Header, damaged};
 use crate::error::{Kind, Problem, Result, Salvage};
-use crate::recording::names::counted;
+use crate::recording::names::{counted, opened_before};
 use crate::recording::opening::OpenOptions;
 
 /// Whole records to read, with what does not fit said in warnings or as the problem.
@@ -50,7 +50,7 @@ pub(super) fn count(
     }
     let problem = salvageable(problem, header, whole);
     if options.salvage {
-        warnings.push(opened_before(&problem, whole));
+        warnings.push(opened_before(&problem, whole, "whole record"));
         return Ok(whole);
     }
     Err(problem)
@@ -94,17 +94,4 @@ pub(super) fn salvageable(mut problem: Problem, header: &Header, whole: u64) -> 
         });
     }
     problem
-}
-
-/// The warning that stands for a problem once the records before it are opened.
-pub(super) fn opened_before(problem: &Problem, whole: u64) -> String {
-    let part = |p: &Option<String>| p.clone().unwrap_or_default();
-    format!(
-        "Only the {} before the damage were opened: {} ({}: expected {}, found {}).",
-        counted(whole, "whole record"),
-        problem.what,
-        part(&problem.place),
-        part(&problem.expected),
-        part(&problem.found)
-    )
 }

@@ -81,6 +81,9 @@ impl Group {
             rank: 0,
             longest_filter_s: 0.0,
             filters: Vec::new(),
+            before_filters: Vec::new(),
+            ranks: Vec::new(),
+            response: None,
         });
         let cards = first.channels.iter().zip(&first.positions);
         sheet.channels = cards

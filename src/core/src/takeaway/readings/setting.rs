@@ -319,6 +319,19 @@ fn dropped(side: &SideCard, beyond: bool) -> Vec<String> {
                     "touch a span marked not to be used",
                 )
                 .to_string(),
+                "amplitude" => words::one(*n, "is too large", "are too large").to_string(),
+                "step" => {
+                    words::one(*n, "holds too large a step", "hold too large a step").to_string()
+                }
+                "flat-window" => {
+                    words::one(*n, "has too flat a channel", "have too flat a channel").to_string()
+                }
+                "covariance" => words::one(
+                    *n,
+                    "has an outlying covariance",
+                    "have an outlying covariance",
+                )
+                .to_string(),
                 other => format!(
                     "{} out as {}",
                     words::one(*n, "is", "are"),
@@ -519,8 +532,34 @@ pub(super) fn compression(sheet: &Sheet) -> Option<Said> {
         .then(format!(" of {} dimensions hold ", card.rank))
         .strong(words::percent(card.share))
         .then(" of the variance")
-        .join(curve(sheet));
+        .join(curve(sheet))
+        .join(above_noise(sheet));
     Some((text, compression_doubt(sheet)))
+}
+
+/// " Rules blind to the labels count 8 to 12 above noise." where they are worked out.
+fn above_noise(sheet: &Sheet) -> Line {
+    let Some(card) = &sheet.compression else {
+        return Line::default();
+    };
+    let found: Vec<usize> = ["parallel_analysis", "noise_edge", "hard_threshold"]
+        .iter()
+        .filter_map(|rule| card.guides.get(*rule).copied())
+        .collect();
+    let (Some(low), Some(high)) = (found.iter().min(), found.iter().max()) else {
+        return Line::default();
+    };
+    let range = if low == high {
+        low.to_string()
+    } else {
+        format!("{low} to {high}")
+    };
+    let choose = if card.kept >= *low {
+        ""
+    } else {
+        "; keep as many"
+    };
+    Line::new(format!(" Noise rules count {range}{choose}."))
 }
 
 /// Where the held-out ratio stands at C, and where it is highest; ends the sentence.
