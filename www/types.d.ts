@@ -7,6 +7,7 @@ export interface EventWindow {
 export interface Recipe {
   teasel_recipe: number;
   recording?: Given;
+  movie?: Movie;
   channels: { leave_out: string[]; interpolate: string[]; keep?: string[]; reference: "as recorded" | "average" | string[] | { bipolar: "neighbours" | [string, string][] } };
   filter: {
     high_pass_hz: number | null; low_pass_hz: number | null; notch_hz: number[]; resample_hz: number | null;
@@ -20,6 +21,21 @@ export interface Recipe {
   shrink: number | "auto" | "ledoit-wolf" | "oas";
   components: number;
   evidence: { folds: number; permutations: number; bootstrap: number; seed: number };
+}
+export interface Movie {
+  bin?: number;
+  mask?: { above: number } | { quantile: number } | [number, number, number][];
+  dff?: { percentile: number; window_s: number };
+}
+/** Of a movie the sheet brings no channels and no patterns: pictures show them. */
+export interface MovieCard {
+  height: number;
+  width: number;
+  rows: number;
+  columns: number;
+  mean: (number | null)[];
+  used: number[];
+  threshold: number | null;
 }
 export interface RecordingCard {
   name: string;
@@ -74,6 +90,7 @@ export interface Component {
   trials: { onset_s: number; fold: number; log_ratio: number }[];
 }
 export interface Sheet {
+  movie?: MovieCard;
   recording: RecordingCard;
   recipe: Recipe;
   channels: ChannelCard[];

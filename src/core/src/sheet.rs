@@ -654,6 +654,21 @@ pub struct FoldCard {
 }
 
 impl Sheet {
+    /// A copy without the lists that hold one value a channel, which are long where channels are pixels; the movie's mean frame stays.
+    #[must_use]
+    pub fn without_pixels(&self) -> Sheet {
+        let mut slim = Sheet {
+            channels: Vec::new(),
+            ..self.clone()
+        };
+        for component in slim.stronger.iter_mut().chain(&mut slim.weaker) {
+            component.filter.clear();
+            component.filter_raw.clear();
+            component.pattern.clear();
+        }
+        slim.principal.iter_mut().for_each(|p| p.pattern.clear());
+        slim
+    }
     /// The first component of the leading end.
     pub fn first(&self) -> Option<&Component> {
         match self.leading {

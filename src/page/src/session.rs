@@ -181,9 +181,12 @@ impl Session {
         to_js(&Told { progress, finished })
     }
 
-    /// Everything known so far, or null.
+    /// Everything known so far, or null; of a movie without what has a value a pixel, which the page shows as pictures only.
     pub fn sheet(&self) -> Outcome<JsValue> {
-        to_js(&self.known())
+        match self.known() {
+            Some(sheet) if sheet.movie.is_some() => to_js(&sheet.without_pixels()),
+            known => to_js(&known),
+        }
     }
 
     /// The sentences beside the figures.
