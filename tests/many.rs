@@ -88,7 +88,7 @@ fn covariances(samples: &[Vec<f32>], windows: &[Window]) -> Covariances {
         lag: 0,
     };
     for window in windows {
-        all.push(&reader, window, None, false);
+        all.push(&reader, window, false);
     }
     all
 }
