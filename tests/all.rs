@@ -5,6 +5,8 @@ mod describe;
 mod dimensions;
 mod kinds;
 mod large;
+mod many;
+mod movies;
 mod places;
 mod prepare;
 mod quality;

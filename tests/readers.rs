@@ -23,9 +23,11 @@
 //! | RFC 1952: members, sums, lengths | `packed` |
 //! | BIDS events: onset, duration, trial_type, value, `n/a` | `tables` |
 //! | BIDS channels, electrodes, coordinates, facts about the recording, inheritance | `sides` (with a table of its own) |
+//! | NPY 1.0–3.0, NPZ, MAT level 5, TIFF 6.0 and BigTIFF: types, byte orders, axis orders, compressions | `arrays` |
 //! | any bytes at all: an answer, no panic, little memory | `hostile`, `changed` |
 //! | what is written is read again, here and by general libraries | `written`, `watch`, `read_back` |
 //! | the same recording in every format gives the same results | `matrix` |
+mod arrays;
 mod bdf;
 mod changed;
 mod delimited;

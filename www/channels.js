@@ -6,10 +6,14 @@ import { moreFilters } from "./filters.js";
 import { typed, written } from "./numbers.js";
 import { fateOf, proposals, settle } from "./proposals.js";
 import { ranks } from "./ranks.js";
+import { movie } from "./movie.js";
 import { follow, now } from "./state.js";
 
 /** @typedef {import("./types").App} App */
 /** @typedef {import("./types").Recipe} Recipe */
+
+/** More channels than this are not listed. */
+const MOST_LISTED = 512;
 
 /** What pressing a channel's name does. @type {"leave_out" | "interpolate"} */
 let pressing = "leave_out";
@@ -38,6 +42,7 @@ export function mountChannels(app) {
       make("span", { class: "together" }, "stop ", notch.field, " Hz,"),
       make("span", { class: "together" }, "refer to ", reference.root),
       make("span", { class: "together" }, "resample to ", rate.field, " Hz")),
+    movie(app),
     pairOf(app),
     proposals(app),
     make("details", { class: "more leave-out" }, make("summary", {}, "Leave out or interpolate any channel"),
@@ -80,6 +85,9 @@ function notchField(app) {
   });
 }
 
+/** Channels that are listed by name: the pixels of a movie are not. @param {import("./types").ChannelCard[] | undefined} channels */
+const listed = (channels) => ((channels?.length ?? 0) > MOST_LISTED ? [] : channels ?? []);
+
 /** @param {string} value @returns {Recipe["channels"]["reference"]} */
 function asReference(value) {
   if (value === "neighbours") return { bipolar: "neighbours" };
@@ -90,20 +98,20 @@ function asReference(value) {
 function showReference(reference) {
   const { recipe, summary } = now();
   const current = recipe?.channels.reference ?? "as recorded";
-  const names = (summary?.channels ?? []).map(({ name }) => name);
+  const names = listed(summary?.channels).map(({ name }) => name);
   const several = Array.isArray(current) && current.length > 1 ? [{ value: "several", label: `the mean of ${current.join(" and ")}` }] : [];
   const bipolar = typeof current === "object" && !Array.isArray(current) ? current.bipolar : null;
-  const listed = Array.isArray(bipolar) ? [{ value: "listed", label: `${bipolar.length} pairs of the recipe` }] : [];
+  const writtenOut = Array.isArray(bipolar) ? [{ value: "listed", label: `${bipolar.length} pairs of the recipe` }] : [];
   reference.show(
-    [{ value: "as recorded", label: "as recorded" }, { value: "average", label: "the average of used" }, { value: "neighbours", label: "its neighbour (bipolar)" }, ...several, ...listed, ...names.map((name) => ({ value: `channel:${name}`, label: name }))],
-    Array.isArray(current) ? (several.length ? "several" : `channel:${current[0]}`) : bipolar ? (listed.length ? "listed" : "neighbours") : String(current),
+    [{ value: "as recorded", label: "as recorded" }, { value: "average", label: "the average of used" }, { value: "neighbours", label: "its neighbour (bipolar)" }, ...several, ...writtenOut, ...names.map((name) => ({ value: `channel:${name}`, label: name }))],
+    Array.isArray(current) ? (several.length ? "several" : `channel:${current[0]}`) : bipolar ? (writtenOut.length ? "listed" : "neighbours") : String(current),
   );
 }
 
 /** @param {App} app @param {HTMLElement} chips */
 function showChips(app, chips) {
   const { recipe, summary, sheet } = now();
-  const channels = (sheet ?? summary)?.channels ?? [];
+  const channels = listed((sheet ?? summary)?.channels);
   if (chips.children.length !== channels.length || channels.some(({ name }, i) => chips.children[i]?.getAttribute("data-name") !== name))
     chips.replaceChildren(...channels.map(({ name }) => make("button", { type: "button", "data-name": name, click: () => turn(app, name) }, name)));
   channels.forEach(({ name, state }, i) => {

@@ -23,6 +23,7 @@ export type Kind = Contrast["kind"];
 export interface Recipe {
   teasel_recipe: number;
   recording?: Given;
+  movie?: Movie;
   channels: { leave_out: string[]; interpolate: string[]; keep?: string[]; reference: "as recorded" | "average" | string[] | { bipolar: "neighbours" | [string, string][] }; positions?: Positions };
   filter: {
     high_pass_hz: number | null; low_pass_hz: number | null; notch_hz: number[]; resample_hz: number | null;
@@ -45,6 +46,21 @@ export type Positions =
   | { grid: { rows: number; columns: number; spacing_mm: number; first: string; along: string; prefix?: string } }
   | { probe: { spacing_um: number; order: string; prefix?: string } }
   | { at: Record<string, number[]> };
+export interface Movie {
+  bin?: number;
+  mask?: { above: number } | { quantile: number } | [number, number, number][];
+  dff?: { percentile: number; window_s: number };
+}
+/** Of a movie the sheet brings no channels and no patterns: pictures show them. */
+export interface MovieCard {
+  height: number;
+  width: number;
+  rows: number;
+  columns: number;
+  mean: (number | null)[];
+  used: number[];
+  threshold: number | null;
+}
 export interface RecordingCard {
   name: string;
   format: string;
@@ -130,6 +146,7 @@ export interface Component {
   trials: { onset_s: number; fold: number; log_ratio: number }[];
 }
 export interface Sheet {
+  movie?: MovieCard;
   recording: RecordingCard;
   recipe: Recipe;
   channels: ChannelCard[];

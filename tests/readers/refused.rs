@@ -191,7 +191,7 @@ fn annotations_alone() {
 fn other_content_under_this_name() {
     assert_eq!(refused(b"").kind, Kind::Empty);
     for (bytes, found) in [
-        (&b"PK\x03\x04rest"[..], "a ZIP archive"),
+        (&b"{\"a\": 1}"[..], "JSON text"),
         (b"%PDF-1.7", "a PDF document"),
         (b"onset\tduration\n", "\"onset\\tdu\""),
         (b"0", "\"0\""),

@@ -137,6 +137,7 @@ pub fn sheet() -> Sheet {
                 position: Some([0.0, 0.0, 1.0]),
             })
             .collect(),
+        movie: None,
         preparation: Some(PreparationCard {
             rate_hz: 250.0,
             channels: CHANNELS[..7].iter().map(|n| (*n).into()).collect(),
@@ -167,6 +168,7 @@ pub fn sheet() -> Sheet {
                 .collect(),
         }),
         compression: Some(CompressionCard {
+            basis: None,
             kept: 5,
             rank: 6,
             eigenvalues: vec![400.0, 120.0, 33.0, 12.0, 6.0, 1.5, 1e-13],

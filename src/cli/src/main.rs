@@ -156,7 +156,7 @@ struct Told {
     /// Unit of the samples: uV, mV, V, nV, fT, counts, or any other.
     #[arg(long, value_name = "UNIT")]
     unit: Option<String>,
-    /// What the axes of an array are, outermost first: channels,samples or samples,channels or frames,height,width.
+    /// What the axes of an array are, in the order of its sizes: channels,samples or samples,channels, frames,height,width or height,width,frames.
     #[arg(long, value_name = "AXES", value_parser = axes)]
     axes: Option<Axes>,
     /// Which of several named arrays holds the samples.

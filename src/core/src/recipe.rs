@@ -3,12 +3,14 @@
 //! Unknown keys are errors, every key is optional but `teasel_recipe` and `contrast`.
 mod check;
 mod contrast;
+mod movie;
 
 pub(crate) use check::WHOLE_MAX;
 pub use check::{given_check, recipe_check};
 pub use contrast::{
     BandReference, Contrast, ContrastKind, EventWindow, HoldBack, REST, Spans, Within,
 };
+pub use movie::{Above, Dff, Mask, Movie, Quantile};
 use serde::{Deserialize, Serialize};
 use std::collections::BTreeMap;
 
@@ -21,6 +23,9 @@ pub struct Recipe {
     /// What the recording's own file does not say.
     #[serde(default, skip_serializing_if = "Given::is_empty")]
     pub recording: Given,
+    /// What becomes of a movie's pixels before they are channels.
+    #[serde(default, skip_serializing_if = "Movie::is_plain")]
+    pub movie: Movie,
     /// Which channels, against which reference.
     #[serde(default)]
     pub channels: Channels,
@@ -82,6 +87,7 @@ impl Recipe {
         Recipe {
             teasel_recipe: 1,
             recording: Given::default(),
+            movie: Movie::default(),
             channels: Channels::default(),
             filter: Filter::default(),
             drop_windows: DropWindows::default(),
@@ -112,7 +118,7 @@ pub struct Given {
     /// Unit of the samples: `uV`, `mV`, `V`, `fT`, `counts`, …
     #[serde(skip_serializing_if = "Option::is_none")]
     pub unit: Option<String>,
-    /// What the axes of an array are, outermost first.
+    /// What the axes of an array are, in the order of its sizes.
     #[serde(skip_serializing_if = "Option::is_none")]
     pub axes: Option<Axes>,
     /// Which of several named arrays holds the samples.
@@ -173,7 +179,7 @@ impl Given {
     }
 }
 
-/// What the axes of an array are, outermost first.
+/// What the axes of an array are, in the order of its sizes as the file writes them.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
 pub enum Axes {
     /// One row a channel.
@@ -185,14 +191,18 @@ pub enum Axes {
     /// One picture after the other.
     #[serde(rename = "frames,height,width")]
     FramesHeightWidth,
+    /// Time along the last axis of a movie.
+    #[serde(rename = "height,width,frames")]
+    HeightWidthFrames,
 }
 
 impl Axes {
     /// All of them.
-    pub const ALL: [Axes; 3] = [
+    pub const ALL: [Axes; 4] = [
         Axes::ChannelsSamples,
         Axes::SamplesChannels,
         Axes::FramesHeightWidth,
+        Axes::HeightWidthFrames,
     ];
     /// As it is written in a recipe.
     pub fn name(self) -> &'static str {
@@ -200,6 +210,7 @@ impl Axes {
             Axes::ChannelsSamples => "channels,samples",
             Axes::SamplesChannels => "samples,channels",
             Axes::FramesHeightWidth => "frames,height,width",
+            Axes::HeightWidthFrames => "height,width,frames",
         }
     }
 }

@@ -16,6 +16,9 @@ pub struct Sheet {
     pub recipe: Recipe,
     /// Every analysed channel of the recording, in file order.
     pub channels: Vec<ChannelCard>,
+    /// The picture of a movie and which of its pixels are channels.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub movie: Option<MovieCard>,
     /// How good the channels are as recorded, with proposals; it does not depend on the recipe.
     #[serde(default)]
     pub quality: Option<QualityCard>,
@@ -119,6 +122,31 @@ pub struct ChannelCard {
     pub state: ChannelState,
     /// Position on the unit sphere: x right, y front, z up.
     pub position: Option<[f64; 3]>,
+}
+
+/// The picture of a movie.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct MovieCard {
+    /// Rows of the movie as recorded.
+    pub height: u32,
+    /// Columns of the movie as recorded.
+    pub width: u32,
+    /// Rows after binning.
+    pub rows: u32,
+    /// Columns after binning.
+    pub columns: u32,
+    /// Mean over all frames, `rows × columns`, row by row; not a number (null in JSON) where there is no pixel.
+    #[serde(deserialize_with = "numbers_or_nan")]
+    pub mean: Vec<f32>,
+    /// Pixels after binning that are channels: row · columns + column.
+    pub used: Vec<u32>,
+    /// The value that used pixels lie above, where a threshold decides.
+    pub threshold: Option<f64>,
+}
+
+fn numbers_or_nan<'de, D: serde::Deserializer<'de>>(from: D) -> Result<Vec<f32>, D::Error> {
+    let list: Vec<Option<f32>> = Vec::deserialize(from)?;
+    Ok(list.into_iter().map(|x| x.unwrap_or(f32::NAN)).collect())
 }
 
 /// What became of a channel.
@@ -408,9 +436,28 @@ pub struct CompressionCard {
     pub eigenvalues: Vec<f64>,
     /// Share of the variance in the kept dimensions, 0…1.
     pub share: f64,
+    /// Where there are too many channels for their covariance: the basis that stands between.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub basis: Option<BasisCard>,
     /// Numbers of dimensions other rules would keep: `share_95`, `one_standard_error`, `held_out_peak`, `parallel_analysis`,
     /// `noise_edge`, `hard_threshold`.
     pub guides: BTreeMap<String, usize>,
+}
+
+/// A basis between many channels (the pixels of a movie) and the kept dimensions.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+pub struct BasisCard {
+    /// Its dimensions; `eigenvalues` and `rank` of the compression are those inside it.
+    pub dimensions: usize,
+    /// Variance of all channels together in the windows.
+    pub total: f64,
+    /// Share of it that lies outside the basis, 0…1.
+    pub left_out: f64,
+    /// Most variance that any single direction outside the basis can have.
+    pub outside: f64,
+    /// Exact but for rounding (from the frames' Gram matrix); otherwise a randomised range finder, and `outside` is a bound that
+    /// fails with a probability of 1e-10.
+    pub exact: bool,
 }
 
 /// Fitted and held-out ratio of the leading component against C, in the chosen measure.
@@ -690,6 +737,21 @@ pub struct HeldBackRatio {
 }
 
 impl Sheet {
+    /// A copy without the lists that hold one value a channel, which are long where channels are pixels; the movie's mean frame stays.
+    #[must_use]
+    pub fn without_pixels(&self) -> Sheet {
+        let mut slim = Sheet {
+            channels: Vec::new(),
+            ..self.clone()
+        };
+        for component in slim.stronger.iter_mut().chain(&mut slim.weaker) {
+            component.filter.clear();
+            component.filter_raw.clear();
+            component.pattern.clear();
+        }
+        slim.principal.iter_mut().for_each(|p| p.pattern.clear());
+        slim
+    }
     /// The first component of the leading end.
     pub fn first(&self) -> Option<&Component> {
         match self.leading {

@@ -9,6 +9,7 @@ use crate::filters::Filters;
 use crate::keep::Keep;
 use crate::map::Map;
 use crate::overview::Overview;
+use crate::picture::{Pictures, PixelMap};
 use crate::powers::Powers;
 use crate::principal::Principal;
 use crate::ratio::Row;
@@ -102,7 +103,10 @@ fn ends(sheet: &Sheet) -> [(End, &[Component]); 2] {
 pub fn from_sheet(sheet: &Sheet, name: &str) -> Option<Figure> {
     match name {
         "overview" => Overview::of(sheet).map(Figure::Overview),
+        "channels-map" if sheet.movie.is_some() => Pictures::of(sheet).map(Figure::Pictures),
         "channels-map" => ChannelsMap::of(sheet).map(Figure::ChannelsMap),
+        // A row for each of thousands of pixels tells nothing: their pictures do.
+        "channels" if sheet.movie.is_some() => None,
         "channels" => Channels::of(sheet).map(Figure::Channels),
         "windows" => {
             let first = sheet.first().map(|c| (c, End::from(sheet.leading)));
@@ -129,6 +133,12 @@ fn of_component(sheet: &Sheet, name: &str) -> Option<Figure> {
     let (end, components) = ends(sheet).into_iter().find(|(e, _)| e.word() == end)?;
     let component = components.get(index)?;
     match part {
+        "map" if sheet.movie.is_some() => {
+            PixelMap::of(sheet, component, end, false).map(Figure::PixelMap)
+        }
+        "map-small" if sheet.movie.is_some() => {
+            PixelMap::of(sheet, component, end, true).map(Figure::PixelMap)
+        }
         "map" => Map::of(sheet, component, end, false).map(Figure::Map),
         "map-small" => Map::of(sheet, component, end, true).map(Figure::Map),
         "filter" => Weights::of(sheet, component, end).map(Figure::Weights),

@@ -32,6 +32,7 @@ mod map;
 mod nan;
 mod overview;
 mod pen;
+mod picture;
 mod places;
 mod powers;
 mod principal;
@@ -119,6 +120,10 @@ figures! {
     Principal(principal::Principal),
     /// Fitted and held-out ratio against C.
     Keep(keep::Keep),
+    /// Mean and spread of every pixel of a movie.
+    Pictures(picture::Pictures),
+    /// A pattern on the mean frame of a movie.
+    PixelMap(picture::PixelMap),
     /// A pattern on the head.
     Map(map::Map),
     /// The largest weights of a filter.

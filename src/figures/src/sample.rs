@@ -95,6 +95,7 @@ pub fn sheet(channels: usize, trials: usize) -> Sheet {
                 reference: window(-1.0, -0.2),
             })
         },
+        movie: None,
         preparation: Some(PreparationCard {
             rate_hz: 250.0,
             channels: used.clone(),
@@ -220,6 +221,7 @@ fn compression(rank: usize) -> CompressionCard {
     let kept = 12.min(rank);
     let share = eigenvalues[..kept].iter().sum::<f64>() / eigenvalues.iter().sum::<f64>();
     CompressionCard {
+        basis: None,
         kept,
         rank,
         eigenvalues,

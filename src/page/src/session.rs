@@ -121,17 +121,18 @@ impl Session {
         Ok(())
     }
 
-    /// Makes a demo recording: `watch`.
+    /// Makes a demo recording: `watch` or `movie`.
     #[wasm_bindgen(js_name = beginDemo)]
     pub fn begin_demo(&mut self, which: &str) -> Outcome<()> {
-        if which != "watch" {
-            return Err(thrown(unknown_demo(which)));
-        }
-        let made = demo::night_watch(demo::WATCH_SEED);
+        let (made, why) = match which {
+            "watch" => (demo::night_watch(demo::WATCH_SEED), demo::WATCH_WHY),
+            "movie" => (demo::drifting_dish(demo::DISH_SEED), demo::DISH_WHY),
+            _ => return Err(thrown(unknown_demo(which))),
+        };
         self.lines = Lines::default();
         self.brought = Some(Proposal {
             recipe: made.recipe,
-            why: demo::WATCH_WHY.to_owned(),
+            why: why.to_owned(),
         });
         self.state = State::Open(Box::new(made.recording));
         Ok(())
@@ -220,9 +221,12 @@ impl Session {
         to_js(&Told { progress, finished })
     }
 
-    /// Everything known so far, or null.
+    /// Everything known so far, or null; of a movie without what has a value a pixel, which the page shows as pictures only.
     pub fn sheet(&self) -> Outcome<JsValue> {
-        to_js(&self.known())
+        match self.known() {
+            Some(sheet) if sheet.movie.is_some() => to_js(&sheet.without_pixels()),
+            known => to_js(&known),
+        }
     }
 
     /// The sentences beside the figures.
@@ -428,6 +432,6 @@ fn unknown_demo(which: &str) -> Problem {
     Problem::new(
         Kind::Unknown,
         format!("there is no demo recording called {which}"),
-        "Open the demo recording watch.",
+        "Open the demo recording watch or movie.",
     )
 }

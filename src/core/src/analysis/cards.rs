@@ -1,5 +1,6 @@
 //! From what was computed to what the sheet says.
 use super::work::Work;
+use crate::contrast::basis::Basis;
 use crate::contrast::fit::{Direction, Ends};
 use crate::contrast::linalg::{abs_cosine, packed_len, quadratic};
 use crate::contrast::space::Space;
@@ -16,8 +17,8 @@ use crate::prepare::{Prepared, Quality};
 use crate::recipe::{Keep, KeepWord, Measure, Recipe};
 use crate::recording::Recording;
 use crate::sheet::{
-    ChannelCard, ChannelState, Comparator, ComparatorKind, Component, CompressionCard, End,
-    FoldCard, Permutation, PrincipalCard, RankStep, RecordingCard, Sheet, Step, TotalRatio,
+    BasisCard, ChannelCard, ChannelState, Comparator, ComparatorKind, Component, CompressionCard,
+    End, FoldCard, Permutation, PrincipalCard, RankStep, RecordingCard, Sheet, Step, TotalRatio,
     TrialScore, TypicalRatio, WindowPower,
 };
 use nalgebra::DMatrix;
@@ -68,6 +69,7 @@ pub(super) fn begin(recording: &Recording, recipe: &Recipe) -> Sheet {
         },
         recipe: recipe.clone(),
         channels: Vec::new(),
+        movie: None,
         quality: None,
         preparation: None,
         windows: None,
@@ -160,9 +162,17 @@ pub(super) fn ranks(work: &mut Work) {
 }
 
 /// A principal dimension: `row` of the whitening and its course over all prepared samples.
-pub(super) fn principal(space: &Space, at: usize, row: &[f64], course: &[f64]) -> PrincipalCard {
+pub(super) fn principal(
+    space: &Space,
+    basis: Option<&Basis>,
+    at: usize,
+    row: &[f64],
+    course: &[f64],
+) -> PrincipalCard {
     let value = space.eigenvalues[at];
-    let all: f64 = space.eigenvalues.iter().filter(|e| **e > 0.0).sum();
+    let inside: f64 = space.eigenvalues.iter().filter(|e| **e > 0.0).sum();
+    let all = basis.map_or(inside, |b| b.total);
+    let row = basis.map_or_else(|| row.to_vec(), |b| b.lift(row));
     let largest = row
         .iter()
         .copied()
@@ -239,6 +249,7 @@ fn filter_and_pattern(
     direction: &Direction,
     weights: &[f64],
     signal: &[bool],
+    basis: Option<&Basis>,
 ) -> (Vec<f64>, Vec<f64>) {
     let space = &ground.space;
     let reference = {
@@ -253,6 +264,10 @@ fn filter_and_pattern(
     let u: Vec<f64> = direction.u.iter().map(|x| x * scale).collect();
     let mut filter = space.filter(&u);
     let mut pattern = pattern(space, &filter);
+    if let Some(basis) = basis {
+        filter = basis.lift(&filter);
+        pattern = basis.lift(&pattern);
+    }
     let largest = pattern
         .iter()
         .copied()
@@ -285,7 +300,8 @@ pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
     };
     let weights = &work.covariances.weights;
     let component = |d: &Direction| -> Component {
-        let (filter, pattern) = filter_and_pattern(ground, d, weights, &design.signal);
+        let (filter, pattern) =
+            filter_and_pattern(ground, d, weights, &design.signal, work.basis.as_ref());
         let v = variances(&ground.space, &d.u, &design.signal);
         let largest = (0..pattern.len()).fold(0, |best, i| {
             if pattern[i].abs() > pattern[best].abs() {
@@ -306,7 +322,7 @@ pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
                 folds: Vec::new(),
             },
             p: None,
-            filter_raw: raw_filter(prepared, &filter),
+            filter_raw: prepared.raw(&filter, work.sheet.channels.len()),
             largest_at: prepared.channels[largest].clone(),
             filter,
             pattern,
@@ -321,13 +337,22 @@ pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
     work.sheet.leading = leading(ends);
     work.sheet.shrinkage = Some(ends.shrinkage);
     let eigenvalues = ground.space.eigenvalues.clone();
-    let all: f64 = eigenvalues.iter().filter(|e| **e > 0.0).sum();
+    let inside: f64 = eigenvalues.iter().filter(|e| **e > 0.0).sum();
+    let all = work.basis.as_ref().map_or(inside, |b| b.total);
     let share = eigenvalues[..keep].iter().sum::<f64>() / all;
+    let basis = work.basis.as_ref().map(|b| BasisCard {
+        dimensions: b.rows.nrows(),
+        total: b.total,
+        left_out: (1.0 - inside / b.total).max(0.0),
+        outside: b.outside,
+        exact: b.exact,
+    });
     work.sheet.compression = Some(CompressionCard {
         kept: keep,
         rank: ground.space.rank,
         eigenvalues,
         share,
+        basis,
         guides: BTreeMap::new(),
     });
     if let Some(card) = &mut work.sheet.preparation {
@@ -464,20 +489,13 @@ pub(super) fn leading_direction(ends: &Ends, leading: End) -> Option<&Direction>
     }
 }
 
-/// w_raw = Tᵀw.
-fn raw_filter(prepared: &Prepared, filter: &[f64]) -> Vec<f64> {
-    let t = &prepared.matrix;
-    (0..t.ncols())
-        .map(|c| filter.iter().enumerate().map(|(r, w)| w * t[(r, c)]).sum())
-        .collect()
-}
-
 /// Numbers of dimensions other rules would keep.
 pub(super) fn guides(sheet: &mut Sheet) {
     let Some(card) = &mut sheet.compression else {
         return;
     };
-    let all: f64 = card.eigenvalues.iter().filter(|e| **e > 0.0).sum();
+    let inside: f64 = card.eigenvalues.iter().filter(|e| **e > 0.0).sum();
+    let all = card.basis.map_or(inside, |b| b.total);
     let mut sum = 0.0;
     let share_95 = card.eigenvalues.iter().take_while(|e| {
         let before = sum < 0.95 * all;
@@ -485,7 +503,10 @@ pub(super) fn guides(sheet: &mut Sheet) {
         before
     });
     let share_95 = share_95.count().max(2).min(card.rank);
-    card.guides.insert("share_95".into(), share_95);
+    // A basis may end before.
+    if inside >= 0.95 * all {
+        card.guides.insert("share_95".into(), share_95);
+    }
     if let Some(found) = &sheet.dimensions {
         let above = |limit: f64| {
             let values = card.eigenvalues.iter().take(card.rank);
@@ -542,7 +563,9 @@ pub(super) fn held_out(work: &mut Work, recipe: &Recipe) {
         .map(|(g, f)| {
             [&f.ends.stronger, &f.ends.weaker].map(|end| {
                 end.iter()
-                    .map(|d| filter_and_pattern(g, d, weights, &design.signal).1)
+                    .map(|d| {
+                        filter_and_pattern(g, d, weights, &design.signal, work.basis.as_ref()).1
+                    })
                     .collect()
             })
         })
@@ -800,13 +823,15 @@ fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator
     );
     let best_channel = best_of(
         work.sheet.leading,
-        all.channels,
+        all.candidates(),
         |i| of_channel(i, &|_| true),
         weights,
         design,
         &everything,
         recipe.measure,
     );
+    // Dimensions of a basis are no channels.
+    let single = work.basis.is_none() || !all.singles.is_empty();
     let of_mean = |of: &dyn Fn(usize) -> bool| all.mean_variances(signal, of);
     let drawn = random_direction(keep, recipe.evidence.seed);
     let of_drawn = |g: &Ground, of: &dyn Fn(usize) -> bool| {
@@ -848,7 +873,7 @@ fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator
     let share_of = |i: usize| Some(ground.space.eigenvalues[i] / shares);
     let (pc, pc_folds) = most_frequent(work.fits.iter().map(|f| f.best_pc));
     let (channel, channel_folds) = most_frequent(work.fits.iter().map(|f| f.best_channel));
-    vec![
+    let mut found = vec![
         Comparator {
             chosen: Some((pc + 1).to_string()),
             chosen_in_folds: Some(pc_folds),
@@ -879,7 +904,15 @@ fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator
             of_drawn(ground, &|_| true),
             &|_| 0,
         ),
-    ]
+    ];
+    // Dimensions of a basis are no channels.
+    let whole = work.basis.is_none();
+    found.retain(|c| match c.kind {
+        ComparatorKind::BestChannel => single,
+        ComparatorKind::MeanOfChannels => whole,
+        _ => true,
+    });
+    found
 }
 
 /// The value met most often (the smallest of equals), and how often.
@@ -960,12 +993,33 @@ fn warnings(work: &Work, recipe: &Recipe) -> Vec<String> {
         out.push(format!("C = {keep} was chosen by the labels; the choice is repeated in every fold and every permutation."));
     }
     if let (Some(prepared), Some(ground)) = (&work.prepared, &work.ground)
+        && work.basis.is_none()
         && ground.space.rank < prepared.channels.len()
     {
         out.push(format!(
             "The rank is {} with {} channels: the rest are combinations of others (an average reference, an interpolated or a copied channel).",
             ground.space.rank,
             prepared.channels.len()
+        ));
+    }
+    if let (Some(card), Some(prepared)) = (&sheet.compression, &work.prepared)
+        && let Some(basis) = card.basis
+    {
+        let last = card.eigenvalues.get(card.kept.saturating_sub(1));
+        let bound = if basis.exact {
+            ""
+        } else {
+            ", but for one chance in 10^10"
+        };
+        out.push(format!(
+            "{} channels are first brought to a basis of {} dimensions: {:.1} % of their variance lies outside it, and no direction there \
+             holds more than {:.3} % of it{bound} (dimension {} holds {:.3} %). The basis is made once from the windows of all folds, blind to their sides.",
+            prepared.channels.len(),
+            basis.dimensions,
+            100.0 * basis.left_out,
+            100.0 * basis.outside / basis.total,
+            card.kept,
+            100.0 * last.copied().unwrap_or(0.0) / basis.total,
         ));
     }
     out.extend(disagreement(work));

@@ -4,7 +4,7 @@
 //! slowly are measured on the same segments, so there the component stands beside the average channel at equal power outside the
 //! band (or over all); what repeats compares the average over trials, times their number, with the single trials.
 use super::cards;
-use super::work::{Work, lost};
+use super::work::{Work, inner, lost};
 use crate::contrast::windows::{Exchange, Selection, events_of, sample_at};
 use crate::describe::welch::{Welch, segment_for};
 use crate::describe::{course, spectra};
@@ -37,7 +37,7 @@ pub(super) fn describe(
     } else {
         &mut work.sheet.weaker[index]
     };
-    if let Some(design) = &work.design {
+    if let (Some(design), None) = (&work.design, &work.basis) {
         component.pattern_interval = cards::pattern_interval(
             &work.covariances,
             design,
@@ -46,6 +46,7 @@ pub(super) fn describe(
             recipe.evidence.seed,
         );
     }
+    let filter = inner(&work.basis, &component.filter);
     let rate = prepared.rate_hz;
     let side = |wanted: bool| -> Vec<(usize, usize)> {
         let windows = selection.windows.iter().filter(|w| w.signal == wanted);
@@ -56,14 +57,7 @@ pub(super) fn describe(
     let (onsets, span) = around
         .as_ref()
         .map_or((&[][..], [0.0; 2]), |a| (&a.onsets[..], a.span));
-    let series = partial_series(
-        prepared,
-        &component.filter,
-        &signals,
-        &references,
-        onsets,
-        span,
-    );
+    let series = partial_series(prepared, &filter, &signals, &references, onsets, span);
     let seed = recipe.evidence.seed ^ STREAM_DESCRIBE << 32;
     let of_windows = || {
         spectra::by(

@@ -20,6 +20,7 @@ mod work;
 use crate::contrast::windows::check;
 use crate::describe::placing;
 use crate::error::Result;
+use crate::prepare::movie::{Viewing, as_recorded};
 use crate::recipe::{Recipe, recipe_check};
 use crate::recording::{Large, Recording};
 use crate::sheet::Sheet;
@@ -71,6 +72,9 @@ pub struct Progress {
 pub struct Analysis {
     recording: Recording,
     recipe: Recipe,
+    /// A movie's pixels being made into channels, and made: everything after works on them.
+    viewing: Option<Viewing>,
+    viewed: Option<Recording>,
     work: Work,
     /// Where the samples stay in the file: `recording` then holds islands of them.
     ashore: Option<Box<Ashore>>,
@@ -94,10 +98,14 @@ impl Analysis {
     /// Unknown channels and impossible filters are refused by the first step.
     pub fn new(recording: Recording, recipe: Recipe) -> Result<Self> {
         check_recipe(&recipe, &recording)?;
-        let work = Work::new(&recording, &recipe);
+        let viewing = Viewing::new(&recording, &recipe.movie)?;
+        let mut work = Work::new(&recording, &recipe);
+        work.sheet.movie = as_recorded(&recording);
         Ok(Analysis {
             recording,
             recipe,
+            viewing,
+            viewed: None,
             work,
             ashore: None,
         })
@@ -117,6 +125,8 @@ impl Analysis {
         Ok(Analysis {
             recording,
             recipe,
+            viewing: None,
+            viewed: None,
             work,
             ashore: Some(Box::new(ashore)),
         })
@@ -184,7 +194,22 @@ impl Analysis {
         if self.ashore.is_some() {
             return self.turn(recipe);
         }
-        self.work.change(&self.recording, &self.recipe, &recipe)?;
+        if recipe.movie != self.recipe.movie {
+            // Other pixels are other channels: nothing that was computed holds.
+            self.viewing = Viewing::new(&self.recording, &recipe.movie)?;
+            self.viewed = None;
+            let known = self.work.sheet.movie.take();
+            self.work = Work::new(&self.recording, &recipe);
+            self.work.sheet.movie = match &self.viewing {
+                Some(_) => known,
+                None => as_recorded(&self.recording),
+            };
+        } else if self.viewing.is_some() {
+            self.work.sheet.recipe = recipe.clone();
+        } else {
+            let recording = self.viewed.as_ref().unwrap_or(&self.recording);
+            self.work.change(recording, &self.recipe, &recipe)?;
+        }
         self.recipe = recipe;
         Ok(())
     }
@@ -194,13 +219,44 @@ impl Analysis {
         if let Some(progress) = self.gather()? {
             return Ok(progress);
         }
-        self.work.step(&self.recording, &self.recipe)
+        if self.viewing.is_some() {
+            return self.view();
+        }
+        let recording = self.viewed.as_ref().unwrap_or(&self.recording);
+        self.work.step(recording, &self.recipe)
+    }
+
+    /// A bite of making a movie's pixels into channels.
+    fn view(&mut self) -> Result<Progress> {
+        let (done, of) = match &mut self.viewing {
+            Some(viewing) => {
+                viewing.step(&self.recording)?;
+                viewing.progress()
+            }
+            None => (1, 1),
+        };
+        let finished = self.viewing.take_if(|viewing| viewing.finished());
+        let news = finished.is_some();
+        if let Some(viewing) = finished {
+            let (viewed, card) = viewing.finish(&self.recording);
+            self.work = Work::new(&viewed, &self.recipe);
+            self.work.sheet.movie = Some(card);
+            self.viewed = Some(viewed);
+        }
+        Ok(Progress {
+            stage: Stage::Preparing,
+            done,
+            of,
+            news,
+        })
     }
 
     /// Whether all work is done.
     pub fn finished(&self) -> bool {
         let reading = |ashore: &Ashore| ashore.gathering.is_some();
-        !self.ashore.as_deref().is_some_and(reading) && self.work.finished(&self.recipe)
+        self.viewing.is_none()
+            && !self.ashore.as_deref().is_some_and(reading)
+            && self.work.finished(&self.recipe)
     }
 
     /// Runs every step.
@@ -216,9 +272,9 @@ impl Analysis {
         &self.work.sheet
     }
 
-    /// The recording.
+    /// The recording that is contrasted: of a movie, the one whose channels are the pixels in use, once they are made.
     pub fn recording(&self) -> &Recording {
-        &self.recording
+        self.viewed.as_ref().unwrap_or(&self.recording)
     }
 
     /// Gives the recording back, to be analysed with something else.

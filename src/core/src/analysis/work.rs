@@ -3,6 +3,7 @@ use super::islands::{Standing, moved};
 use super::portrait::Portraits;
 use super::{Progress, Series, Stage, cards};
 use crate::contrast::band::Banding;
+use crate::contrast::basis::{Basis, Channels, Finding, SPARE};
 use crate::contrast::fit::{Ends, Labels, Method, centre, extremes, fit};
 use crate::contrast::read::Reader;
 use crate::contrast::reject::{judge, measure, relative_size};
@@ -21,6 +22,7 @@ use crate::prepare::{Comparing, Prepared, Preparing, Quality, inspect};
 use crate::recipe::{BandReference, Contrast, Keep, KeepWord, Measure, Recipe, Shrink, ShrinkWord};
 use crate::recording::Recording;
 use crate::sheet::{ChannelCard, End, KeepCurve, RejectionEffect, Sheet};
+use std::borrow::Cow;
 use std::collections::BTreeMap;
 
 /// Largest C of `keep: "auto"`.
@@ -45,6 +47,10 @@ pub(super) struct Work {
     preparing: Option<Preparing>,
     pub(super) prepared: Option<Prepared>,
     pub(super) selection: Option<Selection>,
+    /// A basis of many channels in the making, and made: `prepared` then holds the samples in it, and these are the channels' own.
+    finding: Option<Finding>,
+    pub(super) basis: Option<Basis>,
+    pixels: Vec<Vec<f32>>,
     /// The filtered recording of a band contrast.
     bands: Option<Banding>,
     pub(super) covariances: Covariances,
@@ -115,6 +121,7 @@ enum Task {
     Inspect,
     Prepare,
     Select,
+    Compress,
     Band,
     Covariances,
     Reject,
@@ -179,6 +186,9 @@ impl Work {
             preparing: None,
             prepared: None,
             selection: None,
+            finding: None,
+            basis: None,
+            pixels: Vec::new(),
             bands: None,
             covariances: Covariances::default(),
             ground: None,
@@ -231,7 +241,9 @@ impl Work {
             || old.drop_windows != new.drop_windows
             || old.not_used != new.not_used
             || locked_share(old) != locked_share(new);
-        if windows {
+        let spaces = limit(old) != limit(new);
+        if windows || spaces && self.basis.is_some() {
+            self.leave_basis();
             self.selection = None;
             self.bands = None;
             self.covariances = Covariances::default();
@@ -270,7 +282,6 @@ impl Work {
             self.sketched = 0;
             self.described = 0;
         }
-        let spaces = limit(old) != limit(new);
         if spaces {
             self.ground = None;
         }
@@ -376,6 +387,9 @@ impl Work {
             return Task::Select;
         };
         let windows = selection.windows.len();
+        if self.basis.is_none() && self.prepared.as_ref().is_some_and(Prepared::many) {
+            return Task::Compress;
+        }
         if let Contrast::Band { .. } = recipe.contrast
             && (self.bands.as_ref()).is_none_or(|b| b.signal.len() < prepared_channels(self))
         {
@@ -403,16 +417,13 @@ impl Work {
         if self.sketched < up.min(1) + down.min(1) {
             return Task::Sketch;
         }
-        // Channels are compared over all samples.
-        if self.quality.is_none() && self.standing.is_none() {
+        // Channels are compared over all samples. Pixels have no contacts that could be bad, and too many neighbours to be compared.
+        let judged = self.sheet.movie.is_none();
+        if judged && self.quality.is_none() && self.standing.is_none() {
             return Task::Compare;
         }
-        if self
-            .sheet
-            .preparation
-            .as_ref()
-            .is_some_and(|p| p.ranks.is_empty())
-        {
+        let preparation = self.sheet.preparation.as_ref();
+        if judged && preparation.is_some_and(|p| p.ranks.is_empty()) {
             return Task::Ranks;
         }
         if self.described < up + down {
@@ -462,7 +473,7 @@ impl Work {
             Task::Effect
         } else if self.sheet.principal.len() < wanted {
             Task::Principal
-        } else if self.sheet.dimensions.is_none() && self.counts_samples() {
+        } else if self.sheet.dimensions.is_none() && self.basis.is_none() && self.counts_samples() {
             Task::Dimensions
         } else if self.portraits.done < all && recipe.contrast.event_windows().is_some() {
             Task::Portrait
@@ -519,11 +530,16 @@ impl Work {
                     None => selection,
                 };
                 self.sheet.windows = Some(selection.card.clone());
-                afford(prepared.samples.len(), selection.windows.len(), recipe)?;
+                let channels = match prepared.many() {
+                    true => limit(recipe) + SPARE,
+                    false => prepared.samples.len(),
+                };
+                afford(channels, selection.windows.len(), recipe)?;
                 let all = selection.windows.len() as u64;
                 self.selection = Some(selection);
                 Ok(progress(Stage::Windows, 0, all, true))
             }
+            Task::Compress => self.compress(recording, recipe),
             Task::Band => self.push_band(recipe),
             Task::Covariances => self.push_covariances(recipe),
             Task::Reject => self.reject(recipe),
@@ -625,6 +641,43 @@ impl Work {
         Ok(progress(Stage::Preparing, of as u64, of as u64, true))
     }
 
+    /// Finds the basis that stands in for many channels; from then on `prepared` holds the samples in it.
+    fn compress(&mut self, recording: &Recording, recipe: &Recipe) -> Result<Progress> {
+        let (Some(prepared), Some(selection)) = (&mut self.prepared, &self.selection) else {
+            return Err(lost());
+        };
+        let samples = prepared.stretches.iter().map(|s| s.count).sum();
+        let finding = self.finding.get_or_insert_with(|| {
+            let wanted = limit(recipe) + SPARE;
+            Finding::new(prepared.channels.len(), samples, &selection.windows, wanted)
+        });
+        finding.step(&Pixels {
+            prepared,
+            recording,
+        });
+        let (done, of) = finding.progress();
+        if let Some(finding) = self.finding.take_if(|f| f.finished()) {
+            let (basis, reduced) = finding.finish();
+            if !basis.total.is_finite() {
+                return Err(not_numbers());
+            }
+            self.pixels = std::mem::replace(&mut prepared.samples, reduced);
+            self.basis = Some(basis);
+        }
+        Ok(progress(Stage::Windows, done, of, false))
+    }
+
+    /// Puts the channels' own samples back.
+    fn leave_basis(&mut self) {
+        self.finding = None;
+        if self.basis.take().is_some() {
+            let pixels = std::mem::take(&mut self.pixels);
+            if let Some(prepared) = &mut self.prepared {
+                prepared.samples = pixels;
+            }
+        }
+    }
+
     /// Filters the next channel of a band contrast.
     fn push_band(&mut self, recipe: &Recipe) -> Result<Progress> {
         let (
@@ -672,15 +725,17 @@ impl Work {
             .flatten()
             .any(|x| !x.is_finite())
         {
-            return Err(Problem::new(
-                Kind::Contrast,
-                "the windows hold values that are not numbers",
-                "leave the channel out that holds them",
-            ));
+            return Err(not_numbers());
         }
         let done = self.covariances.packed.len();
         if done == all {
             self.design = None;
+            // Other kinds compare what was made of the samples, not the samples.
+            if let (Some(basis), Contrast::Windows { .. } | Contrast::Spans { .. }) =
+                (&mut self.basis, &recipe.contrast)
+            {
+                self.covariances.singles = std::mem::take(&mut basis.singles);
+            }
             self.drop_flat()?;
             if let (true, Some(selection)) = (levelled(recipe), &self.selection) {
                 let sides = selection.sides();
@@ -852,7 +907,7 @@ impl Work {
         self.course_done = end;
         if end == all {
             let course = std::mem::take(&mut self.course);
-            let card = cards::principal(&ground.space, at, &row, &course);
+            let card = cards::principal(&ground.space, self.basis.as_ref(), at, &row, &course);
             self.sheet.principal.push(card);
         }
         Ok(progress(
@@ -1293,7 +1348,8 @@ impl Work {
         let samples: Vec<Vec<f64>> = components
             .map(|c| {
                 let mut out = vec![0.0; all];
-                super::describing::add_projection(&mut out, prepared, &c.filter, 0, all);
+                let filter = inner(&self.basis, &c.filter);
+                super::describing::add_projection(&mut out, prepared, &filter, 0, all);
                 out
             })
             .collect();
@@ -1320,6 +1376,37 @@ fn progress(stage: Stage, done: u64, of: u64, news: bool) -> Progress {
         of,
         news,
     }
+}
+
+/// A filter of the sheet for the samples that `prepared` holds.
+pub(super) fn inner<'a>(basis: &Option<Basis>, filter: &'a [f64]) -> Cow<'a, [f64]> {
+    match basis {
+        Some(basis) => Cow::Owned(basis.lower(filter)),
+        None => Cow::Borrowed(filter),
+    }
+}
+
+/// Prepared channels, as recorded where nothing was changed.
+struct Pixels<'a> {
+    prepared: &'a Prepared,
+    recording: &'a Recording,
+}
+
+impl Channels for Pixels<'_> {
+    fn count(&self) -> usize {
+        self.prepared.channels.len()
+    }
+    fn samples(&self, channel: usize) -> &[f32] {
+        self.prepared.of_channel(self.recording, channel)
+    }
+}
+
+fn not_numbers() -> Problem {
+    Problem::new(
+        Kind::Contrast,
+        "the windows hold values that are not numbers",
+        "leave the channel out that holds them",
+    )
 }
 
 /// A state that the order of tasks rules out; said rather than panicked about.

@@ -17,6 +17,7 @@
 //! wᵀRw = 1 with R as it is. The pattern a = P w/(wᵀPw) (Haufe et al. 2014) has its entry of largest magnitude positive.
 //! Stronger components come by falling λ or δ, weaker ones by rising ratio.
 pub mod band;
+pub mod basis;
 pub mod fit;
 pub mod linalg;
 pub mod pieces;

@@ -25,6 +25,8 @@ pub struct Covariances {
     pub largest_mean_square: f64,
     /// What repeats: the samples of each trial about its mean, sample-major (`samples × channels`); empty for other kinds.
     pub courses: Vec<Vec<f64>>,
+    /// Where the channels here are dimensions of a basis: the variance of every channel of the recording in every window.
+    pub singles: Vec<Vec<f32>>,
 }
 
 impl Covariances {
@@ -117,7 +119,14 @@ impl Covariances {
         let mut at = kept.iter().step_by(2);
         self.courses.retain(|_| at.next().copied().unwrap_or(true));
         let mut at = kept.iter();
+        self.singles.retain(|_| at.next().copied().unwrap_or(true));
+        let mut at = kept.iter();
         self.weights.retain(|_| at.next().copied().unwrap_or(true));
+    }
+
+    /// Single channels that [`Self::channel_variances`] knows.
+    pub fn candidates(&self) -> usize {
+        self.singles.first().map_or(self.channels, Vec::len)
     }
 
     /// As [`Space::variances`] for a channel.
@@ -127,6 +136,13 @@ impl Covariances {
         signal: &[bool],
         of: impl Fn(usize) -> bool,
     ) -> Vec<f64> {
+        if !self.singles.is_empty() {
+            let one = |(k, single): (usize, &Vec<f32>)| match of(k) {
+                true => f64::from(single[i]),
+                false => f64::NAN,
+            };
+            return self.singles.iter().enumerate().map(one).collect();
+        }
         let m = self.channels;
         let pick = |course: &Vec<f64>| course.iter().skip(i).step_by(m).copied().collect();
         one_by_one(&self.packed, &self.courses, i, pick, signal, of)

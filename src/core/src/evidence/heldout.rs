@@ -180,7 +180,7 @@ pub fn fit_ground(
     );
     let best_channel = best_of(
         end,
-        all.channels,
+        all.candidates(),
         |i| all.channel_variances(i, &design.signal, train),
         &all.weights,
         design,

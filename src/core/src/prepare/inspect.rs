@@ -167,6 +167,9 @@ struct Mains {
 impl Mains {
     fn new(recording: &Recording) -> Option<Self> {
         let rate_hz = recording.rate_hz;
+        if rate_hz / 2.0 <= MAINS_HZ[0] + MAINS_HALF_WIDTH_HZ {
+            return None;
+        }
         let longest = recording.stretches.iter().max_by_key(|s| s.count)?;
         let segment = (2.0 * rate_hz).round() as usize & !1;
         if segment < 16 || longest.count < segment {

@@ -8,16 +8,19 @@ use crate::sheet::{ChannelCard, ChannelState, Step};
 use nalgebra::DMatrix;
 
 /// A weighted sum of recorded channels: index and weight, weights of 0 left out.
-pub(super) type Sum = Vec<(usize, f64)>;
+pub(crate) type Sum = Vec<(usize, f64)>;
 
 /// Above so many channels the rank after each step is not worked out.
 const MOST_STEPPED: usize = 512;
 
+/// More channels that are set aside than this are said in one sentence.
+const MOST_SAID: usize = 12;
+
 /// T in its two parts, so that a reference over all channels is summed once and not once a channel.
-#[derive(Debug)]
-pub(super) struct ChannelMatrix {
+#[derive(Debug, Clone)]
+pub(crate) struct ChannelMatrix {
     /// Indexes of the prepared channels among the recorded ones, ascending; of a difference, its first.
-    pub(super) channels: Vec<usize>,
+    pub(crate) channels: Vec<usize>,
     /// Names of the prepared channels.
     pub(super) names: Vec<String>,
     /// Unit-sphere positions of the prepared channels; of a difference, half way.
@@ -72,6 +75,20 @@ impl ChannelMatrix {
             matrix.steps = steps(cards, choices, &analysed, &rebuilt, &matrix);
         }
         Ok(matrix)
+    }
+    /// Tᵀw.
+    pub(super) fn back(&self, filter: &[f64], recorded: usize) -> Vec<f64> {
+        let mut out = vec![0.0; recorded];
+        for (row, w) in self.rows.iter().zip(filter) {
+            for &(channel, weight) in row {
+                out[channel] += w * weight;
+            }
+        }
+        let sum: f64 = filter.iter().sum();
+        for &(channel, weight) in &self.reference {
+            out[channel] -= sum * weight;
+        }
+        out
     }
     /// T itself, `prepared × recorded`.
     pub(super) fn dense(&self, recorded: usize) -> DMatrix<f64> {
@@ -298,7 +315,15 @@ fn set_aside(cards: &[ChannelCard]) -> Vec<String> {
         ChannelState::Unusable(reason) => Some(format!("{} {reason} and is left out.", card.name)),
         _ => None,
     };
-    cards.iter().filter_map(sentence).collect()
+    let all: Vec<String> = cards.iter().filter_map(sentence).collect();
+    if all.len() <= MOST_SAID {
+        return all;
+    }
+    let first = &all[0];
+    vec![format!(
+        "{} channels are constant or hold values that are not numbers, and are left out; the first: {first}",
+        all.len()
+    )]
 }
 
 fn check_names(cards: &[ChannelCard], choices: &Channels) -> Result<()> {

@@ -8,6 +8,7 @@
 //! * [`steady`]: trend and fitted mains, taken off before the filters; `response`: what the filters let pass.
 //! * [`fir`]: design and zero-phase application; several filters are convolved into one kernel first, so that edges are mirrored once.
 //! * [`resample`]: rational change of rate, with its own anti-alias filter.
+//! * [`movie`]: a movie's pixels before they are channels.
 //! * [`inspect()`]: what is known of every channel before.
 //!
 //! # Precision
@@ -19,6 +20,7 @@
 pub mod fir;
 mod inspect;
 mod matrix;
+pub mod movie;
 mod neighbours;
 mod quality;
 pub mod resample;
@@ -50,11 +52,13 @@ pub struct Prepared {
     pub unit: String,
     /// Unit-sphere positions, where known.
     pub positions: Vec<Option<[f64; 3]>>,
-    /// `prepared × recorded` channel matrix T: w_raw = Tᵀw.
+    /// `prepared × recorded` channel matrix T: w_raw = Tᵀw. Empty beyond [`MOST_CHANNELS`]; [`Self::raw`] needs it not.
     pub matrix: DMatrix<f64>,
+    /// T by its entries that are not zero.
+    pub(crate) mixing: ChannelMatrix,
     /// Sampling rate.
     pub rate_hz: f64,
-    /// `channels × samples`.
+    /// `channels × samples`. Beyond [`MOST_CHANNELS`] a channel that stays as it was recorded is left empty here, to save a copy.
     pub samples: Vec<Vec<f32>>,
     /// Unbroken runs.
     pub stretches: Vec<Stretch>,
@@ -86,7 +90,25 @@ pub struct Preparing {
 }
 
 /// A matrix of channels by channels is never made beyond this.
-const MOST_CHANNELS: usize = 2000;
+pub const MOST_CHANNELS: usize = 2000;
+
+impl Prepared {
+    /// Whether there are so many channels that they are compressed before anything else.
+    pub fn many(&self) -> bool {
+        self.channels.len() > MOST_CHANNELS
+    }
+    /// w_raw = Tᵀw for `recorded` channels.
+    pub fn raw(&self, filter: &[f64], recorded: usize) -> Vec<f64> {
+        self.mixing.back(filter, recorded)
+    }
+    /// The samples of prepared channel `index`, from `recording` where they are as recorded.
+    pub fn of_channel<'a>(&'a self, recording: &'a Recording, index: usize) -> &'a [f32] {
+        match self.samples.get(index) {
+            Some(samples) if !samples.is_empty() => samples,
+            _ => &recording.samples[self.mixing.channels[index]],
+        }
+    }
+}
 
 impl Preparing {
     /// Checks the recipe's channels and filter against the recording and builds T and the filters.
@@ -101,15 +123,6 @@ impl Preparing {
     /// than every stretch.
     pub fn new(recording: &Recording, channels: &[ChannelCard], recipe: &Recipe) -> Result<Self> {
         let rate_hz = recording.rate_hz;
-        if recording.channels.len() > MOST_CHANNELS {
-            return Err(Problem::new(
-                Kind::TooLarge,
-                "more channels than a covariance can be made of",
-                "split the recording into parts with fewer channels",
-            )
-            .at("channels")
-            .expected_found(format!("at most {MOST_CHANNELS}"), recording.channels.len()));
-        }
         let places = Places::of(recording, channels);
         let matrix = ChannelMatrix::new(channels, &places, &recipe.channels)?;
         let designs = designs(&recipe.filter, rate_hz)?;
@@ -145,7 +158,12 @@ impl Preparing {
                 .unwrap_or_default()
                 .to_owned(),
             positions: matrix.positions.clone(),
-            matrix: matrix.dense(channels.len()),
+            matrix: if names.len() > MOST_CHANNELS {
+                DMatrix::zeros(0, 0)
+            } else {
+                matrix.dense(channels.len())
+            },
+            mixing: matrix.clone(),
             steps: matrix.steps.clone(),
             rate_hz: new_rate_hz,
             samples: Vec::with_capacity(names.len()),
@@ -206,6 +224,7 @@ impl Preparing {
             return false;
         };
         let samples = match row[..] {
+            [(_, 1.0)] if self.untouched() && self.result.many() => Vec::new(),
             [(channel, 1.0)] if self.untouched() => recording.samples[channel].clone(),
             _ => self.prepare(next, recording),
         };

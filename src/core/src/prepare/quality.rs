@@ -207,14 +207,19 @@ impl Comparing {
 
     /// The result, once all is done.
     pub fn finish(self) -> Option<Quality> {
-        let all = self.mains_db.len();
+        let known = self.rows > 2.0 * self.sane.len() as f64;
+        let all = if known { self.mains_db.len() } else { 0 };
         let mut covariance = DMatrix::zeros(all, all);
-        for (i, a) in self.sane.iter().enumerate().take(self.recorded.nrows()) {
+        for (i, a) in self
+            .sane
+            .iter()
+            .enumerate()
+            .take(self.recorded.nrows().min(all))
+        {
             for (j, b) in self.sane.iter().enumerate() {
                 covariance[(*a, *b)] = self.recorded[(i, j)] / self.rows;
             }
         }
-        let known = self.rows > 2.0 * self.sane.len() as f64;
         self.card.filter(|_| self.finished).map(|card| Quality {
             card,
             covariance: known.then_some(covariance),

@@ -28,6 +28,10 @@ fn in_words(path: &str) -> &'static str {
         "filter.low_pass_hz" => "the low-pass",
         "filter.notch_hz" => "the notch",
         "filter.resample_hz" => "the new sampling rate",
+        "movie.bin" => "the size of the bins",
+        "movie.mask" | "movie.mask.above" | "movie.mask.quantile" => "the mask",
+        "movie.dff.percentile" => "the percentile of the baseline",
+        "movie.dff.window_s" => "the window of the baseline",
         "filter.detrend" => "the length of a piece of the trend",
         "filter.mains" => "the removal of mains",
         "drop_windows" => "a limit for dropping windows",
@@ -60,7 +64,11 @@ fn in_words(path: &str) -> &'static str {
     }
 }
 
-fn out(path: &str, expected: impl std::fmt::Display, found: impl std::fmt::Display) -> Problem {
+pub(super) fn out(
+    path: &str,
+    expected: impl std::fmt::Display,
+    found: impl std::fmt::Display,
+) -> Problem {
     Problem::new(
         Kind::Recipe,
         format!("{} is out of range", in_words(path)),
@@ -102,6 +110,7 @@ pub fn recipe_check(recipe: &Recipe) -> Result<()> {
         .expected_found(1, recipe.teasel_recipe));
     }
     given_check(&recipe.recording)?;
+    super::movie::check_movie(&recipe.movie)?;
     check_keep(recipe.keep)?;
     check_best(recipe)?;
     check_filter(recipe)?;

@@ -35,6 +35,11 @@ impl<'a> Asking<'a> {
         });
     }
 
+    /// The rate that was told, without asking for it.
+    pub(crate) fn told_rate(&self) -> Option<f64> {
+        self.given.rate_hz
+    }
+
     /// Samples (or frames, as `noun` says) a second.
     pub(crate) fn rate(&mut self, noun: &str) -> Option<f64> {
         if self.given.rate_hz.is_none() {
@@ -72,7 +77,7 @@ impl<'a> Asking<'a> {
         }
         let sizes: Vec<String> = shape.iter().map(u64::to_string).collect();
         let question = format!(
-            "The array holds {} values: what are its axes, outermost first?",
+            "The array holds {} values: what are its axes, in this order?",
             sizes.join(" × ")
         );
         let options = possible.iter().map(|a| a.name().to_owned()).collect();

@@ -13,17 +13,23 @@
 //! # Adding a format
 //! One file with a `FORMAT` row (name, score of the first bytes, begin) and a type that implements the crate's `Reader`;
 //! one line in the table of `opening.rs`. The content decides who reads a file, its name never does.
+mod array;
 mod budget;
 pub mod edf;
 mod given;
 mod gzip;
 mod joined;
 pub mod large;
+mod mat;
 mod names;
+mod npy;
+mod npz;
 mod opening;
 pub mod pyramid;
+mod seek;
 mod sides;
 mod table;
+mod tiff;
 mod units;
 
 pub use budget::MEMORY_BYTES;
@@ -174,6 +180,11 @@ pub trait Source {
     }
     /// Fills `out` with the bytes from `offset` on; asking beyond the end is an error.
     fn read_at(&mut self, offset: u64, out: &mut [u8]) -> crate::error::Result<()>;
+}
+
+/// Name of a pixel, counted from 1: row 12, column 40 is `r12c40`.
+pub(crate) fn pixel_name(row: u32, column: u32) -> String {
+    format!("r{}c{}", row + 1, column + 1)
 }
 
 impl Recording {

@@ -2,7 +2,8 @@
 use super::budget::Budget;
 use super::large::{Flowing, Large, Scan};
 use super::{
-    MEMORY_BYTES, Recording, SideFile, Source, edf, gzip, joined, sides as side_files, table,
+    MEMORY_BYTES, Recording, SideFile, Source, edf, gzip, joined, mat, npy, npz,
+    sides as side_files, table, tiff,
 };
 use crate::error::{Kind, Problem, Result};
 use std::fmt;
@@ -45,18 +46,25 @@ pub(crate) struct Format {
 }
 
 /// Every format, one row each. The highest score reads the file; a tie goes to the earlier row.
-const FORMATS: &[Format] = &[edf::FORMAT, edf::FORMAT_24_BIT, gzip::FORMAT, table::FORMAT];
+const FORMATS: &[Format] = &[
+    edf::FORMAT,
+    edf::FORMAT_24_BIT,
+    npy::FORMAT,
+    npz::FORMAT,
+    mat::FORMAT,
+    tiff::FORMAT,
+    gzip::FORMAT,
+    table::FORMAT,
+];
 
 /// First bytes that a probe sees.
 const PROBE_BYTES: u64 = 4096;
 
 /// Content that is often dropped by mistake: its first bytes and what to call it.
 const OTHER_CONTENT: &[(&[u8], &str)] = &[
-    (b"PK\x03\x04", "a ZIP archive"),
     (b"%PDF", "a PDF document"),
     (b"\x89PNG", "a PNG picture"),
     (b"\x89HDF", "an HDF5 file"),
-    (b"\x93NUMPY", "a NumPy array"),
     (b"<", "markup text"),
     (b"{", "JSON text"),
 ];
@@ -342,7 +350,7 @@ fn unknown(head: &[u8]) -> Problem {
         "open a recording in one of these formats",
     )
     .at("byte 0")
-    .expected_found(format!("the mark of {}", names.join(" or ")), found)
+    .expected_found(format!("the mark of one of {}", names.join(", ")), found)
 }
 
 /// A recording's bytes in memory.

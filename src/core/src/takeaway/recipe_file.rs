@@ -76,6 +76,7 @@ const RECORDING: Shape = Shape::Object(&[
             "channels,samples",
             "samples,channels",
             "frames,height,width",
+            "height,width,frames",
         ])),
     ),
     ("variable", false, Shape::Maybe(&Shape::Text)),
@@ -89,6 +90,31 @@ const EVENTS: Shape = Shape::Object(&[
     ("duration", false, Shape::Maybe(&Shape::Text)),
 ]);
 
+pub(super) const MOVIE: Shape = Shape::Object(&[
+    ("bin", false, Shape::Maybe(&Shape::Whole)),
+    (
+        "mask",
+        false,
+        Shape::Maybe(&Shape::Either(
+            &[
+                Shape::Object(&[
+                    ("above", false, Shape::Number),
+                    ("quantile", false, Shape::Number),
+                ]),
+                Shape::List(&Shape::List(&Shape::Whole)),
+            ],
+            "{\"above\": …}, {\"quantile\": …} or a list of painted runs [row, first, last]",
+        )),
+    ),
+    (
+        "dff",
+        false,
+        Shape::Maybe(&Shape::Object(&[
+            ("percentile", false, Shape::Number),
+            ("window_s", false, Shape::Number),
+        ])),
+    ),
+]);
 const PAIRS: Shape = Shape::Either(
     &[
         Shape::Word(&["neighbours"]),
@@ -188,6 +214,7 @@ const DROP_WINDOWS: Shape = Shape::Object(&[
 const RECIPE: Shape = Shape::Object(&[
     ("teasel_recipe", true, Shape::Whole),
     ("recording", false, RECORDING),
+    ("movie", false, MOVIE),
     ("channels", false, CHANNELS),
     ("filter", false, FILTER),
     ("drop_windows", false, DROP_WINDOWS),
