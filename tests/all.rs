@@ -3,6 +3,9 @@
 mod contrast;
 mod describe;
 mod dimensions;
+mod kinds;
+mod large;
+mod places;
 mod prepare;
 mod quality;
 mod readers;

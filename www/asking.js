@@ -104,7 +104,7 @@ function field({ key, question, options, guess }, told) {
 export function sayParts(names, ways) {
   say("#problem", {
     title: `${names.length} recordings were given at once`,
-    text: ["If they are the files of one recording, they are joined in this order; where their headers do not say that they touch, there is a gap."],
+    text: ["If they are recordings of their own, each is asked the same question, one after the other, and one table tells of all.", "If they are the files of one recording, they are joined in this order; where their headers do not say that they touch, there is a gap."],
     ways,
   });
   find("#problem .acts").before(make("ol", { class: "parts" }, ...names.map((name) => make("li", {}, name))));

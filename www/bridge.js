@@ -187,6 +187,20 @@ export class Bridge {
     return this.#ask("traces", fromS, seconds, channels);
   }
 
+  /** The lines that can be drawn now. @returns {Promise<import("./types").Tracks>} */
+  tracks() {
+    return this.#ask("tracks");
+  }
+
+  /**
+   * For each of some lines the smallest and the largest value of `count` bins of `size` samples from bin `first` on.
+   * @param {import("./types").LineKind} kind @param {number[]} lines indexes @param {number} size a power of four @param {number} first @param {number} count
+   * @returns {Promise<Float32Array>}
+   */
+  bins(kind, lines, size, first, count) {
+    return this.#ask("bins", kind, lines, size, first, count);
+  }
+
   /**
    * The bytes of one of the files to take away.
    * @param {string} kind
@@ -195,6 +209,46 @@ export class Bridge {
    */
   takeaway(kind, extras = []) {
     return this.#ask("takeaway", kind, extras);
+  }
+
+  /** A few seconds of the channels where a component is largest, its series beneath. @param {string} component @param {number} fromS @param {number} seconds @returns {Promise<Figure | null>} */
+  excerpt(component, fromS, seconds) {
+    return this.#ask("excerpt", component, fromS, seconds);
+  }
+
+  /** What cleaning would do. @param {string[]} components @param {"remove" | "keep-only"} how @param {number} fromS @param {number} seconds @returns {Promise<import("./types").CleanLook>} */
+  cleanLook(components, how, fromS, seconds) {
+    return this.#ask("cleanLook", components, how, fromS, seconds);
+  }
+
+  /** A cleaned recording. @param {string[]} components @param {"remove" | "keep-only"} how @param {"edf" | "npy" | "csv"} form @returns {Promise<Uint8Array<ArrayBuffer>>} */
+  cleaned(components, how, form) {
+    return this.#ask("cleaned", components, how, form);
+  }
+
+  /** Saved filters on the open recording, around the recipe's windows. @param {string} weights @param {Recipe} recipe @returns {Promise<import("./types").CarriedTold>} */
+  carry(weights, recipe) {
+    return this.#ask("carry", weights, recipe);
+  }
+
+  /** What the recording gives to the table of a set: the text of row.json. @param {string} folder @returns {Promise<string>} */
+  row(folder) {
+    return this.#ask("row", folder);
+  }
+
+  /** A bridge to a worker of its own, for work that must not touch what is open here. @returns {Promise<Bridge>} */
+  async another() {
+    const other = new Bridge(this.#compiled);
+    await other.started;
+    return other;
+  }
+
+  /** Ends the worker; what waits for it is told that it was stopped. */
+  end() {
+    this.#worker?.terminate();
+    this.#worker = null;
+    for (const { failed } of this.#waiting.values()) failed(problem("stopped", "the work was stopped", "Begin it again."));
+    this.#waiting.clear();
   }
 
   /** Bytes that the worker's module has taken; they are never given back. @returns {Promise<number>} */
@@ -237,6 +291,18 @@ export class Bridge {
   naturalOrder(names) {
     return [...module.naturalOrder(names)];
   }
+  /**
+   * What a table of events would give; throws a Problem where it cannot be read.
+   * @param {string} name @param {Uint8Array} bytes @param {import("./types").EventColumns | null} columns
+   * @param {number} rateHz @param {number} spanS @returns {import("./types").EventsPreview}
+   */
+  eventsPreview(name, bytes, columns, rateHz, spanS) {
+    return module.eventsPreview(name, bytes, columns, rateHz, spanS);
+  }
+  /** Whether a table is about the recording rather than one itself. @param {string} name @param {Uint8Array} bytes @param {string[]} channels @returns {boolean} */
+  isSideTable(name, bytes, channels) {
+    return module.isSideTable(name, bytes, channels);
+  }
   /** @param {string} text @returns {Recipe} */
   parseRecipe(text) {
     return module.parseRecipe(text);
@@ -256,6 +322,19 @@ export class Bridge {
   /** Fills a link's events in from a recording. @param {string} text @param {Record<string, number>} events label → count @returns {{ recipe: Recipe, notes: string[] }} */
   linkComplete(text, events) {
     return module.linkComplete(text, events);
+  }
+
+  /** A folder's name for each recording of a set. @param {string[]} files @returns {string[]} */
+  folderNames(files) {
+    return module.folderNames(files);
+  }
+  /** @param {string} recording @param {string} folder @param {Problem} why @returns {string} the text of row.json */
+  failedRow(recording, folder, why) {
+    return module.failedRow(recording, folder, why);
+  }
+  /** The table, the group and its figures, from the texts of row.json. @param {string[]} rows @returns {import("./types").Many} */
+  many(rows) {
+    return module.many(rows);
   }
 
   /** Starts a worker and waits until it listens. @returns {Promise<void>} */
@@ -292,6 +371,7 @@ export class Bridge {
   /** @param {any} data @param {(problem: Problem) => void} failed */
   #heard(data, failed) {
     if (data.event === "died") return failed(this.#died(data));
+    if (data.event === "progress" && data.stage === "reading" && data.done === data.of) performance.mark("teasel:read");
     if (data.event) return this.#say(data.event, data.problem ?? data);
     const waiting = this.#waiting.get(data.id);
     this.#waiting.delete(data.id);

@@ -1,6 +1,7 @@
 /** The page: starts the bridge, joins the parts, and opens recordings through one door. */
 import { start } from "./bridge.js";
 import { find, make } from "./kit.js";
+import { mountAbout } from "./about.js";
 import { mountChannels } from "./channels.js";
 import { mountChoosing } from "./choosing.js";
 import { mountComponents } from "./components.js";
@@ -9,10 +10,17 @@ import { mountEvidence } from "./evidence.js";
 import { figuresOf, mountFigures } from "./figure.js";
 import { mountFinding } from "./finding.js";
 import { mountFirst } from "./first.js";
+import { mountHistory } from "./history.js";
 import { mountLedger } from "./ledger.js";
 import { duration, size } from "./numbers.js";
+import { mountCarried } from "./carried.js";
+import { mountCleaning } from "./cleaning.js";
+import { mountGuide } from "./guide.js";
+import { mountMany } from "./many.js";
 import { unsay } from "./notices.js";
 import { door } from "./open.js";
+import { mountMapping } from "./mapping.js";
+import { mountPositions } from "./positions.js";
 import { mountProgress } from "./progress.js";
 import { mountReadings } from "./readings.js";
 import { mountRecipeLink } from "./recipe-link.js";
@@ -31,6 +39,7 @@ mountLedger();
 mountThread();
 mountReadings();
 mountFigures();
+mountGuide();
 
 /** The first screen answers at once; what it asks for waits for the bridge. */
 const ready = /** @type {Promise<Bridge>} */ (start());
@@ -52,9 +61,14 @@ function join(bridge) {
   const work = mountWork(bridge, { failed: (thrown) => doors.failed(thrown), died: () => doors.died() });
   /** @type {import("./types").App} */
   const app = { bridge, change: work.change };
-  const doors = door(app, work.send);
+  const many = mountMany(app, { first: (files) => void doors.files(files) });
+  const carried = mountCarried(app);
+  const doors = door(app, work.send, { set: (files) => many.offer(files).catch(doors.failed), weights: carried.take });
   mountRecording(app);
+  mountAbout();
   mountChannels(app);
+  mountMapping(app, doors);
+  mountPositions(app, doors);
   mountWindows(app);
   mountRejection(app);
   mountCompression(app);
@@ -62,6 +76,7 @@ function join(bridge) {
   mountEvidence(app, () => doors.goOn());
   mountFinding(app);
   mountTakeaway(app, doors.failed);
+  mountCleaning(app);
   mountChoosing(app, () => {
     unsay("#hint");
     unsay("#problem");
@@ -71,6 +86,7 @@ function join(bridge) {
   });
   mountProgress(() => void doors.stop());
   mountRecipeLink(bridge);
+  mountHistory(app);
   head();
   sections(app);
   return doors;

@@ -5,8 +5,8 @@ import { download, find } from "./kit.js";
 import { isSmall } from "./choosing.js";
 import { asProblem, unsay } from "./notices.js";
 import { count } from "./numbers.js";
-import { clearLink, recipeAtStart } from "./recipe-link.js";
-import { sayEnded, sayFewEvents, sayNoEvents, sayOpenEnds, sayProblem, sayStopped, sayWaiting, sayWeights } from "./sayings.js";
+import { clearLink, linkName, recipeAtStart } from "./recipe-link.js";
+import { sayEnded, sayFewEvents, sayNoEvents, sayOpenEnds, sayProblem, sayStopped, sayWaiting } from "./sayings.js";
 import { now, put } from "./state.js";
 
 /** @typedef {import("./types").App} App */
@@ -16,14 +16,21 @@ import { now, put } from "./state.js";
 /** @typedef {{ files: File[], salvage: boolean, given?: Given } | { demo: string }} Source */
 /** @typedef {{ recipe: Recipe, link: string | null }} Waiting */
 
+/** What a file of saved filters begins with, and the largest that is looked into. */
+const [WEIGHTS, WEIGHTS_BYTES] = [/"teasel_weights"\s*:/, 64 * 1024 * 1024];
 /** Files that lie beside a recording and are none. */
 const BESIDE = /\.tsv$|_(events|channels|electrodes|coordsystem|eeg|ieeg|meg|nirs)\.(json|csv)$/i;
+/** Tables that may lie beside a recording or be one: their content decides. */
+const TABLE = /\.(csv|txt)$/i;
+/** No table beside a recording is larger. */
+const TABLE_BYTES = 64 * 1024 * 1024;
 
 /**
  * @param {App} app
  * @param {() => void} compute
+ * @param {{ set: (files: File[]) => Promise<void>, weights: (name: string, text: string) => void }} elsewhere what takes several recordings at once, and saved filters
  */
-export function door({ bridge, change: edit }, compute) {
+export function door({ bridge, change: edit }, compute, elsewhere) {
   const change = (/** @type {Recipe} */ recipe) => {
     if (!now().recipe) put({ recipe });
     edit((old) => void Object.assign(old, structuredClone(recipe)));
@@ -102,7 +109,7 @@ export function door({ bridge, change: edit }, compute) {
     if (link?.notes.length) sayOpenEnds(link.notes);
     if (!recipe) {
       put({ phase: "choosing", progress: null });
-      return sayNoEvents(pick);
+      return summary.recording.about.untold ? undefined : sayNoEvents(pick);
     }
     const atOnce = !guessed && (waiting || (proposal && isSmall(summary)));
     put({ recipe, why: waiting || guessed ? "" : (proposal?.why ?? ""), progress: null, phase: atOnce ? "working" : "choosing" });
@@ -127,7 +134,12 @@ export function door({ bridge, change: edit }, compute) {
     const names = recordings.map(({ name }) => name);
     const order = bridge.naturalOrder(names).map((at) => names[at] ?? "");
     unsay("#hint");
-    sayParts(order, [{ label: "Open them as one recording", main: true, act: join }, { label: "Choose another recording…", act: pick }, ...(now().summary ? [{ label: `Stay with ${now().source?.name ?? "this one"}`, act: stay }] : [])]);
+    const each = () => {
+      unsay("#problem");
+      put({ phase: now().summary ? "ready" : "empty", progress: null });
+      void elsewhere.set(all);
+    };
+    sayParts(order, [{ label: "Ask one question of each", main: true, act: each }, { label: "Open them as one recording", act: join }, { label: "Choose another recording…", act: pick }, ...(now().summary ? [{ label: `Stay with ${now().source?.name ?? "this one"}`, act: stay }] : [])]);
     put({ phase: "error", progress: null });
   }
 
@@ -212,9 +224,33 @@ export function door({ bridge, change: edit }, compute) {
     failed,
     /** @param {File[]} files */
     async files(files) {
-      const own = files.length === 1 && files[0]?.name.endsWith(".json") ? files[0] : null;
-      await (own ? this.recipe(own) : gather(files));
+      files = await withoutWeights(files, elsewhere.weights);
+      if (files.length === 0) return;
+      const own = files.length === 1 && files[0]?.name.endsWith(".json") && !BESIDE.test(files[0].name) ? files[0] : null;
+      if (own) return this.recipe(own);
+      const [alone] = files;
+      if (files.length === 1 && alone && (await isBeside(alone).catch(() => false))) return this.beside(alone);
+      await gather(files);
     },
+    /** A table that belongs to the open recording, in place of one of the same name. @param {File} file */
+    async beside(file) {
+      if (!good || !("files" in good)) return;
+      await open({ ...good, files: [...good.files.filter(({ name }) => name !== file.name), file] });
+    },
+    /** The open recording without one of its side files. @param {string} name */
+    async without(name) {
+      if (good && "files" in good) await open({ ...good, files: good.files.filter((file) => file.name !== name) });
+    },
+    /** Opens the recording again with what was told of it. @param {Given} told */
+    async tell(told) {
+      if (good && "files" in good) await open({ ...good, given: { ...given(), ...told } });
+    },
+    /** What was told of the open recording. */
+    told: () => given(),
+    /** A file of the open recording, by name; of a demo there is none. @param {string} name */
+    file: (name) => (good && "files" in good ? (good.files.find((file) => file.name === name) ?? null) : null),
+    /** Whether the open recording is a file, which others can join. */
+    isFile: () => good !== null && "files" in good,
     /** @param {string} which */
     demo: (which) => open({ demo: which }),
     /** @param {File} file */
@@ -222,7 +258,7 @@ export function door({ bridge, change: edit }, compute) {
       unsay("#problem");
       try {
         const text = await file.text();
-        if (/"teasel_weights"\s*:/.test(text)) return sayWeights(file.name);
+        if (WEIGHTS.test(text)) return elsewhere.weights(file.name, text);
         const recipe = bridge.parseRecipe(text);
         if (!now().summary) return wait({ recipe, link: null }, `${file.name} is open`);
         unsay("#hint");
@@ -239,7 +275,7 @@ export function door({ bridge, change: edit }, compute) {
     begin() {
       try {
         const found = recipeAtStart(bridge);
-        if (found) wait(found, found.link ? "The link brought choices along" : "Your choices are kept");
+        if (found) wait(found, linkName() ? `The link brought along: ${linkName()}` : found.link ? "The link brought choices along" : "Your choices are kept");
       } catch (thrown) {
         failed(thrown);
       }
@@ -282,6 +318,13 @@ export function door({ bridge, change: edit }, compute) {
     return { salvage, given: { ...waiting?.recipe.recording, ...told } };
   }
 
+  /** Whether a table that was dropped alone is about the open recording. @param {File} file */
+  async function isBeside(file) {
+    const channels = (now().summary?.channels ?? []).map(({ name }) => name);
+    if (!good || !("files" in good) || !channels.length || !TABLE.test(file.name) || file.size > TABLE_BYTES) return false;
+    return bridge.isSideTable(file.name, new Uint8Array(await file.arrayBuffer()), channels);
+  }
+
   /** Side files alone belong to the recording that is open. @param {File[]} files */
   function withRecording(files) {
     if (!good || !("files" in good) || !now().summary || !files.every(({ name }) => BESIDE.test(name))) return files;
@@ -293,12 +336,33 @@ export function door({ bridge, change: edit }, compute) {
   /** @param {Waiting} recipe @param {string} title */
   function wait(recipe, title) {
     waiting = recipe;
-    sayWaiting(title, () => {
+    sayWaiting(title, recipe.link && bridge.linkDecode(recipe.link).events ? [] : labels(recipe.recipe), () => {
       waiting = null;
       clearLink();
       unsay("#hint");
     });
   }
+}
+
+/** Labels of the events that a question names, whatever its kind. @param {Recipe} recipe @returns {string[]} */
+function labels({ contrast }) {
+  const found = new Set();
+  JSON.stringify(contrast, (key, value) => {
+    if (key === "event" && typeof value === "string" && value) found.add(value);
+    return value;
+  });
+  return [...found];
+}
+
+/** Saved filters that come along with a recording are taken elsewhere. @param {File[]} files @param {(name: string, text: string) => void} take */
+async function withoutWeights(files, take) {
+  const left = [];
+  for (const file of files) {
+    const text = /\.json$/i.test(file.name) && file.size < WEIGHTS_BYTES ? await file.text() : "";
+    if (WEIGHTS.test(text)) take(file.name, text);
+    else left.push(file);
+  }
+  return left;
 }
 
 /** Whether two events are equally the most frequent. @param {Record<string, number>} events */

@@ -1,5 +1,6 @@
 /** The whole of one component: map, spectrum, filter, single trials, course and average. */
 import { make } from "./kit.js";
+import { picks } from "./fields.js";
 import { figureSlot } from "./figure.js";
 import { factor } from "./numbers.js";
 import { follow, now } from "./state.js";
@@ -17,7 +18,14 @@ const PARTS = [
   ["course", "Power around the event", ""],
   ["average", "Average around the event", ""],
   ["trials", "Trials", "in order of time"],
+  ["trials-by-power", "Trials by power", "least power in the signal window first"],
+  ["trials-by-lag", "Trials by the next event", "soonest first; marks: the next event"],
+  ["time-frequency", "Power over time and frequency", "dB against the reference windows"],
+  ["consistency", "Phase consistency", "1: the same phase in every trial"],
+  ["powers", "Power in every window", "dB of the reference’s mean; bars: median and middle half"],
 ];
+/** Seconds of the channels that stand above a component's series. */
+const [BEFORE_S, SHOWN_S] = [1, 4];
 
 export const openedRow = {
   /** @param {App} app @param {string} id @param {number} columns */
@@ -25,8 +33,13 @@ export const openedRow = {
     const told = make("p", { class: "told" });
     const slots = PARTS.map(([kind, title, hint]) =>
       figureSlot(app, `${id}-${kind}`, { section: "components", title, hint, label: `${title} of ${id.replace("-", " component ")}` }));
-    const [map, spectrum, filter, course, average, trials] = slots.map(({ root }) => root);
-    const last = make("div", { class: "halves" }, average, trials);
+    const onset = Math.max(0, (now().sheet?.windows?.trials.find(({ dropped }) => !dropped)?.onset_s ?? BEFORE_S) - BEFORE_S);
+    slots.push(figureSlot(app, `${id}-excerpt`, { section: "components", title: "In the channels", hint: "the five where its pattern is largest, and below them the component itself", label: `Channels with the series of ${id.replace("-", " component ")} beneath`, load: () => app.bridge.excerpt(id.replace("-", " "), onset, SHOWN_S) }));
+    const [map, spectrum, filter, course, average, trials, byPower, byLag, picture, consistency, powers, excerpt] = slots.map(({ root }) => root);
+    const by = picks("Spectrum by", "spectrum", (value) => app.change((recipe) => void (recipe.spectrum = value === "multitaper" ? "multitaper" : "welch")));
+    by.show([{ value: "welch", label: "Welch" }, { value: "multitaper", label: "multitaper" }], now().recipe?.spectrum ?? "welch");
+    spectrum?.append(make("div", { class: "choice spectrum-by" }, "Spectrum by ", by.root));
+    const last = make("div", { class: "halves" }, average, trials, byPower, byLag, picture, consistency, powers, excerpt);
     const row = make("tr", { class: "whole" }, make("td", { colspan: columns }, make("div", { class: "opened-one" }, told, map, spectrum, filter, course, last)));
     shown = { row, slots, told, id };
     tell();

@@ -12,7 +12,7 @@ const REST_MS = 300;
 /** @type {Record<string, string>} */
 const WORDS = {
   reading: "Reading the recording", making: "Making the recording", preparing: "Preparing the channels", windows: "Covariances of the windows",
-  fitting: "Looking for what differs", "held-out": "Testing on trials that were held out", permuting: "Permuting", curve: "Ratio against the dimensions kept",
+  fitting: "Looking for what differs", "held-out": "Testing on trials that were held out", permuting: "Permuting", curve: "Ratio against the dimensions kept", picturing: "Pictures over time and frequency",
 };
 
 let began = 0;

@@ -6,6 +6,33 @@ import { follow, now } from "./state.js";
 /** @typedef {import("./types").Recipe} Recipe */
 
 const KEY = "teasel-recipe";
+/** A link's recipe, and the name that whoever made it gave it. */
+const LINK = /^#recipe=([^&]+)(?:&name=([^&]*))?$/;
+/** Longer names are cut. */
+const NAME_LETTERS = 60;
+let name = nameIn(location.hash);
+
+/** @param {string} hash */
+function nameIn(hash) {
+  try {
+    return decodeURIComponent(LINK.exec(hash)?.[2] ?? "").slice(0, NAME_LETTERS);
+  } catch {
+    return "";
+  }
+}
+
+/** The name of these choices, for their link. */
+export const linkName = () => name;
+
+/** @param {string} text */
+export function nameLink(text) {
+  name = text.trim().slice(0, NAME_LETTERS);
+}
+
+/** What stands after the address in a link to a recipe. @param {Bridge} bridge @param {Recipe} recipe @param {boolean} withNames */
+export function linkTo(bridge, recipe, withNames) {
+  return `#recipe=${bridge.linkEncode(recipe, withNames)}${name ? `&name=${encodeURIComponent(name)}` : ""}`;
+}
 
 /**
  * The recipe that the page was opened with: from the link, or, where the link is this tab's own, from the tab's memory, which knows the names too.
@@ -13,7 +40,7 @@ const KEY = "teasel-recipe";
  * @returns {{ recipe: Recipe, link: string | null } | null} `link` is the text of a link that may have left names to the recording
  */
 export function recipeAtStart(bridge) {
-  const text = /^#recipe=(.+)$/.exec(location.hash)?.[1];
+  const text = LINK.exec(location.hash)?.[1];
   if (!text) return null;
   const kept = remembered(bridge);
   if (kept && (bridge.linkEncode(kept, false) === text || bridge.linkEncode(kept, true) === text)) return { recipe: kept, link: null };
@@ -36,7 +63,7 @@ export function mountRecipeLink(bridge) {
     const { recipe } = now();
     if (!recipe) return;
     const names = /** @type {HTMLInputElement | null} */ (document.querySelector("#with-names"))?.checked ?? false;
-    history.replaceState(null, "", `#recipe=${bridge.linkEncode(recipe, names)}`);
+    history.replaceState(null, "", linkTo(bridge, recipe, names));
     try {
       sessionStorage.setItem(KEY, JSON.stringify(recipe));
     } catch {
@@ -46,10 +73,12 @@ export function mountRecipeLink(bridge) {
   const later = afterRest(write, 250);
   follow((state, before) => state.recipe !== before.recipe && state.recipe && later());
   document.querySelector("#with-names")?.addEventListener("change", write);
+  document.querySelector("#link-name")?.addEventListener("change", write);
 }
 
 /** Leaves no recipe behind in the address. */
 export function clearLink() {
+  name = "";
   history.replaceState(null, "", location.pathname + location.search);
   try {
     sessionStorage.removeItem(KEY);

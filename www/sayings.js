@@ -13,7 +13,7 @@ export function sayNoEvents(pick) {
   const strong = (/** @type {string} */ text) => make("b", {}, text);
   say("#hint", {
     title: "This recording holds no events",
-    text: ["This version compares windows around events. Drop its table of events here; the recording stays open. It is a tab-separated file with the columns ", strong("onset"), ", ", strong("duration"), " and ", strong("trial_type"), ", named as the recording and ending in ", strong("events.tsv"), "."],
+    text: ["This version compares windows around events. Drop its table of events here; the recording stays open. It is a tab-separated file with the columns ", strong("onset"), ", ", strong("duration"), " and ", strong("trial_type"), ", named as the recording and ending in ", strong("events.tsv"), ". Of any other table with a row an event you are asked which column is which."],
     ways: [{ label: "Choose the table of events…", act: pick, main: true }],
   });
 }
@@ -31,16 +31,13 @@ export function sayOpenEnds(notes) {
   say("#hint", { title: "The link left some things open", text: [notes.join(" ")], ways: [CLOSE] });
 }
 
-/** @param {string} file */
-export function sayWeights(file) {
-  say("#hint", { title: `${file} holds weights`, text: ["This version applies weights in the terminal: ", make("code", {}, `teasel apply ${file} RECORDING --out DIR`), "."], ways: [CLOSE] });
-}
-
-/** Choices that wait for a recording. @param {string} title @param {() => void} aside */
-export function sayWaiting(title, aside) {
+/** Choices that wait for a recording. @param {string} title @param {string[]} labels events that they ask for @param {() => void} aside */
+export function sayWaiting(title, labels, aside) {
+  const each = labels.flatMap((label, k) => [k ? ", " : "", make("bdi", {}, make("b", {}, label))]);
+  const expects = labels.length ? [" They expect events labelled ", ...each, "."] : [" They leave the events to the recording: its most frequent ones are filled in, and it is said which."];
   say("#hint", {
     title,
-    text: ["They are used for the next recording that is opened. A link holds no data: drop the recording it belongs to, or take a demo."],
+    text: ["They are used for the next recording that is opened. A link holds no data: drop the recording it belongs to, or take a demo.", ...expects],
     ways: [{ label: "Set them aside", act: aside }],
   });
 }

@@ -4,6 +4,7 @@ import { figuresOf } from "./figure.js";
 import { hasResults } from "./leading.js";
 import { size } from "./numbers.js";
 import { pngBytes } from "./save-figure.js";
+import { linkName, linkTo, nameLink } from "./recipe-link.js";
 import { follow, now, put } from "./state.js";
 
 /** @typedef {import("./types").App} App */
@@ -12,6 +13,8 @@ import { follow, now, put } from "./state.js";
 const FILES = {
   "weights-json": ["weights.json", "application/json"], "weights-csv": ["weights.csv", "text/csv"], "results-json": ["results.json", "application/json"],
   recipe: ["recipe.json", "application/json"], report: ["report.html", "text/html"], everything: ["teasel.zip", "application/zip"],
+  "trials-csv": ["trials.csv", "text/csv"], "series-csv": ["series.csv", "text/csv"], "series-npy": ["series.npy", "application/octet-stream"], "series-edf": ["series.edf", "application/octet-stream"],
+  methods: ["methods.txt", "text/plain"], bibtex: ["references.bib", "text/plain"],
 };
 
 /** Parts of the table's rows; the same things come large. */
@@ -24,6 +27,12 @@ export function mountTakeaway(app, failed) {
   find("#copy-link").addEventListener("click", (event) => copy(event, find("#link").textContent ?? ""));
   find("#copy-methods").addEventListener("click", (event) => copy(event, find("#methods").textContent ?? ""));
   find("#with-names").addEventListener("change", () => showLink(app));
+  const named = /** @type {HTMLInputElement} */ (find("#link-name"));
+  named.value = linkName();
+  named.addEventListener("input", () => {
+    nameLink(named.value);
+    showLink(app);
+  });
   follow((state, before) => {
     if (state.recipe !== before.recipe) showLink(app);
     if (state.sheet !== before.sheet) for (const place of document.querySelectorAll("[data-size]")) place.textContent = "";
@@ -71,7 +80,7 @@ function showLink(app) {
   const { recipe } = now();
   if (!recipe) return;
   const names = /** @type {HTMLInputElement} */ (find("#with-names")).checked;
-  find("#link").textContent = `${location.href.replace(/#.*$/, "")}#recipe=${app.bridge.linkEncode(recipe, names)}`;
+  find("#link").textContent = `${location.href.replace(/#.*$/, "")}${linkTo(app.bridge, recipe, names)}`;
 }
 
 /** @param {Event} event @param {string} text */

@@ -115,7 +115,15 @@ const calls = {
   figure: (_id, /** @type {string} */ name) => open().figure(name),
   traces: (_id, /** @type {number} */ from, /** @type {number} */ seconds, /** @type {number[]} */ channels) =>
     open().traces(from, seconds, new Uint32Array(channels)),
+  tracks: () => open().tracks(),
+  bins: (_id, /** @type {string} */ kind, /** @type {number[]} */ lines, /** @type {number} */ size, /** @type {number} */ first, /** @type {number} */ count) =>
+    open().bins(kind, new Uint32Array(lines), size, first, count),
   takeaway: (_id, /** @type {string} */ kind, /** @type {unknown} */ extras) => open().takeaway(kind, extras),
+  excerpt: (_id, /** @type {string} */ component, /** @type {number} */ from, /** @type {number} */ seconds) => open().excerpt(component, from, seconds),
+  cleanLook: (_id, /** @type {string[]} */ components, /** @type {string} */ how, /** @type {number} */ from, /** @type {number} */ seconds) => open().cleanLook(components, how, from, seconds),
+  cleaned: (_id, /** @type {string[]} */ components, /** @type {string} */ how, /** @type {string} */ form) => open().cleaned(components, how, form),
+  carry: (_id, /** @type {string} */ weights, /** @type {unknown} */ recipe) => open().carry(weights, recipe),
+  row: (_id, /** @type {string} */ folder) => open().row(folder),
   memory: () => memory.buffer.byteLength,
 };
 
@@ -253,7 +261,7 @@ function failed(kind, error) {
 
 /** @param {number} id @param {unknown} value */
 function answer(id, value) {
-  postMessage({ id, value }, value instanceof Uint8Array ? [value.buffer] : []);
+  postMessage({ id, value }, ArrayBuffer.isView(value) ? [value.buffer] : []);
 }
 
 /** @param {number} id @param {unknown} error */

@@ -1,7 +1,9 @@
 //! Several files of one recording: their order, the time between them, and what is refused.
 use super::written::{event, recording};
 use teasel_core::error::{Kind, Result};
-use teasel_core::recording::{MemorySource, OpenOptions, Opening, Recording, Source, Stretch, edf};
+use teasel_core::recording::{
+    MEMORY_BYTES, MemorySource, OpenOptions, Opening, Recording, Source, Stretch, edf,
+};
 
 const CHANNELS: [(&str, &str); 2] = [("A", "µV"), ("B", "µV")];
 
@@ -20,7 +22,12 @@ fn join(files: &[(&str, Vec<u8>)]) -> Result<Recording> {
     let sources = files
         .iter()
         .map(|(name, bytes)| Box::new(MemorySource::new(*name, bytes.clone())) as Box<dyn Source>);
-    let mut opening = Opening::begin_joined(sources.collect(), vec![], OpenOptions::default())?;
+    let mut opening = Opening::begin_joined(
+        sources.collect(),
+        vec![],
+        OpenOptions::default(),
+        MEMORY_BYTES,
+    )?;
     while !opening.finished() {
         let (done, of) = opening.step()?;
         assert!(done <= of);

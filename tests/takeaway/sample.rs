@@ -67,9 +67,7 @@ fn component(k: usize, typical: f64, total: f64, interval: [f64; 2], p: f64) -> 
                 log_ratio: typical.ln() + 1.2 * (t as f64 * 1.7).sin(),
             })
             .collect(),
-        spectra: None,
-        course: None,
-        image: None,
+        ..Component::default()
     }
 }
 
@@ -111,6 +109,8 @@ fn card() -> RecordingCard {
         }],
         events: BTreeMap::from([("buoy".into(), 42), ("swell".into(), 20)]),
         event_onsets_s: BTreeMap::new(),
+        layout: teasel_core::recording::Layout::default(),
+        about: teasel_core::recording::About::default(),
         side_files: vec![],
         warnings: vec![],
         envelope: vec![10.0, 11.0, 52.0, 9.0, 10.0, 12.0],
@@ -202,6 +202,7 @@ pub fn sheet() -> Sheet {
             comparator(ComparatorKind::BestPc, "3", Some(0.06), 1.74),
             comparator(ComparatorKind::BestChannel, "C3", None, 1.59),
         ],
+        held_back: None,
         permutation: Some(Permutation {
             measure: Measure::Typical,
             asked: 1000,

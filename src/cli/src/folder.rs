@@ -1,10 +1,9 @@
 //! Files written beside their place and renamed once they are whole.
 use crate::source::{file_name, storage};
-use std::collections::BTreeSet;
-use std::ffi::OsString;
 use std::fs;
 use std::path::{Path, PathBuf};
 use teasel_core::error::{Problem, Result};
+use teasel_core::takeaway::folder_names;
 
 /// Writes every file (its path within `folder`, its bytes): first all of them into a folder beside, then each to its place
 /// by one rename, so that a file is old, new or not there, never half of either. Figures of an earlier run that this one does
@@ -59,39 +58,11 @@ fn cannot(path: &Path, cause: &std::io::Error) -> Problem {
         .at(path.display().to_string())
 }
 
-/// A folder for each recording: its file name without extension; of several with one name the later ones are numbered.
+/// A folder for each recording, by the rule of [`folder_names`].
 pub fn names(recordings: &[PathBuf]) -> Vec<PathBuf> {
-    let mut taken: BTreeSet<OsString> = BTreeSet::new();
-    recordings
-        .iter()
-        .map(|path| {
-            let stem = path.file_stem().unwrap_or(path.as_os_str()).to_os_string();
-            let mut name = stem.clone();
-            let mut count = 2;
-            while !taken.insert(name.to_ascii_lowercase()) {
-                name = stem.clone();
-                name.push(format!("-{count}"));
-                count += 1;
-            }
-            PathBuf::from(name)
-        })
+    let files: Vec<String> = recordings.iter().map(|path| file_name(path)).collect();
+    folder_names(&files)
+        .into_iter()
+        .map(PathBuf::from)
         .collect()
-}
-
-#[cfg(test)]
-mod tests {
-    use super::*;
-
-    #[test]
-    fn folders_are_named_after_files_and_never_shared() {
-        let paths: Vec<PathBuf> = ["a/night.edf", "b/night.bdf", "Night.edf", "c.d.edf"]
-            .iter()
-            .map(PathBuf::from)
-            .collect();
-        let names: Vec<String> = names(&paths)
-            .iter()
-            .map(|p| p.display().to_string())
-            .collect();
-        assert_eq!(names, ["night", "night-2", "Night-3", "c.d"]);
-    }
 }

@@ -1,12 +1,13 @@
 //! Teasel from a terminal: the page's pipeline for many recordings, and for checking.
 //!
 //! * `source`: recordings and side files on disk.
-//! * `run`, `gather`, `apply`, `inspect`: the commands.
+//! * `run`, `gather`, `apply`, `clean`, `inspect`: the commands.
 //! * `folder`: files written beside their place and renamed, so that none is ever seen half written.
 //! * `say`: lines and progress on standard error.
 //!
 //! Exit codes: 0 done, 1 bad input (one line each on standard error; the other recordings of the call still run), 2 usage.
 mod apply;
+mod clean;
 mod figures;
 mod folder;
 mod gather;
@@ -27,6 +28,7 @@ Example:
   teasel run recipe.json night-watch.edf --out results
   teasel run recipe.json monday.edf tuesday.edf wednesday.edf --out results
   teasel gather results
+  teasel clean recipe.json night-watch.edf --remove 'stronger 1' --out cleaned
   teasel apply results/night-watch/weights.json another-night.edf --out carried
 
 A recipe that suffices:
@@ -77,6 +79,30 @@ enum Command {
         #[arg(long, value_name = "DIR")]
         out: PathBuf,
     },
+    /// Take components out of each recording (or keep nothing but them): X − A WᵀX in the prepared channels.
+    Clean {
+        /// The recipe that finds the components (JSON).
+        recipe: PathBuf,
+        #[command(flatten)]
+        given: Given,
+        /// A component to take out: 'stronger 1', 'weaker 2' (repeatable).
+        #[arg(
+            long,
+            value_name = "COMPONENT",
+            required_unless_present = "only",
+            conflicts_with = "only"
+        )]
+        remove: Vec<String>,
+        /// A component to keep while all else is taken out (repeatable).
+        #[arg(long, value_name = "COMPONENT")]
+        only: Vec<String>,
+        /// What is written: EDF+ with events, or a NumPy array of channels × samples in f32.
+        #[arg(long = "as", value_enum, default_value = "edf")]
+        form: clean::Written,
+        /// Folder for the results; each recording gets a folder of its name in it.
+        #[arg(long, value_name = "DIR")]
+        out: PathBuf,
+    },
     /// Say what a recording holds, and propose a recipe for it.
     Inspect {
         #[command(flatten)]
@@ -102,6 +128,9 @@ struct Given {
     /// The recordings are files of one: join them in the natural order of their names.
     #[arg(long)]
     joined: bool,
+    /// Memory that an open recording may take, in MiB; of a larger one only what the windows need is kept, and no series is written.
+    #[arg(long, value_name = "MIB", value_parser = clap::value_parser!(u64).range(1..=1_048_576))]
+    memory: Option<u64>,
     #[command(flatten)]
     told: Told,
 }
@@ -143,6 +172,7 @@ impl Told {
             unit: self.unit.clone(),
             axes: self.axes,
             variable: self.array.clone(),
+            events: None,
         }
     }
 }
@@ -166,6 +196,14 @@ fn main() -> ExitCode {
             given,
             out,
         } => apply::apply(&weights, &given, &out),
+        Command::Clean {
+            recipe,
+            given,
+            remove,
+            only,
+            form,
+            out,
+        } => clean::clean(&recipe, &given, &remove, &only, form, &out),
         Command::Gather { folder } => gather::gather(&folder),
         Command::Inspect { given, json } => inspect::inspect(&given, json),
     };

@@ -2,10 +2,10 @@
 use crate::say::{self, Meter};
 use crate::{Given, figures, folder, gather, source};
 use std::path::Path;
-use teasel_core::analysis::{Analysis, Series};
+use teasel_core::analysis::Analysis;
 use teasel_core::error::Result;
 use teasel_core::recipe::Recipe;
-use teasel_core::sheet::Sheet;
+use teasel_core::recording::Opened;
 use teasel_core::takeaway::{self as take, Row};
 
 /// Runs all recordings; false where the recipe or a recording was bad.
@@ -54,14 +54,23 @@ pub fn run(recipe: &Path, given: &Given, out: &Path, seed: Option<u64>) -> bool 
 
 fn one(recipe: &Recipe, path: &Path, given: &Given, folder: &Path, shown: &str) -> Result<Row> {
     let mut meter = Meter::new(&source::file_name(path));
-    let recording = source::recording(path, given, &recipe.recording, &mut meter)?;
-    let mut analysis = Analysis::new(recording, recipe.clone())?;
+    let mut analysis = match source::open(path, given, &recipe.recording, &mut meter)? {
+        Opened::Whole(recording) => Analysis::new(recording, recipe.clone())?,
+        Opened::Large(large) => Analysis::of_large(*large, recipe.clone())?,
+    };
+    let large = analysis.large().is_some();
     analysis.run(|progress| meter.analysis(progress))?;
     let row = Row::of(analysis.sheet(), shown).json()?;
-    let mut files = files(analysis.sheet(), analysis.series())?;
+    let mut files = files(&analysis)?;
     files.push(("row.json".into(), row.clone().into()));
     folder::write(folder, &files)?;
     drop(meter);
+    if large {
+        say::line(&format!(
+            "{}: note: no series was written, for the recording is larger than the memory for it; give more with --memory",
+            source::file_name(path)
+        ));
+    }
     for warning in &analysis.sheet().warnings {
         say::note(&format!("{}: note: {warning}", source::file_name(path)));
     }
@@ -77,26 +86,9 @@ fn write_failed(row: &Row, folder: &Path) -> Result<Row> {
 }
 
 /// Every file of one recording's folder.
-fn files(sheet: &Sheet, series: Option<Series>) -> Result<Vec<(String, Vec<u8>)>> {
-    let drawings = figures::drawings(sheet);
-    let mut files: Vec<(String, Vec<u8>)> = vec![
-        ("results.json".into(), take::results_json(sheet)?.into()),
-        (
-            "report.html".into(),
-            take::report_html(sheet, &drawings).into(),
-        ),
-    ];
-    if !(sheet.stronger.is_empty() && sheet.weaker.is_empty()) {
-        files.push(("weights.json".into(), take::weights_json(sheet)?.into()));
-        files.push(("weights.csv".into(), take::weights_csv(sheet)?.into()));
-        for (name, bytes) in take::weights_npy(sheet)? {
-            files.push((name.into(), bytes));
-        }
-    }
-    if let Some(series) = series {
-        files.push(("series.csv".into(), take::series_csv(&series)?.into()));
-        files.push(("series.npy".into(), take::series_npy(&series)?));
-    }
+fn files(analysis: &Analysis) -> Result<Vec<(String, Vec<u8>)>> {
+    let drawings = figures::drawings(analysis.sheet());
+    let mut files = take::files(analysis, &drawings, true)?;
     for (name, _, svg) in drawings {
         if teasel_figures::stands_alone(&name) {
             files.push((

@@ -53,6 +53,7 @@ impl Meter {
             Stage::HeldOut => "scoring on windows held out",
             Stage::Permuting => "permuting",
             Stage::Curve => "ratio against C",
+            Stage::Picturing => "pictures over time and frequency",
             Stage::Done => "done",
         };
         self.show(what, progress.done, progress.of);

@@ -155,7 +155,7 @@ fn read_the_group(folder: &Path) {
     let rows = table["recordings"].as_array().unwrap();
     let names: Vec<&str> = rows.iter().map(|r| r["folder"].as_str().unwrap()).collect();
     assert_eq!(names, NIGHTS);
-    assert!(rows[5]["problem"].as_str().unwrap().contains("--salvage"));
+    assert!(rows[5]["problem"].as_str().unwrap().contains("cut short"));
     let group = &table["group"]["stronger"];
     assert_eq!(group["recordings"], 5);
     assert_eq!(group["channels"].as_array().unwrap().len(), 31);

@@ -3,7 +3,7 @@
 //! Figures, readings, the page, the report and `results.json` are all made from a [`Sheet`], and from nothing else.
 //! Parts that are not computed yet are `None` or empty.
 use crate::recipe::{Measure, Recipe};
-use crate::recording::{OtherChannel, Stretch};
+use crate::recording::{About, Layout, OtherChannel, Stretch};
 use serde::{Deserialize, Serialize};
 use std::collections::BTreeMap;
 
@@ -51,6 +51,9 @@ pub struct Sheet {
     pub permutation: Option<Permutation>,
     /// Mean held-out log ratio of the leading component in each fold, as a factor, with the trials in it.
     pub folds: Vec<FoldCard>,
+    /// The share that was locked away, once it is opened.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub held_back: Option<HeldBack>,
     /// Everything a careful reader should know, each a sentence; the first is the most important.
     pub warnings: Vec<String>,
 }
@@ -85,6 +88,12 @@ pub struct RecordingCard {
     pub events: BTreeMap<String, usize>,
     /// Onsets of each event label in seconds, in order.
     pub event_onsets_s: BTreeMap<String, Vec<f64>>,
+    /// How the channels lie to each other, by the choices in force.
+    #[serde(default)]
+    pub layout: Layout,
+    /// What its header and its side files tell beside that.
+    #[serde(default)]
+    pub about: About,
     /// Names of side files used.
     pub side_files: Vec<String>,
     /// Warnings of the reader.
@@ -448,6 +457,45 @@ pub struct Component {
     pub course: Option<Course>,
     /// Single trials around the event.
     pub image: Option<TrialImage>,
+    /// 95 % bootstrap interval over trials of each entry of `pattern`, the filter held fixed; empty where it is not known.
+    #[serde(default)]
+    pub pattern_interval: Vec<[f64; 2]>,
+    /// Power in every used window, in order of time.
+    #[serde(default)]
+    pub powers: Vec<WindowPower>,
+    /// Power over time and frequency around the event.
+    #[serde(default)]
+    pub time_frequency: Option<TimeFrequency>,
+}
+
+/// Variance of a component in one window; its mean over reference windows (weighed by their samples) is 1.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+pub struct WindowPower {
+    /// A signal window, or a reference window.
+    pub signal: bool,
+    /// Index of its pair, or of itself among its side's windows.
+    pub trial: usize,
+    /// Onset of its event.
+    pub onset_s: f64,
+    /// The variance.
+    pub power: f64,
+}
+
+/// Power and phase consistency of a component by complex Morlet wavelets; cells that fewer than half of the trials reach are `None`.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct TimeFrequency {
+    /// Frequencies, by equal factors.
+    pub hz: Vec<f64>,
+    /// Times relative to the event.
+    pub t_s: Vec<f64>,
+    /// `frequencies × times`: mean power in dB of the mean power at that frequency in the reference windows.
+    pub db: Vec<Vec<Option<f32>>>,
+    /// `frequencies × times`: |mean unit phasor| over trials, 0…1.
+    pub consistency: Vec<Vec<Option<f32>>>,
+    /// Cycles of the wavelets: σ = cycles/(2πf).
+    pub cycles: f64,
+    /// Trials.
+    pub trials: usize,
 }
 
 /// Ratio in a typical trial: exp of the mean log ratio.
@@ -541,6 +589,15 @@ pub struct TrialImage {
     pub t_s: Vec<f64>,
     /// `trials × times`.
     pub db: Vec<Vec<f32>>,
+    /// Onset of each trial's event on the file's clock.
+    #[serde(default)]
+    pub onsets_s: Vec<f64>,
+    /// Seconds from each trial's event to the next event of another label, where one follows within the span.
+    #[serde(default)]
+    pub lags_s: Vec<Option<f64>>,
+    /// The label that most of `lags_s` are about; empty where there are none.
+    #[serde(default)]
+    pub lag_to: String,
 }
 
 /// What one would have used otherwise, on the same held-out windows.
@@ -570,6 +627,10 @@ pub enum ComparatorKind {
     BestPc,
     /// The best single channel, chosen on training trials.
     BestChannel,
+    /// The mean of all channels.
+    MeanOfChannels,
+    /// A direction drawn at random in the kept space.
+    RandomDirection,
 }
 
 /// The permutation test.
@@ -604,6 +665,28 @@ pub struct FoldCard {
     pub trials: usize,
     /// Held-out typical ratio of the leading component in it.
     pub ratio: f64,
+}
+
+/// The finished components on the share that was locked away; no windows where it holds too few.
+#[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
+pub struct HeldBack {
+    /// Signal windows in it.
+    pub signal: usize,
+    /// Reference windows in it.
+    pub reference: usize,
+    /// Ratios of the stronger components.
+    pub stronger: Vec<HeldBackRatio>,
+    /// Ratios of the weaker components.
+    pub weaker: Vec<HeldBackRatio>,
+}
+
+/// Ratios of one component on the share that was locked away.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+pub struct HeldBackRatio {
+    /// In a typical trial, where the kind has one.
+    pub typical: Option<f64>,
+    /// Over all power.
+    pub total: f64,
 }
 
 impl Sheet {

@@ -9,11 +9,13 @@ use crate::filters::Filters;
 use crate::keep::Keep;
 use crate::map::Map;
 use crate::overview::Overview;
+use crate::powers::Powers;
 use crate::principal::Principal;
 use crate::ratio::Row;
 use crate::scores::Scores;
 use crate::spectrum::Spectrum;
-use crate::trials::Trials;
+use crate::time_frequency::{TimeFrequency, What};
+use crate::trials::{Order, Trials};
 use crate::weights::{End, Weights};
 use crate::{Figure, text};
 use teasel_core::sheet::{Component, Sheet};
@@ -35,13 +37,24 @@ const WHOLE: [(&str, &str); 12] = [
 ];
 
 /// Figures of each component: name and caption.
-const EACH: [(&str, &str); 9] = [
+const EACH: [(&str, &str); 14] = [
     ("map", "pattern"),
     ("filter", "filter, the largest weights"),
     ("spectrum", "spectrum in signal and reference windows"),
     ("course", "power around the event"),
     ("average", "average around the event"),
     ("trials", "single trials in order of time"),
+    (
+        "trials-by-power",
+        "single trials in order of their power in the signal window",
+    ),
+    (
+        "trials-by-lag",
+        "single trials in order of the time to the next event",
+    ),
+    ("time-frequency", "power over time and frequency"),
+    ("consistency", "phase consistency over trials"),
+    ("powers", "power in every window"),
     ("ratio", "held-out ratio"),
     ("map-small", "pattern, small"),
     ("spectrum-small", "spectrum, small"),
@@ -123,7 +136,16 @@ fn of_component(sheet: &Sheet, name: &str) -> Option<Figure> {
         "spectrum-small" => Spectrum::of(sheet, component, true).map(Figure::Spectrum),
         "course" => Course::of(sheet, Some((component, end)), Of::Power).map(Figure::Course),
         "average" => Course::of(sheet, Some((component, end)), Of::Average).map(Figure::Course),
-        "trials" => Trials::of(sheet, component).map(Figure::Trials),
+        "trials" => Trials::of(sheet, component, Order::Time).map(Figure::Trials),
+        "trials-by-power" => Trials::of(sheet, component, Order::Power).map(Figure::Trials),
+        "trials-by-lag" => Trials::of(sheet, component, Order::Lag).map(Figure::Trials),
+        "time-frequency" => {
+            TimeFrequency::of(sheet, component, What::Power).map(Figure::TimeFrequency)
+        }
+        "consistency" => {
+            TimeFrequency::of(sheet, component, What::Consistency).map(Figure::TimeFrequency)
+        }
+        "powers" => Powers::of(component).map(Figure::Powers),
         "ratio" => Some(Figure::Ratio(Row::of(sheet, component, end))),
         _ => None,
     }

@@ -4,7 +4,7 @@
 //! ([`traces`]); [`draw`] puts it on a drawing area, [`svg`] writes it as a file, [`table`] gives the numbers behind it.
 //!
 //! `look` scheme and scale · `inks` colours · `fine` coordinates between pixels · `pen` lines and words · `axis`, `frame` ticks,
-//! grids, plot boxes · `text` widths, shortening, numbers · `places` room for names · `topography` filled bands on the head ·
+//! grids, plot boxes · `text` widths, shortening, numbers · `places` room for names · `ground` what channels lie on · `topography` filled bands ·
 //! `catalogue` which figures a sheet gives · `svg`, `table` files · one room for each family of figures.
 //!
 //! # Units
@@ -21,6 +21,7 @@ mod estimate;
 mod filters;
 mod fine;
 mod frame;
+mod ground;
 mod group;
 mod head;
 mod inks;
@@ -32,6 +33,7 @@ mod nan;
 mod overview;
 mod pen;
 mod places;
+mod powers;
 mod principal;
 mod ratio;
 mod recorder;
@@ -41,6 +43,7 @@ mod spectrum;
 mod svg;
 mod table;
 mod text;
+mod time_frequency;
 mod topography;
 mod traces;
 mod trials;
@@ -54,6 +57,7 @@ mod tests;
 pub use catalogue::{from_sheet, names};
 pub use fine::Fine;
 pub use frame::PlotBox;
+pub use ground::Ground;
 pub use group::group_figures;
 pub use look::{FACE, Look, Scheme};
 pub use pen::Drawn;
@@ -123,6 +127,10 @@ figures! {
     Spectrum(spectrum::Spectrum),
     /// Single trials around the event.
     Trials(trials::Trials),
+    /// Power or phase consistency over time and frequency.
+    TimeFrequency(time_frequency::TimeFrequency),
+    /// Power in every window of both sides.
+    Powers(powers::Powers),
     /// One ratio on the shared axis, or the axis itself.
     Ratio(ratio::Row),
     /// The same held-out measure for what one would have used otherwise.

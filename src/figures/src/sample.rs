@@ -119,6 +119,7 @@ pub fn sheet(channels: usize, trials: usize) -> Sheet {
         compare: comparators(),
         stronger,
         weaker,
+        held_back: None,
         permutation: Some(Permutation {
             measure: Measure::Typical,
             asked: 1000,
@@ -204,6 +205,8 @@ fn recording_card(onsets: &[f64], swell: &[f64], chance: &mut Chance) -> Recordi
             .iter()
             .map(|(l, o)| ((*l).to_owned(), o.to_vec()))
             .collect(),
+        layout: teasel_core::recording::Layout::default(),
+        about: teasel_core::recording::About::default(),
         side_files: Vec::new(),
         warnings: Vec::new(),
         envelope,
@@ -296,6 +299,7 @@ fn component(
         spectra: Some(spectra(hz, ratio, chance)),
         course: Some(course(held, sign, onsets.len(), chance)),
         image: Some(image(held, onsets.len(), chance)),
+        ..Component::default()
     }
 }
 
@@ -363,7 +367,13 @@ fn image(height: f64, trials: usize, chance: &mut Chance) -> TrialImage {
         t_s.iter().map(|t| at(t) as f32).collect()
     };
     let db = (0..trials).map(row).collect();
-    TrialImage { t_s, db }
+    TrialImage {
+        t_s,
+        db,
+        onsets_s: Vec::new(),
+        lags_s: Vec::new(),
+        lag_to: String::new(),
+    }
 }
 
 fn folds(stronger: &[Component]) -> Vec<FoldCard> {

@@ -7,7 +7,7 @@ use crate::table::Table;
 use crate::{Plot, text};
 use plotters_backend::DrawingBackend;
 use serde::{Deserialize, Serialize};
-use teasel_core::sheet::{Component, Sheet};
+use teasel_core::sheet::{Component, Sheet, TrialImage};
 
 const LEFT: f64 = 42.0;
 const TOP: f64 = 4.0;
@@ -27,10 +27,32 @@ pub struct Trials {
     pub limit_db: f64,
     /// Reference and signal window, where both are tied to this event.
     pub windows: Option<[[f64; 2]; 2]>,
+    /// What the rows are sorted by.
+    #[serde(default)]
+    pub order: Order,
+    /// Seconds from each row's event to the event that follows, where it does within the span; empty unless sorted by it.
+    #[serde(default)]
+    pub lags_s: Vec<Option<f64>>,
+    /// Label of the event that follows.
+    #[serde(default)]
+    pub lag_to: String,
+}
+
+/// What single trials are sorted by, from the top.
+#[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum Order {
+    /// Time in the recording.
+    #[default]
+    Time,
+    /// Mean power in the signal window, the least first.
+    Power,
+    /// Time to the event that follows, the shortest first.
+    Lag,
 }
 
 impl Trials {
-    pub(crate) fn of(sheet: &Sheet, component: &Component) -> Option<Self> {
+    pub(crate) fn of(sheet: &Sheet, component: &Component, order: Order) -> Option<Self> {
         let image = component.image.as_ref()?;
         if image.t_s.len() < 2 || image.db.is_empty() {
             return None;
@@ -57,9 +79,17 @@ impl Trials {
         let high = sizes.get(sizes.len() * 96 / 100).copied().unwrap_or(1.0);
         let round = axis::nice_step(f64::from(high) / 2.0) * 2.0;
         let row = |r: &Vec<f32>| r.iter().map(|v| v.is_finite().then_some(*v)).collect();
+        let rows = sorted(sheet, image, order)?;
+        let lags = match order {
+            Order::Lag => rows.iter().map(|k| image.lags_s[*k]).collect(),
+            Order::Time | Order::Power => Vec::new(),
+        };
         Some(Trials {
+            order,
+            lags_s: lags,
+            lag_to: image.lag_to.clone(),
             t_s: image.t_s.clone(),
-            db: image.db.iter().map(row).collect(),
+            db: rows.iter().map(|k| row(&image.db[*k])).collect(),
             limit_db: if round > 0.0 { round } else { 1.0 },
             windows,
         })
@@ -150,6 +180,34 @@ impl Trials {
     }
 }
 
+/// Rows of the image in this order; `None` where there is nothing to sort by.
+fn sorted(sheet: &Sheet, image: &TrialImage, order: Order) -> Option<Vec<usize>> {
+    let mut rows: Vec<usize> = (0..image.db.len()).collect();
+    let by: Vec<f64> = match order {
+        Order::Time => return Some(rows),
+        Order::Power => {
+            let (signal, _) = sheet.recipe.contrast.event_windows()?;
+            let inside = |t: &f64| (signal.from_s..signal.to_s).contains(t);
+            let mean = |row: &Vec<f32>| {
+                let pairs = image.t_s.iter().zip(row);
+                let seen = pairs.filter(|(t, v)| inside(t) && v.is_finite());
+                let (sum, n) = seen.fold((0.0, 0.0), |(s, n), (_, v)| (s + f64::from(*v), n + 1.0));
+                sum / n
+            };
+            image.db.iter().map(mean).collect()
+        }
+        Order::Lag => {
+            if image.lags_s.len() != image.db.len() {
+                return None;
+            }
+            let lag = |l: &Option<f64>| l.unwrap_or(f64::INFINITY);
+            image.lags_s.iter().map(lag).collect()
+        }
+    };
+    rows.sort_by(|a, b| by[*a].total_cmp(&by[*b]));
+    Some(rows)
+}
+
 impl Plot for Trials {
     fn draw<DB: DrawingBackend>(&self, pen: &Pen<DB>) -> Drawn<DB> {
         if self.t_s.len() < 2 || self.db.is_empty() {
@@ -167,6 +225,14 @@ impl Plot for Trials {
             )?;
         }
         let n = self.db.len();
+        let high = (frame.bottom - frame.top) / n as f64;
+        for (k, lag) in self.lags_s.iter().enumerate() {
+            let Some(x) = lag.map(|t| frame.px(t)).filter(|x| *x < frame.right) else {
+                continue;
+            };
+            let y = frame.top + high * k as f64;
+            pen.down(x, y, y + high, pen.inks.ink, 1.5)?;
+        }
         let word = Word::new(TICK, pen.inks.slate).at(At::Right);
         let row = (frame.bottom - frame.top) / n as f64;
         let mut rows = vec![1, n];
@@ -230,8 +296,13 @@ impl Plot for Trials {
     }
 
     fn spoken(&self) -> String {
+        let order = match self.order {
+            Order::Time => "of time".to_owned(),
+            Order::Power => "of their power in the signal window, the least first".to_owned(),
+            Order::Lag => format!("of the time to {}, the shortest first", self.lag_to),
+        };
         format!(
-            "Power of the component in {} around the event, in order of time.",
+            "Power of the component in {} around the event, in order {order}.",
             text::count(self.db.len(), "single trial")
         )
     }

@@ -5,15 +5,19 @@
 //! * [`session`]: a recording, a recipe, and the steps from one to the other.
 //! * [`source`]: a file of the browser as bytes that can be read anywhere.
 //! * [`take`]: the files that are taken away.
+//! * [`many`]: the table and the group of many recordings.
 //! * [`draw`]: figures on the page's canvas and as SVG, and the numbers behind them.
 //! * [`links`]: recipes as text and inside an address.
+//! * [`beside`]: tables beside a recording, looked at before they are used.
 //! * [`convert`]: plain data to and from JavaScript, problems as thrown objects.
 //! * [`bench`]: kernels by themselves, for the budget table.
 //! * [`panics`]: the last words of an instance that ends.
 pub mod bench;
+pub mod beside;
 mod convert;
 pub mod draw;
 pub mod links;
+pub mod many;
 mod panics;
 pub mod session;
 mod source;

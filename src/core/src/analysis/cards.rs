@@ -4,20 +4,24 @@ use crate::contrast::fit::{Direction, Ends};
 use crate::contrast::linalg::{abs_cosine, packed_len, quadratic};
 use crate::contrast::space::Space;
 use crate::contrast::windows::Exchange;
+use crate::describe::placing::placed;
+use crate::evidence::bootstrap::generator;
 use crate::evidence::dimensions::outstanding;
 use crate::evidence::heldout::{
     Design, Ground, Scores, best_of, fill, log_total, log_typical, pair_log_ratios, score_into,
     total_ratio, typical_ratio, variances,
 };
-use crate::evidence::permute::{null_hypothesis, p_value};
+use crate::evidence::permute::{STREAM_DIRECTION, null_hypothesis, p_value};
 use crate::prepare::{Prepared, Quality};
 use crate::recipe::{Keep, KeepWord, Measure, Recipe};
 use crate::recording::Recording;
 use crate::sheet::{
     ChannelCard, ChannelState, Comparator, ComparatorKind, Component, CompressionCard, End,
     FoldCard, Permutation, PrincipalCard, RankStep, RecordingCard, Sheet, Step, TotalRatio,
-    TrialScore, TypicalRatio,
+    TrialScore, TypicalRatio, WindowPower,
 };
+use nalgebra::DMatrix;
+use rand_chacha::rand_core::Rng;
 use std::collections::BTreeMap;
 
 /// Bins of the envelope of the whole recording.
@@ -56,6 +60,8 @@ pub(super) fn begin(recording: &Recording, recipe: &Recipe) -> Sheet {
                 .map(|(label, times)| (label.clone(), times.len()))
                 .collect(),
             event_onsets_s: onsets,
+            layout: placed(recording, &recipe.channels).0,
+            about: recording.about.clone(),
             side_files: recording.side_files.clone(),
             warnings: recording.warnings.clone(),
             envelope: envelope(recording),
@@ -77,6 +83,7 @@ pub(super) fn begin(recording: &Recording, recipe: &Recipe) -> Sheet {
         compare: Vec::new(),
         permutation: None,
         folds: Vec::new(),
+        held_back: None,
         warnings: recording.warnings.clone(),
     }
 }
@@ -215,6 +222,9 @@ pub(super) fn forget(sheet: &mut Sheet, recipe: &Recipe, stale: &Stale) {
             c.trials.clear();
         }
     }
+    if stale.evidence {
+        sheet.held_back = None;
+    }
     if stale.curve {
         sheet.curve = None;
     }
@@ -255,17 +265,7 @@ fn filter_and_pattern(
 
 /// a = P w / (wᵀPw).
 fn pattern(space: &Space, filter: &[f64]) -> Vec<f64> {
-    let m = filter.len();
-    let mut product = vec![0.0; m];
-    for i in 0..m {
-        for j in 0..=i {
-            let x = space.pooled[packed_len(i) + j];
-            product[i] += x * filter[j];
-            if i != j {
-                product[j] += x * filter[i];
-            }
-        }
-    }
+    let mut product = times(&space.pooled, filter);
     let power: f64 = product.iter().zip(filter).map(|(a, b)| a * b).sum();
     product.iter_mut().for_each(|x| *x /= power);
     product
@@ -273,12 +273,13 @@ fn pattern(space: &Space, filter: &[f64]) -> Vec<f64> {
 
 /// Compression and fitted components, right after the fit.
 pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
-    let (Some(ground), Some(design), Some(ends), Some(prepared), Some(keep)) = (
+    let (Some(ground), Some(design), Some(ends), Some(prepared), Some(keep), Some(selection)) = (
         &work.ground,
         &work.design,
         &work.ends,
         &work.prepared,
         work.keep,
+        &work.selection,
     ) else {
         return;
     };
@@ -310,12 +311,8 @@ pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
             filter,
             pattern,
             peak_hz: None,
-            stability: None,
-            places_changed: None,
-            trials: Vec::new(),
-            spectra: None,
-            course: None,
-            image: None,
+            powers: window_powers(&v, weights, design, selection),
+            ..Component::default()
         }
     };
     let (stronger, weaker) = reported(ends);
@@ -343,12 +340,97 @@ pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
     work.sheet.warnings = warnings(work, recipe);
 }
 
+/// Variances of a component in every used window, scaled so that their mean over reference windows is 1.
+fn window_powers(
+    variances: &[f64],
+    weights: &[f64],
+    design: &Design,
+    selection: &crate::contrast::windows::Selection,
+) -> Vec<WindowPower> {
+    let reference = (0..variances.len()).filter(|k| !design.signal[*k]);
+    let (sum, total) = reference.fold((0.0, 0.0), |(s, t), k| {
+        (s + weights[k] * variances[k], t + weights[k])
+    });
+    let windows = selection.windows.iter().zip(variances);
+    windows
+        .map(|(window, variance)| WindowPower {
+            signal: window.signal,
+            trial: window.trial,
+            onset_s: window.onset_s,
+            power: variance * total / sum,
+        })
+        .collect()
+}
+
+/// 95 % intervals of a component's pattern over trials, its filter held fixed: a* = Σ nₖ Cₖ w / Σ nₖ wᵀCₖw over trials drawn with
+/// replacement, both windows of a pair together (Efron & Tibshirani 1993). Empty without bootstrap samples.
+pub(super) fn pattern_interval(
+    covariances: &crate::contrast::space::Covariances,
+    design: &Design,
+    filter: &[f64],
+    samples: usize,
+    seed: u64,
+) -> Vec<[f64; 2]> {
+    let m = filter.len();
+    let windows = covariances.packed.len();
+    let whole = covariances.packed.iter().all(|c| c.len() == packed_len(m));
+    if samples == 0 || windows < 2 || !whole {
+        return Vec::new();
+    }
+    let unit = |k: usize| if design.paired { design.trial[k] } else { k };
+    let units = (0..windows).map(unit).max().map_or(0, |last| last + 1);
+    // One row a unit: Σ n C w, and in the last column Σ n wᵀCw.
+    let mut rows = DMatrix::zeros(units, m + 1);
+    for k in 0..windows {
+        let weight = covariances.weights[k];
+        let product = times(&covariances.packed[k], filter);
+        let power: f64 = product.iter().zip(filter).map(|(a, b)| a * b).sum();
+        let mut row = rows.row_mut(unit(k));
+        for (into, x) in row.iter_mut().zip(product.iter().chain([&power])) {
+            *into += weight * x;
+        }
+    }
+    let mut drawn = crate::describe::bootstrap::counts(units, samples, seed) * rows;
+    for mut row in drawn.row_iter_mut() {
+        let power = row[m];
+        row.iter_mut().for_each(|x| *x /= power);
+    }
+    let mut drawn = drawn.columns(0, m).into_owned();
+    let [low, high] = crate::describe::bootstrap::intervals(&mut drawn);
+    low.into_iter().zip(high).map(|(l, h)| [l, h]).collect()
+}
+
+/// A packed symmetric matrix times a vector.
+fn times(packed: &[f64], vector: &[f64]) -> Vec<f64> {
+    let m = vector.len();
+    let mut product = vec![0.0; m];
+    for i in 0..m {
+        for j in 0..=i {
+            let x = packed[packed_len(i) + j];
+            product[i] += x * vector[j];
+            if i != j {
+                product[j] += x * vector[i];
+            }
+        }
+    }
+    product
+}
+
 /// The fitted ratio in a typical trial; not a number where the kind has none.
 fn fitted_typical(variances: &[f64], design: &Design) -> f64 {
     if design.exchange == Exchange::Flip {
         f64::NAN
     } else {
         log_typical(variances, design).exp()
+    }
+}
+
+/// What signal variances were divided by, where the kind scales them to the average channel.
+pub(super) fn filter_level(work: &Work, recipe: &Recipe) -> f64 {
+    if super::work::levelled(recipe) {
+        work.average_ratio
+    } else {
+        1.0
     }
 }
 
@@ -465,6 +547,11 @@ pub(super) fn held_out(work: &mut Work, recipe: &Recipe) {
             })
         })
         .collect();
+    let pairs = [&work.sheet.stronger, &work.sheet.weaker]
+        .into_iter()
+        .enumerate()
+        .flat_map(|(end, list)| turning(list, &patterns, end, recipe.measure))
+        .collect::<Vec<String>>();
     let blank = || vec![f64::NAN; weights.len()];
     let mut leading: Option<Scores> = None;
     for (end, components) in [&mut work.sheet.stronger, &mut work.sheet.weaker]
@@ -516,6 +603,93 @@ pub(super) fn held_out(work: &mut Work, recipe: &Recipe) {
     work.sheet.folds = leading.map_or_else(Vec::new, |scores| fold_cards(&scores, weights, design));
     work.sheet.compare = comparators(work_parts(ground, design, prepared, keep), work, recipe);
     work.sheet.warnings = warnings(work, recipe);
+    work.sheet.warnings.extend(pairs);
+}
+
+/// Ratios nearer to each other than this factor leave their components free to turn into one another.
+const NEAR: f64 = 1.1;
+/// Likeness of a plane that is the same over folds, and of a pattern that is not.
+const SAME_PLANE: f64 = 0.9;
+const NOT_SAME: f64 = 0.8;
+
+/// Says which neighbours of one end share a plane that is stable over folds while they are not: single components of such a pair
+/// mean little. Medians over folds; of planes the cosine of the larger principal angle (Björck & Golub 1973).
+fn turning(
+    list: &[Component],
+    patterns: &[[Vec<Vec<f64>>; 2]],
+    end: usize,
+    measure: Measure,
+) -> Vec<String> {
+    let fitted = |c: &Component| match measure {
+        Measure::Typical => c.typical.fitted,
+        Measure::Total => c.total.fitted,
+    };
+    let median = |mut values: Vec<f64>| {
+        values.sort_by(f64::total_cmp);
+        crate::evidence::bootstrap::quantile(&values, 0.5)
+    };
+    let mut out = Vec::new();
+    for (j, pair) in list.windows(2).enumerate() {
+        let near = (fitted(&pair[0]) / fitted(&pair[1])).ln().abs() < NEAR.ln();
+        let folds: Vec<&Vec<Vec<f64>>> = patterns
+            .iter()
+            .map(|p| &p[end])
+            .filter(|p| p.len() > j + 1)
+            .collect();
+        if !near || folds.is_empty() {
+            continue;
+        }
+        let single = [0, 1].map(|i| {
+            let of = |p: &&Vec<Vec<f64>>| abs_cosine(&p[j + i], &pair[i].pattern);
+            median(folds.iter().map(of).collect())
+        });
+        let own = [&pair[0].pattern[..], &pair[1].pattern[..]];
+        let plane = |p: &&Vec<Vec<f64>>| plane_likeness(own, [&p[j], &p[j + 1]]);
+        let plane = median(folds.iter().map(plane).collect());
+        let alone = single[0].min(single[1]);
+        if plane >= SAME_PLANE && alone < NOT_SAME {
+            let name = if end == 0 {
+                "Components"
+            } else {
+                "Weaker components"
+            };
+            out.push(format!(
+                "{name} {} and {} have nearly the same ratio ({:.2} and {:.2}) and turn into one another from fold to fold: their patterns stay {alone:.2} alike, the plane they span {plane:.2}. Read them as a pair.",
+                j + 1,
+                j + 2,
+                fitted(&pair[0]),
+                fitted(&pair[1])
+            ));
+        }
+    }
+    out
+}
+
+/// Cosine of the larger principal angle between two planes.
+fn plane_likeness(a: [&[f64]; 2], b: [&[f64]; 2]) -> f64 {
+    let dot = |x: &[f64], y: &[f64]| x.iter().zip(y).map(|(x, y)| x * y).sum::<f64>();
+    let basis = |v: [&[f64]; 2]| -> [Vec<f64>; 2] {
+        let unit = |x: Vec<f64>| {
+            let norm = dot(&x, &x).sqrt();
+            x.into_iter().map(|x| x / norm).collect::<Vec<f64>>()
+        };
+        let first = unit(v[0].to_vec());
+        let along = dot(&first, v[1]);
+        let rest = v[1].iter().zip(&first).map(|(y, f)| y - along * f);
+        [first.clone(), unit(rest.collect())]
+    };
+    let (a, b) = (basis(a), basis(b));
+    let m = [
+        [dot(&a[0], &b[0]), dot(&a[0], &b[1])],
+        [dot(&a[1], &b[0]), dot(&a[1], &b[1])],
+    ];
+    // Smaller singular value of a 2×2 matrix: from the sum of squares and the determinant.
+    let squares: f64 = m.iter().flatten().map(|x| x * x).sum();
+    let determinant = m[0][0] * m[1][1] - m[0][1] * m[1][0];
+    let root = (squares * squares - 4.0 * determinant * determinant)
+        .max(0.0)
+        .sqrt();
+    ((squares - root) / 2.0).max(0.0).sqrt()
 }
 
 fn trial_scores(
@@ -588,7 +762,17 @@ fn work_parts<'a>(
     }
 }
 
-/// First principal component, best principal component, best channel, on the same held-out windows.
+/// A direction drawn at random in the kept whitened space: independent values of mean 0 and variance 1 (each the sum of twelve
+/// uniform numbers less 6).
+fn random_direction(keep: usize, seed: u64) -> Vec<f64> {
+    let mut rng = generator(seed, STREAM_DIRECTION);
+    let mut uniform = || (rng.next_u64() >> 11) as f64 * 2f64.powi(-53);
+    (0..keep)
+        .map(|_| (0..12).map(|_| uniform()).sum::<f64>() - 6.0)
+        .collect()
+}
+
+/// Principal components, channels, the channels' mean and a random direction, on the same held-out windows.
 fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator> {
     let Parts {
         ground,
@@ -623,18 +807,22 @@ fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator
         &everything,
         recipe.measure,
     );
+    let of_mean = |of: &dyn Fn(usize) -> bool| all.mean_variances(signal, of);
+    let drawn = random_direction(keep, recipe.evidence.seed);
+    let of_drawn = |g: &Ground, of: &dyn Fn(usize) -> bool| {
+        let kept = drawn.len().min(g.space.dimensions());
+        g.space.variances(&drawn[..kept], signal, of)
+    };
     let make = |kind: ComparatorKind, fitted: Vec<f64>, chosen_in: &dyn Fn(usize) -> usize| {
         let mut scores = vec![f64::NAN; weights.len()];
         for (f, g) in work.folds.iter().enumerate() {
             let i = chosen_in(f);
-            match kind {
-                ComparatorKind::BestChannel => {
-                    fill(&mut scores, weights, design, f, |of| of_channel(i, of))
-                }
-                ComparatorKind::FirstPc | ComparatorKind::BestPc => {
-                    fill(&mut scores, weights, design, f, |of| of_pc(g, i, of))
-                }
-            }
+            fill(&mut scores, weights, design, f, |of| match kind {
+                ComparatorKind::BestChannel => of_channel(i, of),
+                ComparatorKind::FirstPc | ComparatorKind::BestPc => of_pc(g, i, of),
+                ComparatorKind::MeanOfChannels => of_mean(of),
+                ComparatorKind::RandomDirection => of_drawn(g, of),
+            });
         }
         let (count, seed) = (recipe.evidence.bootstrap, recipe.evidence.seed);
         Comparator {
@@ -685,6 +873,12 @@ fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator
             share: share_of(0),
             ..make(ComparatorKind::FirstPc, of_pc(ground, 0, &|_| true), &|_| 0)
         },
+        make(ComparatorKind::MeanOfChannels, of_mean(&|_| true), &|_| 0),
+        make(
+            ComparatorKind::RandomDirection,
+            of_drawn(ground, &|_| true),
+            &|_| 0,
+        ),
     ]
 }
 
@@ -700,13 +894,19 @@ fn most_frequent(values: impl Iterator<Item = usize>) -> (usize, usize) {
 
 /// The permutation test and every component's p.
 pub(super) fn permuted(work: &mut Work, recipe: &Recipe) {
-    let (Some(plan), Some(design), Some(ends)) = (work.plan, &work.design, &work.ends) else {
+    let (Some(plan), Some(design), Some((ends, level))) =
+        (work.plan, &work.design, work.observed(recipe))
+    else {
         return;
     };
-    let (largest, smallest): (Vec<f64>, Vec<f64>) = work.null.iter().copied().unzip();
-    let (stronger, weaker) = reported(ends);
-    let observed_stronger: Vec<f64> = stronger.iter().map(|d| d.statistic).collect();
-    let observed_weaker: Vec<f64> = weaker.iter().map(|d| d.statistic).collect();
+    // Where both sides were brought to one level the null is about the average direction: told as ratios of the recording.
+    let null = work.null.iter().map(|(l, s)| (l * level, s * level));
+    let (largest, smallest): (Vec<f64>, Vec<f64>) = null.unzip();
+    let told = |list: &[Direction]| list.iter().map(|d| d.statistic * level).collect();
+    let mut observed_stronger: Vec<f64> = told(&ends.stronger);
+    let mut observed_weaker: Vec<f64> = told(&ends.weaker);
+    observed_stronger.truncate(work.sheet.stronger.len());
+    observed_weaker.truncate(work.sheet.weaker.len());
     let test = |observed: f64, null: &[f64], larger| {
         (!null.is_empty()).then(|| p_value(observed, null, plan.exact, larger))
     };
@@ -859,4 +1059,20 @@ fn mirrored_warning(work: &Work, prepared: &Prepared) -> Option<String> {
             windows.len()
         )
     })
+}
+
+#[cfg(test)]
+mod tests {
+    use super::plane_likeness;
+
+    #[test]
+    fn planes_are_compared_by_their_larger_angle() {
+        let (x, y) = ([1.0, 0.0, 0.0], [0.0, 1.0, 0.0]);
+        // The same plane under another basis; then turned by 30° about x: cos 30°.
+        let turned = [0.6, -0.8, 0.0];
+        let other = [2.0, 1.0, 0.0];
+        assert!((plane_likeness([&x, &y], [&turned, &other]) - 1.0).abs() < 1e-12);
+        let tilted = [0.0, 0.75f64.sqrt(), 0.5];
+        assert!((plane_likeness([&x, &y], [&x, &tilted]) - 0.75f64.sqrt()).abs() < 1e-12);
+    }
 }

@@ -3,6 +3,7 @@
 //! Which spectra stand side by side depends on the kind: windows and spans compare those of both sides; a rhythm and what changes
 //! slowly are measured on the same segments, so there the component stands beside the average channel at equal power outside the
 //! band (or over all); what repeats compares the average over trials, times their number, with the single trials.
+use super::cards;
 use super::work::{Work, lost};
 use crate::contrast::windows::{Exchange, Selection, events_of, sample_at};
 use crate::describe::welch::{Welch, segment_for};
@@ -36,6 +37,15 @@ pub(super) fn describe(
     } else {
         &mut work.sheet.weaker[index]
     };
+    if let Some(design) = &work.design {
+        component.pattern_interval = cards::pattern_interval(
+            &work.covariances,
+            design,
+            &component.filter,
+            count,
+            recipe.evidence.seed,
+        );
+    }
     let rate = prepared.rate_hz;
     let side = |wanted: bool| -> Vec<(usize, usize)> {
         let windows = selection.windows.iter().filter(|w| w.signal == wanted);
@@ -55,10 +65,26 @@ pub(super) fn describe(
         span,
     );
     let seed = recipe.evidence.seed ^ STREAM_DESCRIBE << 32;
-    let of_windows = || spectra::of_component(&series, &signals, &references, rate, count, seed);
+    let of_windows = || {
+        spectra::by(
+            recipe.spectrum,
+            &series,
+            &signals,
+            &references,
+            rate,
+            count,
+            seed,
+        )
+    };
     let found = match &recipe.contrast {
         Contrast::Windows { .. } | Contrast::Spans { .. } => of_windows(),
-        Contrast::Repeatable(_) => beside_average(of_windows(), &series, &signals, rate),
+        // The average over trials stands on Welch's segments.
+        Contrast::Repeatable(_) => beside_average(
+            spectra::of_component(&series, &signals, &references, rate, count, seed),
+            &series,
+            &signals,
+            rate,
+        ),
         Contrast::Band { .. } | Contrast::Slow { .. } => {
             let found = spectra::of_component(&series, &signals, &[], rate, count, seed);
             beside_channels(found, prepared, &signals, &recipe.contrast)
@@ -86,7 +112,7 @@ pub(super) fn describe(
         from_s: span[0],
         to_s: span[1],
     };
-    if let Some((c, image)) = course::of_component(
+    if let Some((c, mut image)) = course::of_component(
         &series,
         &prepared.stretches,
         &around.event,
@@ -97,6 +123,7 @@ pub(super) fn describe(
         count,
         seed,
     ) {
+        course::lags(&mut image, &recording.events, &around.event, span[1]);
         component.course = Some(c);
         component.image = Some(image);
     }
@@ -104,16 +131,16 @@ pub(super) fn describe(
 }
 
 /// The events that courses are drawn around.
-struct Around {
+pub(super) struct Around {
     event: String,
     /// Sample and time of each.
-    onsets: Vec<(usize, f64)>,
+    pub(super) onsets: Vec<(usize, f64)>,
     /// Seconds drawn.
-    span: [f64; 2],
+    pub(super) span: [f64; 2],
 }
 
 /// The events of the contrast that are used; `None` where it is not made of event windows.
-fn around(
+pub(super) fn around(
     recording: &Recording,
     recipe: &Recipe,
     prepared: &Prepared,

@@ -4,7 +4,7 @@ use rand::{RngExt, SeedableRng};
 use rand_chacha::ChaCha8Rng;
 
 /// `samples × repetitions`: how often each repetition is drawn in each bootstrap sample; every row sums to the number of repetitions.
-pub(super) fn counts(repetitions: usize, samples: usize, seed: u64) -> DMatrix<f64> {
+pub(crate) fn counts(repetitions: usize, samples: usize, seed: u64) -> DMatrix<f64> {
     let mut random = ChaCha8Rng::seed_from_u64(seed);
     let mut counts = DMatrix::zeros(samples, repetitions);
     // Drawn as u32, so that 32-bit and 64-bit machines draw alike.
@@ -31,7 +31,7 @@ pub(crate) fn means(values: &DMatrix<f64>, samples: usize, seed: u64) -> [Vec<f6
 }
 
 /// 2.5 % and 97.5 % points of every column; the columns are reordered.
-pub(super) fn intervals(drawn: &mut DMatrix<f64>) -> [Vec<f64>; 2] {
+pub(crate) fn intervals(drawn: &mut DMatrix<f64>) -> [Vec<f64>; 2] {
     let rows = drawn.nrows();
     let (mut low, mut high) = (Vec::new(), Vec::new());
     for column in drawn.as_mut_slice().chunks_exact_mut(rows.max(1)) {

@@ -1,8 +1,10 @@
 //! Spectra, time courses and maps of components.
 //!
-//! * [`positions`]: electrode positions by name; sphere and plane.
+//! * [`positions`], [`placing`]: electrode positions by name; where the channels of a recording lie; sphere and plane.
 //! * [`spline`], [`map`]: spherical splines, and patterns spread over the head.
-//! * [`welch`], [`spectra`]: power spectral densities of both sides.
+//! * [`plate`]: biharmonic splines on a plane.
+//! * [`welch`], [`multitaper`], [`spectra`]: power spectral densities of both sides.
+//! * [`time_frequency`]: power and phase consistency by wavelets.
 //! * [`course`]: power and average around an event, single trials.
 //!
 //! Intervals are percentile bootstrap intervals over windows or trials (Efron & Tibshirani 1993, *An Introduction to the Bootstrap*,
@@ -10,7 +12,11 @@
 pub(crate) mod bootstrap;
 pub mod course;
 pub mod map;
+pub mod multitaper;
+pub mod placing;
+pub mod plate;
 pub mod positions;
 pub mod spectra;
 pub mod spline;
+pub mod time_frequency;
 pub mod welch;

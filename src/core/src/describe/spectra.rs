@@ -1,6 +1,8 @@
 //! Power spectral densities of a component in signal and in reference windows.
 use super::bootstrap;
+use super::multitaper::Multitaper;
 use super::welch::{Welch, segment_for};
+use crate::recipe::Spectrum;
 pub use crate::sheet::End;
 use crate::sheet::Spectra;
 use nalgebra::DMatrix;
@@ -21,19 +23,51 @@ pub fn of_component(
     bootstrap: usize,
     seed: u64,
 ) -> Spectra {
+    by(
+        Spectrum::Welch,
+        series,
+        signal,
+        reference,
+        rate_hz,
+        bootstrap,
+        seed,
+    )
+}
+
+/// The same by the estimate that is asked for; multitaper segments are as long as the shorter side's windows, at most ten seconds.
+pub fn by(
+    estimate: Spectrum,
+    series: &[f64],
+    signal: &[Window],
+    reference: &[Window],
+    rate_hz: f64,
+    bootstrap: usize,
+    seed: u64,
+) -> Spectra {
     let shortest = signal
         .iter()
         .chain(reference)
         .map(|w| w.1)
         .min()
         .unwrap_or(0);
-    let segment = segment_for(shortest, rate_hz);
-    let mut welch = Welch::new(segment, rate_hz);
-    let [signal, signal_low, signal_high] = side(series, signal, &mut welch, bootstrap, seed);
+    let (segment, mut estimate) = match estimate {
+        Spectrum::Welch => {
+            let segment = segment_for(shortest, rate_hz);
+            (segment, Estimate::Welch(Welch::new(segment, rate_hz)))
+        }
+        Spectrum::Multitaper => {
+            let segment = shortest.clamp(8, (10.0 * rate_hz).max(8.0) as usize);
+            (
+                segment,
+                Estimate::Multitaper(Multitaper::new(segment, rate_hz)),
+            )
+        }
+    };
+    let [signal, signal_low, signal_high] = side(series, signal, &mut estimate, bootstrap, seed);
     let [reference, reference_low, reference_high] =
-        side(series, reference, &mut welch, bootstrap, seed ^ 1);
+        side(series, reference, &mut estimate, bootstrap, seed ^ 1);
     Spectra {
-        hz: welch.frequencies(),
+        hz: estimate.frequencies(),
         signal,
         signal_low,
         signal_high,
@@ -44,19 +78,40 @@ pub fn of_component(
     }
 }
 
+/// A planned estimate.
+enum Estimate {
+    Welch(Welch),
+    Multitaper(Multitaper),
+}
+
+impl Estimate {
+    fn frequencies(&self) -> Vec<f64> {
+        match self {
+            Estimate::Welch(welch) => welch.frequencies(),
+            Estimate::Multitaper(multitaper) => multitaper.frequencies(),
+        }
+    }
+    fn density(&mut self, samples: &[f64]) -> Vec<f64> {
+        match self {
+            Estimate::Welch(welch) => welch.density(samples),
+            Estimate::Multitaper(multitaper) => multitaper.density(samples),
+        }
+    }
+}
+
 fn side(
     series: &[f64],
     windows: &[Window],
-    welch: &mut Welch,
+    estimate: &mut Estimate,
     bootstrap: usize,
     seed: u64,
 ) -> [Vec<f64>; 3] {
     let densities: Vec<Vec<f64>> = windows
         .iter()
         .filter_map(|&(first, count)| series.get(first..first.checked_add(count)?))
-        .map(|samples| welch.density(samples))
+        .map(|samples| estimate.density(samples))
         .collect();
-    let bins = welch.frequencies().len();
+    let bins = estimate.frequencies().len();
     if densities.is_empty() {
         return [vec![0.0; bins], vec![0.0; bins], vec![0.0; bins]];
     }

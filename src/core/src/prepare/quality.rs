@@ -8,7 +8,7 @@
 //! | large | median over seconds of the log variance in the band; robust z over channels | z above 5 |
 //! | noisy | share of power above 40 Hz, mains left out, that three quarters of the seconds exceed | above 30 %, its odds 4 times the median channel's |
 //! | mains | power at 50 or 60 Hz over its surroundings | 15 dB above the median channel, 20 dB at least |
-//! | unlike | median over 12 parts of the recording of the correlation with the estimate from the other channels, up to 20 Hz | below 0.4, 0.3 below the median channel, and none of the 4 nearest channels correlates above 0.5 |
+//! | unlike | median over 12 parts of the recording of the correlation with the estimate from the other channels, up to 20 Hz | below 0.35, 0.3 below the median channel, and none of the 4 nearest channels correlates above 0.4 |
 //! | bridged | least variance of a difference to another channel, over the median of these | below 1 % |
 //! | drifting | robust spread of medians over 5 seconds of medians of seconds over the spread in the band | above 2, and 4 times the median channel |
 //!
@@ -60,10 +60,10 @@ const NOISY_SHARE: f64 = 0.3;
 const NOISY_ODDS: f64 = 4.0;
 const MAINS_ABOVE_DB: f64 = 15.0;
 const MAINS_DB: f64 = 20.0;
-const UNLIKE: f64 = 0.4;
+const UNLIKE: f64 = 0.35;
 const UNLIKE_BELOW: f64 = 0.3;
 /// A channel that is this like one of its nearest is not unlike, however badly a spline reaches it at the rim.
-const LIKE_NEAREST: f64 = 0.5;
+const LIKE_NEAREST: f64 = 0.4;
 const NEAREST: usize = 4;
 const BRIDGED: f64 = 0.01;
 const DRIFT: f64 = 2.0;

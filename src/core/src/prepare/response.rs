@@ -16,7 +16,7 @@ pub(super) fn response(taps: &[f64], designs: &[Design], rate_hz: f64) -> Option
     if designs.is_empty() {
         return None;
     }
-    let edges: Vec<ResponseEdge> = designs.iter().flat_map(|d| edges(d)).collect();
+    let edges: Vec<ResponseEdge> = designs.iter().flat_map(edges).collect();
     let nyquist = rate_hz / 2.0;
     let lowest = edges.iter().map(|e| e.pass_hz / 8.0).fold(0.5, f64::min);
     let mut hz: Vec<f64> = (0..=POINTS)

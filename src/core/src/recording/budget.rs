@@ -22,6 +22,8 @@ pub(crate) struct Budget {
     memory: u64,
     /// The machine, not the size of the file, sets the limit.
     by_memory: bool,
+    /// What is too large may be handed through instead.
+    streaming: bool,
 }
 
 impl Budget {
@@ -36,7 +38,26 @@ impl Budget {
             all,
             memory: memory_bytes,
             by_memory: memory_bytes < by_file,
+            streaming: false,
         }
+    }
+
+    /// The same where a reader may hand through what does not fit.
+    pub(crate) fn streaming(self) -> Self {
+        Budget {
+            streaming: true,
+            ..self
+        }
+    }
+
+    /// Whether samples of so many bytes are to be handed through instead of kept.
+    pub(crate) fn flows(&self, bytes: u64) -> bool {
+        self.streaming && self.by_memory && bytes > self.left
+    }
+
+    /// One part in `parts` of what is left.
+    pub(crate) fn share(&self, parts: u64) -> u64 {
+        self.left / parts
     }
 
     /// The file turned out to hold this many bytes once unpacked: what they can need may be taken, as far as the machine gives it.

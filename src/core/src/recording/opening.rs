@@ -1,6 +1,9 @@
 //! Opening a recording in steps: probe the content, read the header, decode slice after slice, add the side files.
 use super::budget::Budget;
-use super::{MEMORY_BYTES, Recording, SideFile, Source, edf, events_table, gzip, joined, table};
+use super::large::{Flowing, Large, Scan};
+use super::{
+    MEMORY_BYTES, Recording, SideFile, Source, edf, gzip, joined, sides as side_files, table,
+};
 use crate::error::{Kind, Problem, Result};
 use std::fmt;
 
@@ -17,8 +20,12 @@ pub struct OpenOptions {
 pub(crate) trait Reader {
     /// Decodes the next slice; returns bytes done and bytes in all, equal when nothing is left.
     fn step(&mut self, source: &mut dyn Source, budget: &mut Budget) -> Result<(u64, u64)>;
-    /// The recording, once nothing is left.
+    /// The recording, once nothing is left; without samples where they were handed through.
     fn finish(self: Box<Self>) -> Result<Recording>;
+    /// Where the samples are not kept: the way to them, slice after slice.
+    fn flowing(&mut self) -> Option<&mut dyn Flowing> {
+        None
+    }
     /// Date and time at which the file's clock starts, in seconds from any one moment; `None` where the file does not say.
     fn start_s(&self) -> Option<f64> {
         None
@@ -70,10 +77,22 @@ const OTHER_CONTENT: &[(&[u8], &str)] = &[
 pub struct Opening {
     source: Box<dyn Source>,
     sides: Vec<SideFile>,
+    /// As the user gave them, without what side files add.
     options: OpenOptions,
     budget: Budget,
     reader: Box<dyn Reader>,
+    /// Takes the samples that are not kept.
+    scan: Option<Scan>,
     finished: bool,
+}
+
+/// What was opened.
+#[derive(Debug)]
+pub enum Opened {
+    /// All samples are in the memory.
+    Whole(Recording),
+    /// The samples stay in the file.
+    Large(Box<Large>),
 }
 
 impl fmt::Debug for Opening {
@@ -101,27 +120,54 @@ impl Opening {
 
     /// [`Opening::begin`] where the caller knows how many bytes the open recording may take.
     pub fn begin_within(
-        mut source: Box<dyn Source>,
+        source: Box<dyn Source>,
         sides: Vec<SideFile>,
         options: OpenOptions,
         memory_bytes: u64,
     ) -> Result<Opening> {
+        let budget = Budget::new(source.len(), memory_bytes);
+        Opening::begin_with(source, sides, options, budget)
+    }
+
+    /// The same for a caller that takes what [`Opening::opened`] gives: where the samples do not fit into `memory_bytes` and the format allows
+    /// it, they are looked over and stay in the file.
+    pub fn begin_streaming(
+        source: Box<dyn Source>,
+        sides: Vec<SideFile>,
+        options: OpenOptions,
+        memory_bytes: u64,
+    ) -> Result<Opening> {
+        let budget = Budget::new(source.len(), memory_bytes).streaming();
+        Opening::begin_with(source, sides, options, budget)
+    }
+
+    fn begin_with(
+        mut source: Box<dyn Source>,
+        sides: Vec<SideFile>,
+        options: OpenOptions,
+        mut budget: Budget,
+    ) -> Result<Opening> {
         let name = source.name().to_owned();
-        let mut budget = Budget::new(source.len(), memory_bytes);
-        let reader = begin_reader(source.as_mut(), &options, &mut budget)
-            .map_err(|problem| problem.in_file(name))?;
         let sides = unpacked(sides)?;
+        let completed = completed(&options, &name, &sides)?;
+        let mut reader = begin_reader(source.as_mut(), &completed, &mut budget)
+            .map_err(|problem| problem.in_file(name))?;
+        let scan = reader
+            .flowing()
+            .map(|flow| Scan::new(flow.channels(), flow.expected()));
         Ok(Opening {
             source,
             sides,
             options,
             budget,
             reader,
+            scan,
             finished: false,
         })
     }
 
-    /// Opens several files of one recording, in the natural order of their names; the recording is called after the first.
+    /// Opens several files of one recording, in the natural order of their names; the recording is called after the first. A single file is
+    /// opened as by [`Opening::begin_streaming`].
     ///
     /// # Errors
     /// Those of [`Opening::begin`]; `Unsupported` for a file with other channels or another rate, named.
@@ -129,11 +175,12 @@ impl Opening {
         mut sources: Vec<Box<dyn Source>>,
         sides: Vec<SideFile>,
         options: OpenOptions,
+        memory_bytes: u64,
     ) -> Result<Opening> {
         if sources.len() == 1
             && let Some(source) = sources.pop()
         {
-            return Opening::begin(source, sides, options);
+            return Opening::begin_streaming(source, sides, options, memory_bytes);
         }
         let first = sources.iter().map(|s| s.name());
         let name = first.min_by(|a, b| joined::natural_order(a, b));
@@ -141,14 +188,17 @@ impl Opening {
             name: name.unwrap_or_default().to_owned(),
             bytes: sources.iter().map(|source| source.len()).sum(),
         };
-        let mut budget = Budget::new(together.bytes, MEMORY_BYTES);
-        let reader = joined::begin(sources, &options, &mut budget)?;
+        let mut budget = Budget::new(together.bytes, memory_bytes);
+        let sides = unpacked(sides)?;
+        let completed = completed(&options, &together.name, &sides)?;
+        let reader = joined::begin(sources, &completed, &mut budget)?;
         Ok(Opening {
             source: Box::new(together),
-            sides: unpacked(sides)?,
+            sides,
             options,
             budget,
             reader,
+            scan: None,
             finished: false,
         })
     }
@@ -159,6 +209,10 @@ impl Opening {
             .reader
             .step(self.source.as_mut(), &mut self.budget)
             .map_err(|problem| problem.in_file(self.source.name()))?;
+        if let (Some(scan), Some(flow)) = (&mut self.scan, self.reader.flowing()) {
+            let stretches = flow.stretches().to_vec();
+            flow.drain(&mut |channel, samples| scan.push(channel, samples, &stretches));
+        }
         self.finished = done >= of;
         Ok((done, of))
     }
@@ -169,10 +223,27 @@ impl Opening {
     }
 
     /// The recording, with its side files; reads what is left, if anything is.
-    pub fn finish(mut self) -> Result<Recording> {
+    ///
+    /// # Errors
+    /// Those of the reader; `TooLarge` where the samples were handed through ([`Opening::begin_streaming`]): [`Opening::opened`] gives those.
+    pub fn finish(self) -> Result<Recording> {
+        match self.opened()? {
+            Opened::Whole(recording) => Ok(recording),
+            Opened::Large(large) => Err(Problem::new(
+                Kind::TooLarge,
+                "the recording is larger than the memory for it",
+                "open a shorter part of it, or one with fewer channels or a lower sampling rate",
+            )
+            .in_file(large.outline().name.as_str())),
+        }
+    }
+
+    /// What was opened, with its side files; reads what is left, if anything is.
+    pub fn opened(mut self) -> Result<Opened> {
         while !self.finished {
             self.step()?;
         }
+        let pieces = self.reader.flowing().map(|flow| flow.pieces());
         let name = self.source.name().to_owned();
         let mut recording = self
             .reader
@@ -180,11 +251,17 @@ impl Opening {
             .map_err(|problem| problem.in_file(name.as_str()))?;
         recording.name = name;
         warn_of_rate(&mut recording, self.options.given.rate_hz);
-        events_table::apply(&mut recording, &self.sides)?;
+        side_files::apply(&mut recording, &self.sides, &self.options.given)?;
         recording
             .events
             .sort_by(|a, b| a.onset_s.total_cmp(&b.onset_s));
-        Ok(recording)
+        Ok(match (self.scan, pieces) {
+            (Some(scan), Some(pieces)) => {
+                let large = Large::new(recording, self.source, pieces, scan)?;
+                Opened::Large(Box::new(large))
+            }
+            _ => Opened::Whole(recording),
+        })
     }
 }
 
@@ -215,6 +292,14 @@ pub(super) fn begin_reader(
 ) -> Result<Box<dyn Reader>> {
     let format = probe(source)?;
     (format.begin)(source, options, budget)
+}
+
+/// The options with what side files tell of a format that does not.
+fn completed(options: &OpenOptions, name: &str, sides: &[SideFile]) -> Result<OpenOptions> {
+    Ok(OpenOptions {
+        given: side_files::complete(&options.given, name, sides)?,
+        ..options.clone()
+    })
 }
 
 fn unpacked(sides: Vec<SideFile>) -> Result<Vec<SideFile>> {

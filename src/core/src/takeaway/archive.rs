@@ -9,7 +9,7 @@ use std::fmt::Write as _;
 use std::io::Write;
 
 /// What each file is, by its name or its ending, for README.txt.
-const KINDS: [(&str, &str); 13] = [
+const KINDS: [(&str, &str); 21] = [
     (
         "weights.json",
         "filters for the raw channels, patterns and preparation; `teasel apply` reads it",
@@ -41,6 +41,29 @@ const KINDS: [(&str, &str); 13] = [
     (
         "patterns.npy",
         "patterns as a NumPy array, components × channels",
+    ),
+    (
+        "series.edf",
+        "the same as EDF+ with the recording's events, rounded to 16 bits",
+    ),
+    (
+        "trials.csv",
+        "power of every component in every window, one row each, for statistics elsewhere",
+    ),
+    (
+        "cleaned.edf",
+        "the prepared recording without the chosen components (or with nothing but them), as EDF+",
+    ),
+    (
+        "cleaned.npy",
+        "the same as a NumPy array, channels × samples, without rounding to 16 bits",
+    ),
+    ("cleaned.csv", "what the cleaning did to every channel"),
+    ("methods.txt", "the methods paragraph and its references"),
+    ("references.bib", "the references as BibTeX"),
+    (
+        "row.json",
+        "what `teasel gather` makes a table of recordings from",
     ),
     (
         "report.html",

@@ -112,6 +112,24 @@ pub fn references(sheet: &Sheet) -> Vec<String> {
         .collect()
 }
 
+/// The same works as BibTeX.
+pub fn bibtex(sheet: &Sheet) -> String {
+    let entries: Vec<String> = references(sheet)
+        .iter()
+        .map(|line| super::bibliography::entry(line))
+        .collect();
+    entries.join("\n")
+}
+
+/// The paragraph with the list of its references below, as plain text.
+pub fn methods_text(sheet: &Sheet) -> String {
+    let cited = references(sheet);
+    if cited.is_empty() {
+        return methods(sheet);
+    }
+    format!("{}\n\n{}", methods(sheet), cited.join("\n"))
+}
+
 /// Up to a dozen names, and how many more.
 fn names(names: &[String]) -> String {
     let shown: Vec<String> = names.iter().take(12).map(|n| words::name(n)).collect();
@@ -356,20 +374,7 @@ fn held_out(sheet: &Sheet) -> Option<String> {
 
 fn permutation(sheet: &Sheet) -> Option<String> {
     let test = sheet.permutation.as_ref()?;
-    let how = match (sheet.windows.as_ref().is_some_and(|w| w.paired), test.exact) {
-        (true, true) => format!(
-            "all {} ways to swap the two windows within trials",
-            words::grouped(test.done)
-        ),
-        (true, false) => format!(
-            "{} random swaps of the two windows within trials",
-            words::grouped(test.done)
-        ),
-        (false, _) => format!(
-            "{} random shuffles of the labels over all windows",
-            words::grouped(test.done)
-        ),
-    };
+    let how = kinds::arrangements(sheet, test);
     let p = if test.exact {
         "p is the share of arrangements at least as extreme, the observed one among them"
     } else {

@@ -3,14 +3,23 @@
 //! * [`recipe_json`], [`recipe_from_json`], [`recipe_check`]: the recipe file; [`link_encode`], [`link_decode`]: the same inside an address.
 //! * [`weights_json`], [`weights_csv`], [`weights_npy`]: the filters; [`Weights`] reads them back and applies them to another recording.
 //! * [`results_json`]: every number in full precision.
+//! * [`facts`]: what is told of a recording.
 //! * [`series_csv`], [`series_npy`]: time courses; [`Row`], [`Many`]: many recordings in one table, and what they say together.
-//! * [`readings`]: the sentences beside the figures; [`methods`], [`references`]: the paragraph for a paper.
+//! * [`clean()`]: the recording without some components, or with nothing but them; [`trials_csv`]: power in every window.
+//! * [`readings`]: the sentences beside the figures; [`methods`], [`references`], [`bibtex`]: the paragraph for a paper.
+//! * [`Weights::carry`]: whether saved filters still separate in another recording; [`files()`]: every file of a result.
 //! * [`report_html`]: one page to keep; [`archive`]: everything in one ZIP.
 //!
 //! Whatever a file said about a person or a recorder is not in a [`Sheet`](crate::sheet::Sheet), and so in none of these.
 mod apply;
 mod archive;
+mod bibliography;
+mod carried;
 mod cells;
+mod clean;
+mod excerpt;
+mod facts;
+mod files;
 mod kinds;
 mod link;
 mod many;
@@ -23,15 +32,21 @@ mod samples;
 mod series;
 mod strict;
 mod summary;
+mod trials;
 mod weights;
 mod words;
 
 pub use crate::recipe::recipe_check;
 pub use apply::Applied;
 pub use archive::{archive, safe_name};
+pub use carried::{Carried, CarriedRow};
+pub use clean::{Cleaned, Cleaning, Form, Shares, clean, series_edf, series_recording};
+pub use excerpt::excerpt;
+pub use facts::{Fact, facts, timelines};
+pub use files::files;
 pub use link::{RecipeLink, link_decode, link_encode};
-pub use many::{Group, GroupEnd, Many, Portrait, Row};
-pub use methods::{methods, references};
+pub use many::{Group, GroupEnd, Many, Portrait, Row, folder_names};
+pub use methods::{bibtex, methods, methods_text, references};
 pub use readings::{Reading, Section, Span, Tone, readings};
 pub use recipe_file::{recipe_from_json, recipe_json};
 pub use report::report_html;
@@ -39,6 +54,7 @@ pub use results::results_json;
 pub use samples::{recording_csv, recording_npy};
 pub use series::{series_csv, series_npy};
 pub use summary::{Leader, SummaryRow};
+pub use trials::trials_csv;
 pub use weights::{Weights, weights_csv, weights_json, weights_npy};
 
 use crate::error::{Kind, Problem, Result};

@@ -337,6 +337,9 @@ impl Page<'_> {
                     (self.figure(&name("course")))
                     (self.figure(&name("average")))
                     (self.figure(&name("trials")))
+                    (self.figure(&name("powers")))
+                    (self.figure(&name("time-frequency")))
+                    (self.figure(&name("consistency")))
                 }
             }
         }
@@ -473,13 +476,15 @@ fn rival(kind: ComparatorKind) -> &'static str {
         ComparatorKind::FirstPc => "First principal component",
         ComparatorKind::BestPc => "Best principal component",
         ComparatorKind::BestChannel => "Best channel",
+        ComparatorKind::MeanOfChannels => "Mean of all channels",
+        ComparatorKind::RandomDirection => "Random direction",
     }
 }
 
 fn chosen(comparator: &Comparator) -> Markup {
     html! {
         @match comparator.kind {
-            ComparatorKind::FirstPc => {}
+            ComparatorKind::FirstPc | ComparatorKind::MeanOfChannels | ComparatorKind::RandomDirection => {}
             ComparatorKind::BestPc => { @if let Some(index) = &comparator.chosen { "number " (named(index)) } }
             ComparatorKind::BestChannel => { @if let Some(name) = &comparator.chosen { (named(name)) } }
         }

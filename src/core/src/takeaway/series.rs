@@ -58,3 +58,20 @@ pub(super) fn matrix_npy(rows: &[Vec<f64>]) -> Result<Vec<u8>> {
     writer.finish().map_err(written)?;
     Ok(bytes)
 }
+
+/// The same for f32.
+pub(super) fn matrix_f32_npy(rows: &[Vec<f32>]) -> Result<Vec<u8>> {
+    let columns = rows.first().map_or(0, Vec::len);
+    let mut bytes = Vec::with_capacity(128 + rows.len() * columns * 4);
+    let mut writer = npyz::WriteOptions::new()
+        .default_dtype()
+        .shape(&[rows.len() as u64, columns as u64])
+        .writer(&mut bytes)
+        .begin_nd()
+        .map_err(written)?;
+    for row in rows {
+        writer.extend(row.iter().copied()).map_err(written)?;
+    }
+    writer.finish().map_err(written)?;
+    Ok(bytes)
+}

@@ -13,7 +13,7 @@ pub struct SummaryRow {
     pub recording: String,
     /// Folder that holds its files.
     pub folder: String,
-    /// What went wrong, in one line; the rest is empty then.
+    /// What went wrong, in one line without advice; the rest is empty then.
     pub problem: Option<String>,
     /// Channels analysed.
     pub channels: Option<usize>,
@@ -43,7 +43,7 @@ pub struct SummaryRow {
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct Leader {
     /// Fitted ratio in the measure.
-    pub fitted: f64,
+    pub fitted: Option<f64>,
     /// Held-out typical ratio.
     pub typical_held_out: Option<f64>,
     /// Its 95 % interval.
@@ -76,7 +76,7 @@ impl SummaryRow {
         };
         let leader = |components: &[Component]| {
             components.first().map(|c| Leader {
-                fitted: fitted(c, sheet.recipe.measure),
+                fitted: Some(fitted(c, sheet.recipe.measure)).filter(|x| x.is_finite()),
                 typical_held_out: c.typical.held_out,
                 typical_low: c.typical.interval.map(|i| i[0]),
                 typical_high: c.typical.interval.map(|i| i[1]),
@@ -107,10 +107,16 @@ impl SummaryRow {
 
     /// The row of a recording that could not be analysed.
     pub fn failed(recording: &str, folder: &str, problem: &Problem) -> Self {
+        // What to do now depends on where one stands, page or terminal; what is wrong does not.
+        let told = Problem {
+            advice: String::new(),
+            ..problem.clone()
+        };
+        let told = told.to_string().trim_end_matches("; ").to_owned();
         SummaryRow {
             recording: recording.into(),
             folder: folder.into(),
-            problem: Some(problem.to_string()),
+            problem: Some(told),
             ..SummaryRow::default()
         }
     }
@@ -177,7 +183,7 @@ fn cells(row: &SummaryRow) -> Vec<Cell<'_>> {
     for leader in [&row.stronger_1, &row.weaker_1] {
         let number = |f: fn(&Leader) -> Option<f64>| Cell::Number(leader.as_ref().and_then(f));
         cells.extend([
-            number(|l| Some(l.fitted)),
+            number(|l| l.fitted),
             number(|l| l.typical_held_out),
             number(|l| l.typical_low),
             number(|l| l.typical_high),

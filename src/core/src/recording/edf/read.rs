@@ -1,10 +1,13 @@
 //! From an EDF file's header to a recording: which signals, how many records, decoding slice after slice.
+mod flow;
+
 use super::annotations;
 use super::codes::Codes;
 use super::header::{self, Header, Scale, Signal, Variant, Width, damaged};
 use super::records;
 use crate::error::Result;
 use crate::recording::budget::Budget;
+use crate::recording::large::Flowing;
 use crate::recording::names::{counted, name_apart, opened_before};
 use crate::recording::opening::{OpenOptions, Reader};
 use crate::recording::units::Unit;
@@ -40,6 +43,8 @@ struct EdfReader {
     stretches: Vec<Stretch>,
     notes: Notes,
     warnings: Vec<String>,
+    /// The samples are handed on instead of kept.
+    flows: bool,
 }
 
 /// What is said once however often it happens: how many, and where first.
@@ -70,13 +75,25 @@ pub(super) fn begin(
     if header.variant != Variant::Plain && !header.signals.iter().any(|s| s.is_text) {
         warnings.push(without_text(&header)?);
     }
+    let analysed = |s: &&Signal| s.scale.is_ok() && s.samples == samples;
+    let many = header.signals.iter().filter(analysed).count() as u64;
+    let whole = (records.saturating_mul(samples)).saturating_mul(many * size_of::<f32>() as u64);
+    let flows = budget.flows(whole);
+    let slice_bytes = if flows {
+        SLICE_BYTES.min(budget.share(8))
+    } else {
+        SLICE_BYTES
+    };
+    let slice_records = (slice_bytes / header.record_bytes).clamp(1, records);
+    // Samples that flow are handed on after every slice.
+    let kept = if flows { slice_records } else { records };
     let rate = |samples: u64| samples as f64 / header.record_s;
     let rate_hz = rate(samples);
     let (mut columns, mut channels, mut others) = (Vec::new(), Vec::new(), Vec::new());
     for (index, signal) in header.signals.iter().enumerate() {
         match (&signal.scale, signal.samples == samples) {
             (Ok(scale), true) => {
-                let count = records.saturating_mul(samples);
+                let count = kept.saturating_mul(samples);
                 columns.push(Column {
                     offset: signal.offset as usize,
                     bytes: (width.bytes() * signal.samples) as usize,
@@ -114,7 +131,6 @@ pub(super) fn begin(
     let codes = header.signals.iter().filter(|s| s.is_codes);
     let codes = codes.map(|s| Codes::new(s, header.record_s)).collect();
     name_apart(&mut channels, &mut warnings);
-    let slice_records = (SLICE_BYTES / header.record_bytes).clamp(1, records);
     let mut slice = budget.vec(slice_records * header.record_bytes, "a slice of it")?;
     slice.resize((slice_records * header.record_bytes) as usize, 0);
     let start = Stretch {
@@ -142,6 +158,7 @@ pub(super) fn begin(
         notes: Notes::default(),
         warnings,
         header,
+        flows,
     }))
 }
 
@@ -230,12 +247,19 @@ impl Reader for EdfReader {
         Ok((end(self.done), end(self.records)))
     }
 
+    fn flowing(&mut self) -> Option<&mut dyn Flowing> {
+        if self.flows { Some(self) } else { None }
+    }
+
     fn start_s(&self) -> Option<f64> {
         self.header.start_s
     }
 
     fn finish(mut self: Box<Self>) -> Result<Recording> {
         self.warn_of_notes();
+        if self.flows {
+            self.columns.clear();
+        }
         Ok(Recording {
             name: String::new(),
             format: format!(
@@ -250,6 +274,10 @@ impl Reader for EdfReader {
             layout: crate::recording::Layout::Head,
             stretches: self.stretches,
             events: self.events,
+            about: crate::recording::About {
+                start: self.header.start.clone(),
+                ..crate::recording::About::default()
+            },
             side_files: Vec::new(),
             warnings: self.warnings,
         })

@@ -5,9 +5,11 @@
 //!
 //! The terminal's `run` and `gather` and the page all make their table here, from the same rows, so they cannot differ.
 mod group;
+mod names;
 mod row;
 
 pub use group::{Group, GroupEnd};
+pub use names::folder_names;
 pub use row::{Portrait, Row};
 
 use super::cells::{Cell, table};

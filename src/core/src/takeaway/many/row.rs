@@ -40,6 +40,13 @@ pub struct Portrait {
     pub course: Option<Course>,
 }
 
+/// Whether every value is a number.
+fn whole(curves: &[&Vec<f64>]) -> bool {
+    curves
+        .iter()
+        .all(|curve| curve.iter().all(|x| x.is_finite()))
+}
+
 impl Row {
     /// The row of a recording that was analysed. `folder` tells it from the others.
     pub fn of(sheet: &Sheet, folder: &str) -> Row {
@@ -53,10 +60,35 @@ impl Row {
             Some(Portrait {
                 positions: channels.iter().map(position).collect(),
                 channels,
-                pattern: component.pattern.clone(),
-                held_out: super::super::weights::held_out(component, sheet.recipe.measure),
-                spectra: component.spectra.clone(),
-                course: component.course.clone(),
+                // JSON holds no number that is none.
+                pattern: component
+                    .pattern
+                    .iter()
+                    .map(|x| if x.is_finite() { *x } else { 0.0 })
+                    .collect(),
+                held_out: super::super::weights::held_out(component, sheet.recipe.measure)
+                    .filter(|x| x.is_finite()),
+                spectra: component.spectra.clone().filter(|s| {
+                    let sides = [
+                        &s.signal,
+                        &s.signal_low,
+                        &s.signal_high,
+                        &s.reference,
+                        &s.reference_low,
+                        &s.reference_high,
+                    ];
+                    whole(&sides)
+                }),
+                course: component.course.clone().filter(|c| {
+                    whole(&[
+                        &c.mean_db,
+                        &c.low_db,
+                        &c.high_db,
+                        &c.average,
+                        &c.average_low,
+                        &c.average_high,
+                    ])
+                }),
             })
         };
         Row {
