@@ -173,6 +173,9 @@ fn broken_cells_name_their_place() {
 
 #[test]
 fn rows_before_a_broken_one_can_be_opened() {
+    // The broken row's first cell is whole, and yet nothing of the row is kept.
+    let half = with("a,b\n1,2\n3,4\n5,x\n", told(100.0, "uV"), true).unwrap();
+    assert_eq!(half.samples, [[1.0, 3.0], [2.0, 4.0]]);
     let text = "a,b\n1,2\n3,4\n5\n";
     let problem = refused(text);
     let salvage = problem.salvage.unwrap();

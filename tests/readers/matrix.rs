@@ -6,7 +6,7 @@ use super::{read_with, told};
 use teasel_core::analysis::Analysis;
 use teasel_core::demo::{self, WATCH_SEED};
 use teasel_core::error::Result;
-use teasel_core::recipe::{Given, Recipe};
+use teasel_core::recipe::{Given, Keep, Recipe};
 use teasel_core::recording::{MemorySource, OpenOptions, Recording, SideFile, edf, open};
 use teasel_core::sheet::{Component, Sheet};
 use teasel_core::takeaway::recording_csv;
@@ -119,6 +119,7 @@ fn the_same_results_through_every_format() {
     let planted = demo.recording;
     let mut recipe = demo.recipe;
     recipe.components = 2;
+    recipe.keep = Keep::Number(8);
     recipe.evidence.permutations = 0;
     recipe.evidence.bootstrap = 0;
     let wanted = numbers(&analysed(planted.clone(), &recipe));

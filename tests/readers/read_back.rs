@@ -9,7 +9,8 @@ use teasel_tests::{close_all, rows};
 fn before(stretches: &[(usize, f64)]) -> Recording {
     let channels = [("Fz", "µV"), ("B 2", "fT")];
     let mut before = recording(250.0, stretches, &channels, |c, i| {
-        ((i * 37 + 11 * c) % 4001) as f32 / 10.0 - 200.0
+        // The nearest f32 to a tenth: on the grid that is written without loss.
+        (f64::from(((i * 37 + 11 * c) % 4001) as i32 - 2000) / 10.0) as f32
     });
     before.events = vec![event(0.5, 0.0, "buoy"), event(1.25, 0.5, "Boje → 灯")];
     before

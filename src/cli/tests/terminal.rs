@@ -481,19 +481,17 @@ fn a_table_of_events_beside_the_recording_is_used_and_one_given_is_preferred() {
 fn what_a_table_does_not_say_is_told_by_options_or_by_the_recipe() {
     let desk = desk();
     let recording = &demo().0.recording;
-    let mut text = String::new();
     let names: Vec<&str> = recording.channels.iter().map(|c| c.name.as_str()).collect();
-    text += &format!("{},marker\n", names.join(","));
-    let at = |onset_s: f64| (onset_s * recording.rate_hz).round() as usize;
+    let mut text = format!("{}\n", names.join(","));
     for k in 0..recording.sample_count() {
         let row: Vec<String> = recording.samples.iter().map(|s| s[k].to_string()).collect();
-        let mark = recording.events.iter().find(|e| at(e.onset_s) == k);
-        text += &format!(
-            "{},{}\n",
-            row.join(","),
-            mark.map_or("", |e| e.label.as_str())
-        );
+        text += &format!("{}\n", row.join(","));
     }
+    let mut events = "onset\tduration\ttrial_type\n".to_owned();
+    for event in &recording.events {
+        events += &format!("{}\t{}\t{}\n", event.onset_s, event.duration_s, event.label);
+    }
+    fs::write(desk.path().join("watch_events.tsv"), events).unwrap();
     fs::write(desk.path().join("watch.csv"), text).unwrap();
     let output = teasel(&["inspect", "watch.csv"], desk.path());
     assert_eq!(output.status.code(), Some(1));

@@ -297,6 +297,17 @@ impl TableReader {
         Ok(())
     }
 
+    /// Takes away what the cells before the broken one of its row gave.
+    fn drop_broken_row(&mut self) {
+        let whole = self.samples as usize;
+        for column in &mut self.columns {
+            column.samples.truncate(whole);
+        }
+        if let Some((_, clock)) = &mut self.clock {
+            clock.truncate(whole);
+        }
+    }
+
     /// Rows before a problem can be opened alone.
     fn salvageable(&self, mut problem: Problem) -> Problem {
         let is_of_rows = matches!(problem.kind, Kind::Damaged);
@@ -335,6 +346,7 @@ impl Reader for TableReader {
             }
             self.warnings
                 .push(opened_before(&problem, self.samples, "whole row"));
+            self.drop_broken_row();
             self.done = true;
         }
         match self.done {

@@ -112,6 +112,11 @@ impl Clock {
         self.step_s
     }
 
+    /// Forgets the times after so many rows.
+    pub(super) fn truncate(&mut self, rows: usize) {
+        self.times.truncate(rows);
+    }
+
     /// Takes the time of the next row, as it stands in the table; refuses one that is not about a step after the one before.
     pub(super) fn tick(&mut self, number: f64, line: u64) -> Result<()> {
         let now_s = number * self.factor;
