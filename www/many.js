@@ -149,7 +149,7 @@ export function mountMany(app, doors) {
     const whole = asked === members.length;
     const save = (/** @type {string} */ name, /** @type {string} */ text, /** @type {string} */ type) =>
       make("button", { type: "button", class: "button slim", "data-many": name, click: () => download(name, text, type) }, `Take ${name}`);
-    const figures = whole ? many.figures.map(({ name, caption, figure }) => figureSlot(app, `group-${name}`, { section: "many", title: caption, label: caption, load: () => Promise.resolve(figure) }).root) : [];
+    const figures = whole ? many.figures.map(({ name, caption, figure }) => figureSlot(app, `group-${name}`, { section: "many", title: caption.replace(/^Mean over recordings\. /, ""), label: caption, load: () => Promise.resolve(figure) }).root) : [];
     told.replaceChildren(
       make("p", { class: "say" }, many.said.join(" ")),
       many.but.length ? make("p", { class: "but" }, many.but.join(" ")) : "",

@@ -139,7 +139,7 @@ impl GroupEnd {
         };
         let sure = match test.p {
             Some(p) => format!(
-                ", {} by sign flips over recordings",
+                ", p = {} by sign flips over recordings",
                 crate::takeaway::words::p_value(p)
             ),
             None => String::new(),

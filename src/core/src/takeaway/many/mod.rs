@@ -144,7 +144,8 @@ impl Many {
         }
         if failed > 0 {
             but.push(format!(
-                "{failed} could not be analysed; a group without them is a selected group."
+                "{failed} of {} could not be analysed: a group without them is a selected group.",
+                self.recordings.len()
             ));
         }
         but.extend(self.notes.iter().cloned());
