@@ -62,16 +62,17 @@ struct Sums {
 impl Sums {
     fn add(&mut self, samples: &[f32], near: f32) {
         const LANES: usize = 4;
+        let near = f64::from(near);
         let (mut sum, mut squares) = ([0.0f64; LANES], [0.0f64; LANES]);
         let (whole, rest) = samples.as_chunks::<LANES>();
         for part in whole {
             for i in 0..LANES {
-                let x = f64::from(part[i] - near);
+                let x = f64::from(part[i]) - near;
                 sum[i] += x;
                 squares[i] += x * x;
             }
         }
-        for x in rest.iter().map(|x| f64::from(x - near)) {
+        for x in rest.iter().map(|x| f64::from(*x) - near) {
             sum[0] += x;
             squares[0] += x * x;
         }
