@@ -3,6 +3,8 @@
 mod contrast;
 mod describe;
 mod dimensions;
+mod kinds;
+mod large;
 mod prepare;
 mod quality;
 mod readers;

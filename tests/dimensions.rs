@@ -202,9 +202,7 @@ fn white_noise_makes_the_rank_full_and_hardly_changes_what_stands_out() {
             reference: &samples,
             lag: 0,
         };
-        windows
-            .iter()
-            .for_each(|w| all.push(&reader, w, None, false));
+        windows.iter().for_each(|w| all.push(&reader, w, false));
         let space = Space::new(&all, 150, |_| true);
         let card = counted(&samples, &windows, &space.eigenvalues[..space.rank]);
         let stands_out = outstanding(&card.correlation, &card.surrogate_95);

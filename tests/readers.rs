@@ -15,13 +15,26 @@
 //! | EDF+ 2.2.2: onset, duration, several texts, UTF-8 | `outside::committed_files` (words), unit tests of the reader |
 //! | EDF+ 2.2.3: several annotation signals | `outside::committed_files` (words), `spec::several_annotation_signals` |
 //! | EDF+ 2.2.4: the record's own onset, a start that is a fraction late | `outside::committed_files` (late), `spec::gaps_make_stretches`, `outside::files_of_the_wheel` |
+//! | EDF: start date and time, years from 85 on of the last century | `parts::midnight_leap_days_and_the_turn_of_a_century` |
+//! | BDF: first byte 255 and `BIOSEMI`, 24-bit little-endian two's complement, `24BIT` | `bdf::samples_annotations_and_trigger_codes`, `outside::files_of_the_wheel` |
+//! | BDF+: `BDF+C`, `BDF+D`, `BDF Annotations` | `bdf` |
+//! | BDF: trigger codes in the low 16 bits of `Status` (common practice, no source) | `bdf::samples_annotations_and_trigger_codes` |
+//! | RFC 4180: separators, line ends, quotation marks | `delimited` |
+//! | RFC 1952: members, sums, lengths | `packed` |
 //! | BIDS events: onset, duration, trial_type, value, `n/a` | `tables` |
-//! | any bytes at all: an answer, no panic, little memory | `hostile` |
-//! | what is written is read again | `written`, `watch` |
+//! | any bytes at all: an answer, no panic, little memory | `hostile`, `changed` |
+//! | what is written is read again, here and by general libraries | `written`, `watch`, `read_back` |
+//! | the same recording in every format gives the same results | `matrix` |
+mod bdf;
+mod changed;
 mod delimited;
 mod hostile;
+mod matrix;
 mod outside;
+mod packed;
+mod parts;
 mod plan;
+mod read_back;
 mod refused;
 mod spec;
 mod tables;

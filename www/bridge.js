@@ -5,6 +5,7 @@
  * the page.
  */
 import init, * as module from "teasel-module";
+import { sorted } from "./files.js";
 
 /** @typedef {import("./types").Problem} Problem */
 /** @typedef {import("./types").Recipe} Recipe */
@@ -25,8 +26,6 @@ import init, * as module from "teasel-module";
  * @property {{ words: string, memory: number }} died the worker ended; `revive` starts another
  */
 
-/** Side files by the names that the standards give them; everything else is a recording. */
-const SIDE_FILE = /\.(tsv|json|csv)$/i;
 /** A side file is a table of events or channels: none is this large. */
 const SIDE_BYTES = 64 * 1024 * 1024;
 
@@ -105,16 +104,17 @@ export class Bridge {
   }
 
   /**
-   * Opens a recording with its side files, in place of what is open. Rejects with a Problem; where the header already fails, what was open
+   * Opens a recording, of one file or several, with its side files, in place of what is open. Rejects with a Problem; where the header already fails, what was open
    * stays open, and otherwise `holds` says that it did not.
    * @param {File[]} files
    * @param {{ salvage?: boolean, given?: Given }} [options] `given` is what the file does not carry
    * @returns {Promise<Summary>}
    */
   async open(files, { salvage = false, given = {} } = {}) {
-    const { recording, sides } = sorted(files);
+    const { recordings, sides } = await sorted(files);
+    if (!recordings.length) throw problem("empty", "no recording was given", "Choose a recording, with the side files that lie beside it.");
     const small = await Promise.all(sides.map(whole));
-    return this.#opened(() => this.open(files, { salvage, given }), this.#ask("open", recording, small, salvage, given));
+    return this.#opened(() => this.open(files, { salvage, given }), this.#ask("open", recordings, small, salvage, given));
   }
 
   /** @param {string} which @returns {Promise<Summary>} */
@@ -187,6 +187,20 @@ export class Bridge {
     return this.#ask("traces", fromS, seconds, channels);
   }
 
+  /** The lines that can be drawn now. @returns {Promise<import("./types").Tracks>} */
+  tracks() {
+    return this.#ask("tracks");
+  }
+
+  /**
+   * For each of some lines the smallest and the largest value of `count` bins of `size` samples from bin `first` on.
+   * @param {import("./types").LineKind} kind @param {number[]} lines indexes @param {number} size a power of four @param {number} first @param {number} count
+   * @returns {Promise<Float32Array>}
+   */
+  bins(kind, lines, size, first, count) {
+    return this.#ask("bins", kind, lines, size, first, count);
+  }
+
   /**
    * The bytes of one of the files to take away.
    * @param {string} kind
@@ -232,6 +246,10 @@ export class Bridge {
   /** @param {Figure} figure @returns {Table} */
   table(figure) {
     return module.figureTable(figure);
+  }
+  /** Places of the names in the order in which files of one recording are joined. @param {string[]} names @returns {number[]} */
+  naturalOrder(names) {
+    return [...module.naturalOrder(names)];
   }
   /** @param {string} text @returns {Recipe} */
   parseRecipe(text) {
@@ -288,6 +306,7 @@ export class Bridge {
   /** @param {any} data @param {(problem: Problem) => void} failed */
   #heard(data, failed) {
     if (data.event === "died") return failed(this.#died(data));
+    if (data.event === "progress" && data.stage === "reading" && data.done === data.of) performance.mark("teasel:read");
     if (data.event) return this.#say(data.event, data.problem ?? data);
     const waiting = this.#waiting.get(data.id);
     this.#waiting.delete(data.id);
@@ -310,20 +329,6 @@ export class Bridge {
   #say(name, news) {
     for (const listener of this.#listeners.get(name) ?? []) listener(news);
   }
-}
-
-/** @param {File[]} files */
-function sorted(files) {
-  const recordings = files.length === 1 ? files : files.filter(({ name }) => !SIDE_FILE.test(name));
-  const sides = files.filter((file) => !recordings.includes(file));
-  const [recording] = recordings;
-  if (recording && recordings.length === 1) return { recording, sides };
-  const names = recordings.map(({ name }) => name).join(", ");
-  throw problem(
-    recording ? "unsupported" : "empty",
-    recording ? `${recordings.length} recordings were given at once: ${names}` : "no recording was given",
-    "Choose one recording, with the side files that lie beside it.",
-  );
 }
 
 /** @param {File} file @returns {Promise<NamedBytes>} */

@@ -29,10 +29,13 @@ export function mountChoosing(app, compute) {
     const { summary, recipe } = state;
     if (!summary || !recipe) return;
     const events = Object.entries(summary.recording.events).sort((a, b) => b[1] - a[1]).slice(0, 8);
+    const windows = recipe.contrast.kind === "windows";
     const focused = document.activeElement?.getAttribute("data-event");
     place.replaceChildren(
-      make("h3", {}, "Which event holds the activity of interest?"),
-      make("div", { class: "events" }, ...events.map(([name, many]) => card(app, name, many, isSmall(summary) ? compute : null))),
+      ...(windows ? [
+        make("h3", {}, "Which event holds the activity of interest?"),
+        make("div", { class: "events" }, ...events.map(([name, many]) => card(app, name, many, isSmall(summary) ? compute : null))),
+      ] : []),
       make("p", { class: "need" },
         make("button", { type: "button", class: "button main", id: "compute", click: compute }, "Compute"),
         make("span", { class: "quiet" }, `${count(values(summary) / 1e6)} million values: needs about ${size(values(summary) * BYTES_A_VALUE)} of memory. It can be stopped at any time.`)),
@@ -44,7 +47,7 @@ export function mountChoosing(app, compute) {
 /** @param {App} app @param {string} name @param {number} many @param {(() => void) | null} then what follows the choice, where it costs little */
 function card(app, name, many, then) {
   const { recipe, summary } = now();
-  const contrast = recipe?.contrast;
+  const contrast = recipe?.contrast.kind === "windows" ? recipe.contrast : undefined;
   const onsets = summary?.recording.event_onsets_s[name] ?? [];
   const last = Math.max(1, ...Object.values(summary?.recording.event_onsets_s ?? {}).flatMap((list) => list.slice(-1)));
   const ticks = onsets.slice(0, 2000).map((t) => `M${(2 + (396 * t) / last).toFixed(1)} 6V19`).join("");
@@ -53,6 +56,7 @@ function card(app, name, many, then) {
     type: "button", class: "event", "data-event": name, "aria-pressed": String(contrast?.signal.event === name),
     click: () => {
       app.change((next) => {
+        if (next.contrast.kind !== "windows") return;
         next.contrast.signal.event = name;
         next.contrast.reference.event = name;
       });

@@ -23,16 +23,22 @@ const rows = new Map();
 export function mountComponents(app) {
   const body = find("#components .body");
   const measure = picks("Measure", "measure", (value) => app.change((recipe) => order(recipe, value === "total" ? "total" : "typical")));
+  const only = make("span", { class: "quiet small", hidden: true }, "What repeats has no ratio in a single trial: the average over trials is one for all of them.");
   const table = make("tbody");
   const axis = figureSlot(app, "ratio-axis", { section: "components", label: "Axis of ratios, from one quarter to four times", width: 210, height: 26 });
   body.append(
-    make("div", { class: "choice" }, "Order and test by ", measure.root),
+    make("div", { class: "choice" }, "Order and test by ", measure.root, only),
     make("figure", { class: "figure" },
       make("div", { class: "caption" }, make("b", {}, "What differs"), make("span", { class: "quiet" }, make("span", { class: "of-signal" }, "—"), " signal   ", make("span", { class: "of-reference" }, "- -"), " reference")),
       make("div", { class: "scroll", tabindex: -1 }, make("table", { class: "comps" }, headings(axis.root), table))),
   );
   follow((state, before) => {
-    if (state.recipe !== before.recipe || state.sheet !== before.sheet) measure.show([{ value: "typical", label: "typical trial" }, { value: "total", label: "total power" }], (state.recipe ?? state.sheet?.recipe)?.measure);
+    if (state.recipe !== before.recipe || state.sheet !== before.sheet) {
+      const recipe = state.recipe ?? state.sheet?.recipe;
+      const repeats = recipe?.contrast.kind === "repeatable";
+      measure.show([...(repeats ? [] : [{ value: "typical", label: "typical trial" }]), { value: "total", label: "total power" }], recipe?.measure);
+      only.hidden = !repeats;
+    }
     if (state.sheet !== before.sheet) show(app, table);
   });
 }
@@ -122,11 +128,13 @@ function turn(app, row, to) {
 function fill(row, component) {
   if (!row) return;
   const { typical, total, p, stability, places_changed } = component;
-  row.row.classList.toggle("half", typical.held_out === null && now().phase === "working");
+  const untested = typical.held_out === null && total.held_out === null;
+  row.row.classList.toggle("half", untested && now().phase === "working");
   // A held-out ratio on its way leaves the one before in place, in grey.
   if (row.row.classList.contains("half") && row.cells.typical?.textContent) return;
-  const held = make("b", {}, factor(typical.held_out ?? typical.fitted));
-  const span = typical.held_out === null ? "fitted only" : interval(typical.interval);
+  const value = typical.held_out ?? typical.fitted;
+  const held = value === null ? "–" : make("b", {}, factor(value));
+  const span = value === null ? "" : typical.held_out === null ? "fitted only" : interval(typical.interval);
   row.cells.typical?.replaceChildren(held, make("br"), make("span", { class: "span" }, span));
   row.cells.total?.replaceChildren(total.held_out === null ? `${factor(total.fitted)} fitted` : factor(total.held_out));
   row.cells.p?.replaceChildren(probability(p));

@@ -2,6 +2,7 @@
 import { find, make } from "./kit.js";
 import { numberField, select } from "./fields.js";
 import { figureSlot } from "./figure.js";
+import { looksAndLock } from "./looks.js";
 import { count } from "./numbers.js";
 import { follow, now } from "./state.js";
 
@@ -19,7 +20,7 @@ export function mountEvidence(app, goOn) {
   const pair = make("div", { class: "pair" }, make("div", {}, beside, nothing, choices.root), make("div", {}, alike, weaker));
   const trials = figureSlot(app, "trial-by-trial", { section: "evidence", title: "Trial by trial", hint: "held-out, in order of time; each trial scored by filters that never saw it", label: "Held-out ratio of every trial" }).root;
   const stopped = make("p", { class: "stopped", hidden: true }, "Stopped before the end; what was computed stays.", make("button", { type: "button", class: "button slim", id: "go-on", click: goOn }, "Go on"));
-  body.append(stopped, pair, trials);
+  body.append(stopped, pair, trials, looksAndLock(app));
   follow((state, before) => {
     if (state.recipe !== before.recipe) choices.show();
     stopped.hidden = !state.stopped;
@@ -32,8 +33,10 @@ export function mountEvidence(app, goOn) {
 function permuted(sheet) {
   const test = sheet?.permutation;
   if (!test || !test.done) return "";
-  const many = test.exact ? `All ${count(test.done)} arrangements were tried` : `${count(test.done)} arrangements were drawn`;
-  return `${test.null.replace(/\.?$/, ".")} ${many}; p is (b + 1) / (m + 1), where b of m reach the observed ratio. Each component is held against the largest ratio of an arrangement, so p holds for all of them together.`;
+  const few = test.distinct !== null && test.distinct < 1000 && !test.exact ? ` of ${count(test.distinct)} distinct ones` : "";
+  const many = test.exact ? `All ${count(test.done)} distinct arrangements were tried, the observed one among them; p is b / m` : `${count(test.done)} arrangements${few} were drawn; p is (b + 1) / (m + 1)`;
+  const level = test.done && test.exact && test.done < 100 ? ` The smallest p that can be reached is 1 / ${count(test.done)}.` : "";
+  return `${test.null.replace(/\.?$/, ".")} ${many}, where b of m reach the observed ratio.${level} Each component is held against the largest ratio of an arrangement, so p holds for all of them together.`;
 }
 
 /** @param {App} app */

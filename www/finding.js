@@ -1,6 +1,7 @@
 /** So far: the finding in one sentence, with the two leading maps. */
 import { find, make } from "./kit.js";
 import { figureSlot } from "./figure.js";
+import { KIND_WORDS } from "./kinds.js";
 import { follow, now } from "./state.js";
 
 /** @typedef {import("./types").App} App */
@@ -43,7 +44,9 @@ export function differences(before, after) {
   const said = [];
   const other = (/** @type {unknown} */ a, /** @type {unknown} */ b) => JSON.stringify(a) !== JSON.stringify(b);
   if (other(before.keep, after.keep)) said.push(typeof before.keep === "number" ? `keep ${before.keep}` : `the rule “${before.keep}” for C`);
-  for (const side of /** @type {const} */ (["signal", "reference"])) {
+  if (before.contrast.kind !== after.contrast.kind) said.push(`the comparison of ${KIND_WORDS[before.contrast.kind]}`);
+  else if (before.contrast.kind !== "windows" && other(before.contrast, after.contrast)) said.push(`the ${KIND_WORDS[before.contrast.kind]} before`);
+  if (before.contrast.kind === "windows" && after.contrast.kind === "windows") for (const side of /** @type {const} */ (["signal", "reference"])) {
     const window = before.contrast[side];
     if (other(window, after.contrast[side])) said.push(`${side} ${window.from_s.toFixed(2)} to ${window.to_s.toFixed(2)} s around ${window.event}`.replace(/-/g, "−"));
   }

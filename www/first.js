@@ -1,4 +1,5 @@
 /** The first screen, and dropping anywhere on the page. Drop, picker and demo all end in `open`. */
+import { droppedFiles } from "./files.js";
 import { find } from "./kit.js";
 import { combing } from "./combing.js";
 import { follow } from "./state.js";
@@ -50,7 +51,6 @@ function acceptDrops(doors) {
   addEventListener("drop", (event) => {
     event.preventDefault();
     over(-depth);
-    const files = [...(event.dataTransfer?.files ?? [])];
-    if (files.length) doors.files(files);
+    if (event.dataTransfer) void droppedFiles(event.dataTransfer).then((files) => files.length && doors.files(files));
   });
 }

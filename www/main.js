@@ -9,6 +9,7 @@ import { mountEvidence } from "./evidence.js";
 import { figuresOf, mountFigures } from "./figure.js";
 import { mountFinding } from "./finding.js";
 import { mountFirst } from "./first.js";
+import { mountHistory } from "./history.js";
 import { mountLedger } from "./ledger.js";
 import { duration, size } from "./numbers.js";
 import { unsay } from "./notices.js";
@@ -71,6 +72,7 @@ function join(bridge) {
   });
   mountProgress(() => void doors.stop());
   mountRecipeLink(bridge);
+  mountHistory(app);
   head();
   sections(app);
   return doors;

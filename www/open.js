@@ -1,4 +1,6 @@
 /** The one door: drop, picker, demo and link meet here, and what goes wrong is said in the error's own words. */
+import { sayAsks, sayParts } from "./asking.js";
+import { sorted } from "./files.js";
 import { download, find } from "./kit.js";
 import { isSmall } from "./choosing.js";
 import { asProblem, unsay } from "./notices.js";
@@ -10,11 +12,12 @@ import { now, put } from "./state.js";
 /** @typedef {import("./types").App} App */
 /** @typedef {import("./types").Recipe} Recipe */
 /** @typedef {import("./types").Summary} Summary */
-/** @typedef {{ files: File[], salvage: boolean } | { demo: string }} Source */
+/** @typedef {import("./types").Given} Given */
+/** @typedef {{ files: File[], salvage: boolean, given?: Given } | { demo: string }} Source */
 /** @typedef {{ recipe: Recipe, link: string | null }} Waiting */
 
 /** Files that lie beside a recording and are none. */
-const BESIDE = /\.tsv$|_(events|channels|electrodes|coordsystem|eeg)\.(json|csv)$/i;
+const BESIDE = /\.tsv$|_(events|channels|electrodes|coordsystem|eeg|ieeg|meg|nirs)\.(json|csv)$/i;
 
 /**
  * @param {App} app
@@ -52,7 +55,7 @@ export function door({ bridge, change: edit }, compute) {
     if (phase !== "reading") before = phase;
     put({ phase: "reading", progress: { stage: "demo" in source ? "making" : "reading", done: 0, of: 1 } });
     try {
-      const summary = "demo" in source ? await bridge.openDemo(source.demo) : await bridge.open(source.files, { salvage: source.salvage });
+      const summary = "demo" in source ? await bridge.openDemo(source.demo) : await bridge.open(source.files, asked(source));
       if (mine === turn) await arrive(source, summary);
     } catch (thrown) {
       if (mine === turn) await keep(thrown, source).catch(failed);
@@ -77,7 +80,7 @@ export function door({ bridge, change: edit }, compute) {
     if (!summary || !good) return void (problem.kind === "stopped" && put({ phase: "empty", progress: null }));
     const mine = turn;
     const holds = await bridge.holds();
-    if (!holds) await ("demo" in good ? bridge.openDemo(good.demo) : bridge.open(good.files, { salvage: good.salvage }));
+    if (!holds) await ("demo" in good ? bridge.openDemo(good.demo) : bridge.open(good.files, asked(good)));
     if (mine !== turn) return;
     if (before === "choosing") return put({ phase: "choosing", progress: null });
     if (recipe && (!holds || before === "working")) compute();
@@ -93,7 +96,7 @@ export function door({ bridge, change: edit }, compute) {
     const proposal = await bridge.propose();
     const link = waiting?.link ? bridge.linkComplete(waiting.link, events) : null;
     const guessed = waiting?.link ? bridge.linkDecode(waiting.link).events !== null && Object.keys(events).length > 1 : !waiting && !isDemo() && isTied(events);
-    const recipe = link?.recipe ?? waiting?.recipe ?? proposal?.recipe ?? unproposed(bridge, summary);
+    const recipe = withTold(link?.recipe ?? waiting?.recipe ?? proposal?.recipe ?? unproposed(bridge, summary));
     if (link?.notes.length) sayOpenEnds(link.notes);
     if (!recipe) {
       put({ phase: "choosing", progress: null });
@@ -112,6 +115,20 @@ export function door({ bridge, change: edit }, compute) {
     return now().source?.demo !== null;
   }
 
+  /** Files as they were dropped or chosen; several recordings are opened as one only when that is said. @param {File[]} files */
+  async function gather(files) {
+    const all = withRecording(files);
+    const told = all === files ? {} : given();
+    const { recordings } = await sorted(all).catch(() => ({ recordings: [] }));
+    const join = () => void open({ files: all, salvage: false, given: told });
+    if (recordings.length < 2) return join();
+    const names = recordings.map(({ name }) => name);
+    const order = bridge.naturalOrder(names).map((at) => names[at] ?? "");
+    unsay("#hint");
+    sayParts(order, [{ label: "Open them as one recording", main: true, act: join }, { label: "Choose another recording…", act: pick }, ...(now().summary ? [{ label: `Stay with ${now().source?.name ?? "this one"}`, act: stay }] : [])]);
+    put({ phase: "error", progress: null });
+  }
+
   /** @param {unknown} thrown */
   function failed(thrown) {
     const problem = asProblem(thrown);
@@ -119,6 +136,8 @@ export function door({ bridge, change: edit }, compute) {
     if (problem.kind === "died") return;
     if (problem.kind === "stopped") return put({ phase: now().summary ? "ready" : "empty", progress: null });
     put({ phase: "error", progress: null });
+    const asking = last && "files" in last ? last : null;
+    if (problem.asks?.length && asking) return sayAsks(problem, asked(asking).given, (told) => void open({ ...asking, given: { ...asking.given, ...told } }), waysOn(problem));
     sayProblem(problem, waysOn(problem));
   }
 
@@ -128,7 +147,7 @@ export function door({ bridge, change: edit }, compute) {
     const { finished, summary, source } = now();
     const ofChoices = kind === "contrast" || kind === "recipe";
     const ways = [
-      salvage && files && { label: `Open the ${count(salvage.records)} whole records`, main: true, act: () => void open({ files, salvage: true }) },
+      salvage && files && { label: `Open the ${count(salvage.records)} whole records`, main: true, act: () => void open({ files, salvage: true, given: last && "files" in last ? last.given : {} }) },
       ofChoices && finished && { label: "Back to the choices before", main: true, act: () => back(finished) },
       kind === "recipe" && !finished && { label: "Open another recipe…", act: () => find("#recipe-file").click() },
       ofChoices && summary && { label: "Propose afresh", act: () => void afresh() },
@@ -192,7 +211,7 @@ export function door({ bridge, change: edit }, compute) {
     /** @param {File[]} files */
     async files(files) {
       const own = files.length === 1 && files[0]?.name.endsWith(".json") ? files[0] : null;
-      await (own ? this.recipe(own) : open({ files: withRecording(files), salvage: false }));
+      await (own ? this.recipe(own) : gather(files));
     },
     /** @param {string} which */
     demo: (which) => open({ demo: which }),
@@ -205,7 +224,10 @@ export function door({ bridge, change: edit }, compute) {
         const recipe = bridge.parseRecipe(text);
         if (!now().summary) return wait({ recipe, link: null }, `${file.name} is open`);
         unsay("#hint");
-        change(recipe);
+        if (!good || !("files" in good) || tellsNothingNew(recipe)) return change(/** @type {Recipe} */ (withTold(recipe)));
+        // The recipe reads the file in another way than it is open: it is opened again, with the recipe waiting for it.
+        waiting = { recipe, link: null };
+        await open({ ...good, given: { ...good.given, ...recipe.recording } });
       } catch (thrown) {
         const problem = asProblem(thrown);
         failed({ ...problem, file: problem.file ?? file.name });
@@ -235,6 +257,28 @@ export function door({ bridge, change: edit }, compute) {
       sayEnded(() => void again(), summary && recipe ? takeRecipe : null);
     },
   };
+
+  /** @returns {Given} */
+  function given() {
+    return good && "files" in good ? (good.given ?? {}) : {};
+  }
+
+  /** A recipe with what the open recording was opened with. @param {Recipe | null} recipe */
+  function withTold(recipe) {
+    if (!recipe || !good || !("files" in good)) return recipe;
+    return { ...recipe, recording: asked(good).given };
+  }
+
+  /** Whether a recipe tells of the recording what it was opened with, or nothing. @param {Recipe} recipe */
+  function tellsNothingNew(recipe) {
+    const old = /** @type {Record<string, unknown>} */ (given());
+    return Object.entries(recipe.recording ?? {}).every(([key, value]) => value === null || value === undefined || JSON.stringify(value) === JSON.stringify(old[key]));
+  }
+
+  /** How a file is to be opened: a recipe that waits may tell what the file does not. @param {{ salvage: boolean, given?: Given }} source */
+  function asked({ salvage, given: told }) {
+    return { salvage, given: { ...waiting?.recipe.recording, ...told } };
+  }
 
   /** Side files alone belong to the recording that is open. @param {File[]} files */
   function withRecording(files) {

@@ -1,9 +1,25 @@
 /** Shapes that cross between the core, the worker and the page. They follow src/core/src/{recipe,sheet,error}.rs field by field. */
 export interface EventWindow {
   event: string;
+  also?: string[];
   from_s: number;
   to_s: number;
+  until?: string;
+  first?: number;
+  last?: number;
+  leave_out?: number[];
+  equal?: boolean;
 }
+export type SpanList = [number, number][];
+/** Times, or the label of annotations that last; as a reference "rest" is everything else. */
+export type Spans = SpanList | string;
+export type Contrast =
+  | { kind: "windows"; signal: EventWindow; reference: EventWindow }
+  | { kind: "spans"; signal: Spans; reference: Spans; piece_s?: number }
+  | { kind: "band"; centre_hz: number; half_width_hz: number; reference: "flanks" | "broadband"; within?: EventWindow | Spans; piece_s?: number }
+  | ({ kind: "repeatable" } & EventWindow)
+  | { kind: "slow"; lag_s: number; within?: EventWindow | Spans; piece_s?: number };
+export type Kind = Contrast["kind"];
 export interface Recipe {
   teasel_recipe: number;
   recording?: Given;
@@ -16,7 +32,9 @@ export interface Recipe {
   drop_windows?: Partial<Record<"amplitude" | "step" | "flat" | "covariance", { z: number } | { uv: number }>>;
   keep: number | "auto" | "best";
   measure: "typical" | "total";
-  contrast: { kind: "windows"; signal: EventWindow; reference: EventWindow };
+  contrast: Contrast;
+  not_used?: SpanList;
+  hold_back?: { last: number; open: boolean };
   shrink: number | "auto" | "ledoit-wolf" | "oas";
   components: number;
   evidence: { folds: number; permutations: number; bootstrap: number; seed: number };
@@ -53,7 +71,8 @@ export interface SideCard {
   seconds: number;
 }
 export interface TypicalRatio {
-  fitted: number;
+  /** null where the kind of contrast has no ratio in a single trial */
+  fitted: number | null;
   held_out: number | null;
   interval: [number, number] | null;
 }
@@ -102,7 +121,8 @@ export interface Sheet {
   stronger: Component[];
   weaker: Component[];
   compare: unknown[];
-  permutation: { asked: number; done: number; exact: boolean; null: string } | null;
+  held_back?: { signal: number; reference: number; stronger: { typical: number | null; total: number }[]; weaker: { typical: number | null; total: number }[] };
+  permutation: { asked: number; done: number; distinct: number | null; exact: boolean; null: string } | null;
   folds: { trials: number; ratio: number }[];
   warnings: string[];
 }
@@ -161,6 +181,23 @@ export type Figure = object;
 export interface Table {
   columns: string[];
   rows: string[][];
+}
+/** Lines to look at: channels as recorded, channels as prepared, components. */
+export type LineKind = "recorded" | "prepared" | "components";
+export interface Stretch {
+  first: number;
+  count: number;
+  onset_s: number;
+}
+export interface Track {
+  rate_hz: number;
+  stretches: Stretch[];
+  lines: { name: string; unit: string; swing: number }[];
+}
+export interface Tracks {
+  recorded: Track;
+  prepared: Track | null;
+  components: Track | null;
 }
 export interface Progress {
   stage: string;
@@ -228,12 +265,15 @@ export interface Bridge {
   on(name: string, listener: (news: any) => void): void;
   figure(name: string): Promise<Figure | null>;
   traces(from_s: number, seconds: number, channels: number[]): Promise<Figure>;
+  tracks(): Promise<Tracks>;
+  bins(kind: LineKind, lines: number[], size: number, first: number, count: number): Promise<Float32Array>;
   takeaway(kind: string, extras?: { name: string; bytes: Uint8Array<ArrayBuffer> }[]): Promise<Uint8Array<ArrayBuffer>>;
   draw(canvas: HTMLCanvasElement, figure: Figure, options: DrawOptions): void;
   figureHeight(figure: Figure, width: number): number;
   plotBox(figure: Figure, width: number, height: number): PlotBox | null;
   svg(figure: Figure, width: number, height: number): string;
   table(figure: Figure): Table;
+  naturalOrder(names: string[]): number[];
   parseRecipe(text: string): Recipe;
   linkEncode(recipe: Recipe, withNames: boolean): string;
   recipeText(recipe: Recipe): string;

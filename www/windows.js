@@ -1,8 +1,10 @@
-/** Windows: which event, from when to when, by typing, dragging or arrows. */
+/** Windows around events, both sides: which event, from when to when, by typing, dragging or arrows. */
 import { find, make } from "./kit.js";
 import { edgesOver } from "./edges.js";
 import { numberField, picks, select } from "./fields.js";
 import { figureSlot } from "./figure.js";
+import { kindChoice } from "./kinds.js";
+import { windowTools } from "./window-tools.js";
 import { seconds } from "./numbers.js";
 import { follow, now } from "./state.js";
 
@@ -19,12 +21,21 @@ let plot = null;
 /** Ends of the time axis while an edge is dragged. @type {[number, number] | null} */
 let held = null;
 
+/** The contrast of a recipe that is to be changed, where it is made of event windows. @param {import("./types").Recipe} recipe */
+function sides({ contrast }) {
+  return contrast.kind === "windows" ? contrast : null;
+}
+
 /** @param {App} app */
 export function mountWindows(app) {
   const body = find("#windows .body");
+  const kinds = kindChoice(app);
   const event = picks("Event of the signal windows", "signal-event", (value) => takeEvent(app, value));
   const events = select("event of the signal windows", (value) => takeEvent(app, value));
-  const against = select("event of the reference windows", (value) => app.change(({ contrast }) => void (contrast.reference.event = value)));
+  const against = select("event of the reference windows", (value) => app.change((recipe) => {
+    const both = sides(recipe);
+    if (both) both.reference.event = value;
+  }));
   /** @type {ReturnType<typeof numberField>[]} */
   const fields = /** @type {[Side, End][]} */ ([["signal", "from_s"], ["signal", "to_s"], ["reference", "from_s"], ["reference", "to_s"]]).map(([side, end]) =>
     numberField(`${side} ${end === "from_s" ? "from" : "to"}, in seconds from the event`, {
@@ -42,13 +53,15 @@ export function mountWindows(app) {
     const other = fields[i ^ 1];
     if (pending() === null && other && other.pending() !== null) other.commit();
   }));
-  const why = make("span", { class: "quiet small" });
-  body.append(
+  const why = make("p", { class: "quiet small why" });
+  const tools = windowTools(app, "signal");
+  const own = make("div", { class: "kind" },
     make("div", { class: "choice" }, event.root, events.root,
       make("span", { class: "together" }, make("span", { class: "of-signal" }, "signal"), fields[0]?.field, " to ", fields[1]?.field, " s"),
       make("span", { class: "together" }, make("span", { class: "of-reference" }, "reference"), fields[2]?.field, " to ", fields[3]?.field, " s")),
-    make("div", { class: "choice" }, make("span", { class: "together" }, "reference windows around ", against.root), why),
-  );
+    make("div", { class: "choice" }, make("span", { class: "together" }, "reference windows around ", against.root)),
+    tools.root);
+  body.append(kinds.root, why, own, kinds.fields);
   const figure = figureSlot(app, "windows", {
     section: "windows", title: "Average time course", hint: "drag an edge, or move it with the arrow keys", label: "Power of the leading component around the event, with the two windows",
     bare: (course) => !course.t_s.length,
@@ -69,10 +82,16 @@ export function mountWindows(app) {
     },
   })));
   body.append(figure.root);
+  figure.root.classList.add("around-events");
   follow((state, before) => {
     if (state.recipe === before.recipe && state.summary === before.summary && state.sheet === before.sheet) return;
     why.textContent = state.why;
     why.hidden = !state.why;
+    const kind = state.recipe?.contrast.kind;
+    own.hidden = kind !== undefined && kind !== "windows";
+    figure.root.hidden = own.hidden;
+    kinds.show();
+    tools.show();
     showEvents(event, events, against);
     for (const field of fields) field.show();
     edges.lay();
@@ -97,7 +116,8 @@ function adjust(course) {
 
 /** @param {Side} side */
 function window(side) {
-  return now().recipe?.contrast[side];
+  const contrast = now().recipe?.contrast;
+  return contrast?.kind === "windows" ? contrast[side] : undefined;
 }
 
 /** Seconds a sample after the preparation. */
@@ -123,11 +143,13 @@ function onGrid(t) {
 function move(app, side, end, to) {
   const value = onGrid(to);
   if (value === window(side)?.[end]) return;
-  app.change(({ contrast }) => {
+  app.change((recipe) => {
+    const own = sides(recipe)?.[side];
+    if (!own) return;
     const least = LEAST * sample();
-    contrast[side][end] = value;
-    if (end === "from_s") contrast[side].to_s = Math.max(contrast[side].to_s, onGrid(value + least));
-    else contrast[side].from_s = Math.min(contrast[side].from_s, onGrid(value - least));
+    own[end] = value;
+    if (end === "from_s") own.to_s = Math.max(own.to_s, onGrid(value + least));
+    else own.from_s = Math.min(own.from_s, onGrid(value - least));
   });
 }
 
@@ -141,14 +163,16 @@ function unordered(side, end, to, other) {
 /** An end as it was typed, with the other end as it stands in its field. @param {App} app @param {Side} side @param {End} end @param {number} to @param {number} other */
 function fix(app, side, end, to, other) {
   const next = end === "from_s" ? { from_s: onGrid(to), to_s: onGrid(other) } : { from_s: onGrid(other), to_s: onGrid(to) };
-  app.change(({ contrast }) => void Object.assign(contrast[side], next));
+  app.change((recipe) => void Object.assign(sides(recipe)?.[side] ?? {}, next));
 }
 
 /** The reference stays with the event that the signal had, unless both had the same. @param {App} app @param {string} event */
 function takeEvent(app, event) {
-  app.change(({ contrast }) => {
-    if (contrast.reference.event === contrast.signal.event) contrast.reference.event = event;
-    contrast.signal.event = event;
+  app.change((recipe) => {
+    const both = sides(recipe);
+    if (!both) return;
+    if (both.reference.event === both.signal.event) both.reference.event = event;
+    both.signal.event = event;
   });
 }
 

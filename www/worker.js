@@ -67,10 +67,10 @@ const LATER = Symbol("later");
 
 /** @type {Record<string, (id: number, ...args: any[]) => unknown>} */
 const calls = {
-  open(id, /** @type {File} */ file, /** @type {{ name: string, bytes: Uint8Array }[]} */ sides, /** @type {boolean} */ salvage, /** @type {object} */ given) {
+  open(id, /** @type {File[]} */ files, /** @type {{ name: string, bytes: Uint8Array }[]} */ sides, /** @type {boolean} */ salvage, /** @type {object} */ given) {
     const next = new Session();
     try {
-      next.begin(file.name, file.size, reader(file), sides, salvage, given);
+      next.begin(files.map((file) => ({ name: file.name, bytes: file.size, read: reader(file) })), sides, salvage, given);
     } catch (error) {
       // What was open stays open.
       next.free();
@@ -115,6 +115,9 @@ const calls = {
   figure: (_id, /** @type {string} */ name) => open().figure(name),
   traces: (_id, /** @type {number} */ from, /** @type {number} */ seconds, /** @type {number[]} */ channels) =>
     open().traces(from, seconds, new Uint32Array(channels)),
+  tracks: () => open().tracks(),
+  bins: (_id, /** @type {string} */ kind, /** @type {number[]} */ lines, /** @type {number} */ size, /** @type {number} */ first, /** @type {number} */ count) =>
+    open().bins(kind, new Uint32Array(lines), size, first, count),
   takeaway: (_id, /** @type {string} */ kind, /** @type {unknown} */ extras) => open().takeaway(kind, extras),
   memory: () => memory.buffer.byteLength,
 };
@@ -253,7 +256,7 @@ function failed(kind, error) {
 
 /** @param {number} id @param {unknown} value */
 function answer(id, value) {
-  postMessage({ id, value }, value instanceof Uint8Array ? [value.buffer] : []);
+  postMessage({ id, value }, ArrayBuffer.isView(value) ? [value.buffer] : []);
 }
 
 /** @param {number} id @param {unknown} error */

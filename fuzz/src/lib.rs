@@ -1,4 +1,7 @@
 //! What the targets check: bytes in, an answer out, no panic, no runaway memory; and a recording that comes out holds together.
+use flate2::Compression;
+use flate2::write::GzEncoder;
+use std::io::Write;
 use teasel_core::error::Kind;
 use teasel_core::recipe::{Axes, Given};
 use teasel_core::recording::{
@@ -101,4 +104,12 @@ pub fn seed(channels: usize, samples: usize) -> Recording {
         events: vec![event(0.1, "buoy"), event(0.5, "swell")],
         ..Recording::default()
     }
+}
+
+/// Bytes packed with gzip.
+pub fn packed(bytes: &[u8]) -> Vec<u8> {
+    let mut encoder = GzEncoder::new(Vec::new(), Compression::fast());
+    // Writing into a vector cannot fail.
+    let _ = encoder.write_all(bytes);
+    encoder.finish().unwrap_or_default()
 }

@@ -4,6 +4,7 @@ import { join } from "node:path";
 import { gunzipSync } from "node:zlib";
 import { build } from "esbuild";
 import { bridgeUrl, launch, openPage, pageFile, reaches, root } from "../page/harness.mjs";
+import { hour, large } from "./long.mjs";
 
 const [recording, recipeFile] = process.argv.slice(2);
 const recipe = await readFile(recipeFile, "utf8");
@@ -135,5 +136,6 @@ function median(values) {
 await firstScreen();
 await engine();
 await kernels();
+Object.assign(rows, await hour(context), await large(context));
 await close();
 console.log(JSON.stringify(rows));

@@ -192,7 +192,6 @@ fn other_content_under_this_name() {
     assert_eq!(refused(b"").kind, Kind::Empty);
     for (bytes, found) in [
         (&b"PK\x03\x04rest"[..], "a ZIP archive"),
-        (b"\x1f\x8b\x08", "gzip-compressed data"),
         (b"%PDF-1.7", "a PDF document"),
         (b"onset\tduration\n", "\"onset\\tdu\""),
         (b"0", "\"0\""),
@@ -203,9 +202,6 @@ fn other_content_under_this_name() {
         assert_eq!(problem.kind, Kind::Unknown, "{problem}");
         assert_eq!(problem.found.as_deref(), Some(found));
     }
-    let mut bdf = plan().bytes();
-    bdf[..8].copy_from_slice(b"\xffBIOSEMI");
-    assert_eq!(refused(&bdf).kind, Kind::Unsupported);
 }
 
 /// A file of any length whose bytes after the header are zero, made as they are asked for.

@@ -4,7 +4,7 @@ use teasel_core::error::Kind;
 use teasel_core::recording::{Channel, Event, Recording, Stretch, edf};
 use teasel_tests::Lcg;
 
-fn recording(
+pub(super) fn recording(
     rate_hz: f64,
     stretches: &[(usize, f64)],
     channels: &[(&str, &str)],
@@ -40,7 +40,7 @@ fn recording(
     }
 }
 
-fn event(onset_s: f64, duration_s: f64, label: &str) -> Event {
+pub(super) fn event(onset_s: f64, duration_s: f64, label: &str) -> Event {
     Event {
         onset_s,
         duration_s,
@@ -48,9 +48,15 @@ fn event(onset_s: f64, duration_s: f64, label: &str) -> Event {
     }
 }
 
+type Write = fn(&Recording, &edf::Identity) -> teasel_core::error::Result<Vec<u8>>;
+
+pub(super) fn again_as(recording: &Recording, write: Write) -> Recording {
+    let bytes = write(recording, &edf::Identity::default()).unwrap_or_else(|p| panic!("{p}"));
+    read_twice("again", &bytes)
+}
+
 fn again(recording: &Recording) -> Recording {
-    let bytes = edf::write(recording, &edf::Identity::default()).unwrap_or_else(|p| panic!("{p}"));
-    read_twice("again.edf", &bytes)
+    again_as(recording, edf::write)
 }
 
 #[test]

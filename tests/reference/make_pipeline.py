@@ -159,14 +159,14 @@ def evaluate(method, cs, cr, keep):
 def comparators(cs, cr, keep):
     """First and best principal component and best channel, chosen on training trials by the typical measure."""
     fold = folds(len(cs))
-    trial = {k: np.empty(len(cs)) for k in ("first_pc", "best_pc", "best_channel")}
+    trial = {k: np.empty(len(cs)) for k in ("first_pc", "best_pc", "best_channel", "mean_of_channels")}
     for f in range(FOLDS):
         a, b = cs[fold != f], cr[fold != f]
         _, _, v = space(a, b)
         pcs = [v[:, i] for i in range(keep)]
         channels = list(np.eye(len(v)))
         chosen = {"first_pc": v[:, 0], "best_pc": max(pcs, key=lambda w: log_ratios(w, a, b).mean()),
-                  "best_channel": max(channels, key=lambda w: log_ratios(w, a, b).mean())}
+                  "best_channel": max(channels, key=lambda w: log_ratios(w, a, b).mean()), "mean_of_channels": np.ones(len(v)) / len(v)}
         for k, w in chosen.items():
             trial[k][fold == f] = log_ratios(w, cs[fold == f], cr[fold == f])
     return {k: float(np.exp(v.mean())) for k, v in trial.items()}

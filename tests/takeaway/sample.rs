@@ -202,6 +202,7 @@ pub fn sheet() -> Sheet {
             comparator(ComparatorKind::BestPc, "3", Some(0.06), 1.74),
             comparator(ComparatorKind::BestChannel, "C3", None, 1.59),
         ],
+        held_back: None,
         permutation: Some(Permutation {
             measure: Measure::Typical,
             asked: 1000,

@@ -18,11 +18,8 @@ pub fn apply(weights: &Path, given: &Given, out: &Path) -> bool {
         }
     };
     let mut fine = true;
-    for (path, name) in given
-        .recordings
-        .iter()
-        .zip(folder::names(&given.recordings))
-    {
+    let recordings = given.each();
+    for (path, name) in recordings.iter().zip(folder::names(&recordings)) {
         if let Err(problem) = one(&weights, path, given, &out.join(name)) {
             say::problem(&problem.in_file(source::file_name(path)));
             fine = false;

@@ -8,14 +8,15 @@ use std::io::Write as _;
 use std::path::Path;
 use teasel_core::analysis::{Proposal, propose};
 use teasel_core::error::{Kind, Problem, Result};
-use teasel_core::recording::Recording;
+use teasel_core::recording::{Opened, Recording};
 use teasel_core::takeaway::recipe_json;
 
 /// Inspects all recordings; false where one was bad.
 pub fn inspect(given: &Given, as_json: bool) -> bool {
     let mut fine = true;
     let mut cards = Vec::new();
-    for path in &given.recordings {
+    let recordings = given.each();
+    for path in &recordings {
         match one(path, given, as_json) {
             Ok(card) => cards.push(card),
             Err(problem) => {
@@ -26,7 +27,7 @@ pub fn inspect(given: &Given, as_json: bool) -> bool {
     }
     let text = if !as_json {
         cards.iter().filter_map(Value::as_str).collect()
-    } else if let ([card], 1) = (&cards[..], given.recordings.len()) {
+    } else if let ([card], 1) = (&cards[..], recordings.len()) {
         format!("{card:#}\n")
     } else if cards.is_empty() {
         String::new()
@@ -40,7 +41,10 @@ pub fn inspect(given: &Given, as_json: bool) -> bool {
 
 fn one(path: &Path, given: &Given, as_json: bool) -> Result<Value> {
     let mut meter = Meter::new(&source::file_name(path));
-    let recording = source::recording(path, given, &given.told.given(), &mut meter)?;
+    let recording = match source::open(path, given, &given.told.given(), &mut meter)? {
+        Opened::Whole(recording) => recording,
+        Opened::Large(large) => large.outline().clone(),
+    };
     if as_json {
         card(&recording, given)
     } else {

@@ -19,6 +19,7 @@ use clap::{Args, Parser, Subcommand};
 use std::path::PathBuf;
 use std::process::ExitCode;
 use teasel_core::recipe::{self, Axes};
+use teasel_core::recording::natural_order;
 
 const EXAMPLE: &str = "\
 Example:
@@ -98,8 +99,26 @@ struct Given {
     /// Open the whole records before a cut or other damage.
     #[arg(long)]
     salvage: bool,
+    /// The recordings are files of one: join them in the natural order of their names.
+    #[arg(long)]
+    joined: bool,
+    /// Memory that an open recording may take, in MiB; of a larger one only what the windows need is kept, and no series is written.
+    #[arg(long, value_name = "MIB", value_parser = clap::value_parser!(u64).range(1..=1_048_576))]
+    memory: Option<u64>,
     #[command(flatten)]
     told: Told,
+}
+
+impl Given {
+    /// What is worked on: each recording, or the first of the files that are joined.
+    fn each(&self) -> Vec<PathBuf> {
+        let mut paths = self.recordings.clone();
+        if self.joined {
+            paths.sort_by(|a, b| natural_order(&source::file_name(a), &source::file_name(b)));
+            paths.truncate(1);
+        }
+        paths
+    }
 }
 
 /// What a file of a general format does not carry; each comes before the recipe's `recording` and before side files.

@@ -5,6 +5,7 @@ use std::path::Path;
 use teasel_core::analysis::{Analysis, Series};
 use teasel_core::error::Result;
 use teasel_core::recipe::Recipe;
+use teasel_core::recording::Opened;
 use teasel_core::sheet::Sheet;
 use teasel_core::takeaway::{self as take, Row};
 
@@ -26,11 +27,8 @@ pub fn run(recipe: &Path, given: &Given, out: &Path, seed: Option<u64>) -> bool 
     recipe.recording = given.told.given().or(recipe.recording);
     let mut rows = Vec::new();
     let mut fine = true;
-    for (path, name) in given
-        .recordings
-        .iter()
-        .zip(folder::names(&given.recordings))
-    {
+    let recordings = given.each();
+    for (path, name) in recordings.iter().zip(folder::names(&recordings)) {
         let shown = name.display().to_string();
         match one(&recipe, path, given, &out.join(&name), &shown) {
             Ok(row) => rows.push(row),
@@ -46,7 +44,7 @@ pub fn run(recipe: &Path, given: &Given, out: &Path, seed: Option<u64>) -> bool 
             }
         }
     }
-    if given.recordings.len() > 1
+    if recordings.len() > 1
         && let Err(problem) = gather::write(out, rows)
     {
         say::problem(&problem);
@@ -57,14 +55,23 @@ pub fn run(recipe: &Path, given: &Given, out: &Path, seed: Option<u64>) -> bool 
 
 fn one(recipe: &Recipe, path: &Path, given: &Given, folder: &Path, shown: &str) -> Result<Row> {
     let mut meter = Meter::new(&source::file_name(path));
-    let recording = source::recording(path, given, &recipe.recording, &mut meter)?;
-    let mut analysis = Analysis::new(recording, recipe.clone())?;
+    let mut analysis = match source::open(path, given, &recipe.recording, &mut meter)? {
+        Opened::Whole(recording) => Analysis::new(recording, recipe.clone())?,
+        Opened::Large(large) => Analysis::of_large(*large, recipe.clone())?,
+    };
+    let large = analysis.large().is_some();
     analysis.run(|progress| meter.analysis(progress))?;
     let row = Row::of(analysis.sheet(), shown).json()?;
     let mut files = files(analysis.sheet(), analysis.series())?;
     files.push(("row.json".into(), row.clone().into()));
     folder::write(folder, &files)?;
     drop(meter);
+    if large {
+        say::line(&format!(
+            "{}: note: no series was written, for the recording is larger than the memory for it; give more with --memory",
+            source::file_name(path)
+        ));
+    }
     for warning in &analysis.sheet().warnings {
         say::note(&format!("{}: note: {warning}", source::file_name(path)));
     }

@@ -6,7 +6,9 @@ use std::io::{ErrorKind, Read, Seek, SeekFrom};
 use std::path::Path;
 use teasel_core::error::{Kind, Problem, Result};
 use teasel_core::recipe;
-use teasel_core::recording::{OpenOptions, Opening, Recording, SideFile, Source};
+use teasel_core::recording::{
+    MEMORY_BYTES, OpenOptions, Opened, Opening, Recording, SideFile, Source,
+};
 
 /// The largest text file (recipe, weights) that is read whole, in bytes; the parsers have their own, smaller caps.
 const TEXT_CAP: u64 = 64 << 20;
@@ -106,20 +108,40 @@ pub fn text(path: &Path) -> Result<String> {
     })
 }
 
-/// Opens a recording with its side files; `told` is what its own file does not carry.
+/// A recording with its side files and all its samples; `told` is what its own file does not carry.
 pub fn recording(
     path: &Path,
     given: &Given,
     told: &recipe::Given,
     meter: &mut Meter,
 ) -> Result<Recording> {
+    match open(path, given, told, meter)? {
+        Opened::Whole(recording) => Ok(recording),
+        Opened::Large(_) => Err(Problem::new(
+            Kind::TooLarge,
+            "the recording is larger than the memory for it",
+            "give more with --memory, or open a shorter part of it",
+        )
+        .in_file(file_name(path))),
+    }
+}
+
+/// Opens a recording with its side files; where it does not fit into the memory, its samples stay in the file.
+pub fn open(path: &Path, given: &Given, told: &recipe::Given, meter: &mut Meter) -> Result<Opened> {
     recipe::given_check(told)?;
-    let (file, length) = opened(path)?;
-    let source = FileSource {
-        name: file_name(path),
-        file,
-        length,
+    let paths = match given.joined {
+        true => &given.recordings[..],
+        false => &[path.to_owned()],
     };
+    let mut sources: Vec<Box<dyn Source>> = Vec::new();
+    for path in paths {
+        let (file, length) = opened(path)?;
+        sources.push(Box::new(FileSource {
+            name: file_name(path),
+            file,
+            length,
+        }));
+    }
     let options = OpenOptions {
         salvage: given.salvage,
         given: told.clone(),
@@ -145,12 +167,13 @@ pub fn recording(
         }
         problem
     };
-    let mut opening = Opening::begin(Box::new(source), sides, options).map_err(hint)?;
+    let memory = given.memory.map_or(MEMORY_BYTES, |mb| mb << 20);
+    let mut opening = Opening::begin_joined(sources, sides, options, memory).map_err(hint)?;
     while !opening.finished() {
         let (done, of) = opening.step().map_err(hint)?;
         meter.reading(done, of);
     }
-    opening.finish().map_err(hint)
+    opening.opened().map_err(hint)
 }
 
 /// The option that answers a question.

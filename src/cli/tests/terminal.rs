@@ -477,6 +477,98 @@ fn a_table_of_events_beside_the_recording_is_used_and_one_given_is_preferred() {
     );
 }
 
+#[test]
+fn what_a_table_does_not_say_is_told_by_options_or_by_the_recipe() {
+    let desk = desk();
+    let recording = &demo().0.recording;
+    let mut text = String::new();
+    let names: Vec<&str> = recording.channels.iter().map(|c| c.name.as_str()).collect();
+    text += &format!("{},marker\n", names.join(","));
+    let at = |onset_s: f64| (onset_s * recording.rate_hz).round() as usize;
+    for k in 0..recording.sample_count() {
+        let row: Vec<String> = recording.samples.iter().map(|s| s[k].to_string()).collect();
+        let mark = recording.events.iter().find(|e| at(e.onset_s) == k);
+        text += &format!(
+            "{},{}\n",
+            row.join(","),
+            mark.map_or("", |e| e.label.as_str())
+        );
+    }
+    fs::write(desk.path().join("watch.csv"), text).unwrap();
+    let output = teasel(&["inspect", "watch.csv"], desk.path());
+    assert_eq!(output.status.code(), Some(1));
+    let line = &errors(&output)[0];
+    assert!(line.contains("--rate HZ --unit UNIT"), "{line}");
+    let output = teasel(
+        &["inspect", "watch.csv", "--rate", "250", "--unit", "uV"],
+        desk.path(),
+    );
+    assert!(output.status.success(), "{}", said(&output));
+    let shown = String::from_utf8(output.stdout).unwrap();
+    assert!(
+        shown.contains("250 Hz") && shown.contains("\"unit\": \"uV\""),
+        "{shown}"
+    );
+
+    let mut recipe = quick();
+    recipe.recording.rate_hz = Some(250.0);
+    recipe.recording.unit = Some("uV".to_owned());
+    fs::write(desk.path().join("told.json"), recipe_json(&recipe).unwrap()).unwrap();
+    let run = ["run", "told.json", "watch.csv", "--out", "told"];
+    let output = teasel(&run, desk.path());
+    assert!(output.status.success(), "{}", said(&output));
+    let output = teasel(
+        &["run", "recipe.json", "watch.edf", "--out", "plain"],
+        desk.path(),
+    );
+    assert!(output.status.success(), "{}", said(&output));
+    let components = |folder: &str| {
+        let path = desk.path().join(folder).join("watch/results.json");
+        let results: serde_json::Value =
+            serde_json::from_str(&fs::read_to_string(path).unwrap()).unwrap();
+        results["components"].clone()
+    };
+    assert_eq!(components("told"), components("plain"));
+    let output = teasel(
+        &["inspect", "watch.csv", "--rate", "-3", "--unit", "uV"],
+        desk.path(),
+    );
+    assert_eq!(output.status.code(), Some(1), "{}", said(&output));
+}
+
+#[test]
+fn files_of_one_recording_are_joined() {
+    let desk = desk();
+    for part in ["night-10.edf", "night-9.edf"] {
+        fs::write(desk.path().join(part), &demo().1).unwrap();
+    }
+    let joined = [
+        "inspect",
+        "--joined",
+        "night-10.edf",
+        "night-9.edf",
+        "--json",
+    ];
+    let output = teasel(&joined, desk.path());
+    assert!(output.status.success(), "{}", said(&output));
+    let card: serde_json::Value = serde_json::from_slice(&output.stdout).unwrap();
+    assert_eq!(card["name"], "night-9.edf");
+    assert_eq!(card["stretches"].as_array().unwrap().len(), 2);
+    let run = [
+        "run",
+        "recipe.json",
+        "--joined",
+        "night-10.edf",
+        "night-9.edf",
+        "--out",
+        "out",
+    ];
+    let output = teasel(&run, desk.path());
+    assert!(output.status.success(), "{}", said(&output));
+    assert!(desk.path().join("out/night-9/results.json").is_file());
+    assert!(!desk.path().join("out/night-10").exists());
+}
+
 /// Reads what a run writes with Python's csv and NumPy, where an interpreter with NumPy is given.
 #[test]
 fn python_reads_the_tables_and_arrays() {

@@ -51,6 +51,9 @@ pub struct Sheet {
     pub permutation: Option<Permutation>,
     /// Mean held-out log ratio of the leading component in each fold, as a factor, with the trials in it.
     pub folds: Vec<FoldCard>,
+    /// The share that was locked away, once it is opened.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub held_back: Option<HeldBack>,
     /// Everything a careful reader should know, each a sentence; the first is the most important.
     pub warnings: Vec<String>,
 }
@@ -570,6 +573,10 @@ pub enum ComparatorKind {
     BestPc,
     /// The best single channel, chosen on training trials.
     BestChannel,
+    /// The mean of all channels.
+    MeanOfChannels,
+    /// A direction drawn at random in the kept space.
+    RandomDirection,
 }
 
 /// The permutation test.
@@ -604,6 +611,28 @@ pub struct FoldCard {
     pub trials: usize,
     /// Held-out typical ratio of the leading component in it.
     pub ratio: f64,
+}
+
+/// The finished components on the share that was locked away; no windows where it holds too few.
+#[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
+pub struct HeldBack {
+    /// Signal windows in it.
+    pub signal: usize,
+    /// Reference windows in it.
+    pub reference: usize,
+    /// Ratios of the stronger components.
+    pub stronger: Vec<HeldBackRatio>,
+    /// Ratios of the weaker components.
+    pub weaker: Vec<HeldBackRatio>,
+}
+
+/// Ratios of one component on the share that was locked away.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+pub struct HeldBackRatio {
+    /// In a typical trial, where the kind has one.
+    pub typical: Option<f64>,
+    /// Over all power.
+    pub total: f64,
 }
 
 impl Sheet {

@@ -71,6 +71,8 @@ impl Beside {
             ComparatorKind::BestPc,
             ComparatorKind::BestChannel,
             ComparatorKind::FirstPc,
+            ComparatorKind::MeanOfChannels,
+            ComparatorKind::RandomDirection,
         ];
         for kind in order {
             let found = sheet.compare.iter().find(|c| c.kind == kind);
@@ -171,6 +173,8 @@ fn rival(c: &Comparator, measure: Measure, folds: usize) -> Rival {
             ("First principal component", share.unwrap_or_default())
         }
         ComparatorKind::BestPc => ("Best principal component", format!("no. {chosen}{times}")),
+        ComparatorKind::MeanOfChannels => ("Mean of all channels", String::new()),
+        ComparatorKind::RandomDirection => ("Random direction", "in the kept space".to_owned()),
         ComparatorKind::BestChannel => (
             "Best channel",
             format!("{}{times}", text::fit(&chosen, TICK, 70.0)),

@@ -119,6 +119,7 @@ pub fn sheet(channels: usize, trials: usize) -> Sheet {
         compare: comparators(),
         stronger,
         weaker,
+        held_back: None,
         permutation: Some(Permutation {
             measure: Measure::Typical,
             asked: 1000,

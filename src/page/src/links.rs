@@ -1,4 +1,4 @@
-//! Recipes as text, and inside an address.
+//! Recipes as text, and inside an address; names in their order.
 use crate::convert::{Outcome, from_js, thrown, to_js};
 use serde::Serialize;
 use teasel_core::recipe::Recipe;
@@ -16,6 +16,17 @@ pub fn parse_recipe(text: &str) -> Outcome<JsValue> {
 #[wasm_bindgen(js_name = recipeText)]
 pub fn recipe_text(recipe: JsValue) -> Outcome<String> {
     recipe_json(&from_js::<Recipe>(recipe)?).map_err(thrown)
+}
+
+/// Places of the names in the order in which files of one recording are joined.
+#[wasm_bindgen(js_name = naturalOrder)]
+#[must_use]
+pub fn natural_order(names: Vec<String>) -> Vec<u32> {
+    let mut places: Vec<u32> = (0..).take(names.len()).collect();
+    places.sort_by(|a, b| {
+        teasel_core::recording::natural_order(&names[*a as usize], &names[*b as usize])
+    });
+    places
 }
 
 /// What stands after `#recipe=`.

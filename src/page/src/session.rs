@@ -2,14 +2,16 @@
 use crate::convert::{Outcome, from_js, thrown, to_js};
 use crate::source::JsSource;
 use crate::take;
-use js_sys::Function;
 use serde::{Deserialize, Serialize};
 use std::mem;
+use teasel_core::analysis::lines::{Kind as LineKind, Lines, Track};
 use teasel_core::analysis::{self, Analysis, Progress, Proposal, Stage};
 use teasel_core::demo;
 use teasel_core::error::{Kind, Problem};
 use teasel_core::recipe::{Given, Recipe, given_check};
-use teasel_core::recording::{OpenOptions, Opening, Recording, SideFile};
+use teasel_core::recording::{
+    Large, MEMORY_BYTES, OpenOptions, Opened, Opening, Recording, SideFile,
+};
 use teasel_core::sheet::Sheet;
 use teasel_core::takeaway::readings;
 use wasm_bindgen::JsValue;
@@ -22,6 +24,8 @@ pub struct Session {
     state: State,
     /// The question that a demo brings along.
     brought: Option<Proposal>,
+    /// What was made to draw lines of what is open.
+    lines: Lines,
     /// What was told of the recording.
     given: Given,
 }
@@ -32,6 +36,8 @@ enum State {
     Empty,
     Opening(Box<Opening>),
     Open(Box<Recording>),
+    /// Open, with its samples left in the file.
+    Large(Box<Large>),
     Analysing(Box<Analysis>),
 }
 
@@ -43,6 +49,14 @@ pub struct NamedBytes {
     /// Content.
     #[serde(with = "serde_bytes")]
     pub bytes: Vec<u8>,
+}
+
+/// The lines that can be drawn now.
+#[derive(Serialize)]
+struct Tracks {
+    recorded: Track,
+    prepared: Option<Track>,
+    components: Option<Track>,
 }
 
 /// [`Progress`], and whether nothing is left.
@@ -62,19 +76,19 @@ impl Session {
         Session::default()
     }
 
-    /// Reads a recording's header; `step` reads the rest. `read` is `(offset, length) => Uint8Array`, synchronous; `sides` is
+    /// Reads a recording's header; `step` reads the rest. `files` is `[{name, bytes, read}]`, the files of one recording in any order, `bytes` their
+    /// lengths and `read` `(offset, length) => Uint8Array`, synchronous; `sides` is
     /// `[{name, bytes}]`; `salvage` opens the whole records before a cut; `given` is a recipe's `recording`.
     pub fn begin(
         &mut self,
-        name: String,
-        bytes: f64,
-        read: Function,
+        files: Vec<JsValue>,
         sides: JsValue,
         salvage: bool,
         given: JsValue,
     ) -> Outcome<()> {
         self.state = State::Empty;
         self.brought = None;
+        self.lines = Lines::default();
         let sides: Vec<NamedBytes> = from_js(sides)?;
         let sides = sides
             .into_iter()
@@ -85,14 +99,15 @@ impl Session {
             .collect();
         self.given = from_js(given)?;
         given_check(&self.given).map_err(thrown)?;
-        let source = JsSource::new(name, bytes, read);
-        let opening = Opening::begin(
-            Box::new(source),
+        let sources: Outcome<Vec<_>> = files.iter().map(JsSource::of).collect();
+        let opening = Opening::begin_joined(
+            sources?,
             sides,
             OpenOptions {
                 salvage,
                 given: self.given.clone(),
             },
+            MEMORY_BYTES,
         );
         self.state = State::Opening(Box::new(opening.map_err(thrown)?));
         Ok(())
@@ -105,6 +120,7 @@ impl Session {
             return Err(thrown(unknown_demo(which)));
         }
         let made = demo::night_watch(demo::WATCH_SEED);
+        self.lines = Lines::default();
         self.brought = Some(Proposal {
             recipe: made.recipe,
             why: demo::WATCH_WHY.to_owned(),
@@ -115,7 +131,10 @@ impl Session {
 
     /// `{recording, channels}` of what is open, before any recipe.
     pub fn summary(&self) -> Outcome<JsValue> {
-        to_js(&analysis::summary(self.recording()?))
+        match &self.state {
+            State::Large(large) => to_js(&analysis::summary_of_large(large)),
+            _ => to_js(&analysis::summary(self.recording()?)),
+        }
     }
 
     /// `{recipe, why}`: a demo's own question, else one for the most frequent event; null where no event is frequent enough.
@@ -140,6 +159,15 @@ impl Session {
                     return Err(thrown(problem));
                 }
                 let analysis = Analysis::new(*recording, recipe).map_err(thrown)?;
+                self.state = State::Analysing(Box::new(analysis));
+                Ok(())
+            }
+            State::Large(large) => {
+                if let Err(problem) = analysis::fits_large(&large, &recipe) {
+                    self.state = State::Large(large);
+                    return Err(thrown(problem));
+                }
+                let analysis = Analysis::of_large(*large, recipe).map_err(thrown)?;
                 self.state = State::Analysing(Box::new(analysis));
                 Ok(())
             }
@@ -172,7 +200,7 @@ impl Session {
                 let progress = analysis.step().map_err(thrown)?;
                 (progress, analysis.finished())
             }
-            State::Open(_) | State::Empty => return Err(thrown(nothing_open())),
+            State::Open(_) | State::Large(_) | State::Empty => return Err(thrown(nothing_open())),
         };
         if finished {
             self.finish_reading()?;
@@ -207,14 +235,68 @@ impl Session {
         )
     }
 
-    /// Channels as recorded over a span of time.
-    pub fn traces(&self, from_s: f64, seconds: f64, channels: &[usize]) -> Outcome<JsValue> {
-        to_js(&teasel_figures::traces(
-            self.recording()?,
-            from_s,
-            seconds,
-            channels,
-        ))
+    /// Channels as recorded over a span of time; null where so much of a large recording would have to be read again.
+    pub fn traces(&mut self, from_s: f64, seconds: f64, channels: &[usize]) -> Outcome<JsValue> {
+        let Some(large) = self.large() else {
+            let recording = self.recording()?;
+            return to_js(&teasel_figures::traces(
+                recording, from_s, seconds, channels,
+            ));
+        };
+        if !large.reads_soon(seconds) {
+            return Ok(JsValue::NULL);
+        }
+        let part = large.span(from_s, from_s + seconds).map_err(thrown)?;
+        to_js(&teasel_figures::traces(&part, from_s, seconds, channels))
+    }
+
+    /// `{recorded, prepared, components}`: what lines there are now; the last two may be null.
+    pub fn tracks(&mut self) -> Outcome<JsValue> {
+        let recorded = match self.large() {
+            Some(large) => Lines::recorded_large(large),
+            None => Lines::recorded(self.recording()?),
+        };
+        let analysis = match &self.state {
+            State::Analysing(analysis) => Some(analysis.as_ref()),
+            _ => None,
+        };
+        to_js(&Tracks {
+            recorded,
+            prepared: analysis.and_then(Lines::prepared),
+            components: analysis.and_then(Lines::components),
+        })
+    }
+
+    /// Bins `first` to `first + count` of `size` samples of some lines of a kind (`recorded`, `prepared`, `components`): for each line
+    /// the smallest and the largest value of each bin.
+    pub fn bins(
+        &mut self,
+        kind: JsValue,
+        which: &[usize],
+        size: usize,
+        first: usize,
+        count: usize,
+    ) -> Outcome<Vec<f32>> {
+        let kind: LineKind = from_js(kind)?;
+        if kind == LineKind::Recorded
+            && let Some(large) = self.large()
+        {
+            return Lines::of_large(large, which, size, first, count).map_err(thrown);
+        }
+        let lines = &mut self.lines;
+        match (&self.state, kind) {
+            (State::Open(recording), LineKind::Recorded) => {
+                Ok(lines.of_recorded(recording, which, size, first, count))
+            }
+            (State::Analysing(analysis), kind) => Ok(match kind {
+                LineKind::Recorded => {
+                    lines.of_recorded(analysis.recording(), which, size, first, count)
+                }
+                LineKind::Prepared => lines.of_prepared(analysis, which, size, first, count),
+                LineKind::Components => lines.of_components(analysis, which, size, first, count),
+            }),
+            _ => Err(thrown(nothing_open())),
+        }
     }
 
     /// A file to take away: `weights-json`, `weights-csv`, `results-json`, `recipe`, `report`, `everything`; `extras` is `[{name, bytes}]`.
@@ -230,7 +312,10 @@ impl Session {
 impl Session {
     fn finish_reading(&mut self) -> Outcome<()> {
         self.state = match mem::take(&mut self.state) {
-            State::Opening(opening) => State::Open(Box::new(opening.finish().map_err(thrown)?)),
+            State::Opening(opening) => match opening.opened().map_err(thrown)? {
+                Opened::Whole(recording) => State::Open(Box::new(recording)),
+                Opened::Large(large) => State::Large(large),
+            },
             other => other,
         };
         Ok(())
@@ -239,8 +324,17 @@ impl Session {
     fn recording(&self) -> Outcome<&Recording> {
         match &self.state {
             State::Open(recording) => Ok(recording),
+            State::Large(large) => Ok(large.outline()),
             State::Analysing(analysis) => Ok(analysis.recording()),
             State::Opening(_) | State::Empty => Err(thrown(nothing_open())),
+        }
+    }
+
+    fn large(&mut self) -> Option<&mut Large> {
+        match &mut self.state {
+            State::Large(large) => Some(large),
+            State::Analysing(analysis) => analysis.large(),
+            _ => None,
         }
     }
 

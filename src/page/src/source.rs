@@ -1,5 +1,6 @@
 //! A file of the browser as a [`Source`].
-use js_sys::{Function, Uint8Array};
+use crate::convert::Outcome;
+use js_sys::{Function, Reflect, Uint8Array};
 use teasel_core::error::{Kind, Problem, Result};
 use teasel_core::recording::Source;
 use wasm_bindgen::{JsCast, JsValue};
@@ -12,13 +13,14 @@ pub struct JsSource {
 }
 
 impl JsSource {
-    /// `bytes` is the file's length.
-    pub fn new(name: String, bytes: f64, read: Function) -> Self {
-        JsSource {
-            name,
-            bytes: bytes as u64,
-            read,
-        }
+    /// From `{name, bytes, read}`.
+    pub fn of(file: &JsValue) -> Outcome<Box<dyn Source>> {
+        let part = |key: &str| Reflect::get(file, &JsValue::from_str(key));
+        Ok(Box::new(JsSource {
+            name: part("name")?.as_string().unwrap_or_default(),
+            bytes: part("bytes")?.as_f64().unwrap_or(0.0) as u64,
+            read: part("read")?.dyn_into()?,
+        }))
     }
 }
 

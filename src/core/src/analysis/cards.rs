@@ -4,12 +4,13 @@ use crate::contrast::fit::{Direction, Ends};
 use crate::contrast::linalg::{abs_cosine, packed_len, quadratic};
 use crate::contrast::space::Space;
 use crate::contrast::windows::Exchange;
+use crate::evidence::bootstrap::generator;
 use crate::evidence::dimensions::outstanding;
 use crate::evidence::heldout::{
     Design, Ground, Scores, best_of, fill, log_total, log_typical, pair_log_ratios, score_into,
     total_ratio, typical_ratio, variances,
 };
-use crate::evidence::permute::{null_hypothesis, p_value};
+use crate::evidence::permute::{STREAM_DIRECTION, null_hypothesis, p_value};
 use crate::prepare::{Prepared, Quality};
 use crate::recipe::{Keep, KeepWord, Measure, Recipe};
 use crate::recording::Recording;
@@ -18,6 +19,7 @@ use crate::sheet::{
     FoldCard, Permutation, PrincipalCard, RankStep, RecordingCard, Sheet, Step, TotalRatio,
     TrialScore, TypicalRatio,
 };
+use rand_chacha::rand_core::Rng;
 use std::collections::BTreeMap;
 
 /// Bins of the envelope of the whole recording.
@@ -77,6 +79,7 @@ pub(super) fn begin(recording: &Recording, recipe: &Recipe) -> Sheet {
         compare: Vec::new(),
         permutation: None,
         folds: Vec::new(),
+        held_back: None,
         warnings: recording.warnings.clone(),
     }
 }
@@ -215,6 +218,9 @@ pub(super) fn forget(sheet: &mut Sheet, recipe: &Recipe, stale: &Stale) {
             c.trials.clear();
         }
     }
+    if stale.evidence {
+        sheet.held_back = None;
+    }
     if stale.curve {
         sheet.curve = None;
     }
@@ -352,6 +358,15 @@ fn fitted_typical(variances: &[f64], design: &Design) -> f64 {
     }
 }
 
+/// What signal variances were divided by, where the kind scales them to the average channel.
+pub(super) fn filter_level(work: &Work, recipe: &Recipe) -> f64 {
+    if super::work::levelled(recipe) {
+        work.average_ratio
+    } else {
+        1.0
+    }
+}
+
 /// Those directions of a fit that lie on their own side of 1.
 pub(super) fn reported(ends: &Ends) -> (&[Direction], &[Direction]) {
     let up = ends
@@ -465,6 +480,11 @@ pub(super) fn held_out(work: &mut Work, recipe: &Recipe) {
             })
         })
         .collect();
+    let pairs = [&work.sheet.stronger, &work.sheet.weaker]
+        .into_iter()
+        .enumerate()
+        .flat_map(|(end, list)| turning(list, &patterns, end, recipe.measure))
+        .collect::<Vec<String>>();
     let blank = || vec![f64::NAN; weights.len()];
     let mut leading: Option<Scores> = None;
     for (end, components) in [&mut work.sheet.stronger, &mut work.sheet.weaker]
@@ -516,6 +536,93 @@ pub(super) fn held_out(work: &mut Work, recipe: &Recipe) {
     work.sheet.folds = leading.map_or_else(Vec::new, |scores| fold_cards(&scores, weights, design));
     work.sheet.compare = comparators(work_parts(ground, design, prepared, keep), work, recipe);
     work.sheet.warnings = warnings(work, recipe);
+    work.sheet.warnings.extend(pairs);
+}
+
+/// Ratios nearer to each other than this factor leave their components free to turn into one another.
+const NEAR: f64 = 1.1;
+/// Likeness of a plane that is the same over folds, and of a pattern that is not.
+const SAME_PLANE: f64 = 0.9;
+const NOT_SAME: f64 = 0.8;
+
+/// Says which neighbours of one end share a plane that is stable over folds while they are not: single components of such a pair
+/// mean little. Medians over folds; of planes the cosine of the larger principal angle (Björck & Golub 1973).
+fn turning(
+    list: &[Component],
+    patterns: &[[Vec<Vec<f64>>; 2]],
+    end: usize,
+    measure: Measure,
+) -> Vec<String> {
+    let fitted = |c: &Component| match measure {
+        Measure::Typical => c.typical.fitted,
+        Measure::Total => c.total.fitted,
+    };
+    let median = |mut values: Vec<f64>| {
+        values.sort_by(f64::total_cmp);
+        crate::evidence::bootstrap::quantile(&values, 0.5)
+    };
+    let mut out = Vec::new();
+    for (j, pair) in list.windows(2).enumerate() {
+        let near = (fitted(&pair[0]) / fitted(&pair[1])).ln().abs() < NEAR.ln();
+        let folds: Vec<&Vec<Vec<f64>>> = patterns
+            .iter()
+            .map(|p| &p[end])
+            .filter(|p| p.len() > j + 1)
+            .collect();
+        if !near || folds.is_empty() {
+            continue;
+        }
+        let single = [0, 1].map(|i| {
+            let of = |p: &&Vec<Vec<f64>>| abs_cosine(&p[j + i], &pair[i].pattern);
+            median(folds.iter().map(of).collect())
+        });
+        let own = [&pair[0].pattern[..], &pair[1].pattern[..]];
+        let plane = |p: &&Vec<Vec<f64>>| plane_likeness(own, [&p[j], &p[j + 1]]);
+        let plane = median(folds.iter().map(plane).collect());
+        let alone = single[0].min(single[1]);
+        if plane >= SAME_PLANE && alone < NOT_SAME {
+            let name = if end == 0 {
+                "Components"
+            } else {
+                "Weaker components"
+            };
+            out.push(format!(
+                "{name} {} and {} have nearly the same ratio ({:.2} and {:.2}) and turn into one another from fold to fold: their patterns stay {alone:.2} alike, the plane they span {plane:.2}. Read them as a pair.",
+                j + 1,
+                j + 2,
+                fitted(&pair[0]),
+                fitted(&pair[1])
+            ));
+        }
+    }
+    out
+}
+
+/// Cosine of the larger principal angle between two planes.
+fn plane_likeness(a: [&[f64]; 2], b: [&[f64]; 2]) -> f64 {
+    let dot = |x: &[f64], y: &[f64]| x.iter().zip(y).map(|(x, y)| x * y).sum::<f64>();
+    let basis = |v: [&[f64]; 2]| -> [Vec<f64>; 2] {
+        let unit = |x: Vec<f64>| {
+            let norm = dot(&x, &x).sqrt();
+            x.into_iter().map(|x| x / norm).collect::<Vec<f64>>()
+        };
+        let first = unit(v[0].to_vec());
+        let along = dot(&first, v[1]);
+        let rest = v[1].iter().zip(&first).map(|(y, f)| y - along * f);
+        [first.clone(), unit(rest.collect())]
+    };
+    let (a, b) = (basis(a), basis(b));
+    let m = [
+        [dot(&a[0], &b[0]), dot(&a[0], &b[1])],
+        [dot(&a[1], &b[0]), dot(&a[1], &b[1])],
+    ];
+    // Smaller singular value of a 2×2 matrix: from the sum of squares and the determinant.
+    let squares: f64 = m.iter().flatten().map(|x| x * x).sum();
+    let determinant = m[0][0] * m[1][1] - m[0][1] * m[1][0];
+    let root = (squares * squares - 4.0 * determinant * determinant)
+        .max(0.0)
+        .sqrt();
+    ((squares - root) / 2.0).max(0.0).sqrt()
 }
 
 fn trial_scores(
@@ -588,7 +695,17 @@ fn work_parts<'a>(
     }
 }
 
-/// First principal component, best principal component, best channel, on the same held-out windows.
+/// A direction drawn at random in the kept whitened space: independent values of mean 0 and variance 1 (each the sum of twelve
+/// uniform numbers less 6).
+fn random_direction(keep: usize, seed: u64) -> Vec<f64> {
+    let mut rng = generator(seed, STREAM_DIRECTION);
+    let mut uniform = || (rng.next_u64() >> 11) as f64 * 2f64.powi(-53);
+    (0..keep)
+        .map(|_| (0..12).map(|_| uniform()).sum::<f64>() - 6.0)
+        .collect()
+}
+
+/// Principal components, channels, the channels' mean and a random direction, on the same held-out windows.
 fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator> {
     let Parts {
         ground,
@@ -623,18 +740,22 @@ fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator
         &everything,
         recipe.measure,
     );
+    let of_mean = |of: &dyn Fn(usize) -> bool| all.mean_variances(signal, of);
+    let drawn = random_direction(keep, recipe.evidence.seed);
+    let of_drawn = |g: &Ground, of: &dyn Fn(usize) -> bool| {
+        let kept = drawn.len().min(g.space.dimensions());
+        g.space.variances(&drawn[..kept], signal, of)
+    };
     let make = |kind: ComparatorKind, fitted: Vec<f64>, chosen_in: &dyn Fn(usize) -> usize| {
         let mut scores = vec![f64::NAN; weights.len()];
         for (f, g) in work.folds.iter().enumerate() {
             let i = chosen_in(f);
-            match kind {
-                ComparatorKind::BestChannel => {
-                    fill(&mut scores, weights, design, f, |of| of_channel(i, of))
-                }
-                ComparatorKind::FirstPc | ComparatorKind::BestPc => {
-                    fill(&mut scores, weights, design, f, |of| of_pc(g, i, of))
-                }
-            }
+            fill(&mut scores, weights, design, f, |of| match kind {
+                ComparatorKind::BestChannel => of_channel(i, of),
+                ComparatorKind::FirstPc | ComparatorKind::BestPc => of_pc(g, i, of),
+                ComparatorKind::MeanOfChannels => of_mean(of),
+                ComparatorKind::RandomDirection => of_drawn(g, of),
+            });
         }
         let (count, seed) = (recipe.evidence.bootstrap, recipe.evidence.seed);
         Comparator {
@@ -685,6 +806,12 @@ fn comparators(parts: Parts<'_>, work: &Work, recipe: &Recipe) -> Vec<Comparator
             share: share_of(0),
             ..make(ComparatorKind::FirstPc, of_pc(ground, 0, &|_| true), &|_| 0)
         },
+        make(ComparatorKind::MeanOfChannels, of_mean(&|_| true), &|_| 0),
+        make(
+            ComparatorKind::RandomDirection,
+            of_drawn(ground, &|_| true),
+            &|_| 0,
+        ),
     ]
 }
 
@@ -700,13 +827,19 @@ fn most_frequent(values: impl Iterator<Item = usize>) -> (usize, usize) {
 
 /// The permutation test and every component's p.
 pub(super) fn permuted(work: &mut Work, recipe: &Recipe) {
-    let (Some(plan), Some(design), Some(ends)) = (work.plan, &work.design, &work.ends) else {
+    let (Some(plan), Some(design), Some((ends, level))) =
+        (work.plan, &work.design, work.observed(recipe))
+    else {
         return;
     };
-    let (largest, smallest): (Vec<f64>, Vec<f64>) = work.null.iter().copied().unzip();
-    let (stronger, weaker) = reported(ends);
-    let observed_stronger: Vec<f64> = stronger.iter().map(|d| d.statistic).collect();
-    let observed_weaker: Vec<f64> = weaker.iter().map(|d| d.statistic).collect();
+    // Where both sides were brought to one level the null is about the average direction: told as ratios of the recording.
+    let null = work.null.iter().map(|(l, s)| (l * level, s * level));
+    let (largest, smallest): (Vec<f64>, Vec<f64>) = null.unzip();
+    let told = |list: &[Direction]| list.iter().map(|d| d.statistic * level).collect();
+    let mut observed_stronger: Vec<f64> = told(&ends.stronger);
+    let mut observed_weaker: Vec<f64> = told(&ends.weaker);
+    observed_stronger.truncate(work.sheet.stronger.len());
+    observed_weaker.truncate(work.sheet.weaker.len());
     let test = |observed: f64, null: &[f64], larger| {
         (!null.is_empty()).then(|| p_value(observed, null, plan.exact, larger))
     };
@@ -859,4 +992,20 @@ fn mirrored_warning(work: &Work, prepared: &Prepared) -> Option<String> {
             windows.len()
         )
     })
+}
+
+#[cfg(test)]
+mod tests {
+    use super::plane_likeness;
+
+    #[test]
+    fn planes_are_compared_by_their_larger_angle() {
+        let (x, y) = ([1.0, 0.0, 0.0], [0.0, 1.0, 0.0]);
+        // The same plane under another basis; then turned by 30° about x: cos 30°.
+        let turned = [0.6, -0.8, 0.0];
+        let other = [2.0, 1.0, 0.0];
+        assert!((plane_likeness([&x, &y], [&turned, &other]) - 1.0).abs() < 1e-12);
+        let tilted = [0.0, 0.75f64.sqrt(), 0.5];
+        assert!((plane_likeness([&x, &y], [&x, &tilted]) - 0.75f64.sqrt()).abs() < 1e-12);
+    }
 }

@@ -9,6 +9,9 @@
 //! ratio against C follow, in this order.
 mod cards;
 mod describing;
+mod islands;
+pub mod lines;
+mod opened;
 mod propose;
 mod summary;
 mod work;
@@ -16,11 +19,12 @@ mod work;
 use crate::contrast::windows::check;
 use crate::error::Result;
 use crate::recipe::{Recipe, recipe_check};
-use crate::recording::Recording;
+use crate::recording::{Large, Recording};
 use crate::sheet::Sheet;
+use islands::Ashore;
 pub use propose::{Proposal, propose};
 use serde::{Deserialize, Serialize};
-pub use summary::{Summary, blank, fits, summary};
+pub use summary::{Summary, blank, fits, fits_large, summary, summary_of_large};
 use work::Work;
 
 /// What a step is about.
@@ -64,6 +68,8 @@ pub struct Analysis {
     recording: Recording,
     recipe: Recipe,
     work: Work,
+    /// Where the samples stay in the file: `recording` then holds islands of them.
+    ashore: Option<Box<Ashore>>,
 }
 
 /// Time courses of the reported components over the whole prepared recording.
@@ -89,12 +95,91 @@ impl Analysis {
             recording,
             recipe,
             work,
+            ashore: None,
+        })
+    }
+
+    /// The same for a recording whose samples stay in the file: the first steps read what the recipe needs of it ([`Stage::Reading`]).
+    ///
+    /// # Errors
+    /// Those of [`Analysis::new`]; `TooLarge` where what the windows need does not fit into the memory. Ask [`fits_large`] first to keep the
+    /// recording.
+    pub fn of_large(large: Large, recipe: Recipe) -> Result<Self> {
+        check_recipe(&recipe, large.outline())?;
+        let islands = islands::islands(large.outline(), &recipe)?;
+        let ashore = Ashore::new(large, islands);
+        let recording = ashore.large.outline().clone();
+        let work = Work::on_islands(&recording, &recipe, ashore.standing(&recipe));
+        Ok(Analysis {
+            recording,
+            recipe,
+            work,
+            ashore: Some(Box::new(ashore)),
+        })
+    }
+
+    /// The recording whose samples stay in the file, if this is one.
+    pub fn large(&mut self) -> Option<&mut Large> {
+        self.ashore.as_mut().map(|ashore| &mut ashore.large)
+    }
+
+    /// A changed recipe where the samples stay in the file: reads again where other samples are needed.
+    fn turn(&mut self, recipe: Recipe) -> Result<()> {
+        let Some(ashore) = &mut self.ashore else {
+            return Ok(());
+        };
+        let islands = islands::islands(ashore.large.outline(), &recipe)?;
+        let prepared =
+            self.recipe.channels == recipe.channels && self.recipe.filter == recipe.filter;
+        let whole = ashore.gathering.is_none() && islands == ashore.islands;
+        if whole && prepared {
+            self.work.change(&self.recording, &self.recipe, &recipe)?;
+        } else {
+            if !whole {
+                // The islands of before make room first.
+                self.recording = ashore.large.outline().clone();
+                ashore.turn(islands);
+            }
+            let standing = ashore.standing(&recipe);
+            self.work = Work::on_islands(&self.recording, &recipe, standing);
+        }
+        self.recipe = recipe;
+        Ok(())
+    }
+
+    /// Reads the next slice of the islands; `None` where nothing is to be read.
+    fn gather(&mut self) -> Result<Option<Progress>> {
+        let Some(ashore) = &mut self.ashore else {
+            return Ok(None);
+        };
+        let Some(mut gathering) = ashore.gathering.take() else {
+            return Ok(None);
+        };
+        let read = ashore.large.gather(&mut gathering);
+        let (done, of) = gathering.progress();
+        if *read.as_ref().unwrap_or(&false) {
+            self.recording = ashore.large.gathered(gathering);
+            let standing = ashore.standing(&self.recipe);
+            self.work = Work::on_islands(&self.recording, &self.recipe, standing);
+        } else {
+            ashore.gathering = Some(gathering);
+        }
+        read.map(|_| {
+            Some(Progress {
+                stage: Stage::Reading,
+                done,
+                of,
+                news: false,
+            })
         })
     }
 
     /// Takes a changed recipe and drops only what it made stale. On an error nothing changes.
     pub fn set_recipe(&mut self, recipe: Recipe) -> Result<()> {
         check_recipe(&recipe, &self.recording)?;
+        if self.ashore.is_some() {
+            return self.turn(recipe);
+        }
         self.work.change(&self.recording, &self.recipe, &recipe)?;
         self.recipe = recipe;
         Ok(())
@@ -102,12 +187,16 @@ impl Analysis {
 
     /// Does the next bite of work, about 20 ms of it. After an error the same step fails again until the recipe changes.
     pub fn step(&mut self) -> Result<Progress> {
+        if let Some(progress) = self.gather()? {
+            return Ok(progress);
+        }
         self.work.step(&self.recording, &self.recipe)
     }
 
     /// Whether all work is done.
     pub fn finished(&self) -> bool {
-        self.work.finished(&self.recipe)
+        let reading = |ashore: &Ashore| ashore.gathering.is_some();
+        !self.ashore.as_deref().is_some_and(reading) && self.work.finished(&self.recipe)
     }
 
     /// Runs every step.
@@ -138,8 +227,11 @@ impl Analysis {
         &self.recipe
     }
 
-    /// Time courses of the reported components, once there are any.
+    /// Time courses of the reported components over the whole recording, once there are any; never where the samples stay in the file.
     pub fn series(&self) -> Option<Series> {
+        if self.ashore.is_some() {
+            return None;
+        }
         self.work.series()
     }
 }

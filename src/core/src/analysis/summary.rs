@@ -1,9 +1,9 @@
 //! What is known of a recording before a contrast is chosen.
-use super::{cards, check_recipe};
+use super::{cards, check_recipe, islands};
 use crate::error::Result;
 use crate::prepare::inspect;
 use crate::recipe::{Contrast, EventWindow, Recipe};
-use crate::recording::Recording;
+use crate::recording::{Large, Recording};
 use crate::sheet::{ChannelCard, RecordingCard, Sheet};
 use serde::Serialize;
 
@@ -23,6 +23,26 @@ pub fn summary(recording: &Recording) -> Summary {
         recording: cards::begin(recording, &recipe).recording,
         channels: inspect(recording, &recipe),
     }
+}
+
+/// Looks at a recording whose samples stay in the file.
+pub fn summary_of_large(large: &Large) -> Summary {
+    let recipe = no_contrast();
+    let mut recording = cards::begin(large.outline(), &recipe).recording;
+    recording.envelope = large.envelope().to_vec();
+    Summary {
+        recording,
+        channels: islands::look(large, &recipe),
+    }
+}
+
+/// What [`super::Analysis::of_large`] would refuse, without giving the recording away.
+///
+/// # Errors
+/// Those of [`super::Analysis::of_large`].
+pub fn fits_large(large: &Large, recipe: &Recipe) -> Result<()> {
+    check_recipe(recipe, large.outline())?;
+    islands::islands(large.outline(), recipe).map(|_| ())
 }
 
 /// What [`super::Analysis::new`] would refuse, without giving the recording away.

@@ -1,8 +1,9 @@
 //! What is computed, in which order, and what a change of the recipe makes stale.
+use super::islands::{Standing, moved};
 use super::{Progress, Series, Stage, cards};
 use crate::contrast::band::Banding;
-use crate::contrast::fit::{Ends, Labels, Method, extremes, fit};
-use crate::contrast::read::{Reader, Row};
+use crate::contrast::fit::{Ends, Labels, Method, centre, extremes, fit};
+use crate::contrast::read::Reader;
 use crate::contrast::reject::{judge, measure, relative_size};
 use crate::contrast::space::Covariances;
 use crate::contrast::windows::{Exchange, Selection, Window, check, lag_samples, select};
@@ -13,7 +14,7 @@ use crate::evidence::heldout::{
     Design, FoldFit, Ground, Scores, choose_keep, fit_ground, log_total, log_typical,
     mean_and_error, score_into, variances,
 };
-use crate::evidence::permute::{Plan, arrangement, plan, slides};
+use crate::evidence::permute::{Plan, arrangement, plan};
 use crate::prepare::{Comparing, Prepared, Preparing, Quality, inspect};
 use crate::recipe::{BandReference, Contrast, Keep, KeepWord, Measure, Recipe, Shrink, ShrinkWord};
 use crate::recording::Recording;
@@ -34,6 +35,8 @@ const BEST_LIMIT: usize = 64;
 pub(super) struct Work {
     pub(super) sheet: Sheet,
     cards: Option<Vec<ChannelCard>>,
+    /// What is known of the whole where only islands of it are in memory.
+    standing: Option<Standing>,
     /// The comparison of the recorded channels while it is at work; what it gave holds for every recipe.
     comparing: Option<Comparing>,
     pub(super) quality: Option<Quality>,
@@ -56,7 +59,9 @@ pub(super) struct Work {
     summarised: bool,
     pub(super) plan: Option<Plan>,
     pub(super) null: Vec<(f64, f64)>,
-    surrogate: Option<Surrogate>,
+    level: Option<Level>,
+    /// The average channel's ratio, where the signal side was scaled to it.
+    pub(super) average_ratio: f64,
     curve: CurveWork,
     /// The criteria of `drop_windows` have been looked at.
     rejected: bool,
@@ -75,14 +80,13 @@ struct EffectWork {
     ground: Option<Ground>,
 }
 
-/// One surrogate as far as it is.
+/// Both sides of the segments at one level, which is what a test of bands and slow changes exchanges.
 #[derive(Debug)]
-struct Surrogate {
-    row: Row,
-    /// By how many samples each channel is moved along the row.
-    by: Vec<usize>,
+struct Level {
     covariances: Covariances,
-    ground: Option<Ground>,
+    ground: Ground,
+    /// The average channel's ratio before.
+    ratio: f64,
 }
 
 /// The ratio against C as far as it is.
@@ -124,6 +128,7 @@ enum Task {
     FoldFit(usize),
     Summarise,
     Permute,
+    Open,
     Curve,
     Effect,
     Principal,
@@ -149,10 +154,22 @@ fn log_cost(n: usize) -> f64 {
 }
 
 impl Work {
+    /// On islands of a recording whose samples stay in the file.
+    pub(super) fn on_islands(recording: &Recording, recipe: &Recipe, standing: Standing) -> Self {
+        let mut work = Work::new(recording, recipe);
+        work.sheet.warnings = standing.card.warnings.clone();
+        work.sheet.recording = standing.card.clone();
+        work.sheet.channels = standing.cards.clone();
+        work.cards = Some(standing.cards.clone());
+        work.standing = Some(standing);
+        work
+    }
+
     pub(super) fn new(recording: &Recording, recipe: &Recipe) -> Self {
         Work {
             sheet: cards::begin(recording, recipe),
             cards: None,
+            standing: None,
             comparing: None,
             quality: None,
             preparing: None,
@@ -171,7 +188,8 @@ impl Work {
             summarised: false,
             plan: None,
             null: Vec::new(),
-            surrogate: None,
+            level: None,
+            average_ratio: 1.0,
             curve: CurveWork::default(),
             rejected: false,
             effect: None,
@@ -217,6 +235,9 @@ impl Work {
             self.course.clear();
             self.ground = None;
             self.folds.clear();
+        }
+        if old.hold_back != new.hold_back {
+            self.sheet.held_back = None;
         }
         if old.evidence.seed != new.evidence.seed {
             self.counting = None;
@@ -267,7 +288,7 @@ impl Work {
             self.summarised = false;
             self.plan = None;
             self.null.clear();
-            self.surrogate = None;
+            self.level = None;
         }
         if evidence && old.evidence.bootstrap != new.evidence.bootstrap
             || old.evidence.seed != new.evidence.seed
@@ -300,6 +321,11 @@ impl Work {
             self.sheet.channels = self.cards.clone().unwrap_or_default();
         }
         Ok(())
+    }
+
+    /// What the windows are read from.
+    pub(super) fn reader<'a>(&'a self, prepared: &'a Prepared, recipe: &Recipe) -> Reader<'a> {
+        reader(prepared, self.bands.as_ref(), recipe)
     }
 
     /// What was dropped stays dropped; the ratio with every window has to be worked out again.
@@ -368,7 +394,8 @@ impl Work {
         if self.sketched < up.min(1) + down.min(1) {
             return Task::Sketch;
         }
-        if self.quality.is_none() {
+        // Channels are compared over all samples.
+        if self.quality.is_none() && self.standing.is_none() {
             return Task::Compare;
         }
         if self
@@ -406,6 +433,9 @@ impl Work {
         }
         if self.plan.is_none_or(|p| self.null.len() < p.count) {
             return Task::Permute;
+        }
+        if recipe.hold_back.is_some_and(|h| h.open) && self.sheet.held_back.is_none() {
+            return Task::Open;
         }
         if !self.curve.shown {
             Task::Curve
@@ -465,12 +495,17 @@ impl Work {
                 let Some(prepared) = &self.prepared else {
                     return Err(lost());
                 };
+                let standing = self.standing.as_ref();
                 let selection = select(
                     recipe,
                     &recording.events,
-                    &prepared.stretches,
+                    standing.map_or(&prepared.stretches, |s| &s.whole),
                     prepared.rate_hz,
                 )?;
+                let selection = match standing {
+                    Some(s) => moved(selection, &s.islands).ok_or_else(lost)?,
+                    None => selection,
+                };
                 self.sheet.windows = Some(selection.card.clone());
                 afford(prepared.samples.len(), selection.windows.len(), recipe)?;
                 let all = selection.windows.len() as u64;
@@ -539,6 +574,10 @@ impl Work {
                 Ok(progress(Stage::HeldOut, 3 * folds, 3 * folds, true))
             }
             Task::Permute => self.permute(recipe),
+            Task::Open => {
+                self.sheet.held_back = Some(super::opened::open(self, recording, recipe)?);
+                Ok(progress(Stage::Permuting, 1, 1, true))
+            }
             Task::Curve => self.curve(recipe),
             Task::Effect => self.rejection_effect(recipe),
             Task::Principal => self.principal(),
@@ -609,13 +648,7 @@ impl Work {
             self.covariances.largest_mean_square = largest_mean_square(&prepared.samples);
         }
         let courses = selection.exchange == Exchange::Flip;
-        push_windows(
-            &mut self.covariances,
-            &reader,
-            &selection.windows,
-            None,
-            courses,
-        );
+        push_windows(&mut self.covariances, &reader, &selection.windows, courses);
         if self.covariances.packed[first..]
             .iter()
             .flatten()
@@ -632,7 +665,7 @@ impl Work {
             self.design = None;
             self.drop_flat()?;
             if let (true, Some(selection)) = (levelled(recipe), &self.selection) {
-                self.covariances.level(&selection.sides());
+                self.average_ratio = self.covariances.level(&selection.sides());
             }
         }
         Ok(progress(Stage::Windows, done as u64, all as u64, false))
@@ -716,7 +749,7 @@ impl Work {
         if ground.space.covariances.len() < all || (fourth && ground.fourth.len() < all) {
             let reader = reader(prepared, self.bands.as_ref(), recipe);
             let also = fourth.then_some((&reader, &effect.windows[..]));
-            let done = push_space(ground, &effect.covariances, also, None);
+            let done = push_space(ground, &effect.covariances, also);
             return Ok(progress(Stage::Curve, done as u64, 2 * all as u64, false));
         }
         if !logs_ready(ground, keep, recipe) {
@@ -857,7 +890,6 @@ impl Work {
             ground,
             &self.covariances,
             wants_fourth(recipe).then_some((&reader, &selection.windows[..])),
-            None,
         );
         Ok(progress(Stage::Fitting, done as u64 / 2, all as u64, false))
     }
@@ -969,7 +1001,6 @@ impl Work {
             &mut self.folds[f],
             &self.covariances,
             wants_fourth(recipe).then_some((&reader, &selection.windows[..])),
-            None,
         );
         Ok(self.fold_progress(f, 1))
     }
@@ -1020,25 +1051,37 @@ impl Work {
         let plan = *self
             .plan
             .get_or_insert_with(|| plan(design, recipe.evidence.permutations));
-        if design.exchange.of_channels() {
-            return self.push_surrogate(plan, recipe);
-        }
         let best = recipe.keep == Keep::Word(KeepWord::Best);
         let grid = if best {
             best_grid(ground.space.dimensions())
         } else {
             Vec::new()
         };
+        let levelled = design.exchange == Exchange::Level;
+        if levelled {
+            let needed = if best { grid.clone() } else { vec![keep] };
+            if !self.push_level(recipe, &needed)? {
+                let of = plan.count as u64;
+                return Ok(progress(Stage::Permuting, 0, of, false));
+            }
+        }
+        let (Some(ground), Some(design)) = (&self.ground, &self.design) else {
+            return Err(lost());
+        };
+        let (ground, weights) = match &self.level {
+            Some(level) => (&level.ground, &level.covariances.weights),
+            None => (ground, &self.covariances.weights),
+        };
         let averaged = ground.space.courses.iter().map(Vec::len).sum::<usize>();
         let bite = bites(
-            permutation_cost(keep, self.covariances.packed.len(), &grid, &method)
+            permutation_cost(keep, weights.len(), &grid, &method)
                 + averaged as f64 * (1.0 + method.folds as f64),
         );
         let first = self.null.len();
         for i in first..plan.count.min(first + bite) {
             let signal = arrangement(design, plan, best, recipe.evidence.seed, i);
             let c = if best {
-                choose_keep(ground, &grid, &self.covariances.weights, &signal, &method)
+                choose_keep(ground, &grid, weights, &signal, &method)
             } else {
                 keep
             };
@@ -1046,10 +1089,14 @@ impl Work {
                 signal: &signal,
                 train: &ground.train,
             };
-            self.null.push(
-                extremes(ground.view(&self.covariances.weights, c), labels, &method)
-                    .unwrap_or((f64::INFINITY, 0.0)),
-            );
+            let view = ground.view(weights, c);
+            let found = extremes(view, labels, &method).unwrap_or((f64::INFINITY, 0.0));
+            let middle = if levelled {
+                centre(view, labels, method.measure)
+            } else {
+                1.0
+            };
+            self.null.push((found.0 / middle, found.1 / middle));
         }
         let finished = self.null.len() >= plan.count;
         if finished {
@@ -1063,97 +1110,62 @@ impl Work {
         ))
     }
 
-    /// A bite of the next surrogate: everything from the channels' samples on is repeated, the compression too.
-    fn push_surrogate(&mut self, plan: Plan, recipe: &Recipe) -> Result<Progress> {
-        let method = self.method(recipe);
-        let (Some(prepared), Some(selection), Some(keep)) =
-            (&self.prepared, &self.selection, self.keep)
-        else {
-            return Err(lost());
-        };
-        let done = self.null.len();
-        let news = |null: &[(f64, f64)]| {
-            let finished = null.len() >= plan.count;
-            progress(
-                Stage::Permuting,
-                null.len() as u64,
-                plan.count as u64,
-                finished,
-            )
-        };
-        if done >= plan.count {
-            cards::permuted(self, recipe);
-            return Ok(news(&self.null));
-        }
-        let windows = &selection.windows;
-        let now = self.surrogate.get_or_insert_with(|| {
-            let row = Row::of(windows);
-            let by = slides(
-                selection.exchange,
-                &row,
-                prepared.samples.len(),
-                recipe.evidence.seed,
-                done,
-            );
-            Surrogate {
-                row,
-                by,
-                covariances: Covariances {
-                    largest_mean_square: self.covariances.largest_mean_square,
-                    ..Covariances::default()
-                },
-                ground: None,
-            }
-        });
-        let reader = reader(prepared, self.bands.as_ref(), recipe);
-        let moved = Some((&now.row, &now.by[..]));
-        if now.covariances.packed.len() < windows.len() {
-            push_windows(&mut now.covariances, &reader, windows, moved, false);
-            if levelled(recipe) && now.covariances.packed.len() == windows.len() {
-                now.covariances.level(&selection.sides());
-            }
-            return Ok(news(&self.null));
-        }
-        let all = windows.len();
-        let ground = now
-            .ground
-            .get_or_insert_with(|| Ground::new(&now.covariances, limit(recipe), vec![true; all]));
-        let fourth = wants_fourth(recipe).then_some((&reader, &windows[..]));
-        let whole = ground.space.covariances.len() == all
-            && (fourth.is_none() || ground.fourth.len() == all);
-        if !whole {
-            push_space(ground, &now.covariances, fourth, moved);
-            return Ok(news(&self.null));
-        }
-        let best = recipe.keep == Keep::Word(KeepWord::Best);
-        let dimensions = ground.space.dimensions();
-        let grid = if best {
-            best_grid(dimensions)
-        } else {
-            vec![keep.min(dimensions)]
-        };
-        if let Some(c) = grid.iter().find(|c| !logs_ready(ground, **c, recipe)) {
-            push_logs(ground, *c, method.rho());
-            return Ok(news(&self.null));
-        }
-        let signal = selection.sides();
-        let weights = &now.covariances.weights;
-        let c = if best {
-            choose_keep(ground, &grid, weights, &signal, &method)
-        } else {
-            keep.min(dimensions)
+    /// What the arrangements are compared with: the fit as it is, or, where both sides are brought to one level, the fit there about
+    /// its average direction, and the ratio of that average direction.
+    pub(super) fn observed(&self, recipe: &Recipe) -> Option<(Ends, f64)> {
+        let (Some(level), Some(design)) = (&self.level, &self.design) else {
+            return Some((self.ends.clone()?, 1.0));
         };
         let labels = Labels {
-            signal: &signal,
-            train: &ground.train,
+            signal: &design.signal,
+            train: &level.ground.train,
         };
-        let found = extremes(ground.view(weights, c), labels, &method);
-        self.null.push(found.unwrap_or((f64::INFINITY, 0.0)));
-        self.surrogate = None;
-        if self.null.len() >= plan.count {
-            cards::permuted(self, recipe);
+        let method = self.method(recipe);
+        let view = level.ground.view(&level.covariances.weights, self.keep?);
+        let mut ends = fit(view, labels, &method)?;
+        let middle = centre(view, labels, method.measure);
+        for direction in ends.stronger.iter_mut().chain(&mut ends.weaker) {
+            direction.statistic /= middle;
         }
-        Ok(news(&self.null))
+        Some((ends, middle * level.ratio))
+    }
+
+    /// A bite of the levelled ground; whether it is whole.
+    fn push_level(&mut self, recipe: &Recipe, grid: &[usize]) -> Result<bool> {
+        let rho = self.method(recipe).rho();
+        let (Some(prepared), Some(selection)) = (&self.prepared, &self.selection) else {
+            return Err(lost());
+        };
+        let all = selection.windows.len();
+        let level = self.level.get_or_insert_with(|| {
+            let mut covariances = self.covariances.clone();
+            let ratio = covariances.level(&selection.sides());
+            let ground = Ground::new(&covariances, limit(recipe), vec![true; all]);
+            Level {
+                covariances,
+                ground,
+                ratio,
+            }
+        });
+        let fourth = wants_fourth(recipe);
+        let whole = level.ground.space.covariances.len() == all
+            && (!fourth || level.ground.fourth.len() == all);
+        if !whole {
+            let reader = reader(prepared, self.bands.as_ref(), recipe);
+            push_space(
+                &mut level.ground,
+                &level.covariances,
+                fourth.then_some((&reader, &selection.windows[..])),
+            );
+            return Ok(false);
+        }
+        let missing = grid
+            .iter()
+            .find(|c| !logs_ready(&level.ground, **c, recipe));
+        if let Some(c) = missing {
+            push_logs(&mut level.ground, *c, rho);
+        }
+        Ok(missing.is_none())
     }
 
     /// One part (the whole, or one fold) at one value of C, in bites.
@@ -1365,13 +1377,7 @@ fn reader<'a>(prepared: &'a Prepared, bands: Option<&'a Banding>, recipe: &Recip
 }
 
 /// A bite of covariances.
-fn push_windows(
-    into: &mut Covariances,
-    reader: &Reader<'_>,
-    windows: &[Window],
-    moved: Option<(&Row, &[usize])>,
-    courses: bool,
-) {
+fn push_windows(into: &mut Covariances, reader: &Reader<'_>, windows: &[Window], courses: bool) {
     let m = reader.channels() as f64;
     let first = into.packed.len();
     let Some(next) = windows.get(first) else {
@@ -1379,12 +1385,12 @@ fn push_windows(
     };
     let bite = bites(m * m * next.count as f64);
     for window in windows.iter().skip(first).take(bite) {
-        into.push(reader, window, moved, courses);
+        into.push(reader, window, courses);
     }
 }
 
 /// Whether the signal side is scaled to the average channel.
-fn levelled(recipe: &Recipe) -> bool {
+pub(super) fn levelled(recipe: &Recipe) -> bool {
     matches!(
         recipe.contrast,
         Contrast::Band {
@@ -1439,13 +1445,11 @@ fn push_space(
     ground: &mut Ground,
     all: &Covariances,
     fourth: Option<(&Reader<'_>, &[Window])>,
-    moved: Option<(&Row, &[usize])>,
 ) -> usize {
     let (m, r) = (all.channels as f64, ground.space.dimensions() as f64);
     for _ in 0..bites(2.0 * m * r * (m + r)) {
         let more = ground.space.push_next(all);
-        let also =
-            fourth.is_some_and(|(reader, windows)| ground.push_fourth(reader, windows, moved));
+        let also = fourth.is_some_and(|(reader, windows)| ground.push_fourth(reader, windows));
         if !more && !also {
             break;
         }

@@ -185,6 +185,18 @@ fn typical(view: View<'_>, labels: Labels<'_>, method: &Method) -> Ends {
     }
 }
 
+/// The statistic of the average direction: exp of the mean δ (typical), 1 (total, whose sides are brought to one level before).
+pub fn centre(view: View<'_>, labels: Labels<'_>, measure: Measure) -> f64 {
+    match measure {
+        Measure::Typical => {
+            let d = mean_log_difference(view.logs, labels, view.keep);
+            let trace: f64 = (0..view.keep).map(|i| d[packed_len(i) + i]).sum();
+            (trace / view.keep as f64).exp()
+        }
+        Measure::Total => 1.0,
+    }
+}
+
 /// Largest and smallest statistic alone, for permutations.
 pub fn extremes(view: View<'_>, labels: Labels<'_>, method: &Method) -> Option<(f64, f64)> {
     match method.measure {

@@ -8,7 +8,7 @@
 //! Samples are stored as f32, so every channel carries rounding noise of variance about 2^(−48)/12 of its mean square. A dimension
 //! is counted when its eigenvalue exceeds ten times that noise and M·ε of the largest eigenvalue.
 use super::linalg::{Packed, add_scaled, eigh, gram, packed_len, quadratic, unpack};
-use super::read::{Reader, Row};
+use super::read::Reader;
 use super::windows::Window;
 use nalgebra::DMatrix;
 
@@ -28,24 +28,15 @@ pub struct Covariances {
 }
 
 impl Covariances {
-    /// Adds the covariance of the next window.
-    ///
-    /// `moved`: the row of segments, and by how many samples each channel is moved along it (surrogates). `courses`: the window's
-    /// samples are kept as well, if it is a signal window.
-    pub fn push(
-        &mut self,
-        reader: &Reader<'_>,
-        window: &Window,
-        moved: Option<(&Row, &[usize])>,
-        courses: bool,
-    ) {
+    /// Adds the covariance of the next window; with `courses` a signal window's samples are kept as well.
+    pub fn push(&mut self, reader: &Reader<'_>, window: &Window, courses: bool) {
         let (m, n) = (reader.channels(), reader.values(window));
         self.channels = m;
         let stride = m.next_multiple_of(4);
         let mut panel = vec![0.0; stride * n];
         let mut part = Vec::with_capacity(window.count);
         for c in 0..m {
-            reader.channel(window, c, moved.map(|(row, by)| (row, by[c])), &mut part);
+            reader.channel(window, c, &mut part);
             let (mut sum, mut square) = (0.0, 0.0);
             for x in &part {
                 let x = f64::from(*x);
@@ -69,8 +60,8 @@ impl Covariances {
         }
     }
 
-    /// Scales the signal covariances so that the average channel has a ratio of 1.
-    pub fn level(&mut self, signal: &[bool]) {
+    /// Scales the signal covariances so that the average channel has a ratio of 1; gives the ratio that it had.
+    pub fn level(&mut self, signal: &[bool]) -> f64 {
         let side = |wanted: bool| self.pooled(|k| signal[k] == wanted);
         let (s, r) = (side(true), side(false));
         let shares = (0..self.channels).map(|i| {
@@ -79,11 +70,13 @@ impl Covariances {
         });
         let usable: Vec<f64> = shares.filter(|x| x.is_finite() && *x > 0.0).collect();
         let mean = usable.iter().sum::<f64>() / usable.len().max(1) as f64;
-        if mean > 0.0 {
-            for (packed, _) in self.packed.iter_mut().zip(signal).filter(|(_, s)| **s) {
-                packed.iter_mut().for_each(|x| *x /= mean);
-            }
+        if mean <= 0.0 {
+            return 1.0;
         }
+        for (packed, _) in self.packed.iter_mut().zip(signal).filter(|(_, s)| **s) {
+            packed.iter_mut().for_each(|x| *x /= mean);
+        }
+        mean
     }
 
     /// Windows whose whole variance is below 1e-8 of the median window's: an amplifier that was blanked, a lead that was off.
@@ -119,6 +112,22 @@ impl Covariances {
         let m = self.channels;
         let pick = |course: &Vec<f64>| course.iter().skip(i).step_by(m).copied().collect();
         one_by_one(&self.packed, &self.courses, i, pick, signal, of)
+    }
+
+    /// As [`Space::variances`] for the mean of all channels.
+    pub fn mean_variances(&self, signal: &[bool], of: impl Fn(usize) -> bool) -> Vec<f64> {
+        let m = self.channels;
+        let equal = vec![1.0 / m as f64; m];
+        let plain = |k: usize| quadratic(&self.packed[k], &equal);
+        if self.courses.is_empty() {
+            let one = |k: usize| if of(k) { plain(k) } else { f64::NAN };
+            return (0..self.packed.len()).map(one).collect();
+        }
+        let mean = |course: &Vec<f64>| {
+            let rows = course.chunks_exact(m);
+            rows.map(|row| row.iter().sum::<f64>() / m as f64).collect()
+        };
+        repeats(&self.courses, mean, signal, of, |t| plain(2 * t))
     }
 
     /// Weighted mean over the windows that `include` names.
@@ -361,7 +370,7 @@ mod tests {
                 trial: k / 2,
                 onset_s: 0.0,
             };
-            all.push(&reader, &window, None, false);
+            all.push(&reader, &window, false);
         }
         let mut space = Space::new(&all, 150, |_| true);
         assert_eq!(space.rank, 5);

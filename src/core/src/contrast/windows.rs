@@ -51,20 +51,14 @@ pub enum Exchange {
     Shift,
     /// The sign of a trial.
     Flip,
-    /// Each channel's samples along the row of segments, by any number of samples: surrogates with the channels' own spectra.
-    Slide,
-    /// Each channel's windows among the trials, whole: surrogates with the channels' own spectra.
-    SlideWindows,
+    /// The two sides of a segment, once they are brought to one level over all directions.
+    Level,
 }
 
 impl Exchange {
     /// Whether both sides read the prepared samples as they are, each in windows of its own.
     pub fn labels_alone(self) -> bool {
         matches!(self, Exchange::Swap | Exchange::Shuffle | Exchange::Shift)
-    }
-    /// Whether arrangements are made of the channels' samples instead of the labels.
-    pub fn of_channels(self) -> bool {
-        matches!(self, Exchange::Slide | Exchange::SlideWindows)
     }
 }
 
@@ -403,7 +397,7 @@ pub fn select(
         Contrast::Band { within, .. } | Contrast::Slow { within, .. } => match within {
             Some(Within::Window(window)) => {
                 let of = events_of(window, events);
-                paired([window, window], &of, events, &room, Exchange::SlideWindows)
+                paired([window, window], &of, events, &room, Exchange::Level)
             }
             Some(Within::Spans(list)) => {
                 let inside = both(&span_runs(list, events, rate_hz), &room.open());
@@ -414,6 +408,29 @@ pub fn select(
     };
     selection.enough()?;
     Ok(selection)
+}
+
+/// The windows of the share that is locked away, and of nothing else.
+///
+/// # Errors
+/// As [`select`]; also where nothing is locked away.
+pub fn locked_part(
+    recipe: &Recipe,
+    events: &[Event],
+    stretches: &[Stretch],
+    rate_hz: f64,
+) -> Result<Selection> {
+    let locked = locked(recipe.hold_back, stretches, rate_hz);
+    let from_s = locked
+        .first()
+        .map_or(f64::INFINITY, |run| run[0] as f64 / rate_hz);
+    let mut opened = recipe.clone();
+    opened.hold_back = None;
+    let start_s = stretches.first().map_or(0.0, |s| s.onset_s);
+    opened
+        .not_used
+        .push([start_s.min(from_s) - 1.0, from_s.min(1e12)]);
+    select(&opened, events, stretches, rate_hz)
 }
 
 fn span_runs(spans: &Spans, events: &[Event], rate_hz: f64) -> Runs {
@@ -761,7 +778,7 @@ fn segments(contrast: &Contrast, inside: &Runs, room: &Room<'_>) -> Selection {
     }
     Selection {
         paired: true,
-        exchange: Exchange::Slide,
+        exchange: Exchange::Level,
         windows,
         card,
         warnings: Vec::new(),

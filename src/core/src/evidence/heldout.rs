@@ -4,7 +4,7 @@ use crate::contrast::fit::{
     Ends, Labels, Method, View, fit, inner_folds, log_total as fit_log_total,
 };
 use crate::contrast::linalg::{Packed, log_shrunk, quadratic};
-use crate::contrast::read::{Reader, Row};
+use crate::contrast::read::Reader;
 use crate::contrast::space::{Covariances, Space};
 use crate::contrast::windows::{Exchange, Window};
 use crate::recipe::Measure;
@@ -94,12 +94,7 @@ impl Ground {
         true
     }
     /// Adds Σ‖y‖⁴ of the next window's samples; false when all are there.
-    pub fn push_fourth(
-        &mut self,
-        reader: &Reader<'_>,
-        windows: &[Window],
-        moved: Option<(&Row, &[usize])>,
-    ) -> bool {
+    pub fn push_fourth(&mut self, reader: &Reader<'_>, windows: &[Window]) -> bool {
         let Some(window) = windows.get(self.fourth.len()) else {
             return false;
         };
@@ -116,7 +111,7 @@ impl Ground {
                 .iter()
                 .map(|w| w * scale)
                 .collect();
-            let y = project(&weights, reader, window, moved);
+            let y = project(&weights, reader, window);
             for (s, y) in square.iter_mut().zip(&y) {
                 *s += y * y;
             }
@@ -128,16 +123,11 @@ impl Ground {
 }
 
 /// wᵀX over one window about its own mean.
-pub fn project(
-    weights: &[f64],
-    reader: &Reader<'_>,
-    window: &Window,
-    moved: Option<(&Row, &[usize])>,
-) -> Vec<f64> {
+pub fn project(weights: &[f64], reader: &Reader<'_>, window: &Window) -> Vec<f64> {
     let mut out = vec![0.0; reader.values(window)];
     let mut part = Vec::with_capacity(window.count);
     for (c, w) in weights.iter().enumerate() {
-        reader.channel(window, c, moved.map(|(row, by)| (row, by[c])), &mut part);
+        reader.channel(window, c, &mut part);
         for (y, x) in out.iter_mut().zip(&part) {
             *y += w * f64::from(*x);
         }

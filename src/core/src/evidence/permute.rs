@@ -5,14 +5,14 @@
 //! * What repeats: the sign of each trial is turned or not, likewise.
 //! * Spans: the labels of all pieces move along the row of pieces together; there are as many arrangements as pieces (fewer where
 //!   the labels repeat themselves), and all are taken once where no more were asked for.
-//! * Bands and slow changes: surrogates, made of the channels' samples ([`slides`]).
+//! * Bands and slow changes: the two sides of a segment are swapped after the signal side was scaled to the level of the reference
+//!   side over all directions, so that what is tested is whether directions differ from one another.
 //! * Unpaired: the labels are shuffled over all windows of both sides; for `keep: "best"` within each fold, so that the folds keep
 //!   their make-up.
 //!
 //! Arrangement number i depends on the seed and i alone, so any division of the work gives the same numbers.
 use super::bootstrap::{below, generator};
 use super::heldout::Design;
-use crate::contrast::read::Row;
 use crate::contrast::windows::Exchange;
 use rand_chacha::rand_core::Rng;
 
@@ -20,6 +20,8 @@ use rand_chacha::rand_core::Rng;
 pub const STREAM_BOOTSTRAP: u64 = 1;
 /// Stream of the bootstrap of spectra and courses.
 pub const STREAM_DESCRIBE: u64 = 2;
+/// Stream of the random direction beside the components (3 draws windows, in `contrast::windows`).
+pub const STREAM_DIRECTION: u64 = 4;
 /// Arrangement i uses stream `STREAM_ARRANGEMENTS + i`.
 const STREAM_ARRANGEMENTS: u64 = 1 << 32;
 /// Slack of the comparison "as large", relative: rounding must not break ties.
@@ -40,12 +42,11 @@ pub struct Plan {
 pub fn plan(design: &Design, asked: usize) -> Plan {
     let n = design.count(true);
     let distinct = match design.exchange {
-        Exchange::Swap => 2f64.powi(n.min(2000) as i32),
+        Exchange::Swap | Exchange::Level => 2f64.powi(n.min(2000) as i32),
         // Turning every trial changes nothing.
         Exchange::Flip => 2f64.powi(n.clamp(1, 2000) as i32 - 1),
         Exchange::Shift => period(&design.signal) as f64,
         Exchange::Shuffle => binomial(design.signal.len(), n),
-        Exchange::Slide | Exchange::SlideWindows => f64::INFINITY,
     };
     let enumerable = !matches!(design.exchange, Exchange::Shuffle);
     let exact = enumerable && asked > 0 && distinct <= asked as f64;
@@ -64,20 +65,6 @@ fn period(labels: &[bool]) -> usize {
         .find(|p| n.is_multiple_of(*p) && same(*p))
         .unwrap_or(n)
         .max(1)
-}
-
-/// By how many samples surrogate `i` moves each channel along the row of segments: any number, or, for windows around events,
-/// whole windows. Both sides of a contrast move together.
-pub fn slides(exchange: Exchange, row: &Row, channels: usize, seed: u64, i: usize) -> Vec<usize> {
-    let mut rng = generator(seed, STREAM_ARRANGEMENTS + i as u64);
-    let samples = row.samples();
-    let step = match exchange {
-        Exchange::SlideWindows => samples / row.segments().max(1),
-        _ => 1,
-    };
-    (0..channels)
-        .map(|_| step * below(&mut rng, samples / step.max(1)))
-        .collect()
 }
 
 fn binomial(n: usize, k: usize) -> f64 {
@@ -176,11 +163,8 @@ pub fn null_hypothesis(exchange: Exchange) -> &'static str {
         Exchange::Flip => {
             "Nothing repeats: what a trial holds has nothing to do with the other trials, so turning the sign of any of them changes nothing but chance."
         }
-        Exchange::Slide => {
-            "Every channel has its own spectrum and shares nothing with the others: moving each along the recording by itself changes nothing but chance."
-        }
-        Exchange::SlideWindows => {
-            "Every channel has its own spectrum in these windows and shares nothing with the others: exchanging each channel's windows among the trials changes nothing but chance."
+        Exchange::Level => {
+            "Every direction in channel space has the same spectrum but for its size: once both sides of a segment are brought to one level over all directions, swapping them changes nothing but chance."
         }
     }
 }

@@ -257,6 +257,44 @@ impl Preparing {
     }
 }
 
+/// What a preparation needs around a sample, known before it begins.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Reach {
+    /// Recorded samples on either side that a prepared sample depends on.
+    pub margin: usize,
+    /// Recorded samples to a step of both grids: a part that begins at a multiple of it keeps the grid of the whole.
+    pub grid: usize,
+    /// Prepared samples to the same step.
+    pub prepared_grid: usize,
+    /// Sampling rate afterwards.
+    pub rate_hz: f64,
+    /// The stretches afterwards.
+    pub stretches: Vec<Stretch>,
+    /// A prepared sample depends on its whole stretch.
+    pub whole: bool,
+}
+
+/// The reach of a recipe's filters and resampling over these stretches.
+///
+/// # Errors
+/// Edges and rates out of range, as [`Preparing::new`] says.
+pub fn reach(stretches: &[Stretch], recipe: &Recipe, rate_hz: f64) -> Result<Reach> {
+    let designs = designs(&recipe.filter, rate_hz)?;
+    let resampler = resampler(&recipe.filter, rate_hz)?;
+    let halves: usize = designs.iter().map(|d| d.length / 2).sum();
+    let (grid, prepared_grid) = resampler.as_ref().map_or((1, 1), |r| (r.down, r.up));
+    Ok(Reach {
+        margin: halves + resampler.as_ref().map_or(0, Resampler::reach) + 1,
+        grid,
+        prepared_grid,
+        rate_hz: resampler
+            .as_ref()
+            .map_or(rate_hz, |r| new_rate(rate_hz, r, recipe.filter.resample_hz)),
+        stretches: after(stretches, resampler.as_ref()),
+        whole: recipe.filter.detrend.is_some() || mains_fit(&recipe.filter, rate_hz)?.is_some(),
+    })
+}
+
 /// The exact new rate: the wanted one where the two differ only by rounding.
 fn new_rate(rate_hz: f64, r: &Resampler, wanted: Option<f64>) -> f64 {
     let exact = rate_hz * r.up as f64 / r.down as f64;

@@ -69,6 +69,10 @@ impl Resampler {
             phases: (0..up).map(phase).collect(),
         }
     }
+    /// Samples on either side that one depends on.
+    pub fn reach(&self) -> usize {
+        self.half.div_ceil(self.up) + 1
+    }
     /// How many samples come out of `samples`: ⌈samples · up / down⌉.
     pub fn count(&self, samples: usize) -> usize {
         (samples as u64 * self.up as u64).div_ceil(self.down as u64) as usize

@@ -470,11 +470,7 @@ fn check_within(within: Option<&Within>) -> Result<()> {
         None => Ok(()),
         Some(Within::Window(window)) => {
             check_window("contrast.within", window)?;
-            check_alone(
-                "contrast.within",
-                window,
-                "surrogates exchange windows of one length",
-            )
+            check_alone("contrast.within", window, "segments are of one length")
         }
         Some(Within::Spans(spans)) if spans.is_rest() => Err(out(
             "contrast.within",

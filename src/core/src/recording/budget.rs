@@ -19,8 +19,11 @@ const FLOOR_BYTES: u64 = 8 << 20;
 pub(crate) struct Budget {
     left: u64,
     all: u64,
+    memory: u64,
     /// The machine, not the size of the file, sets the limit.
     by_memory: bool,
+    /// What is too large may be handed through instead.
+    streaming: bool,
 }
 
 impl Budget {
@@ -33,8 +36,39 @@ impl Budget {
         Budget {
             left: all,
             all,
+            memory: memory_bytes,
             by_memory: memory_bytes < by_file,
+            streaming: false,
         }
+    }
+
+    /// The same where a reader may hand through what does not fit.
+    pub(crate) fn streaming(self) -> Self {
+        Budget {
+            streaming: true,
+            ..self
+        }
+    }
+
+    /// Whether samples of so many bytes are to be handed through instead of kept.
+    pub(crate) fn flows(&self, bytes: u64) -> bool {
+        self.streaming && self.by_memory && bytes > self.left
+    }
+
+    /// One part in `parts` of what is left.
+    pub(crate) fn share(&self, parts: u64) -> u64 {
+        self.left / parts
+    }
+
+    /// The file turned out to hold this many bytes once unpacked: what they can need may be taken, as far as the machine gives it.
+    pub(crate) fn unpacked(&mut self, bytes: u64) {
+        let by_file = bytes
+            .saturating_mul(BYTES_A_FILE_BYTE)
+            .saturating_add(FLOOR_BYTES);
+        let all = by_file.min(self.memory).max(self.all);
+        self.left += all - self.all;
+        self.all = all;
+        self.by_memory = self.memory < by_file;
     }
 
     /// Takes `bytes` for `what` (as in "its samples").

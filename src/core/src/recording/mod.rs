@@ -17,14 +17,20 @@ mod budget;
 pub mod edf;
 mod events_table;
 mod given;
+mod gzip;
+mod joined;
+pub mod large;
 mod names;
 mod opening;
+pub mod pyramid;
 mod table;
 mod units;
 
 pub use budget::MEMORY_BYTES;
 pub use given::UNITS;
-pub use opening::{MemorySource, OpenOptions, Opening, open};
+pub use joined::natural_order;
+pub use large::Large;
+pub use opening::{MemorySource, OpenOptions, Opened, Opening, open};
 
 use serde::{Deserialize, Serialize};
 
@@ -147,9 +153,10 @@ pub trait Source {
 }
 
 impl Recording {
-    /// Samples a channel.
+    /// Samples a channel; where the samples stay in the file, as many as its stretches say.
     pub fn sample_count(&self) -> usize {
-        self.samples.first().map_or(0, Vec::len)
+        let all = || self.stretches.last().map_or(0, |s| s.first + s.count);
+        self.samples.first().map_or_else(all, Vec::len)
     }
     /// Seconds that hold samples (gaps left out).
     pub fn duration_s(&self) -> f64 {

@@ -1,6 +1,7 @@
 //! Opening a recording in steps: probe the content, read the header, decode slice after slice, add the side files.
 use super::budget::Budget;
-use super::{MEMORY_BYTES, Recording, SideFile, Source, edf, events_table, table};
+use super::large::{Flowing, Large, Scan};
+use super::{MEMORY_BYTES, Recording, SideFile, Source, edf, events_table, gzip, joined, table};
 use crate::error::{Kind, Problem, Result};
 use std::fmt;
 
@@ -17,8 +18,16 @@ pub struct OpenOptions {
 pub(crate) trait Reader {
     /// Decodes the next slice; returns bytes done and bytes in all, equal when nothing is left.
     fn step(&mut self, source: &mut dyn Source, budget: &mut Budget) -> Result<(u64, u64)>;
-    /// The recording, once nothing is left.
+    /// The recording, once nothing is left; without samples where they were handed through.
     fn finish(self: Box<Self>) -> Result<Recording>;
+    /// Where the samples are not kept: the way to them, slice after slice.
+    fn flowing(&mut self) -> Option<&mut dyn Flowing> {
+        None
+    }
+    /// Date and time at which the file's clock starts, in seconds from any one moment; `None` where the file does not say.
+    fn start_s(&self) -> Option<f64> {
+        None
+    }
 }
 
 type Begin = fn(&mut dyn Source, &OpenOptions, &mut Budget) -> Result<Box<dyn Reader>>;
@@ -34,7 +43,7 @@ pub(crate) struct Format {
 }
 
 /// Every format, one row each. The highest score reads the file; a tie goes to the earlier row.
-const FORMATS: &[Format] = &[edf::FORMAT, edf::FORMAT_24_BIT, table::FORMAT];
+const FORMATS: &[Format] = &[edf::FORMAT, edf::FORMAT_24_BIT, gzip::FORMAT, table::FORMAT];
 
 /// First bytes that a probe sees.
 const PROBE_BYTES: u64 = 4096;
@@ -42,7 +51,6 @@ const PROBE_BYTES: u64 = 4096;
 /// Content that is often dropped by mistake: its first bytes and what to call it.
 const OTHER_CONTENT: &[(&[u8], &str)] = &[
     (b"PK\x03\x04", "a ZIP archive"),
-    (b"\x1f\x8b", "gzip-compressed data"),
     (b"%PDF", "a PDF document"),
     (b"\x89PNG", "a PNG picture"),
     (b"\x89HDF", "an HDF5 file"),
@@ -70,7 +78,18 @@ pub struct Opening {
     options: OpenOptions,
     budget: Budget,
     reader: Box<dyn Reader>,
+    /// Takes the samples that are not kept.
+    scan: Option<Scan>,
     finished: bool,
+}
+
+/// What was opened.
+#[derive(Debug)]
+pub enum Opened {
+    /// All samples are in the memory.
+    Whole(Recording),
+    /// The samples stay in the file.
+    Large(Box<Large>),
 }
 
 impl fmt::Debug for Opening {
@@ -98,22 +117,82 @@ impl Opening {
 
     /// [`Opening::begin`] where the caller knows how many bytes the open recording may take.
     pub fn begin_within(
-        mut source: Box<dyn Source>,
+        source: Box<dyn Source>,
         sides: Vec<SideFile>,
         options: OpenOptions,
         memory_bytes: u64,
     ) -> Result<Opening> {
+        let budget = Budget::new(source.len(), memory_bytes);
+        Opening::begin_with(source, sides, options, budget)
+    }
+
+    /// The same for a caller that takes what [`Opening::opened`] gives: where the samples do not fit into `memory_bytes` and the format allows
+    /// it, they are looked over and stay in the file.
+    pub fn begin_streaming(
+        source: Box<dyn Source>,
+        sides: Vec<SideFile>,
+        options: OpenOptions,
+        memory_bytes: u64,
+    ) -> Result<Opening> {
+        let budget = Budget::new(source.len(), memory_bytes).streaming();
+        Opening::begin_with(source, sides, options, budget)
+    }
+
+    fn begin_with(
+        mut source: Box<dyn Source>,
+        sides: Vec<SideFile>,
+        options: OpenOptions,
+        mut budget: Budget,
+    ) -> Result<Opening> {
         let name = source.name().to_owned();
-        let mut budget = Budget::new(source.len(), memory_bytes);
-        let reader = probe(source.as_mut())
-            .and_then(|format| (format.begin)(source.as_mut(), &options, &mut budget))
+        let mut reader = begin_reader(source.as_mut(), &options, &mut budget)
             .map_err(|problem| problem.in_file(name))?;
+        let scan = reader
+            .flowing()
+            .map(|flow| Scan::new(flow.channels(), flow.expected()));
+        let sides = unpacked(sides)?;
         Ok(Opening {
             source,
             sides,
             options,
             budget,
             reader,
+            scan,
+            finished: false,
+        })
+    }
+
+    /// Opens several files of one recording, in the natural order of their names; the recording is called after the first. A single file is
+    /// opened as by [`Opening::begin_streaming`].
+    ///
+    /// # Errors
+    /// Those of [`Opening::begin`]; `Unsupported` for a file with other channels or another rate, named.
+    pub fn begin_joined(
+        mut sources: Vec<Box<dyn Source>>,
+        sides: Vec<SideFile>,
+        options: OpenOptions,
+        memory_bytes: u64,
+    ) -> Result<Opening> {
+        if sources.len() == 1
+            && let Some(source) = sources.pop()
+        {
+            return Opening::begin_streaming(source, sides, options, memory_bytes);
+        }
+        let first = sources.iter().map(|s| s.name());
+        let name = first.min_by(|a, b| joined::natural_order(a, b));
+        let together = joined::Together {
+            name: name.unwrap_or_default().to_owned(),
+            bytes: sources.iter().map(|source| source.len()).sum(),
+        };
+        let mut budget = Budget::new(together.bytes, memory_bytes);
+        let reader = joined::begin(sources, &options, &mut budget)?;
+        Ok(Opening {
+            source: Box::new(together),
+            sides: unpacked(sides)?,
+            options,
+            budget,
+            reader,
+            scan: None,
             finished: false,
         })
     }
@@ -124,6 +203,10 @@ impl Opening {
             .reader
             .step(self.source.as_mut(), &mut self.budget)
             .map_err(|problem| problem.in_file(self.source.name()))?;
+        if let (Some(scan), Some(flow)) = (&mut self.scan, self.reader.flowing()) {
+            let stretches = flow.stretches().to_vec();
+            flow.drain(&mut |channel, samples| scan.push(channel, samples, &stretches));
+        }
         self.finished = done >= of;
         Ok((done, of))
     }
@@ -134,10 +217,27 @@ impl Opening {
     }
 
     /// The recording, with its side files; reads what is left, if anything is.
-    pub fn finish(mut self) -> Result<Recording> {
+    ///
+    /// # Errors
+    /// Those of the reader; `TooLarge` where the samples were handed through ([`Opening::begin_streaming`]): [`Opening::opened`] gives those.
+    pub fn finish(self) -> Result<Recording> {
+        match self.opened()? {
+            Opened::Whole(recording) => Ok(recording),
+            Opened::Large(large) => Err(Problem::new(
+                Kind::TooLarge,
+                "the recording is larger than the memory for it",
+                "open a shorter part of it, or one with fewer channels or a lower sampling rate",
+            )
+            .in_file(large.outline().name.as_str())),
+        }
+    }
+
+    /// What was opened, with its side files; reads what is left, if anything is.
+    pub fn opened(mut self) -> Result<Opened> {
         while !self.finished {
             self.step()?;
         }
+        let pieces = self.reader.flowing().map(|flow| flow.pieces());
         let name = self.source.name().to_owned();
         let mut recording = self
             .reader
@@ -149,7 +249,13 @@ impl Opening {
         recording
             .events
             .sort_by(|a, b| a.onset_s.total_cmp(&b.onset_s));
-        Ok(recording)
+        Ok(match (self.scan, pieces) {
+            (Some(scan), Some(pieces)) => {
+                let large = Large::new(recording, self.source, pieces, scan)?;
+                Opened::Large(Box::new(large))
+            }
+            _ => Opened::Whole(recording),
+        })
     }
 }
 
@@ -170,6 +276,20 @@ pub fn open(
     options: OpenOptions,
 ) -> Result<Recording> {
     Opening::begin(source, sides, options)?.finish()
+}
+
+/// Probes the content and lets its reader begin.
+pub(super) fn begin_reader(
+    source: &mut dyn Source,
+    options: &OpenOptions,
+    budget: &mut Budget,
+) -> Result<Box<dyn Reader>> {
+    let format = probe(source)?;
+    (format.begin)(source, options, budget)
+}
+
+fn unpacked(sides: Vec<SideFile>) -> Result<Vec<SideFile>> {
+    sides.into_iter().map(gzip::side).collect()
 }
 
 fn probe(source: &mut dyn Source) -> Result<&'static Format> {
@@ -205,7 +325,7 @@ fn unknown(head: &[u8]) -> Problem {
     Problem::new(
         Kind::Unknown,
         "the content is not a recording that Teasel knows, whatever the file's name says",
-        "open an EDF or EDF+ file",
+        "open a recording in one of these formats",
     )
     .at("byte 0")
     .expected_found(format!("the mark of {}", names.join(" or ")), found)

@@ -1,7 +1,7 @@
 //! What is said of the kinds of contrast that are not made of event windows: the question, the sides, the method.
 use super::words::{self, NB};
-use crate::recipe::{BandReference, Contrast, EventWindow, Spans, Within};
-use crate::sheet::Sheet;
+use crate::recipe::{BandReference, Contrast, ContrastKind, EventWindow, Spans, Within};
+use crate::sheet::{Permutation, Sheet};
 
 /// "10.0 ± 2.0 Hz".
 fn band(centre_hz: f64, half_width_hz: f64) -> String {
@@ -158,4 +158,48 @@ pub(super) fn method(sheet: &Sheet) -> Option<String> {
             words::seconds(*lag_s)
         ),
     })
+}
+
+/// What was exchanged, for the methods paragraph: "1,000 random swaps of the two windows within trials".
+pub(super) fn arrangements(sheet: &Sheet, test: &Permutation) -> String {
+    let n = words::grouped(test.done);
+    let paired = sheet.windows.as_ref().is_some_and(|w| w.paired);
+    let [all, some] = match (sheet.recipe.contrast.kind(), paired) {
+        (ContrastKind::Windows, true) => [
+            "ways to swap the two windows within trials",
+            "random swaps of the two windows within trials",
+        ],
+        (ContrastKind::Windows, false) => [
+            "ways to label the windows",
+            "random shuffles of the labels over all windows",
+        ],
+        (ContrastKind::Spans, _) => [
+            "shifts of all labels along the row of pieces",
+            "random shifts of all labels along the row of pieces",
+        ],
+        (ContrastKind::Band | ContrastKind::Slow, _) => [
+            "ways to swap the two sides within segments, both brought to one level over all directions before",
+            "random swaps of the two sides within segments, both brought to one level over all directions before",
+        ],
+        (ContrastKind::Repeatable, _) => [
+            "ways to turn the signs of trials",
+            "random turns of the signs of trials",
+        ],
+    };
+    if test.exact {
+        format!("all {n} {all}")
+    } else {
+        format!("{n} {some}")
+    }
+}
+
+/// An arrangement in one word: "swapped".
+pub(super) fn arranged(sheet: &Sheet) -> &'static str {
+    let paired = sheet.windows.as_ref().is_some_and(|w| w.paired);
+    match (sheet.recipe.contrast.kind(), paired) {
+        (ContrastKind::Windows, false) => "shuffled",
+        (ContrastKind::Windows | ContrastKind::Band | ContrastKind::Slow, _) => "swapped",
+        (ContrastKind::Spans, _) => "shifted",
+        (ContrastKind::Repeatable, _) => "sign-turned",
+    }
 }

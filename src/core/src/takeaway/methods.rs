@@ -356,20 +356,7 @@ fn held_out(sheet: &Sheet) -> Option<String> {
 
 fn permutation(sheet: &Sheet) -> Option<String> {
     let test = sheet.permutation.as_ref()?;
-    let how = match (sheet.windows.as_ref().is_some_and(|w| w.paired), test.exact) {
-        (true, true) => format!(
-            "all {} ways to swap the two windows within trials",
-            words::grouped(test.done)
-        ),
-        (true, false) => format!(
-            "{} random swaps of the two windows within trials",
-            words::grouped(test.done)
-        ),
-        (false, _) => format!(
-            "{} random shuffles of the labels over all windows",
-            words::grouped(test.done)
-        ),
-    };
+    let how = kinds::arrangements(sheet, test);
     let p = if test.exact {
         "p is the share of arrangements at least as extreme, the observed one among them"
     } else {

@@ -473,13 +473,15 @@ fn rival(kind: ComparatorKind) -> &'static str {
         ComparatorKind::FirstPc => "First principal component",
         ComparatorKind::BestPc => "Best principal component",
         ComparatorKind::BestChannel => "Best channel",
+        ComparatorKind::MeanOfChannels => "Mean of all channels",
+        ComparatorKind::RandomDirection => "Random direction",
     }
 }
 
 fn chosen(comparator: &Comparator) -> Markup {
     html! {
         @match comparator.kind {
-            ComparatorKind::FirstPc => {}
+            ComparatorKind::FirstPc | ComparatorKind::MeanOfChannels | ComparatorKind::RandomDirection => {}
             ComparatorKind::BestPc => { @if let Some(index) = &comparator.chosen { "number " (named(index)) } }
             ComparatorKind::BestChannel => { @if let Some(name) = &comparator.chosen { (named(name)) } }
         }

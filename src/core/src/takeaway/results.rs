@@ -114,6 +114,10 @@ struct ComparePart<'a> {
     best_pc: Option<PrincipalPart<'a>>,
     #[serde(skip_serializing_if = "Option::is_none")]
     best_channel: Option<BestChannelPart<'a>>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    mean_of_channels: Option<RatiosPart<'a>>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    random_direction: Option<RatiosPart<'a>>,
 }
 
 #[derive(Serialize)]
@@ -121,6 +125,12 @@ struct PrincipalPart<'a> {
     index: Option<usize>,
     share: Option<f64>,
     chosen_in_folds: Option<usize>,
+    typical: &'a TypicalRatio,
+    total: &'a TotalRatio,
+}
+
+#[derive(Serialize)]
+struct RatiosPart<'a> {
     typical: &'a TypicalRatio,
     total: &'a TotalRatio,
 }
@@ -262,5 +272,14 @@ fn compare(comparators: &[Comparator]) -> ComparePart<'_> {
             typical: &c.typical,
             total: &c.total,
         }),
+        mean_of_channels: of(ComparatorKind::MeanOfChannels).map(plain),
+        random_direction: of(ComparatorKind::RandomDirection).map(plain),
+    }
+}
+
+fn plain(c: &Comparator) -> RatiosPart<'_> {
+    RatiosPart {
+        typical: &c.typical,
+        total: &c.total,
     }
 }

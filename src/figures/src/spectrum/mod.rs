@@ -9,6 +9,7 @@ use crate::table::Table;
 use crate::{Plot, nan, text};
 use plotters_backend::DrawingBackend;
 use serde::{Deserialize, Serialize};
+use teasel_core::recipe::Contrast;
 use teasel_core::sheet::{Component, Sheet};
 
 const LEFT: f64 = 42.0;
@@ -43,6 +44,18 @@ pub struct Spectrum {
     pub reference_high: Vec<f64>,
     /// Where the two differ most in the direction of the component's end.
     pub peak_hz: Option<f64>,
+    /// What the two lines are called.
+    pub names: [String; 2],
+}
+
+/// What the two spectra are of, by the kind of contrast.
+fn names(contrast: &Contrast) -> [String; 2] {
+    match contrast {
+        Contrast::Windows { .. } | Contrast::Spans { .. } => ["signal", "reference"],
+        Contrast::Band { .. } | Contrast::Slow { .. } => ["component", "average channel"],
+        Contrast::Repeatable(_) => ["average of trials", "single trials"],
+    }
+    .map(str::to_owned)
 }
 
 impl Spectrum {
@@ -82,6 +95,7 @@ impl Spectrum {
             reference_low: db(&spectra.reference_low),
             reference_high: db(&spectra.reference_high),
             peak_hz: component.peak_hz.filter(|hz| hz.is_finite()),
+            names: names(&sheet.recipe.contrast),
         })
     }
 
@@ -186,7 +200,7 @@ impl Spectrum {
         self.name(
             pen,
             frame,
-            "signal",
+            &self.names[0],
             &self.signal,
             &mut taken,
             word(inks.signal),
@@ -194,7 +208,7 @@ impl Spectrum {
         self.name(
             pen,
             frame,
-            "reference",
+            &self.names[1],
             &self.reference,
             &mut taken,
             word(inks.reference),
@@ -269,6 +283,11 @@ impl Plot for Spectrum {
                 text::decibels(difference)
             )
         });
-        format!("Spectra of the component in signal and in reference windows.{peak}")
+        let of = if self.names[0] == "signal" {
+            "Spectra of the component in signal and in reference windows.".to_owned()
+        } else {
+            format!("Two spectra: {} and {}.", self.names[0], self.names[1])
+        };
+        format!("{of}{peak}")
     }
 }

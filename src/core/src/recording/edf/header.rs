@@ -1,4 +1,4 @@
-//! The header of an EDF file: fixed ASCII fields, each checked before anything is believed.
+//! The header of an EDF or BDF file: fixed ASCII fields, each checked before anything is believed.
 use crate::error::{Kind, Problem, Result};
 use crate::recording::Source;
 use crate::recording::budget::Budget;
@@ -8,12 +8,51 @@ use std::ops::RangeInclusive;
 
 /// Bytes of the fixed part, and of each signal's part.
 pub(super) const PART: u64 = 256;
-/// Label of a signal that holds text, in EDF+.
-const TEXT_LABEL: &str = "EDF Annotations";
+/// Label of the signal that holds trigger codes, in BDF; compared without regard to case.
+const CODES_LABEL: &str = "Status";
 /// Durations of a record that 8 digits write without an exponent.
 const SHORTEST_TO_LONGEST_S: RangeInclusive<f64> = 1e-6..=99_999_999.0;
 /// Widths of a signal's ten fields, in file order.
 const WIDTHS: [usize; 10] = [16, 80, 8, 8, 8, 8, 8, 80, 8, 32];
+
+/// How wide a sample is.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum Width {
+    /// EDF: 16 bits.
+    Two,
+    /// BDF: 24 bits.
+    Three,
+}
+
+impl Width {
+    pub(super) fn bytes(self) -> u64 {
+        match self {
+            Width::Two => 2,
+            Width::Three => 3,
+        }
+    }
+    /// The name of the format without its variant.
+    pub(super) fn name(self) -> &'static str {
+        match self {
+            Width::Two => "EDF",
+            Width::Three => "BDF",
+        }
+    }
+    /// Label of a signal that holds text.
+    pub(super) fn text_label(self) -> &'static str {
+        match self {
+            Width::Two => "EDF Annotations",
+            Width::Three => "BDF Annotations",
+        }
+    }
+    /// The least and the greatest number that fits.
+    pub(super) fn limits(self) -> [i32; 2] {
+        match self {
+            Width::Two => [i16::MIN.into(), i16::MAX.into()],
+            Width::Three => [-(1 << 23), (1 << 23) - 1],
+        }
+    }
+}
 
 /// What the reserved field says.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -24,11 +63,12 @@ pub(super) enum Variant {
 }
 
 impl Variant {
-    pub(super) fn name(self) -> &'static str {
+    /// What follows the format's name.
+    pub(super) fn suffix(self) -> &'static str {
         match self {
-            Variant::Plain => "EDF",
-            Variant::Continuous => "EDF+C",
-            Variant::Discontinuous => "EDF+D",
+            Variant::Plain => "",
+            Variant::Continuous => "+C",
+            Variant::Discontinuous => "+D",
         }
     }
 }
@@ -41,6 +81,8 @@ pub(super) struct Signal {
     pub(super) unit: String,
     /// Holds annotations.
     pub(super) is_text: bool,
+    /// Holds trigger codes.
+    pub(super) is_codes: bool,
     /// Samples a record.
     pub(super) samples: u64,
     /// First byte in a record.
@@ -68,7 +110,7 @@ impl Scale {
             offset: if is_rounding { 0.0 } else { offset * factor },
         }
     }
-    pub(super) fn value(self, digital: i16) -> f32 {
+    pub(super) fn value(self, digital: i32) -> f32 {
         (f64::from(digital) * self.gain + self.offset) as f32
     }
 }
@@ -76,7 +118,10 @@ impl Scale {
 /// Everything the header says.
 #[derive(Debug, Clone)]
 pub(super) struct Header {
+    pub(super) width: Width,
     pub(super) variant: Variant,
+    /// Date and time of the start, in seconds since the beginning of 1985; `None` where they are none.
+    pub(super) start_s: Option<f64>,
     pub(super) bytes: u64,
     /// `None` where the header says −1: not known when it was written.
     pub(super) records: Option<u64>,
@@ -101,14 +146,14 @@ impl Header {
     }
     /// The signal that holds a byte of a record.
     pub(super) fn signal_at(&self, byte_in_record: u64) -> Option<&Signal> {
-        self.signals
-            .iter()
-            .find(|s| (s.offset..s.offset + 2 * s.samples).contains(&byte_in_record))
+        self.signals.iter().find(|s| {
+            (s.offset..s.offset + self.width.bytes() * s.samples).contains(&byte_in_record)
+        })
     }
 }
 
 /// Reads and checks the header.
-pub(super) fn read(source: &mut dyn Source, budget: &mut Budget) -> Result<Header> {
+pub(super) fn read(source: &mut dyn Source, width: Width, budget: &mut Budget) -> Result<Header> {
     let mut fixed = [0; PART as usize];
     if source.len() < PART {
         return Err(damaged("the file ends within its header")
@@ -148,7 +193,7 @@ pub(super) fn read(source: &mut dyn Source, budget: &mut Budget) -> Result<Heade
                 format!("{} bytes", source.len()),
             ));
     }
-    let variant = variant(&fixed[192..236])?;
+    let variant = variant(width, &fixed[192..236])?;
     let records_place = place("number of records", 236);
     let records = match whole(&fixed[236..244], &records_place)? {
         -1 => None,
@@ -169,7 +214,9 @@ pub(super) fn read(source: &mut dyn Source, budget: &mut Budget) -> Result<Heade
     let mut rest = vec![0; (bytes - PART) as usize];
     source.read_at(PART, &mut rest)?;
     let mut header = Header {
+        width,
         variant,
+        start_s: start_s(&fixed[168..184]),
         bytes,
         records,
         record_s,
@@ -180,7 +227,9 @@ pub(super) fn read(source: &mut dyn Source, budget: &mut Budget) -> Result<Heade
     for index in 0..signals as usize {
         let fields = fields(&rest, signals as usize, index);
         let signal = signal(&mut header, index, &fields)?;
-        header.record_bytes = header.record_bytes.saturating_add(2 * signal.samples);
+        header.record_bytes = header
+            .record_bytes
+            .saturating_add(width.bytes() * signal.samples);
         header.signals.push(signal);
     }
     check_duration(&header)?;
@@ -215,10 +264,13 @@ fn signal(header: &mut Header, index: usize, fields: &[Field<'_>; 10]) -> Result
             .at(samples_place)
             .expected_found("1 sample a record or more", samples));
     }
-    let is_text = header.variant != Variant::Plain && label == TEXT_LABEL;
+    let is_text = header.variant != Variant::Plain && label == header.width.text_label();
+    let is_codes = header.width == Width::Three && label.eq_ignore_ascii_case(CODES_LABEL);
     let unit = text(fields[2].0);
     let scale = if is_text {
         Err("it holds annotations".to_owned())
+    } else if is_codes {
+        Err("it holds trigger codes".to_owned())
     } else {
         let mut limit = |what, field: usize| {
             real(
@@ -232,10 +284,11 @@ fn signal(header: &mut Header, index: usize, fields: &[Field<'_>; 10]) -> Result
             whole(fields[5].0, &place("digital minimum", fields[5]))?,
             whole(fields[6].0, &place("digital maximum", fields[6]))?,
         ];
-        scale(physical, digital, to_microvolts(&unit).unwrap_or(1.0))
+        scale(header.width, physical, digital, &unit)
     };
     Ok(Signal {
         is_text,
+        is_codes,
         unit,
         samples: samples as u64,
         offset: header.record_bytes,
@@ -244,7 +297,12 @@ fn signal(header: &mut Header, index: usize, fields: &[Field<'_>; 10]) -> Result
     })
 }
 
-fn scale(physical: [f64; 2], digital: [i64; 2], factor: f64) -> std::result::Result<Scale, String> {
+fn scale(
+    width: Width,
+    physical: [f64; 2],
+    digital: [i64; 2],
+    unit: &str,
+) -> std::result::Result<Scale, String> {
     if digital[0] >= digital[1] {
         return Err(format!(
             "its digital maximum should be above its digital minimum {} and is {}",
@@ -257,8 +315,9 @@ fn scale(physical: [f64; 2], digital: [i64; 2], factor: f64) -> std::result::Res
             physical[0]
         ));
     }
+    let factor = to_microvolts(unit).unwrap_or(1.0);
     let scale = Scale::from_limits(physical, digital.map(|d| d as f64), factor);
-    if !scale.value(i16::MIN).is_finite() || !scale.value(i16::MAX).is_finite() {
+    if !width.limits().iter().all(|d| scale.value(*d).is_finite()) {
         return Err(format!(
             "its limits {} and {} are too far apart for numbers of 32 bits",
             physical[0], physical[1]
@@ -268,7 +327,7 @@ fn scale(physical: [f64; 2], digital: [i64; 2], factor: f64) -> std::result::Res
 }
 
 fn check_duration(header: &Header) -> Result<()> {
-    let ordinary = header.signals.iter().any(|s| !s.is_text);
+    let ordinary = header.signals.iter().any(|s| !s.is_text && !s.is_codes);
     if !ordinary {
         return Err(Problem::new(
             Kind::Unsupported,
@@ -294,15 +353,48 @@ fn check_duration(header: &Header) -> Result<()> {
     Ok(())
 }
 
-fn variant(reserved: &[u8]) -> Result<Variant> {
-    match reserved {
-        [b'E', b'D', b'F', b'+', b'C', ..] => Ok(Variant::Continuous),
-        [b'E', b'D', b'F', b'+', b'D', ..] => Ok(Variant::Discontinuous),
-        [b'E', b'D', b'F', b'+', ..] => Err(damaged("the kind of EDF+ is not known")
-            .at("file header, reserved field, byte 192")
-            .expected_found("EDF+C or EDF+D", quoted(&reserved[..5]))),
-        _ => Ok(Variant::Plain),
+fn variant(width: Width, reserved: &[u8]) -> Result<Variant> {
+    let plus = reserved
+        .strip_prefix(width.name().as_bytes())
+        .and_then(|rest| rest.strip_prefix(b"+"));
+    match plus {
+        Some([b'C', ..]) => Ok(Variant::Continuous),
+        Some([b'D', ..]) => Ok(Variant::Discontinuous),
+        Some(_) => {
+            let name = width.name();
+            Err(damaged(&format!("the kind of {name}+ is not known"))
+                .at("file header, reserved field, byte 192")
+                .expected_found(format!("{name}+C or {name}+D"), quoted(&reserved[..5])))
+        }
+        None => Ok(Variant::Plain),
     }
+}
+
+/// `dd.mm.yyhh.mm.ss` as seconds since the beginning of 1985; years from 85 on are of the last century (the standard's rule).
+fn start_s(field: &[u8]) -> Option<f64> {
+    let number = |at: usize| -> Option<i64> {
+        std::str::from_utf8(field.get(at..at + 2)?)
+            .ok()?
+            .parse()
+            .ok()
+    };
+    let [day, month, year, hour, minute, second] = [0, 3, 6, 8, 11, 14].map(number);
+    let (day, month, year) = (day?, month?, year?);
+    if !(1..=31).contains(&day) || !(1..=12).contains(&month) {
+        return None;
+    }
+    // Whole days by a calendar that begins its year in March, so that the leap day comes last.
+    let year = year + if year >= 85 { 1900 } else { 2000 };
+    let (year, month) = if month > 2 {
+        (year, month - 3)
+    } else {
+        (year - 1, month + 9)
+    };
+    let days = |year: i64| 365 * year + year / 4 - year / 100 + year / 400;
+    let day_of_year = (153 * month + 2) / 5 + day - 1;
+    let begin = days(1984) + (153 * 10 + 2) / 5;
+    let seconds = ((days(year) + day_of_year - begin) * 24 + hour?) * 3600 + minute? * 60 + second?;
+    Some(seconds as f64)
 }
 
 /// A field as text: UTF-8 where it is, otherwise Latin-1; control characters become spaces; trimmed.

@@ -1,8 +1,8 @@
-//! EDF (Kemp, Värri, Rosa, Nielsen & Gade 1992) and EDF+ (Kemp & Olivan 2003), 16 bits.
+//! EDF (Kemp, Värri, Rosa, Nielsen & Gade 1992) and EDF+ (Kemp & Olivan 2003), 16 bits; BDF and BDF+, the same with 24 bits.
 //!
 //! ```text
 //! header   256 bytes of ASCII fields, then 256 more for each signal, field by field over all signals
-//! record   for each signal its samples, 16-bit little-endian two's complement; then the next record
+//! record   for each signal its samples, little-endian two's complement of 16 bits (BDF: 24); then the next record
 //! value    physical = physical_min + (digital − digital_min) · (physical_max − physical_min) / (digital_max − digital_min)
 //! ```
 //!
@@ -21,20 +21,23 @@
 //! so no sample's time is wrong by more than half a sample. EDF+C is taken as continuous, with a warning where its records'
 //! onsets say otherwise.
 //!
+//! # Trigger codes
+//! In BDF a signal called `Status` holds trigger codes in its low 16 bits. Wherever a bit of them rises, there is an event; its label is the
+//! code as a number (common practice, no source). What stands there at the very start is no event.
+//!
 //! # Names
-//! A signal called `EDF Annotations` is text only in an EDF+ file. In plain EDF it is a signal like any other.
+//! A signal called `EDF Annotations` (`BDF Annotations`) is text only in an EDF+ (BDF+) file. In plain EDF it is a signal like any other.
 mod annotations;
+mod codes;
 mod header;
 mod read;
 mod records;
 mod write;
 
-pub use write::{Identity, write};
+pub use write::{Identity, write, write_24_bit};
 
-use super::Source;
-use super::budget::Budget;
-use super::opening::{Format, OpenOptions, Reader};
-use crate::error::{Kind, Problem, Result};
+use super::opening::Format;
+use header::Width;
 
 pub(super) const FORMAT: Format = Format {
     name: "EDF",
@@ -50,10 +53,10 @@ pub(super) const FORMAT: Format = Format {
             0
         }
     },
-    begin: read::begin,
+    begin: |source, options, budget| read::begin(Width::Two, source, options, budget),
 };
 
-/// The 24-bit sibling, known so that it can be refused in words.
+/// The 24-bit sibling: the same header and records, three bytes a sample, and a channel of trigger codes.
 pub(super) const FORMAT_24_BIT: Format = Format {
     name: "BDF",
     score: |head| {
@@ -63,19 +66,5 @@ pub(super) const FORMAT_24_BIT: Format = Format {
             0
         }
     },
-    begin: refuse_24_bit,
+    begin: |source, options, budget| read::begin(Width::Three, source, options, budget),
 };
-
-fn refuse_24_bit(
-    _source: &mut dyn Source,
-    _options: &OpenOptions,
-    _budget: &mut Budget,
-) -> Result<Box<dyn Reader>> {
-    Err(Problem::new(
-        Kind::Unsupported,
-        "this is BDF, with samples of 24 bits, which this version does not read",
-        "save it as EDF+ with 16 bits and open that",
-    )
-    .at("byte 0")
-    .expected_found("EDF", "BDF"))
-}

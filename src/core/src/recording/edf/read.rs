@@ -1,9 +1,13 @@
 //! From an EDF file's header to a recording: which signals, how many records, decoding slice after slice.
+mod flow;
+
 use super::annotations;
-use super::header::{self, Header, Scale, Signal, Variant, damaged};
+use super::codes::Codes;
+use super::header::{self, Header, Scale, Signal, Variant, Width, damaged};
 use super::records;
 use crate::error::Result;
 use crate::recording::budget::Budget;
+use crate::recording::large::Flowing;
 use crate::recording::names::{counted, name_apart, opened_before};
 use crate::recording::opening::{OpenOptions, Reader};
 use crate::recording::units::Unit;
@@ -32,12 +36,15 @@ struct EdfReader {
     /// Samples a record of every analysed signal.
     samples: u64,
     columns: Vec<Column>,
+    codes: Vec<Codes>,
     channels: Vec<Channel>,
     others: Vec<OtherChannel>,
     events: Vec<Event>,
     stretches: Vec<Stretch>,
     notes: Notes,
     warnings: Vec<String>,
+    /// The samples are handed on instead of kept.
+    flows: bool,
 }
 
 /// What is said once however often it happens: how many, and where first.
@@ -56,27 +63,40 @@ fn note(slot: &mut (u64, String), place: impl FnOnce() -> String) {
 }
 
 pub(super) fn begin(
+    width: Width,
     source: &mut dyn Source,
     options: &OpenOptions,
     budget: &mut Budget,
 ) -> Result<Box<dyn Reader>> {
-    let mut header = header::read(source, budget)?;
+    let mut header = header::read(source, width, budget)?;
     let mut warnings = std::mem::take(&mut header.warnings);
     let samples = commonest(&header)?;
     let records = records::count(&header, source.len(), options, &mut warnings)?;
     if header.variant != Variant::Plain && !header.signals.iter().any(|s| s.is_text) {
         warnings.push(without_text(&header)?);
     }
+    let analysed = |s: &&Signal| s.scale.is_ok() && s.samples == samples;
+    let many = header.signals.iter().filter(analysed).count() as u64;
+    let whole = (records.saturating_mul(samples)).saturating_mul(many * size_of::<f32>() as u64);
+    let flows = budget.flows(whole);
+    let slice_bytes = if flows {
+        SLICE_BYTES.min(budget.share(8))
+    } else {
+        SLICE_BYTES
+    };
+    let slice_records = (slice_bytes / header.record_bytes).clamp(1, records);
+    // Samples that flow are handed on after every slice.
+    let kept = if flows { slice_records } else { records };
     let rate = |samples: u64| samples as f64 / header.record_s;
     let rate_hz = rate(samples);
     let (mut columns, mut channels, mut others) = (Vec::new(), Vec::new(), Vec::new());
     for (index, signal) in header.signals.iter().enumerate() {
         match (&signal.scale, signal.samples == samples) {
             (Ok(scale), true) => {
-                let count = records.saturating_mul(samples);
+                let count = kept.saturating_mul(samples);
                 columns.push(Column {
                     offset: signal.offset as usize,
-                    bytes: 2 * signal.samples as usize,
+                    bytes: (width.bytes() * signal.samples) as usize,
                     scale: *scale,
                     samples: budget.vec(count, "its samples")?,
                 });
@@ -92,7 +112,7 @@ pub(super) fn begin(
                         rate(signal.samples)
                     ),
                 };
-                if scale.is_err() {
+                if scale.is_err() && !signal.is_codes {
                     warnings.push(format!(
                         "Channel {} \"{}\" cannot be used: {reason}.",
                         index + 1,
@@ -108,8 +128,9 @@ pub(super) fn begin(
             }
         }
     }
+    let codes = header.signals.iter().filter(|s| s.is_codes);
+    let codes = codes.map(|s| Codes::new(s, header.record_s)).collect();
     name_apart(&mut channels, &mut warnings);
-    let slice_records = (SLICE_BYTES / header.record_bytes).clamp(1, records);
     let mut slice = budget.vec(slice_records * header.record_bytes, "a slice of it")?;
     slice.resize((slice_records * header.record_bytes) as usize, 0);
     let start = Stretch {
@@ -129,6 +150,7 @@ pub(super) fn begin(
         rate_hz,
         samples,
         columns,
+        codes,
         channels,
         others,
         events: Vec::new(),
@@ -136,6 +158,7 @@ pub(super) fn begin(
         notes: Notes::default(),
         warnings,
         header,
+        flows,
     }))
 }
 
@@ -170,15 +193,15 @@ fn commonest(header: &Header) -> Result<u64> {
 
 /// An EDF+ file without an annotation signal has no clock: that matters only where there may be gaps.
 fn without_text(header: &Header) -> Result<String> {
+    let name = header.width.name();
     if header.variant == Variant::Discontinuous {
         return Err(damaged("the records' onsets are missing")
             .at("file header, labels, byte 256")
             .expected_found("a signal \"EDF Annotations\" in EDF+D", "none"));
     }
-    Ok(
-        "The file calls itself EDF+C but has no annotation signal: it was read as plain EDF."
-            .to_owned(),
-    )
+    Ok(format!(
+        "The file calls itself {name}+C but has no annotation signal: it was read as plain {name}."
+    ))
 }
 
 fn channel(signal: &Signal, index: usize) -> Channel {
@@ -192,13 +215,26 @@ fn channel(signal: &Signal, index: usize) -> Channel {
     }
 }
 
-fn decode(bytes: &[u8], scale: Scale, out: &mut Vec<f32>) {
-    let (pairs, _) = bytes.as_chunks::<2>();
-    out.extend(
-        pairs
-            .iter()
-            .map(|&pair| scale.value(i16::from_le_bytes(pair))),
-    );
+fn decode(width: Width, bytes: &[u8], scale: Scale, out: &mut Vec<f32>) {
+    match width {
+        Width::Two => {
+            let (pairs, _) = bytes.as_chunks::<2>();
+            out.extend(
+                pairs
+                    .iter()
+                    .map(|&pair| scale.value(i16::from_le_bytes(pair).into())),
+            );
+        }
+        Width::Three => {
+            let (triples, _) = bytes.as_chunks::<3>();
+            // The three bytes on top of the four keep their sign on the way down.
+            out.extend(
+                triples
+                    .iter()
+                    .map(|&[a, b, c]| scale.value(i32::from_le_bytes([0, a, b, c]) >> 8)),
+            );
+        }
+    }
 }
 
 impl Reader for EdfReader {
@@ -211,11 +247,26 @@ impl Reader for EdfReader {
         Ok((end(self.done), end(self.records)))
     }
 
+    fn flowing(&mut self) -> Option<&mut dyn Flowing> {
+        if self.flows { Some(self) } else { None }
+    }
+
+    fn start_s(&self) -> Option<f64> {
+        self.header.start_s
+    }
+
     fn finish(mut self: Box<Self>) -> Result<Recording> {
         self.warn_of_notes();
+        if self.flows {
+            self.columns.clear();
+        }
         Ok(Recording {
             name: String::new(),
-            format: self.header.variant.name().to_owned(),
+            format: format!(
+                "{}{}",
+                self.header.width.name(),
+                self.header.variant.suffix()
+            ),
             rate_hz: self.rate_hz,
             channels: self.channels,
             others: self.others,
@@ -261,7 +312,12 @@ impl EdfReader {
         for column in &mut self.columns {
             let place = column.offset..column.offset + column.bytes;
             for record in bytes[..good * record_bytes].chunks_exact(record_bytes) {
-                decode(&record[place.clone()], column.scale, &mut column.samples);
+                decode(
+                    self.header.width,
+                    &record[place.clone()],
+                    column.scale,
+                    &mut column.samples,
+                );
             }
         }
         self.done += good as u64;
@@ -275,8 +331,10 @@ impl EdfReader {
         let mut first_text = true;
         for signal in self.header.signals.iter().filter(|s| s.is_text) {
             let from = signal.offset as usize;
-            let lists =
-                annotations::read(&record[from..from + 2 * signal.samples as usize], budget)?;
+            let lists = annotations::read(
+                &record[from..from + (self.header.width.bytes() * signal.samples) as usize],
+                budget,
+            )?;
             if first_text {
                 onset_s = lists.record_onset_s;
                 first_text = false;
@@ -294,6 +352,13 @@ impl EdfReader {
             Variant::Discontinuous => self.join_at(onset_s, index, budget)?,
         }
         self.events.extend(events);
+        let onset_s = self.stretches.last().map_or(0.0, |stretch| {
+            let before = stretch.count as f64 - self.samples as f64;
+            stretch.onset_s + before / self.rate_hz
+        });
+        for codes in &mut self.codes {
+            codes.read(record, onset_s, &mut self.events, budget)?;
+        }
         Ok(())
     }
 
@@ -325,7 +390,7 @@ impl EdfReader {
         }
     }
 
-    /// EDF+C: one stretch, whatever the later records say of their time.
+    /// Continuous: one stretch, whatever the later records say of their time.
     fn continue_at(&mut self, onset_s: Option<f64>, index: u64) {
         let has_text = self.header.signals.iter().any(|s| s.is_text);
         if onset_s.is_none() && has_text {
@@ -341,7 +406,7 @@ impl EdfReader {
         self.extend();
     }
 
-    /// EDF+D: a new stretch after a gap.
+    /// Discontinuous: a new stretch after a gap.
     fn join_at(&mut self, onset_s: Option<f64>, index: u64, budget: &mut Budget) -> Result<()> {
         let text = self.header.signals.iter().find(|s| s.is_text);
         let damage = |expected: String, found: String| {
@@ -392,9 +457,10 @@ impl EdfReader {
                 untimed.1
             ));
         }
+        let name = self.header.width.name();
         if off_time.0 > 0 {
             self.warnings.push(format!(
-                "The file calls itself continuous (EDF+C), but {} say they start elsewhere than where the one before ends; they were taken as continuous. If its pauses are real, later events lie beside their samples: such a file should be EDF+D. The first is {}.",
+                "The file calls itself continuous ({name}+C), but {} say they start elsewhere than where the one before ends; they were taken as continuous. If its pauses are real, later events lie beside their samples: such a file should be {name}+D. The first is {}.",
                 counted(off_time.0, "record"),
                 off_time.1
             ));

@@ -1,5 +1,5 @@
-//! Writing a recording as EDF+ with 16 bits and its events as annotations.
-use super::header::Scale;
+//! Writing a recording as EDF+ with 16 bits or BDF+ with 24, its events as annotations.
+use super::header::{Scale, Width};
 use crate::error::{Kind, Problem, Result};
 use crate::recording::units::to_microvolts;
 use crate::recording::{Event, Recording};
@@ -37,25 +37,44 @@ impl Default for Identity {
 /// `Unsupported` for a recording that EDF cannot hold: no sample, values that are not numbers or need more than 8 characters,
 /// a rate that no record length expresses.
 pub fn write(recording: &Recording, identity: &Identity) -> Result<Vec<u8>> {
-    check(recording)?;
+    write_wide(Width::Two, recording, identity)
+}
+
+/// The bytes of a BDF+C file, or BDF+D where the recording has gaps: [`write`] with 24 bits a sample.
+///
+/// A channel whose samples all are multiples of 1 (of at most 8,388,607 of them) or of 0.1, … 0.00001 (of at most 999,999) is written
+/// without loss; any other is rounded to a 16,777,215th of its range.
+///
+/// # Errors
+/// As [`write`].
+pub fn write_24_bit(recording: &Recording, identity: &Identity) -> Result<Vec<u8>> {
+    write_wide(Width::Three, recording, identity)
+}
+
+fn write_wide(width: Width, recording: &Recording, identity: &Identity) -> Result<Vec<u8>> {
+    check(width, recording)?;
     let record = Record::plan(recording)?;
     let columns: Vec<Limits> = recording
         .channels
         .iter()
         .zip(&recording.samples)
-        .map(|(channel, samples)| Limits::of(&channel.name, samples))
+        .map(|(channel, samples)| Limits::of(width, &channel.name, samples))
         .collect::<Result<_>>()?;
     let lists = lists(recording, &record);
     let text_bytes = lists.iter().map(Vec::len).max().unwrap_or(0).max(16);
-    let text_bytes = text_bytes.next_multiple_of(2);
+    let text_bytes = text_bytes.next_multiple_of(width.bytes() as usize);
 
     let mut out = Vec::new();
-    header(&mut out, recording, identity, &record, &columns, text_bytes)?;
+    header(
+        &mut out, width, recording, identity, &record, &columns, text_bytes,
+    )?;
     for (index, list) in lists.iter().enumerate() {
         let part = index * record.samples..(index + 1) * record.samples;
         for (column, samples) in columns.iter().zip(&recording.samples) {
-            let digits = samples[part.clone()].iter().map(|&x| column.digital(x));
-            out.extend(digits.flat_map(i16::to_le_bytes));
+            let bytes = width.bytes() as usize;
+            for &x in &samples[part.clone()] {
+                out.extend(&column.digital(x).to_le_bytes()[..bytes]);
+            }
         }
         out.extend(list);
         out.resize(out.len() + text_bytes - list.len(), 0);
@@ -71,11 +90,12 @@ fn cannot(what: impl Into<String>) -> Problem {
     )
 }
 
-fn check(recording: &Recording) -> Result<()> {
+fn check(width: Width, recording: &Recording) -> Result<()> {
+    let name = width.name();
     if recording.sample_count() == 0 || recording.stretches.is_empty() {
-        return Err(cannot(
-            "a recording without samples cannot be written as EDF",
-        ));
+        return Err(cannot(format!(
+            "a recording without samples cannot be written as {name}"
+        )));
     }
     let bad = recording
         .samples
@@ -83,7 +103,7 @@ fn check(recording: &Recording) -> Result<()> {
         .position(|samples| !samples.iter().all(|x| x.is_finite()));
     match bad {
         Some(index) => Err(cannot(format!(
-            "channel \"{}\" holds values that are not numbers, which EDF cannot hold",
+            "channel \"{}\" holds values that are not numbers, which {name} cannot hold",
             recording.channels[index].name
         ))),
         None => Ok(()),
@@ -140,11 +160,12 @@ fn shortest(x: f64) -> Option<String> {
 /// The limits of one channel, as written.
 struct Limits {
     physical: [String; 2],
+    digital: [i32; 2],
     scale: Scale,
 }
 
 impl Limits {
-    fn of(name: &str, samples: &[f32]) -> Result<Limits> {
+    fn of(width: Width, name: &str, samples: &[f32]) -> Result<Limits> {
         let (low, high) = samples
             .iter()
             .fold((f32::MAX, f32::MIN), |(low, high), &x| {
@@ -152,7 +173,7 @@ impl Limits {
             });
         if let Some(limits) = STEPS
             .iter()
-            .find_map(|step| Limits::of_step(step, low, high, samples))
+            .find_map(|step| Limits::of_step(width, step, low, high, samples))
         {
             return Ok(limits);
         }
@@ -160,33 +181,40 @@ impl Limits {
         let low = outward(f64::from(low), f64::floor);
         let high = outward(f64::from(high), f64::ceil);
         match (low, high) {
-            (Some(low), Some(high)) if low != high => Ok(Limits::new([low, high])),
+            (Some(low), Some(high)) if low != high => Ok(Limits::new([low, high], width.limits())),
             _ => Err(cannot(format!(
-                "the values of channel \"{name}\" do not fit into the 8 characters that EDF gives its limits"
+                "the values of channel \"{name}\" do not fit into the 8 characters that {} gives its limits",
+                width.name()
             ))),
         }
     }
 
-    /// The full digital range at one step, where every sample is a multiple of it.
-    fn of_step(step: &str, low: f32, high: f32, samples: &[f32]) -> Option<Limits> {
+    /// The widest digital range whose limits at one step take 8 characters, where every sample is a multiple of that step.
+    fn of_step(width: Width, step: &str, low: f32, high: f32, samples: &[f32]) -> Option<Limits> {
         let per_unit = 1.0 / step.parse::<f64>().ok()?;
         let decimals = step.len().saturating_sub(2);
         let limit = |digital: i32| format!("{:.decimals$}", f64::from(digital) / per_unit);
-        let limits = Limits::new([limit(-32768), limit(32767)]);
+        let fits = |digital: &[i32; 2]| digital.iter().all(|d| limit(*d).len() <= 8);
+        let digital = [width.limits(), [-999_999, 999_999]]
+            .into_iter()
+            .find(fits)?;
+        let limits = Limits::new(digital.map(limit), digital);
         let exact = |x: f32| limits.scale.value(limits.digital(x)) == x;
         (exact(low) && exact(high) && samples.iter().all(|&x| exact(x))).then_some(limits)
     }
 
-    fn new(physical: [String; 2]) -> Limits {
+    fn new(physical: [String; 2], digital: [i32; 2]) -> Limits {
         let numbers = [0, 1].map(|i| physical[i].parse().unwrap_or(f64::NAN));
         Limits {
-            scale: Scale::from_limits(numbers, [-32768.0, 32767.0], 1.0),
+            scale: Scale::from_limits(numbers, digital.map(f64::from), 1.0),
             physical,
+            digital,
         }
     }
 
-    fn digital(&self, x: f32) -> i16 {
-        ((f64::from(x) - self.scale.offset) / self.scale.gain).round() as i16
+    fn digital(&self, x: f32) -> i32 {
+        let digital = ((f64::from(x) - self.scale.offset) / self.scale.gain).round();
+        (digital as i32).clamp(self.digital[0], self.digital[1])
     }
 }
 
@@ -256,6 +284,7 @@ fn list(event: &Event) -> Vec<u8> {
 
 fn header(
     out: &mut Vec<u8>,
+    width: Width,
     recording: &Recording,
     identity: &Identity,
     record: &Record,
@@ -265,21 +294,26 @@ fn header(
     let signals = columns.len() + 1;
     if signals > 9999 {
         return Err(cannot(format!(
-            "{signals} signals are more than EDF can list (9999)"
+            "{signals} signals are more than {} can list (9999)",
+            width.name()
         )));
     }
     let kind = match recording.stretches.len() {
-        1 => "EDF+C",
-        _ => "EDF+D",
+        1 => "+C",
+        _ => "+D",
     };
+    let kind = format!("{}{kind}", width.name());
     let records = recording.sample_count() / record.samples;
-    field(out, "0", 8);
+    match width {
+        Width::Two => field(out, "0", 8),
+        Width::Three => out.extend(b"\xffBIOSEMI"),
+    }
     field(out, &identity.patient, 80);
     field(out, &identity.recording, 80);
     field(out, "01.01.85", 8);
     field(out, "00.00.00", 8);
     field(out, &(256 * (1 + signals)).to_string(), 8);
-    field(out, kind, 44);
+    field(out, &kind, 44);
     field(out, &records.to_string(), 8);
     field(out, &record.duration, 8);
     field(out, &signals.to_string(), 4);
@@ -292,15 +326,20 @@ fn header(
     };
     let channels = &recording.channels;
     let samples = record.samples.to_string();
-    each(16, &|i| channels[i].name.clone(), "EDF Annotations");
+    each(16, &|i| channels[i].name.clone(), width.text_label());
     each(80, &|_| String::new(), "");
     each(8, &|i| unit(&channels[i].unit), "");
     each(8, &|i| columns[i].physical[0].clone(), "-1");
     each(8, &|i| columns[i].physical[1].clone(), "1");
-    each(8, &|_| "-32768".to_owned(), "-32768");
-    each(8, &|_| "32767".to_owned(), "32767");
+    let [least, most] = width.limits().map(|d| d.to_string());
+    each(8, &|i| columns[i].digital[0].to_string(), &least);
+    each(8, &|i| columns[i].digital[1].to_string(), &most);
     each(80, &|_| String::new(), "");
-    each(8, &|_| samples.clone(), &(text_bytes / 2).to_string());
+    each(
+        8,
+        &|_| samples.clone(),
+        &(text_bytes / width.bytes() as usize).to_string(),
+    );
     each(32, &|_| String::new(), "");
     Ok(())
 }

@@ -4,6 +4,7 @@ use super::so_far::by_measure;
 use super::{Line, Said, words};
 use crate::recipe::Measure;
 use crate::sheet::{Comparator, ComparatorKind, Permutation, Sheet};
+use crate::takeaway::kinds;
 use crate::takeaway::weights::held_out;
 
 pub(super) fn evidence(sheet: &Sheet) -> Option<Said> {
@@ -92,8 +93,7 @@ fn beside(sheet: &Sheet) -> Line {
 
 /// " Of 1,000 swapped arrangements **3** did as well: p = **0.004**."
 fn chance(sheet: &Sheet, p: Option<f64>) -> Line {
-    let paired = sheet.windows.as_ref().is_some_and(|w| w.paired);
-    let how = if paired { "swapped" } else { "shuffled" };
+    let how = kinds::arranged(sheet);
     match (&sheet.permutation, p) {
         (Some(test), Some(p)) if test.done > 0 => {
             let b = as_good(test, p);
