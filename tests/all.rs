@@ -5,6 +5,7 @@ mod describe;
 mod dimensions;
 mod kinds;
 mod large;
+mod places;
 mod prepare;
 mod quality;
 mod readers;

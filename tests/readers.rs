@@ -22,6 +22,7 @@
 //! | RFC 4180: separators, line ends, quotation marks | `delimited` |
 //! | RFC 1952: members, sums, lengths | `packed` |
 //! | BIDS events: onset, duration, trial_type, value, `n/a` | `tables` |
+//! | BIDS channels, electrodes, coordinates, facts about the recording, inheritance | `sides` (with a table of its own) |
 //! | any bytes at all: an answer, no panic, little memory | `hostile`, `changed` |
 //! | what is written is read again, here and by general libraries | `written`, `watch`, `read_back` |
 //! | the same recording in every format gives the same results | `matrix` |
@@ -36,6 +37,7 @@ mod parts;
 mod plan;
 mod read_back;
 mod refused;
+mod sides;
 mod spec;
 mod tables;
 mod watch;

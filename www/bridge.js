@@ -251,6 +251,18 @@ export class Bridge {
   naturalOrder(names) {
     return [...module.naturalOrder(names)];
   }
+  /**
+   * What a table of events would give; throws a Problem where it cannot be read.
+   * @param {string} name @param {Uint8Array} bytes @param {import("./types").EventColumns | null} columns
+   * @param {number} rateHz @param {number} spanS @returns {import("./types").EventsPreview}
+   */
+  eventsPreview(name, bytes, columns, rateHz, spanS) {
+    return module.eventsPreview(name, bytes, columns, rateHz, spanS);
+  }
+  /** Whether a table is about the recording rather than one itself. @param {string} name @param {Uint8Array} bytes @param {string[]} channels @returns {boolean} */
+  isSideTable(name, bytes, channels) {
+    return module.isSideTable(name, bytes, channels);
+  }
   /** @param {string} text @returns {Recipe} */
   parseRecipe(text) {
     return module.parseRecipe(text);

@@ -57,7 +57,7 @@ export function mountChannels(app) {
 /** The head and the stems: two figures with one caption. @param {App} app */
 function pairOf(app) {
   const stems = figureSlot(app, "channels", { section: "channels", title: "Each channel as recorded", hint: "filled: used · ring: needs a look · cross: left out", label: "Standard deviation and mains excess of each channel, in recording order" });
-  const map = figureSlot(app, "channels-map", { section: "channels", label: "The channels on the head, seen from above" });
+  const map = figureSlot(app, "channels-map", { section: "channels", label: "Where the channels lie" });
   const row = make("div", { class: "head-and-stems" }, map.root, stems.place);
   stems.root.append(row);
   return stems.root;
@@ -109,17 +109,24 @@ function showChips(app, chips) {
   channels.forEach(({ name, state }, i) => {
     const chip = /** @type {HTMLButtonElement | undefined} */ (chips.children[i]);
     if (!chip) return;
+    const why = summary?.recording.about.aside[name];
     const fate = recipe ? fateOf(recipe, name) : undefined;
-    const away = fate === "leave_out" || fate === "interpolate" ? fate : null;
+    // What a side file sets aside is left out until it is kept.
+    const away = fate === "leave_out" || fate === "interpolate" ? fate : !fate && why !== undefined ? "leave_out" : null;
     chip.setAttribute("aria-pressed", String(away !== null || state.state === "unusable"));
     chip.dataset.fate = away ?? "";
     chip.setAttribute("aria-label", `${name}${away === "leave_out" ? ", left out" : away ? ", interpolated" : ""}`);
     chip.disabled = !recipe;
-    chip.title = "reason" in state ? state.reason : "";
+    chip.title = "reason" in state ? state.reason : (why ?? "");
   });
 }
 
 /** Another press takes a choice back. @param {App} app @param {string} name */
 function turn(app, name) {
-  app.change((recipe) => settle(recipe, name, fateOf(recipe, name) === pressing ? null : pressing));
+  const aside = now().summary?.recording.about.aside[name] !== undefined;
+  app.change((recipe) => {
+    const fate = fateOf(recipe, name);
+    if (aside && !fate && pressing === "leave_out") return settle(recipe, name, "keep");
+    settle(recipe, name, fate === pressing || (aside && fate === "keep") ? null : pressing);
+  });
 }

@@ -20,6 +20,13 @@ function values({ recording, channels }) {
   return recording.duration_s * recording.rate_hz * channels.length;
 }
 
+/** What computing takes. @param {import("./types").Summary} summary */
+function need(summary) {
+  const many = `${count(values(summary) / 1e6)} million values`;
+  if (summary.part_bytes) return `${many}, more than the memory holds: they stay in the file, and only what the windows need is read again, up to ${size(summary.part_bytes)}. It can be stopped at any time.`;
+  return `${many}: needs about ${size(values(summary) * BYTES_A_VALUE)} of memory. It can be stopped at any time.`;
+}
+
 /** @param {App} app @param {() => void} compute */
 export function mountChoosing(app, compute) {
   const place = find("#choosing .body");
@@ -38,7 +45,7 @@ export function mountChoosing(app, compute) {
       ] : []),
       make("p", { class: "need" },
         make("button", { type: "button", class: "button main", id: "compute", click: compute }, "Compute"),
-        make("span", { class: "quiet" }, `${count(values(summary) / 1e6)} million values: needs about ${size(values(summary) * BYTES_A_VALUE)} of memory. It can be stopped at any time.`)),
+        make("span", { class: "quiet" }, need(summary))),
     );
     for (const each of place.querySelectorAll("[data-event]")) if (each.getAttribute("data-event") === focused) /** @type {HTMLElement} */ (each).focus();
   });

@@ -4,6 +4,8 @@
 const SIDE_FILE = /(^|_)(events|channels|electrodes|coordsystem|eeg|ieeg|meg|nirs|scans|participants|dataset_description)\.(tsv|json|csv)(\.gz)?$|\.json$/i;
 /** Tables, which may hold samples or events. */
 const TABLE = /\.(tsv|csv|txt)(\.gz)?$/i;
+/** What lies about in a folder and is never a recording. */
+const OTHER = /^(readme|changes|licen[cs]e|citation)(\.|$)|\.(md|pdf|html?|py|sh|docx?|xlsx?|png|jpe?g|svg|bib|ya?ml)$/i;
 /** Bytes in which the first line of a table of events ends. */
 const FIRST_LINE = 2048;
 /** More files than this are no one recording. */
@@ -24,6 +26,7 @@ export async function sorted(files) {
 
 /** @param {File} file */
 async function kind(file) {
+  if (OTHER.test(file.name)) return "other";
   if (SIDE_FILE.test(file.name)) return "side";
   if (!TABLE.test(file.name)) return "recording";
   const [first = ""] = (await file.slice(0, FIRST_LINE).text()).split("\n");

@@ -1,6 +1,7 @@
 /** The page: starts the bridge, joins the parts, and opens recordings through one door. */
 import { start } from "./bridge.js";
 import { find, make } from "./kit.js";
+import { mountAbout } from "./about.js";
 import { mountChannels } from "./channels.js";
 import { mountChoosing } from "./choosing.js";
 import { mountComponents } from "./components.js";
@@ -14,6 +15,8 @@ import { mountLedger } from "./ledger.js";
 import { duration, size } from "./numbers.js";
 import { unsay } from "./notices.js";
 import { door } from "./open.js";
+import { mountMapping } from "./mapping.js";
+import { mountPositions } from "./positions.js";
 import { mountProgress } from "./progress.js";
 import { mountReadings } from "./readings.js";
 import { mountRecipeLink } from "./recipe-link.js";
@@ -55,7 +58,10 @@ function join(bridge) {
   const app = { bridge, change: work.change };
   const doors = door(app, work.send);
   mountRecording(app);
+  mountAbout();
   mountChannels(app);
+  mountMapping(app, doors);
+  mountPositions(app, doors);
   mountWindows(app);
   mountRejection(app);
   mountCompression(app);

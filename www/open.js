@@ -18,6 +18,10 @@ import { now, put } from "./state.js";
 
 /** Files that lie beside a recording and are none. */
 const BESIDE = /\.tsv$|_(events|channels|electrodes|coordsystem|eeg|ieeg|meg|nirs)\.(json|csv)$/i;
+/** Tables that may lie beside a recording or be one: their content decides. */
+const TABLE = /\.(csv|txt)$/i;
+/** No table beside a recording is larger. */
+const TABLE_BYTES = 64 * 1024 * 1024;
 
 /**
  * @param {App} app
@@ -44,8 +48,10 @@ export function door({ bridge, change: edit }, compute) {
   const pick = () => find("#recording").click();
   const takeRecipe = () => download("recipe.json", bridge.recipeText(/** @type {Recipe} */ (now().recipe)), "application/json");
 
-  /** @param {Source} source @returns {Promise<void>} */
-  async function open(source) {
+  /** @param {Source} wanted @returns {Promise<void>} */
+  async function open(wanted) {
+    // What a waiting recipe tells of the file is the file's from now on.
+    const source = "files" in wanted ? { ...wanted, ...asked(wanted) } : wanted;
     last = source;
     turn += 1;
     const mine = turn;
@@ -100,7 +106,7 @@ export function door({ bridge, change: edit }, compute) {
     if (link?.notes.length) sayOpenEnds(link.notes);
     if (!recipe) {
       put({ phase: "choosing", progress: null });
-      return sayNoEvents(pick);
+      return summary.recording.about.untold ? undefined : sayNoEvents(pick);
     }
     const atOnce = !guessed && (waiting || (proposal && isSmall(summary)));
     put({ recipe, why: waiting || guessed ? "" : (proposal?.why ?? ""), progress: null, phase: atOnce ? "working" : "choosing" });
@@ -210,9 +216,31 @@ export function door({ bridge, change: edit }, compute) {
     failed,
     /** @param {File[]} files */
     async files(files) {
-      const own = files.length === 1 && files[0]?.name.endsWith(".json") ? files[0] : null;
-      await (own ? this.recipe(own) : gather(files));
+      const own = files.length === 1 && files[0]?.name.endsWith(".json") && !BESIDE.test(files[0].name) ? files[0] : null;
+      if (own) return this.recipe(own);
+      const [alone] = files;
+      if (files.length === 1 && alone && (await isBeside(alone).catch(() => false))) return this.beside(alone);
+      await gather(files);
     },
+    /** A table that belongs to the open recording, in place of one of the same name. @param {File} file */
+    async beside(file) {
+      if (!good || !("files" in good)) return;
+      await open({ ...good, files: [...good.files.filter(({ name }) => name !== file.name), file] });
+    },
+    /** The open recording without one of its side files. @param {string} name */
+    async without(name) {
+      if (good && "files" in good) await open({ ...good, files: good.files.filter((file) => file.name !== name) });
+    },
+    /** Opens the recording again with what was told of it. @param {Given} told */
+    async tell(told) {
+      if (good && "files" in good) await open({ ...good, given: { ...given(), ...told } });
+    },
+    /** What was told of the open recording. */
+    told: () => given(),
+    /** A file of the open recording, by name; of a demo there is none. @param {string} name */
+    file: (name) => (good && "files" in good ? (good.files.find((file) => file.name === name) ?? null) : null),
+    /** Whether the open recording is a file, which others can join. */
+    isFile: () => good !== null && "files" in good,
     /** @param {string} which */
     demo: (which) => open({ demo: which }),
     /** @param {File} file */
@@ -278,6 +306,13 @@ export function door({ bridge, change: edit }, compute) {
   /** How a file is to be opened: a recipe that waits may tell what the file does not. @param {{ salvage: boolean, given?: Given }} source */
   function asked({ salvage, given: told }) {
     return { salvage, given: { ...waiting?.recipe.recording, ...told } };
+  }
+
+  /** Whether a table that was dropped alone is about the open recording. @param {File} file */
+  async function isBeside(file) {
+    const channels = (now().summary?.channels ?? []).map(({ name }) => name);
+    if (!good || !("files" in good) || !channels.length || !TABLE.test(file.name) || file.size > TABLE_BYTES) return false;
+    return bridge.isSideTable(file.name, new Uint8Array(await file.arrayBuffer()), channels);
   }
 
   /** Side files alone belong to the recording that is open. @param {File[]} files */

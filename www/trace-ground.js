@@ -11,7 +11,7 @@ import { now } from "./state.js";
 
 export const LEFT = 66;
 export const RIGHT = 16;
-export const TOP = 26;
+export const TOP = 40;
 export const FOOT = 28;
 const FACE = "12px system-ui, -apple-system, 'Segoe UI', 'Noto Sans', sans-serif";
 /** Height of the bars that say where windows lie. */
@@ -113,14 +113,14 @@ function marks(pen, scene) {
     pen.strokeStyle = color;
     pen.lineWidth = 1.5;
     pen.setLineDash(kind === "reference" ? [5, 3] : []);
-    for (const [t, x] of /** @type {[number, number][]} */ ([[from, a], [to, b]])) if (Math.abs(across(scene, t) - x) < 0.5) rule(pen, x, box.top - 6, box.bottom);
+    for (const [t, x] of /** @type {[number, number][]} */ ([[from, a], [to, b]])) if (Math.abs(across(scene, t) - x) < 0.5) rule(pen, x, box.top - 14, box.bottom);
     pen.setLineDash([]);
     const words = KIND_WORDS[kind];
     const wide = pen.measureText(words).width;
     if (a < used + 6 || a + wide > box.right) continue;
     pen.fillStyle = color;
     pen.textAlign = "left";
-    pen.fillText(words, a + 4, box.top - 9);
+    pen.fillText(words, a + 4, box.top - 11);
     used = a + 4 + wide;
   }
 }
@@ -177,7 +177,7 @@ function events(pen, scene, end) {
   for (const [t] of seen) {
     const x = across(scene, t);
     if (x < drawn + 1) continue;
-    pen.moveTo(Math.round(x) + 0.5, box.top - 18);
+    pen.moveTo(Math.round(x) + 0.5, box.top - 32);
     pen.lineTo(Math.round(x) + 0.5, box.bottom);
     drawn = x;
   }
@@ -191,7 +191,7 @@ function events(pen, scene, end) {
     if (x < used + 8) continue;
     const said = fitted(pen, label, Math.min(120, end - x));
     if (!said) continue;
-    pen.fillText(said, x, box.top - 19);
+    pen.fillText(said, x, box.top - 31);
     used = x + pen.measureText(said).width;
   }
 }
@@ -239,7 +239,7 @@ function bars(pen, { bars: all, box, wide, inks: ink }) {
     pen.fillRect(x, top + 2, 2, px);
     pen.fillStyle = ink.slate;
     if (top > box.top) return void pen.fillText(words, wide, top - 8);
-    pen.fillText(words, end, box.top - 19);
+    pen.fillText(words, end, box.top - 31);
     end -= pen.measureText(words).width + 12;
   });
   return end;

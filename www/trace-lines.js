@@ -202,8 +202,9 @@ function joined({ low, high }, source, first, end, left, each) {
  * @param {number} scale rows a unit
  * @param {number} color the three lower bytes
  * @param {number} density pixels a CSS px
+ * @param {number} strength how much of what lies below a line covers: less than 1 where lines are so dense that they lie over each other
  */
-export function paint(pixels, { low, high }, top, bottom, centre, middle, scale, color, density) {
+export function paint(pixels, { low, high }, top, bottom, centre, middle, scale, color, density, strength) {
   const columns = low.length;
   const half = HALF * density;
   for (let c = 0; c < columns; c += 1) {
@@ -213,9 +214,10 @@ export function paint(pixels, { low, high }, top, bottom, centre, middle, scale,
     const stop = Math.min(bottom, Math.ceil(y1));
     for (let y = Math.max(top, Math.floor(y0)); y < stop; y += 1) {
       const covered = Math.min(y + 1, y1) - Math.max(y, y0);
-      const alpha = covered >= 1 ? 255 : (255 * covered) | 0;
       const at = y * columns + c;
-      if (alpha > /** @type {number} */ (pixels[at]) >>> 24) pixels[at] = (alpha << 24) | color;
+      const below = /** @type {number} */ (pixels[at]) >>> 24;
+      const alpha = below + (((255 - below) * strength * (covered >= 1 ? 1 : covered)) | 0);
+      if (alpha > below) pixels[at] = (alpha << 24) | color;
     }
   }
 }

@@ -22,6 +22,8 @@ const HEADROOM = 1;
 const BETWEEN = 26;
 /** Components of one end that are drawn. */
 const COMPONENTS = 4;
+/** From so many samples a column on a line is an area, and shows what lies under it. */
+const DENSE = 16;
 /** A usual swing takes this much of the room between two lines, the other way about. */
 const ROOM = 1.2;
 
@@ -202,8 +204,9 @@ function frame(place, ground, lines, tiles) {
   const pixels = new Uint32Array(image.data.buffer);
   pixels.fill(0);
   for (const row of [...all].sort((a, b) => Number(b.faint) - Number(a.faint))) {
-    fill(columns, tiles, row.kind, row.line, row.track, view, binSize(view, row.track.rate_hz), top(row.track));
-    paint(pixels, columns, 0, tall, (row.y - box.top) * density, columns.middle(), (row.rowHeight / row.room) * density, packed(row.color), density);
+    const fine = binSize(view, row.track.rate_hz);
+    fill(columns, tiles, row.kind, row.line, row.track, view, fine, top(row.track));
+    paint(pixels, columns, 0, tall, (row.y - box.top) * density, columns.middle(), (row.rowHeight / row.room) * density, packed(row.color), density, fine >= DENSE ? 0.6 : 1);
   }
   lines.getContext("2d")?.putImageData(image, 0, 0);
 

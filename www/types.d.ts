@@ -23,7 +23,7 @@ export type Kind = Contrast["kind"];
 export interface Recipe {
   teasel_recipe: number;
   recording?: Given;
-  channels: { leave_out: string[]; interpolate: string[]; keep?: string[]; reference: "as recorded" | "average" | string[] | { bipolar: "neighbours" | [string, string][] } };
+  channels: { leave_out: string[]; interpolate: string[]; keep?: string[]; reference: "as recorded" | "average" | string[] | { bipolar: "neighbours" | [string, string][] }; positions?: Positions };
   filter: {
     high_pass_hz: number | null; low_pass_hz: number | null; notch_hz: number[]; resample_hz: number | null;
     detrend?: "mean" | "linear" | { linear_every_s: number } | null;
@@ -39,6 +39,10 @@ export interface Recipe {
   components: number;
   evidence: { folds: number; permutations: number; bootstrap: number; seed: number };
 }
+export type Positions =
+  | { grid: { rows: number; columns: number; spacing_mm: number; first: string; along: string; prefix?: string } }
+  | { probe: { spacing_um: number; order: string; prefix?: string } }
+  | { at: Record<string, number[]> };
 export interface RecordingCard {
   name: string;
   format: string;
@@ -48,9 +52,40 @@ export interface RecordingCard {
   others: { name: string; unit: string; rate_hz: number; reason: string }[];
   events: Record<string, number>;
   event_onsets_s: Record<string, number[]>;
+  layout: { kind: "head" | "plane" | "line" | "frames" };
+  about: About;
   side_files: string[];
   warnings: string[];
   envelope: number[];
+}
+/** What a header and side files tell beside samples and events. */
+export interface About {
+  start: string | null;
+  kinds: Record<string, string>;
+  /** Channels that a side file sets aside, with the reason. */
+  aside: Record<string, string>;
+  mains_hz: number | null;
+  reference: string | null;
+  positions: string | null;
+  /** A table of events whose columns have to be told. */
+  untold: string | null;
+}
+export interface EventColumns {
+  onset: string;
+  unit: "s" | "ms" | "samples";
+  label?: string | null;
+  duration?: string | null;
+}
+export interface EventsPreview {
+  columns: string[];
+  rows: string[][];
+  count: number;
+  mapping: EventColumns;
+  labels: [string, number][];
+  more_labels: number;
+  span_s: [number, number] | null;
+  late: number;
+  problem: Problem | null;
 }
 export type ChannelState =
   | { state: "used" | "interpolated" | "left-out" }
@@ -129,6 +164,10 @@ export interface Sheet {
 export interface Summary {
   recording: RecordingCard;
   channels: ChannelCard[];
+  /** The samples stay in the file; bytes that the part of them may take which the windows need. */
+  part_bytes?: number;
+  /** What is told of the recording, in order. */
+  facts: { label: string; text: string }[];
 }
 export interface Span {
   text: string;
@@ -165,6 +204,7 @@ export interface Given {
   unit?: string;
   axes?: string;
   variable?: string;
+  events?: EventColumns;
 }
 export interface PlotBox {
   left: number;
@@ -274,6 +314,8 @@ export interface Bridge {
   svg(figure: Figure, width: number, height: number): string;
   table(figure: Figure): Table;
   naturalOrder(names: string[]): number[];
+  eventsPreview(name: string, bytes: Uint8Array, columns: EventColumns | null, rate_hz: number, span_s: number): EventsPreview;
+  isSideTable(name: string, bytes: Uint8Array, channels: string[]): boolean;
   parseRecipe(text: string): Recipe;
   linkEncode(recipe: Recipe, withNames: boolean): string;
   recipeText(recipe: Recipe): string;

@@ -104,11 +104,13 @@ test("spans are marked, moved, undone and removed by keyboard alone", async () =
   await page.keyboard.press("ArrowRight");
   assert.deepEqual((await recipe(page)).not_used, [[3.484, 6.052]]);
   await page.locator(".traces").focus();
-  await page.keyboard.press("Control+z");
-  await page.keyboard.press("Control+z");
+  // Changes that follow each other closely are undone together, so how many steps there are depends on the machine.
+  const all = async (/** @type {string} */ name, /** @type {string} */ keys) => {
+    while (await page.getByRole("button", { name }).isEnabled()) await page.keyboard.press(keys);
+  };
+  await all("Undo", "Control+z");
   assert.deepEqual((await recipe(page)).not_used ?? [], []);
-  await page.keyboard.press("Control+Shift+z");
-  await page.keyboard.press("Control+Shift+z");
+  await all("Redo", "Control+Shift+z");
   assert.deepEqual((await recipe(page)).not_used, [[3.484, 6.052]]);
   await page.getByRole("button", { name: "Show not to be used 1" }).press("Enter");
   assert.equal(await edge.evaluate((node) => node === document.activeElement), true);

@@ -79,7 +79,7 @@ def zero_phase(x, taps):
 
 def band(x):
     taps, flanks = band_taps()
-    count = int(round(min(max(4.0 / HALF, 1.0), 10.0) * RATE))
+    count = int(round(min(max(8.0 / HALF, 1.0), 20.0) * RATE))
     s = pooled(pieces(zero_phase(x, taps), count))
     f = pooled(pieces(zero_phase(x, flanks), count))
     b = pooled(pieces(x, count))

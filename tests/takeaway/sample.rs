@@ -111,6 +111,8 @@ fn card() -> RecordingCard {
         }],
         events: BTreeMap::from([("buoy".into(), 42), ("swell".into(), 20)]),
         event_onsets_s: BTreeMap::new(),
+        layout: teasel_core::recording::Layout::default(),
+        about: teasel_core::recording::About::default(),
         side_files: vec![],
         warnings: vec![],
         envelope: vec![10.0, 11.0, 52.0, 9.0, 10.0, 12.0],

@@ -2,14 +2,14 @@
 use crate::say::{self, Meter};
 use crate::{Given, source};
 use serde_json::{Value, json};
-use std::collections::BTreeMap;
 use std::fmt::Write as _;
 use std::io::Write as _;
 use std::path::Path;
-use teasel_core::analysis::{Proposal, propose};
+use teasel_core::analysis::{Proposal, Summary, propose, summary};
 use teasel_core::error::{Kind, Problem, Result};
 use teasel_core::recording::{Opened, Recording};
-use teasel_core::takeaway::recipe_json;
+use teasel_core::sheet::ChannelCard;
+use teasel_core::takeaway::{facts, recipe_json, timelines};
 
 /// Inspects all recordings; false where one was bad.
 pub fn inspect(given: &Given, as_json: bool) -> bool {
@@ -52,6 +52,9 @@ fn one(path: &Path, given: &Given, as_json: bool) -> Result<Value> {
     }
 }
 
+/// Columns of a timeline of events, and how many labels get one.
+const TIMELINE: (usize, usize) = (60, 8);
+
 /// The core's proposal, with what was told on the command line.
 fn proposal(recording: &Recording, given: &Given) -> Option<Proposal> {
     propose(recording).map(|mut proposal| {
@@ -60,15 +63,8 @@ fn proposal(recording: &Recording, given: &Given) -> Option<Proposal> {
     })
 }
 
-fn counts(recording: &Recording) -> BTreeMap<&str, usize> {
-    let mut counts = BTreeMap::new();
-    for event in &recording.events {
-        *counts.entry(event.label.as_str()).or_insert(0) += 1;
-    }
-    counts
-}
-
 fn card(recording: &Recording, given: &Given) -> Result<Value> {
+    let summary = summary(recording);
     let failed = |e: serde_json::Error| {
         Problem::new(
             Kind::Storage,
@@ -77,20 +73,34 @@ fn card(recording: &Recording, given: &Given) -> Result<Value> {
         )
     };
     let value = |x: &dyn Fn() -> serde_json::Result<Value>| x().map_err(failed);
+    let card = &summary.recording;
     Ok(json!({
-        "name": recording.name,
-        "format": recording.format,
-        "rate_hz": recording.rate_hz,
-        "duration_s": recording.duration_s(),
+        "name": card.name,
+        "format": card.format,
+        "rate_hz": card.rate_hz,
+        "duration_s": card.duration_s,
         "samples": recording.sample_count(),
-        "channels": value(&|| serde_json::to_value(&recording.channels))?,
-        "not_analysed": value(&|| serde_json::to_value(&recording.others))?,
-        "stretches": value(&|| serde_json::to_value(&recording.stretches))?,
-        "events": counts(recording),
-        "side_files": recording.side_files,
-        "warnings": recording.warnings,
+        "starts_at": card.about.start,
+        "channels": value(&|| serde_json::to_value(channels(&summary)))?,
+        "not_analysed": value(&|| serde_json::to_value(&card.others))?,
+        "set_aside": card.about.aside,
+        "layout": value(&|| serde_json::to_value(&card.layout))?,
+        "positions_from": card.about.positions,
+        "reference": card.about.reference,
+        "mains_hz": card.about.mains_hz,
+        "stretches": value(&|| serde_json::to_value(&card.stretches))?,
+        "events": card.events,
+        "side_files": card.side_files,
+        "warnings": card.warnings,
         "proposal": value(&|| serde_json::to_value(proposal(recording, given)))?,
     }))
+}
+
+/// Name, unit, kind and position of each channel.
+fn channels(summary: &Summary) -> Vec<Value> {
+    let kinds = &summary.recording.about.kinds;
+    let one = |c: &ChannelCard| json!({ "name": c.name, "unit": c.unit, "kind": kinds.get(&c.name), "position": c.position });
+    summary.channels.iter().map(one).collect()
 }
 
 /// A name from a file on one line of a terminal: control characters and marks of direction made visible.
@@ -110,58 +120,21 @@ fn shown(text: &str) -> String {
 }
 
 fn text(recording: &Recording, given: &Given) -> Result<String> {
+    let summary = summary(recording);
     let mut out = String::new();
     let mut put = |label: &str, value: String| {
         // Writing to a String cannot fail.
         let _ = writeln!(out, "{label:<13}{value}");
     };
     put("recording", shown(&recording.name));
-    put("format", recording.format.clone());
-    put(
-        "samples",
-        format!(
-            "{} a channel at {} Hz, {} s",
-            recording.sample_count(),
-            recording.rate_hz,
-            recording.duration_s()
-        ),
-    );
-    if recording.stretches.len() > 1 {
-        put(
-            "stretches",
-            format!("{}, with gaps between them", recording.stretches.len()),
-        );
+    for fact in facts(&summary.recording, &summary.channels) {
+        put(&fact.label, shown(&fact.text));
     }
-    let units: BTreeMap<&str, Vec<&str>> =
-        recording
-            .channels
-            .iter()
-            .fold(BTreeMap::new(), |mut units, c| {
-                units
-                    .entry(c.unit.as_str())
-                    .or_insert_with(Vec::new)
-                    .push(c.name.as_str());
-                units
-            });
-    for (unit, names) in units {
-        let names: Vec<String> = names.into_iter().map(shown).collect();
-        put(
-            "channels",
-            format!("{} in {}: {}", names.len(), shown(unit), names.join(", ")),
-        );
+    for (label, line) in timelines(&summary.recording, TIMELINE.0, TIMELINE.1) {
+        put("", format!("{line} {}", shown(&label)));
     }
-    for other in &recording.others {
-        put(
-            "not analysed",
-            format!("{}: {}", shown(&other.name), shown(&other.reason)),
-        );
-    }
-    for (label, count) in counts(recording) {
-        put("event", format!("{} ({count} times)", shown(label)));
-    }
-    for side in &recording.side_files {
-        put("side file", shown(side));
-    }
+    let names: Vec<String> = recording.channels.iter().map(|c| shown(&c.name)).collect();
+    put("names", names.join(", "));
     for warning in &recording.warnings {
         put("note", shown(warning));
     }

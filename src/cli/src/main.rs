@@ -146,6 +146,7 @@ impl Told {
             unit: self.unit.clone(),
             axes: self.axes,
             variable: self.array.clone(),
+            events: None,
         }
     }
 }

@@ -7,7 +7,7 @@ use std::path::Path;
 use teasel_core::error::{Kind, Problem, Result};
 use teasel_core::recipe;
 use teasel_core::recording::{
-    MEMORY_BYTES, OpenOptions, Opened, Opening, Recording, SideFile, Source,
+    MEMORY_BYTES, OpenOptions, Opened, Opening, Recording, SideFile, Source, lies_beside,
 };
 
 /// The largest text file (recipe, weights) that is read whole, in bytes; the parsers have their own, smaller caps.
@@ -186,41 +186,59 @@ fn option(key: &str) -> &'static str {
     }
 }
 
-/// The recording's table of events under its BIDS name: `sub-01_task-watch_eeg.edf` → `sub-01_task-watch_events.tsv`.
-fn bids_table(path: &Path) -> Option<String> {
-    let stem = path.file_stem()?.to_string_lossy().into_owned();
-    let entity = stem.rsplit_once('_').map_or(stem.as_str(), |(e, _)| e);
-    Some(format!("{entity}_events.tsv"))
+/// What a side file is about, as its name says: `events.tsv`, `eeg.json`.
+fn kind(name: &str) -> &str {
+    name.rsplit_once('_').map_or(name, |(_, kind)| kind)
 }
 
-/// The side files of a recording: the ones given that bear its name (or all, where none does), and its table of events
-/// beside it where no table was given.
+/// The side files of a recording: the ones given that bear its name (or all of a kind, where none does), and those beside it under their
+/// BIDS names, unless one of their kind was given.
 fn sides(path: &Path, given: &Given) -> Result<Vec<SideFile>> {
-    let table = bids_table(path);
-    let is_table = |p: &Path| p.extension().is_some_and(|e| e.eq_ignore_ascii_case("tsv"));
-    let own = given
-        .with
-        .iter()
-        .any(|p| Some(file_name(p)) == table && is_table(p));
+    let recording = file_name(path);
     let mut sides = Vec::new();
-    for side in &given.with {
-        if own && is_table(side) && Some(file_name(side)) != table {
-            continue;
+    let names: Vec<String> = given.with.iter().map(|p| file_name(p)).collect();
+    let own = |name: &String| lies_beside(&recording, name);
+    for (side, name) in given.with.iter().zip(&names) {
+        let rivals = names.iter().any(|n| kind(n) == kind(name) && own(n));
+        if own(name) || !rivals {
+            sides.push(side_file(side)?);
         }
-        sides.push(SideFile {
-            name: file_name(side),
-            bytes: whole(side, SIDE_CAP)?,
-        });
     }
-    let given_one = given.with.iter().any(|p| is_table(p));
-    if let Some(name) = table.filter(|_| !given_one) {
-        let beside = path.with_file_name(&name);
-        if beside.is_file() {
-            sides.push(SideFile {
-                bytes: whole(&beside, SIDE_CAP)?,
-                name,
-            });
+    // A table that was given, whatever its name, may be one of events.
+    let is_table = |n: &String| {
+        !["channels.tsv", "electrodes.tsv"].contains(&kind(n)) && !n.ends_with(".json")
+    };
+    for name in beside(path) {
+        let given_one = names.iter().any(|n| kind(n) == kind(&name))
+            || kind(&name) == "events.tsv" && names.iter().any(is_table);
+        if !given_one {
+            sides.push(side_file(&path.with_file_name(name))?);
         }
     }
     Ok(sides)
+}
+
+/// Names of the side files that lie beside a recording, in order.
+fn beside(path: &Path) -> Vec<String> {
+    let folder = path.parent().filter(|p| !p.as_os_str().is_empty());
+    let recording = file_name(path);
+    // A folder that cannot be listed has nothing to offer; the recording itself will say what is wrong.
+    let entries = std::fs::read_dir(folder.unwrap_or(Path::new(".")))
+        .into_iter()
+        .flatten();
+    let mut names: Vec<String> = entries
+        .flatten()
+        .filter(|entry| entry.path().is_file())
+        .map(|entry| entry.file_name().to_string_lossy().into_owned())
+        .filter(|name| lies_beside(&recording, name))
+        .collect();
+    names.sort();
+    names
+}
+
+fn side_file(path: &Path) -> Result<SideFile> {
+    Ok(SideFile {
+        name: file_name(path),
+        bytes: whole(path, SIDE_CAP)?,
+    })
 }

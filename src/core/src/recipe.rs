@@ -10,6 +10,7 @@ pub use contrast::{
     BandReference, Contrast, ContrastKind, EventWindow, HoldBack, REST, Spans, Within,
 };
 use serde::{Deserialize, Serialize};
+use std::collections::BTreeMap;
 
 /// All choices.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
@@ -95,6 +96,41 @@ pub struct Given {
     /// Which of several named arrays holds the samples.
     #[serde(skip_serializing_if = "Option::is_none")]
     pub variable: Option<String>,
+    /// Which columns of the table of events are which, where it is no table of the BIDS standard.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub events: Option<EventColumns>,
+}
+
+/// Which columns of a table of events are which.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct EventColumns {
+    /// Name of the column of onsets; `column 1`, `column 2` … where the table names none.
+    pub onset: String,
+    /// What onsets and durations are counted in, from the first sample on.
+    #[serde(default)]
+    pub unit: TimeUnit,
+    /// Name of the column of labels; without one every event is called `event`.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub label: Option<String>,
+    /// Name of the column of durations.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub duration: Option<String>,
+}
+
+/// What the times of a table are counted in.
+#[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Serialize, Deserialize)]
+pub enum TimeUnit {
+    /// Seconds.
+    #[default]
+    #[serde(rename = "s")]
+    Seconds,
+    /// Thousandths of a second.
+    #[serde(rename = "ms")]
+    Milliseconds,
+    /// Samples; the first is 0.
+    #[serde(rename = "samples")]
+    Samples,
 }
 
 impl Given {
@@ -110,6 +146,7 @@ impl Given {
             unit: self.unit.or(less_sure.unit),
             axes: self.axes.or(less_sure.axes),
             variable: self.variable.or(less_sure.variable),
+            events: self.events.or(less_sure.events),
         }
     }
 }
@@ -153,11 +190,104 @@ pub struct Channels {
     pub leave_out: Vec<String>,
     /// Channels replaced by their estimate from the others, by where they lie.
     pub interpolate: Vec<String>,
-    /// Doubtful channels that were looked at and are used as they are.
+    /// Doubtful channels that were looked at, and channels that a side file sets aside, which are used as they are.
     #[serde(skip_serializing_if = "Vec::is_empty")]
     pub keep: Vec<String>,
     /// Reference.
     pub reference: Reference,
+    /// Where the channels lie, in place of what names and side files say.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub positions: Option<Positions>,
+}
+
+/// Where the channels lie.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum Positions {
+    /// A rectangular grid of electrodes.
+    Grid(Grid),
+    /// A shaft with contacts at equal distances.
+    Probe(Probe),
+    /// Each channel's place: x to the right, y to the front or up, and z up. With a z they lie on a head, without on a plane; in metres,
+    /// though only their proportions count.
+    At(BTreeMap<String, Vec<f64>>),
+}
+
+/// A rectangular grid of electrodes.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Grid {
+    /// Electrodes from top to bottom.
+    pub rows: usize,
+    /// Electrodes from left to right.
+    pub columns: usize,
+    /// Distance of neighbours.
+    #[serde(default = "ten")]
+    pub spacing_mm: f64,
+    /// Corner of the electrode numbered 1.
+    #[serde(default)]
+    pub first: Corner,
+    /// Where the electrode numbered 2 lies.
+    #[serde(default)]
+    pub along: Along,
+    /// The grid's channels are called this and their number; without one they are the analysed channels in file order.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub prefix: Option<String>,
+}
+
+/// A shaft with contacts at equal distances.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct Probe {
+    /// Distance of neighbours.
+    pub spacing_um: f64,
+    /// Which end the first channel is at.
+    #[serde(default)]
+    pub order: Order,
+    /// The probe's channels are called this and their number; without one they are the analysed channels in file order.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub prefix: Option<String>,
+}
+
+/// A corner of a grid.
+#[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum Corner {
+    /// Upper left.
+    #[default]
+    TopLeft,
+    /// Upper right.
+    TopRight,
+    /// Lower left.
+    BottomLeft,
+    /// Lower right.
+    BottomRight,
+}
+
+/// How the electrodes of a grid are counted.
+#[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum Along {
+    /// Row after row.
+    #[default]
+    Rows,
+    /// Column after column.
+    Columns,
+}
+
+/// How the contacts of a probe are counted.
+#[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[serde(rename_all = "kebab-case")]
+pub enum Order {
+    /// The first is the shallowest.
+    #[default]
+    TopDown,
+    /// The first is at the tip.
+    BottomUp,
+}
+
+fn ten() -> f64 {
+    10.0
 }
 
 /// `"as recorded"`, `"average"`, a list of channel names, or `{"bipolar": "neighbours"}`.

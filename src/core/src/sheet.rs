@@ -3,7 +3,7 @@
 //! Figures, readings, the page, the report and `results.json` are all made from a [`Sheet`], and from nothing else.
 //! Parts that are not computed yet are `None` or empty.
 use crate::recipe::{Measure, Recipe};
-use crate::recording::{OtherChannel, Stretch};
+use crate::recording::{About, Layout, OtherChannel, Stretch};
 use serde::{Deserialize, Serialize};
 use std::collections::BTreeMap;
 
@@ -88,6 +88,12 @@ pub struct RecordingCard {
     pub events: BTreeMap<String, usize>,
     /// Onsets of each event label in seconds, in order.
     pub event_onsets_s: BTreeMap<String, Vec<f64>>,
+    /// How the channels lie to each other, by the choices in force.
+    #[serde(default)]
+    pub layout: Layout,
+    /// What its header and its side files tell beside that.
+    #[serde(default)]
+    pub about: About,
     /// Names of side files used.
     pub side_files: Vec<String>,
     /// Warnings of the reader.

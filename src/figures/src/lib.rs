@@ -4,7 +4,7 @@
 //! ([`traces`]); [`draw`] puts it on a drawing area, [`svg`] writes it as a file, [`table`] gives the numbers behind it.
 //!
 //! `look` scheme and scale · `inks` colours · `fine` coordinates between pixels · `pen` lines and words · `axis`, `frame` ticks,
-//! grids, plot boxes · `text` widths, shortening, numbers · `places` room for names · `topography` filled bands on the head ·
+//! grids, plot boxes · `text` widths, shortening, numbers · `places` room for names · `ground` what channels lie on · `topography` filled bands ·
 //! `catalogue` which figures a sheet gives · `svg`, `table` files · one room for each family of figures.
 //!
 //! # Units
@@ -21,6 +21,7 @@ mod estimate;
 mod filters;
 mod fine;
 mod frame;
+mod ground;
 mod group;
 mod head;
 mod inks;
@@ -54,6 +55,7 @@ mod tests;
 pub use catalogue::{from_sheet, names};
 pub use fine::Fine;
 pub use frame::PlotBox;
+pub use ground::Ground;
 pub use group::group_figures;
 pub use look::{FACE, Look, Scheme};
 pub use pen::Drawn;

@@ -205,6 +205,8 @@ fn recording_card(onsets: &[f64], swell: &[f64], chance: &mut Chance) -> Recordi
             .iter()
             .map(|(l, o)| ((*l).to_owned(), o.to_vec()))
             .collect(),
+        layout: teasel_core::recording::Layout::default(),
+        about: teasel_core::recording::About::default(),
         side_files: Vec::new(),
         warnings: Vec::new(),
         envelope,

@@ -1,24 +1,22 @@
-//! Filled bands of a surface over the head, cut at a circle.
+//! Filled bands of a surface, cut at a border: the circle of a head, the outermost electrodes of a plane.
 use crate::inks::{Ramp, step};
 use crate::pen::Point;
 use contour::ContourBuilder;
 use plotters::style::RGBAColor;
 use std::f64::consts::TAU;
 
-pub(crate) use teasel_core::describe::positions::flat;
-
 /// A closed line and the colour inside it.
 pub(crate) type Patch = (Vec<Point>, RGBAColor);
 
 /// The patches of a square grid of values, to be painted in this order.
 ///
-/// `grid` is row-major from the front left; the plane's unit is 1 at the equator; `extent` is half the grid's side; what lies
-/// beyond `radius` is cut off. Every ring of a level is painted, the largest first, in the colour of the side towards its
+/// `grid` is row-major from the upper left; `extent` is half the grid's side; what lies outside `border`, convex and against the clock, is
+/// cut off. Every ring of a level is painted, the largest first, in the colour of the side towards its
 /// inside: a hole is simply painted over, so polygons need no holes.
 pub(crate) fn patches(
     grid: &[f64],
     extent: f64,
-    radius: f64,
+    border: &[Point],
     limit: f64,
     ramp: &Ramp,
 ) -> Vec<Patch> {
@@ -26,9 +24,8 @@ pub(crate) fn patches(
     if side < 3 || side * side != grid.len() || grid.iter().any(|v| !v.is_finite()) {
         return Vec::new();
     }
-    let disc = circle(radius);
     let mut painted: Vec<(f64, Vec<Point>, RGBAColor)> =
-        vec![(f64::INFINITY, disc.clone(), ramp[lowest(grid, limit)])];
+        vec![(f64::INFINITY, border.to_vec(), ramp[lowest(grid, limit)])];
     let cell = 2.0 * extent / (side - 1) as f64;
     let levels: Vec<f64> = (1..11)
         .map(|k| limit * (2.0 * f64::from(k) / 11.0 - 1.0))
@@ -48,7 +45,7 @@ pub(crate) fn patches(
             let area = signed_area(&points);
             // Rings run against the clock, with y upwards, where the larger values lie inside.
             let color = if area > 0.0 { ramp[k + 1] } else { ramp[k] };
-            let inside = clip(&points, &disc);
+            let inside = clip(&points, border);
             if inside.len() > 2 {
                 painted.push((area.abs(), inside, color));
             }
@@ -87,11 +84,12 @@ fn signed_area(points: &[Point]) -> f64 {
 
 /// The part of a polygon inside a convex one that runs against the clock (Sutherland & Hodgman 1974).
 pub(crate) fn clip(polygon: &[Point], convex: &[Point]) -> Vec<Point> {
-    let reach = convex
+    // How far every side is from the middle; negative where the middle lies outside.
+    let inner = convex
         .iter()
-        .map(|p| p.0.hypot(p.1))
+        .zip(convex.iter().cycle().skip(1))
+        .map(|(a, b)| (a.0 * b.1 - a.1 * b.0) / (b.0 - a.0).hypot(b.1 - a.1).max(1e-12))
         .fold(f64::INFINITY, f64::min);
-    let inner = reach * (std::f64::consts::PI / convex.len() as f64).cos();
     if polygon.iter().all(|p| p.0.hypot(p.1) <= inner) {
         return polygon.to_vec();
     }
@@ -157,7 +155,7 @@ mod tests {
             let grid: Vec<f64> = (0..side * side)
                 .map(|k| value(point(k).0, point(k).1))
                 .collect();
-            let painted = patches(&grid, extent, 1.0, 1.0, &ramp);
+            let painted = patches(&grid, extent, &circle(1.0), 1.0, &ramp);
             let mut seen = 0;
             for k in 0..2000 {
                 let (turn, r) = (2.399963 * k as f64, 0.98 * (k as f64 / 2000.0).sqrt());

@@ -7,10 +7,12 @@
 //! * [`take`]: the files that are taken away.
 //! * [`draw`]: figures on the page's canvas and as SVG, and the numbers behind them.
 //! * [`links`]: recipes as text and inside an address.
+//! * [`beside`]: tables beside a recording, looked at before they are used.
 //! * [`convert`]: plain data to and from JavaScript, problems as thrown objects.
 //! * [`bench`]: kernels by themselves, for the budget table.
 //! * [`panics`]: the last words of an instance that ends.
 pub mod bench;
+pub mod beside;
 mod convert;
 pub mod draw;
 pub mod links;

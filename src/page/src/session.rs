@@ -5,7 +5,7 @@ use crate::take;
 use serde::{Deserialize, Serialize};
 use std::mem;
 use teasel_core::analysis::lines::{Kind as LineKind, Lines, Track};
-use teasel_core::analysis::{self, Analysis, Progress, Proposal, Stage};
+use teasel_core::analysis::{self, Analysis, Progress, Proposal, Stage, Summary};
 use teasel_core::demo;
 use teasel_core::error::{Kind, Problem};
 use teasel_core::recipe::{Given, Recipe, given_check};
@@ -13,7 +13,7 @@ use teasel_core::recording::{
     Large, MEMORY_BYTES, OpenOptions, Opened, Opening, Recording, SideFile,
 };
 use teasel_core::sheet::Sheet;
-use teasel_core::takeaway::readings;
+use teasel_core::takeaway::{Fact, facts, readings};
 use wasm_bindgen::JsValue;
 use wasm_bindgen::prelude::wasm_bindgen;
 
@@ -57,6 +57,14 @@ struct Tracks {
     recorded: Track,
     prepared: Option<Track>,
     components: Option<Track>,
+}
+
+/// A [`Summary`], and what is told of it.
+#[derive(Serialize)]
+struct Summed {
+    #[serde(flatten)]
+    summary: Summary,
+    facts: Vec<Fact>,
 }
 
 /// [`Progress`], and whether nothing is left.
@@ -129,12 +137,16 @@ impl Session {
         Ok(())
     }
 
-    /// `{recording, channels}` of what is open, before any recipe.
+    /// `{recording, channels, facts}` of what is open, before any recipe.
     pub fn summary(&self) -> Outcome<JsValue> {
-        match &self.state {
-            State::Large(large) => to_js(&analysis::summary_of_large(large)),
-            _ => to_js(&analysis::summary(self.recording()?)),
-        }
+        let summary = match &self.state {
+            State::Large(large) => analysis::summary_of_large(large),
+            _ => analysis::summary(self.recording()?),
+        };
+        to_js(&Summed {
+            facts: facts(&summary.recording, &summary.channels),
+            summary,
+        })
     }
 
     /// `{recipe, why}`: a demo's own question, else one for the most frequent event; null where no event is frequent enough.

@@ -4,6 +4,7 @@ use crate::contrast::fit::{Direction, Ends};
 use crate::contrast::linalg::{abs_cosine, packed_len, quadratic};
 use crate::contrast::space::Space;
 use crate::contrast::windows::Exchange;
+use crate::describe::placing::placed;
 use crate::evidence::bootstrap::generator;
 use crate::evidence::dimensions::outstanding;
 use crate::evidence::heldout::{
@@ -58,6 +59,8 @@ pub(super) fn begin(recording: &Recording, recipe: &Recipe) -> Sheet {
                 .map(|(label, times)| (label.clone(), times.len()))
                 .collect(),
             event_onsets_s: onsets,
+            layout: placed(recording, &recipe.channels).0,
+            about: recording.about.clone(),
             side_files: recording.side_files.clone(),
             warnings: recording.warnings.clone(),
             envelope: envelope(recording),

@@ -13,7 +13,7 @@ use crate::sheet::{ChannelCard, ChannelState, RecordingCard};
 use std::ops::Range;
 
 /// Bytes that the islands may take; the preparation needs as much again.
-const ISLAND_BYTES: u64 = if cfg!(target_pointer_width = "32") {
+pub(super) const ISLAND_BYTES: u64 = if cfg!(target_pointer_width = "32") {
     176 << 20
 } else {
     4 << 30

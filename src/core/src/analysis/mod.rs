@@ -17,6 +17,7 @@ mod summary;
 mod work;
 
 use crate::contrast::windows::check;
+use crate::describe::placing;
 use crate::error::Result;
 use crate::recipe::{Recipe, recipe_check};
 use crate::recording::{Large, Recording};
@@ -239,5 +240,6 @@ impl Analysis {
 /// Refuses ranges that no recording makes sense of, and events that this one does not hold.
 fn check_recipe(recipe: &Recipe, recording: &Recording) -> Result<()> {
     recipe_check(recipe)?;
+    placing::check(recording, &recipe.channels)?;
     check(&recipe.contrast, &recording.events, recording.rate_hz)
 }

@@ -14,6 +14,9 @@ pub struct Summary {
     pub recording: RecordingCard,
     /// Every channel that can be analysed, in file order.
     pub channels: Vec<ChannelCard>,
+    /// The samples stay in the file; bytes that the part of them may take which a recipe needs, with its preparation.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub part_bytes: Option<u64>,
 }
 
 /// Looks at a recording as it stands.
@@ -22,6 +25,7 @@ pub fn summary(recording: &Recording) -> Summary {
     Summary {
         recording: cards::begin(recording, &recipe).recording,
         channels: inspect(recording, &recipe),
+        part_bytes: None,
     }
 }
 
@@ -33,6 +37,7 @@ pub fn summary_of_large(large: &Large) -> Summary {
     Summary {
         recording,
         channels: islands::look(large, &recipe),
+        part_bytes: Some(2 * islands::ISLAND_BYTES),
     }
 }
 

@@ -7,6 +7,7 @@ use crate::contrast::read::Reader;
 use crate::contrast::reject::{judge, measure, relative_size};
 use crate::contrast::space::Covariances;
 use crate::contrast::windows::{Exchange, Selection, Window, check, lag_samples, select};
+use crate::describe::placing::placed;
 use crate::error::{Kind, Problem, Result};
 use crate::evidence::FEWEST;
 use crate::evidence::dimensions::Counting;
@@ -319,6 +320,7 @@ impl Work {
         );
         if preparation {
             self.sheet.channels = self.cards.clone().unwrap_or_default();
+            self.sheet.recording.layout = placed(recording, &new.channels).0;
         }
         Ok(())
     }
@@ -665,7 +667,9 @@ impl Work {
             self.design = None;
             self.drop_flat()?;
             if let (true, Some(selection)) = (levelled(recipe), &self.selection) {
-                self.average_ratio = self.covariances.level(&selection.sides());
+                let sides = selection.sides();
+                self.average_ratio = self.covariances.total_level(&sides);
+                self.covariances.scale_signal(&sides, self.average_ratio);
             }
         }
         Ok(progress(Stage::Windows, done as u64, all as u64, false))
@@ -1139,7 +1143,12 @@ impl Work {
         let all = selection.windows.len();
         let level = self.level.get_or_insert_with(|| {
             let mut covariances = self.covariances.clone();
-            let ratio = covariances.level(&selection.sides());
+            let sides = selection.sides();
+            let ratio = match recipe.measure {
+                Measure::Typical => covariances.typical_level(&sides),
+                Measure::Total => covariances.total_level(&sides),
+            };
+            covariances.scale_signal(&sides, ratio);
             let ground = Ground::new(&covariances, limit(recipe), vec![true; all]);
             Level {
                 covariances,

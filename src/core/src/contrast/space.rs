@@ -60,23 +60,41 @@ impl Covariances {
         }
     }
 
-    /// Scales the signal covariances so that the average channel has a ratio of 1; gives the ratio that it had.
-    pub fn level(&mut self, signal: &[bool]) -> f64 {
+    /// The average channel's ratio of signal to reference variance over all power.
+    pub fn total_level(&self, signal: &[bool]) -> f64 {
         let side = |wanted: bool| self.pooled(|k| signal[k] == wanted);
         let (s, r) = (side(true), side(false));
-        let shares = (0..self.channels).map(|i| {
+        let ratios = (0..self.channels).map(|i| {
             let at = packed_len(i) + i;
             s[at] / r[at]
         });
-        let usable: Vec<f64> = shares.filter(|x| x.is_finite() && *x > 0.0).collect();
+        let usable: Vec<f64> = ratios.filter(|x| x.is_finite() && *x > 0.0).collect();
         let mean = usable.iter().sum::<f64>() / usable.len().max(1) as f64;
-        if mean <= 0.0 {
-            return 1.0;
+        if mean > 0.0 { mean } else { 1.0 }
+    }
+
+    /// The average channel's ratio in a typical pair of windows: exp of the mean over channels and pairs of the log ratio. A few
+    /// windows of great power, which would decide the ratio over all power, count as every other here.
+    pub fn typical_level(&self, signal: &[bool]) -> f64 {
+        let (mut sum, mut count) = (0.0, 0usize);
+        for (packed, side) in self.packed.iter().zip(signal) {
+            let sign = if *side { 1.0 } else { -1.0 };
+            for i in 0..self.channels {
+                let variance = packed[packed_len(i) + i];
+                if variance > 0.0 {
+                    sum += sign * variance.ln();
+                }
+            }
+            count += usize::from(*side);
         }
+        (sum / (count * self.channels).max(1) as f64).exp()
+    }
+
+    /// Divides the signal covariances by `ratio`.
+    pub fn scale_signal(&mut self, signal: &[bool], ratio: f64) {
         for (packed, _) in self.packed.iter_mut().zip(signal).filter(|(_, s)| **s) {
-            packed.iter_mut().for_each(|x| *x /= mean);
+            packed.iter_mut().for_each(|x| *x /= ratio);
         }
-        mean
     }
 
     /// Windows whose whole variance is below 1e-8 of the median window's: an amplifier that was blanked, a lead that was off.

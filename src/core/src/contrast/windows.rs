@@ -331,7 +331,7 @@ pub fn piece_s(contrast: &Contrast) -> Option<f64> {
             piece_s,
             half_width_hz,
             ..
-        } => Some(piece_s.unwrap_or((4.0 / half_width_hz).clamp(1.0, 10.0))),
+        } => Some(piece_s.unwrap_or((8.0 / half_width_hz).clamp(1.0, 20.0))),
         Contrast::Slow { piece_s, lag_s, .. } => Some(piece_s.unwrap_or((10.0 * lag_s).max(1.0))),
         Contrast::Windows { .. } | Contrast::Repeatable(_) => None,
     }

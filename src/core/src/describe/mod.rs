@@ -1,7 +1,8 @@
 //! Spectra, time courses and maps of components.
 //!
-//! * [`positions`]: electrode positions by name; sphere and plane.
+//! * [`positions`], [`placing`]: electrode positions by name; where the channels of a recording lie; sphere and plane.
 //! * [`spline`], [`map`]: spherical splines, and patterns spread over the head.
+//! * [`plate`]: biharmonic splines on a plane.
 //! * [`welch`], [`spectra`]: power spectral densities of both sides.
 //! * [`course`]: power and average around an event, single trials.
 //!
@@ -10,6 +11,8 @@
 pub(crate) mod bootstrap;
 pub mod course;
 pub mod map;
+pub mod placing;
+pub mod plate;
 pub mod positions;
 pub mod spectra;
 pub mod spline;

@@ -111,6 +111,58 @@ pub fn sphere(flat: [f64; 2]) -> [f64; 3] {
     [x * scale, y * scale, angle.cos()]
 }
 
+/// Positions as directions from the centre of the head.
+///
+/// Positions of length 1 (within 0.1 %) are kept. Otherwise the centre is that of the sphere that fits them best (linear least squares on
+/// |p|² = 2 p·c + k), if there are at least 8, the sphere fits (root mean square distance at most 15 % of its radius) and its centre
+/// lies within a radius of the origin; else the origin. A position at the centre has no direction: `None`.
+pub fn to_unit_sphere(positions: &[[f64; 3]]) -> Vec<Option<[f64; 3]>> {
+    let length = |p: &[f64; 3]| p.iter().map(|v| v * v).sum::<f64>().sqrt();
+    let unit_already = positions.iter().all(|p| (length(p) - 1.0).abs() < 1e-3);
+    let centre = if unit_already {
+        None
+    } else {
+        fitted_centre(positions)
+    }
+    .unwrap_or([0.0; 3]);
+    positions
+        .iter()
+        .map(|p| {
+            let away = [p[0] - centre[0], p[1] - centre[1], p[2] - centre[2]];
+            let distance = length(&away);
+            (distance.is_finite() && distance > 0.0).then(|| away.map(|v| v / distance))
+        })
+        .collect()
+}
+
+fn fitted_centre(positions: &[[f64; 3]]) -> Option<[f64; 3]> {
+    let n = positions.len();
+    if n < 8 || positions.iter().flatten().any(|v| !v.is_finite()) {
+        return None;
+    }
+    // Scaled by the largest coordinate, so that metres and millimetres give the same equations.
+    let scale = positions
+        .iter()
+        .flatten()
+        .fold(0.0, |most: f64, v| v.abs().max(most));
+    let at = |i: usize, j: usize| positions[i][j] / scale;
+    let system = nalgebra::DMatrix::from_fn(n, 4, |i, j| if j < 3 { 2.0 * at(i, j) } else { 1.0 });
+    let right = nalgebra::DVector::from_fn(n, |i, _| (0..3).map(|j| at(i, j).powi(2)).sum::<f64>());
+    let fit = system.svd(true, true).solve(&right, 1e-9).ok()?;
+    let centre = [fit[0], fit[1], fit[2]];
+    let shift = centre.iter().map(|v| v * v).sum::<f64>();
+    let radius = (fit[3] + shift).sqrt();
+    let off = |i: usize| {
+        let distance = (0..3)
+            .map(|j| (at(i, j) - centre[j]).powi(2))
+            .sum::<f64>()
+            .sqrt();
+        (distance - radius).powi(2)
+    };
+    let misfit = ((0..n).map(off).sum::<f64>() / n as f64).sqrt();
+    (misfit <= 0.15 * radius && shift.sqrt() <= radius).then(|| centre.map(|v| v * scale))
+}
+
 fn is_ear(label: &str) -> bool {
     matches!(label, "A1" | "A2" | "M1" | "M2")
 }

@@ -1,5 +1,5 @@
 //! A first look at every recorded channel.
-use crate::describe::positions::standard;
+use crate::describe::placing::placed;
 use crate::describe::welch::Welch;
 use crate::recipe::Recipe;
 use crate::recording::{Recording, Stretch};
@@ -23,17 +23,17 @@ const NEIGHBOURS_HZ: std::ops::RangeInclusive<f64> = 3.0..=8.0;
 ///
 /// # Mains
 /// Welch density in 2-second segments over at most 60 s from the middle of the longest stretch: mean within 1 Hz of 50 (60) Hz over the mean
-/// 3–8 Hz away on both sides; the larger of the two frequencies. `None` where half the rate is too low or the stretch shorter than 2 s.
+/// 3–8 Hz away on both sides; the frequency that a side file gives, else the larger of the two. `None` where half the rate is too low or the stretch shorter than 2 s.
 ///
 /// # State
-/// What the recipe says comes first: left out, interpolated. Then unusable: a value that is not a finite number, or every stretch constant.
+/// What the recipe says comes first: left out, interpolated, or set aside by a side file and not kept. Then unusable: a value that is not a finite number, or every stretch constant.
 /// Then a doubt: the same samples as an earlier channel in use.
 ///
 /// # Positions
-/// The recording's own, brought to the unit sphere ([`to_unit_sphere`]); else by the channel's name.
+/// See [`placed`].
 pub fn inspect(recording: &Recording, recipe: &Recipe) -> Vec<ChannelCard> {
     let mut mains = Mains::new(recording);
-    let positions = positions(recording);
+    let (_, positions) = placed(recording, &recipe.channels);
     let mut same = Same::default();
     let channels = recording.channels.iter().zip(&recording.samples);
     channels
@@ -46,7 +46,7 @@ pub fn inspect(recording: &Recording, recipe: &Recipe) -> Vec<ChannelCard> {
                 _ => None,
             }
             .unzip();
-            let state = state_by_recipe(&channel.name, recipe)
+            let state = state_by_recipe(&channel.name, recording, recipe)
                 .or_else(|| unusable(spread))
                 .or_else(|| same.seen(index, spread, recording))
                 .unwrap_or(ChannelState::Used);
@@ -63,12 +63,15 @@ pub fn inspect(recording: &Recording, recipe: &Recipe) -> Vec<ChannelCard> {
         .collect()
 }
 
-fn state_by_recipe(name: &str, recipe: &Recipe) -> Option<ChannelState> {
+fn state_by_recipe(name: &str, recording: &Recording, recipe: &Recipe) -> Option<ChannelState> {
     let named = |list: &[String]| list.iter().any(|n| n == name);
+    let aside = recording.about.aside.contains_key(name);
     if named(&recipe.channels.leave_out) {
         Some(ChannelState::LeftOut)
     } else if named(&recipe.channels.interpolate) {
         Some(ChannelState::Interpolated)
+    } else if aside && !named(&recipe.channels.keep) {
+        Some(ChannelState::LeftOut)
     } else {
         None
     }
@@ -155,6 +158,8 @@ struct Mains {
     welch: Welch,
     hz: Vec<f64>,
     part: std::ops::Range<usize>,
+    /// The frequency that a side file gives, or both that mains may have.
+    candidates: Vec<f64>,
     rate_hz: f64,
     buffer: Vec<f64>,
 }
@@ -177,6 +182,10 @@ impl Mains {
             hz: welch.frequencies(),
             welch,
             part: first..first + count,
+            candidates: match recording.about.mains_hz {
+                Some(hz) => vec![hz],
+                None => MAINS_HZ.to_vec(),
+            },
             rate_hz,
             buffer: Vec::new(),
         })
@@ -191,8 +200,9 @@ impl Mains {
                 .map(|&v| f64::from(v)),
         );
         let density = self.welch.density(&self.buffer);
-        MAINS_HZ
-            .into_iter()
+        self.candidates
+            .iter()
+            .copied()
             .filter(|mains| mains + MAINS_HALF_WIDTH_HZ < self.rate_hz / 2.0)
             .filter_map(|mains| {
                 let at = self.mean(&density, |hz| (hz - mains).abs() <= MAINS_HALF_WIDTH_HZ)?;
@@ -213,74 +223,4 @@ impl Mains {
         }
         (count > 0).then(|| sum / f64::from(count))
     }
-}
-
-/// Positions on the unit sphere: the recording's own where it has any, else by name.
-fn positions(recording: &Recording) -> Vec<Option<[f64; 3]>> {
-    let given: Vec<[f64; 3]> = recording
-        .channels
-        .iter()
-        .filter_map(|c| c.position)
-        .collect();
-    let mut placed = to_unit_sphere(&given).into_iter();
-    recording
-        .channels
-        .iter()
-        .map(|channel| match channel.position {
-            Some(_) => placed.next().flatten(),
-            None => standard(&channel.name),
-        })
-        .collect()
-}
-
-/// Positions as directions from the centre of the head.
-///
-/// Positions of length 1 (within 0.1 %) are kept. Otherwise the centre is that of the sphere that fits them best (linear least squares on
-/// |p|² = 2 p·c + k), if there are at least 8, the sphere fits (root mean square distance at most 15 % of its radius) and its centre
-/// lies within a radius of the origin; else the origin. A position at the centre has no direction: `None`.
-pub fn to_unit_sphere(positions: &[[f64; 3]]) -> Vec<Option<[f64; 3]>> {
-    let length = |p: &[f64; 3]| p.iter().map(|v| v * v).sum::<f64>().sqrt();
-    let unit_already = positions.iter().all(|p| (length(p) - 1.0).abs() < 1e-3);
-    let centre = if unit_already {
-        None
-    } else {
-        fitted_centre(positions)
-    }
-    .unwrap_or([0.0; 3]);
-    positions
-        .iter()
-        .map(|p| {
-            let away = [p[0] - centre[0], p[1] - centre[1], p[2] - centre[2]];
-            let distance = length(&away);
-            (distance.is_finite() && distance > 0.0).then(|| away.map(|v| v / distance))
-        })
-        .collect()
-}
-
-fn fitted_centre(positions: &[[f64; 3]]) -> Option<[f64; 3]> {
-    let n = positions.len();
-    if n < 8 || positions.iter().flatten().any(|v| !v.is_finite()) {
-        return None;
-    }
-    // Scaled by the largest coordinate, so that metres and millimetres give the same equations.
-    let scale = positions
-        .iter()
-        .flatten()
-        .fold(0.0, |most: f64, v| v.abs().max(most));
-    let at = |i: usize, j: usize| positions[i][j] / scale;
-    let system = nalgebra::DMatrix::from_fn(n, 4, |i, j| if j < 3 { 2.0 * at(i, j) } else { 1.0 });
-    let right = nalgebra::DVector::from_fn(n, |i, _| (0..3).map(|j| at(i, j).powi(2)).sum::<f64>());
-    let fit = system.svd(true, true).solve(&right, 1e-9).ok()?;
-    let centre = [fit[0], fit[1], fit[2]];
-    let shift = centre.iter().map(|v| v * v).sum::<f64>();
-    let radius = (fit[3] + shift).sqrt();
-    let off = |i: usize| {
-        let distance = (0..3)
-            .map(|j| (at(i, j) - centre[j]).powi(2))
-            .sum::<f64>()
-            .sqrt();
-        (distance - radius).powi(2)
-    };
-    let misfit = ((0..n).map(off).sum::<f64>() / n as f64).sqrt();
-    (misfit <= 0.15 * radius && shift.sqrt() <= radius).then(|| centre.map(|v| v * scale))
 }

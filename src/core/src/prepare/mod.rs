@@ -25,7 +25,8 @@ pub mod resample;
 mod response;
 pub mod steady;
 
-pub use inspect::{inspect, to_unit_sphere};
+pub use crate::describe::positions::to_unit_sphere;
+pub use inspect::inspect;
 pub use matrix::StepMatrix;
 pub use quality::{Comparing, Quality};
 

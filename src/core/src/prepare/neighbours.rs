@@ -20,21 +20,27 @@ pub(super) struct Places {
 }
 
 impl Places {
-    /// Heads use the cards' unit-sphere positions, other layouts the recording's own.
+    /// The cards' positions, which the recipe may have told: directions on a head, metres elsewhere. Pixels lie where the picture has them.
     pub(super) fn of(recording: &Recording, cards: &[ChannelCard]) -> Self {
-        let own = || recording.channels.iter().map(|c| c.position).collect();
-        let (at, nearest) = match &recording.layout {
-            Layout::Head => (cards.iter().map(|c| c.position).collect(), None),
-            Layout::Plane => (own(), Some(8)),
-            Layout::Line => (own(), Some(4)),
-            Layout::Frames { width, pixels, .. } => {
-                let width = f64::from((*width).max(1));
-                let place = |p: &u32| {
-                    let p = f64::from(*p);
-                    Some([p % width, (p / width).floor(), 0.0])
-                };
-                (pixels.iter().map(place).collect(), Some(8))
-            }
+        if let Layout::Frames { width, pixels, .. } = &recording.layout {
+            let width = f64::from((*width).max(1));
+            let place = |p: &u32| {
+                let p = f64::from(*p);
+                Some([p % width, (p / width).floor(), 0.0])
+            };
+            return Places {
+                at: pixels.iter().map(place).collect(),
+                nearest: Some(8),
+            };
+        }
+        let at: Vec<Option<[f64; 3]>> = cards.iter().map(|c| c.position).collect();
+        let all = |holds: fn(&[f64; 3]) -> bool| at.iter().flatten().all(holds);
+        let nearest = if all(|p| (p.iter().map(|v| v * v).sum::<f64>() - 1.0).abs() < 1e-6) {
+            None
+        } else if all(|p| p[0] == 0.0 && p[1] == 0.0) {
+            Some(4)
+        } else {
+            Some(8)
         };
         Places { at, nearest }
     }

@@ -1,7 +1,7 @@
 //! Ranges of a recipe's values, whatever the recording.
 use super::{
     BandReference, Contrast, Detrend, EventWindow, Given, Keep, KeepWord, Limit, Measure, Pairs,
-    Recipe, Reference, Shrink, ShrinkWord, Spans, Within,
+    Positions, Recipe, Reference, Shrink, ShrinkWord, Spans, Within,
 };
 use crate::error::{Kind, Problem, Result};
 
@@ -18,6 +18,12 @@ fn in_words(path: &str) -> &'static str {
         "recording.unit" => "the unit of the recording",
         "recording.variable" => "the name of the array",
         "channels.reference" => "the reference",
+        "channels.positions.grid.rows" => "the number of rows of the grid",
+        "channels.positions.grid.columns" => "the number of columns of the grid",
+        "channels.positions.grid.spacing_mm" => "the spacing of the grid",
+        "channels.positions.probe.spacing_um" => "the spacing of the probe",
+        "channels.positions.at" => "a position",
+        "recording.events.onset" => "the column of onsets",
         "filter.high_pass_hz" => "the high-pass",
         "filter.low_pass_hz" => "the low-pass",
         "filter.notch_hz" => "the notch",
@@ -99,6 +105,19 @@ pub fn recipe_check(recipe: &Recipe) -> Result<()> {
     check_keep(recipe.keep)?;
     check_best(recipe)?;
     check_filter(recipe)?;
+    check_positions(recipe.channels.positions.as_ref())?;
+    if recipe
+        .recording
+        .events
+        .as_ref()
+        .is_some_and(|e| e.onset.is_empty())
+    {
+        return Err(out(
+            "recording.events.onset",
+            "the name of a column",
+            "an empty text",
+        ));
+    }
     check_mains_and_trend(recipe)?;
     check_drop_windows(recipe)?;
     check_contrast(&recipe.contrast)?;
@@ -232,6 +251,45 @@ fn check_filter(recipe: &Recipe) -> Result<()> {
             low,
         )),
         _ => Ok(()),
+    }
+}
+
+fn check_positions(positions: Option<&Positions>) -> Result<()> {
+    let spacing = |path: &str, value: f64, most: f64, unit: &str| {
+        if value > 0.0 && value <= most {
+            return Ok(());
+        }
+        Err(out(
+            path,
+            format!("a number of {unit} above 0, at most {most}"),
+            value,
+        ))
+    };
+    match positions {
+        Some(Positions::Grid(grid)) => {
+            within("channels.positions.grid.rows", grid.rows, 1, 1000)?;
+            within("channels.positions.grid.columns", grid.columns, 1, 1000)?;
+            let path = "channels.positions.grid.spacing_mm";
+            spacing(path, grid.spacing_mm, 1000.0, "mm")
+        }
+        Some(Positions::Probe(probe)) => {
+            let path = "channels.positions.probe.spacing_um";
+            spacing(path, probe.spacing_um, 1e6, "µm")
+        }
+        Some(Positions::At(places)) => {
+            let wrong = places.iter().find(|(_, p)| {
+                !(2..=3).contains(&p.len()) || p.iter().any(|v| !v.is_finite() || v.abs() > 1e6)
+            });
+            match wrong {
+                Some((name, place)) => Err(out(
+                    "channels.positions.at",
+                    "two or three numbers up to 1000000 for each channel",
+                    format!("{place:?} for {name}"),
+                )),
+                None => Ok(()),
+            }
+        }
+        None => Ok(()),
     }
 }
 

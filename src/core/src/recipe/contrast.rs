@@ -35,8 +35,8 @@ pub enum Contrast {
         /// Where in time; everywhere unless told.
         #[serde(default, skip_serializing_if = "Option::is_none")]
         within: Option<Within>,
-        /// Length of the pieces that the recording (or spans) are cut into: four periods of the half width, 1 to 10 s, unless
-        /// told otherwise.
+        /// Length of the pieces that the recording (or spans) are cut into: eight periods of the half width, 1 to 20 s, unless
+        /// told otherwise: shorter ones hold too few independent values for a covariance, and neighbours share too much.
         #[serde(default, skip_serializing_if = "Option::is_none")]
         piece_s: Option<f64>,
     },

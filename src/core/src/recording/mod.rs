@@ -15,7 +15,6 @@
 //! one line in the table of `opening.rs`. The content decides who reads a file, its name never does.
 mod budget;
 pub mod edf;
-mod events_table;
 mod given;
 mod gzip;
 mod joined;
@@ -23,6 +22,7 @@ pub mod large;
 mod names;
 mod opening;
 pub mod pyramid;
+mod sides;
 mod table;
 mod units;
 
@@ -31,8 +31,10 @@ pub use given::UNITS;
 pub use joined::natural_order;
 pub use large::Large;
 pub use opening::{MemorySource, OpenOptions, Opened, Opening, open};
+pub use sides::{EventsPreview, events_preview, is_side_table, lies_beside};
 
 use serde::{Deserialize, Serialize};
+use std::collections::BTreeMap;
 
 /// A multichannel recording in memory.
 #[derive(Debug, Clone, Default)]
@@ -55,10 +57,32 @@ pub struct Recording {
     pub stretches: Vec<Stretch>,
     /// Events in order of onset.
     pub events: Vec<Event>,
+    /// What its header and its side files tell beside that.
+    pub about: About,
     /// Names of the side files that were used.
     pub side_files: Vec<String>,
     /// What a careful reader of this file should know, each a sentence.
     pub warnings: Vec<String>,
+}
+
+/// What a header and side files tell beside samples and events.
+#[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
+#[serde(default)]
+pub struct About {
+    /// Time of day at which the file's clock starts, `22:13:05`; the day is not kept.
+    pub start: Option<String>,
+    /// Kinds of channels by name, as the table of channels gives them: `EEG`, `EOG`, ….
+    pub kinds: BTreeMap<String, String>,
+    /// Channels that a side file sets aside, by name, with the reason: they are not analysed unless the recipe keeps them.
+    pub aside: BTreeMap<String, String>,
+    /// Frequency of the mains where it was recorded.
+    pub mains_hz: Option<f64>,
+    /// The reference, in the words of a side file.
+    pub reference: Option<String>,
+    /// The side file that positions come from.
+    pub positions: Option<String>,
+    /// A table of events that is not used because its columns were not told.
+    pub untold: Option<String>,
 }
 
 /// How the channels lie to each other, which decides what a map is drawn on and who is whose neighbour.

@@ -1,7 +1,9 @@
 //! Opening a recording in steps: probe the content, read the header, decode slice after slice, add the side files.
 use super::budget::Budget;
 use super::large::{Flowing, Large, Scan};
-use super::{MEMORY_BYTES, Recording, SideFile, Source, edf, events_table, gzip, joined, table};
+use super::{
+    MEMORY_BYTES, Recording, SideFile, Source, edf, gzip, joined, sides as side_files, table,
+};
 use crate::error::{Kind, Problem, Result};
 use std::fmt;
 
@@ -75,6 +77,7 @@ const OTHER_CONTENT: &[(&[u8], &str)] = &[
 pub struct Opening {
     source: Box<dyn Source>,
     sides: Vec<SideFile>,
+    /// As the user gave them, without what side files add.
     options: OpenOptions,
     budget: Budget,
     reader: Box<dyn Reader>,
@@ -145,12 +148,13 @@ impl Opening {
         mut budget: Budget,
     ) -> Result<Opening> {
         let name = source.name().to_owned();
-        let mut reader = begin_reader(source.as_mut(), &options, &mut budget)
+        let sides = unpacked(sides)?;
+        let completed = completed(&options, &name, &sides)?;
+        let mut reader = begin_reader(source.as_mut(), &completed, &mut budget)
             .map_err(|problem| problem.in_file(name))?;
         let scan = reader
             .flowing()
             .map(|flow| Scan::new(flow.channels(), flow.expected()));
-        let sides = unpacked(sides)?;
         Ok(Opening {
             source,
             sides,
@@ -185,10 +189,12 @@ impl Opening {
             bytes: sources.iter().map(|source| source.len()).sum(),
         };
         let mut budget = Budget::new(together.bytes, memory_bytes);
-        let reader = joined::begin(sources, &options, &mut budget)?;
+        let sides = unpacked(sides)?;
+        let completed = completed(&options, &together.name, &sides)?;
+        let reader = joined::begin(sources, &completed, &mut budget)?;
         Ok(Opening {
             source: Box::new(together),
-            sides: unpacked(sides)?,
+            sides,
             options,
             budget,
             reader,
@@ -245,7 +251,7 @@ impl Opening {
             .map_err(|problem| problem.in_file(name.as_str()))?;
         recording.name = name;
         warn_of_rate(&mut recording, self.options.given.rate_hz);
-        events_table::apply(&mut recording, &self.sides)?;
+        side_files::apply(&mut recording, &self.sides, &self.options.given)?;
         recording
             .events
             .sort_by(|a, b| a.onset_s.total_cmp(&b.onset_s));
@@ -286,6 +292,14 @@ pub(super) fn begin_reader(
 ) -> Result<Box<dyn Reader>> {
     let format = probe(source)?;
     (format.begin)(source, options, budget)
+}
+
+/// The options with what side files tell of a format that does not.
+fn completed(options: &OpenOptions, name: &str, sides: &[SideFile]) -> Result<OpenOptions> {
+    Ok(OpenOptions {
+        given: side_files::complete(&options.given, name, sides)?,
+        ..options.clone()
+    })
 }
 
 fn unpacked(sides: Vec<SideFile>) -> Result<Vec<SideFile>> {

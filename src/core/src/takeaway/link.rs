@@ -21,7 +21,7 @@ const ENGINE: GeneralPurpose = GeneralPurpose::new(
 );
 
 /// Names that a link without names can leave out.
-const LEFT_OUT: [(&str, &str); 5] = [
+const LEFT_OUT: [(&str, &str); 7] = [
     (
         "channels.leave_out",
         "The link names no channels: what its sender left out is not left out here.",
@@ -41,6 +41,14 @@ const LEFT_OUT: [(&str, &str); 5] = [
     (
         "recording.variable",
         "The link does not name the array that its sender opened.",
+    ),
+    (
+        "channels.positions",
+        "The link names no channels: its sender's positions are not used here.",
+    ),
+    (
+        "recording.events",
+        "The link names no columns: the table of events has to be told anew.",
     ),
 ];
 
@@ -143,6 +151,8 @@ fn strip(recipe: &Recipe, mut value: Value) -> Value {
             || matches!(&channels.reference, Reference::Bipolar(b) if matches!(b.bipolar, Pairs::List(_))),
         !channels.keep.is_empty(),
         recipe.recording.variable.is_some(),
+        channels.positions.is_some(),
+        recipe.recording.events.is_some(),
     ];
     for ((path, _), _) in LEFT_OUT.iter().zip(named).filter(|(_, named)| *named) {
         without.push(*path);

@@ -3,6 +3,7 @@
 //! * [`recipe_json`], [`recipe_from_json`], [`recipe_check`]: the recipe file; [`link_encode`], [`link_decode`]: the same inside an address.
 //! * [`weights_json`], [`weights_csv`], [`weights_npy`]: the filters; [`Weights`] reads them back and applies them to another recording.
 //! * [`results_json`]: every number in full precision.
+//! * [`facts`]: what is told of a recording.
 //! * [`series_csv`], [`series_npy`]: time courses; [`Row`], [`Many`]: many recordings in one table, and what they say together.
 //! * [`readings`]: the sentences beside the figures; [`methods`], [`references`]: the paragraph for a paper.
 //! * [`report_html`]: one page to keep; [`archive`]: everything in one ZIP.
@@ -11,6 +12,7 @@
 mod apply;
 mod archive;
 mod cells;
+mod facts;
 mod kinds;
 mod link;
 mod many;
@@ -29,6 +31,7 @@ mod words;
 pub use crate::recipe::recipe_check;
 pub use apply::Applied;
 pub use archive::{archive, safe_name};
+pub use facts::{Fact, facts, timelines};
 pub use link::{RecipeLink, link_decode, link_encode};
 pub use many::{Group, GroupEnd, Many, Portrait, Row};
 pub use methods::{methods, references};

@@ -79,6 +79,14 @@ const RECORDING: Shape = Shape::Object(&[
         ])),
     ),
     ("variable", false, Shape::Maybe(&Shape::Text)),
+    ("events", false, Shape::Maybe(&EVENTS)),
+]);
+
+const EVENTS: Shape = Shape::Object(&[
+    ("onset", true, Shape::Text),
+    ("unit", false, Shape::Word(&["s", "ms", "samples"])),
+    ("label", false, Shape::Maybe(&Shape::Text)),
+    ("duration", false, Shape::Maybe(&Shape::Text)),
 ]);
 
 const PAIRS: Shape = Shape::Either(
@@ -105,6 +113,36 @@ pub(super) const CHANNELS: Shape = Shape::Object(&[
             "\"as recorded\", \"average\", a list of channel names or {\"bipolar\": …}",
         ),
     ),
+    ("positions", false, POSITIONS),
+]);
+
+const POSITIONS: Shape = Shape::Object(&[
+    (
+        "grid",
+        false,
+        Shape::Object(&[
+            ("rows", true, Shape::Whole),
+            ("columns", true, Shape::Whole),
+            ("spacing_mm", false, Shape::Number),
+            (
+                "first",
+                false,
+                Shape::Word(&["top-left", "top-right", "bottom-left", "bottom-right"]),
+            ),
+            ("along", false, Shape::Word(&["rows", "columns"])),
+            ("prefix", false, Shape::Text),
+        ]),
+    ),
+    (
+        "probe",
+        false,
+        Shape::Object(&[
+            ("spacing_um", true, Shape::Number),
+            ("order", false, Shape::Word(&["top-down", "bottom-up"])),
+            ("prefix", false, Shape::Text),
+        ]),
+    ),
+    ("at", false, Shape::Named(&Shape::List(&Shape::Number))),
 ]);
 
 pub(super) const FILTER: Shape = Shape::Object(&[

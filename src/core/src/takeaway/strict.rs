@@ -16,6 +16,8 @@ type Keys = &'static [(&'static str, bool, Shape)];
 pub(crate) enum Shape {
     /// Exactly these keys; the flag says which must be there.
     Object(Keys),
+    /// An object with any keys, each of which holds this.
+    Named(&'static Shape),
     /// An object whose `kind` decides its keys.
     Kinds(&'static [(&'static str, Keys)]),
     /// Any finite number.
@@ -166,6 +168,7 @@ impl<'a> Walk<'a> {
                 Shape::Object(keys) => self.object(raw, keys, None, path),
                 Shape::Kinds(known) => self.kinds(raw, &value, known, path),
                 Shape::List(item) => self.list(raw, item, path),
+                Shape::Named(item) => self.named(raw, item, path),
                 Shape::Either(shapes, _) => shapes
                     .iter()
                     .find(|s| fits(&value, s))
@@ -236,6 +239,15 @@ impl<'a> Walk<'a> {
         }
     }
 
+    fn named(&self, raw: &'a RawValue, item: &Shape, path: &str) -> Result<()> {
+        let pairs: Pairs = serde_json::from_str(raw.get())
+            .map_err(|e| self.wrong(raw, path, "an object", cause(&e.to_string())))?;
+        pairs
+            .0
+            .iter()
+            .try_for_each(|(key, value)| self.value(value, item, &join(path, key)))
+    }
+
     fn list(&self, raw: &'a RawValue, item: &Shape, path: &str) -> Result<()> {
         let items: Vec<&RawValue> = serde_json::from_str(raw.get())
             .map_err(|e| self.wrong(raw, path, "a list", cause(&e.to_string())))?;
@@ -256,7 +268,7 @@ fn join(path: &str, key: &str) -> String {
 
 fn fits(value: &Value, shape: &Shape) -> bool {
     match shape {
-        Shape::Object(_) | Shape::Kinds(_) => value.is_object(),
+        Shape::Object(_) | Shape::Named(_) | Shape::Kinds(_) => value.is_object(),
         Shape::Flag => value.is_boolean(),
         Shape::Pair => value
             .as_array()
@@ -275,7 +287,7 @@ fn fits(value: &Value, shape: &Shape) -> bool {
 
 fn describe(shape: &Shape) -> String {
     match shape {
-        Shape::Object(_) | Shape::Kinds(_) => "an object".into(),
+        Shape::Object(_) | Shape::Named(_) | Shape::Kinds(_) => "an object".into(),
         Shape::Flag => "true or false".into(),
         Shape::Pair => "two numbers [from, to]".into(),
         Shape::Number => "a number".into(),

@@ -3,6 +3,7 @@ use super::{KEY, Map};
 use crate::inks::{Ramp, step};
 use crate::pen::{At, Drawn, Pen, SMALL, TICK, Word};
 use crate::text;
+use plotters::style::RGBAColor;
 use plotters_backend::DrawingBackend;
 
 impl Map {
@@ -21,6 +22,19 @@ impl Map {
         pen.word(&format!("−{limit}"), (left, top + 19.0), word.at(At::Left))?;
         pen.word("0", (pen.w / 2.0, top + 19.0), word)?;
         pen.word(&limit, (left + wide, top + 19.0), word.at(At::Right))
+    }
+
+    /// The colour of a bar; what is nearly nothing on a surface is still a bar.
+    pub(super) fn bar_ink<DB: DrawingBackend>(
+        &self,
+        pen: &Pen<DB>,
+        ramp: &Ramp,
+        i: usize,
+    ) -> RGBAColor {
+        match step(self.values[i], self.limit()) {
+            5 => pen.inks.line,
+            step => ramp[step],
+        }
     }
 
     /// Where the map cannot be drawn: the largest entries as bars.
@@ -48,10 +62,10 @@ impl Map {
                 text::count(order.len(), "channel")
             );
             pen.word(&said, (4.0, 8.0), Word::new(TICK, pen.inks.slate))?;
-            let note = format!(
-                "no map: {} without a position",
-                text::count(self.missing(), "channel")
-            );
+            let note = match self.missing() {
+                0 => "no map: the positions span no surface".to_owned(),
+                n => format!("no map: {} without a position", text::count(n, "channel")),
+            };
             let word = Word::new(SMALL, pen.inks.slate).at(At::Middle);
             pen.word(
                 &text::fit(&note, SMALL, pen.w),
@@ -63,11 +77,7 @@ impl Map {
             let y = top + row * (k as f64 + 0.5);
             let x = zero + (right - zero) * self.values[*i] / limit;
             let half = if self.small { 1.5 } else { 4.5 };
-            pen.rect(
-                (zero, y - half),
-                (x, y + half),
-                ramp[step(self.values[*i], limit)],
-            )?;
+            pen.rect((zero, y - half), (x, y + half), self.bar_ink(pen, ramp, *i))?;
             if !self.small {
                 let word = Word::new(SMALL, pen.inks.slate).at(At::Right);
                 pen.name(&self.names[*i], (left - 6.0, y), left - 8.0, word)?;

@@ -1,8 +1,12 @@
-//! A component's pattern on the head, or in order of size where positions are missing.
+//! A component's pattern on what its channels lie on, or in order of size where positions are missing.
 mod bars;
 mod make;
 mod on_head;
+mod on_plane;
+mod on_shaft;
+mod surface;
 
+use crate::ground::Ground;
 use crate::head::NOSE;
 use crate::pen::{At, Drawn, Pen, SMALL, Word};
 use crate::table::{Table, cell};
@@ -29,11 +33,14 @@ pub struct Map {
     /// The pattern's value for each.
     #[serde(with = "nan")]
     pub values: Vec<f64>,
-    /// Where each lies on the plane; `None` where it has no position.
+    /// What they lie on.
+    #[serde(default)]
+    pub ground: Ground,
+    /// Where each lies on it; `None` where it has no position.
     pub places: Vec<Option<[f64; 2]>>,
     /// Unit of the channels.
     pub unit: String,
-    /// Values on a square grid, row by row from the front left; empty where too few channels have a position.
+    /// Values on a square grid, row by row from the upper left; empty where no surface is drawn between the channels.
     #[serde(with = "nan")]
     pub grid: Vec<f64>,
     /// Radius at which the map ends.
@@ -60,6 +67,43 @@ impl Map {
         order
     }
 
+    /// Whether the pattern is drawn where its channels lie.
+    fn is_laid_out(&self) -> bool {
+        let known = self.places.iter().flatten().count();
+        match &self.ground {
+            Ground::Head | Ground::Plane { pitch: None, .. } => !self.grid.is_empty(),
+            Ground::Plane { .. } => known > 0,
+            Ground::Line { .. } => known > 1,
+        }
+    }
+
+    /// What has to be said below the map: channels left off, and what is drawn between electrodes.
+    fn note(&self) -> Option<String> {
+        let missing = self.missing();
+        let between =
+            matches!(&self.ground, Ground::Plane { pitch: None, .. }) && self.is_laid_out();
+        match (missing, between) {
+            (0, false) => None,
+            (0, true) => Some("smooth between electrodes, nothing beyond them".into()),
+            (n, _) => Some(format!(
+                "{} without a position left off",
+                text::count(n, "channel")
+            )),
+        }
+    }
+
+    fn say_note<DB: DrawingBackend>(&self, pen: &Pen<DB>) -> Drawn<DB> {
+        let Some(said) = self.note() else {
+            return Ok(());
+        };
+        let word = Word::new(SMALL, pen.inks.slate).at(At::Middle);
+        pen.word(
+            &text::fit(&said, SMALL, pen.w),
+            (pen.w / 2.0, pen.h - KEY - 9.0),
+            word,
+        )
+    }
+
     fn missing(&self) -> usize {
         self.places.iter().filter(|p| p.is_none()).count()
     }
@@ -68,48 +112,41 @@ impl Map {
 impl Plot for Map {
     fn draw<DB: DrawingBackend>(&self, pen: &Pen<DB>) -> Drawn<DB> {
         let ramp = self.end.ramp(&pen.inks);
-        if self.grid.is_empty() {
-            self.bars(pen, &ramp)?;
-        } else if self.small {
-            let r = (pen.w / 2.0 - 3.0).min(pen.h / (2.0 + NOSE) - 1.5).max(4.0);
-            return self.head(pen, (pen.w / 2.0, pen.h - r - 1.5), r, &ramp);
-        } else {
-            let note = self.missing();
-            let foot = KEY + if note > 0 { 18.0 } else { 4.0 };
-            let r = (pen.w / 2.0 - 14.0)
-                .min((pen.h - foot) / (2.0 + NOSE) - 2.0)
-                .max(10.0);
-            let centre = (pen.w / 2.0, 2.0 + r * (1.0 + NOSE));
-            self.head(pen, centre, r, &ramp)?;
-            self.dots(pen, centre, r, &ramp)?;
-            if note > 0 {
-                let said = format!(
-                    "{} without a position left off",
-                    text::count(note, "channel")
-                );
-                let word = Word::new(SMALL, pen.inks.slate).at(At::Middle);
-                pen.word(&said, (pen.w / 2.0, pen.h - KEY - 9.0), word)?;
+        match &self.ground {
+            Ground::Head if !self.grid.is_empty() => self.head_map(pen, &ramp)?,
+            Ground::Plane { half, pitch, hull } if self.is_laid_out() => {
+                self.plane_map(pen, *half, *pitch, hull, &ramp)?;
             }
+            Ground::Line { depth_m } if self.is_laid_out() => self.shaft(pen, *depth_m, &ramp)?,
+            _ => self.bars(pen, &ramp)?,
         }
         if self.small {
-            Ok(())
-        } else {
-            self.key(pen, &ramp)
+            return Ok(());
         }
+        self.key(pen, &ramp)
     }
 
     fn height(&self, width: u32) -> u32 {
         if self.small {
             return width;
         }
-        let r = f64::from(width.min(420)) / 2.0 - 14.0;
-        let note = if self.missing() > 0 { 18.0 } else { 4.0 };
-        (r * (2.0 + NOSE) + KEY + note + 4.0) as u32
+        let width = f64::from(width.min(420));
+        let r = width / 2.0 - 14.0;
+        let body = match &self.ground {
+            Ground::Plane { half, pitch, .. } if self.is_laid_out() => {
+                on_plane::height(width, *half, *pitch)
+            }
+            Ground::Line { .. } if self.is_laid_out() => on_shaft::height(self.order().len()),
+            _ => r * (2.0 + NOSE) + 4.0,
+        };
+        let note = if self.note().is_some() { 18.0 } else { 4.0 };
+        (body + KEY + note) as u32
     }
 
     fn table(&self) -> Table {
         let unit = format!("pattern_{}_per_unit", self.unit);
-        let mut table = Table::new(&["channel", &unit, "right", "front"]);
+        let [across, up] = self.ground.axes();
+        let mut table = Table::new(&["channel", &unit, across, up]);
         for (i, name) in self.names.iter().enumerate() {
             let place = self.places.get(i).copied().flatten();
             let at = |k: usize| place.map_or(String::new(), |p| cell(p[k]));
@@ -128,10 +165,10 @@ impl Plot for Map {
                 self.unit
             )
         });
-        let how = if self.grid.is_empty() {
-            "in order of size"
+        let how = if self.is_laid_out() {
+            self.ground.words()
         } else {
-            "on the head"
+            "in order of size"
         };
         format!("Pattern of the component {how}{largest}.")
     }

@@ -126,6 +126,8 @@ pub(super) struct Header {
     /// `None` where the header says −1: not known when it was written.
     pub(super) records: Option<u64>,
     pub(super) record_s: f64,
+    /// Time of day of the start, `22:13:05`.
+    pub(super) start: Option<String>,
     pub(super) record_bytes: u64,
     pub(super) signals: Vec<Signal>,
     pub(super) warnings: Vec<String>,
@@ -220,6 +222,7 @@ pub(super) fn read(source: &mut dyn Source, width: Width, budget: &mut Budget) -
         bytes,
         records,
         record_s,
+        start: time_of_day(&fixed[176..184]),
         record_bytes: 0,
         signals: Vec::with_capacity(signals as usize),
         warnings,
@@ -234,6 +237,20 @@ pub(super) fn read(source: &mut dyn Source, width: Width, budget: &mut Budget) -
     }
     check_duration(&header)?;
     Ok(header)
+}
+
+/// `22.13.05` as `22:13:05`; `None` where it is no time, and at midnight, which stands for a time that was taken out.
+fn time_of_day(field: &[u8]) -> Option<String> {
+    let text = std::str::from_utf8(field).ok()?;
+    let parts: Vec<u8> = text
+        .split(['.', ':'])
+        .map(|part| part.trim().parse().ok())
+        .collect::<Option<_>>()?;
+    match parts[..] {
+        [0, 0, 0] => None,
+        [h, m, s] if h < 24 && m < 60 && s < 60 => Some(format!("{h:02}:{m:02}:{s:02}")),
+        _ => None,
+    }
 }
 
 /// A field of a signal and its first byte in the file.

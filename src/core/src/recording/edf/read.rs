@@ -274,6 +274,10 @@ impl Reader for EdfReader {
             layout: crate::recording::Layout::Head,
             stretches: self.stretches,
             events: self.events,
+            about: crate::recording::About {
+                start: self.header.start.clone(),
+                ..crate::recording::About::default()
+            },
             side_files: Vec::new(),
             warnings: self.warnings,
         })

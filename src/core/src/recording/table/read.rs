@@ -410,6 +410,7 @@ impl Reader for TableReader {
                     label,
                 })
                 .collect(),
+            about: crate::recording::About::default(),
             side_files: Vec::new(),
             warnings: self.warnings,
         })
