@@ -155,7 +155,7 @@ impl Principal {
         pen.band(&side(&row.low), &side(&row.high), pen.inks.area())?;
         let said = format!("±{} SD", text::short(most));
         let word = Word::new(SMALL, pen.inks.slate).at(At::Right);
-        pen.word(&said, (right, top + 7.0), word)
+        pen.word(&said, (right, top + 10.0), word)
     }
 }
 
