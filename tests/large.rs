@@ -33,7 +33,7 @@ fn large(recording: &Recording) -> Large {
 
 fn whole(recording: &Recording) -> Recording {
     match opening(bytes(recording), 1 << 30).opened().unwrap() {
-        Opened::Whole(recording) => recording,
+        Opened::Whole(recording) => *recording,
         Opened::Large(_) => panic!("it does not fit into a gigabyte"),
     }
 }

@@ -42,7 +42,7 @@ pub fn inspect(given: &Given, as_json: bool) -> bool {
 fn one(path: &Path, given: &Given, as_json: bool) -> Result<Value> {
     let mut meter = Meter::new(&source::file_name(path));
     let recording = match source::open(path, given, &given.told.given(), &mut meter)? {
-        Opened::Whole(recording) => recording,
+        Opened::Whole(recording) => *recording,
         Opened::Large(large) => large.outline().clone(),
     };
     if as_json {

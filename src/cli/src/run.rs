@@ -55,7 +55,7 @@ pub fn run(recipe: &Path, given: &Given, out: &Path, seed: Option<u64>) -> bool 
 fn one(recipe: &Recipe, path: &Path, given: &Given, folder: &Path, shown: &str) -> Result<Row> {
     let mut meter = Meter::new(&source::file_name(path));
     let mut analysis = match source::open(path, given, &recipe.recording, &mut meter)? {
-        Opened::Whole(recording) => Analysis::new(recording, recipe.clone())?,
+        Opened::Whole(recording) => Analysis::new(*recording, recipe.clone())?,
         Opened::Large(large) => Analysis::of_large(*large, recipe.clone())?,
     };
     let large = analysis.large().is_some();

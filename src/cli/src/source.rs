@@ -116,7 +116,7 @@ pub fn recording(
     meter: &mut Meter,
 ) -> Result<Recording> {
     match open(path, given, told, meter)? {
-        Opened::Whole(recording) => Ok(recording),
+        Opened::Whole(recording) => Ok(*recording),
         Opened::Large(_) => Err(Problem::new(
             Kind::TooLarge,
             "the recording is larger than the memory for it",

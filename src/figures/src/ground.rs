@@ -127,7 +127,7 @@ impl Ground {
 
 #[cfg(test)]
 mod tests {
-    #![allow(clippy::unwrap_used, reason = "tests")]
+    #![allow(clippy::unwrap_used, clippy::panic, reason = "tests")]
     use super::*;
 
     #[test]

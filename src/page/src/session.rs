@@ -380,7 +380,7 @@ impl Session {
     fn finish_reading(&mut self) -> Outcome<()> {
         self.state = match mem::take(&mut self.state) {
             State::Opening(opening) => match opening.opened().map_err(thrown)? {
-                Opened::Whole(recording) => State::Open(Box::new(recording)),
+                Opened::Whole(recording) => State::Open(recording),
                 Opened::Large(large) => State::Large(large),
             },
             other => other,

@@ -207,8 +207,7 @@ impl Lines {
     ) -> Vec<f32> {
         let mut out = Vec::with_capacity(2 * count * which.len());
         let all: Vec<&Vec<f64>> = filters(analysis).collect();
-        self.components
-            .retain(|(filter, _)| all.iter().any(|f| *f == filter));
+        self.components.retain(|(filter, _)| all.contains(&filter));
         for &at in which {
             let bins = match (&analysis.work.prepared, all.get(at)) {
                 (Some(prepared), Some(filter)) => {

@@ -257,7 +257,7 @@ impl Space {
         }
         self.covariances.push(out);
         // The signal window of a trial comes first of its two.
-        if let Some(course) = all.courses.get(k / 2).filter(|_| k % 2 == 0) {
+        if let Some(course) = all.courses.get(k / 2).filter(|_| k.is_multiple_of(2)) {
             self.courses.push(self.whiten(course));
         }
         true

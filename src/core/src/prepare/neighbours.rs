@@ -154,6 +154,7 @@ fn shepard(
 
 #[cfg(test)]
 mod tests {
+    #![allow(clippy::unwrap_used, reason = "a panic is the failure of a test")]
     use super::*;
 
     fn line(depths: &[f64]) -> Places {

@@ -303,7 +303,7 @@ impl Large {
         };
         let count = ((SAMPLE_SECONDS * self.outline.rate_hz) as usize).clamp(1, stretch.count);
         let first = stretch.first + (stretch.count - count) / 2;
-        self.run(&[first..first + count])
+        self.run(std::slice::from_ref(&(first..first + count)))
     }
 
     /// The islands at once, with all channels.

@@ -98,7 +98,7 @@ pub struct Opening {
 #[derive(Debug)]
 pub enum Opened {
     /// All samples are in the memory.
-    Whole(Recording),
+    Whole(Box<Recording>),
     /// The samples stay in the file.
     Large(Box<Large>),
 }
@@ -236,7 +236,7 @@ impl Opening {
     /// Those of the reader; `TooLarge` where the samples were handed through ([`Opening::begin_streaming`]): [`Opening::opened`] gives those.
     pub fn finish(self) -> Result<Recording> {
         match self.opened()? {
-            Opened::Whole(recording) => Ok(recording),
+            Opened::Whole(recording) => Ok(*recording),
             Opened::Large(large) => Err(Problem::new(
                 Kind::TooLarge,
                 "the recording is larger than the memory for it",
@@ -268,7 +268,7 @@ impl Opening {
                 let large = Large::new(recording, self.source, pieces, scan)?;
                 Opened::Large(Box::new(large))
             }
-            _ => Opened::Whole(recording),
+            _ => Opened::Whole(Box::new(recording)),
         })
     }
 }

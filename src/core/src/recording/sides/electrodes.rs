@@ -295,8 +295,11 @@ fn arrange(recording: &mut Recording, all: &mut [Option<[f64; 3]>], file: &str) 
     }
 }
 
-/// Centre, axes by falling extent, and the extents (root mean squares). Each axis points to where its largest entry is positive.
-fn principal(points: &[[f64; 3]]) -> Option<([f64; 3], [[f64; 3]; 3], [f64; 3])> {
+/// Centre, axes by falling extent, and the extents (root mean squares).
+type Principal = ([f64; 3], [[f64; 3]; 3], [f64; 3]);
+
+/// Where points lie and how far they spread. Each axis points to where its largest entry is positive.
+fn principal(points: &[[f64; 3]]) -> Option<Principal> {
     if points.len() < 2 {
         return None;
     }
