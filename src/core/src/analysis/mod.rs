@@ -277,6 +277,11 @@ impl Analysis {
         self.viewed.as_ref().unwrap_or(&self.recording)
     }
 
+    /// The recording as it was opened: of a movie, every pixel.
+    pub fn recorded(&self) -> &Recording {
+        &self.recording
+    }
+
     /// Gives the recording back, to be analysed with something else.
     pub fn into_recording(self) -> Recording {
         self.recording
