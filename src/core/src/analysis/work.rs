@@ -668,7 +668,11 @@ impl Work {
     }
 
     /// Samples of prepared channel `index`, also where a basis stands in for the channels.
-    pub(super) fn channel<'a>(&'a self, recording: &'a Recording, index: usize) -> Option<&'a [f32]> {
+    pub(super) fn channel<'a>(
+        &'a self,
+        recording: &'a Recording,
+        index: usize,
+    ) -> Option<&'a [f32]> {
         let prepared = self.prepared.as_ref()?;
         match self.basis.is_some() {
             false if index < prepared.channels.len() => Some(prepared.of_channel(recording, index)),

@@ -2,8 +2,8 @@
 use super::kinds;
 use super::words::{self, NB};
 use crate::recipe::{
-    BipolarReference, Keep, KeepWord, Mask, Measure, Pairs, PairsWord, Reference, ReferenceWord, Shrink,
-    ShrinkWord,
+    BipolarReference, Keep, KeepWord, Mask, Measure, Pairs, PairsWord, Reference, ReferenceWord,
+    Shrink, ShrinkWord,
 };
 use crate::sheet::{ChannelState, Component, MovieCard, Sheet, SideCard};
 
@@ -240,7 +240,9 @@ fn movie(sheet: &Sheet, card: &MovieCard) -> String {
             "; the {used} {what} whose mean exceeded {} were used",
             words::as_chosen(a.above)
         ),
-        Some(Mask::Painted(_)) => format!("; {used} {what} were chosen by hand on the mean picture"),
+        Some(Mask::Painted(_)) => {
+            format!("; {used} {what} were chosen by hand on the mean picture")
+        }
     };
     text.push_str(&format!("{mask})."));
     if let Some(dff) = sheet.recipe.movie.dff {

@@ -161,7 +161,9 @@ fn components_doubt(sheet: &Sheet) -> Option<Line> {
     }
     changed(sheet).or_else(|| wide(sheet)).or_else(|| {
         Some(Line::new(match &sheet.movie {
-            Some(_) => "a pattern shows where a component is seen in the picture, not what made it.",
+            Some(_) => {
+                "a pattern shows where a component is seen in the picture, not what made it."
+            }
             None => "a pattern shows how a component looks at the channels, not where it arises.",
         }))
     })

@@ -345,7 +345,8 @@ fn channels_doubt(sheet: &Sheet) -> Option<Line> {
             words::one(sheet.channels.len() - placed, "it", "them")
         ));
     }
-    let told = sheet.recording.about.positions.is_some() || sheet.recipe.channels.positions.is_some();
+    let told =
+        sheet.recording.about.positions.is_some() || sheet.recipe.channels.positions.is_some();
     said(match (&sheet.recording.layout, told) {
         (Layout::Head, false) => {
             "places come from the channels' names, not from this head; maps are a guide to the eye."

@@ -102,7 +102,10 @@ fn fitted(sheet: &Sheet) -> Said {
 /// The leading component in words.
 fn lead(sheet: &Sheet) -> Option<(Line, &Component)> {
     let lead = judge::lead(sheet)?;
-    Some((describe(sheet, "a component", lead.component), lead.component))
+    Some((
+        describe(sheet, "a component", lead.component),
+        lead.component,
+    ))
 }
 
 /// "a component peaking at **21 Hz**, largest at CP1,".
