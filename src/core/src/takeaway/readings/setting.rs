@@ -489,7 +489,11 @@ fn rises(sheet: &Sheet) -> Line {
         words::capital(lead.name())
     ))
     .strong(format!("{with} of {}", trials.len()))
-    .then(" trials.")
+    .then(match sheet.recipe.contrast {
+        Contrast::Band { .. } | Contrast::Slow { .. } => " segments.",
+        Contrast::Spans { .. } => " pieces.",
+        _ => " trials.",
+    })
 }
 
 /// What became of the windows that are not used.
@@ -577,9 +581,10 @@ fn windows_doubt(sheet: &Sheet) -> Option<Line> {
     }
     let shortest = card.signal.seconds.min(card.reference.seconds);
     said(format!(
-        "in {} rhythms closer together than {} run into one another.",
+        "in {} rhythms closer together than {}{}Hz run into one another.",
         words::seconds(shortest),
-        words::hertz(1.0 / shortest)
+        words::trimmed(1.0 / shortest, 2),
+        words::NB
     ))
 }
 
