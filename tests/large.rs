@@ -112,6 +112,11 @@ fn parts(analysis: &Analysis) -> Value {
     // What was read is said for one only, and channels are looked at in the middle of the large one.
     object.remove("channels");
     object.remove("warnings");
+    // What is asked of all samples is not asked of a large recording.
+    object.remove("quality");
+    object.remove("principal");
+    let preparation = object["preparation"].as_object_mut().unwrap();
+    preparation.remove("ranks");
     let recording = object["recording"].as_object_mut().unwrap();
     recording.remove("warnings");
     sheet

@@ -10,6 +10,12 @@ const TABLE: &str =
 const COMMAS: &str = "sample;a;b\r\n0;1,5;2,5\r\n1;2,5;3,5\r\n2;-1;0\r\n";
 const EVENTS: &str =
     "onset\tduration\ttrial_type\tvalue\n0.5\t0\tbuoy\t1\n1.5\t1\t\"a b\"\t2\nn/a\tn/a\tn/a\tn/a\n";
+const SIDES: [&str; 4] = [
+    "\0name\ttype\tunits\tstatus\nC0\tEEG\tuV\tgood\nC1\tEOG\tmV\tbad\n",
+    "\u{1}name\tx\ty\tz\nC0\t-0.08\t0\t0.04\nC1\tn/a\tn/a\tn/a\n",
+    "\u{2}{\"EEGCoordinateSystem\":\"Other\",\"EEGCoordinateUnits\":\"mm\",\"AnatomicalLandmarkCoordinates\":{\"NAS\":[0,90,0],\"LPA\":[-80,0,0],\"RPA\":[80,0,0]}}",
+    "\u{3}{\"SamplingFrequency\":250,\"PowerLineFrequency\":50,\"EEGReference\":\"Cz\"}",
+];
 
 fn main() -> io::Result<()> {
     let mut gaps = seed(2, 40);
@@ -30,7 +36,25 @@ fn main() -> io::Result<()> {
         ("link", vec![link(true).into(), link(false).into()]),
         ("weights", vec![b"{\"teasel_weights\":1,\"channels\":[{\"name\":\"A\",\"unit\":\"uV\"}],\"rate_hz\":250,\"filters\":[[1]],\"patterns\":[[1]],\"ratios\":[1]}".to_vec()]),
         ("events", vec![EVENTS.into()]),
+        ("sides", SIDES.map(Vec::from).to_vec()),
     ];
+    // Arrays and stacks made by general libraries, beside the checks.
+    for target in ["npy", "npz", "mat", "tiff"] {
+        let folder = format!("corpus/{target}");
+        fs::create_dir_all(&folder)?;
+        for entry in fs::read_dir("../tests/reference/arrays")? {
+            let path = entry?.path();
+            let ending = path
+                .extension()
+                .and_then(|e| e.to_str())
+                .unwrap_or_default();
+            if target.starts_with(ending)
+                && let Some(name) = path.file_name()
+            {
+                fs::copy(&path, format!("{folder}/{}", name.to_string_lossy()))?;
+            }
+        }
+    }
     for (target, files) in seeds {
         let folder = format!("corpus/{target}");
         fs::create_dir_all(&folder)?;

@@ -14,7 +14,7 @@ pub fn given(axes: Option<Axes>) -> Given {
         rate_hz: Some(100.0),
         unit: Some("uV".to_owned()),
         axes,
-        variable: None,
+        ..Given::default()
     }
 }
 

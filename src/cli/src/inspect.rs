@@ -123,8 +123,8 @@ fn text(recording: &Recording, given: &Given) -> Result<String> {
     let summary = summary(recording);
     let mut out = String::new();
     let mut put = |label: &str, value: String| {
-        // Writing to a String cannot fail.
-        let _ = writeln!(out, "{label:<13}{value}");
+        // Writing to a String cannot fail. Spaces that do not break are for pages, and cannot be searched for in a terminal.
+        let _ = writeln!(out, "{label:<13}{}", value.replace('\u{a0}', " "));
     };
     put("recording", shown(&recording.name));
     for fact in facts(&summary.recording, &summary.channels) {

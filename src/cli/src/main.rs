@@ -151,7 +151,7 @@ impl Given {
 #[derive(Args)]
 struct Told {
     /// Samples a second, or frames.
-    #[arg(long, value_name = "HZ")]
+    #[arg(long, value_name = "HZ", allow_negative_numbers = true)]
     rate: Option<f64>,
     /// Unit of the samples: uV, mV, V, nV, fT, counts, or any other.
     #[arg(long, value_name = "UNIT")]

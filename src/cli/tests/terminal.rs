@@ -358,7 +358,7 @@ fn bad_recipes_and_weights_stop_before_any_recording() {
         (
             "band.json",
             recipe.replace("\"windows\"", "\"band\""),
-            "this version computes the kind windows",
+            "found the key \"signal\"",
         ),
         ("cut.json", recipe[..40].into(), "not JSON"),
         ("empty.json", String::new(), "empty"),
@@ -414,7 +414,7 @@ fn inspect_tells_what_is_there_and_proposes_a_recipe_that_runs() {
     for part in [
         "watch.edf",
         "250 Hz",
-        "32 in µV",
+        "units        µV",
         "buoy",
         "swell",
         "proposal",

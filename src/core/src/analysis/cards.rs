@@ -133,16 +133,16 @@ pub(super) fn doubt(cards: &mut [ChannelCard], quality: Option<&Quality>, recipe
 
 /// Channels and rank after each step of the preparation.
 pub(super) fn ranks(work: &mut Work) {
-    let (Some(prepared), Some(quality), Some(ground)) =
-        (&work.prepared, &work.quality, &work.ground)
-    else {
+    let (Some(prepared), Some(ground)) = (&work.prepared, &work.ground) else {
         return;
     };
+    // Where only islands are in memory, channels are not compared, and the ranks before the filters are not known.
+    let quality = work.quality.as_ref();
     let steps = prepared.steps.iter().filter_map(|step| {
         Some(RankStep {
             step: step.step,
             channels: step.matrix.nrows(),
-            rank: quality.rank(&step.matrix)?,
+            rank: quality?.rank(&step.matrix)?,
             why: step.why.clone(),
         })
     });

@@ -160,7 +160,7 @@ pub(super) fn around(
         .iter()
         .filter(|e| {
             while at.next_if(|t| **t < e.onset_s).is_some() {}
-            !selection.paired || at.next_if(|t| **t == e.onset_s).is_some()
+            at.next_if(|t| **t == e.onset_s).is_some()
         })
         .filter_map(|e| {
             Some((

@@ -471,7 +471,7 @@ impl Work {
         let effect = self.sheet.rejection.as_ref().and_then(|r| r.effect);
         if self.effect.is_some() && effect.is_none() {
             Task::Effect
-        } else if self.sheet.principal.len() < wanted {
+        } else if self.standing.is_none() && self.sheet.principal.len() < wanted {
             Task::Principal
         } else if self.sheet.dimensions.is_none() && self.basis.is_none() && self.counts_samples() {
             Task::Dimensions

@@ -1,0 +1,4 @@
+//! NumPy arrays.
+#![no_main]
+
+libfuzzer_sys::fuzz_target!(|bytes: &[u8]| teasel_fuzz::recording(b"\x93NUMPY", bytes));
