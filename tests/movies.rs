@@ -9,7 +9,7 @@ use teasel_core::recipe::{
 };
 use teasel_core::recording::{Channel, Event, Layout, Recording, Stretch};
 use teasel_core::sheet::{ComparatorKind, MovieCard};
-use teasel_core::takeaway::{recipe_from_json, recipe_json};
+use teasel_core::takeaway::{Weights, recipe_from_json, recipe_json, weights_json};
 use teasel_tests::{close, close_all, number, numbers, reference, rows};
 
 const F32: f64 = f32::EPSILON as f64;
@@ -313,4 +313,78 @@ fn the_planted_patches_come_back() {
     let lead = held(&sheet.first().unwrap().typical).ln().abs();
     assert!(beside(ComparatorKind::FirstPc) < 0.5 * lead);
     assert!(beside(ComparatorKind::BestChannel) < lead);
+}
+
+/// Twelve events in a movie of 8 × 8 pixels, whose four middle pixels are brighter after each.
+fn answering() -> Recording {
+    let frames = 12 * 60;
+    let mut state = 7_u64;
+    let mut noise = || {
+        state = state
+            .wrapping_mul(6_364_136_223_846_793_005)
+            .wrapping_add(1_442_695_040_888_963_407);
+        (state >> 40) as f32 / 16_777_216.0 - 0.5
+    };
+    let pixel = |p: usize| {
+        let middle = (3..5).contains(&(p / 8)) && (3..5).contains(&(p % 8));
+        let course = (0..frames).map(|t| {
+            let after = (30..50).contains(&(t % 60));
+            let size = if middle && after { 9.0 } else { 1.0 };
+            200.0 + p as f32 + size * noise()
+        });
+        course.collect::<Vec<f32>>()
+    };
+    let mut movie = a_movie((0..64).map(pixel).collect(), 8, 8);
+    movie.events = (0..12)
+        .map(|k| Event {
+            onset_s: (k * 60 + 30) as f64 / 20.0,
+            duration_s: 0.0,
+            label: "puff".into(),
+        })
+        .collect();
+    movie
+}
+
+#[test]
+fn weights_of_bins_and_baselines_make_the_same_of_a_movie_before_they_are_applied() {
+    let window = |from_s, to_s| EventWindow::new("puff", from_s, to_s);
+    let recipe = Recipe {
+        movie: Movie {
+            bin: Some(2),
+            mask: Some(Mask::Quantile(Quantile { quantile: 0.25 })),
+            dff: Some(Dff {
+                percentile: 20.0,
+                window_s: 6.0,
+            }),
+        },
+        evidence: Evidence {
+            permutations: 0,
+            bootstrap: 0,
+            ..Evidence::default()
+        },
+        ..Recipe::asking(Contrast::Windows {
+            signal: window(0.0, 1.0),
+            reference: window(-1.0, 0.0),
+        })
+    };
+    let mut analysis = Analysis::new(answering(), recipe).unwrap();
+    analysis.run(|_| {}).unwrap();
+    let text = weights_json(analysis.sheet()).unwrap();
+    let weights = Weights::from_json(&text).unwrap();
+    assert_eq!(weights.preparation.movie, analysis.recipe().movie);
+    let ours = analysis.series().unwrap();
+    let applied = weights.apply(analysis.recorded()).unwrap();
+    assert_eq!(applied.series.names, ours.names);
+    for (a, b) in applied.series.samples.iter().zip(&ours.samples) {
+        let largest = b.iter().fold(0.0_f64, |m, x| m.max(x.abs()));
+        // The series are sums over f32 samples in another order: a few units of f32's last place.
+        close_all("series", a, b, 16.0 * F32 * largest);
+    }
+    assert!(applied.notes.iter().any(|note| note.contains("binned")));
+    let plain = Recording {
+        layout: Layout::Head,
+        ..answering()
+    };
+    let refused = weights.apply(&plain).unwrap_err();
+    assert_eq!(refused.what, "the recording is no movie");
 }

@@ -1,4 +1,5 @@
 /** Channels: filters, reference, and which channels are left out or interpolated. */
+import { isMovie } from "./carriers.js";
 import { find, make } from "./kit.js";
 import { numberField, picks, select, textField } from "./fields.js";
 import { figureSlot } from "./figure.js";
@@ -36,6 +37,8 @@ export function mountChannels(app) {
   const showMode = () => mode.show([{ value: "leave_out", label: "leaves it out" }, { value: "interpolate", label: "interpolates it" }], pressing);
   showMode();
 
+  const leave = make("details", { class: "more leave-out" }, make("summary", {}, "Leave out or interpolate any channel"),
+    make("p", { class: "choice" }, "Pressing a name ", mode.root, make("span", { class: "quiet small" }, "An interpolated channel adds no dimension: it helps maps and averages, not the separation.")), chips);
   body.append(
     make("div", { class: "choice" },
       make("span", { class: "together" }, "Keep ", high.field, " to ", low.field, " Hz,"),
@@ -44,14 +47,15 @@ export function mountChannels(app) {
       make("span", { class: "together" }, "resample to ", rate.field, " Hz")),
     movie(app),
     pairOf(app),
+    picturesOf(app),
     proposals(app),
-    make("details", { class: "more leave-out" }, make("summary", {}, "Leave out or interpolate any channel"),
-      make("p", { class: "choice" }, "Pressing a name ", mode.root, make("span", { class: "quiet small" }, "An interpolated channel adds no dimension: it helps maps and averages, not the separation.")), chips),
+    leave,
     moreFilters(app),
     ranks(),
   );
   follow((state, before) => {
     if (state.recipe === before.recipe && state.sheet === before.sheet && state.summary === before.summary) return;
+    leave.hidden = isMovie(state.summary);
     for (const field of [high, low, rate, notch]) field.show();
     showReference(reference);
     showChips(app, chips);
@@ -66,6 +70,17 @@ function pairOf(app) {
   const row = make("div", { class: "head-and-stems" }, map.root, stems.place);
   stems.root.append(row);
   return stems.root;
+}
+
+/** A movie's mean and standard deviation, as pictures. @param {App} app */
+function picturesOf(app) {
+  const pictures = figureSlot(app, "channels-map", {
+    section: "channels", title: "Each pixel over all frames", hint: "left out: blank", label: "Mean and standard deviation of each pixel",
+    load: async () => (now().figures.includes("channels-map") ? app.bridge.figure("channels-map") : null),
+  });
+  const place = make("div", { class: "pictures", hidden: true }, pictures.root);
+  follow((state, before) => void (state.summary !== before.summary && (place.hidden = !isMovie(state.summary))));
+  return place;
 }
 
 /** The largest frequency that can be asked for: half the rate, or the rate itself where it is what is asked for. @param {string} key */

@@ -31,7 +31,7 @@ export function mountCompression(app) {
   const principal = figureSlot(app, "principal", { section: "compression", title: "The largest dimensions, not the most relevant", hint: "", label: "The first dimensions of the compression: pattern and course over the recording" });
   body.append(eigenvalues.root, guides,
     make("details", { class: "more", id: "noise-rules" }, make("summary", {}, "What the rules count"), rules),
-    make("details", { class: "more", id: "principal" }, make("summary", {}, "The first dimensions: the largest, not the most relevant"),
+    make("details", { class: "more", id: "principal" }, make("summary", {}, "The first dimensions"),
       make("p", { class: "quiet small" }, "What is largest is often a blink, muscle, mains or drift. Use these to see what the compression keeps; what differs between the windows stands under Components."), principal.root));
 
   keep.addEventListener("input", () => app.change((recipe) => void (recipe.keep = Number(keep.value))));

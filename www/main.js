@@ -2,6 +2,7 @@
 import { start } from "./bridge.js";
 import { find, make } from "./kit.js";
 import { mountAbout } from "./about.js";
+import { carriers } from "./carriers.js";
 import { mountChannels } from "./channels.js";
 import { mountChoosing } from "./choosing.js";
 import { mountComponents } from "./components.js";
@@ -99,7 +100,7 @@ function head() {
     const card = state.summary?.recording;
     find("#steps").hidden = !card;
     if (!card || !state.summary) return;
-    const facts = [`${state.summary.channels.length} channels`, `${Number(card.rate_hz.toFixed(3))} Hz`, duration(card.duration_s), ...(state.source?.size ? [size(state.source.size)] : [])];
+    const facts = [carriers(state.summary), `${Number(card.rate_hz.toFixed(3))} Hz`, duration(card.duration_s), ...(state.source?.size ? [size(state.source.size)] : [])];
     find("#opened").replaceChildren(make("b", {}, card.name), ` · ${facts.join(" · ")}`);
     document.title = `${card.name} · Teasel`;
   });

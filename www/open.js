@@ -220,16 +220,16 @@ export function door({ bridge, change: edit }, compute, elsewhere) {
     }
   }
 
-  return {
+  const doors = {
     failed,
     /** @param {File[]} files */
     async files(files) {
       files = await withoutWeights(files, elsewhere.weights);
       if (files.length === 0) return;
       const own = files.length === 1 && files[0]?.name.endsWith(".json") && !BESIDE.test(files[0].name) ? files[0] : null;
-      if (own) return this.recipe(own);
+      if (own) return doors.recipe(own);
       const [alone] = files;
-      if (files.length === 1 && alone && (await isBeside(alone).catch(() => false))) return this.beside(alone);
+      if (files.length === 1 && alone && (await isBeside(alone).catch(() => false))) return doors.beside(alone);
       await gather(files);
     },
     /** A table that belongs to the open recording, in place of one of the same name. @param {File} file */
@@ -295,6 +295,7 @@ export function door({ bridge, change: edit }, compute, elsewhere) {
       sayEnded(() => void again(), summary && recipe ? takeRecipe : null);
     },
   };
+  return doors;
 
   /** @returns {Given} */
   function given() {

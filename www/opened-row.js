@@ -1,4 +1,5 @@
 /** The whole of one component: map, spectrum, filter, single trials, course and average. */
+import { placeOf } from "./carriers.js";
 import { make } from "./kit.js";
 import { picks } from "./fields.js";
 import { figureSlot } from "./figure.js";
@@ -67,7 +68,7 @@ function tell() {
   const strong = (/** @type {string} */ text) => make("b", {}, text);
   const held = typical.held_out === null ? [] : [", held-out ", strong(factor(typical.held_out)), " in a typical trial and ", factor(total.held_out), " over all power"];
   shown.told.replaceChildren(
-    end === "weaker" ? "Weaker in signal" : "Stronger in signal", ": fitted ", factor(typical.fitted), ...held, ". Its pattern is largest at ", strong(largest_at),
+    end === "weaker" ? "Weaker in signal" : "Stronger in signal", ": fitted ", factor(typical.fitted), ...held, ". Its pattern is largest at ", strong(placeOf(largest_at, now().summary)),
     ...(peak_hz === null ? [] : [", its spectra differ most at ", strong(`${Number(peak_hz.toPrecision(3))} Hz`)]),
     ...(stability === null ? [] : [`; across folds the pattern keeps its shape with a cosine of ${stability.toFixed(2)}`]),
     ...(places_changed ? [`, and it changed places in ${places_changed} of ${sheet.recipe.evidence.folds} folds`] : []), ".",

@@ -1,4 +1,5 @@
 /** Channels: where they lie, when names and side files do not say it: a file, a typed grid, a typed probe. */
+import { isMovie } from "./carriers.js";
 import { find, make } from "./kit.js";
 import { numberField, picks, select, textField } from "./fields.js";
 import { count, written } from "./numbers.js";
@@ -64,6 +65,8 @@ export function mountPositions(app, door) {
   };
   follow((state, before) => {
     if (state.summary !== before.summary) refused.hidden = true;
+    // A movie's pixels lie where they are.
+    root.hidden = isMovie(state.summary);
     if (state.recipe === before.recipe && state.sheet === before.sheet && state.summary === before.summary) return;
     const channels = (state.sheet ?? state.summary)?.channels ?? [];
     const known = channels.filter(({ position }) => position).length;

@@ -1,4 +1,5 @@
 /** Readings beside the figures. A changed reading appears only after the dials have rested, and then it is spoken once. */
+import { carriers, isMovie } from "./carriers.js";
 import { afterRest, find } from "./kit.js";
 import { count, duration } from "./numbers.js";
 import { plainText, writeSpans } from "./spans.js";
@@ -42,8 +43,8 @@ function introduce() {
   const events = Object.entries(recording.events);
   const doubt = channels.filter(({ state }) => state.state === "needs-a-look" || state.state === "unusable").map(({ name }) => name);
   const labels = events.length ? `events: ${events.slice(0, 6).map(([name, many]) => `${name} ${count(many)}`).join(", ")}${events.length > 6 ? ", …" : ""}` : "no events";
-  find("#reading-recording").textContent = `${channels.length} channels at ${Number(recording.rate_hz.toFixed(3))} Hz over ${duration(recording.duration_s)}; ${labels}.`;
-  find("#reading-channels").textContent = doubt.length ? `Of ${channels.length} channels ${doubt.length} need a look: ${doubt.slice(0, 8).join(", ")}${doubt.length > 8 ? ", …" : ""}.` : `All ${channels.length} channels can be used.`;
+  find("#reading-recording").textContent = `${carriers(summary)} at ${Number(recording.rate_hz.toFixed(3))} Hz over ${duration(recording.duration_s)}; ${labels}.`;
+  find("#reading-channels").textContent = isMovie(summary) ? `All ${carriers(summary)} can be used.` : doubt.length ? `Of ${channels.length} channels ${doubt.length} need a look: ${doubt.slice(0, 8).join(", ")}${doubt.length > 8 ? ", …" : ""}.` : `All ${channels.length} channels can be used.`;
 }
 
 function writeAll() {

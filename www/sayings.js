@@ -13,7 +13,7 @@ export function sayNoEvents(pick) {
   const strong = (/** @type {string} */ text) => make("b", {}, text);
   say("#hint", {
     title: "This recording holds no events",
-    text: ["This version compares windows around events. Drop its table of events here; the recording stays open. It is a tab-separated file with the columns ", strong("onset"), ", ", strong("duration"), " and ", strong("trial_type"), ", named as the recording and ending in ", strong("events.tsv"), ". Of any other table with a row an event you are asked which column is which."],
+    text: ["Nor does a rhythm stand out of its spectrum, so no question is proposed. Mark spans on the traces as signal and reference, or drop its table of events here; the recording stays open. A tab-separated file with the columns ", strong("onset"), ", ", strong("duration"), " and ", strong("trial_type"), " is read as it is; of any other table with a row an event you are asked which column is which."],
     ways: [{ label: "Choose the table of events…", act: pick, main: true }],
   });
 }

@@ -2,7 +2,7 @@
 import { find, makeSvg } from "./kit.js";
 import { chance, smooth } from "./curve.js";
 import { hasResults, leadingOf } from "./leading.js";
-import { clock, factor } from "./numbers.js";
+import { clock, count, factor } from "./numbers.js";
 import { follow } from "./state.js";
 
 /** @typedef {import("./types").State} State */
@@ -71,10 +71,11 @@ function settled(step, { summary, sheet, phase, recipe, stopped, taken }) {
   const waiting = { knot: "wait", answer: "" };
   if (step === "recording") {
     if (!summary) return waiting;
-    const { duration_s, warnings } = summary.recording;
-    return { knot: warnings.length ? "look" : "done", answer: `${summary.channels.length} ch, ${clock(duration_s)}` };
+    const { duration_s, warnings, layout } = summary.recording;
+    return { knot: warnings.length ? "look" : "done", answer: `${layout.kind === "frames" ? `${layout.height} × ${layout.width} px` : `${summary.channels.length} ch`}, ${clock(duration_s)}` };
   }
   if (step === "channels") {
+    if (sheet?.movie) return { knot: "done", answer: `${count(sheet.movie.used.length)} used` };
     const channels = (sheet ?? summary)?.channels;
     if (!channels) return waiting;
     const used = channels.filter(({ state }) => state.state !== "left-out" && state.state !== "unusable").length;

@@ -70,7 +70,7 @@ export interface RecordingCard {
   others: { name: string; unit: string; rate_hz: number; reason: string }[];
   events: Record<string, number>;
   event_onsets_s: Record<string, number[]>;
-  layout: { kind: "head" | "plane" | "line" | "frames" };
+  layout: { kind: "head" | "plane" | "line" } | { kind: "frames"; height: number; width: number };
   about: About;
   side_files: string[];
   warnings: string[];

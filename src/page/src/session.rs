@@ -356,7 +356,11 @@ impl Session {
     pub fn carry(&self, weights: &str, recipe: JsValue) -> Outcome<JsValue> {
         let weights = Weights::from_json(weights).map_err(thrown)?;
         let recipe: Recipe = from_js(recipe)?;
-        let carried = weights.carry(self.recording()?, &recipe).map_err(thrown)?;
+        let recording = match &self.state {
+            State::Analysing(analysis) => analysis.recorded(),
+            _ => self.recording()?,
+        };
+        let carried = weights.carry(recording, &recipe).map_err(thrown)?;
         to_js(&take::Told::of(&carried).map_err(thrown)?)
     }
 

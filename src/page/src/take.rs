@@ -93,26 +93,31 @@ impl<'a> Look<'a> {
         });
         order.truncate(6);
         order.sort_unstable();
-        let samples = analysis.prepared().map_or(&[][..], |p| &p.samples[..]);
-        let few = |all: &[Vec<f32>]| Recording {
+        let before: Vec<Vec<f32>> = (order.iter())
+            .filter_map(|c| analysis.channel(*c).map(<[f32]>::to_vec))
+            .collect();
+        let after = (order.iter())
+            .filter_map(|c| cleaned.recording.samples.get(*c).cloned())
+            .collect();
+        let few = |samples: Vec<Vec<f32>>| Recording {
             channels: order
                 .iter()
                 .map(|c| cleaned.recording.channels[*c].clone())
                 .collect(),
-            samples: order.iter().filter_map(|c| all.get(*c).cloned()).collect(),
+            samples,
             rate_hz: cleaned.recording.rate_hz,
             stretches: cleaned.recording.stretches.clone(),
             events: cleaned.recording.events.clone(),
             ..Recording::default()
         };
         let rows: Vec<usize> = (0..order.len()).collect();
-        let drawn = |all: &[Vec<f32>]| traces(&few(all), from_s, seconds, &rows);
+        let drawn = |samples| traces(&few(samples), from_s, seconds, &rows);
         Look {
             note: &cleaned.note,
             others: cleaned.others,
             shares,
-            before: drawn(samples),
-            after: drawn(&cleaned.recording.samples),
+            before: drawn(before),
+            after: drawn(after),
         }
     }
 }

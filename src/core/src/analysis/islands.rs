@@ -165,7 +165,7 @@ pub(super) fn islands(outline: &Recording, recipe: &Recipe) -> Result<Islands> {
         return Err(Problem::new(
             Kind::TooLarge,
             "this question needs all samples in the memory, and the recording is larger than it",
-            "ask about windows or marked spans, or open a time range of the recording",
+            "ask about windows or marked spans, or cut the recording into shorter files first",
         )
         .at("contrast"));
     }
@@ -269,7 +269,7 @@ fn afford(islands: &Islands, outline: &Recording) -> Result<()> {
     Err(Problem::new(
         Kind::TooLarge,
         "the parts of the recording that the windows need do not fit into the memory",
-        "use fewer or shorter windows, leave channels out, or open a time range of it",
+        "use fewer events, shorter windows or fewer channels, or cut the recording into shorter files first",
     )
     .at(format!("{channels} channels around the windows"))
     .expected_found(

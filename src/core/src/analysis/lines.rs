@@ -103,17 +103,18 @@ impl Lines {
     /// The prepared channels, once there are any.
     pub fn prepared(analysis: &Analysis) -> Option<Track> {
         let prepared = analysis.work.prepared.as_ref()?;
-        let line = |(name, samples): (&String, &Vec<f32>)| Line {
-            name: name.clone(),
-            unit: prepared.unit.clone(),
-            swing: swing(samples, prepared.rate_hz),
+        let line = |(at, name): (usize, &String)| {
+            analysis.channel(at).map(|samples| Line {
+                name: name.clone(),
+                unit: prepared.unit.clone(),
+                swing: swing(samples, prepared.rate_hz),
+            })
         };
         Some(Track {
             rate_hz: prepared.rate_hz,
             stretches: prepared.stretches.clone(),
-            lines: (prepared.channels.iter())
-                .zip(&prepared.samples)
-                .map(line)
+            lines: (prepared.channels.iter().enumerate())
+                .filter_map(line)
                 .collect(),
         })
     }
@@ -127,14 +128,14 @@ impl Lines {
             .map(named("stronger"))
             .chain((0..sheet.weaker.len()).map(named("weaker")));
         let lines: Vec<Line> = names
-            .zip(filters(analysis))
+            .zip(analysis.work.inner_filters())
             .map(|(name, filter)| Line {
                 name,
                 unit: String::new(),
                 swing: swing_of(
                     prepared.samples.first().map_or(0, Vec::len),
                     prepared.rate_hz,
-                    |from, to| projected(prepared, filter, from, to),
+                    |from, to| projected(prepared, &filter, from, to),
                 ),
             })
             .collect();
@@ -176,18 +177,17 @@ impl Lines {
         first: usize,
         count: usize,
     ) -> Vec<f32> {
-        let empty = Vec::new();
-        let samples = (analysis.work.prepared.as_ref()).map_or(&empty, |p| &p.samples);
+        let channels = (analysis.work.prepared.as_ref()).map_or(0, |p| p.channels.len());
         let recipe = analysis.recipe();
         let made_with = (recipe.channels.clone(), recipe.filter.clone());
-        if self.preparation.as_ref() != Some(&made_with) || self.prepared.len() != samples.len() {
+        if self.preparation.as_ref() != Some(&made_with) || self.prepared.len() != channels {
             self.prepared.clear();
             self.preparation = Some(made_with);
         }
-        self.prepared.resize(samples.len(), None);
+        self.prepared.resize(channels, None);
         let mut out = Vec::with_capacity(2 * count * which.len());
         for &at in which {
-            let bins = match (samples.get(at), self.prepared.get_mut(at)) {
+            let bins = match (analysis.channel(at), self.prepared.get_mut(at)) {
                 (Some(samples), Some(kept)) => bins(samples, kept, size, first, count),
                 _ => Vec::new(),
             };
@@ -206,8 +206,9 @@ impl Lines {
         count: usize,
     ) -> Vec<f32> {
         let mut out = Vec::with_capacity(2 * count * which.len());
-        let all: Vec<&Vec<f64>> = filters(analysis).collect();
-        self.components.retain(|(filter, _)| all.contains(&filter));
+        let all: Vec<_> = analysis.work.inner_filters().collect();
+        self.components
+            .retain(|(filter, _)| all.iter().any(|one| one[..] == filter[..]));
         for &at in which {
             let bins = match (&analysis.work.prepared, all.get(at)) {
                 (Some(prepared), Some(filter)) => {
@@ -244,11 +245,6 @@ impl Lines {
             .map(|level| part(level, first, count).to_vec())
             .unwrap_or_default()
     }
-}
-
-fn filters(analysis: &Analysis) -> impl Iterator<Item = &Vec<f64>> {
-    let sheet = analysis.sheet();
-    (sheet.stronger.iter().chain(&sheet.weaker)).map(|c| &c.filter)
 }
 
 fn append(out: &mut Vec<f32>, bins: &[Ends], count: usize) {

@@ -277,6 +277,11 @@ impl Analysis {
         self.viewed.as_ref().unwrap_or(&self.recording)
     }
 
+    /// The recording as it was opened: of a movie, every pixel.
+    pub fn recorded(&self) -> &Recording {
+        &self.recording
+    }
+
     /// Gives the recording back, to be analysed with something else.
     pub fn into_recording(self) -> Recording {
         self.recording
@@ -290,6 +295,25 @@ impl Analysis {
     /// The prepared channels, once they are there.
     pub fn prepared(&self) -> Option<&crate::prepare::Prepared> {
         self.work.prepared.as_ref()
+    }
+
+    /// Samples of prepared channel `index` (in the order of [`Prepared::channels`](crate::prepare::Prepared::channels)), once they are
+    /// there; where there are so many channels that `prepared` holds the samples of a basis, those of the channel all the same.
+    pub fn channel(&self, index: usize) -> Option<&[f32]> {
+        self.work.channel(self.recording(), index)
+    }
+
+    /// Part of the time course of one component (stronger first, then weaker), over prepared samples.
+    pub fn series_of(&self, component: usize, range: std::ops::Range<usize>) -> Option<Vec<f64>> {
+        let prepared = self.work.prepared.as_ref()?;
+        let filter = self.work.inner_filters().nth(component)?;
+        let mut out = vec![0.0; range.len()];
+        for (weight, channel) in filter.iter().zip(&prepared.samples) {
+            for (y, x) in out.iter_mut().zip(channel.get(range.clone())?) {
+                *y += weight * f64::from(*x);
+            }
+        }
+        Some(out)
     }
 
     /// Time courses of the reported components over the whole recording, once there are any; never where the samples stay in the file.

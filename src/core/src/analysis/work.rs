@@ -667,6 +667,32 @@ impl Work {
         Ok(progress(Stage::Windows, done, of, false))
     }
 
+    /// Samples of prepared channel `index`, also where a basis stands in for the channels.
+    pub(super) fn channel<'a>(
+        &'a self,
+        recording: &'a Recording,
+        index: usize,
+    ) -> Option<&'a [f32]> {
+        let prepared = self.prepared.as_ref()?;
+        match self.basis.is_some() {
+            false if index < prepared.channels.len() => Some(prepared.of_channel(recording, index)),
+            false => None,
+            true => match self.pixels.get(index) {
+                Some(samples) if !samples.is_empty() => Some(samples),
+                _ => {
+                    let at = *prepared.mixing.channels.get(index)?;
+                    recording.samples.get(at).map(Vec::as_slice)
+                }
+            },
+        }
+    }
+
+    /// The components' filters for the samples that `prepared` holds.
+    pub(super) fn inner_filters(&self) -> impl Iterator<Item = Cow<'_, [f64]>> {
+        let components = self.sheet.stronger.iter().chain(&self.sheet.weaker);
+        components.map(|c| inner(&self.basis, &c.filter))
+    }
+
     /// Puts the channels' own samples back.
     fn leave_basis(&mut self) {
         self.finding = None;

@@ -489,6 +489,6 @@ fn no_room() -> Problem {
     Problem::new(
         Kind::TooLarge,
         "the parts of the recording that the windows need do not fit into the memory",
-        "use fewer or shorter windows, leave channels out, or open a time range of it",
+        "use fewer events, shorter windows or fewer channels, or cut the recording into shorter files first",
     )
 }

@@ -8,7 +8,8 @@ use super::weights::{Weights, same};
 use crate::analysis::Series;
 use crate::error::{Kind, Problem, Result};
 use crate::prepare::Preparing;
-use crate::recipe::{Contrast, EventWindow, Recipe};
+use crate::prepare::movie::Viewing;
+use crate::recipe::{Contrast, EventWindow, Movie, Recipe};
 use crate::recording::{Channel, Recording};
 use crate::sheet::{ChannelCard, ChannelState};
 
@@ -25,8 +26,18 @@ impl Weights {
     /// The components' time courses in `recording`. Channels are matched by name, in any order (the second of a name with the second); more channels are fine, a
     /// missing one is an error, so is a unit of another kind. Another unit of the same kind is converted. A recording sampled
     /// faster is resampled after the filters, one sampled slower is refused, because it lacks what the weights were fitted to.
+    ///
+    /// A movie is given as recorded: where the weights were fitted to bins or to changes against a baseline, the same are made of it first.
+    /// Weights for bins or baselines are refused on what is no movie.
     pub fn apply(&self, recording: &Recording) -> Result<Applied> {
+        let made = self.viewed(recording)?;
+        let recording = made.as_ref().unwrap_or(recording);
         let mut notes = Vec::new();
+        if made.is_some() {
+            notes.push(
+                "The movie was binned and set against its baseline as the weights say.".into(),
+            );
+        }
         let filter = self.filter_for(recording, &mut notes)?;
         let gains = self.gains(recording, &mut notes)?;
         let count = recording.sample_count();
@@ -53,6 +64,23 @@ impl Weights {
         }
         let series = self.filtered(recording, halves, filter)?;
         Ok(Applied { series, notes })
+    }
+
+    /// The movie with the weights' bins and baseline; all its bins, since the filters say by name which they use.
+    fn viewed(&self, recording: &Recording) -> Result<Option<Recording>> {
+        let movie = Movie {
+            mask: None,
+            ..self.preparation.movie.clone()
+        };
+        let Some(mut viewing) =
+            Viewing::new(recording, &movie).map_err(|p| p.in_file(&recording.name))?
+        else {
+            return Ok(None);
+        };
+        while !viewing.finished() {
+            viewing.step(recording)?;
+        }
+        Ok(Some(viewing.finish(recording).0))
     }
 
     /// Index in the recording and factor of unit of every channel.

@@ -86,7 +86,7 @@ pub fn clean(analysis: &Analysis, chosen: &[String], how: Cleaning) -> Result<Cl
     };
     let at = places(&series, chosen)?;
     let patterns = joint_patterns(sheet, &at)?;
-    let mut samples = Vec::with_capacity(prepared.samples.len());
+    let mut samples = Vec::with_capacity(prepared.channels.len());
     let mut shares = Shares {
         channels: prepared.channels.clone(),
         before: Vec::new(),
@@ -95,7 +95,8 @@ pub fn clean(analysis: &Analysis, chosen: &[String], how: Cleaning) -> Result<Cl
         unit: prepared.unit.clone(),
     };
     let mut part = Vec::new();
-    for (c, channel) in prepared.samples.iter().enumerate() {
+    for c in 0..prepared.channels.len() {
+        let channel = analysis.channel(c).unwrap_or(&[]);
         part.clear();
         part.resize(channel.len(), 0.0_f64);
         for (k, i) in at.iter().enumerate() {

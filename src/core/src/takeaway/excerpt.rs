@@ -29,13 +29,14 @@ pub fn excerpt(
     let (range, onset_s) = range(&whole, from_s, seconds)?;
     let mut samples: Vec<Vec<f32>> = order
         .iter()
-        .map(|c| prepared.samples[*c][range.clone()].to_vec())
+        .map(|c| {
+            let samples = analysis.channel(*c).and_then(|all| all.get(range.clone()));
+            samples.map_or_else(|| vec![f32::NAN; range.len()], <[f32]>::to_vec)
+        })
         .collect();
-    let series = range.clone().map(|k| {
-        let pairs = found.filter.iter().zip(&prepared.samples);
-        pairs.map(|(w, x)| w * f64::from(x[k])).sum::<f64>() as f32
-    });
-    samples.push(series.collect());
+    let at = all.iter().position(|(name, _)| name == component)?;
+    let series = analysis.series_of(at, range.clone())?;
+    samples.push(series.into_iter().map(|y| y as f32).collect());
     let unit = |name: &String| {
         let card = from.channels.iter().find(|c| c.name == *name);
         card.map_or_else(|| prepared.unit.clone(), |c| c.unit.clone())

@@ -91,6 +91,9 @@ fn kinds(card: &RecordingCard, channels: &[ChannelCard]) -> String {
         *counts.entry(kind).or_default() += 1;
     }
     let total = channels.len();
+    if let Layout::Frames { height, width, .. } = &card.layout {
+        return format!("{total}: one for each of {height} × {width} pixels");
+    }
     if card.about.kinds.is_empty() {
         return total.to_string();
     }
@@ -125,6 +128,9 @@ fn units(channels: &[ChannelCard]) -> String {
 
 /// "32 of 32, by name (10–05 system)".
 fn positions(card: &RecordingCard, channels: &[ChannelCard]) -> String {
+    if let Layout::Frames { .. } = card.layout {
+        return "by row and column of the picture".into();
+    }
     let known = channels.iter().filter(|c| c.position.is_some()).count();
     if known == 0 {
         return format!(
@@ -135,7 +141,6 @@ fn positions(card: &RecordingCard, channels: &[ChannelCard]) -> String {
     let from = match (&card.about.positions, &card.layout) {
         (Some(file), _) => format!("from {file}"),
         (None, Layout::Head) => "by name (10–05 system)".to_owned(),
-        (None, Layout::Frames { .. }) => "by pixel".to_owned(),
         (None, _) => "as told".to_owned(),
     };
     let lie = match card.layout {

@@ -2,10 +2,10 @@
 use super::kinds;
 use super::words::{self, NB};
 use crate::recipe::{
-    BipolarReference, Keep, KeepWord, Measure, Pairs, PairsWord, Reference, ReferenceWord, Shrink,
-    ShrinkWord,
+    BipolarReference, Keep, KeepWord, Mask, Measure, Pairs, PairsWord, Reference, ReferenceWord,
+    Shrink, ShrinkWord,
 };
-use crate::sheet::{ChannelState, Component, Sheet, SideCard};
+use crate::sheet::{ChannelState, Component, MovieCard, Sheet, SideCard};
 
 /// A source: how the text cites it, and its entry in the list.
 struct Work {
@@ -13,7 +13,7 @@ struct Work {
     entry: &'static str,
 }
 
-const WORKS: [Work; 16] = [
+const WORKS: [Work; 17] = [
     Work {
         cited: "Arsigny et al., 2006",
         entry: "Arsigny, V., Fillard, P., Pennec, X. & Ayache, N. (2006). Log-Euclidean metrics for fast and simple calculus on diffusion tensors. Magnetic Resonance in Medicine 56, 411–421.",
@@ -41,6 +41,10 @@ const WORKS: [Work; 16] = [
     Work {
         cited: "Fukunaga, 1990",
         entry: "Fukunaga, K. (1990). Introduction to Statistical Pattern Recognition, 2nd edition. Academic Press.",
+    },
+    Work {
+        cited: "Halko et al., 2011",
+        entry: "Halko, N., Martinsson, P.-G. & Tropp, J. A. (2011). Finding structure with randomness: probabilistic algorithms for constructing approximate matrix decompositions. SIAM Review 53, 217–288.",
     },
     Work {
         cited: "Haufe et al., 2014",
@@ -145,6 +149,9 @@ fn channels(sheet: &Sheet) -> Option<String> {
     if all == 0 {
         return None;
     }
+    if let Some(card) = &sheet.movie {
+        return Some(movie(sheet, card));
+    }
     let of = |pick: fn(&ChannelState) -> bool| -> Vec<String> {
         sheet
             .channels
@@ -202,6 +209,50 @@ fn channels(sheet: &Sheet) -> Option<String> {
         }
     });
     Some(text)
+}
+
+/// What became of a movie's pixels before they were channels, in the order in which it was done.
+fn movie(sheet: &Sheet, card: &MovieCard) -> String {
+    let mut text = format!(
+        "The movie of {} × {} pixels at {} was analysed",
+        card.height,
+        card.width,
+        words::hertz(sheet.recording.rate_hz)
+    );
+    let side = words::side(card);
+    let all = card.rows as usize * card.columns as usize;
+    let what = words::carrier(sheet, all);
+    text.push_str(&match side {
+        1 => format!(", one channel a pixel ({} in all", words::grouped(all)),
+        _ => format!(
+            " after averaging over bins of {side} × {side} pixels ({} in all",
+            words::grouped(all)
+        ),
+    });
+    let used = words::grouped(card.used.len());
+    let mask = match &sheet.recipe.movie.mask {
+        None => String::new(),
+        Some(Mask::Quantile(q)) => format!(
+            "; the {used} {what} whose mean exceeded the {} quantile of the mean picture were used",
+            words::as_chosen(q.quantile)
+        ),
+        Some(Mask::Above(a)) => format!(
+            "; the {used} {what} whose mean exceeded {} were used",
+            words::as_chosen(a.above)
+        ),
+        Some(Mask::Painted(_)) => {
+            format!("; {used} {what} were chosen by hand on the mean picture")
+        }
+    };
+    text.push_str(&format!("{mask})."));
+    if let Some(dff) = sheet.recipe.movie.dff {
+        text.push_str(&format!(
+            " Each was expressed as its change relative to a running baseline, (F{NB}−{NB}F₀)/F₀, with F₀ the {}th percentile of a window of {} centred on each frame.",
+            words::as_chosen(dff.percentile),
+            words::seconds(dff.window_s)
+        ));
+    }
+    text
 }
 
 fn filters(sheet: &Sheet) -> Option<String> {
@@ -291,6 +342,24 @@ fn count(n: usize, single: &str, many: &str) -> String {
     format!("{} {}", words::grouped(n), words::one(n, single, many))
 }
 
+/// "the channels were first projected onto …; " where there are too many for a covariance matrix.
+fn basis(sheet: &Sheet) -> String {
+    let Some(card) = sheet.compression.as_ref().and_then(|c| c.basis.as_ref()) else {
+        return String::new();
+    };
+    let how = if card.exact {
+        "an orthonormal basis of {} dimensions from the eigenvectors of the Gram matrix of the samples in the windows"
+    } else {
+        "an orthonormal basis of {} dimensions found by a randomised range finder with power iterations (Halko et al., 2011)"
+    };
+    format!(
+        "the {} were first projected onto {} ({} of their variance lies outside); ",
+        words::carrier(sheet, 2),
+        how.replace("{}", &card.dimensions.to_string()),
+        words::percent(card.left_out)
+    )
+}
+
 fn compression(sheet: &Sheet) -> Option<String> {
     let card = sheet.compression.as_ref()?;
     let choice = match sheet.recipe.keep {
@@ -307,7 +376,13 @@ fn compression(sheet: &Sheet) -> Option<String> {
         Keep::Word(_) => "",
     };
     Some(format!(
-        "Each window’s covariance was taken about the window’s own channel means; the channels (rank {}) were compressed to {} dimensions ({} of the variance; {choice}) by the leading principal components of the covariance pooled over both sides, that is without use of the labels.{caveat}",
+        "Each window’s covariance was taken about the window’s own {} means; {}the {} (rank {}) were compressed to {} dimensions ({} of the variance; {choice}) by the leading principal components of the covariance pooled over both sides, that is without use of the labels.{caveat}",
+        words::carrier(sheet, 1),
+        basis(sheet),
+        match &card.basis {
+            Some(_) => "dimensions of this basis",
+            None => words::carrier(sheet, 2),
+        },
         card.rank,
         card.kept,
         words::percent(card.share)

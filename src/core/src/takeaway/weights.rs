@@ -12,7 +12,7 @@ use super::results::{ChannelPart, MADE, Made};
 use super::series::matrix_npy;
 use super::strict::{self, Shape};
 use crate::error::{Kind, Problem, Result};
-use crate::recipe::{Channels, Filter, Measure};
+use crate::recipe::{Channels, Filter, Measure, Movie};
 use crate::sheet::{Component, Sheet};
 use serde::{Deserialize, Serialize};
 
@@ -64,6 +64,9 @@ pub struct Preparation {
     /// As in the recipe.
     #[serde(default)]
     pub filter: Filter,
+    /// As in the recipe: how a movie's pixels became the channels of the filters.
+    #[serde(default)]
+    pub movie: Movie,
 }
 
 /// Who wrote [`Weights`].
@@ -94,6 +97,7 @@ const WEIGHTS: Shape = Shape::Object(&[
         Shape::Object(&[
             ("channels", false, super::recipe_file::CHANNELS),
             ("filter", false, super::recipe_file::FILTER),
+            ("movie", false, super::recipe_file::MOVIE),
         ]),
     ),
     ("names", false, Shape::List(&Shape::Text)),
@@ -220,6 +224,12 @@ struct Written<'a> {
 struct PreparationWritten<'a> {
     channels: &'a Channels,
     filter: &'a Filter,
+    #[serde(skip_serializing_if = "plain")]
+    movie: &'a Movie,
+}
+
+fn plain(movie: &&Movie) -> bool {
+    movie.is_plain()
 }
 
 /// Components in the take-away's order with their names.
@@ -312,6 +322,7 @@ pub fn weights_json(sheet: &Sheet) -> Result<String> {
         preparation: PreparationWritten {
             channels: &sheet.recipe.channels,
             filter: &sheet.recipe.filter,
+            movie: &sheet.recipe.movie,
         },
         names: components.iter().map(|(name, _)| name.clone()).collect(),
         filters: (0..components.len()).map(column).collect(),

@@ -3,6 +3,7 @@
 //! # Signs
 //! Minus is U+2212, ranges take an en dash, a factor U+00D7, and a number keeps its unit by a no-break space.
 use crate::recipe::{Contrast, EventWindow};
+use crate::sheet::{MovieCard, Sheet};
 
 /// No-break space.
 pub(super) const NB: char = '\u{a0}';
@@ -36,6 +37,35 @@ pub(super) fn name(text: &str) -> String {
     } else {
         short
     }
+}
+
+/// A channel's place in a sentence: its name, and of a movie's pixel `row 12, column 40`.
+pub(super) fn place(sheet: &Sheet, channel: &str) -> String {
+    let pixel = || {
+        let (row, column) = channel.strip_prefix('r')?.split_once('c')?;
+        let number = |text: &str| text.parse::<u32>().ok();
+        Some(format!(
+            "row{NB}{}, column{NB}{}",
+            number(row)?,
+            number(column)?
+        ))
+    };
+    let pixel = sheet.movie.as_ref().and_then(|_| pixel());
+    pixel.unwrap_or_else(|| name(channel))
+}
+
+/// What carries the samples: channels, the pixels of a movie, or its bins.
+pub(super) fn carrier(sheet: &Sheet, count: usize) -> &'static str {
+    match &sheet.movie {
+        None => one(count, "channel", "channels"),
+        Some(card) if side(card) > 1 => one(count, "bin", "bins"),
+        Some(_) => one(count, "pixel", "pixels"),
+    }
+}
+
+/// Pixels along a side of a movie's bins.
+pub(super) fn side(card: &MovieCard) -> u32 {
+    card.width.checked_div(card.columns).unwrap_or(1).max(1)
 }
 
 fn minus(text: String) -> String {

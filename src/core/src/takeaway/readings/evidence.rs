@@ -78,15 +78,20 @@ fn beside(sheet: &Sheet) -> Line {
     let channel = of(sheet, ComparatorKind::BestChannel);
     match (best, channel) {
         (Some(b), Some(c)) => Line::new(format!(
-            "; the best principal component {} and the best single channel {}",
+            "; the best principal component {} and the best single {} {}",
             words::factor(b),
+            words::carrier(sheet, 1),
             words::factor(c)
         )),
         (Some(b), None) => Line::new(format!(
             "; the best principal component {}",
             words::factor(b)
         )),
-        (None, Some(c)) => Line::new(format!("; the best single channel {}", words::factor(c))),
+        (None, Some(c)) => Line::new(format!(
+            "; the best single {} {}",
+            words::carrier(sheet, 1),
+            words::factor(c)
+        )),
         (None, None) => Line::default(),
     }
 }
@@ -134,8 +139,9 @@ pub(in crate::takeaway) fn as_good(test: &Permutation, p: f64) -> usize {
 
 fn evidence_doubt(sheet: &Sheet, told: &Lead, held: f64) -> Option<Line> {
     let name = told.name();
+    let single = format!("the best single {}", words::carrier(sheet, 1));
     let rivals = [
-        (ComparatorKind::BestChannel, "the best single channel"),
+        (ComparatorKind::BestChannel, single.as_str()),
         (ComparatorKind::BestPc, "the best principal component"),
         (ComparatorKind::FirstPc, "the first principal component"),
     ];

@@ -160,9 +160,12 @@ fn components_doubt(sheet: &Sheet) -> Option<Line> {
         }
     }
     changed(sheet).or_else(|| wide(sheet)).or_else(|| {
-        Some(Line::new(
-            "a pattern shows how a component looks at the channels, not where it arises.",
-        ))
+        Some(Line::new(match &sheet.movie {
+            Some(_) => {
+                "a pattern shows where a component is seen in the picture, not what made it."
+            }
+            None => "a pattern shows how a component looks at the channels, not where it arises.",
+        }))
     })
 }
 
@@ -240,8 +243,9 @@ pub(super) fn take_away(sheet: &Sheet) -> Option<Said> {
     let text = Line::default()
         .strong(words::count(count))
         .then(format!(" {} for ", words::one(count, "filter", "filters")))
-        .strong(channels.to_string())
-        .then(" channels. Recipe and recording together give these numbers again, to the last digit, here or from the terminal.");
+        .strong(words::grouped(channels))
+        .then(format!(" {}", words::carrier(sheet, channels)))
+        .then(". Recipe and recording together give these numbers again, to the last digit, here or from the terminal.");
     let text = Line(
         text.0
             .into_iter()
@@ -254,8 +258,13 @@ pub(super) fn take_away(sheet: &Sheet) -> Option<Said> {
             })
             .collect(),
     );
-    let but = Line::new(
-        "the filters suit this montage and this preparation; on another recording Teasel checks both before it applies them.",
-    );
+    let but = Line::new(match &sheet.movie {
+        Some(_) => {
+            "the filters suit this field of view and this preparation; in another movie Teasel makes the same bins and baseline, and cannot see a shift of the picture."
+        }
+        None => {
+            "the filters suit this montage and this preparation; on another recording Teasel checks both before it applies them."
+        }
+    });
     Some((text, Some(but)))
 }

@@ -2,6 +2,7 @@
 use super::judge;
 use super::{Line, Said, words};
 use crate::recipe::{Contrast, Keep, KeepWord, Measure};
+use crate::recording::Layout;
 use crate::sheet::{ChannelCard, ChannelState, End, Sheet, SideCard, WindowsCard};
 use crate::takeaway::kinds;
 
@@ -13,10 +14,10 @@ pub(super) fn recording(sheet: &Sheet) -> Said {
     let card = &sheet.recording;
     let count = sheet.channels.len();
     let text = Line::default()
-        .strong(format!(
-            "{count} {}",
-            words::one(count, "channel", "channels")
-        ))
+        .strong(match &sheet.movie {
+            Some(movie) => format!("{} × {} pixels", movie.height, movie.width),
+            None => format!("{} {}", words::grouped(count), words::carrier(sheet, count)),
+        })
         .then(" at ")
         .strong(words::hertz(card.rate_hz))
         .then(" for ")
@@ -84,7 +85,7 @@ fn recording_doubt(sheet: &Sheet) -> Option<Line> {
     }
     if card.events.is_empty() {
         return said(
-            "without events there are no windows to mark; a table of events beside the recording would give them.",
+            "it marks no events: a rhythm, slow changes or marked spans can be asked about, and a table of events would add windows.",
         );
     }
     if let Some(first) = card.others.first() {
@@ -110,14 +111,27 @@ fn recording_doubt(sheet: &Sheet) -> Option<Line> {
     if median > 0.0 && peak / median >= 2.0 {
         let time = (at as f64 + 0.5) / card.envelope.len() as f64 * card.duration_s;
         return said(format!(
-            "near {} it grows to {} its usual size: look there for a blink, a movement or a loose contact.",
+            "near {} it grows to {} its usual size: look there for {}.",
             words::clock(time),
-            words::times(peak / median)
+            words::times(peak / median),
+            match &card.layout {
+                Layout::Head => "a blink, a movement or a loose contact",
+                Layout::Frames { .. } => "a flicker of the lamp, a movement or a change of focus",
+                _ => "a movement, a loose contact or a discharge",
+            }
         ));
     }
-    said(
-        "what is largest in it need not be what differs: blinks, muscle and mains are often the largest.",
-    )
+    said(match &card.layout {
+        Layout::Head => {
+            "what is largest in it need not be what differs: blinks, muscle and mains are often the largest."
+        }
+        Layout::Frames { .. } => {
+            "what is largest in it need not be what differs: bleaching, flicker and motion are often the largest."
+        }
+        _ => {
+            "what is largest in it need not be what differs: movement, mains and one loud contact are often the largest."
+        }
+    })
 }
 
 /// A sentence to go on after "But": its first letter small, unless a name or a unit begins it.
@@ -170,14 +184,25 @@ pub(super) fn channels(sheet: &Sheet) -> Option<Said> {
             .iter()
             .filter(|c| c.state == ChannelState::Interpolated),
     );
-    let used = all - out.len() - unusable;
+    let mut used = all - out.len() - unusable;
+    // A movie's pixels outside the mask are no channels at all.
+    let all = match &sheet.movie {
+        Some(movie) => {
+            let pixels = movie.rows as usize * movie.columns as usize;
+            used = used.min(pixels);
+            pixels
+        }
+        None => all,
+    };
     let mut text = Line::default()
         .strong(if used == all {
-            format!("All {all}")
+            format!("All {}", words::grouped(all))
         } else {
-            format!("{used} of {all}")
+            format!("{} of {}", words::grouped(used), words::grouped(all))
         })
-        .then(" channels are used");
+        .then(format!(" {}", words::carrier(sheet, all)))
+        .then(binned(sheet))
+        .then(" are used");
     if !out.is_empty() {
         text = text.then(format!("; left out: {}", some(&out)));
     }
@@ -192,6 +217,15 @@ pub(super) fn channels(sheet: &Sheet) -> Option<Said> {
     }
     text = text.then(".").join(spread(sheet)).join(mains(sheet));
     Some((text, channels_doubt(sheet)))
+}
+
+/// " of 2 × 2 pixels".
+fn binned(sheet: &Sheet) -> String {
+    let side = sheet.movie.as_ref().map_or(1, words::side);
+    match side {
+        1 => String::new(),
+        side => format!(" of {side} × {side} pixels"),
+    }
 }
 
 /// The channel that varies most, where it stands out.
@@ -211,7 +245,7 @@ fn spread(sheet: &Sheet) -> Line {
         .max_by(|a, b| a.1.total_cmp(&b.1));
     match widest {
         Some((channel, sd)) if median > 0.0 && sd / median >= 2.0 => Line::new(" ")
-            .then(words::name(&channel.name))
+            .then(words::capital(&words::place(sheet, &channel.name)))
             .then(" varies most, ")
             .strong(words::times(sd / median))
             .then(" the median spread."),
@@ -230,7 +264,7 @@ fn mains(sheet: &Sheet) -> Line {
         Some((channel, (db, hz))) if db >= 6.0 => Line::new(format!(
             " Mains at {} is strongest in {}, ",
             words::hertz(hz),
-            words::name(&channel.name)
+            words::place(sheet, &channel.name)
         ))
         .strong(format!("{}{}dB", words::fixed(db, 0), words::NB))
         .then(" above its surroundings."),
@@ -239,8 +273,8 @@ fn mains(sheet: &Sheet) -> Line {
 }
 
 /// "F8 is the same as F4", "T7 is left out (constant)".
-fn doubt_of(channel: &ChannelCard) -> Option<String> {
-    let name = words::name(&channel.name);
+fn doubt_of(sheet: &Sheet, channel: &ChannelCard) -> Option<String> {
+    let name = words::place(sheet, &channel.name);
     match &channel.state {
         ChannelState::Unusable(why) => {
             Some(format!("{name} is left out ({})", words::plain(why, 60)))
@@ -256,7 +290,9 @@ fn doubt_of(channel: &ChannelCard) -> Option<String> {
 }
 
 fn channels_doubt(sheet: &Sheet) -> Option<Line> {
-    let doubts: Vec<String> = sheet.channels.iter().filter_map(doubt_of).collect();
+    let doubts: Vec<String> = (sheet.channels.iter())
+        .filter_map(|channel| doubt_of(sheet, channel))
+        .collect();
     if !doubts.is_empty() {
         return said(format!("{}.", some(&doubts)));
     }
@@ -276,14 +312,23 @@ fn channels_doubt(sheet: &Sheet) -> Option<Line> {
         return said(if stopped {
             format!(
                 "{} stays in although its mains is strong: a poor contact also spoils its neighbours once a common reference is formed.",
-                words::name(&channel.name)
+                words::place(sheet, &channel.name)
             )
         } else {
             format!(
                 "no filter stops {}, and {} carries much of it: a notch there, or a low-pass below it, would.",
                 words::hertz(hz),
-                words::name(&channel.name)
+                words::place(sheet, &channel.name)
             )
+        });
+    }
+    if let Some(movie) = &sheet.movie {
+        return said(if sheet.recipe.movie.dff.is_some() {
+            "a running baseline also follows slow changes: what lasts as long as its window is divided away."
+        } else if words::side(movie) > 1 {
+            "a bin is the mean of its pixels: what is smaller than a bin is diluted."
+        } else {
+            "light scatters into neighbouring pixels, so a pattern looks smoother than what made it."
         });
     }
     let placed = sheet
@@ -300,7 +345,20 @@ fn channels_doubt(sheet: &Sheet) -> Option<Line> {
             words::one(sheet.channels.len() - placed, "it", "them")
         ));
     }
-    said("places come from the channels' names, not from this head; maps are a guide to the eye.")
+    let told =
+        sheet.recording.about.positions.is_some() || sheet.recipe.channels.positions.is_some();
+    said(match (&sheet.recording.layout, told) {
+        (Layout::Head, false) => {
+            "places come from the channels' names, not from this head; maps are a guide to the eye."
+        }
+        (Layout::Head, true) => {
+            "between the electrodes a map is interpolated: a guide to the eye, not a measurement."
+        }
+        (Layout::Line, _) => {
+            "the contacts' spacing is as it was told; what lies beside the shaft is not seen."
+        }
+        _ => "the contacts' places are as they were told; between them nothing was measured.",
+    })
 }
 
 /// Reasons for dropped windows, as the cards name them, in words.
@@ -431,7 +489,11 @@ fn rises(sheet: &Sheet) -> Line {
         words::capital(lead.name())
     ))
     .strong(format!("{with} of {}", trials.len()))
-    .then(" trials.")
+    .then(match sheet.recipe.contrast {
+        Contrast::Band { .. } | Contrast::Slow { .. } => " segments.",
+        Contrast::Spans { .. } => " pieces.",
+        _ => " trials.",
+    })
 }
 
 /// What became of the windows that are not used.
@@ -519,9 +581,10 @@ fn windows_doubt(sheet: &Sheet) -> Option<Line> {
     }
     let shortest = card.signal.seconds.min(card.reference.seconds);
     said(format!(
-        "in {} rhythms closer together than {} run into one another.",
+        "in {} rhythms closer together than {}{}Hz run into one another.",
         words::seconds(shortest),
-        words::hertz(1.0 / shortest)
+        words::trimmed(1.0 / shortest, 2),
+        words::NB
     ))
 }
 
@@ -624,8 +687,15 @@ fn compression_doubt(sheet: &Sheet) -> Option<Line> {
     let prepared = sheet.preparation.as_ref().map_or(0, |p| p.channels.len());
     if card.rank < prepared && sheet.curve.is_none() {
         return said(format!(
-            "the rank is {} for {prepared} channels: a common reference, an interpolated or a repeated channel takes a dimension away.",
-            card.rank
+            "the rank is {} for {} {}: {}.",
+            card.rank,
+            words::grouped(prepared),
+            words::carrier(sheet, prepared),
+            match &card.basis {
+                Some(_) => "so many are first put into a basis of fewer dimensions",
+                None =>
+                    "a common reference, an interpolated or a repeated channel takes a dimension away",
+            }
         ));
     }
     let best = sheet.recipe.keep == Keep::Word(KeepWord::Best);

@@ -102,11 +102,14 @@ fn fitted(sheet: &Sheet) -> Said {
 /// The leading component in words.
 fn lead(sheet: &Sheet) -> Option<(Line, &Component)> {
     let lead = judge::lead(sheet)?;
-    Some((describe("a component", lead.component), lead.component))
+    Some((
+        describe(sheet, "a component", lead.component),
+        lead.component,
+    ))
 }
 
 /// "a component peaking at **21 Hz**, largest at CP1,".
-fn describe(what: &str, component: &Component) -> Line {
+fn describe(sheet: &Sheet, what: &str, component: &Component) -> Line {
     let line = Line::new(what);
     let line = match component.peak_hz {
         Some(hz) => line.then(" peaking at ").strong(words::hertz(hz)).then(","),
@@ -114,7 +117,7 @@ fn describe(what: &str, component: &Component) -> Line {
     };
     line.then(format!(
         " largest at {}",
-        words::name(&component.largest_at)
+        words::place(sheet, &component.largest_at)
     ))
     .then(",")
 }
@@ -147,9 +150,9 @@ fn finding(sheet: &Sheet, missing: Option<&str>) -> Said {
     }
     for (at, (lead, ratio)) in shown.iter().enumerate() {
         let what = if at == 0 {
-            describe("a component", lead.component)
+            describe(sheet, "a component", lead.component)
         } else {
-            second(lead.component)
+            second(sheet, lead.component)
         };
         let (verb, tone) = match (lead.stronger, *ratio < 1.0) {
             (true, _) => (" has ", Tone::Signal),
@@ -194,14 +197,14 @@ fn nothing_leads(sheet: &Sheet, start: Line, missing: Option<&str>) -> Said {
 }
 
 /// "one at **10.5 Hz**, largest at Oz,".
-fn second(component: &Component) -> Line {
+fn second(sheet: &Sheet, component: &Component) -> Line {
     let line = match component.peak_hz {
         Some(hz) => Line::new("one at ").strong(words::hertz(hz)).then(","),
         None => Line::new("another,"),
     };
     line.then(format!(
         " largest at {},",
-        words::name(&component.largest_at)
+        words::place(sheet, &component.largest_at)
     ))
 }
 
@@ -341,7 +344,7 @@ fn tested(sheet: &Sheet) -> Said {
     if let Some(component) = passing {
         let text = opening(sheet)
             .then(", ")
-            .join(describe("a component", component))
+            .join(describe(sheet, "a component", component))
             .then(" passes (p = ")
             .strong(component.p.map_or(String::new(), words::p_value))
             .then("), though it does not lead its end.");
