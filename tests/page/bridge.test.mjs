@@ -197,10 +197,15 @@ test("the whole records before a cut open on request", async () => {
   await page.close();
 });
 
-test("two recordings at once are refused by name", async () => {
+test("two recordings at once are joined in the order of their names", async () => {
   const { page } = await opened();
-  const problem = await run(page, `return bridge.open([pick(undefined, "a.edf"), pick(undefined, "b.edf")]).catch((p) => p)`);
-  assert.match(problem.what, /a\.edf, b\.edf/);
+  const [one, two] = await run(page, `
+    const one = await bridge.open([pick()]);
+    return [one, await bridge.open([pick(undefined, "b 10.edf"), pick(undefined, "b 9.edf")])];
+  `);
+  assert.equal(two.recording.name, "b 9.edf");
+  assert.equal(two.recording.duration_s, 2 * one.recording.duration_s);
+  assert.equal(two.recording.events.buoy, 2 * one.recording.events.buoy);
   await page.close();
 });
 

@@ -42,6 +42,11 @@ after(async () => {
   await rm(folder, { recursive: true, force: true });
 });
 
+/** Files given at once may be one recording: the page asks, and is told that each is one. @param {import("playwright-core").Page} page */
+async function apart(page) {
+  await page.getByRole("button", { name: "Ask one question of each" }).click();
+}
+
 /** @param {import("playwright-core").Page} page @param {string} state */
 const becomes = (page, state) => page.waitForFunction((wanted) => document.documentElement.dataset.many === wanted, state, { timeout: 120_000 });
 
@@ -49,6 +54,7 @@ test("a set is asked one by one; the table is the terminal's, and what failed is
   const { page, seen } = await openPage(browser.context);
   await reaches(page, ["empty"]);
   await page.setInputFiles("input#recording", files);
+  await apart(page);
   await becomes(page, "offered");
   assert.match((await page.textContent("#many .said")) ?? "", /7 recordings/);
   await page.getByRole("button", { name: "Ask all with the recipe that came along" }).click();
@@ -82,6 +88,7 @@ test("without a recipe the first recording asks for the question, and stopping k
   const { page, seen } = await openPage(browser.context);
   await reaches(page, ["empty"]);
   await page.setInputFiles("input#recording", files.slice(0, 5));
+  await apart(page);
   await becomes(page, "offered");
   assert.equal(await page.getByRole("button", { name: "Ask all with" }).isDisabled(), true);
   await page.getByRole("button", { name: "Choose the question on the first one" }).click();

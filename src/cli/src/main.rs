@@ -75,6 +75,9 @@ enum Command {
         weights: PathBuf,
         #[command(flatten)]
         given: Given,
+        /// A recipe with event windows: says whether the filters, as they are, still separate them here (carried.csv).
+        #[arg(long, value_name = "FILE")]
+        recipe: Option<PathBuf>,
         /// Folder for the time courses; each recording gets a folder of its name in it.
         #[arg(long, value_name = "DIR")]
         out: PathBuf,
@@ -194,8 +197,9 @@ fn main() -> ExitCode {
         Command::Apply {
             weights,
             given,
+            recipe,
             out,
-        } => apply::apply(&weights, &given, &out),
+        } => apply::apply(&weights, &given, recipe.as_deref(), &out),
         Command::Clean {
             recipe,
             given,

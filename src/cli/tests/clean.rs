@@ -57,7 +57,12 @@ fn components_are_taken_out_in_the_terminal() {
     let npy = run(&["--only", "stronger 1", "--as", "npy"]);
     assert_eq!(npy.status.code(), Some(0), "{}", said(&npy));
     let array = fs::read(at.join("out/watch/cleaned.npy")).unwrap();
-    assert!(String::from_utf8_lossy(&array[..128]).contains("(32, 60000)"));
+    // Writers differ in the blanks and the last comma of a shape; readers take all of them.
+    let shape = String::from_utf8_lossy(&array[..128]).replace(' ', "");
+    assert!(
+        shape.contains("'shape':(32,60000)") || shape.contains("'shape':(32,60000,)"),
+        "{shape}"
+    );
     let unknown = run(&["--remove", "stronger 7"]);
     assert_eq!(unknown.status.code(), Some(1));
     assert!(
