@@ -102,6 +102,16 @@ impl Recipe {
             evidence: Evidence::default(),
         }
     }
+
+    /// Why no p is told for this question by this measure, as part of a sentence; `None` where there is one.
+    ///
+    /// A test whose rate of false findings lies above its level in noise is not shown (`tests/reference/calibration.md` keeps the rates).
+    pub fn p_withheld(&self) -> Option<&'static str> {
+        let by_total = self.measure == Measure::Total;
+        matches!(self.contrast, Contrast::Band { .. } if by_total).then_some(
+            "p of a rhythm by total power is withheld: in noise with a shared artefact the test finds more than its level. The typical trial has a p",
+        )
+    }
 }
 
 fn four() -> usize {

@@ -979,6 +979,9 @@ fn warnings(work: &Work, recipe: &Recipe) -> Vec<String> {
             crate::evidence::FEWEST
         ));
     }
+    if let Some(why) = recipe.p_withheld() {
+        out.push(format!("{}{}.", why[..1].to_uppercase(), &why[1..]));
+    }
     if let (Keep::Number(asked), Some(keep), Some(ground)) = (recipe.keep, work.keep, &work.ground)
         && asked > keep
     {

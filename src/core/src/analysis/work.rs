@@ -451,7 +451,8 @@ impl Work {
         if !self.summarised {
             return Task::Summarise;
         }
-        if self.plan.is_none_or(|p| self.null.len() < p.count) {
+        let untested = recipe.p_withheld().is_none();
+        if untested && self.plan.is_none_or(|p| self.null.len() < p.count) {
             return Task::Permute;
         }
         if recipe.hold_back.is_some_and(|h| h.open) && self.sheet.held_back.is_none() {

@@ -41,7 +41,7 @@ pub(in crate::takeaway) fn state(sheet: &Sheet) -> State {
     if held_out(first, sheet.recipe.measure).is_none() {
         return State::Fitted;
     }
-    if sheet.recipe.evidence.permutations == 0 {
+    if sheet.recipe.evidence.permutations == 0 || sheet.recipe.p_withheld().is_some() {
         return State::Untested;
     }
     match &sheet.permutation {
@@ -117,6 +117,9 @@ pub(in crate::takeaway) fn told(sheet: &Sheet) -> Option<Lead<'_>> {
 pub(in crate::takeaway) fn without_p(sheet: &Sheet) -> String {
     if sheet.recipe.evidence.permutations == 0 {
         return "no permutations were asked for, so there is no p".into();
+    }
+    if let Some(why) = sheet.recipe.p_withheld() {
+        return why.into();
     }
     let known = lead(sheet).is_some_and(|l| l.component.p.is_some());
     match &sheet.permutation {
