@@ -224,7 +224,13 @@ fn a_rhythm_at_one_tenth_of_the_noise_is_recovered() {
         // A ratio of 1:10 over all channels leaves a pattern whose error is the noise's share of what the pooled covariance holds.
         let likeness = abs_cosine(&first.pattern, &pattern);
         assert!(likeness > 0.9, "{measure:?}: cosine {likeness}");
-        assert!(first.p.unwrap() <= 0.01, "{measure:?}: p {:?}", first.p);
+        if measure == Measure::Typical {
+            assert!(first.p.unwrap() <= 0.01, "{measure:?}: p {:?}", first.p);
+        } else {
+            // Its test flatters where artefacts are shared, so there is no p, and a warning says so.
+            assert_eq!(first.p, None);
+            assert!(sheet.warnings.iter().any(|w| w.contains("withheld")));
+        }
         let peak = first.peak_hz.unwrap();
         assert!((peak - 10.0).abs() <= 1.0, "{peak}");
         let held = if measure == Measure::Typical {

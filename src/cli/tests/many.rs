@@ -124,10 +124,12 @@ fn one_process_many_processes_and_workflow_engines_make_one_table() {
 
 /// The same under Snakemake, where it is installed with the checks' Python.
 fn snakes(at: &Path) {
-    let snakemake = std::env::var_os("TEASEL_PYTHON")
-        .map(|python| Path::new(&python).with_file_name("snakemake"))
-        .filter(|program| program.exists());
-    let Some(snakemake) = snakemake else {
+    let python = std::env::var_os("TEASEL_PYTHON").filter(|python| {
+        let mut ask = Command::new(python);
+        let found = ask.args(["-m", "snakemake", "--version"]).output();
+        found.is_ok_and(|output| output.status.success())
+    });
+    let Some(python) = python else {
         eprintln!("Snakemake is not installed: it does not run the recordings here");
         return;
     };
@@ -137,8 +139,8 @@ fn snakes(at: &Path) {
         env!("CARGO_BIN_EXE_teasel")
     );
     fs::write(at.join("Snakefile"), rules).unwrap();
-    let run = Command::new(snakemake)
-        .args(["--cores", "2", "--quiet", "all"])
+    let run = Command::new(python)
+        .args(["-m", "snakemake", "--cores", "2", "--quiet", "all"])
         .env("HOME", at)
         .env("XDG_CACHE_HOME", at.join("cache"))
         .current_dir(at)

@@ -1,5 +1,5 @@
 //! One recording, one recipe, and the steps between them.
-use crate::convert::{Outcome, from_js, thrown, to_js};
+use crate::convert::{Outcome, from_js, from_js_with_bytes, thrown, to_js};
 use crate::source::JsSource;
 use crate::take;
 use serde::{Deserialize, Serialize};
@@ -97,7 +97,7 @@ impl Session {
         self.state = State::Empty;
         self.brought = None;
         self.lines = Lines::default();
-        let sides: Vec<NamedBytes> = from_js(sides)?;
+        let sides: Vec<NamedBytes> = from_js_with_bytes(sides)?;
         let sides = sides
             .into_iter()
             .map(|side| SideFile {
@@ -375,7 +375,7 @@ impl Session {
         let State::Analysing(analysis) = &self.state else {
             return Err(thrown(nothing_open()));
         };
-        let extras: Vec<NamedBytes> = from_js(extras)?;
+        let extras: Vec<NamedBytes> = from_js_with_bytes(extras)?;
         take::file(analysis, kind, extras).map_err(thrown)
     }
 }
