@@ -3,14 +3,17 @@
 //! A format is a row of [`formats`]: its name, the recording as its bytes, and how far its samples may lie from those planted, in µV.
 use super::packed::gz;
 use super::{read_with, told};
+use std::io::{Cursor, Write};
 use teasel_core::analysis::Analysis;
 use teasel_core::demo::{self, WATCH_SEED};
 use teasel_core::error::Result;
-use teasel_core::recipe::{Given, Keep, Recipe};
+use teasel_core::recipe::{Axes, Given, Keep, Recipe};
 use teasel_core::recording::{MemorySource, OpenOptions, Recording, SideFile, edf, open};
 use teasel_core::sheet::{Component, Sheet};
-use teasel_core::takeaway::recording_csv;
+use teasel_core::takeaway::{recording_csv, recording_npy};
 use teasel_tests::{close, largest};
+use zip::ZipWriter;
+use zip::write::SimpleFileOptions;
 
 /// One way to keep the planted recording.
 struct Format {
@@ -33,6 +36,11 @@ fn formats(planted: &Recording) -> Vec<Format> {
         rounding: 0.0,
     };
     let nothing = Given::default;
+    let array = recording_npy(planted).unwrap();
+    let rows = Given {
+        axes: Some(Axes::ChannelsSamples),
+        ..told(planted.rate_hz, "uV")
+    };
     vec![
         row("EDF+", edf.clone(), nothing()),
         row(
@@ -49,7 +57,20 @@ fn formats(planted: &Recording) -> Vec<Format> {
             bare(planted),
             told(planted.rate_hz, "uV"),
         ),
+        row("NPY", array.clone(), rows.clone()),
+        row("NPY in gzip", gz(&array), rows.clone()),
+        row("NPZ", named("samples.npy", &array), rows),
     ]
+}
+
+/// A ZIP archive of one file.
+fn named(name: &str, bytes: &[u8]) -> Vec<u8> {
+    let mut archive = ZipWriter::new(Cursor::new(Vec::new()));
+    archive
+        .start_file(name, SimpleFileOptions::default())
+        .unwrap();
+    archive.write_all(bytes).unwrap();
+    archive.finish().unwrap().into_inner()
 }
 
 /// A header of names and rows of numbers.
