@@ -34,6 +34,8 @@ test("every handle that scripts depend on is there", async () => {
   const { page, seen } = await openPage(browser.context);
   const handles = ["input#recording[type=file][multiple]", "input#recipe-file[type=file]", "#message[role=status]", "#problem[role=alert]", "input#keep[type=range]", "button#stop", 'button[data-demo="watch"]'];
   for (const kind of ["weights-json", "weights-csv", "results-json", "recipe", "report", "everything"]) handles.push(`button[data-takeaway="${kind}"]`);
+  // The script puts some of them in place.
+  for (const handle of handles) await page.locator(handle).first().waitFor({ state: "attached" });
   for (const handle of handles) assert.equal(await page.locator(handle).count(), 1, handle);
   assert.equal(await page.evaluate(() => document.documentElement.dataset.state), "empty");
   assert.deepEqual(seen.errors, []);
