@@ -16,6 +16,7 @@ import { saving } from "./save-figure.js";
  * @property {number} [width] fixed width in CSS px; otherwise the place's own
  * @property {number} [height] fixed height in CSS px; otherwise the figure's natural one
  * @property {() => Promise<Figure | null>} [load] where the data come from; otherwise the newest sheet
+ * @property {() => boolean} [wanted] whether the figure belongs to the choices in force; otherwise it stays away
  * @property {(figure: any) => boolean} [bare] whether the figure still lacks what it is about
  * @property {(figure: any) => Figure} [adjust] brings the figure's dials up to the choices, ahead of the numbers
  * @property {(box: PlotBox | null, size: { width: number, height: number }) => void} [placed] called after each drawing
@@ -77,6 +78,7 @@ export function figureSlot(app, name, plan) {
     plan.placed?.(app.bridge.plotBox(adjusted, width, height), { width, height });
   };
   const newest = async () => {
+    if (plan.wanted && !plan.wanted()) return null;
     if (plan.load) return plan.load();
     const { figures, drawn } = now();
     return figures.includes(name) ? (drawn[name] ?? app.bridge.figure(name)) : null;
@@ -113,7 +115,7 @@ export function figureSlot(app, name, plan) {
     },
     refresh() {
       fresh = false;
-      if (root.hidden && (plan.load || now().figures.includes(name))) root.hidden = false;
+      if (root.hidden && (plan.wanted?.() ?? true) && (plan.load || now().figures.includes(name))) root.hidden = false;
       if (near) void load().catch(() => undefined);
     },
     settle: async () => void (fresh || (await load().catch(() => undefined))),

@@ -64,6 +64,7 @@ export function mountWindows(app) {
   body.append(kinds.root, why, own, kinds.fields);
   const figure = figureSlot(app, "windows", {
     section: "windows", title: "Average time course", hint: "drag an edge, or move it with the arrow keys", label: "Power of the leading component around the event, with the two windows",
+    wanted: () => aroundEvents(),
     bare: (course) => !course.t_s.length,
     adjust,
     placed: (box) => ((plot = box), edges.over(box)),
@@ -87,8 +88,7 @@ export function mountWindows(app) {
     if (state.recipe === before.recipe && state.summary === before.summary && state.sheet === before.sheet) return;
     why.textContent = state.why;
     why.hidden = !state.why;
-    const kind = state.recipe?.contrast.kind;
-    own.hidden = kind !== undefined && kind !== "windows";
+    own.hidden = !aroundEvents();
     figure.root.hidden = own.hidden;
     kinds.show();
     tools.show();
@@ -112,6 +112,11 @@ function adjust(course) {
   const inside = [...course.t_s.keys()].filter((i) => course.t_s[i] > low && course.t_s[i] < high);
   const within = (/** @type {(number | null)[]} */ list) => [null, ...inside.map((/** @type {number} */ i) => list[i]), null];
   return { ...course, ...edges, t_s: [low, ...within(course.t_s).slice(1, -1), high], mean: within(course.mean), low: within(course.low), high: within(course.high) };
+}
+
+/** Whether windows around events are compared, or nothing is chosen yet. */
+function aroundEvents() {
+  return (now().recipe?.contrast.kind ?? "windows") === "windows";
 }
 
 /** @param {Side} side */

@@ -1,5 +1,7 @@
 //! Words and numbers on a figure: how wide they are, how they are shortened, how they are written.
 
+use std::collections::BTreeSet;
+
 /// Text without what would break a line of XML or turn its direction: control characters and direction overrides go,
 /// runs of white space become one space.
 pub(crate) fn clean(text: &str) -> String {
@@ -51,52 +53,65 @@ pub(crate) fn first<'a>(wordings: &[&'a str], size: f64, room: f64) -> &'a str {
     fits.or(wordings.last()).copied().unwrap_or("")
 }
 
-/// What all names begin and end with, up to a space or a hyphen: "EEG " and "-REF" of "EEG Fz-REF", "EEG Cz-REF". On a label it
-/// only takes room. Nothing is shared by fewer than three names.
+fn nearly_all(having: usize, many: usize) -> bool {
+    having >= 3 && having * 5 >= many * 4
+}
+
+/// What nearly all names begin and end with, up to a space or a hyphen: "EEG " and "-REF" of "EEG Fz-REF", "EEG Cz-REF", "EOG". On a
+/// label it only takes room. Four of five names must share it, and at least three; no two names become one.
+#[derive(Default)]
 pub(crate) struct Shared {
-    head: usize,
-    tail: usize,
+    head: String,
+    tail: String,
 }
 
 impl Shared {
     pub(crate) fn of<'a>(names: impl Iterator<Item = &'a str> + Clone) -> Self {
-        let none = Shared { head: 0, tail: 0 };
-        let Some(first) = names.clone().next() else {
-            return none;
-        };
-        if names.clone().count() < 3 {
-            return none;
-        }
-        let all = |part: &str, begins: bool| {
-            names.clone().all(|n| {
-                let rest = if begins {
-                    n.strip_prefix(part)
-                } else {
-                    n.strip_suffix(part)
-                };
-                rest.is_some_and(|r| !r.trim().is_empty())
-            })
-        };
+        let many = names.clone().count();
+        let left_by = |rest: Option<&str>| rest.is_some_and(|r| !r.trim().is_empty());
         let breaks = |c: char| c == ' ' || c == '-';
-        let heads = first.match_indices(breaks).map(|(i, c)| i + c.len());
-        let head = heads.filter(|i| all(&first[..*i], true)).max().unwrap_or(0);
-        let tails = first.match_indices(breaks).map(|(i, _)| first.len() - i);
-        let tail = tails
-            .filter(|n| all(&first[first.len() - n..], false))
-            .max()
-            .unwrap_or(0);
-        if names.clone().all(|n| head + tail < n.len()) {
-            Shared { head, tail }
+        let (mut head, mut tail) = ("", "");
+        // A part that nearly all have is one of the parts of the first few names.
+        for name in names.clone().take(8) {
+            for (at, mark) in name.match_indices(breaks) {
+                let (before, after) = (&name[..at + mark.len()], &name[at..]);
+                let heads = names.clone().filter(|n| left_by(n.strip_prefix(before)));
+                if before.len() > head.len() && nearly_all(heads.count(), many) {
+                    head = before;
+                }
+                let tails = names.clone().filter(|n| left_by(n.strip_suffix(after)));
+                if after.len() > tail.len() && nearly_all(tails.count(), many) {
+                    tail = after;
+                }
+            }
+        }
+        let shared = Shared {
+            head: head.to_owned(),
+            tail: tail.to_owned(),
+        };
+        let different: BTreeSet<&str> = names.clone().collect();
+        let shortened: BTreeSet<String> = names.map(|n| shared.without(n)).collect();
+        if shortened.len() == different.len() {
+            shared
         } else {
-            none
+            Shared::default()
         }
     }
 
-    /// A name without what all share.
+    /// Of a list of names.
+    pub(crate) fn in_list(names: &[String]) -> Self {
+        Shared::of(names.iter().map(String::as_str))
+    }
+
+    /// A name without what nearly all share.
     pub(crate) fn without(&self, name: &str) -> String {
-        name.get(self.head..name.len().saturating_sub(self.tail))
-            .unwrap_or(name)
-            .to_owned()
+        let rest = name.strip_prefix(self.head.as_str()).unwrap_or(name);
+        let rest = rest.strip_suffix(self.tail.as_str()).unwrap_or(rest);
+        if rest.trim().is_empty() {
+            name.to_owned()
+        } else {
+            rest.to_owned()
+        }
     }
 }
 

@@ -113,6 +113,7 @@ impl Plot for Weights {
         pen.word(&said, (4.0, 7.0), Word::new(TICK, inks.slate))?;
         pen.down(zero, 16.0, bottom, inks.line, 1.0)?;
         let ramp = self.end.ramp(&inks);
+        let shared = text::Shared::in_list(&self.names);
         for (k, i) in shown.iter().enumerate() {
             let y = 16.0 + row * (k as f64 + 0.5);
             let x = zero + reach * self.values[*i] / limit;
@@ -124,7 +125,12 @@ impl Plot for Weights {
             };
             pen.dot((x, y), 4.0, ink)?;
             let word = Word::new(TICK, inks.slate).at(At::Right);
-            pen.name(&self.names[*i], (left - 6.0, y), left - 6.0, word)?;
+            pen.name(
+                &shared.without(&self.names[*i]),
+                (left - 6.0, y),
+                left - 6.0,
+                word,
+            )?;
         }
         let word = Word::new(TICK, inks.slate);
         let y = bottom + 12.0;

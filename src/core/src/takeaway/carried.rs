@@ -167,16 +167,18 @@ impl Weights {
         let was = super::words::factor(before);
         let reading = match (same_side, clear, interval) {
             (true, true, _) => format!(
-                "{name} still separates here: {factor} in a typical trial, {was} where it was fitted."
+                "Component {name} still separates here: {factor} in a typical trial, {was} where it was fitted."
             ),
             (true, false, Some(_)) => {
-                format!("{name} leans the same way here ({factor}), but its interval includes 1.")
+                format!(
+                    "Component {name} leans the same way here ({factor}), but its interval includes 1."
+                )
             }
             (true, false, None) => format!(
-                "{name} leans the same way here ({factor}); there are too few trials for an interval."
+                "Component {name} leans the same way here ({factor}); there are too few trials for an interval."
             ),
             (false, ..) => format!(
-                "{name} does not separate here: {factor} in a typical trial, {was} where it was fitted."
+                "Component {name} does not separate here: {factor} in a typical trial, {was} where it was fitted."
             ),
         };
         CarriedRow {

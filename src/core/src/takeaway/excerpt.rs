@@ -4,7 +4,7 @@ use crate::analysis::Analysis;
 use crate::recording::{Channel, Recording, Stretch};
 
 /// `seconds` from `from_s` on: the `count` prepared channels at which the component's pattern is largest, and below them the component
-/// itself, which has no unit. `None` where there is no such component or no sample.
+/// itself, in standard deviations of its reference windows. `None` where there is no such component or no sample.
 pub fn excerpt(
     analysis: &Analysis,
     component: &str,
@@ -47,8 +47,8 @@ pub fn excerpt(
         position: None,
     });
     let own = Channel {
-        name: name.clone(),
-        unit: String::new(),
+        name: name.replace("stronger", "up").replace("weaker", "down"),
+        unit: "× reference SD".to_owned(),
         position: None,
     };
     Some(Recording {

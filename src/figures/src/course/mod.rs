@@ -110,6 +110,11 @@ impl Course {
         self.events[0] == self.events[1]
     }
 
+    /// Both sides look at one window: what repeats in it stands against the single trials.
+    fn one_window(&self) -> bool {
+        self.one_event() && self.signal == self.reference
+    }
+
     fn frame(&self, width: f64, height: f64) -> Frame {
         let edges = [self.signal, self.reference].concat();
         let (first, last) = range(&edges).unwrap_or((0.0, 1.0));

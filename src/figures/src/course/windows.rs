@@ -37,7 +37,9 @@ impl Course {
             ),
         ];
         let mut used: Vec<(f64, f64)> = vec![self.event_span(frame)];
-        for (said, [from, to], wash, ink, top, bottom, event) in sides {
+        for (said, [from, to], wash, ink, top, bottom, event) in
+            sides.into_iter().skip(usize::from(self.one_window()))
+        {
             let x0 = frame.px_inside(from);
             let x1 = frame.px_inside(to);
             pen.rect((x0, top), (x1, bottom), wash)?;
@@ -82,7 +84,9 @@ impl Course {
     pub(super) fn edges<DB: DrawingBackend>(&self, pen: &Pen<DB>, frame: &Frame) -> Drawn<DB> {
         let inks = pen.inks;
         let mut edges: Vec<(f64, RGBAColor)> = Vec::new();
-        edges.extend(self.reference.map(|t| (t, inks.reference)));
+        if !self.one_window() {
+            edges.extend(self.reference.map(|t| (t, inks.reference)));
+        }
         edges.extend(self.signal.map(|t| (t, inks.signal)));
         edges.retain(|(t, _)| frame.x.unit(*t) > -0.002 && frame.x.unit(*t) < 1.002);
         edges.sort_by(|a, b| a.0.total_cmp(&b.0));

@@ -78,7 +78,8 @@ impl Map {
         };
         let (at, ground) = (view.to(*place), ink_at(*place));
         pen.ring(at, 4.0, pen.inks.on(ground), 1.6, ground)?;
-        let said = text::fit(&self.names[*i], LABEL, widest);
+        let name = text::Shared::in_list(&self.names).without(&self.names[*i]);
+        let said = text::fit(&name, LABEL, widest);
         let size = (text::bold_width(&said, LABEL), 14.0);
         if let Some((spot, side, area)) = Places::around(&[at], 5.0).near(at, size, 5.0, fits) {
             self.tag(pen, &said, spot, side, area, |x, y| ink_at(view.from(x, y)))?;
