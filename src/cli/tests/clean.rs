@@ -4,21 +4,15 @@
     clippy::expect_used,
     reason = "a check that cannot go on fails"
 )]
+mod program;
+
+use program::teasel;
 use std::fs;
-use std::path::Path;
-use std::process::{Command, Output};
+use std::process::Output;
 use teasel_core::demo::night_watch;
 use teasel_core::recipe::Keep;
 use teasel_core::recording::edf;
 use teasel_core::takeaway::recipe_json;
-
-fn teasel(arguments: &[&str], folder: &Path) -> Output {
-    Command::new(env!("CARGO_BIN_EXE_teasel"))
-        .args(arguments)
-        .current_dir(folder)
-        .output()
-        .unwrap()
-}
 
 fn said(output: &Output) -> String {
     String::from_utf8_lossy(&output.stderr).into_owned()

@@ -6,6 +6,9 @@
     clippy::print_stderr,
     reason = "a check that cannot go on fails; one that is left out says so"
 )]
+mod program;
+
+use program::teasel;
 use std::fs;
 use std::path::Path;
 use std::process::{Command, Output};
@@ -18,14 +21,6 @@ const NIGHTS: [&str; 6] = [
     "night-1", "night-2", "night-3", "night-4", "night-5", "torn",
 ];
 const SHARED: [&str; 3] = ["table.csv", "table.json", "group.csv"];
-
-fn teasel(arguments: &[&str], folder: &Path) -> Output {
-    Command::new(env!("CARGO_BIN_EXE_teasel"))
-        .args(arguments)
-        .current_dir(folder)
-        .output()
-        .unwrap()
-}
 
 fn said(output: &Output) -> String {
     format!(

@@ -5,6 +5,9 @@
     clippy::print_stderr,
     reason = "a check that cannot go on fails; one that is left out says so"
 )]
+mod program;
+
+use program::teasel;
 use std::fs;
 use std::path::{Path, PathBuf};
 use std::process::{Command, Output};
@@ -13,14 +16,6 @@ use teasel_core::demo::{Demo, night_watch};
 use teasel_core::recipe::{Keep, Recipe};
 use teasel_core::recording::edf;
 use teasel_core::takeaway::recipe_json;
-
-fn teasel(arguments: &[&str], folder: &Path) -> Output {
-    Command::new(env!("CARGO_BIN_EXE_teasel"))
-        .args(arguments)
-        .current_dir(folder)
-        .output()
-        .unwrap()
-}
 
 fn said(output: &Output) -> String {
     String::from_utf8_lossy(&output.stderr).into_owned()

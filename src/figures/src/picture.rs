@@ -393,7 +393,7 @@ impl Plot for PixelMap {
         let share = scale_bar(self.columns as f64);
         let long = share * pixel;
         bar(pen, (left + wide - long, high + 6.0), long, share)?;
-        key(pen, &ramp, self.limit, &self.unit)
+        crate::map::key(pen, &ramp, self.limit, &self.unit)
     }
 
     fn height(&self, width: u32) -> u32 {
@@ -421,28 +421,6 @@ impl Plot for PixelMap {
             self.unit
         )
     }
-}
-
-fn key<DB: DrawingBackend>(
-    pen: &Pen<DB>,
-    ramp: &crate::inks::Ramp,
-    limit: f64,
-    unit: &str,
-) -> Drawn<DB> {
-    let wide = (pen.w - 60.0).clamp(80.0, 162.0);
-    let (left, top) = ((pen.w - wide) / 2.0, pen.h - 27.0);
-    for (i, color) in ramp.iter().enumerate() {
-        let x = |k: f64| left + wide * k / 11.0;
-        pen.rect((x(i as f64), top), (x(i as f64 + 1.0), top + 9.0), *color)?;
-    }
-    pen.frame((left, top), (left + wide, top + 9.0), pen.inks.line)?;
-    let word = Word::new(TICK, pen.inks.slate).at(At::Middle);
-    let said = text::short(limit);
-    let unit = format!("{} per unit", text::fit(unit, TICK, 90.0));
-    pen.word(&unit, (pen.w / 2.0, top - 9.0), word)?;
-    pen.word(&format!("−{said}"), (left, top + 19.0), word.at(At::Left))?;
-    pen.word("0", (pen.w / 2.0, top + 19.0), word)?;
-    pen.word(&said, (left + wide, top + 19.0), word.at(At::Right))
 }
 
 #[cfg(test)]

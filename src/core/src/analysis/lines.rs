@@ -157,15 +157,16 @@ impl Lines {
         count: usize,
     ) -> Vec<f32> {
         self.recorded.resize(recording.samples.len(), None);
-        let mut out = Vec::with_capacity(2 * count * which.len());
-        for &at in which {
-            let bins = match (recording.samples.get(at), self.recorded.get_mut(at)) {
-                (Some(samples), Some(kept)) => bins(samples, kept, size, first, count),
-                _ => Vec::new(),
-            };
-            append(&mut out, &bins, count);
-        }
-        out
+        gathered(which, count, |at| {
+            let samples = recording.samples.get(at)?;
+            Some(bins(
+                samples,
+                self.recorded.get_mut(at)?,
+                size,
+                first,
+                count,
+            ))
+        })
     }
 
     /// The same of prepared channels.
@@ -185,15 +186,16 @@ impl Lines {
             self.preparation = Some(made_with);
         }
         self.prepared.resize(channels, None);
-        let mut out = Vec::with_capacity(2 * count * which.len());
-        for &at in which {
-            let bins = match (analysis.channel(at), self.prepared.get_mut(at)) {
-                (Some(samples), Some(kept)) => bins(samples, kept, size, first, count),
-                _ => Vec::new(),
-            };
-            append(&mut out, &bins, count);
-        }
-        out
+        gathered(which, count, |at| {
+            let samples = analysis.channel(at)?;
+            Some(bins(
+                samples,
+                self.prepared.get_mut(at)?,
+                size,
+                first,
+                count,
+            ))
+        })
     }
 
     /// The same of components.
@@ -205,20 +207,13 @@ impl Lines {
         first: usize,
         count: usize,
     ) -> Vec<f32> {
-        let mut out = Vec::with_capacity(2 * count * which.len());
         let all: Vec<_> = analysis.work.inner_filters().collect();
         self.components
             .retain(|(filter, _)| all.iter().any(|one| one[..] == filter[..]));
-        for &at in which {
-            let bins = match (&analysis.work.prepared, all.get(at)) {
-                (Some(prepared), Some(filter)) => {
-                    self.of_component(prepared, filter, size, first, count)
-                }
-                _ => Vec::new(),
-            };
-            append(&mut out, &bins, count);
-        }
-        out
+        gathered(which, count, |at| {
+            let prepared = analysis.work.prepared.as_ref()?;
+            Some(self.of_component(prepared, all.get(at)?, size, first, count))
+        })
     }
 
     fn of_component(
@@ -245,6 +240,19 @@ impl Lines {
             .map(|level| part(level, first, count).to_vec())
             .unwrap_or_default()
     }
+}
+
+/// The bins of several lines one after the other; a line that is not there is not a number.
+fn gathered(
+    which: &[usize],
+    count: usize,
+    mut line: impl FnMut(usize) -> Option<Vec<Ends>>,
+) -> Vec<f32> {
+    let mut out = Vec::with_capacity(2 * count * which.len());
+    for &at in which {
+        append(&mut out, &line(at).unwrap_or_default(), count);
+    }
+    out
 }
 
 fn append(out: &mut Vec<f32>, bins: &[Ends], count: usize) {

@@ -11,7 +11,7 @@
 //! # What is written
 //! The prepared channels at the prepared rate: filters and reference stay in force, because the components were found there.
 use super::cells::{Cell, table};
-use super::series::matrix_f32_npy;
+use super::samples::recording_npy;
 use super::weights::ordered;
 use crate::analysis::{Analysis, Series};
 use crate::error::{Kind, Problem, Result};
@@ -181,7 +181,7 @@ impl Cleaned {
                 };
                 write(&self.recording, &identity)
             }
-            Form::Npy => matrix_f32_npy(&self.recording.samples),
+            Form::Npy => recording_npy(&self.recording),
         }
     }
 }

@@ -3,7 +3,6 @@ use super::cells::{number, safe_text};
 use super::written;
 use crate::error::Result;
 use crate::recording::Recording;
-use npyz::WriterBuilder;
 
 /// `time_s` and a column a channel, `Fz (µV)`, a row a sample. Each number is the shortest that reads back to the same 32 bits; what is no
 /// number is an empty cell. Times are on the file's clock, so that a gap is a jump; events are not written.
@@ -33,17 +32,5 @@ pub fn recording_csv(recording: &Recording) -> Result<String> {
 
 /// `channels × samples`, f32, row after row, as a NumPy array file. Rate, unit, names, gaps and events are not in it.
 pub fn recording_npy(recording: &Recording) -> Result<Vec<u8>> {
-    let shape = [recording.channels.len(), recording.sample_count()];
-    let mut bytes = Vec::with_capacity(128 + 4 * shape[0] * shape[1]);
-    let mut writer = npyz::WriteOptions::new()
-        .default_dtype()
-        .shape(&shape.map(|n| n as u64))
-        .writer(&mut bytes)
-        .begin_nd()
-        .map_err(written)?;
-    for samples in &recording.samples {
-        writer.extend(samples.iter().copied()).map_err(written)?;
-    }
-    writer.finish().map_err(written)?;
-    Ok(bytes)
+    super::series::matrix_npy(&recording.samples)
 }

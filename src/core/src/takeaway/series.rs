@@ -42,27 +42,10 @@ pub fn series_npy(series: &Series) -> Result<Vec<u8>> {
     matrix_npy(&series.samples)
 }
 
-/// A matrix of equally long rows as a NumPy array file of f64.
-pub(super) fn matrix_npy(rows: &[Vec<f64>]) -> Result<Vec<u8>> {
+/// A matrix of equally long rows, one after the other, as a NumPy array file.
+pub(super) fn matrix_npy<T: npyz::AutoSerialize + Copy>(rows: &[Vec<T>]) -> Result<Vec<u8>> {
     let columns = rows.first().map_or(0, Vec::len);
-    let mut bytes = Vec::with_capacity(128 + rows.len() * columns * 8);
-    let mut writer = npyz::WriteOptions::new()
-        .default_dtype()
-        .shape(&[rows.len() as u64, columns as u64])
-        .writer(&mut bytes)
-        .begin_nd()
-        .map_err(written)?;
-    for row in rows {
-        writer.extend(row.iter().copied()).map_err(written)?;
-    }
-    writer.finish().map_err(written)?;
-    Ok(bytes)
-}
-
-/// The same for f32.
-pub(super) fn matrix_f32_npy(rows: &[Vec<f32>]) -> Result<Vec<u8>> {
-    let columns = rows.first().map_or(0, Vec::len);
-    let mut bytes = Vec::with_capacity(128 + rows.len() * columns * 4);
+    let mut bytes = Vec::with_capacity(128 + rows.len() * columns * size_of::<T>());
     let mut writer = npyz::WriteOptions::new()
         .default_dtype()
         .shape(&[rows.len() as u64, columns as u64])

@@ -6,24 +6,30 @@ use crate::text;
 use plotters::style::RGBAColor;
 use plotters_backend::DrawingBackend;
 
-impl Map {
-    pub(super) fn key<DB: DrawingBackend>(&self, pen: &Pen<DB>, ramp: &Ramp) -> Drawn<DB> {
-        let wide = (pen.w - 60.0).clamp(80.0, 162.0);
-        let (left, top) = ((pen.w - wide) / 2.0, pen.h - 27.0);
-        for (i, color) in ramp.iter().enumerate() {
-            let x = |k: f64| left + wide * k / 11.0;
-            pen.rect((x(i as f64), top), (x(i as f64 + 1.0), top + 9.0), *color)?;
-        }
-        pen.frame((left, top), (left + wide, top + 9.0), pen.inks.line)?;
-        let word = Word::new(TICK, pen.inks.slate).at(At::Middle);
-        let limit = text::short(self.limit());
-        let unit = format!("{} per unit", text::fit(&self.unit, TICK, 90.0));
-        pen.word(&unit, (pen.w / 2.0, top - 9.0), word)?;
-        pen.word(&format!("−{limit}"), (left, top + 19.0), word.at(At::Left))?;
-        pen.word("0", (pen.w / 2.0, top + 19.0), word)?;
-        pen.word(&limit, (left + wide, top + 19.0), word.at(At::Right))
+/// The key below a pattern, from its largest value on one side of zero to that on the other.
+pub(crate) fn key<DB: DrawingBackend>(
+    pen: &Pen<DB>,
+    ramp: &Ramp,
+    limit: f64,
+    unit: &str,
+) -> Drawn<DB> {
+    let wide = (pen.w - 60.0).clamp(80.0, 162.0);
+    let (left, top) = ((pen.w - wide) / 2.0, pen.h - 27.0);
+    for (i, color) in ramp.iter().enumerate() {
+        let x = |k: f64| left + wide * k / 11.0;
+        pen.rect((x(i as f64), top), (x(i as f64 + 1.0), top + 9.0), *color)?;
     }
+    pen.frame((left, top), (left + wide, top + 9.0), pen.inks.line)?;
+    let word = Word::new(TICK, pen.inks.slate).at(At::Middle);
+    let said = text::short(limit);
+    let unit = format!("{} per unit", text::fit(unit, TICK, 90.0));
+    pen.word(&unit, (pen.w / 2.0, top - 9.0), word)?;
+    pen.word(&format!("−{said}"), (left, top + 19.0), word.at(At::Left))?;
+    pen.word("0", (pen.w / 2.0, top + 19.0), word)?;
+    pen.word(&said, (left + wide, top + 19.0), word.at(At::Right))
+}
 
+impl Map {
     /// The colour of a bar; what is nearly nothing on a surface is still a bar.
     pub(super) fn bar_ink<DB: DrawingBackend>(
         &self,
@@ -73,6 +79,7 @@ impl Map {
                 word,
             )?;
         }
+        let labels = text::Shared::in_list(&self.names);
         for (k, i) in shown.iter().enumerate() {
             let y = top + row * (k as f64 + 0.5);
             let x = zero + (right - zero) * self.values[*i] / limit;
@@ -80,7 +87,12 @@ impl Map {
             pen.rect((zero, y - half), (x, y + half), self.bar_ink(pen, ramp, *i))?;
             if !self.small {
                 let word = Word::new(SMALL, pen.inks.slate).at(At::Right);
-                pen.name(&self.names[*i], (left - 6.0, y), left - 8.0, word)?;
+                pen.name(
+                    &labels.without(&self.names[*i]),
+                    (left - 6.0, y),
+                    left - 8.0,
+                    word,
+                )?;
             }
         }
         pen.down(

@@ -1,5 +1,6 @@
 //! A component's pattern on what its channels lie on, or in order of size where positions are missing.
 mod bars;
+pub(crate) use bars::key;
 mod make;
 mod on_head;
 mod on_plane;
@@ -127,7 +128,7 @@ impl Plot for Map {
         if self.small {
             return Ok(());
         }
-        self.key(pen, &ramp)
+        key(pen, &ramp, self.limit(), &self.unit)
     }
 
     fn height(&self, width: u32) -> u32 {
