@@ -334,7 +334,7 @@ pub(super) fn solved(work: &mut Work, recipe: &Recipe) {
     let (stronger, weaker) = reported(ends);
     work.sheet.stronger = stronger.iter().map(component).collect();
     work.sheet.weaker = weaker.iter().map(component).collect();
-    work.sheet.leading = leading(ends);
+    work.sheet.leading = leading(ends, design.exchange);
     work.sheet.shrinkage = Some(ends.shrinkage);
     let eigenvalues = ground.space.eigenvalues.clone();
     let inside: f64 = eigenvalues.iter().filter(|e| **e > 0.0).sum();
@@ -470,11 +470,13 @@ pub(super) fn reported(ends: &Ends) -> (&[Direction], &[Direction]) {
     (&ends.stronger[..up], &ends.weaker[..down])
 }
 
-/// The end whose first direction departs farther from 1.
-fn leading(ends: &Ends) -> End {
+/// The end whose first direction departs farther from 1. Of what repeats it is the stronger one: that something repeats less than chance
+/// is no answer to the question.
+fn leading(ends: &Ends, exchange: Exchange) -> End {
     let far = |list: &[Direction]| list.first().map_or(0.0, |d| d.statistic.ln().abs());
     let (up, down) = reported(ends);
-    if far(down) > far(up) {
+    let repeats = exchange == Exchange::Flip && !up.is_empty();
+    if far(down) > far(up) && !repeats {
         End::Weaker
     } else {
         End::Stronger

@@ -1,6 +1,6 @@
 //! What the numbers amount to, decided once for all sentences.
 use super::words;
-use crate::recipe::Measure;
+use crate::recipe::{Contrast, Measure};
 use crate::sheet::{Component, End, Sheet};
 use crate::takeaway::weights::{fitted, held_out};
 
@@ -280,23 +280,24 @@ pub(in crate::takeaway) fn least_that_passes(sheet: &Sheet) -> Option<f64> {
         .copied()
 }
 
-/// "trial" in a paired contrast, "window" otherwise.
+/// "pair" in a paired contrast, "trial" where what repeats is asked for, "window a side" otherwise.
 pub(in crate::takeaway) fn unit(sheet: &Sheet) -> &'static str {
-    if sheet.windows.as_ref().is_some_and(|w| w.paired) {
+    if matches!(sheet.recipe.contrast, Contrast::Repeatable(_)) {
+        "trial"
+    } else if sheet.windows.as_ref().is_some_and(|w| w.paired) {
         "pair"
     } else {
         "window a side"
     }
 }
 
-/// "40 pairs", "20 windows a side".
+/// "40 pairs", "40 trials", "20 windows a side".
 pub(in crate::takeaway) fn repetitions(sheet: &Sheet) -> String {
     let count = sheet.repetitions();
-    let paired = unit(sheet) == "pair";
-    match (paired, count) {
-        (true, 1) => "1 pair".into(),
-        (true, n) => format!("{n} pairs"),
-        (false, 1) => "1 window a side".into(),
-        (false, n) => format!("{n} windows a side"),
-    }
+    let [one, many] = match unit(sheet) {
+        "pair" => ["pair", "pairs"],
+        "trial" => ["trial", "trials"],
+        _ => ["window a side", "windows a side"],
+    };
+    format!("{count} {}", if count == 1 { one } else { many })
 }
